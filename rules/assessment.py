@@ -1,0 +1,195 @@
+"""
+What an assessment says: the one object that the screens, the reports and the JSON show.
+
+None of them computes a verdict of its own. The classes mirror section "check --json" of the format, and
+``audit.report.as_json`` writes them out.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from enum import StrEnum
+
+from rules.record import Figure
+
+
+class Severity(StrEnum):
+    """How soon someone has to act; not how sure we are."""
+
+    IMMEDIATE = "immediate"
+    SOON = "soon"
+    WATCH = "watch"
+    NOTE = "note"
+
+    @property
+    def rank(self) -> int:
+        """0 for the most urgent."""
+        return list(Severity).index(self)
+
+
+class Status(StrEnum):
+    """What is to be done about a circuit; says what was read, not that it is safe or complies."""
+
+    SOUND = "sound"
+    WATCH = "watch"
+    ACT = "act"
+    MEASURE = "measure"
+    INCOMPLETE = "incomplete"
+
+
+STATUS_SIGNS = {
+    Status.SOUND: "✓",
+    Status.WATCH: "~",
+    Status.ACT: "!",
+    Status.MEASURE: "?",
+    Status.INCOMPLETE: "…",
+}
+"""The sign that repeats each status beside its word."""
+
+
+@dataclass(frozen=True, slots=True)
+class Citation:
+    """Where a limit or a formula stands written."""
+
+    document: str
+    edition: str = ""
+    clause: str = ""
+    status: str = ""
+    """``verified``, ``computed``, ``from-memory`` or ``common practice, no source``."""
+
+    def __str__(self) -> str:
+        text = self.document + (f":{self.edition}" if self.edition else "")
+        parts = [text, self.clause, self.status if self.status != "verified" else ""]
+        return ", ".join(part for part in parts if part)
+
+
+@dataclass(frozen=True, slots=True)
+class Finding:
+    """One thing that a rule reports."""
+
+    id: str
+    """Built from rule, place and ``where``: the same in the next check."""
+    rule: str
+    circuit: str | None
+    """Tag of the circuit; ``None`` for a finding on a board, a source or the site."""
+    board: str | None
+    """Tag of the board or source where ``circuit`` is ``None``; ``None`` for the site."""
+    where: str
+    severity: Severity
+    cause: str | None
+    """The cause that it claims from readings; ``None`` where it claims none."""
+    title: str
+    why: str
+    numbers: dict[str, Figure]
+    remedy: str
+    caution: str
+    source: str
+    consequences: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class NotJudged:
+    """What a rule could not judge, and why: a gap is not a pass."""
+
+    rule: str
+    circuit: str | None
+    where: str
+    why: str
+
+
+@dataclass(frozen=True, slots=True)
+class Drop:
+    """Measured against computed drop of one round, between two points of a circuit."""
+
+    round: str
+    start: str
+    end: str
+    measured: Figure
+    computed: Figure
+    excess: Figure
+    """Measured less computed; its ``u`` holds both doubts with what they share."""
+    current: Figure
+    """In the circuit's first run, in that round."""
+
+
+@dataclass(frozen=True, slots=True)
+class Place:
+    """A probability of a cause at a place; filled by the diagnosis."""
+
+    cause: str
+    where: str
+    probability: float
+    low_ohm: float | None = None
+    best_ohm: float | None = None
+    high_ohm: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class PointVoltage:
+    """Voltages of one point of a circuit; what is not known is ``None``."""
+
+    point: str
+    design: Figure | None = None
+    worst: Figure | None = None
+    lowest: Figure | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class NextReading:
+    """The reading to take next; filled by the diagnosis."""
+
+    what: str
+    quantity: str = ""
+    at: str = ""
+    to: str = ""
+    leg: str = ""
+    current_at_least: Figure | None = None
+    why: str = ""
+    caution: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class CircuitResult:
+    """What is said of one circuit on the visit that it is judged on."""
+
+    circuit: str
+    circuit_id: str
+    visit: str
+    """Empty where nothing was read."""
+    status: Status
+    why: str
+    """One sentence: why this status."""
+    drop: Drop | None = None
+    allowed_drop_percent: float | None = None
+    nominal_voltage_v: float | None = None
+    design_drop: Figure | None = None
+    """Largest computed drop from the feeding board to a load at design current. [V]"""
+    causes: tuple[Place, ...] = ()
+    points: tuple[PointVoltage, ...] = ()
+    next_reading: NextReading | None = None
+    findings: tuple[Finding, ...] = ()
+    not_judged: tuple[NotJudged, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Assessment:
+    """What ``assess`` says of a site."""
+
+    program: str
+    site: str
+    limits: str
+    circuits: tuple[CircuitResult, ...]
+    """In walking order."""
+    findings: tuple[Finding, ...]
+    """All of them: the site's, the boards' and sources', then the circuits' in walking order."""
+    not_judged: tuple[NotJudged, ...]
+    cautions: tuple[str, ...] = field(default=())
+    """Cautions of the site's voltages, to be read before anyone takes a reading."""
+
+    @property
+    def summary(self) -> dict[str, int]:
+        """Number of circuits, in all and by status."""
+        counts = {"circuits": len(self.circuits)}
+        for status in Status:
+            counts[str(status)] = sum(result.status is status for result in self.circuits)
+        return counts
