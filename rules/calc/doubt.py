@@ -1,0 +1,140 @@
+"""
+Doubt of sums of readings: gain shared by readings of one meter, counts and wander each anew.
+
+A measured drop, a mean of repeated readings and a computed drop (resistance times current) are all
+sums of readings with weights. Written so, what two readings share takes care of itself: the gain
+of one voltmeter acts on the *difference* of its two readings alone.
+"""
+
+from __future__ import annotations
+
+import math
+from collections import defaultdict
+from collections.abc import Iterable
+from dataclasses import dataclass
+from statistics import NormalDist
+
+from rules.errors import InvalidQuantity
+
+STANDARD_NORMAL = NormalDist()
+
+
+@dataclass(frozen=True, slots=True)
+class Shown:
+    """One value that a meter showed, less its zero, with what is doubtful about it."""
+
+    value: float
+    gain_key: str
+    """What shares one gain: instrument, quantity, range and visit."""
+    gain_u: float
+    """Relative standard uncertainty of the gain."""
+    each_u: float
+    """Standard uncertainty of counts and display, each reading anew, in the value's unit."""
+
+
+@dataclass(frozen=True, slots=True)
+class Weighted:
+    """One reading in a sum."""
+
+    weight: float
+    shown: Shown
+
+
+def gain_u(accuracy_percent: float) -> float:
+    """
+    Relative standard uncertainty of a meter's gain: rectangular, ± accuracy.
+
+    References
+    ----------
+    JCGM 100:2008, 4.3.7.
+
+    Examples
+    --------
+    >>> round(gain_u(0.5), 6)
+    0.002887
+    """
+    return accuracy_percent / 100 / math.sqrt(3)
+
+
+def each_u(counts: float, resolution: float) -> float:
+    """
+    Standard uncertainty of one reading from its counts and its display.
+
+    Rectangular, ± counts × resolution, and the display's ± half a digit.
+
+    References
+    ----------
+    JCGM 100:2008, 4.3.7 and F.2.2.1.
+
+    Examples
+    --------
+    >>> round(each_u(2, 0.01), 5)
+    0.0119
+    """
+    return resolution * math.sqrt(counts**2 / 3 + 1 / 12)
+
+
+def total(terms: Iterable[Weighted]) -> tuple[float, float]:
+    """
+    Value and standard uncertainty of a weighted sum of readings.
+
+    Parameters
+    ----------
+    terms : iterable of Weighted
+        A reading may occur several times; its weights add.
+
+    Returns
+    -------
+    tuple of float
+        Sum and standard uncertainty, in the readings' unit times the weights'.
+
+    Notes
+    -----
+    ``u² = Σ_gains (u_g Σ w v)² + Σ_readings (Σw)² u_each²``: JCGM 100:2008, equation 13, with
+    correlation one within a gain and zero elsewhere.
+
+    Examples
+    --------
+    Two readings by one 0.5 % + 2 counts meter against two meters:
+
+    >>> def volts(value, meter):
+    ...     return Shown(value, meter, gain_u(0.5), each_u(2, 0.01))
+    >>> one = total([Weighted(1, volts(24.12, "a")), Weighted(-1, volts(23.41, "a"))])
+    >>> two = total([Weighted(1, volts(24.12, "a")), Weighted(-1, volts(23.41, "b"))])
+    >>> round(one[1], 3), round(two[1], 3)
+    (0.017, 0.098)
+    """
+    value = 0.0
+    by_gain: dict[tuple[str, float], float] = defaultdict(float)
+    weights: dict[int, tuple[float, float]] = {}
+    for term in terms:
+        part = term.weight * term.shown.value
+        value += part
+        by_gain[term.shown.gain_key, term.shown.gain_u] += part
+        before = weights.get(id(term.shown), (0.0, 0.0))[0]
+        weights[id(term.shown)] = (before + term.weight, term.shown.each_u)
+    variance = sum((u * part) ** 2 for (_, u), part in by_gain.items())
+    variance += sum((weight * u) ** 2 for weight, u in weights.values())
+    return value, math.sqrt(variance)
+
+
+def probability_above(value: float, limit: float, u: float) -> float:
+    """
+    Probability that what was measured or computed lies above a limit, taken as Gaussian.
+
+    References
+    ----------
+    JCGM 106:2012, 7.2.
+
+    Examples
+    --------
+    >>> round(probability_above(5.2, 5.0, 0.1), 3)
+    0.977
+    >>> probability_above(5.0, 5.0, 0.0)
+    0.0
+    """
+    if u < 0 or not math.isfinite(u):
+        raise InvalidQuantity(f"a standard uncertainty is finite and not below 0, got {u:g}")
+    if u == 0:
+        return 1.0 if value > limit else 0.0
+    return STANDARD_NORMAL.cdf((value - limit) / u)

@@ -1,0 +1,138 @@
+"""Limits profiles: packaged, then the site's own, then its prior; every mistake is named."""
+
+from __future__ import annotations
+
+import pytest
+
+from rules import limits
+from rules.assessment import Severity
+from rules.errors import ProfileError
+from rules.record import Site
+
+
+def own(text: str, **more: object) -> Site:
+    return Site(name="x", limits="ours.toml", own_limits=text, **more)  # type: ignore[arg-type]
+
+
+def test_every_group_of_every_packaged_profile_says_where_it_comes_from() -> None:
+    for name in limits.names():
+        for group in limits.of(Site(name="x", limits=name)).groups.values():
+            assert group.title
+            assert group.source
+            assert group.status in (
+                "verified",
+                "computed",
+                "from-memory",
+                "our own default",
+                "common practice, no source",
+            )
+            assert group.unit
+            assert group.values
+
+
+def test_a_sites_own_profile_starts_from_the_one_it_inherits() -> None:
+    ours = limits.of(own('title = "Ours"\n[drop]\nsource = "our contract"\nallowed_percent = 2\n'))
+    assert ours["drop.allowed_percent"] == 2
+    assert ours["drop.allowed_total_percent"] == 5
+    assert ours["temperature.hot_c"] == 70
+    assert ours.title == "Ours"
+    assert "our contract" in ours.citation("drop")
+    assert "ours.toml" in ours.citation("drop")
+    assert "limits profile general" in ours.citation("temperature")
+
+
+def test_a_rule_may_be_lowered_or_switched_off_with_a_reason() -> None:
+    ours = limits.of(
+        own('[rules.VD01]\nseverity = "watch"\nreason = "agreed"\n[rules.VD03]\noff = true\nreason = "n/a"\n')
+    )
+    assert ours.rules["VD01"].severity is Severity.WATCH
+    assert ours.rules["VD03"].off
+
+
+@pytest.mark.parametrize(
+    ("text", "line"),
+    [
+        ("[drop", "ours.toml: not TOML"),
+        ('inherits = "generale"', "there is no limits profile 'generale'; did you mean 'general'?"),
+        ("inherits = 3", "'title' and 'inherits' are texts"),
+        ("[dorp]\nallowed_percent = 2", "there is no group [dorp]; did you mean 'drop'?"),
+        ("drop = 2", "drop is not a group of numbers"),
+        ('[drop]\nsource="s"\nallowed_precent = 2', "there is no drop.allowed_precent; did you mean 'allowed_percent'?"),
+        ('[drop]\nsource="s"\nallowed_percent = "2"', "drop.allowed_percent is '2', not a finite number"),
+        ('[drop]\nsource="s"\nallowed_percent = true', "drop.allowed_percent is True, not a finite number"),
+        ('[drop]\nsource="s"\nallowed_percent = nan', "drop.allowed_percent is nan, not a finite number"),
+        ('[drop]\nsource="s"\nallowed_percent = -1', "drop.allowed_percent is -1; not below 0"),
+        ('[drop]\nsource="s"\nallowed_percent = 0', "drop.allowed_percent is 0; above 0"),
+        ("[drop]\nallowed_percent = 2", "[drop] changes numbers without naming its source"),
+        ('[drop]\nsource="s"\nunit="V"\nallowed_percent = 2', "drop.unit is 'V', its numbers are in '%'"),
+        ("[drop]\nsource=3\nallowed_percent = 2", "drop.source is not a text"),
+        ('[temperature]\nsource="s"\nhot_c = 900', "temperature.hot_c is 900; a temperature from -90 to 400 degC"),
+        ('[decision]\nsource="s"\nsound_at = 1.5', "decision.sound_at is 1.5; a share from 0 to 1"),
+        ('[decision]\nsource="s"\npasses_at = 0.99', "decision.passes_at is not below decision.fails_at"),
+        ("[rules.VD01]\noff = true", "rules.VD01 has no reason"),
+        ('[rules.VD01]\noff = "yes"\nreason="r"', "rules.VD01.off is 'yes'; true or false"),
+        ('[rules.VD01]\nseverity = "later"\nreason="r"', "rules.VD01.severity is 'later'; one of immediate, soon, watch, note"),
+        ('[rules.VD01]\nlevel = 1\nreason="r"', "there is no rules.VD01.level; a rule may have severity, off, reason"),
+        ("[rules]\nVD01 = 3", "rules.VD01 is no group"),
+        ("rules = 3", "[rules] holds groups"),
+        (
+            '[prior]\nsource="s"\n'
+            + "\n".join(
+                f"{cause} = 0"
+                for cause in (
+                    "as_recorded", "bad_connection", "smaller_conductor", "other_metal", "longer_route",
+                    "series_semiconductor", "reading_or_record_doubtful",
+                )
+            ),
+            "the shares of [prior] sum to nothing",
+        ),
+    ],
+)  # fmt: skip
+def test_a_mistake_in_a_profile_is_named(text: str, line: str) -> None:
+    with pytest.raises(ProfileError) as raised:
+        limits.of(own(text))
+    assert line in str(raised.value)
+    assert "\n\n" not in str(raised.value)
+
+
+def test_all_mistakes_come_in_one_go() -> None:
+    with pytest.raises(ProfileError) as raised:
+        limits.of(own("[dorp]\nx = 1\n[drop]\nallowed_precent = 2\n[rules.VD01]\noff = true\n"))
+    assert len(str(raised.value).splitlines()) == 4
+
+
+def test_an_unknown_profile_names_the_nearest() -> None:
+    with pytest.raises(ProfileError, match="did you mean 'general'"):
+        limits.of(Site(name="x", limits="genral"))
+
+
+def test_a_sites_prior_is_normalised_and_leaves_out_what_it_does_not_name() -> None:
+    prior = limits.of(Site(name="x", prior=(("as recorded", 3.0), ("bad connection", 1.0)))).prior
+    doubtful = 0.005 / 1.005  # keeps the profile's share of 0.005 in 1.005
+    assert prior["as recorded"] == pytest.approx(0.75 / (1 + doubtful))
+    assert prior["bad connection"] == pytest.approx(0.25 / (1 + doubtful))
+    assert prior["reading or record doubtful"] == pytest.approx(doubtful / (1 + doubtful))
+    assert prior["longer route"] == 0
+    assert sum(prior.values()) == pytest.approx(1)
+
+
+def test_a_prior_may_rule_out_doubtful_readings() -> None:
+    prior = limits.of(Site(name="x", prior=(("as recorded", 1.0), ("reading or record doubtful", 0.0)))).prior
+    assert prior["as recorded"] == 1
+
+
+@pytest.mark.parametrize(
+    ("prior", "line"),
+    [
+        ((("as recorded", 1.0), ("bad conection", 1.0)), "did you mean 'bad connection'"),
+        ((("as recorded", -1.0),), "share -1"),
+        ((("as recorded", 0.0),), "sum to nothing"),
+    ],
+)
+def test_a_mistake_in_a_prior_is_named(prior: tuple[tuple[str, float], ...], line: str) -> None:
+    with pytest.raises(ProfileError, match=line):
+        limits.of(Site(name="x", prior=prior))
+
+
+def test_without_a_prior_the_profiles_holds() -> None:
+    assert limits.of(Site(name="x")).prior["as recorded"] == pytest.approx(0.80 / 1.005)
