@@ -110,6 +110,8 @@ class Drop:
     """Measured less computed; its ``u`` holds both doubts with what they share."""
     current: Figure
     """In the circuit's first run, in that round."""
+    by: str
+    """How it was measured: ``two voltages`` or ``direct drops``."""
 
 
 @dataclass(frozen=True, slots=True)

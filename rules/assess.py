@@ -1,0 +1,163 @@
+"""
+The centre: ``assess(site, limits) -> Assessment``, pure, the same answer for the same record.
+
+``prepare`` solves the network once a saved change; ``assess_circuit`` judges one circuit in it, quick enough
+for each keystroke; ``assess`` is ``prepare``, every circuit, and the rules about boards, sources and the site.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from importlib.metadata import version
+
+from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, PointVoltage, Severity, Status
+from rules.case import CircuitCase, Context, case_of
+from rules.cautions import cautions_of
+from rules.checks.rc01_record_incomplete import gaps_of
+from rules.consistency import problems
+from rules.index import Index
+from rules.limits import Limits
+from rules.network import network_of
+from rules.record import Circuit, Figure, Reading, Site
+from rules.rounds import visit_ranks
+from rules.rule import BoardCase, SiteCase, judge, switched_off
+from rules.runs import figures
+
+CAUSES_NOT_JUDGED = "the drop agrees with the record within its doubt; causes are not yet judged"
+
+
+def assess(site: Site, limits: Limits) -> Assessment:
+    """Everything that can be said of a site under its limits."""
+    context = prepare(site, limits)
+    index = context.index
+    findings, gaps = judge(SiteCase(context), "site")
+    gaps = [*switched_off(limits), *gaps]
+    for about, rows in (("source", index.walked_sources), ("board", index.walked_boards)):
+        for row in rows:
+            found, open_ = judge(BoardCase(context, row), "source" if about == "source" else "board")
+            findings += found
+            gaps += open_
+    of_circuit: dict[str, list[Finding]] = {}
+    for finding in findings:
+        if finding.circuit is not None:
+            of_circuit.setdefault(finding.circuit, []).append(finding)
+    results = [
+        assess_circuit(context, circuit, more=of_circuit.get(circuit.tag, ())) for circuit in index.walked_circuits
+    ]
+    for result in results:
+        findings += [finding for finding in result.findings if finding not in of_circuit.get(result.circuit, ())]
+        gaps += result.not_judged
+    return Assessment(
+        program=version("ohmwalk"),
+        site=site.name,
+        limits=limits.name,
+        circuits=tuple(results),
+        findings=tuple(findings),
+        not_judged=tuple(gaps),
+        cautions=tuple(caution.text for caution in cautions_of(site)),
+    )
+
+
+def prepare(site: Site, limits: Limits) -> Context:
+    """Index, resistances, network and visits of a site: what circuits are judged in."""
+    index = Index(site)
+    known = figures(site.runs, site, limits)
+    return Context(
+        site=site,
+        limits=limits,
+        index=index,
+        figures=known,
+        network=network_of(index, known, limits),
+        visit_ranks=visit_ranks(index),
+        problems=problems(site),
+    )
+
+
+def assess_circuit(
+    context: Context,
+    circuit: Circuit,
+    readings: Sequence[Reading] | None = None,
+    more: Sequence[Finding] = (),
+) -> CircuitResult:
+    """
+    Judge one circuit in a prepared site.
+
+    Parameters
+    ----------
+    context : Context
+        From ``prepare``; the rest of the site stays as in it.
+    circuit : Circuit
+        One of the context's circuits.
+    readings : sequence of Reading, optional
+        Readings of one visit that stand in for the recorded ones: what is being typed.
+    more : sequence of Finding, optional
+        What rules about the site say of this circuit.
+    """
+    case = case_of(context, circuit, readings)
+    found, gaps = judge(case, "circuit")
+    findings = sorted([*more, *found], key=lambda finding: finding.severity.rank)
+    status, why = _status(case, findings)
+    known = [load for load in case.loads if not load.gap]
+    worst = max(known, key=lambda load: load.drop_v, default=None)
+    return CircuitResult(
+        circuit=circuit.tag,
+        circuit_id=circuit.id,
+        visit=case.visit,
+        status=status,
+        why=why,
+        drop=case.drop,
+        allowed_drop_percent=case.allowed_drop_percent,
+        nominal_voltage_v=case.nominal_v,
+        design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
+        points=_points(case),
+        findings=tuple(findings),
+        not_judged=tuple(gaps),
+    )
+
+
+def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str]:
+    """The first that holds; ``sound`` needs the probabilities of the diagnosis, which is not there yet."""
+    urgent = [finding for finding in findings if finding.severity in (Severity.IMMEDIATE, Severity.SOON)]
+    if urgent:
+        return Status.ACT, urgent[0].why
+    gaps = gaps_of(case)
+    if gaps:
+        return Status.INCOMPLETE, gaps[0][1]
+    if not case.visit:
+        return (
+            Status.MEASURE,
+            (case.circuit.not_tested and f"not tested: {case.circuit.not_tested}") or "nothing was read",
+        )
+    watched = [finding for finding in findings if finding.severity is Severity.WATCH]
+    if watched:
+        return Status.WATCH, watched[0].why
+    return Status.MEASURE, CAUSES_NOT_JUDGED if case.drop else case.drop_gap
+
+
+def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:
+    """Design voltages of the circuit's points; ``worst`` waits for the diagnosis."""
+    network = case.context.network
+    nodes = network.nodes_of.get(case.circuit.id)
+    if nodes is None:
+        return ()
+    lowest: dict[str, float] = {}
+    for load in case.loads:
+        if load.load.lowest_voltage_v is not None:
+            limit = load.load.lowest_voltage_v
+            lowest[load.load.point] = max(limit, lowest.get(load.load.point, limit))
+    points = []
+    for point, node in nodes.items():
+        if point == "bus" and not case.tree.device_ohm:
+            continue
+        known = not network.gap_of(node) and not network.design.collapsed[node]
+        points.append(
+            PointVoltage(
+                point,
+                design=Figure(float(network.design.voltage_v[node]), "V") if known else None,
+                lowest=Figure(lowest[point], "V") if point in lowest else None,
+            )
+        )
+    return tuple(points)
+
+
+__all__ = ["NotJudged", "assess", "assess_circuit", "prepare"]

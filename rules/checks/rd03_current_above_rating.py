@@ -1,0 +1,55 @@
+"""RD03: a current reading lies above the rating of the circuit's device."""
+
+from collections.abc import Iterator
+
+from rules.assessment import Citation, Finding, Severity
+from rules.calc.doubt import probability_above, total
+from rules.case import CircuitCase
+from rules.errors import MissingData
+from rules.record import Figure
+from rules.rule import rule
+from rules.units import show, show_against
+
+
+@rule(
+    id="RD03",
+    title="Current above the device rating",
+    about="circuit",
+    severity=Severity.SOON,
+    remedy="Zero the clamp and read again; then compare the rating on the device with the record, and find out what draws it.",
+    caution="An overloaded device and its terminals can be hot enough to burn. Do not reset or replace a device until the cause is "
+    "known; rating and load are decided under local code by a licensed person.",
+    source=Citation("IEC 60364-4-43", "2008", "433.1: design current not above rated current", "from-memory"),
+)
+def current_above_rating(case: CircuitCase) -> Iterator[Finding]:
+    """
+    A clamp showed more than the device is rated for, beyond doubt.
+
+    **Finds**: 12.4 A by a 1.5 % clamp behind a 10 A fuse.
+
+    **Leaves alone**: 10.1 A by the same clamp, which is within its doubt; a device of 0 A is refused earlier.
+    """
+    read = [
+        (this, point, Figure(value, "A", u))
+        for this in case.rounds
+        for point, terms in this.amps.items()
+        for value, u in [total(terms)]
+    ]
+    if not read:
+        return
+    if case.circuit.device == "none":
+        return
+    rating = case.circuit.rated_current_a
+    if rating is None:
+        raise MissingData("the rating of the device is not recorded")
+    this, point, amps = max(read, key=lambda item: abs(item[2].value))
+    if probability_above(abs(amps.value), rating, amps.u or 0.0) < case.limits["decision.beyond_doubt"]:
+        return
+    shown, limit = show_against(abs(amps.value), rating, "A")
+    run = case.tree.ends.get(point)
+    yield current_above_rating.finding(
+        case,
+        f"{run.name if run else point}, round {this.name}",
+        f"{shown} was read ({show(abs(amps.value), 'A', amps.u)}), above the device's {limit}",
+        numbers={"current": amps, "rating": Figure(rating, "A")},
+    )

@@ -1,0 +1,346 @@
+"""
+The measured side of a circuit: its rounds, and the drop of each against the computed one.
+
+Every figure here is a weighted sum of readings (``rules.calc.doubt``), so that what two readings by one
+meter share is carried through to the excess.
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from collections import defaultdict
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from statistics import mean, stdev
+
+from rules.assessment import Drop
+from rules.calc.doubt import Weighted, total
+from rules.errors import MissingData
+from rules.index import Index
+from rules.limits import Limits
+from rules.meters import worth
+from rules.record import Circuit, Figure, Reading, Run
+from rules.runs import Carrying, RunFigures, record_variance
+
+RUN_PLACE = re.compile(r"run (\d+)( start| end)?$")
+
+
+@dataclass(frozen=True, slots=True)
+class Tree:
+    """A circuit as a tree of points, with what it draws in design."""
+
+    circuit: Circuit
+    runs: tuple[Run, ...]
+    ends: Mapping[str, Run]
+    """The run that arrives at each point; ``way`` and ``bus`` have none."""
+    figures: Mapping[str, RunFigures]
+    """By run id, at the temperature of the visit."""
+    device_ohm: float | None
+    """Of the device between ``bus`` and ``way``; ``None`` where it has no figure."""
+    design_current_a: Mapping[str, float | None]
+    """In the branch that arrives at each point (``way``: through the device); ``None`` where not known."""
+    taps: frozenset[str]
+    """Points at which current leaves: loads, boards, converters and forks."""
+
+    def path(self, start: str, end: str) -> list[str]:
+        """
+        The points after ``start`` up to ``end``, walking away from the source.
+
+        Raises
+        ------
+        MissingData
+            If ``end`` does not lie behind ``start``.
+        """
+        points: list[str] = []
+        here = end
+        while here != start:
+            points.append(here)
+            if here == "way" and start == "bus":
+                break
+            run = self.ends.get(here)
+            if run is None or len(points) > len(self.ends) + 2:
+                raise MissingData(f"no way leads from {start} to {end}")
+            here = run.from_point
+        return points[::-1]
+
+
+@dataclass(frozen=True, slots=True)
+class Round:
+    """One load state of a circuit."""
+
+    name: str
+    readings: tuple[Reading, ...]
+    volts: Mapping[str, tuple[Weighted, ...]]
+    """Voltage between the legs at each point read, as a sum of readings."""
+    amps: Mapping[str, tuple[Weighted, ...]]
+    """Current in the branch that arrives at each point, where a clamp read it."""
+    direct: Mapping[tuple[str, str], tuple[Weighted, ...]]
+    """Drop over both legs between two points, read with a long lead."""
+    poor: tuple[str, ...]
+    """What was read with an instrument that is not recorded."""
+    wander_v: float
+
+
+def visit_of(circuit_id: str, index: Index, ranks: Mapping[str, tuple[float, str, int]]) -> str | None:
+    """The latest visit with readings on a circuit; ``None`` where nothing was read."""
+    visits = {reading.visit_or_default for reading in judged(index.readings_of(circuit_id), index)}
+    return max(visits, key=lambda visit: ranks[visit]) if visits else None
+
+
+def judged(readings: Iterable[Reading], index: Index) -> list[Reading]:
+    """Readings without the replaced ones."""
+    return [reading for reading in readings if reading.id not in index.replaced]
+
+
+def visit_ranks(index: Index) -> dict[str, tuple[float, str, int]]:
+    """What orders visits: their place in the record, else their first ``taken_at``, else first appearance."""
+    listed = sorted(index.site.visits, key=lambda row: math.inf if row.walk_order is None else row.walk_order)
+    ranks: dict[str, tuple[float, str, int]] = {row.tag: (float(n), "", 0) for n, row in enumerate(listed)}
+    first: dict[str, str] = {}
+    appeared: dict[str, int] = {}
+    for n, reading in enumerate(index.site.readings):
+        visit = reading.visit_or_default
+        appeared.setdefault(visit, n)
+        if reading.taken_at:
+            first[visit] = min(first.get(visit, reading.taken_at), reading.taken_at)
+    for visit, n in appeared.items():
+        ranks.setdefault(visit, (math.inf, first.get(visit, ""), n))
+    return ranks
+
+
+def rounds_of(readings: Sequence[Reading], tree: Tree, index: Index, limits: Limits) -> tuple[Round, ...]:
+    """The rounds of one visit in the order of their first readings."""
+    by_name: dict[str, list[Reading]] = defaultdict(list)
+    for reading in readings:
+        by_name[reading.round].append(reading)
+    return tuple(_round(name, rows, tree, index, limits) for name, rows in by_name.items())
+
+
+def _round(name: str, readings: list[Reading], tree: Tree, index: Index, limits: Limits) -> Round:
+    pairs: dict[str, list[Reading]] = defaultdict(list)
+    poles: dict[tuple[str, str], list[Reading]] = defaultdict(list)
+    drops: dict[tuple[str, str, str], list[Reading]] = defaultdict(list)
+    amps: dict[str, list[Reading]] = defaultdict(list)
+    for reading in readings:
+        if reading.quantity == "voltage" and reading.leg in ("", "both"):
+            pairs[reading.at].append(reading)
+        elif reading.quantity == "voltage":
+            poles[reading.at, reading.leg].append(reading)
+        elif reading.quantity == "drop":
+            drops[reading.at, reading.to, reading.leg or "both"].append(reading)
+        elif reading.quantity == "current" and (point := _branch(reading.at, tree)):
+            amps[point].append(reading)
+    wander = _wander(pairs.values(), limits)
+    poor: list[str] = []
+
+    def average(rows: list[Reading], sign: float = 1.0, wander_v: float = 0.0) -> tuple[Weighted, ...]:
+        weighed = []
+        for row in rows:
+            value = worth(row, index, limits, wander_v)
+            if not value.known:
+                poor.append(f"{row.quantity} at {row.at}")
+            weighed.append(Weighted(sign / len(rows), value.shown))
+        return tuple(weighed)
+
+    volts = {point: average(rows, wander_v=wander) for point, rows in pairs.items()}
+    for point in dict.fromkeys(point for point, _ in poles):
+        both = poles.get((point, "positive")), poles.get((point, "negative"))
+        if point not in volts and both[0] and both[1]:
+            volts[point] = average(both[0], wander_v=wander) + average(both[1], -1.0, wander)
+    direct: dict[tuple[str, str], tuple[Weighted, ...]] = {}
+    for start, end in dict.fromkeys((start, end) for start, end, _ in drops):
+        legs = [drops.get((start, end, leg)) for leg in ("both", "positive", "negative")]
+        if legs[0]:
+            direct[start, end] = average(legs[0])
+        elif legs[1] and legs[2]:
+            direct[start, end] = average(legs[1]) + average(legs[2])
+    clamped = {point: average(rows) for point, rows in amps.items()}
+    return Round(name, tuple(readings), volts, clamped, direct, tuple(dict.fromkeys(poor)), wander)
+
+
+def _branch(at: str, tree: Tree) -> str:
+    """The point at which the clamped branch arrives."""
+    if at == "way":
+        return at
+    matched = RUN_PLACE.match(at)
+    number = int(matched[1]) if matched else 0
+    return next((point for point, run in tree.ends.items() if run.number == number), "")
+
+
+def _wander(pairs: Iterable[list[Reading]], limits: Limits) -> float:
+    """Standard deviation of repeated readings of one point in the round, else the profile's figure. [V]"""
+    repeated = [rows for rows in pairs if len(rows) > 1]
+    if not repeated:
+        return limits["source.wander_v"]
+    freedom = sum(len(rows) - 1 for rows in repeated)
+    return math.sqrt(sum(stdev(row.value for row in rows) ** 2 * (len(rows) - 1) for rows in repeated) / freedom)
+
+
+@dataclass(frozen=True, slots=True)
+class Current:
+    """The current in one branch of a round: readings with weights, and what a share of loads adds."""
+
+    terms: tuple[Weighted, ...]
+    share_u: float = 0.0
+    """Standard uncertainty of what taps draw between the branch that was read and this one. [A]"""
+
+    @property
+    def value_a(self) -> float:
+        return sum(term.weight * term.shown.value for term in self.terms)
+
+
+def current_at(point: str, this: Round, tree: Tree, limits: Limits) -> Current:
+    """
+    Current in the branch that arrives at a point: read there, else by the loads' share of the nearest reading.
+
+    Raises
+    ------
+    MissingData
+        If no current was read in the round, or the loads' share is not known.
+    """
+    if point in this.amps:
+        return Current(this.amps[point])
+    if not this.amps:
+        raise MissingData(f"no current was read in round {this.name}")
+    above = _line_up(point, tree)
+    near = next((p for p in above[1:] if p in this.amps), "")
+    if not near:
+        behind = [p for p in this.amps if point in _line_up(p, tree)]
+        if not behind:
+            raise MissingData(f"round {this.name} has no current on the way to {point} or behind it")
+        near = min(behind, key=lambda p: len(_line_up(p, tree)))
+    ratio = _share(point, near, tree)
+    terms = tuple(Weighted(term.weight * ratio, term.shown) for term in this.amps[near])
+    between = abs(1 - ratio) * abs(sum(term.weight * term.shown.value for term in this.amps[near]))
+    return Current(terms, limits["load_share.relative"] * between)
+
+
+def _line_up(point: str, tree: Tree) -> list[str]:
+    """A point and all before it, up to ``way``."""
+    line = [point]
+    while (run := tree.ends.get(line[-1])) is not None and len(line) <= len(tree.ends) + 1:
+        line.append(run.from_point)
+    return line
+
+
+def _share(point: str, near: str, tree: Tree) -> float:
+    line = _line_up(near, tree) if point in _line_up(near, tree) else _line_up(point, tree)
+    low, high = sorted((line.index(point), line.index(near)))
+    if not any(p in tree.taps for p in line[low + 1 : high + 1]):
+        return 1.0
+    wanted, known = tree.design_current_a.get(point), tree.design_current_a.get(near)
+    if wanted is None or not known:
+        raise MissingData(f"the current to {point} was not read, and its share of the loads is not known")
+    return wanted / known
+
+
+def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
+    """
+    Measured against computed drop, in the round with the highest current at the circuit's first run.
+
+    From the first point read (``bus`` before ``way``, where the device between them has a figure) to the
+    read point with the largest computed drop from it; by two voltages or, where given, by direct drops.
+
+    Raises
+    ------
+    MissingData
+        If the readings do not give it, with the reason.
+    """
+    if not tree.runs:
+        raise MissingData("no run is recorded")
+    first = tree.runs[0].to_point
+    able: list[tuple[float, Round]] = []
+    reason = MissingData("no voltages were read at two points")
+    for this in rounds:
+        try:
+            able.append((abs(current_at(first, this, tree, limits).value_a), this))
+        except MissingData as error:
+            reason = error
+    if not able:
+        raise reason
+    this = max(able, key=lambda pair: pair[0])[1]
+    points = set(this.volts) | {point for pair in this.direct for point in pair}
+    order = ["bus", "way", *(run.to_point for run in tree.runs)]
+    read = [point for point in order if point in points]
+    if tree.device_ohm is None and len(read) > 1 and read[0] == "bus":
+        read = read[1:]  # the device is not recorded: what it loses is not the wiring's
+        if read[0] != "way":
+            raise MissingData("the device between bus and way is not recorded, and way was not read")
+    if len(read) < 2:
+        raise MissingData(f"round {this.name} has no voltages at two points, nor a drop over both legs")
+    reached = []
+    for end in read[1:]:
+        try:
+            reached.append(_compare(read[0], end, this, tree, limits))
+        except MissingData as error:
+            reason = error
+    if not reached:
+        raise reason
+    return max(reached, key=lambda drop: drop.computed.value)
+
+
+def _compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
+    path = tree.path(start, end)
+    measured, by = _measured(start, path, this)
+    carrying: list[Carrying] = []
+    terms: list[Weighted] = []
+    own_variance = share_v = value = 0.0
+    for point in path:
+        current = current_at(point, this, tree, limits)
+        if point == "way":
+            ohm = tree.device_ohm or 0.0
+            own_variance += (limits["device_doubt.relative"] * ohm * current.value_a) ** 2
+        else:
+            run = tree.figures[tree.ends[point].id]
+            if run.gap:
+                raise MissingData(run.gap)
+            ohm = run.loop_ohm
+            carrying.append(Carrying(run, current.value_a))
+        value += ohm * current.value_a
+        share_v += ohm * current.share_u
+        terms += [Weighted(ohm * term.weight, term.shown) for term in current.terms]
+    # what taps draw is one doubt for the whole path: it errs alike in every run behind it
+    own_variance += record_variance(carrying, limits) + share_v**2
+    measured_v, measured_u = total(measured)
+    _, current_u = total(terms)
+    against = [*measured, *(Weighted(-term.weight, term.shown) for term in terms)]
+    _, readings_u = total(against)
+    first, first_u = total(current_at(path[0], this, tree, limits).terms)
+    return Drop(
+        round=this.name,
+        start=start,
+        end=end,
+        measured=Figure(measured_v, "V", measured_u),
+        computed=Figure(value, "V", math.sqrt(current_u**2 + own_variance)),
+        excess=Figure(measured_v - value, "V", math.sqrt(readings_u**2 + own_variance)),
+        current=Figure(first, "A", first_u),
+        by=by,
+    )
+
+
+def _measured(start: str, path: list[str], this: Round) -> tuple[list[Weighted], str]:
+    """The drop over a path as a sum of readings: by direct drops where they cover it, else by two voltages."""
+    end = path[-1]
+    order = {point: n for n, point in enumerate([start, *path])}
+    hops = {pair: terms for pair, terms in this.direct.items() if pair[0] in order and pair[1] in order}
+    here, chain = start, list[Weighted]()
+    while here != end:
+        ahead = [pair for pair in hops if pair[0] == here and order[pair[1]] > order[here]]
+        if not ahead:
+            break
+        longest = max(ahead, key=lambda pair: order[pair[1]])
+        chain += hops[longest]
+        here = longest[1]
+    if here == end:
+        return chain, "direct drops"
+    if start in this.volts and end in this.volts:
+        ends = [*this.volts[start], *(Weighted(-term.weight, term.shown) for term in this.volts[end])]
+        return ends, "two voltages"
+    raise MissingData(f"round {this.name} has no voltages at {start} and {end}")
+
+
+def temperature_read(readings: Iterable[Reading], number: int) -> float | None:
+    """Mean of the temperatures read on a run's conductor in a visit. [degC]"""
+    values = [row.value for row in readings if row.quantity == "temperature" and row.at == f"run {number}"]
+    return mean(values) if values else None

@@ -1,0 +1,171 @@
+"""The machinery of rules: one rule, one file in ``rules/checks/``, found by walking that folder."""
+
+from __future__ import annotations
+
+import importlib
+import pkgutil
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass
+from functools import cache
+from typing import Any, Literal, TypeAlias
+
+from rules.assessment import Citation, Finding, NotJudged, Severity
+from rules.case import CircuitCase, Context
+from rules.errors import RulesError
+from rules.limits import Limits
+from rules.record import Board, Figure, Source
+
+About: TypeAlias = Literal["circuit", "board", "source", "site"]
+
+
+@dataclass(frozen=True, slots=True)
+class BoardCase:
+    """A board or source for the rules about them."""
+
+    context: Context
+    row: Board | Source
+
+    @property
+    def tag(self) -> str:
+        return self.row.tag
+
+
+@dataclass(frozen=True, slots=True)
+class SiteCase:
+    """The whole site for the rules about it."""
+
+    context: Context
+
+
+Case: TypeAlias = CircuitCase | BoardCase | SiteCase
+
+
+@dataclass(frozen=True, slots=True)
+class Rule:
+    """One rule with all that is said of it in one place."""
+
+    id: str
+    title: str
+    about: About
+    severity: Severity
+    remedy: str
+    caution: str
+    source: Citation
+    check: Callable[[Any], Iterator[Finding | NotJudged]]
+
+    @property
+    def text(self) -> str:
+        """What it finds and what it leaves alone."""
+        return (self.check.__doc__ or "").strip()
+
+    def finding(
+        self,
+        case: Case,
+        where: str,
+        why: str,
+        *,
+        numbers: Mapping[str, Figure],
+        severity: Severity | None = None,
+        remedy: str | None = None,
+        source: str | None = None,
+        cause: str | None = None,
+        consequences: tuple[str, ...] = (),
+        as_circuit: str | None = None,
+    ) -> Finding:
+        """
+        A finding of this rule; its ``id`` is built from rule, place and ``where``.
+
+        ``as_circuit`` is for rules about the site that report on a circuit.
+        """
+        circuit = case.tag if isinstance(case, CircuitCase) else as_circuit
+        board = case.tag if isinstance(case, BoardCase) else None
+        place = circuit if circuit is not None else f"board {board}" if board is not None else "site"
+        setting = case.context.limits.rules.get(self.id)
+        if setting is not None and setting.severity is not None:
+            severity = setting.severity
+        return Finding(
+            id="/".join(part for part in (self.id, place, where) if part),
+            rule=self.id,
+            circuit=circuit,
+            board=board,
+            where=where,
+            severity=severity or self.severity,
+            cause=cause,
+            title=self.title,
+            why=why,
+            numbers=dict(numbers),
+            remedy=remedy or self.remedy,
+            caution=self.caution,
+            source=source or str(self.source),
+            consequences=consequences,
+        )
+
+    def gap(self, case: Case, where: str, why: str) -> NotJudged:
+        """What this rule could not judge at one place; the rest of the case goes on."""
+        return NotJudged(self.id, case.tag if isinstance(case, CircuitCase) else None, where, why)
+
+
+def rule(
+    *,
+    id: str,  # noqa: A002 - the rule's own word for it
+    title: str,
+    about: About,
+    severity: Severity,
+    remedy: str,
+    caution: str,
+    source: Citation,
+) -> Callable[[Callable[[Any], Iterator[Finding | NotJudged]]], Rule]:
+    """Make a rule of a function that yields findings, and what it could not judge, about one case."""
+
+    def made(check: Callable[[Any], Iterator[Finding | NotJudged]]) -> Rule:
+        return Rule(id, title, about, severity, remedy, caution, source, check)
+
+    return made
+
+
+@cache
+def catalogue() -> tuple[Rule, ...]:
+    """Every rule in ``rules/checks/``, by id."""
+    package = importlib.import_module("rules.checks")
+    found: dict[str, Rule] = {}
+    for entry in pkgutil.iter_modules(package.__path__):
+        module = importlib.import_module(f"rules.checks.{entry.name}")
+        found |= {item.id: item for item in vars(module).values() if isinstance(item, Rule)}
+    return tuple(found[name] for name in sorted(found))
+
+
+def judge(case: Case, about: About) -> tuple[list[Finding], list[NotJudged]]:
+    """
+    What all rules about one kind of thing say of one case.
+
+    A rule that misses something is reported as not judged, and the others go on; rules that the
+    profile switches off are left out (``switched_off`` reports them once).
+    """
+    circuit = case.tag if isinstance(case, CircuitCase) else None
+    where = case.tag if isinstance(case, BoardCase) else ""
+    findings: list[Finding] = []
+    gaps: list[NotJudged] = []
+    for this in catalogue():
+        if this.about != about:
+            continue
+        setting = case.context.limits.rules.get(this.id)
+        if setting is not None and setting.off:
+            continue
+        try:
+            for said in this.check(case):
+                if isinstance(said, Finding):
+                    findings.append(said)
+                else:
+                    gaps.append(said)
+        except RulesError as error:
+            gaps.append(NotJudged(this.id, circuit, where, str(error)))
+    return findings, gaps
+
+
+def switched_off(limits: Limits) -> list[NotJudged]:
+    """The rules that a profile switches off, each with the profile's reason."""
+    return [
+        NotJudged(this.id, None, "", f"switched off by the limits profile: {setting.reason}")
+        for this in catalogue()
+        if (setting := limits.rules.get(this.id)) is not None and setting.off
+    ]
