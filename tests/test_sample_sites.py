@@ -1,0 +1,125 @@
+"""The sample sites: a check gives exactly the findings that each folder states, and their records hold together."""
+
+from __future__ import annotations
+
+import csv
+import tomllib
+from collections import Counter
+from functools import cache
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from audit.intake.folder import read_folder
+from audit.opening import judge_site
+from rules.assessment import Assessment
+from rules.consistency import problems
+from rules.index import Index
+from rules.meters import instrument_row
+from rules.record import TABLES, Site
+from sample_sites.catalogue import EXPECTED, SAMPLE_SITES, SampleSite, UnknownSampleSite, sample_site
+
+every_site = pytest.mark.parametrize("sample", SAMPLE_SITES, ids=lambda sample: sample.name)
+INVENTED = "Invented building for demonstration; no real place, person or product"
+
+
+@cache
+def record_of(sample: SampleSite) -> Site:
+    """The record of a sample site, read where it lies, stated findings beside it."""
+    return read_folder(Path(str(sample.folder)))
+
+
+@cache
+def assessment_of(sample: SampleSite) -> Assessment:
+    return judge_site(record_of(sample))
+
+
+def stated(sample: SampleSite) -> dict[str, Any]:
+    """What the folder states: findings that a check must give, and the faults that were put into it."""
+    return tomllib.loads(sample.folder.joinpath(EXPECTED).read_text(encoding="utf-8"))
+
+
+@every_site
+def test_check_gives_exactly_the_stated_findings(sample: SampleSite) -> None:
+    given = Counter((f.rule, f.circuit, f.where, str(f.severity)) for f in assessment_of(sample).findings)
+    expected = Counter((f["rule"], f["circuit"], f["where"], f["severity"]) for f in stated(sample)["finding"])
+    assert given == expected
+
+
+@every_site
+def test_every_seeded_fault_is_found_and_nothing_else(sample: SampleSite) -> None:
+    seeded = {fault["circuit"] for fault in stated(sample)["seeded"]}
+    assert {finding.circuit for finding in assessment_of(sample).findings} == seeded
+
+
+@every_site
+def test_site_is_large_enough_to_show_the_program(sample: SampleSite) -> None:
+    assert 18 <= len(record_of(sample).circuits) <= 24
+    assert len(assessment_of(sample).findings) >= 6
+
+
+@every_site
+def test_notes_say_that_the_building_is_invented(sample: SampleSite) -> None:
+    assert INVENTED in record_of(sample).notes
+    assert "(invented)" in record_of(sample).name
+
+
+@every_site
+def test_record_holds_together(sample: SampleSite) -> None:
+    assert problems(record_of(sample)) == ()
+
+
+@every_site
+def test_every_row_of_every_table_is_read(sample: SampleSite) -> None:
+    record, files = record_of(sample), sample.files()
+    tables = {name.removesuffix(".csv") for name in files if name.endswith(".csv")}
+    assert tables == {"sources", "boards", "circuits", "runs", "loads", "instruments", "visits", "readings"}
+    assert set(files) == {f"{table}.csv" for table in tables} | {"site.toml"}
+    for table in TABLES:
+        text = files.get(f"{table}.csv", b"").decode("utf-8")
+        assert len(record.table(table)) == max(0, len(list(csv.reader(text.splitlines()))) - 1)
+
+
+@every_site
+def test_copy_without_the_stated_findings_is_the_same_site(sample: SampleSite, tmp_path: Path) -> None:
+    for name, content in sample.files().items():
+        (tmp_path / name).write_bytes(content)
+    assert not (tmp_path / EXPECTED).exists()
+    assert read_folder(tmp_path) == record_of(sample)
+
+
+@every_site
+def test_every_circuit_has_its_place_in_the_walk(sample: SampleSite) -> None:
+    record = record_of(sample)
+    assert all(board.location and board.walk_order is not None for board in record.boards)
+    assert all(circuit.location and circuit.walk_order is not None for circuit in record.circuits)
+    assert [circuit.tag for circuit in Index(record).walked_circuits] == [circuit.tag for circuit in record.circuits]
+
+
+@every_site
+def test_readings_are_what_their_meters_can_show(sample: SampleSite) -> None:
+    index = Index(record_of(sample))
+    shown = 0
+    for reading in record_of(sample).readings:
+        row = instrument_row(reading, index)
+        if row is None:
+            continue
+        shown += 1
+        assert row.resolution is not None
+        steps = reading.value / row.resolution
+        assert steps == pytest.approx(round(steps), abs=1e-6)
+        assert row.full_scale is None or abs(reading.value) <= row.full_scale
+    assert shown > 80
+
+
+def test_the_default_is_the_48_v_plant() -> None:
+    assert sample_site() is sample_site("plant")
+    assert record_of(sample_site()).nominal_voltage_v == 48
+
+
+def test_unknown_name_is_refused_with_the_nearest() -> None:
+    with pytest.raises(
+        UnknownSampleSite, match="no sample site 'plan'; the nearest is 'plant'; there are: plant, doors"
+    ):
+        sample_site("plan")
