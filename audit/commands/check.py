@@ -1,0 +1,43 @@
+"""``ohmwalk check``: run every rule and print the findings."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+
+import click
+
+from rules.assessment import Severity
+
+SITE = click.argument("site", type=click.Path(path_type=Path))
+
+
+@click.command(name="check")
+@SITE
+@click.option("--json", "as_json_", is_flag=True, help="Print one JSON object instead of text.")
+@click.option("--circuit", metavar="TAG", help="Only this circuit.")
+@click.option("--visit", metavar="NAME", help="Judge on this visit instead of the latest.")
+@click.option(
+    "--fail-on",
+    type=click.Choice([str(severity) for severity in Severity]),
+    help="Exit with 1 if a finding is at or above this severity.",
+)
+def command(site: Path, as_json_: bool, circuit: str | None, visit: str | None, fail_on: str | None) -> int:
+    """Run every rule on SITE, a site folder, and print the findings."""
+    from audit.opening import judge_site, only, open_site
+
+    record = open_site(site)
+    assessment = judge_site(record, visit)
+    if circuit is not None:
+        assessment = only(assessment, circuit)
+    if as_json_:
+        from audit.report.as_json import as_json
+
+        click.echo(json.dumps(as_json(assessment), ensure_ascii=False, indent=1, allow_nan=False))
+    else:
+        from audit.report.text import print_check
+
+        print_check(record, assessment)
+    if fail_on is None:
+        return 0
+    return int(any(finding.severity.rank <= Severity(fail_on).rank for finding in assessment.findings))

@@ -1,0 +1,29 @@
+"""``ohmwalk report``: write the audit report of a site."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+AUDIENCES = ("electrician", "inspector", "supervisor")
+
+
+@click.command(name="report")
+@click.argument("site", type=click.Path(path_type=Path))
+@click.option("--to", "target", required=True, type=click.Path(path_type=Path), help="Its ending chooses the form.")
+@click.option("--for", "audience", type=click.Choice(AUDIENCES), default="inspector", show_default=True)
+@click.option("--visit", metavar="NAME", help="Judge on this visit instead of the latest.")
+@click.option("--overwrite", is_flag=True, help="Replace an existing file.")
+def command(site: Path, target: Path, audience: str, visit: str | None, overwrite: bool) -> None:
+    """Write the audit report of SITE, a site folder: .html, .md, .csv or .json."""
+    from datetime import datetime
+
+    from audit.opening import judge_site, open_site
+    from audit.report.write import check_target, write_report
+
+    check_target(target, overwrite)
+    record = open_site(site)
+    made_at = datetime.now().astimezone().strftime("%Y-%m-%d %H:%M %z")
+    write_report(record, judge_site(record, visit), target, audience, overwrite=overwrite, made_at=made_at)
+    click.echo(f"wrote {target}", err=True)

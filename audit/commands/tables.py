@@ -1,0 +1,17 @@
+"""``ohmwalk tables``: the reference data in use, with source and status of each group."""
+
+from __future__ import annotations
+
+import click
+
+
+@click.command(name="tables")
+@click.argument("name", required=False)
+def command(name: str | None) -> None:
+    """List the tables of reference data, or print the values of table NAME."""
+    from audit.tables_text import print_table, print_tables
+
+    if name is None:
+        print_tables()
+    else:
+        print_table(name)

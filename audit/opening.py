@@ -1,0 +1,67 @@
+"""Opening what a command was given as SITE, and judging it."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from pathlib import Path
+
+from audit.errors import WrongUse
+from audit.intake.folder import read_folder
+from rules import limits
+from rules.assess import assess
+from rules.assessment import Assessment
+from rules.errors import ProfileError
+from rules.record import Site
+from rules.text import nearest
+
+
+def open_site(path: Path) -> Site:
+    """The record of a site folder."""
+    return read_folder(path)
+
+
+def judge_site(site: Site, visit: str | None = None) -> Assessment:
+    """
+    Assess a site, on one visit if named.
+
+    Raises
+    ------
+    WrongUse
+        If the visit or the limits profile is not there.
+    """
+    if visit is not None:
+        known = list(dict.fromkeys([row.tag for row in site.visits] + [r.visit_or_default for r in site.readings]))
+        if visit not in known:
+            raise WrongUse(f"--visit: no visit {visit!r}{_meant(visit, known)}")
+        site = replace(site, readings=tuple(row for row in site.readings if row.visit_or_default == visit))
+    try:
+        in_force = limits.of(site)
+    except ProfileError as error:
+        raise WrongUse(*(f"site.toml:limits: {line}" for line in str(error).splitlines())) from None
+    return assess(site, in_force)
+
+
+def only(assessment: Assessment, circuit: str) -> Assessment:
+    """
+    The part of an assessment about one circuit.
+
+    Raises
+    ------
+    WrongUse
+        If there is no such circuit.
+    """
+    results = tuple(result for result in assessment.circuits if result.circuit == circuit)
+    if not results:
+        known = [result.circuit for result in assessment.circuits]
+        raise WrongUse(f"--circuit: no circuit {circuit!r}{_meant(circuit, known)}")
+    return replace(
+        assessment,
+        circuits=results,
+        findings=tuple(finding for finding in assessment.findings if finding.circuit == circuit),
+        not_judged=tuple(gap for gap in assessment.not_judged if gap.circuit == circuit),
+    )
+
+
+def _meant(word: str, known: list[str]) -> str:
+    close = nearest(word, known)
+    return f"; did you mean {close!r}?" if close else ""

@@ -1,0 +1,125 @@
+"""One circuit in a report: what is said of it, what is installed, what was read."""
+
+from __future__ import annotations
+
+from audit.report.blocks import Block, Cell, Column, Facts, Paragraph, Section, Table
+from audit.report.phrases import drop_words, figure_words, next_reading_words, status_words
+from audit.report.records import circuit_facts, circuit_line, loads_table, readings_table, runs_table
+from rules.assessment import CircuitResult, Place
+from rules.index import Index
+from rules.limits import Limits
+from rules.record import Figure
+
+MOST_BESIDE = 6
+"""Points that fit beside each other on a page."""
+
+
+def circuit_section(
+    index: Index, limits: Limits, result: CircuitResult, cards: tuple[Block, ...], visit: str | None
+) -> Section:
+    """One circuit: what is said of it, what is installed, what was read; ``visit`` alone where given."""
+    circuit = index.circuits.get(result.circuit_id)
+    blocks: list[Block] = [Facts(_verdict(result)), _drop(result), *cards]
+    description = ""
+    if circuit is not None:
+        description = circuit.description
+        parts = (
+            circuit_line(index, circuit, result),
+            circuit_facts(index, circuit, result),
+            runs_table(index, circuit, limits),
+            loads_table(index, circuit),
+            _points(result),
+            readings_table(index, circuit.id, visit),
+        )
+        blocks += [part for part in parts if part is not None]
+        if not index.readings_of(circuit.id):
+            blocks.append(Paragraph("No reading was taken."))
+    title = " · ".join(text for text in (result.circuit, description, status_words(result.status)) if text)
+    return Section(title, tuple(blocks), level=3)
+
+
+def _verdict(result: CircuitResult) -> tuple[tuple[str, str], ...]:
+    status = status_words(result.status)
+    rows = [("Status", f"{status}: {result.why}" if result.why else status)]
+    if result.drop is None and result.visit:
+        rows.append(("Judged on", f"visit {result.visit}"))
+    rows += [_cause(place) for place in result.causes]
+    if (following := result.next_reading) is not None:
+        said = next_reading_words(following)
+        rows.append(("Read next", f"{said}: {following.why}" if following.why else said))
+        rows.append(("Caution", following.caution))
+    return tuple((label, text) for label, text in rows if text)
+
+
+def _drop(result: CircuitResult) -> Table:
+    """The bar with its figures: of the round that is judged, and computed at design current."""
+    words = drop_words(result)
+    rows: list[tuple[Cell, ...]] = []
+    if (drop := result.drop) is not None:
+        rows.append(
+            (
+                words.bar or "",
+                _lines(figure_words(drop.measured), words.of_allowed),
+                _lines(figure_words(drop.computed), words.computed),
+                figure_words(drop.excess),
+                f"{result.visit}, round {drop.round}\n{drop.start} to {drop.end}, {figure_words(drop.current)}, "
+                f"by {drop.by}",
+            )
+        )
+    if result.design_drop is not None:
+        beside = words if drop is None else None
+        rows.append(
+            (
+                beside.bar or "" if beside else "",
+                beside.of_allowed if beside else "",
+                _lines(figure_words(result.design_drop), beside.computed if beside else ""),
+                "",
+                "at design current, from the board",
+            )
+        )
+    columns = (
+        Column("Drop", share=3), Column("Measured", share=3), Column("Computed", share=3),
+        Column("Difference", share=3), Column("State", share=5),
+    )  # fmt: skip
+    return Table(columns, tuple(rows) or (("", words.of_allowed, "not known", "", ""),))
+
+
+def _lines(*texts: str) -> str:
+    """Different texts, one a line."""
+    return "\n".join(dict.fromkeys(text for text in texts if text))
+
+
+def _cause(place: Place) -> tuple[str, str]:
+    """Its probability, then the cause with its place and extra resistance."""
+    said = f"{place.cause} {place.where}".strip()
+    ohms = (place.best_ohm, place.low_ohm, place.high_ohm)
+    if None not in ohms:
+        best, low, high = (figure_words(Figure(ohm, "ohm")) for ohm in ohms if ohm is not None)
+        said += f", {best} ({low} to {high})"
+    return f"{place.probability:.2f}", said
+
+
+def _points(result: CircuitResult) -> Table | None:
+    """
+    Computed voltages of the points; few points stand beside each other, as on the line.
+
+    ``None`` where the line says it all: only the design voltages are known.
+    """
+    if all(point.worst is None and point.lowest is None for point in result.points):
+        return None
+    names = ("At design", "At worst", "Load's lowest")
+    by_point = [
+        tuple("" if f is None else figure_words(f) for f in (point.design, point.worst, point.lowest))
+        for point in result.points
+    ]
+    kept = [place for place in range(len(names)) if any(texts[place] for texts in by_point)]
+    rows: list[tuple[Cell, ...]]
+    if len(result.points) <= MOST_BESIDE:
+        columns = (Column("Computed"), *(Column(point.point, "right") for point in result.points))
+        rows = [(names[place], *(texts[place] for texts in by_point)) for place in kept]
+        return Table(columns, tuple(rows))
+    columns = (Column("Computed at"), *(Column(names[place], "right") for place in kept))
+    rows = [
+        (point.point, *(texts[place] for place in kept)) for point, texts in zip(result.points, by_point, strict=True)
+    ]
+    return Table(columns, tuple(rows))
