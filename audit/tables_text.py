@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from rich.console import Console
 from rich.table import Table
 from rich.text import Text
 
+from audit.console import PlainConsole
 from audit.errors import WrongUse
 from rules.tables.loader import Group, groups
 from rules.text import nearest
@@ -13,7 +13,7 @@ from rules.text import nearest
 
 def print_tables() -> None:
     """One entry a group: name, title, and where it comes from."""
-    console = Console(highlight=False)
+    console = PlainConsole()
     for group in groups():
         console.print(Text(group.name, style="bold"), Text(group.title))
         console.print(Text(f"    {_origin(group)}", style="dim"))
@@ -28,7 +28,7 @@ def print_table(name: str) -> None:
         meant = f"; did you mean {close!r}?" if close else ""
         raise WrongUse(f"no table {name!r}{meant}; there are: {', '.join(known)}")
     group = known[name]
-    console = Console(highlight=False)
+    console = PlainConsole()
     console.print(Text(group.title, style="bold"))
     console.print(Text(_origin(group)))
     if group.unit:

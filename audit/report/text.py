@@ -17,6 +17,7 @@ from rich.cells import cell_len, set_cell_size
 from rich.console import Console
 from rich.text import Text
 
+from audit.console import PlainConsole
 from audit.report.bar import ASCII, BLOCKS, CELLS, text_bar
 from audit.report.phrases import (
     CAUSES_NOT_JUDGED,
@@ -96,14 +97,19 @@ class Page:
         return in_encoding("▕█▒╵▏▶◀", self.encoding) == "▕█▒╵▏▶◀"
 
 
+class PlainConsole(Console):
+    """A console that leaves a closed pipe to its caller, which decides the exit status."""
+
+    def on_broken_pipe(self) -> None:
+        raise BrokenPipeError
+
+
 def console_for(stream: TextIO) -> Console:
     """A console for a stream: with colour on a terminal, else plain and 80 columns wide."""
     terminal = stream.isatty()
     width = None if terminal else PLAIN_WIDTH
-    console = Console(
-        file=stream, force_terminal=terminal, width=width, highlight=False, markup=False, emoji=False,
-        color_system="auto" if terminal else None,
-    )  # fmt: skip
+    colours = "auto" if terminal else None
+    console = PlainConsole(file=stream, force_terminal=terminal, width=width, color_system=colours)
     console.width = min(console.width, WIDEST)
     return console
 
