@@ -19,6 +19,7 @@ from rules.index import Index
 from rules.problems.settings import SETTINGS, is_profile_file
 from rules.record import TABLES, Row, Run, Site, columns
 from rules.references import feed_text, feeds_text
+from rules.text import clean
 from rules.units import plain
 
 _OUR_FILES = frozenset({"site.toml", *(f"{table}.csv" for table in TABLES)})
@@ -91,10 +92,14 @@ def _check_target(folder: Path, overwrite: bool) -> None:
         return
     if not overwrite:
         raise TargetExists(folder)
-    names = {path.name for path in folder.iterdir()} if folder.is_dir() else {folder.name}
-    own = {name for name in names if name in _OUR_FILES or (name.endswith(".toml") and "site.toml" in names)}
-    if foreign := sorted(names - own):
-        raise WriteFailed(f"{folder} holds {foreign[0]}, which is no part of a site folder; accepted: another name")
+    if not folder.is_dir():
+        raise WriteFailed(f"{folder} is a file, which no folder overwrites; accepted: another name")
+    names = {path.name for path in folder.iterdir()}
+    for path in sorted(folder.iterdir()):
+        is_profile = path.suffix == ".toml" and "site.toml" in names
+        if not path.is_file() or not (path.name in _OUR_FILES or is_profile):
+            what = f"{folder} holds {clean(path.name)}, which is no part of a site folder"
+            raise WriteFailed(f"{what}; accepted: another name")
 
 
 def _move(beside: Path, folder: Path) -> None:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from pathlib import Path
 
 import click
@@ -31,9 +30,9 @@ def command(site: Path, as_json_: bool, circuit: str | None, visit: str | None, 
     if circuit is not None:
         assessment = only(assessment, circuit)
     if as_json_:
-        from audit.report.as_json import as_json
+        from audit.report.as_json import as_json, as_text  # noqa: PLC0415
 
-        click.echo(json.dumps(as_json(assessment), ensure_ascii=False, indent=1, allow_nan=False))
+        click.echo(as_text(as_json(assessment)), nl=False)
     else:
         from audit.report.text import print_check
 

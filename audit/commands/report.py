@@ -7,6 +7,7 @@ from pathlib import Path
 import click
 
 AUDIENCES = ("electrician", "inspector", "supervisor")
+"""As in ``audit.report.content``, which help must not import; a test holds them equal."""
 
 
 @click.command(name="report")

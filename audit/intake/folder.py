@@ -20,10 +20,9 @@ from audit.intake.grid import Grid
 from audit.intake.header import read_header
 from audit.intake.rows import Taken, read_rows, read_tags
 from audit.intake.settings import FILE as SETTINGS_FILE
-from audit.intake.settings import Settings, read_settings, read_toml
+from audit.intake.settings import Settings, place_of, read_settings, read_toml
 from audit.intake.workbook import read_workbook
 from rules.consistency import Problem, problems
-from rules.problems.settings import SETTINGS
 from rules.record import TABLES, Site, columns
 from rules.references import Tags
 from rules.text import either, nearest
@@ -197,8 +196,7 @@ def _is_told(problem: Problem, settings: Settings, taken: Mapping[str, Taken], u
 def _add(problem: Problem, taken: Mapping[str, Taken], faults: Faults) -> None:
     """One problem of the record as a line about the file that it came from."""
     if problem.table == "site":
-        place = list(SETTINGS).index(problem.column) if problem.column in SETTINGS else len(SETTINGS)
-        faults.add(SETTINGS_FILE, problem.text, column=problem.column, order=(0, place))
+        faults.add(SETTINGS_FILE, problem.text, column=problem.column, order=(0, place_of(problem.column)))
         return
     part = taken[problem.table]
     place = [column.name for _, column in columns(problem.table)].index(problem.column)

@@ -35,7 +35,7 @@ class Taken:
     ragged: set[str] = field(default_factory=set)
     """Ids of rows whose cells may stand in the wrong columns."""
     doubtful_circuits: set[str] = field(default_factory=set)
-    """Ids of circuits of which a run could not be read whole."""
+    """Ids of circuits of which a run lacks its number or an end."""
 
 
 def read_tags(grid: Grid, header: Header) -> dict[str, str]:
@@ -74,7 +74,7 @@ def read_rows(grid: Grid, header: Header, tags: Tags, faults: Faults) -> Taken:
             taken.told.add((row.id, heading.column.name))
             if not is_ragged:
                 grid.fault(faults, what, row=line, column=heading.column.name, place=heading.order)
-        if grid.table == "runs" and (is_ragged or any(heading.field == "number" for heading, _ in wrong)):
+        if grid.table == "runs" and not values.keys() >= {"number", "from_point", "to_point"}:
             taken.doubtful_circuits.add(values.get("circuit_id", ""))
     if grid.table == "readings":
         _resolve_replacements(taken)

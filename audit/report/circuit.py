@@ -62,8 +62,8 @@ def _drop(result: CircuitResult) -> Table:
                 _lines(figure_words(drop.measured), words.of_allowed),
                 _lines(figure_words(drop.computed), words.computed),
                 figure_words(drop.excess),
-                f"{result.visit}, round {drop.round}\n{drop.start} to {drop.end}, {figure_words(drop.current)}, "
-                f"by {drop.by}",
+                f"{result.visit}, round {drop.round}, by {drop.by}\n"
+                f"{drop.start} to {drop.end}, {figure_words(drop.current)}",
             )
         )
     if result.design_drop is not None:
@@ -79,7 +79,7 @@ def _drop(result: CircuitResult) -> Table:
         )
     columns = (
         Column("Drop", share=3), Column("Measured", share=3), Column("Computed", share=3),
-        Column("Difference", share=3), Column("State", share=5),
+        Column("Difference", share=3), Column("State", share=6),
     )  # fmt: skip
     return Table(columns, tuple(rows) or (("", words.of_allowed, "not known", "", ""),))
 

@@ -141,8 +141,8 @@ def loads_table(index: Index, circuit: Circuit) -> Table | None:
         for load in index.loads_of(circuit.id)
     ]
     columns = (
-        Column("Load", share=3), Column("At"), Column("Draws", share=4), Column("Needs", share=3),
-        Column("Simultaneous", share=2), Column("Function, remarks", share=4),
+        Column("Load", share=4), Column("At", share=3), Column("Draws", share=5), Column("Needs", share=4),
+        Column("Simultaneous", share=3), Column("Function, remarks", share=5),
     )  # fmt: skip
     return Table(columns, tuple(rows), "Loads") if rows else None
 
@@ -277,8 +277,8 @@ def instruments_table(site: Site) -> Table | None:
     ]
     columns = (
         Column("Meter", share=3), Column("Measures", share=4), Column("Accuracy", "right", share=2),
-        Column("Counts", "right", share=2), Column("Resolution", "right", share=2), Column("Category", share=3),
-        Column("Calibrated until", share=2), Column("Notes", share=4),
+        Column("Counts", "right", share=2), Column("Resolution", "right", share=3), Column("Category", share=4),
+        Column("Calibrated until", share=3), Column("Notes", share=5),
     )  # fmt: skip
     return Table(columns, tuple(rows), "Meters") if rows else None
 

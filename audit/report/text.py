@@ -43,7 +43,7 @@ WIDEST = 110
 """Longer lines are hard to read."""
 
 _LETTERS = {
-    "✓": "+", "…": "...", "±": "+/-", "Ω": "ohm", "µ": "u", "²": "2", "°": " deg ", "×": "x", "−": "-", "–": "-",
+    "✓": "+", "…": "...", "±": "+/-", "Ω": "ohm", "µ": "u", "²": "2", "°": "deg ", "×": "x", "−": "-", "–": "-",
     "—": "-", "·": "-", "“": '"', "”": '"', "’": "'", "≤": "<=", "≥": ">=", "Δ": "delta ", "√": "sqrt ", "\ufffd": "?",
 }  # fmt: skip
 """How signs of ours are written where the encoding has none."""
@@ -95,13 +95,6 @@ class Page:
     def has_blocks(self) -> bool:
         """The encoding holds the characters of the bar."""
         return in_encoding("▕█▒╵▏▶◀", self.encoding) == "▕█▒╵▏▶◀"
-
-
-class PlainConsole(Console):
-    """A console that leaves a closed pipe to its caller, which decides the exit status."""
-
-    def on_broken_pipe(self) -> None:
-        raise BrokenPipeError
 
 
 def console_for(stream: TextIO) -> Console:

@@ -1,5 +1,6 @@
 """VD02: the measured drop is above the computed one beyond doubt."""
 
+import math
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Finding, Severity
@@ -41,6 +42,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding]:
     if probability_above(drop.excess.value, 0.0, drop.excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return
     heat_w = drop.excess.value * abs(drop.current.value)
+    heat_u = math.hypot((drop.excess.u or 0.0) * drop.current.value, drop.excess.value * (drop.current.u or 0.0))
     remarks = []
     if this.wander_v == 0 and drop.by == "two voltages":
         remarks.append("the source is taken as steady, since no point was read twice")
@@ -61,8 +63,8 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding]:
             "computed": drop.computed,
             "excess": drop.excess,
             "current": drop.current,
-            "heat": Figure(heat_w, "W"),
+            "heat": Figure(heat_w, "W", heat_u),
         },
         severity=Severity.SOON if heat_w >= case.limits["heat.soon_w"] else Severity.WATCH,
-        consequences=(f"at this current up to {show(heat_w, 'W')} turn into heat that the record does not explain",),
+        consequences=(f"at this current {show(heat_w, 'W', heat_u)} turn into heat that the record does not explain",),
     )

@@ -45,6 +45,7 @@ def accepted(column: Column, unit: str = "") -> str:
     if column.kind == "choice":
         return either(column.choices)
     words: dict[ColumnKind, str] = {
+        "tag": "a tag",
         "size": "a size such as 2.5 mm2, 12 AWG, 4/0 AWG or 250 kcmil",
         "date": "a date such as 2026-03-14",
         "time": "an ISO 8601 time such as 2026-03-14T09:30",

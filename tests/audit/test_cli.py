@@ -210,3 +210,10 @@ def test_an_old_terminal_that_knows_ascii_alone_gets_its_text(plant: Path) -> No
     done = subprocess.run(call, capture_output=True, env=env, check=True)
     done.stdout.decode("ascii")
     assert b"! act" in done.stdout
+
+
+def test_the_audiences_of_the_command_are_those_of_the_reports() -> None:
+    from audit.commands.report import AUDIENCES
+    from audit.report.content import AUDIENCES as OF_REPORTS
+
+    assert tuple(AUDIENCES) == tuple(OF_REPORTS)
