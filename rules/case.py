@@ -207,7 +207,9 @@ def _computed_u(
     parts: dict[str, list[Carrying]] = defaultdict(list)
     variance = 0.0
     for branch in branches:
-        amps = float(np.nan_to_num(current_a[branch]))
+        amps = float(current_a[branch])
+        if math.isnan(amps):  # a tree that cannot be supplied
+            return math.nan
         run_id = network.run_at[branch]
         if run_id:
             parts[network.circuit_at[branch]].append(Carrying(context.figures[run_id], amps))
