@@ -23,6 +23,8 @@ from rules.rounds import visit_ranks
 from rules.rule import BoardCase, SiteCase, judge, switched_off
 from rules.runs import figures
 
+FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01")
+
 CAUSES_NOT_JUDGED = "the drop agrees with the record within its doubt; causes are not yet judged"
 
 
@@ -119,7 +121,7 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
     """The first that holds; ``sound`` needs the probabilities of the diagnosis, which is not there yet."""
     urgent = [finding for finding in findings if finding.severity in (Severity.IMMEDIATE, Severity.SOON)]
     if urgent:
-        return Status.ACT, urgent[0].why
+        return Status.ACT, min(urgent, key=_weight).why
     gaps = gaps_of(case)
     if gaps:
         return Status.INCOMPLETE, gaps[0][1]
@@ -130,8 +132,13 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
         )
     watched = [finding for finding in findings if finding.severity is Severity.WATCH]
     if watched:
-        return Status.WATCH, watched[0].why
+        return Status.WATCH, min(watched, key=_weight).why
     return Status.MEASURE, CAUSES_NOT_JUDGED if case.drop else case.drop_gap
+
+
+def _weight(finding: Finding) -> tuple[int, bool]:
+    """The most urgent first; of those alike, what was read before what the record alone says."""
+    return finding.severity.rank, finding.rule in FROM_THE_RECORD
 
 
 def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:
