@@ -22,6 +22,7 @@ from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
 from rules.rule import BoardCase, SiteCase, judge, switched_off
 from rules.runs import figures
+from rules.service import service_of
 
 FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01")
 
@@ -112,6 +113,7 @@ def assess_circuit(
         nominal_voltage_v=case.nominal_v,
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
         points=_points(case),
+        service=service_of(case),
         findings=tuple(findings),
         not_judged=tuple(gaps),
     )
