@@ -61,7 +61,8 @@ def _page(stream: TextIO | None) -> Page:
 
 
 def _origin(group: Group) -> str:
-    return f"{group.source} · {group.edition} · {group.status}"
+    edition = f"edition {group.edition}" if group.edition[:1].isdigit() else group.edition
+    return f"{group.source} · {edition} · {group.status}"
 
 
 def _grid(group: Group) -> list[str]:
