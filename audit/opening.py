@@ -7,6 +7,7 @@ from pathlib import Path
 
 from audit.errors import WrongUse
 from audit.intake.folder import read_folder
+from audit.site_file import site_file
 from rules import limits
 from rules.assess import assess
 from rules.assessment import Assessment
@@ -16,8 +17,20 @@ from rules.text import nearest
 
 
 def open_site(path: Path) -> Site:
-    """The record of a site folder."""
-    return read_folder(path)
+    """
+    The record of a site file or a site folder; a file is only read, its bytes are left alone.
+
+    Raises
+    ------
+    IntakeRefused
+        If it is a folder that does not hold together.
+    SiteError
+        If it is a file, but none of a site, or there is nothing of that name.
+    """
+    if path.is_dir():
+        return read_folder(path)
+    with site_file(path) as store:
+        return store.site()
 
 
 def judge_site(site: Site, visit: str | None = None) -> Assessment:

@@ -22,7 +22,7 @@ SITE = click.argument("site", type=click.Path(path_type=Path))
     help="Exit with 1 if a finding is at or above this severity.",
 )
 def command(site: Path, as_json_: bool, circuit: str | None, visit: str | None, fail_on: str | None) -> int:
-    """Run every rule on SITE, a site folder, and print the findings."""
+    """Run every rule on SITE, a site file or a site folder, and print the findings."""
     from audit.opening import judge_site, only, open_site
 
     record = open_site(site)
@@ -30,7 +30,7 @@ def command(site: Path, as_json_: bool, circuit: str | None, visit: str | None, 
     if circuit is not None:
         assessment = only(assessment, circuit)
     if as_json_:
-        from audit.report.as_json import as_json, as_text  # noqa: PLC0415
+        from audit.report.as_json import as_json, as_text
 
         click.echo(as_text(as_json(assessment)), nl=False)
     else:

@@ -17,7 +17,7 @@ AUDIENCES = ("electrician", "inspector", "supervisor")
 @click.option("--visit", metavar="NAME", help="Judge on this visit instead of the latest.")
 @click.option("--overwrite", is_flag=True, help="Replace an existing file.")
 def command(site: Path, target: Path, audience: str, visit: str | None, overwrite: bool) -> None:
-    """Write the audit report of SITE, a site folder: .html, .md, .csv or .json."""
+    """Write the audit report of SITE, a site file or a site folder: .html, .md, .csv or .json."""
     from datetime import datetime
 
     from audit.opening import judge_site, open_site
