@@ -66,7 +66,7 @@ class LazyGroup(click.Group):
 )
 @click.version_option(package_name="ohmwalk", message="%(prog)s %(version)s")
 @click.pass_context
-def group(context: click.Context) -> None:
+def group(context: click.Context) -> int:
     """
     Audit d.c. distribution in existing buildings: compare measured with computed voltage drop, with the
     doubt of both.
@@ -79,7 +79,8 @@ def group(context: click.Context) -> None:
     if context.invoked_subcommand is None:
         from audit.recent import choose_recent
 
-        choose_recent()
+        return choose_recent()
+    return 0
 
 
 def main(args: Sequence[str] | None = None) -> None:
@@ -123,8 +124,10 @@ def run(args: Sequence[str] | None = None) -> int:
 
 
 def _complain(lines: Sequence[str], status: int) -> int:
+    from rules.text import clean
+
     for line in lines:
-        click.echo(line, err=True)
+        click.echo(clean(line), err=True)
     return status
 
 

@@ -71,7 +71,7 @@ def _write(path: Path, sample: SampleSite, settings: UserSettings) -> None:
     # Made elsewhere first and copied as a whole: what stands at ``path`` is the old file or the new one.
     with tempfile.TemporaryDirectory() as folder:
         made = Path(folder) / FILE
-        who, laptop, why = settings.who, settings.laptop, f"{_WHY}{sample.name}"
+        who, laptop, why = settings.who_or_login, settings.laptop, f"{_WHY}{sample.name}"
         with SiteStore.create(made, _record(sample), who, laptop, why) as store:
             store.backup(path, overwrite=True)
 

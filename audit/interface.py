@@ -36,12 +36,12 @@ def make_site(path: Path, settings: UserSettings) -> None:
         If there is something of that name already, or it cannot be written.
     """
     check_new(path)
-    SiteStore.create(path, None, settings.who, settings.laptop, "new site file").close()
+    SiteStore.create(path, None, settings.who_or_login, settings.laptop, "new site file").close()
 
 
-def open_interface(path: Path, settings: UserSettings) -> None:
+def open_interface(path: Path, settings: UserSettings) -> int:
     """
-    Open the terminal interface on a site file, and come back when it is left.
+    Open the terminal interface on a site file, and come back when it is left, with its exit status.
 
     Raises
     ------
@@ -54,5 +54,6 @@ def open_interface(path: Path, settings: UserSettings) -> None:
         raise WrongUse(f"{error}; accepted: a site file, or --new, which makes it") from None
     settings.opened(path)
     # The toolkit takes half a second to load: only whoever opens the interface waits for it.
-    importlib.import_module("audit.tui.app").run_survey(path, settings)
+    status: int = importlib.import_module("audit.tui.run").run_survey(path, settings)
     settings.tell()
+    return status

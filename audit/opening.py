@@ -33,9 +33,23 @@ def open_site(path: Path) -> Site:
         return store.site()
 
 
-def judge_site(site: Site, visit: str | None = None) -> Assessment:
+def settings_place(path: Path) -> str:
+    """Where the settings of what ``open_site`` opened stand: ``site.toml``, or the site file."""
+    return "site.toml" if path.is_dir() else str(path)
+
+
+def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -> Assessment:
     """
     Assess a site, on one visit if named.
+
+    Parameters
+    ----------
+    site : Site
+        The record.
+    visit : str, optional
+        The visit to judge on; each circuit's latest unless named.
+    place : str
+        Where the settings stand, for what is wrong with the limits that they name.
 
     Raises
     ------
@@ -50,7 +64,7 @@ def judge_site(site: Site, visit: str | None = None) -> Assessment:
     try:
         in_force = limits.of(site)
     except ProfileError as error:
-        raise WrongUse(*(f"site.toml:limits: {line}" for line in str(error).splitlines())) from None
+        raise WrongUse(*(f"{place}:limits: {line}" for line in str(error).splitlines())) from None
     return assess(site, in_force)
 
 

@@ -14,9 +14,9 @@ from rules.text import clean
 _NOTHING = "No site file was opened yet. Next: ohmwalk demo, or ohmwalk survey NAME.ohmwalk --new"
 
 
-def choose_recent() -> None:
+def choose_recent() -> int:
     """
-    List the recent site files; in a terminal, ask for one and open it.
+    List the recent site files; in a terminal, ask for one and open it. The exit status is given back.
 
     Raises
     ------
@@ -28,7 +28,7 @@ def choose_recent() -> None:
     settings.tell()
     if not sites:
         click.echo(_NOTHING)
-        return
+        return 0
     for number, site in enumerate(sites, 1):
         click.echo(f"{number:>3}  {clean(str(site.path))}{'' if site.is_there else '  (not there now)'}")
     if is_terminal():
@@ -36,7 +36,8 @@ def choose_recent() -> None:
         if answer:
             from audit.interface import open_interface
 
-            open_interface(_chosen(answer, sites).path, settings)
+            return open_interface(_chosen(answer, sites).path, settings)
+    return 0
 
 
 def _chosen(answer: str, sites: Sequence[RecentSite]) -> RecentSite:

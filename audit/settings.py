@@ -86,15 +86,19 @@ class UserSettings:
 
     @property
     def who(self) -> str:
-        """Who writes: ``--by``, else ``OHMWALK_BY``, else the name in the settings, else the login name."""
-        return self._given or self._kept_name() or _login_name()
+        """
+        Who writes, as a person said: ``--by``, else ``OHMWALK_BY``, else the name in the settings.
+
+        Empty where no one has said; the interface then asks at the first save.
+        """
+        return self._given or self._kept_name()
 
     @property
-    def is_name_given(self) -> bool:
-        """Whether a person gave the name; if not, the interface asks for it at the first save."""
-        return bool(self._given or self._kept_name())
+    def who_or_login(self) -> str:
+        """Who writes; the login name where no one has said."""
+        return self.who or _login_name()
 
-    def keep_name(self, name: str) -> None:
+    def remember_who(self, name: str) -> None:
         """
         Keep the person's name for the next time.
 

@@ -16,9 +16,10 @@ def command(site: Path, target: Path | None, overwrite: bool) -> None:
     from datetime import datetime
 
     from audit.site_file import site_file
+    from rules.text import clean
 
     if target is None:
         target = site.with_name(f"{site.stem}-{datetime.now():%Y%m%d-%H%M%S}{site.suffix}")
     with site_file(site) as store:
         store.backup(target, overwrite=overwrite)
-    click.echo(f"wrote {target}", err=True)
+    click.echo(clean(f"wrote {target}"), err=True)

@@ -26,13 +26,14 @@ def command(site: Path, sources: tuple[Path, ...], dry_run: bool, replacing: boo
     from audit.intake.summary import summary
     from audit.settings import UserSettings
     from audit.terminal import Progress
+    from rules.text import clean
 
     settings, is_new = UserSettings(by), not site.exists()
     with Progress(sources) as progress:
         outcome = take_in(
             site,
             sources,
-            who=settings.who,
+            who=settings.who_or_login,
             laptop="" if dry_run else settings.laptop,
             replacing=replacing,
             dry_run=dry_run,
@@ -42,5 +43,5 @@ def command(site: Path, sources: tuple[Path, ...], dry_run: bool, replacing: boo
         click.echo(line)
     if is_new and not dry_run:
         settings.opened(site)
-        click.echo(f"Next: ohmwalk check {site}", err=True)
+        click.echo(clean(f"Next: ohmwalk check {site}"), err=True)
     settings.tell()

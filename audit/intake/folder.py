@@ -12,6 +12,7 @@ from pathlib import Path
 from audit.errors import IntakeRefused
 from audit.intake.given import Given, given_folder, given_texts
 from audit.intake.incoming import Incoming
+from db.tables import no_collection
 from rules.record import Site
 
 
@@ -62,10 +63,11 @@ def site_of(
 
 
 def _site(given: Given, check: bool) -> Site:
-    incoming = Incoming(given)
-    site = incoming.site
-    if check:
-        incoming.judge(site)
+    with no_collection():
+        incoming = Incoming(given)
+        site = incoming.site
+        if check:
+            incoming.judge(site)
     if incoming.faults.found:
         raise IntakeRefused(incoming.faults.lines())
     return site

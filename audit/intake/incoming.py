@@ -113,10 +113,10 @@ class Incoming:
             Id of the row that came in, by that of a reading which was made of it.
         """
         found = problems(site)
-        before = set(known()) if found else set()
+        before = set(map(_what, known())) if found else set()
         for problem in found:
             problem = replace(problem, row=came_from.get(problem.row, problem.row))
-            if problem not in before and not self._is_told(problem):
+            if _what(problem) not in before and not self._is_told(problem):
                 self._add(problem, site)
 
     def fault(self, table: str, row: str, column: str, what: str) -> None:
@@ -161,3 +161,8 @@ class Incoming:
         tag = getattr(row, "tag", "") or getattr(row, "number", "")
         place = f"{problem.table}, {tag}" if tag else problem.table
         self.faults.add("the site file", f"{place}, {problem.column}: {problem.text}", order=(len(TABLES) + 1, 0))
+
+
+def _what(problem: Problem) -> tuple[str, str, str, str]:
+    """A problem without what is accepted: that may change with rows that come in."""
+    return problem.table, problem.row, problem.column, problem.what

@@ -90,8 +90,7 @@ def take_in(
     with no_collection():
         if not path.exists():
             check_new(path)
-            given = _given(sources, stage)
-            site = _new_site(given, path.stem, stage)
+            site = _new_site(_given(sources, stage), path.stem, stage)  # the texts are let go before the save
             if not dry_run:
                 stage("save")
                 SiteStore.create(path, site, who, laptop, why).close()

@@ -28,14 +28,12 @@ def test_the_folder_is_where_the_platform_keeps_settings_or_where_the_variable_s
 
 def test_who_writes_is_the_first_that_is_given(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("getpass.getuser", lambda: "login")
-    assert UserSettings().who == "login"
-    assert not UserSettings().is_name_given
-    UserSettings().keep_name("Kept")
+    assert (UserSettings().who, UserSettings().who_or_login) == ("", "login")
+    UserSettings().remember_who("Kept")
     assert UserSettings().who == "Kept"
     monkeypatch.setenv("OHMWALK_BY", "Variable")
     assert UserSettings().who == "Variable"
-    assert UserSettings("Option").who == "Option"
-    assert UserSettings().is_name_given
+    assert UserSettings("Option").who == UserSettings("Option").who_or_login == "Option"
     monkeypatch.setenv("OHMWALK_BY", "  ")
     assert UserSettings().who == "Kept"
 
@@ -44,7 +42,7 @@ def test_a_name_that_is_kept_counts_at_once_and_leaves_other_settings(home: Path
     home.mkdir()
     (home / "settings.json").write_text('{"colour": "plain", "by": "Old"}')
     settings = UserSettings()
-    settings.keep_name(" Ann Öz ")
+    settings.remember_who(" Ann Öz ")
     assert settings.who == UserSettings().who == "Ann Öz"
     assert json.loads((home / "settings.json").read_text()) == {"colour": "plain", "by": "Ann Öz"}
 
@@ -55,7 +53,7 @@ def test_what_cannot_be_a_name_is_refused(name: str, monkeypatch: pytest.MonkeyP
         UserSettings(name)
     assert str(refused.value).isprintable()
     with pytest.raises(WrongUse, match=r"^name: "):
-        UserSettings().keep_name(name)
+        UserSettings().remember_who(name)
     if name.strip():
         monkeypatch.setenv("OHMWALK_BY", name)
         with pytest.raises(WrongUse, match=r"^OHMWALK_BY: "):
@@ -68,7 +66,7 @@ def test_a_system_that_knows_no_name_has_one_all_the_same(error: Exception, monk
         raise error
 
     monkeypatch.setattr("getpass.getuser", nameless)
-    assert UserSettings().who == "unknown"
+    assert UserSettings().who_or_login == "unknown"
 
 
 # --- the laptop
@@ -129,15 +127,15 @@ def test_damaged_settings_are_a_line_and_nothing_stops(
     home.mkdir()
     (home / "settings.json").write_bytes(content)
     settings = UserSettings()
-    assert settings.who == "login"
-    assert settings.who == "login"
+    assert settings.who == ""
+    assert settings.who_or_login == "login"
     settings.tell()
     told = capsys.readouterr()
     assert told.out == ""
     assert re.fullmatch(rf"{re.escape(str(home))}/settings\.json: is damaged.*\n", told.err)
     settings.tell()
     assert capsys.readouterr().err == ""
-    settings.keep_name("Ann")
+    settings.remember_who("Ann")
     assert UserSettings().who == "Ann"
 
 
@@ -146,7 +144,7 @@ def test_a_kept_name_that_is_none_is_passed_over(home: Path, monkeypatch: pytest
     home.mkdir()
     (home / "settings.json").write_text('{"by": ["Ann"]}')
     settings = UserSettings()
-    assert settings.who == "login"
+    assert settings.who_or_login == "login"
     assert settings.complaints == [f'{home / "settings.json"}: "by" is no name; it is passed over']
 
 
@@ -182,14 +180,14 @@ def test_a_folder_that_cannot_be_written_is_told_and_the_session_goes_on(tmp_pat
 
 
 def test_what_fails_half_way_leaves_the_old_settings(home: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    UserSettings().keep_name("Ann")
+    UserSettings().remember_who("Ann")
 
     def full(_: int) -> None:
         raise OSError(28, "No space left on device")
 
     monkeypatch.setattr(os, "fsync", full)
     settings = UserSettings()
-    settings.keep_name("Bob")
+    settings.remember_who("Bob")
     assert settings.complaints == [f"{home / 'settings.json'}: cannot be written: No space left on device"]
     assert UserSettings().who == "Ann"
     assert os.listdir(home) == ["settings.json"]

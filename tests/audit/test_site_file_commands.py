@@ -19,13 +19,17 @@ from types import SimpleNamespace
 from typing import Any
 
 import pytest
+from sqlite_utils import Database
 
 from audit import cli, interface, recent, terminal
+from audit.intake import into_file
 from audit.intake.folder import read_folder
 from audit.settings import UserSettings
 from db import connection
+from db.migrations import migrations
+from db.save import Save
 from db.store import SiteStore
-from rules.record import Site
+from rules.record import Load, Site
 from sample_sites.catalogue import SAMPLE_SITES, sample_site
 
 Captured = pytest.CaptureFixture[str]
@@ -270,13 +274,15 @@ def test_a_row_that_was_removed_can_come_in_again(site: Path, tmp_path: Path, ca
     done(["intake", str(site), *tables], capsys)
     assert record(site) == with_them
     done(["verify", str(site)], capsys)
+    told = done(["history", str(site)], capsys)[0].splitlines()
+    assert any(line.endswith(")") and "Ann  " in line and " (undoes the save of " in line for line in told)
+    assert "    removed circuit C9" in told
+    assert sum(line == "    added board NEW: fed_by C9" for line in told) == 2
 
 
 def test_an_intake_sees_what_another_one_saved_while_it_read(
     site: Path, plant: Path, monkeypatch: pytest.MonkeyPatch, capsys: Captured
 ) -> None:
-    from audit.intake import into_file
-
     edit(plant / "circuits.csv", "description", "from the folder")
     merge = into_file._merged
     calls: list[int] = []
@@ -318,6 +324,97 @@ def test_a_profile_that_is_not_there_is_refused_before_it_stops_every_check(plan
     (plant / "site.toml").write_text(text, encoding="utf-8")
     (line,) = refused(["intake", "a.ohmwalk", str(plant)], capsys)
     assert line.startswith("site.toml:limits: there is no limits profile 'genral'")
+
+
+def test_a_workbook_goes_in_like_tables(site: Path, capsys: Captured) -> None:
+    from openpyxl import Workbook
+
+    book = Workbook()
+    sheet = book.create_sheet("visits")
+    book.remove(book.worksheets[0])
+    for row in (["visit", "kind", "order"], ["2026-09", "as left", 2]):
+        sheet.append(row)
+    book.save("later.xlsx")
+    done(["intake", str(site), "later.xlsx"], capsys)
+    assert record(site).visits[-1].tag == "2026-09"
+    sheet["B2"] = "as lost"
+    book.save("later.xlsx")
+    (line, _) = refused(["intake", str(site), "later.xlsx"], capsys)
+    assert line.startswith("later.xlsx[visits]:2:kind: 'as left' in the site file, 'as lost' here")
+
+
+def test_what_did_not_hold_together_before_is_no_fault_of_what_comes_in(
+    site: Path, tmp_path: Path, capsys: Captured
+) -> None:
+    with SiteStore(site, laptop="lap") as store, store.save("Ann", "half a load") as save:
+        save.add("loads", Load(id="", circuit_id=store.site().circuits[0].id, point="p99", tag="FAN"))
+    (tmp_path / "runs.csv").write_text("circuit,run,from,to,length,size\nF1,7,way,x,3,50 mm2\n", encoding="utf-8")
+    done(["intake", str(site), "runs.csv"], capsys)
+    _, err = done(["unload", str(site), "out"], capsys)
+    assert err.splitlines()[1] == "cells that do not hold together: 1; intake would name them, as ohmwalk check does"
+    assert refused(["intake", "new.ohmwalk", "out"], capsys)
+    (tmp_path / "runs.csv").write_text("circuit,run,from,to,length,size\nF1,1,way,p5,24,50 mm2\n", encoding="utf-8")
+    told = refused(["intake", str(site), "runs.csv", "--replace"], capsys)
+    assert told[0].startswith("the site file: loads, ") or told[0].startswith("the site file: readings, ")
+
+
+def test_a_reading_that_is_replaced_in_the_same_table_stays_even_with_replace(
+    site: Path, tmp_path: Path, capsys: Captured
+) -> None:
+    table = tmp_path / "readings.csv"
+    rows = "circuit,round,quantity,at,value,reading,replaces\nF1,9,voltage,way,53,R1,\nF1,9,voltage,way,52,R2,R1\n"
+    table.write_text(rows, encoding="utf-8")
+    done(["intake", str(site), "readings.csv"], capsys)
+    edit(table, "value", "51")
+    assert refused(["intake", str(site), "readings.csv", "--replace"], capsys) == [
+        "readings.csv:2:value: '53' in the site file, '51' here, in a reading that another one here replaces; "
+        "accepted: its value as in the site file"
+    ]
+
+
+def test_an_intake_that_is_interrupted_leaves_the_file_as_it_was(
+    site: Path, plant: Path, monkeypatch: pytest.MonkeyPatch, capsys: Captured
+) -> None:
+    def write(save: Save, merged: object) -> None:
+        save.settings(notes="half")
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr(into_file, "write", write)
+    before = site.read_bytes()
+    edit(plant / "circuits.csv", "device_rating", "125")
+    assert cli.run(["intake", str(site), str(plant), "--replace"]) == cli.INTERRUPTED
+    assert capsys.readouterr().out == ""
+    assert site.read_bytes() == before
+    assert sorted(os.listdir()) == ["plant", "plant.ohmwalk"]
+
+
+def test_an_older_file_is_read_in_memory_and_brought_up_to_date_by_whoever_writes(
+    site: Path, plant: Path, monkeypatch: pytest.MonkeyPatch, capsys: Captured
+) -> None:
+    monkeypatch.setattr(migrations, "_migrations", list(migrations._migrations))
+
+    @migrations()
+    def m002_index_places(db: Database) -> None:
+        db.execute("CREATE INDEX boards_location ON boards (location)")
+        db.execute("PRAGMA user_version = 2")
+
+    before = site.read_bytes()
+    for name in READ:
+        done(call(name, site), capsys)
+    done(["intake", str(site), str(plant), "--dry-run"], capsys)
+    assert site.read_bytes() == before
+    edit(plant / "circuits.csv", "device_rating", "125")
+    done(["intake", str(site), str(plant), "--replace"], capsys)
+    with closing(sqlite3.connect(site)) as opened:
+        assert opened.execute("PRAGMA user_version").fetchone() == (2,)
+    assert record(site) == read_folder(plant)
+
+
+def test_limits_that_are_not_there_are_told_of_the_file(site: Path, capsys: Captured) -> None:
+    with SiteStore(site, laptop="lap") as store, store.save("Ann", "limits") as save:
+        save.settings(limits="genral")
+    (line,) = refused(["check", str(site)], capsys)
+    assert line.startswith(f"{site}:limits: there is no limits profile 'genral'")
 
 
 def test_progress_is_for_large_input_in_a_terminal(
@@ -559,8 +656,13 @@ def test_unload_overwrites_only_when_asked(site: Path, capsys: Captured) -> None
 def opened(monkeypatch: pytest.MonkeyPatch) -> list[tuple[Path, UserSettings]]:
     """What the terminal interface was opened on, in what takes itself for a terminal."""
     calls: list[tuple[Path, UserSettings]] = []
-    toolkit = SimpleNamespace(run_survey=lambda path, settings: calls.append((path, settings)))
-    monkeypatch.setitem(sys.modules, "audit.tui.app", toolkit)
+
+    def run_survey(path: Path, settings: UserSettings) -> int:
+        calls.append((path, settings))
+        return 70 if settings.who == "Crash" else 0
+
+    toolkit = SimpleNamespace(run_survey=run_survey)
+    monkeypatch.setitem(sys.modules, "audit.tui.run", toolkit)
     for module in (interface, recent, terminal):
         monkeypatch.setattr(module, "is_terminal", lambda: True)
     return calls
@@ -574,7 +676,8 @@ def test_survey_opens_a_site_file(site: Path, opened: Opened, capsys: Captured) 
     done(["survey", str(site), "--by", "Ann"], capsys)
     ((path, settings),) = opened
     assert (path, settings.who) == (site, "Ann")
-    assert [recent.path for recent in UserSettings().recent()] == [site]
+    assert [listed.path for listed in UserSettings().recent()] == [site]
+    assert cli.run(["survey", str(site), "--by", "Crash"]) == 70
     assert site.read_bytes() == before
 
 
