@@ -134,28 +134,6 @@ def test_a_report_of_an_unknown_form_is_refused_before_anything_is_read(capsys: 
     assert ".html" in line
 
 
-def test_demo_copies_a_site_and_uses_its_own_earlier_one(tmp_path: Path, capsys: Captured) -> None:
-    assert cli.run(["demo", "doors"]) == 0
-    folder = tmp_path / "doors_24v_12v"
-    assert (folder / "site.toml").is_file()
-    (folder / "notes.txt").write_text("mine", encoding="utf-8")
-    assert cli.run(["demo", "doors"]) == 0
-    assert (folder / "notes.txt").read_text(encoding="utf-8") == "mine"
-    capsys.readouterr()
-    (line,) = refused(["demo", "doors", "--to", str(folder)], capsys)
-    assert "--overwrite" in line
-    assert cli.run(["demo", "doors", "--to", str(folder), "--overwrite"]) == 0
-    assert not (folder / "notes.txt").exists()
-
-
-def test_demo_leaves_a_folder_that_is_no_site(tmp_path: Path, capsys: Captured) -> None:
-    (tmp_path / "mine").mkdir()
-    (tmp_path / "mine" / "letter.txt").write_text("x", encoding="utf-8")
-    (line,) = refused(["demo", "--to", "mine", "--overwrite"], capsys)
-    assert "no site folder" in line
-    assert (tmp_path / "mine" / "letter.txt").exists()
-
-
 def test_tables_name_source_and_status(capsys: Captured) -> None:
     assert cli.run(["tables"]) == 0
     listed = capsys.readouterr().out
