@@ -142,6 +142,8 @@ class Place:
     """Probability of a bad connection there whose heat at design current passes the profile's limit."""
     what: str = ""
     """The cause's most probable way: ``one size smaller``, or which reading is doubtful and how."""
+    point: str = ""
+    """Where the branch of the place ends: ``way`` for the device; empty for the whole circuit."""
 
 
 @dataclass(frozen=True, slots=True)

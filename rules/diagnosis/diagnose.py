@@ -16,8 +16,11 @@ from rules.diagnosis.hypotheses import BAD_CONNECTION, CAUSES, SEMICONDUCTOR
 from rules.diagnosis.judge import Judged, grouped, judge_block
 from rules.diagnosis.problem import Problem
 from rules.diagnosis.shape import Floats, Shape, place_words, shape_of
+from rules.diagnosis.words import what_words
 from rules.limits import Limits
 
+TOLD = 1e-3
+"""Probability of a cause from which its most probable way is put into words."""
 COVERED = 0.95
 """Share of a place's posterior between the bounds of its extra resistance."""
 
@@ -43,16 +46,16 @@ class Diagnosis:
     causes: tuple[Place, ...]
     """Highest first; the probabilities sum to one."""
     learned: tuple[tuple[str, Learned], ...]
-    """By branch: ``device``, ``run 2``."""
+    """By id of the run; empty for the device."""
     log_evidence: float
 
     def probability(self, cause: str) -> float:
         """Of a cause, its places together."""
         return sum(place.probability for place in self.causes if place.cause == cause)
 
-    def of_branch(self, name: str) -> Learned | None:
-        """What the readings support about a branch; ``None`` where they do not reach the circuit's branches."""
-        return next((learned for branch, learned in self.learned if branch == name), None)
+    def of_branch(self, run_id: str) -> Learned | None:
+        """What the readings support about a run, or with an empty id about the device; ``None`` for one they do not know."""
+        return next((learned for branch, learned in self.learned if branch == run_id), None)
 
 
 def diagnose(problems: Sequence[Problem], limits: Limits) -> list[Diagnosis]:
@@ -79,7 +82,7 @@ def diagnose(problems: Sequence[Problem], limits: Limits) -> list[Diagnosis]:
 
 def results(judged: Judged, problems: Sequence[Problem]) -> list[Diagnosis]:
     """One diagnosis for each problem of a judged batch."""
-    shape, names = judged.block.shape, judged.hypotheses.names
+    shape = judged.block.shape
     places = len(shape.places)
     of_places = judged.posterior[:, judged.of_cause(BAD_CONNECTION)]
     of_offsets = judged.posterior[:, judged.of_cause(SEMICONDUCTOR)]
@@ -101,19 +104,34 @@ def results(judged: Judged, problems: Sequence[Problem]) -> list[Diagnosis]:
     for number, problem in enumerate(problems):
         branches = problem.names
         rows = [
-            Place(BAD_CONNECTION, where_words(shape, place, branches), p, low, middle, high, heat=p * hotter)
+            Place(
+                BAD_CONNECTION,
+                where_words(shape, place, branches),
+                p,
+                low,
+                middle,
+                high,
+                heat=p * hotter,
+                point=problem.ends[shape.places[place].branch],
+            )
             for place, (p, low, middle, high, hotter) in enumerate(columns[number])
         ]
         rows += [
-            Place(SEMICONDUCTOR, offset_words(shape, place, branches), p) for place, p in enumerate(offsets[number])
+            Place(
+                SEMICONDUCTOR,
+                offset_words(shape, place, branches),
+                p,
+                point=problem.ends[shape.offset_branch(place)],
+            )
+            for place, p in enumerate(offsets[number])
         ]
         rows += [
-            Place(cause, "", p, what=names[which].what)
+            Place(cause, "", p, what=what_words(judged, number, which, problem) if p >= TOLD else "")
             for cause, p, which in zip(others, sums[number], best[number], strict=True)
         ]
         rows = [row for row in rows if row.probability > 0]
         rows.sort(key=lambda row: -row.probability)
-        said = tuple(zip(branches, (Learned(*figures) for figures in learned[number]), strict=True))
+        said = tuple(zip(problem.run_ids, (Learned(*figures) for figures in learned[number]), strict=True))
         found.append(Diagnosis(tuple(rows), said, evidence[number]))
     return found
 

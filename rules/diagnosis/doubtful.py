@@ -1,10 +1,10 @@
 """
 A reading or the record is doubtful: slips that leave the circuit as recorded.
 
-One reading may be off by anything (a Cauchy density over how far, so that a slipped decimal point and a wrong
-digit both have their share), two voltages may stand at each other's points, the clamp may have been held the
-other way round, or several things may be wrong at once. How far a reading is off is summed over in closed
-form: the mean moves in a straight line with it.
+One reading may be off by anything (a Cauchy density over how far) or by a slip that people make (a decimal place,
+milli, the sign: a narrow density about what it makes of the value that was meant), two voltages may stand at each
+other's points, the clamp may have been held the other way round, or several things may be wrong at once. How far a
+reading is off is summed over in closed form: the mean moves in a straight line with it.
 """
 
 from __future__ import annotations
@@ -18,6 +18,19 @@ from rules.diagnosis.block import Block, Model, model_of
 from rules.diagnosis.gaussian import LOG_2PI, cholesky, forward, log_density, log_determinant
 from rules.diagnosis.hypotheses import DOUBTFUL, Hypotheses, Hypothesis
 from rules.diagnosis.shape import Floats
+
+RATIOS = {
+    10.0: "a decimal place",
+    0.1: "a decimal place",
+    100.0: "two decimal places",
+    0.01: "two decimal places",
+    1000.0: "milli left out or added",
+    0.001: "milli left out or added",
+    -1.0: "the sign",
+}
+"""What was meant over what was entered, and how it comes about."""
+NEAR = 0.02
+"""How closely, relative, such a slip is taken to give the value."""
 
 ONE_READING, CURRENT_READING = "one_reading", "one_current"
 SWAPPED, REVERSED, SEVERAL = "swapped_points", "clamp_reversed", "several_things"
@@ -58,7 +71,8 @@ def slips(block: Block, recorded: Model) -> Slips:
     white = forward(lower, np.concatenate(right, axis=-1))
     scale = -0.5 * (log_determinant(lower) + shape.rows * LOG_2PI)
     base, readings = white[:, :, 0], observations.shape[-1] + currents.shape[-1]
-    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, _typed(block))
+    entered = np.concatenate([block.value[:, shape.read], block.reading_a], axis=1)
+    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, _typed(block))
     evidence, off = _looked_at_again(block, recorded, currents, evidence, off)
     others = scale[:, None] - 0.5 * (white[:, :, 1 + readings :] ** 2).sum(axis=1)
     several = covariance + np.eye(shape.rows) * _several(block)[:, :, None] ** 2
@@ -94,7 +108,7 @@ def _several(block: Block) -> Floats:
     return np.where(dead, block.limits["slip.resistance_ohm"], volts)
 
 
-def _off(base: Floats, directions: Floats, scale: Floats, typed: Floats) -> tuple[Floats, Floats]:
+def _off(base: Floats, directions: Floats, scale: Floats, entered: Floats, typed: Floats) -> tuple[Floats, Floats]:
     """
     Log evidence of a shift along each direction, and its best size.
 
@@ -104,9 +118,40 @@ def _off(base: Floats, directions: Floats, scale: Floats, typed: Floats) -> tupl
     within = (base[..., None] * directions).sum(axis=1)
     square = np.maximum((directions**2).sum(axis=1), 1e-300)
     off = within / square
-    plain_evidence = scale - 0.5 * (base**2).sum(axis=1)
-    cauchy = -np.log(math.pi * typed * (1 + (off / typed) ** 2))
-    return plain_evidence[:, None] + 0.5 * within * off + 0.5 * (LOG_2PI - np.log(square)) + cauchy, off
+    recorded = scale - 0.5 * (base**2).sum(axis=1)
+    gained = 0.5 * within * off + 0.5 * (LOG_2PI - np.log(square))
+    return recorded[:, None] + gained + np.log(slip_density(entered, off, 1 / square, typed)), off
+
+
+def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats) -> Floats:
+    """
+    Density of an entered value where the reading was mistaken.
+
+    Parameters
+    ----------
+    entered : array
+        What stands in the record.
+    off : array
+        What was meant less what was entered, as the other readings say.
+    variance : array
+        Of ``off``.
+    typed : array
+        Within how much half of all mistyped readings are.
+
+    Returns
+    -------
+    array
+        Half of it over any distance, half about the slips of ``RATIOS``; over all values that might have been
+        entered it integrates to one.
+    """
+    anything = 1 / (math.pi * typed * (1 + (off / typed) ** 2))
+    ratios = np.array(list(RATIOS))
+    slipped = (entered + off)[..., None] / ratios
+    width = np.sqrt((NEAR * slipped) ** 2 + variance[..., None] / ratios**2)
+    apart = (entered[..., None] - slipped) / width
+    about = (np.exp(-0.5 * apart**2) / (width * math.sqrt(2 * math.pi))).mean(axis=-1)
+    density: Floats = (anything + about) / 2
+    return density
 
 
 def _looked_at_again(
@@ -130,13 +175,13 @@ def _looked_at_again(
     right = np.stack([block.shown - again.whole_mean[:, 0], currents[rows, :, best]], axis=-1)
     white = forward(lower, right)
     scale = -0.5 * (log_determinant(lower) + block.shape.rows * LOG_2PI)
-    typed = _typed(block)[rows, start + best][:, None]
+    typed = _typed(block)[rows, start + best]
     within = (white[:, :, 0] * white[:, :, 1]).sum(axis=1)
     square = np.maximum((white[:, :, 1] ** 2).sum(axis=1), 1e-300)
     further = within / square
     total = moved + further
-    new = scale - 0.5 * (white[:, :, 0] ** 2).sum(axis=1) + 0.5 * within * further
-    new += 0.5 * (LOG_2PI - np.log(square)) - np.log(math.pi * typed[:, 0] * (1 + (total / typed[:, 0]) ** 2))
+    new = scale - 0.5 * (white[:, :, 0] ** 2).sum(axis=1) + 0.5 * within * further + 0.5 * (LOG_2PI - np.log(square))
+    new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed))
     evidence, off = evidence.copy(), off.copy()
     evidence[rows, start + best], off[rows, start + best] = new, total
     return evidence, off

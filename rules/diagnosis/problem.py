@@ -112,6 +112,10 @@ class Problem:
     signature: Signature
     names: tuple[str, ...]
     """Of the branches: ``device``, ``run 2``."""
+    run_ids: tuple[str, ...]
+    """Of the branches; empty for the device."""
+    ends: tuple[str, ...]
+    """The points at which the branches arrive; ``way`` for the device, empty for a run that closes a mesh."""
     branches: tuple[Branch, ...]
     """In the order of the signature; those that no row reaches are there too: what is wrong in them stays open."""
     alternatives: tuple[tuple[float, ...], ...]

@@ -64,7 +64,7 @@ class _Gather:
 
     def __init__(self, tree: Tree, limits: Limits, return_leg: str) -> None:
         self.tree, self.limits, self.return_leg = tree, limits, return_leg
-        has_device = bool(tree.device_ohm)
+        self.has_device = has_device = bool(tree.device_ohm)
         self.names = [DEVICE] * has_device + [run.name for run in tree.runs]
         self.arriving = ["way"] * has_device + ["" for _ in tree.runs]
         self.branch_of_run = {run.id: place + has_device for place, run in enumerate(tree.runs)}
@@ -250,6 +250,8 @@ class _Gather:
         return Problem(
             signature=signature,
             names=tuple(self.names),
+            run_ids=("",) * self.has_device + tuple(run.id for run in self.tree.runs),
+            ends=tuple(self.arriving),
             branches=tuple(self._branch(place, hot_ohm) for place in range(len(self.names))),
             alternatives=tuple(self._alternatives(place) for place in range(len(self.names))),
             value=tuple(shown.value for shown in self.shown),

@@ -106,6 +106,11 @@ def shape_of(signature: Signature) -> Shape:
     """The arrays of a structure."""
     rows = signature.rows
     branches = len(signature.branches)
+    reached = np.zeros(branches, dtype=bool)
+    for row in rows:
+        reached[[branch for branch, _ in row.path]] = True
+    # a device that lies between no readings is no place of this diagnosis
+    looked_at = [kind == "run" or bool(reached[branch]) for branch, kind in enumerate(signature.branches)]
     groups = _elements(signature)
     element_branch = np.array([branch for branch, _, _ in groups], dtype=np.int64)
     kinds = [kind for _, kind, _ in groups]
@@ -122,11 +127,8 @@ def shape_of(signature: Signature) -> Shape:
         for member in members:
             of[which][number - edges[which], 2 * branch + LEGS.index(member.split()[-1])] += 1
     row_state = np.array([signature.states if row.state == DEAD else row.state for row in rows], dtype=np.int64)
-    reached = np.zeros(branches, dtype=bool)
-    for row in rows:
-        reached[[branch for branch, _ in row.path]] = True
     gain_rows, gain_parts = _gains(signature, difference)
-    places = _places(signature, groups)
+    places = _places(signature, groups, looked_at)
     place_column = np.array([coefficient[:, element] for element, _ in places]).reshape(len(places), len(rows))
     sources = np.zeros((branches, signature.states + 1, signature.sources), dtype=bool)
     for slot, source in signature.errors:
@@ -138,7 +140,7 @@ def shape_of(signature: Signature) -> Shape:
             for (_, place), column in zip(places, place_column, strict=True)
         ]
     ).reshape(len(places), signature.sources)
-    offsets, offset_rows, offset_slot = _offsets(signature)
+    offsets, offset_rows, offset_slot = _offsets(signature, looked_at)
     swap_columns = [difference[:, a] - difference[:, b] for a, b in signature.swaps]
     conductors = slice(0, edges[1])
     return Shape(
@@ -208,12 +210,13 @@ def _elements(signature: Signature) -> list[Element]:
     return [element for elements in found.values() for element in elements]
 
 
-def _places(signature: Signature, groups: Sequence[Element]) -> list[tuple[int, Place]]:
+def _places(signature: Signature, groups: Sequence[Element], looked_at: Sequence[bool]) -> list[tuple[int, Place]]:
     """Places of a bad connection with the element that each stands in."""
-    units = sum(2.0 if kind == "run" else DEVICE_UNITS for kind in signature.branches)
+    kinds = [kind for kind, counts in zip(signature.branches, looked_at, strict=True) if counts]
+    units = sum(2.0 if kind == "run" else DEVICE_UNITS for kind in kinds)
     places = []
     for number, (branch, kind, members) in enumerate(groups):
-        if kind == "conductor":
+        if kind == "conductor" or not looked_at[branch]:
             continue
         poles = sum(len(other) for b, k, other in groups if (b, k) == (branch, kind))
         of_branch = 2.0 if kind == "termination" else DEVICE_UNITS
@@ -237,7 +240,9 @@ def _gains(signature: Signature, difference: Floats) -> tuple[Floats, Floats | N
     return one, several if several.any() else None
 
 
-def _offsets(signature: Signature) -> tuple[tuple[tuple[tuple[int, str], ...], ...], Floats, Integers]:
+def _offsets(
+    signature: Signature, looked_at: Sequence[bool]
+) -> tuple[tuple[tuple[tuple[int, str], ...], ...], Floats, Integers]:
     """
     Places of a semiconductor: the device, and either leg of the first run.
 
@@ -248,7 +253,7 @@ def _offsets(signature: Signature) -> tuple[tuple[tuple[tuple[int, str], ...], .
     candidates: list[tuple[int, str]] = []
     for branch, kind in enumerate(signature.branches):
         legs = kind.partition(" ")[2]
-        if branch == first or kind != "run":
+        if branch == first or (kind != "run" and looked_at[branch]):
             candidates += [(branch, leg) for leg in (LEGS if legs in ("", "both") else (legs,))]
     alike: dict[tuple[tuple[float, int], ...], list[tuple[int, str]]] = {}
     for branch, leg in candidates:
