@@ -6,21 +6,25 @@ import math
 import re
 from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
 from rules.assessment import Drop
 from rules.calc.doubt import total
 from rules.consistency import Problem
+from rules.diagnosis.diagnose import Diagnosis, diagnose
+from rules.diagnosis.problem import Problem as Posed
+from rules.diagnosis.rows import problem_of
 from rules.errors import MissingData
 from rules.impossible import impossible
 from rules.index import Index
 from rules.limits import Limits
 from rules.network import GAP_NOTHING_FEEDS, Network, device_ohm, nominal_v
-from rules.record import Circuit, Figure, Load, Reading, Run, Site
+from rules.record import Board, Circuit, Figure, Load, Reading, Run, Site, Source
 from rules.rounds import Round, Tree, drop_of, judged, rounds_of, temperature_read, visit_of
 from rules.runs import Carrying, RunFigures, record_variance
+from rules.worst import largest_current_a, worst_of
 
 RUN = re.compile(r"run \d+")
 
@@ -39,6 +43,21 @@ class Context:
     network: Network
     visit_ranks: Mapping[str, tuple[float, str, int]]
     problems: tuple[Problem, ...]
+    measured: Mapping[str, Measured] = field(default_factory=dict)
+    """By circuit id: what was read on the visit that it is judged on."""
+    diagnoses: Mapping[str, Diagnosis] = field(default_factory=dict)
+    """By circuit id, of those whose readings say something."""
+
+
+@dataclass(frozen=True, slots=True)
+class Measured:
+    """The readings of one visit on one circuit."""
+
+    visit: str
+    """Empty where nothing was read."""
+    readings: tuple[Reading, ...]
+    rounds: tuple[Round, ...]
+    tree: Tree
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,8 +101,14 @@ class CircuitCase:
     drop: Drop | None
     drop_gap: str
     """Why there is no drop; empty where there is one."""
-    unused: tuple[str, ...] = ()
+    unused: tuple[str, ...]
     """Readings of the visit that nothing here makes use of."""
+    diagnosis: Diagnosis | None
+    """``None`` where no reading says anything about a run or the device."""
+    worst: Mapping[str, Figure]
+    """Voltage by point with the source at its lowest, hot conductors and what readings support. [V]"""
+    largest_current_a: Mapping[str, float]
+    """By the point at which a branch arrives (``way``: the device), at design and the voltage that makes it largest."""
 
     @property
     def tag(self) -> str:
@@ -101,17 +126,16 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
     ``readings``, where given, stand in for the circuit's readings in the record: what is being typed.
     """
     index, limits = context.index, context.limits
-    if readings is None:
-        visit = visit_of(circuit.id, index, context.visit_ranks) or ""
-        of_visit = [r for r in judged(index.readings_of(circuit.id), index) if r.visit_or_default == visit]
-    else:
-        of_visit = list(readings)
-        visit = of_visit[-1].visit_or_default if of_visit else ""
-    tree = _tree(context, circuit, of_visit)
+    known = context.measured.get(circuit.id) if readings is None else None
+    measured = measured_of(context, circuit, readings) if known is None else known
     nominal = nominal_v(circuit, index)
-    rounds = rounds_of(of_visit, tree, index, limits)
-    drop, gap = None, "nothing was read" if not of_visit else ""
-    if of_visit:
+    problem = posed_by(context, measured)
+    diagnosis = context.diagnoses.get(circuit.id)
+    if known is None:
+        diagnosis = diagnose([problem], limits)[0] if problem is not None else None
+    tree, rounds = measured.tree, measured.rounds
+    drop, gap = None, "nothing was read" if not measured.readings else ""
+    if measured.readings:
         against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
         possible = [this for this in rounds if not against[this.name]]
         try:
@@ -128,30 +152,84 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         allowed_drop_percent=limits["drop.allowed_percent"] if allowed is None else allowed,
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
-        visit=visit,
+        visit=measured.visit,
         rounds=rounds,
         tree=tree,
         drop=drop,
         drop_gap=gap,
-        unused=tuple(dict.fromkeys(_name(row) for row in of_visit if not _is_used(row, rounds))),
+        unused=_unused(measured, problem),
+        diagnosis=diagnosis,
+        worst=_worst(context, circuit, diagnosis),
+        largest_current_a=_largest_currents(context, circuit),
     )
 
 
-def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
-    """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
-    this = next(round_ for round_ in rounds if round_.name == reading.round)
-    if reading.quantity == "voltage":
-        return reading.at in this.volts
-    if reading.quantity == "drop":
-        return (reading.at, reading.to) in this.direct
-    if reading.quantity == "temperature":
-        return bool(RUN.fullmatch(reading.at))
-    return reading.quantity == "current"
+def _unused(measured: Measured, problem: Posed | None) -> tuple[str, ...]:
+    """The readings that neither the drop nor the diagnosis makes use of."""
+    used = {row.id for seen in problem.observations for row in seen.readings} if problem is not None else set()
+    unused = []
+    for reading in measured.readings:
+        conductor = reading.quantity == "temperature" and RUN.fullmatch(reading.at)
+        # why a voltage or a drop over both legs was not used is said where the drop is missing
+        of_drop = reading.quantity in ("voltage", "drop") and reading.leg in ("", "both")
+        if reading.id not in used and reading.quantity != "current" and not conductor and not of_drop:
+            leg = f" {reading.leg}" if reading.leg not in ("", "both") else ""
+            unused.append(f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}")
+    return tuple(dict.fromkeys(unused))
 
 
-def _name(reading: Reading) -> str:
-    leg = f" {reading.leg}" if reading.leg and reading.leg != "both" else ""
-    return f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}"
+def measured_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | None = None) -> Measured:
+    """The rounds of the visit that a circuit is judged on, or of the readings given."""
+    index = context.index
+    if readings is None:
+        visit = visit_of(circuit.id, index, context.visit_ranks) or ""
+        readings = [r for r in judged(index.readings_of(circuit.id), index) if r.visit_or_default == visit]
+    else:
+        visit = readings[-1].visit_or_default if readings else ""
+    tree = _tree(context, circuit, readings)
+    return Measured(visit, tuple(readings), rounds_of(readings, tree, index, context.limits), tree)
+
+
+def posed_by(context: Context, measured: Measured) -> Posed | None:
+    """What the readings of a visit pose to the diagnosis; ``None`` where they say nothing about a run or the device."""
+    if not measured.rounds:
+        return None
+    circuit, limits = measured.tree.circuit, context.limits
+    amps = _largest_currents(context, circuit)
+    hot_ohm = {point: limits["heat.limit_w"] / a**2 if a else math.inf for point, a in amps.items()}
+    return_leg = _return_leg(circuit, context.index)
+    return problem_of(measured.rounds, measured.tree, limits, hot_ohm, return_leg, nominal_v(circuit, context.index))
+
+
+def _largest_currents(context: Context, circuit: Circuit) -> dict[str, float]:
+    nodes = context.network.nodes_of.get(circuit.id, {})
+    amps = {point: largest_current_a(context.network, node) for point, node in nodes.items() if point != "bus"}
+    return {point: a for point, a in amps.items() if a is not None}
+
+
+def _worst(context: Context, circuit: Circuit, diagnosis: Diagnosis | None) -> dict[str, Figure]:
+    """Voltages of the circuit's points in the worst case, its own diagnosis as it is judged now."""
+    network = context.network
+    return worst_of(
+        network.nodes_of.get(circuit.id, {}),
+        network,
+        context.figures,
+        lambda id_: diagnosis if id_ == circuit.id else context.diagnoses.get(id_),
+        lambda node: _computed_u(context, list(network.way_up(node))[:-1], network.lowest.current_a),
+    )
+
+
+def _return_leg(circuit: Circuit, index: Index) -> str:
+    """The leg without the device: negative, unless the source is positive earthed."""
+    if circuit.device_leg in ("positive", "negative"):
+        return "negative" if circuit.device_leg == "positive" else "positive"
+    here: Circuit | Board | Source | None = circuit
+    seen: set[str] = set()
+    while here is not None and not isinstance(here, Source) and here.id not in seen:
+        seen.add(here.id)
+        feeds = here.fed_by if isinstance(here, Board) else (here.fed_from,)
+        here = index.named(feeds[0]) if feeds and feeds[0] is not None else None
+    return "positive" if isinstance(here, Source) and here.earthing == "positive earthed" else "negative"
 
 
 def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tree:

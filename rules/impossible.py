@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from rules.calc.doubt import Weighted, probability_above, total
@@ -44,7 +44,12 @@ def reversed_points(this: Round, limits: Limits) -> list[tuple[str, Figure]]:
 
 
 def dead_points(this: Round, nominal_v: float, limits: Limits) -> list[tuple[str, Figure]]:
-    """Points whose voltage is a small part of nominal and not below zero."""
+    """
+    Points whose voltage is a small part of nominal and not below zero, in a round in which no current was read to flow:
+    where current flows, such a voltage is a slip.
+    """
+    if any(_flows(terms, limits) for terms in this.amps.values()):
+        return []
     reversed_ = {point for point, _ in reversed_points(this, limits)}
     found = []
     for point, terms in this.volts.items():
@@ -96,6 +101,11 @@ def impossible(this: Round, tree: Tree, nominal_v: float | None, limits: Limits)
     if against_the_drop(this, tree, limits):
         return f"the current of round {this.name} flows against the drop"
     return ""
+
+
+def _flows(terms: Sequence[Weighted], limits: Limits) -> bool:
+    value, u = total(terms)
+    return probability_above(abs(value), 0.0, u) >= limits["decision.beyond_doubt"]
 
 
 def _backward(this: Round, limit: float) -> tuple[str, Figure] | None:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -17,6 +17,18 @@ GAP_SIZE = "the size of {} is not known"
 GAP_SHARED = "{} shares its return with other circuits, which this version does not compute"
 GAP_STRUCTURE = "{} returns through the structure, whose resistance is not known"
 TERMINATIONS_A_LEG = 2
+
+
+@dataclass(frozen=True, slots=True)
+class LegFigures:
+    """One leg of a run, at the run's recorded temperature."""
+
+    conductor_ohm: float
+    slope_ohm_per_k: float
+    joint_ohm: float
+    """Mean of each of its two healthy terminations."""
+    joint_variance: float
+    """Of each. [ohm²]"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,6 +50,8 @@ class RunFigures:
     """Relative."""
     gap: str = ""
     """Why it cannot be computed; empty where it can."""
+    legs: tuple[LegFigures, ...] = ()
+    """The outgoing leg, then the return; none where it cannot be computed."""
 
     @property
     def loop_ohm(self) -> float:
@@ -49,16 +63,15 @@ class RunFigures:
 
     def at(self, temperature_c: float, temperature_u_k: float) -> RunFigures:
         """The same run with its conductors at another temperature."""
-        return RunFigures(
-            self.conductor_ohm + self.slope_ohm_per_k * (temperature_c - self.temperature_c),
-            self.conductor_hot_ohm,
-            self.slope_ohm_per_k,
-            self.joints_ohm,
-            self.joints_variance,
-            temperature_c,
-            temperature_u_k,
-            self.length_u,
-            self.gap,
+        warmer = temperature_c - self.temperature_c
+        return replace(
+            self,
+            conductor_ohm=self.conductor_ohm + self.slope_ohm_per_k * warmer,
+            temperature_c=temperature_c,
+            temperature_u_k=temperature_u_k,
+            legs=tuple(
+                replace(leg, conductor_ohm=leg.conductor_ohm + leg.slope_ohm_per_k * warmer) for leg in self.legs
+            ),
         )
 
 
@@ -100,31 +113,39 @@ def figures(runs: Sequence[Run], site: Site, limits: Limits) -> dict[str, RunFig
     temperature = np.array([recorded_temperature_c(run, site, limits) for run in whole])
     hot = np.maximum(temperature, limits["temperature.hot_c"])
     parallel = np.array([float(run.parallel_or_default) for run in whole])
-    conductor = np.zeros(len(whole))
     conductor_hot = np.zeros(len(whole))
-    slope = np.zeros(len(whole))
-    joints = np.zeros(len(whole))
-    variance = np.zeros(len(whole))
-    for legs in (
+    legs: list[list[LegFigures]] = []
+    for sizes in (
         [(run.size, run.material_or_default, run.stranding_or_default) for run in whole],
         [(run.return_size_or_default, run.return_material_or_default, run.stranding_or_default) for run in whole],
     ):
-        r20 = np.array([resistance_20c_ohm_per_m(*leg) for leg in legs])
-        alpha = np.array([alpha_20c(material) for _, material, _ in legs])
-        area = np.array([area_mm2(size) for size, _, _ in legs])
-        conductor += conductor_resistance_ohm(length, r20, alpha, temperature, parallel)
+        r20 = np.array([resistance_20c_ohm_per_m(*size) for size in sizes])
+        alpha = np.array([alpha_20c(material) for _, material, _ in sizes])
+        area = np.array([area_mm2(size) for size, _, _ in sizes])
         conductor_hot += conductor_resistance_ohm(length, r20, alpha, hot, parallel)
-        slope += length * r20 * alpha / parallel
-        mean, spread = termination_ohm(area, limits["termination.median_ohm"], limits["termination.geometric_sd"])
-        joints += TERMINATIONS_A_LEG * mean
-        variance += TERMINATIONS_A_LEG * spread
+        of_leg = (
+            conductor_resistance_ohm(length, r20, alpha, temperature, parallel),
+            length * r20 * alpha / parallel,
+            *termination_ohm(area, limits["termination.median_ohm"], limits["termination.geometric_sd"]),
+        )
+        legs.append([LegFigures(*leg) for leg in zip(*(np.asarray(column).tolist() for column in of_leg), strict=True)])
     length_doubt, temperature_doubt = limits.values("length_doubt"), limits.values("temperature_doubt")
-    columns = (column.tolist() for column in (conductor, conductor_hot, slope, joints, variance, temperature))
     done: dict[str, RunFigures] = {}
-    for run, ohm, hot_ohm, per_k, joint, spread_, degrees in zip(whole, *columns, strict=True):
+    for run, out, back, hot_ohm, degrees in zip(
+        whole, *legs, conductor_hot.tolist(), temperature.tolist(), strict=True
+    ):
         by = run.temperature_by if run.conductor_temperature_c is not None and run.temperature_by else "assumed"
-        length_u = length_doubt[run.length_by_or_default]
-        done[run.id] = RunFigures(ohm, hot_ohm, per_k, joint, spread_, degrees, temperature_doubt[by], length_u)
+        done[run.id] = RunFigures(
+            conductor_ohm=out.conductor_ohm + back.conductor_ohm,
+            conductor_hot_ohm=hot_ohm,
+            slope_ohm_per_k=out.slope_ohm_per_k + back.slope_ohm_per_k,
+            joints_ohm=TERMINATIONS_A_LEG * (out.joint_ohm + back.joint_ohm),
+            joints_variance=TERMINATIONS_A_LEG * (out.joint_variance + back.joint_variance),
+            temperature_c=degrees,
+            temperature_u_k=temperature_doubt[by],
+            length_u=length_doubt[run.length_by_or_default],
+            legs=(out, back),
+        )
     for run, gap in zip(runs, gaps, strict=True):
         if gap:
             done[run.id] = RunFigures(0.0, 0.0, 0.0, 0.0, 0.0, recorded_temperature_c(run, site, limits), 0.0, 0.0, gap)
@@ -139,17 +160,28 @@ class Carrying:
     current_a: float
 
 
-def record_variance(path: Sequence[Carrying], limits: Limits) -> float:
+def record_parts(path: Sequence[Carrying], limits: Limits) -> dict[str, float]:
     """
-    Variance of the drop over a path of one circuit that comes from the record. [V²]
+    Variance of the drop over a path of one circuit that comes from the record, by what is doubtful. [V²]
 
     Each run errs in length on its own; temperature and resistance per metre err alike over a circuit;
     each termination errs on its own.
     """
-    common_temperature = common_resistance = own = 0.0
+    common_temperature = common_resistance = lengths = joints = 0.0
     for part in path:
         volts = part.run.conductor_ohm * part.current_a
         common_temperature += part.run.slope_ohm_per_k * part.run.temperature_u_k * part.current_a
         common_resistance += volts
-        own += (part.run.length_u * volts) ** 2 + part.run.joints_variance * part.current_a**2
-    return own + common_temperature**2 + (limits["resistance_doubt.relative"] * common_resistance) ** 2
+        lengths += (part.run.length_u * volts) ** 2
+        joints += part.run.joints_variance * part.current_a**2
+    return {
+        "length": lengths,
+        "temperature": common_temperature**2,
+        "resistance per metre": (limits["resistance_doubt.relative"] * common_resistance) ** 2,
+        "terminations": joints,
+    }
+
+
+def record_variance(path: Sequence[Carrying], limits: Limits) -> float:
+    """Variance of the drop over a path of one circuit that comes from the record. [V²]"""
+    return sum(record_parts(path, limits).values())
