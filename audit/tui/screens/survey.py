@@ -1,0 +1,122 @@
+"""The walk and the page of the circuit at its cursor: side by side from 120 columns on, else one at a time."""
+
+from __future__ import annotations
+
+from typing import ClassVar
+
+from textual import on
+from textual.app import ComposeResult
+from textual.binding import Binding, BindingType
+from textual.containers import Horizontal
+from textual.reactive import reactive
+
+from audit.tui.drawing.next_act import NextAct, next_act
+from audit.tui.drawing.pieces import Line, cut, piece
+from audit.tui.drawing.walk import head_line
+from audit.tui.screens.base import OurScreen
+from audit.tui.state import Survey
+from audit.tui.widgets.circuit_page import CircuitPage
+from audit.tui.widgets.keys_line import KeysLine
+from audit.tui.widgets.one_line import OneLine
+from audit.tui.widgets.walk_list import WalkList
+
+
+class SurveyScreen(OurScreen[None]):
+    """What is there on opening, with nothing in front of it."""
+
+    CSS_PATH = "survey.tcss"
+    HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (120, "-wide")]  # noqa: RUF012  # as Textual declares it
+    AUTO_FOCUS: ClassVar[str | None] = "#walk"
+    BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("right", "turn", "open", show=False),
+        Binding("escape,left", "turn_back", "the walk", key_display="Esc"),
+        Binding("n", "go_next", "next"),
+        Binding("u", "app.undo(False)", "undo", show=False),
+        Binding("U", "app.undo(True)", "do again", show=False),
+        Binding("q", "app.quit", "quit", show=False),
+    ]
+
+    survey: reactive[Survey | None] = reactive(None, init=False)
+    turned: reactive[bool] = reactive(False, toggle_class="-turned", bindings=True)
+    """The page is in front; matters where there is room for one of the two."""
+    act: reactive[NextAct | None] = reactive(None, init=False)
+    """The next useful act from the cursor on."""
+
+    def compose(self) -> ComposeResult:
+        yield OneLine(id="head")
+        with Horizontal(id="panes"):
+            yield WalkList(id="walk")
+            yield CircuitPage(id="circuit")
+        yield OneLine(id="next")
+        yield OneLine(id="said")
+        yield KeysLine()
+
+    @property
+    def walk(self) -> WalkList:
+        return self.query_one(WalkList)
+
+    @property
+    def page(self) -> CircuitPage:
+        return self.query_one(CircuitPage)
+
+    @property
+    def in_sight(self) -> tuple[str, ...]:
+        """Ids of the circuits to be judged first."""
+        return (*filter(None, [self.page.circuit_id]), *self.walk.visible_circuits)
+
+    # --- state
+
+    def on_mount(self) -> None:
+        self.watch(self.app, "survey", self._take)
+
+    def _take(self, survey: Survey | None) -> None:
+        self.survey = survey
+
+    def watch_survey(self, survey: Survey | None) -> None:
+        if survey is None:
+            return
+        self.query_one("#head", OneLine).say(lambda width: head_line(survey, width, read_only=survey.read_only))
+        self.walk.survey = survey
+        self.page.survey = survey
+        self._look_ahead()
+
+    @on(WalkList.Moved)
+    def follow_the_cursor(self) -> None:
+        chosen = self.walk.chosen
+        self.page.circuit_id = chosen.id if chosen is not None and chosen.kind == "circuit" else ""
+        self._look_ahead()
+
+    def _look_ahead(self) -> None:
+        if self.survey is not None:
+            self.act = next_act(self.survey, self.page.circuit_id, self.walk.circuits_after())
+
+    def watch_act(self, act: NextAct | None) -> None:
+        line: Line = (piece(" next: ", "quiet"), piece(act.words, "loud")) if act is not None else ()
+        self.query_one("#next", OneLine).say((lambda width: cut(line, width)) if act is not None else None)
+
+    # --- keys
+
+    def check_action(self, action: str, parameters: tuple[object, ...]) -> bool | None:
+        if action == "turn_back":
+            return self.turned
+        return True
+
+    @on(WalkList.Opened)
+    def action_turn(self) -> None:
+        """Open the circuit at the cursor."""
+        if self.page.circuit_id:
+            self.turned = True
+            self.page.focus()
+
+    def action_turn_back(self) -> None:
+        """Back to the walk."""
+        self.turned = False
+        self.walk.focus()
+
+    def action_go_next(self) -> None:
+        """To the next circuit that wants doing."""
+        if self.survey is None:
+            return
+        act = next_act(self.survey, "", self.walk.circuits_after())
+        if act is not None and act.circuit_id:
+            self.walk.choose(act.circuit_id)
