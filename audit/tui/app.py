@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import asyncio
+import getpass
 from collections.abc import Callable
 from dataclasses import replace
 from datetime import datetime
@@ -13,14 +14,17 @@ from textual.app import App
 from textual.reactive import reactive
 
 from audit.tui.edits import Edit
+from audit.tui.entry.habits import Habits
 from audit.tui.judge import Judge
 from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Refused, Saved, Troubled, Undone
+from audit.tui.screens.ask import Ask
 from audit.tui.screens.base import OurScreen
 from audit.tui.screens.survey import SurveyScreen
 from audit.tui.session import Session
 from audit.tui.settings import UserSettings
 from audit.tui.state import Survey, latest_visit
 from audit.tui.theme import THEMES
+from rules.problems.cells import text_complaint
 
 
 class OhmwalkApp(App[None]):
@@ -48,6 +52,8 @@ class OhmwalkApp(App[None]):
         self._judge = Judge(self.post_message)
         self._answers: dict[Edit, asyncio.Future[Saved | Refused]] = {}
         self._saving = asyncio.Lock()
+        self.habits = Habits()
+        """What was chosen once and is not asked again."""
         for theme in THEMES:
             self.register_theme(theme)
         self.theme = THEMES[0].name
@@ -71,7 +77,7 @@ class OhmwalkApp(App[None]):
 
     @on(Loaded)
     def take_record(self, message: Loaded) -> None:
-        visit = latest_visit(message.site)
+        visit = self.habits.visit or latest_visit(message.site)
         if self.survey is None:
             self.survey = Survey(message.site, message.index, visit, message.read, read_only=message.read_only)
         else:
@@ -123,7 +129,7 @@ class OhmwalkApp(App[None]):
     async def save(self, edit: Edit) -> Saved | Refused:
         """Have an edit saved, in the order of asking; to be awaited in a worker, never in a handler."""
         async with self._saving:
-            who = self.settings.who or await self._ask_who()
+            who = await self.who()
             if not who:
                 return Refused(edit, "not saved: a save needs a name")
             future: asyncio.Future[Saved | Refused] = asyncio.get_running_loop().create_future()
@@ -131,8 +137,22 @@ class OhmwalkApp(App[None]):
             self._session.save(edit, who)
         return await future
 
-    async def _ask_who(self) -> str:
-        return ""
+    async def who(self) -> str:
+        """The name to save under, asked for once where it is not known; empty where she does not say."""
+        if not self.settings.who:
+            hint = "it stands beside everything you save in this file, and is kept on this laptop"
+            name = await self.push_screen_wait(
+                Ask("Your name", getpass.getuser(), hint=hint, check=complaint_about_name)
+            )
+            if name:
+                self.settings.remember_who(name)
+        return self.settings.who
+
+    def choose_visit(self, tag: str) -> None:
+        """Have readings go to a visit."""
+        self.habits.visit = tag
+        if self.survey is not None:
+            self.survey = replace(self.survey, visit=tag)
 
     def action_undo(self, again: bool) -> None:
         """Write back what one's last save replaced, or do it again."""
@@ -145,3 +165,11 @@ class OhmwalkApp(App[None]):
         """From the theme for a dark room to that for bright sun and back."""
         names = [theme.name for theme in THEMES]
         self.theme = names[(names.index(self.theme) + 1) % len(names)]
+
+
+def complaint_about_name(name: str) -> str:
+    """What is wrong with a name to save under; empty where it will do."""
+    if not name.strip():
+        return "a save needs a name"
+    complaint = text_complaint(name)
+    return f"{complaint[0]}; accepted: {complaint[1]}" if complaint is not None else ""

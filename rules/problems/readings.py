@@ -45,7 +45,7 @@ def reading_problems(index: Index, suggestions: Suggestions) -> Iterator[Problem
     yield from circuit_problems("readings", index.site.readings, index, suggestions)
     for circuit_id in index.circuits:
         readings = index.readings_of(circuit_id)
-        places = _places(index, circuit_id) if readings else {}
+        places = places_of(index, circuit_id) if readings else {}
         for reading in readings:
             yield from _on_circuit(reading, places, index, suggestions)
     for reading in index.site.readings:
@@ -54,7 +54,8 @@ def reading_problems(index: Index, suggestions: Suggestions) -> Iterator[Problem
     yield from _replacements(index, suggestions)
 
 
-def _places(index: Index, circuit_id: str) -> Places:
+def places_of(index: Index, circuit_id: str) -> Places:
+    """Where a meter can be put on a circuit, by kind of place."""
     names = [run.name for run in index.runs_of(circuit_id)]
     has_device = index.circuits[circuit_id].device != "none"
     return {

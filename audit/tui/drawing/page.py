@@ -45,6 +45,8 @@ class CircuitView:
     """Of that round, not replaced; what is being typed among them."""
     expected: Mapping[str, Figure]
     """Computed voltage of each point in that round."""
+    is_typing: bool = False
+    """Nothing of it is saved yet."""
 
 
 def view_of(survey: Survey, circuit_id: str) -> CircuitView | None:
@@ -82,7 +84,7 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
         Cells in sight: the profile takes its share of them.
     """
     circuit, result = view.circuit, view.result
-    lines = [head_line(circuit, result, width), ()]
+    lines = [head_line(circuit, result, width, is_typing=view.is_typing), ()]
     lines += _sketch(survey, view, width)
     if result is None:
         return [*lines, (), (Piece("   judging …", "quiet"),)]
@@ -102,12 +104,14 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
     return [*lines, ()]
 
 
-def head_line(circuit: Circuit, result: CircuitResult | None, width: int) -> Line:
-    """Tag and description, and the status at the right."""
-    status = piece("judging … ", "quiet")
+def head_line(circuit: Circuit, result: CircuitResult | None, width: int, *, is_typing: bool = False) -> Line:
+    """Tag and description, and the status at the right; while a value is typed, that it would have."""
+    status: Line = (piece("judging … ", "quiet"),)
     if result is not None:
-        status = piece(f"{status_words(result.status)} ", str(result.status))
-    return apart((piece(" "), piece(circuit.tag, "strong"), piece(f"  {circuit.description}")), (status,), width)
+        status = (piece(f"{status_words(result.status)} ", str(result.status)),)
+    if is_typing:
+        status = (piece("as typed  ", "quiet"), *status)
+    return apart((piece(" "), piece(circuit.tag, "strong"), piece(f"  {circuit.description}")), status, width)
 
 
 def _section(name: str, lines: list[Line]) -> list[Line]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import ClassVar
 
-from textual import on
+from textual import on, work
 from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 from textual.containers import Horizontal
@@ -13,12 +13,16 @@ from textual.reactive import reactive
 from audit.tui.drawing.next_act import NextAct, next_act
 from audit.tui.drawing.pieces import Line, cut, piece
 from audit.tui.drawing.walk import head_line
+from audit.tui.entry.slots import Place
+from audit.tui.screens import measuring, other_reading
 from audit.tui.screens.base import OurScreen
 from audit.tui.state import Survey
 from audit.tui.widgets.circuit_page import CircuitPage
+from audit.tui.widgets.entry_strip import EntryStrip
 from audit.tui.widgets.keys_line import KeysLine
 from audit.tui.widgets.one_line import OneLine
 from audit.tui.widgets.walk_list import WalkList
+from rules.record import Feed
 
 
 class SurveyScreen(OurScreen[None]):
@@ -30,7 +34,12 @@ class SurveyScreen(OurScreen[None]):
     BINDINGS: ClassVar[list[BindingType]] = [
         Binding("right", "turn", "open", show=False),
         Binding("escape,left", "turn_back", "the walk", key_display="Esc"),
+        Binding("m", "measure", "measure"),
+        Binding("o", "take_other", "other reading", show=False),
+        Binding("c", "correct", "correct", show=False),
         Binding("n", "go_next", "next"),
+        Binding("i", "choose_meters", "meters", show=False),
+        Binding("v", "choose_visit", "visit", show=False),
         Binding("u", "app.undo(False)", "undo", show=False),
         Binding("U", "app.undo(True)", "do again", show=False),
         Binding("q", "app.quit", "quit", show=False),
@@ -47,6 +56,7 @@ class SurveyScreen(OurScreen[None]):
         with Horizontal(id="panes"):
             yield WalkList(id="walk")
             yield CircuitPage(id="circuit")
+        yield EntryStrip(self.ohmwalk.now)
         yield OneLine(id="next")
         yield OneLine(id="said")
         yield KeysLine()
@@ -64,6 +74,10 @@ class SurveyScreen(OurScreen[None]):
         """Ids of the circuits to be judged first."""
         return (*filter(None, [self.page.circuit_id]), *self.walk.visible_circuits)
 
+    @property
+    def strip(self) -> EntryStrip:
+        return self.query_one(EntryStrip)
+
     # --- state
 
     def on_mount(self) -> None:
@@ -78,6 +92,7 @@ class SurveyScreen(OurScreen[None]):
         self.query_one("#head", OneLine).say(lambda width: head_line(survey, width, read_only=survey.read_only))
         self.walk.survey = survey
         self.page.survey = survey
+        self.strip.survey = survey
         self._look_ahead()
 
     @on(WalkList.Moved)
@@ -97,6 +112,9 @@ class SurveyScreen(OurScreen[None]):
     # --- keys
 
     def check_action(self, action: str, parameters: tuple[object, ...]) -> bool | None:
+        """While the strip is open its letters are typed, not pressed."""
+        if self.is_mounted and self.strip.has_focus_within:
+            return action in ("help", "quit")
         if action == "turn_back":
             return self.turned
         return True
@@ -120,3 +138,79 @@ class SurveyScreen(OurScreen[None]):
         act = next_act(self.survey, "", self.walk.circuits_after())
         if act is not None and act.circuit_id:
             self.walk.choose(act.circuit_id)
+
+    # --- readings
+
+    def place_at_hand(self) -> Place | None:
+        """The circuit or busbar at the cursor."""
+        chosen = self.walk.chosen
+        if chosen is None or self.survey is None:
+            return None
+        if chosen.kind == "circuit":
+            return Place(circuit_id=chosen.id)
+        table = "boards" if chosen.id in self.survey.index.boards else "sources"
+        return Place(board=Feed(table, chosen.id))
+
+    def place_words(self) -> str:
+        """Tag of the circuit or board at the cursor."""
+        place = self.place_at_hand()
+        if place is None or self.survey is None:
+            return ""
+        index = self.survey.index
+        row = index.circuits.get(place.id) or index.boards.get(place.id) or index.sources.get(place.id)
+        return row.tag if row is not None else ""
+
+    @work(exclusive=True, group="measure")
+    async def action_measure(self) -> None:
+        """Open the strip for a round on the circuit or busbar at the cursor."""
+        place = self.place_at_hand()
+        of = None if place is None else await measuring.round_at(self, place)
+        if of is not None:
+            self.turned = bool(of.place.circuit_id)
+            self.say("")
+            self.add_class("-entering")
+            self.page.scroll_home(animate=False)
+            await self.strip.open(of)
+
+    @work(exclusive=True, group="measure")
+    async def action_take_other(self) -> None:
+        """A reading beside the round: a joint, a drop along a lead, a temperature …"""
+        if (place := self.place_at_hand()) is not None:
+            await other_reading.take(self, place)
+
+    @work(exclusive=True, group="measure")
+    async def action_correct(self) -> None:
+        """Replace a reading; both stay."""
+        if (place := self.place_at_hand()) is not None:
+            await other_reading.correct(self, place)
+
+    @on(EntryStrip.Typed)
+    def show_as_typed(self, message: EntryStrip.Typed) -> None:
+        self.page.typing = message.view
+
+    @on(EntryStrip.Accepted)
+    def save_value(self, message: EntryStrip.Accepted) -> None:
+        self.run_worker(measuring.save_value(self, self.strip, message), group="save")
+
+    @on(EntryStrip.Left)
+    def leave_strip(self, message: EntryStrip.Left) -> None:
+        self.strip.close()
+        self.remove_class("-entering")
+        self.page.typing = None
+        (self.page if self.turned else self.walk).focus()
+        if message.finished:
+            self.say(
+                f"round {self.strip.round_name} of {self.place_words()} is saved · n next circuit · m another round"
+            )
+
+    @work(exclusive=True, group="measure")
+    async def action_choose_meters(self) -> None:
+        """Choose the meters of the visit anew."""
+        if self.survey is not None:
+            for quantity in ("voltage", "current"):
+                await measuring.choose_meter(self, quantity, self.survey.visit)
+
+    @work(exclusive=True, group="measure")
+    async def action_choose_visit(self) -> None:
+        """Choose the visit that readings go to, or begin one."""
+        await measuring.choose_visit(self)
