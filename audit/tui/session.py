@@ -89,32 +89,30 @@ class Session(threading.Thread):
             return SiteStore(self._path, read_only=True, laptop=self._laptop)
 
     def _serve(self, store: SiteStore) -> bool:
-        """Do what was asked for, all of it before looking at the record again; False at the end."""
+        """Do what was asked for, look at the record, then answer: who is answered finds it up to date. False: the end."""
+        answers: list[Message] = []
         try:
             request = self._requests.get(timeout=POLL_S)
+            while request is not None:
+                answers.append(self._do(store, request))
+                request = self._requests.get_nowait()
         except queue.Empty:
             self._look(store)
+            for answer in answers:
+                self._post(answer)
             return True
-        while request is not None:
-            self._do(store, request)
-            try:
-                request = self._requests.get_nowait()
-            except queue.Empty:
-                self._look(store)
-                return True
         return False
 
-    def _do(self, store: SiteStore, request: _Write | _Undo) -> None:
+    def _do(self, store: SiteStore, request: _Write | _Undo) -> Message:
         try:
             if isinstance(request, _Undo):
                 what = store.redo(request.who) if request.again else store.undo(request.who)
-                self._post(Undone(what, request.again))
-                return
+                return Undone(what, request.again)
             with store.save(request.who, request.edit.why) as save:
                 ids = tuple(step.write(save) for step in request.edit.steps)
-            self._post(Saved(request.edit, ids))
+            return Saved(request.edit, ids)
         except SiteError as error:
-            self._post(Refused(request.edit, str(error)) if isinstance(request, _Write) else Troubled(str(error)))
+            return Refused(request.edit, str(error)) if isinstance(request, _Write) else Troubled(str(error))
 
     def _look(self, store: SiteStore) -> None:
         """Load the record if anyone saved since the last look."""

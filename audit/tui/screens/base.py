@@ -6,8 +6,7 @@ from typing import TYPE_CHECKING, TypeVar, cast
 
 from textual.screen import Screen
 
-from audit.tui.drawing.pieces import cut, piece
-from audit.tui.widgets.one_line import OneLine
+from audit.tui.widgets.few_lines import FewLines
 
 if TYPE_CHECKING:
     from audit.tui.app import OhmwalkApp
@@ -28,8 +27,7 @@ class OurScreen(Screen[R]):
 
     def say(self, words: str, role: str = "quiet") -> None:
         """One line about what just happened, in the place of what is next; empty for none."""
-        said = self.query_one("#said", OneLine)
-        said.say((lambda width: cut((piece(f" {words}", role),), width)) if words else None)
+        self.query_one("#said", FewLines).say_words(words, role)
         for following in self.query("#next"):
             following.set_class(bool(words), "-hidden")
         if words and role == "quiet":

@@ -9,9 +9,9 @@ from textual.binding import Binding, BindingType
 
 from audit.tui.drawing.cautions import caution_lines
 from audit.tui.screens.base import OurScreen
+from audit.tui.widgets.few_lines import FewLines
 from audit.tui.widgets.keys_line import KeysLine
 from audit.tui.widgets.lines_view import LinesView
-from audit.tui.widgets.one_line import OneLine
 from rules.cautions import Caution
 
 
@@ -32,7 +32,7 @@ class CautionScreen(OurScreen[bool]):
 
     def compose(self) -> ComposeResult:
         yield LinesView(id="text")
-        yield OneLine(id="said")
+        yield FewLines(id="said")
         yield KeysLine()
 
     def on_resize(self) -> None:

@@ -14,13 +14,15 @@ from audit.tui.drawing.next_act import NextAct, next_act
 from audit.tui.drawing.pieces import Line, cut, piece
 from audit.tui.drawing.walk import head_line
 from audit.tui.entry.slots import Place
-from audit.tui.screens import measuring, other_reading
+from audit.tui.screens import changing, measuring, other_reading
 from audit.tui.screens.base import OurScreen
+from audit.tui.screens.form import FormScreen
+from audit.tui.screens.rows import RowsScreen
 from audit.tui.state import Survey
 from audit.tui.widgets.circuit_page import CircuitPage
 from audit.tui.widgets.entry_strip import EntryStrip
+from audit.tui.widgets.few_lines import FewLines
 from audit.tui.widgets.keys_line import KeysLine
-from audit.tui.widgets.one_line import OneLine
 from audit.tui.widgets.walk_list import WalkList
 from rules.record import Feed
 
@@ -35,6 +37,10 @@ class SurveyScreen(OurScreen[None]):
         Binding("right", "turn", "open", show=False),
         Binding("escape,left", "turn_back", "the walk", key_display="Esc"),
         Binding("m", "measure", "measure"),
+        Binding("a", "add", "add"),
+        Binding("e", "edit", "record"),
+        Binding("x", "remove", "remove", show=False),
+        Binding("s", "show_site", "site", show=False),
         Binding("o", "take_other", "other reading", show=False),
         Binding("c", "correct", "correct", show=False),
         Binding("n", "go_next", "next"),
@@ -52,13 +58,13 @@ class SurveyScreen(OurScreen[None]):
     """The next useful act from the cursor on."""
 
     def compose(self) -> ComposeResult:
-        yield OneLine(id="head")
+        yield FewLines(id="head")
         with Horizontal(id="panes"):
             yield WalkList(id="walk")
             yield CircuitPage(id="circuit")
         yield EntryStrip(self.ohmwalk.now)
-        yield OneLine(id="next")
-        yield OneLine(id="said")
+        yield FewLines(id="next")
+        yield FewLines(id="said")
         yield KeysLine()
 
     @property
@@ -89,7 +95,7 @@ class SurveyScreen(OurScreen[None]):
     def watch_survey(self, survey: Survey | None) -> None:
         if survey is None:
             return
-        self.query_one("#head", OneLine).say(lambda width: head_line(survey, width, read_only=survey.read_only))
+        self.query_one("#head", FewLines).say(lambda width: [head_line(survey, width, read_only=survey.read_only)])
         self.walk.survey = survey
         self.page.survey = survey
         self.strip.survey = survey
@@ -107,7 +113,7 @@ class SurveyScreen(OurScreen[None]):
 
     def watch_act(self, act: NextAct | None) -> None:
         line: Line = (piece(" next: ", "quiet"), piece(act.words, "loud")) if act is not None else ()
-        self.query_one("#next", OneLine).say((lambda width: cut(line, width)) if act is not None else None)
+        self.query_one("#next", FewLines).say((lambda width: [cut(line, width)]) if act is not None else None)
 
     # --- keys
 
@@ -121,10 +127,12 @@ class SurveyScreen(OurScreen[None]):
 
     @on(WalkList.Opened)
     def action_turn(self) -> None:
-        """Open the circuit at the cursor."""
+        """Open the circuit at the cursor; of a board, its form."""
         if self.page.circuit_id:
             self.turned = True
             self.page.focus()
+        else:
+            self.action_edit()
 
     def action_turn_back(self) -> None:
         """Back to the walk."""
@@ -138,6 +146,33 @@ class SurveyScreen(OurScreen[None]):
         act = next_act(self.survey, "", self.walk.circuits_after())
         if act is not None and act.circuit_id:
             self.walk.choose(act.circuit_id)
+
+    # --- the record
+
+    @work(exclusive=True, group="change")
+    async def action_add(self) -> None:
+        """Add a circuit, a run, a load …"""
+        chosen = self.walk.chosen
+        new_id = await changing.add(self, chosen.id if chosen is not None else "")
+        self.walk.choose(new_id)
+
+    def action_edit(self) -> None:
+        """The rows of the circuit at the cursor, or the form of the board."""
+        chosen = self.walk.chosen
+        if chosen is not None and chosen.kind == "circuit":
+            self.app.push_screen(RowsScreen(chosen.id))
+        elif (place := self.place_at_hand()) is not None and place.board is not None:
+            self.app.push_screen(FormScreen(place.board.table, place.board.id))
+
+    @work(exclusive=True, group="change")
+    async def action_remove(self) -> None:
+        """Remove the circuit or board at the cursor, after asking."""
+        if (place := self.place_at_hand()) is not None:
+            await changing.remove(self, "circuits" if place.board is None else place.board.table, place.id)
+
+    def action_show_site(self) -> None:
+        """The site's settings, sources, boards, meters and visits."""
+        self.app.push_screen(RowsScreen())
 
     # --- readings
 

@@ -31,7 +31,7 @@ from audit.tui.entry.slots import Place, Slot, readings_of_visit, round_at_hand,
 from audit.tui.entry.verdict import Typing, provisional
 from audit.tui.state import Survey
 from audit.tui.widgets.entry_cell import EntryCell
-from audit.tui.widgets.one_line import OneLine
+from audit.tui.widgets.few_lines import FewLines
 from rules.errors import RulesError
 from rules.record import Reading
 
@@ -108,7 +108,7 @@ class EntryStrip(Widget):
 
     def compose(self) -> ComposeResult:
         yield HorizontalScroll(id="cells", can_focus=False)
-        yield OneLine(id="echo")
+        yield FewLines(id="echo")
 
     # --- opening and leaving
 
@@ -300,8 +300,12 @@ class EntryStrip(Widget):
 
     def _echo(self, cell: EntryCell, complaint: str = "") -> None:
         """Beneath the cells: what was understood of the one at hand, or what is wrong with it."""
-        said = line(piece(f" {complaint}", "wrong")) if complaint else self._understood(cell)
-        self.query_one("#echo", OneLine).say(lambda width: cut(said, width))
+        echo = self.query_one("#echo", FewLines)
+        if complaint:
+            echo.say_words(complaint, "wrong")
+        else:
+            said = self._understood(cell)
+            echo.say(lambda width: [cut(said, width)])
 
     def _understood(self, cell: EntryCell) -> Line:
         slot = cell.slot
