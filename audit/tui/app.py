@@ -9,7 +9,7 @@ from dataclasses import replace
 from datetime import datetime
 from pathlib import Path
 
-from textual import on
+from textual import on, work
 from textual.app import App
 from textual.reactive import reactive
 
@@ -17,6 +17,7 @@ from audit.tui.edits import Edit
 from audit.tui.entry.habits import Habits
 from audit.tui.judge import Judge
 from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Refused, Saved, Troubled, Undone
+from audit.tui.screens import reporting
 from audit.tui.screens.ask import Ask
 from audit.tui.screens.base import OurScreen
 from audit.tui.screens.survey import SurveyScreen
@@ -160,6 +161,11 @@ class OhmwalkApp(App[None]):
             self._session.undo(self.settings.who, again=again)
         else:
             self.say("nothing of yours to undo")
+
+    @work(exclusive=True, group="report")
+    async def action_report(self) -> None:
+        """Write the audit report to a file."""
+        await reporting.write(self)
 
     def action_change_light(self) -> None:
         """From the theme for a dark room to that for bright sun and back."""

@@ -10,10 +10,10 @@ from textual import on
 from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 from textual.containers import Horizontal, Vertical
-from textual.screen import ModalScreen
 from textual.widgets import Input, Static
 
 from audit.tui.drawing.pieces import Line, cut, piece
+from audit.tui.screens.foot import Foot
 from audit.tui.widgets.pick_list import PickList
 from rules.text import clean
 
@@ -50,7 +50,7 @@ class _Choices(PickList, can_focus=False):
         return cut((piece(mark), piece(choice.answer, "strong"), piece(f"  {choice.words}", "quiet")), self.inner_width)
 
 
-class Ask(ModalScreen[str | None]):
+class Ask(Foot[str | None]):
     """
     Asks, and gives the answer back; ``None`` for Escape.
 
@@ -72,7 +72,6 @@ class Ask(ModalScreen[str | None]):
         What is wrong with an answer; empty where it will do.
     """
 
-    CSS_PATH = "ask.tcss"
     BINDINGS: ClassVar[list[BindingType]] = [
         Binding("escape", "give_up", "leave", show=False),
         Binding("up", "step(-1)", show=False),

@@ -36,6 +36,12 @@ class OurScreen(Screen[R]):
 
     _said = ""
 
+    def action_help(self) -> None:
+        """What the keys do here, and the cautions."""
+        from audit.tui.screens.help import help_on  # it is a screen of ours itself
+
+        self.app.push_screen(help_on(self))
+
     def _unsay(self, words: str) -> None:
         if self._said == words:
             self.say("")

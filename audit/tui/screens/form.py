@@ -54,9 +54,10 @@ class FormScreen(OurScreen[None]):
     CSS_PATH = "form.tcss"
     AUTO_FOCUS: ClassVar[str | None] = ""
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("up,shift+tab", "step(-1)", "", show=False),
-        Binding("down,tab", "step(1)", "Enter next field", key_display="↑ ↓"),
-        Binding("escape", "leave", "done", key_display="Esc"),
+        Binding("up,shift+tab", "step(-1)", "the field before; a change is saved", show=False, key_display="↑"),
+        Binding("down,tab", "step(1)", "next field", key_display="↓", tooltip="the next field; a change is saved"),
+        Binding("escape", "leave", "done", key_display="Esc", tooltip="give up what is being typed, else leave"),
+        Binding("f1", "help", "help", key_display="? Enter", tooltip="what the keys do, and the cautions"),
     ]
 
     def __init__(self, table: str, row_id: str, start: str = "") -> None:
@@ -187,6 +188,10 @@ class FormScreen(OurScreen[None]):
     def _accept(self, field_line: FieldLine, step: int, *, may_end: bool = False) -> None:
         row, survey = self._row, self._survey
         if row is None or survey is None:
+            return
+        if field_line.text.strip() == "?":
+            field_line.restore()
+            self.action_help()
             return
         if not field_line.is_changed:
             self._go_on(field_line, step, may_end=may_end)

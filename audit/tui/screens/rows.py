@@ -30,6 +30,7 @@ class RowsScreen(OurScreen[None]):
         Binding("x", "remove", "remove"),
         Binding("u", "app.undo(False)", "undo"),
         Binding("U", "app.undo(True)", "do again", show=False),
+        Binding("question_mark", "help", "help", key_display="?", tooltip="what the keys do, and the cautions"),
         Binding("escape,left", "leave", "back", key_display="Esc"),
     ]
 

@@ -16,13 +16,15 @@ from audit.tui.drawing.walk import head_line
 from audit.tui.entry.slots import Place
 from audit.tui.screens import changing, measuring, other_reading
 from audit.tui.screens.base import OurScreen
+from audit.tui.screens.find import Find
+from audit.tui.screens.findings import FindingsScreen
 from audit.tui.screens.form import FormScreen
 from audit.tui.screens.rows import RowsScreen
 from audit.tui.state import Survey
-from audit.tui.widgets.circuit_page import CircuitPage
 from audit.tui.widgets.entry_strip import EntryStrip
 from audit.tui.widgets.few_lines import FewLines
 from audit.tui.widgets.keys_line import KeysLine
+from audit.tui.widgets.place_page import PlacePage
 from audit.tui.widgets.walk_list import WalkList
 from rules.record import Feed
 
@@ -34,21 +36,26 @@ class SurveyScreen(OurScreen[None]):
     HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (120, "-wide")]  # noqa: RUF012  # as Textual declares it
     AUTO_FOCUS: ClassVar[str | None] = "#walk"
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("right", "turn", "open", show=False),
-        Binding("escape,left", "turn_back", "the walk", key_display="Esc"),
-        Binding("m", "measure", "measure"),
-        Binding("a", "add", "add"),
-        Binding("e", "edit", "record"),
-        Binding("x", "remove", "remove", show=False),
-        Binding("s", "show_site", "site", show=False),
-        Binding("o", "take_other", "other reading", show=False),
-        Binding("c", "correct", "correct", show=False),
-        Binding("n", "go_next", "next"),
-        Binding("i", "choose_meters", "meters", show=False),
-        Binding("v", "choose_visit", "visit", show=False),
-        Binding("u", "app.undo(False)", "undo", show=False),
-        Binding("U", "app.undo(True)", "do again", show=False),
-        Binding("q", "app.quit", "quit", show=False),
+        Binding("right", "turn", "open the circuit or board at the cursor", show=False, key_display="→"),
+        Binding("escape,left", "turn_back", "walk", key_display="Esc", tooltip="back to the walk"),
+        Binding("m", "measure", "measure", tooltip="a round: the current, then the voltage at each point"),
+        Binding("a", "add", "add", tooltip="add a circuit, run, load, board, source, meter or visit"),
+        Binding("e", "edit", "record", tooltip="what is installed: circuit, runs, loads; of a board, its own form"),
+        Binding("slash", "find", "find", key_display="/", tooltip="find a tag, description or location"),
+        Binding("f", "show_findings", "findings", tooltip="all findings, the most urgent first"),
+        Binding("question_mark", "help", "help", key_display="?", tooltip="what the keys do, and the cautions"),
+        Binding("n", "go_next", "next", tooltip="to the next circuit that wants doing"),
+        Binding("o", "take_other", "another reading: joint, drop along a lead, temperature, dead test …", show=False),
+        Binding("c", "correct", "correct a reading; both stay", show=False),
+        Binding("s", "show_site", "the site: settings, sources, boards, meters, visits", show=False),
+        Binding("v", "choose_visit", "choose or begin the visit that readings belong to", show=False),
+        Binding("i", "choose_meters", "choose the meters of the visit", show=False),
+        Binding("r", "app.report", "write the audit report to a file", show=False),
+        Binding("x", "remove", "remove the circuit or board at the cursor, after asking", show=False),
+        Binding("u", "app.undo(False)", "undo your last save; it says what it undoes", show=False),
+        Binding("U", "app.undo(True)", "do again what was undone last", show=False),
+        Binding("t", "app.change_light", "colours for a dark room or for bright sun", show=False),
+        Binding("q", "app.quit", "leave; everything accepted is saved", show=False),
     ]
 
     survey: reactive[Survey | None] = reactive(None, init=False)
@@ -61,7 +68,7 @@ class SurveyScreen(OurScreen[None]):
         yield FewLines(id="head")
         with Horizontal(id="panes"):
             yield WalkList(id="walk")
-            yield CircuitPage(id="circuit")
+            yield PlacePage(id="circuit")
         yield EntryStrip(self.ohmwalk.now)
         yield FewLines(id="next")
         yield FewLines(id="said")
@@ -72,13 +79,13 @@ class SurveyScreen(OurScreen[None]):
         return self.query_one(WalkList)
 
     @property
-    def page(self) -> CircuitPage:
-        return self.query_one(CircuitPage)
+    def page(self) -> PlacePage:
+        return self.query_one(PlacePage)
 
     @property
     def in_sight(self) -> tuple[str, ...]:
         """Ids of the circuits to be judged first."""
-        return (*filter(None, [self.page.circuit_id]), *self.walk.visible_circuits)
+        return (*filter(None, [self.page.place_id]), *self.walk.visible_circuits)
 
     @property
     def strip(self) -> EntryStrip:
@@ -104,12 +111,12 @@ class SurveyScreen(OurScreen[None]):
     @on(WalkList.Moved)
     def follow_the_cursor(self) -> None:
         chosen = self.walk.chosen
-        self.page.circuit_id = chosen.id if chosen is not None and chosen.kind == "circuit" else ""
+        self.page.place_id = chosen.id if chosen is not None else ""
         self._look_ahead()
 
     def _look_ahead(self) -> None:
         if self.survey is not None:
-            self.act = next_act(self.survey, self.page.circuit_id, self.walk.circuits_after())
+            self.act = next_act(self.survey, self.page.place_id, self.walk.circuits_after())
 
     def watch_act(self, act: NextAct | None) -> None:
         line: Line = (piece(" next: ", "quiet"), piece(act.words, "loud")) if act is not None else ()
@@ -127,12 +134,10 @@ class SurveyScreen(OurScreen[None]):
 
     @on(WalkList.Opened)
     def action_turn(self) -> None:
-        """Open the circuit at the cursor; of a board, its form."""
-        if self.page.circuit_id:
+        """Open the circuit or board at the cursor."""
+        if self.page.place_id:
             self.turned = True
             self.page.focus()
-        else:
-            self.action_edit()
 
     def action_turn_back(self) -> None:
         """Back to the walk."""
@@ -146,6 +151,18 @@ class SurveyScreen(OurScreen[None]):
         act = next_act(self.survey, "", self.walk.circuits_after())
         if act is not None and act.circuit_id:
             self.walk.choose(act.circuit_id)
+
+    def action_find(self) -> None:
+        """Find a circuit or board by typing."""
+        self.app.push_screen(Find(self.walk.find))
+
+    @work(exclusive=True, group="change")
+    async def action_show_findings(self) -> None:
+        """All findings; the circuit of the one that was opened is shown."""
+        row_id = await self.app.push_screen_wait(FindingsScreen())
+        if row_id:
+            self.walk.choose(row_id)
+            self.turned = True
 
     # --- the record
 
@@ -201,7 +218,7 @@ class SurveyScreen(OurScreen[None]):
         place = self.place_at_hand()
         of = None if place is None else await measuring.round_at(self, place)
         if of is not None:
-            self.turned = bool(of.place.circuit_id)
+            self.turned = True
             self.say("")
             self.add_class("-entering")
             self.page.scroll_home(animate=False)

@@ -31,11 +31,12 @@ class KeysLine(Widget):
 
     def shown(self) -> list[tuple[int, str, str, str]]:
         """Column, key, words and action of each binding that fits."""
-        column, found = 1, []
+        column, found, actions = 1, [], set[str]()
         for key, active in self.screen.active_bindings.items():
             binding = active.binding
-            if not binding.show or not active.enabled:
+            if not binding.show or not active.enabled or binding.action in actions:
                 continue
+            actions.add(binding.action)
             name = clean(binding.key_display or self.app.get_key_display(binding))
             width = cell_len(name) + 1 + cell_len(binding.description)
             if column + width > self.size.width:

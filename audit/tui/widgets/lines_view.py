@@ -7,6 +7,7 @@ from typing import ClassVar
 
 from rich.segment import Segment
 from rich.style import Style
+from textual.binding import Binding, BindingType
 from textual.geometry import Size
 from textual.scroll_view import ScrollView
 from textual.strip import Strip
@@ -14,9 +15,17 @@ from textual.strip import Strip
 from audit.tui.drawing.pieces import ROLES, Line
 
 
-class LinesView(ScrollView, can_focus=True):
+class LinesView(ScrollView, can_focus=True, inherit_bindings=False):
     """Lines that were drawn beforehand; subclasses draw theirs when they are seen (``count`` and ``line_at``)."""
 
+    BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("up", "scroll_up", "a line up", show=False, key_display="↑"),
+        Binding("down", "scroll_down", "a line down", show=False, key_display="↓"),
+        Binding("pageup", "page_up", "a screen up", show=False),
+        Binding("pagedown,space", "page_down", "a screen down", show=False),
+        Binding("home", "scroll_home", "to the top", show=False),
+        Binding("end", "scroll_end", "to the end", show=False),
+    ]
     COMPONENT_CLASSES: ClassVar[set[str]] = {f"lines--{role}" for role in (*ROLES, "chosen")}
     DEFAULT_CSS = """
     LinesView {

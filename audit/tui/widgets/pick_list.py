@@ -15,17 +15,17 @@ from audit.tui.drawing.pieces import Line
 from audit.tui.widgets.lines_view import LinesView
 
 
-class PickList(LinesView):
+class PickList(LinesView, inherit_bindings=False):
     """Subclasses give the items: how many, which can be chosen, and their lines."""
 
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("up", "step(-1)", "up", show=False),
-        Binding("down", "step(1)", "down", show=False),
-        Binding("pageup", "page(-1)", "a page up", show=False),
-        Binding("pagedown,space", "page(1)", "a page down", show=False),
-        Binding("home", "edge(-1)", "first", show=False),
-        Binding("end", "edge(1)", "last", show=False),
-        Binding("enter", "open", "open", key_display="Enter"),
+        Binding("up", "step(-1)", "up", show=False, key_display="↑"),
+        Binding("down", "step(1)", "down", show=False, key_display="↓"),
+        Binding("pageup", "page(-1)", "a screen up", show=False),
+        Binding("pagedown,space", "page(1)", "a screen down", show=False),
+        Binding("home", "edge(-1)", "the first", show=False),
+        Binding("end", "edge(1)", "the last", show=False),
+        Binding("enter", "open", "open", key_display="Enter", tooltip="open what is at the cursor"),
     ]
 
     cursor = reactive(-1)

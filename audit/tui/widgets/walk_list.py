@@ -56,6 +56,27 @@ class WalkList(PickList):
         if item >= 0:
             self.cursor = item
 
+    def find(self, text: str, further: bool) -> bool:
+        """Put the cursor on a place whose tag, description or location holds a text; whether there is one."""
+        wanted = text.casefold().strip()
+        if not wanted or self.survey is None:
+            return False
+        start = max(0, self.cursor + further)
+        order = [*range(start, len(self._stops)), *range(start)]
+        found = next((n for n in order if self.is_choosable(n) and wanted in self._words_of(n)), -1)
+        if found >= 0:
+            self.cursor = found
+        return found >= 0
+
+    def _words_of(self, item: int) -> str:
+        assert self.survey is not None
+        stop = self._stops[item]
+        if stop.kind == "circuit":
+            circuit = self.survey.index.circuits[stop.id]
+            return f"{circuit.tag} {circuit.description} {circuit.location}".casefold()
+        board = self.survey.index.boards.get(stop.id)
+        return f"{stop.words} {board.location if board is not None else ''}".casefold()
+
     def circuits_after(self) -> Iterator[str]:
         """Ids of the circuits that follow the cursor in the walk, then those before it."""
         order = [*range(self.cursor + 1, len(self._stops)), *range(max(0, self.cursor + 1))]
