@@ -18,6 +18,7 @@ import click
 COMMANDS = {
     "check": "run every rule on a site and print the findings",
     "demo": "copy an invented sample site here and check it",
+    "drop": "compute the drop of one run, without a site",
     "report": "write the audit report of a site",
     "tables": "show the reference data in use, with source and status",
 }

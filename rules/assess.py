@@ -22,6 +22,9 @@ from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
 from rules.rule import BoardCase, SiteCase, judge, switched_off
 from rules.runs import figures
+from rules.service import service_of
+
+FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01")
 
 CAUSES_NOT_JUDGED = "the drop agrees with the record within its doubt; causes are not yet judged"
 
@@ -110,6 +113,7 @@ def assess_circuit(
         nominal_voltage_v=case.nominal_v,
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
         points=_points(case),
+        service=service_of(case),
         findings=tuple(findings),
         not_judged=tuple(gaps),
     )
@@ -119,7 +123,7 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
     """The first that holds; ``sound`` needs the probabilities of the diagnosis, which is not there yet."""
     urgent = [finding for finding in findings if finding.severity in (Severity.IMMEDIATE, Severity.SOON)]
     if urgent:
-        return Status.ACT, urgent[0].why
+        return Status.ACT, min(urgent, key=_weight).why
     gaps = gaps_of(case)
     if gaps:
         return Status.INCOMPLETE, gaps[0][1]
@@ -130,8 +134,13 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
         )
     watched = [finding for finding in findings if finding.severity is Severity.WATCH]
     if watched:
-        return Status.WATCH, watched[0].why
+        return Status.WATCH, min(watched, key=_weight).why
     return Status.MEASURE, CAUSES_NOT_JUDGED if case.drop else case.drop_gap
+
+
+def _weight(finding: Finding) -> tuple[int, bool]:
+    """The most urgent first; of those alike, what was read before what the record alone says."""
+    return finding.severity.rank, finding.rule in FROM_THE_RECORD
 
 
 def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:

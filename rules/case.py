@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
@@ -20,6 +21,8 @@ from rules.network import GAP_NOTHING_FEEDS, Network, device_ohm, nominal_v
 from rules.record import Circuit, Figure, Load, Reading, Run, Site
 from rules.rounds import Round, Tree, drop_of, judged, rounds_of, temperature_read, visit_of
 from rules.runs import Carrying, RunFigures, record_variance
+
+RUN = re.compile(r"run \d+")
 
 GAP_COLLAPSE = "the loads behind this source cannot be supplied: the voltage collapses"
 
@@ -79,6 +82,8 @@ class CircuitCase:
     drop: Drop | None
     drop_gap: str
     """Why there is no drop; empty where there is one."""
+    unused: tuple[str, ...] = ()
+    """Readings of the visit that nothing here makes use of."""
 
     @property
     def tag(self) -> str:
@@ -103,10 +108,11 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         of_visit = list(readings)
         visit = of_visit[-1].visit_or_default if of_visit else ""
     tree = _tree(context, circuit, of_visit)
+    nominal = nominal_v(circuit, index)
     rounds = rounds_of(of_visit, tree, index, limits)
     drop, gap = None, "nothing was read" if not of_visit else ""
     if of_visit:
-        against = {this.name: impossible(this, tree, limits) for this in rounds}
+        against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
         possible = [this for this in rounds if not against[this.name]]
         try:
             if rounds and not possible:
@@ -118,7 +124,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
     return CircuitCase(
         context=context,
         circuit=circuit,
-        nominal_v=nominal_v(circuit, index),
+        nominal_v=nominal,
         allowed_drop_percent=limits["drop.allowed_percent"] if allowed is None else allowed,
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
@@ -127,7 +133,25 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         tree=tree,
         drop=drop,
         drop_gap=gap,
+        unused=tuple(dict.fromkeys(_name(row) for row in of_visit if not _is_used(row, rounds))),
     )
+
+
+def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
+    """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
+    this = next(round_ for round_ in rounds if round_.name == reading.round)
+    if reading.quantity == "voltage":
+        return reading.at in this.volts
+    if reading.quantity == "drop":
+        return (reading.at, reading.to) in this.direct
+    if reading.quantity == "temperature":
+        return bool(RUN.fullmatch(reading.at))
+    return reading.quantity == "current"
+
+
+def _name(reading: Reading) -> str:
+    leg = f" {reading.leg}" if reading.leg and reading.leg != "both" else ""
+    return f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}"
 
 
 def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tree:
@@ -207,7 +231,9 @@ def _computed_u(
     parts: dict[str, list[Carrying]] = defaultdict(list)
     variance = 0.0
     for branch in branches:
-        amps = float(np.nan_to_num(current_a[branch]))
+        amps = float(current_a[branch])
+        if math.isnan(amps):  # a tree that cannot be supplied
+            return math.nan
         run_id = network.run_at[branch]
         if run_id:
             parts[network.circuit_at[branch]].append(Carrying(context.figures[run_id], amps))

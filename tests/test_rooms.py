@@ -64,7 +64,9 @@ def loaded_by(code: str) -> set[str]:
     return set(done.stderr.split())
 
 
-@pytest.mark.parametrize("args", [["--help"], ["--version"], ["check", "--help"], ["report", "--help"]])
+@pytest.mark.parametrize(
+    "args", [["--help"], ["--version"], ["check", "--help"], ["report", "--help"], ["drop", "--help"]]
+)
 def test_help_loads_nothing_heavy(args: list[str]) -> None:
     loaded = loaded_by(f"from audit.cli import run; assert run({args!r}) == 0")
     assert "click" in loaded

@@ -30,7 +30,7 @@ def command(site: Path, as_json_: bool, circuit: str | None, visit: str | None, 
     if circuit is not None:
         assessment = only(assessment, circuit)
     if as_json_:
-        from audit.report.as_json import as_json, as_text  # noqa: PLC0415
+        from audit.report.as_json import as_json, as_text
 
         click.echo(as_text(as_json(assessment)), nl=False)
     else:

@@ -17,7 +17,7 @@ from audit.errors import IntakeRefused
 from audit.intake.csv_file import read_csv
 from audit.intake.faults import Faults
 from audit.intake.grid import Grid
-from audit.intake.header import read_header
+from audit.intake.header import read_header, title
 from audit.intake.rows import Taken, read_rows, read_tags
 from audit.intake.settings import FILE as SETTINGS_FILE
 from audit.intake.settings import Settings, place_of, read_settings, read_toml
@@ -83,7 +83,8 @@ def site_of(
         if table not in TABLES:
             faults.add(f"{table}.csv", _no_table(table))
             continue
-        rows = list(given)
+        titles = {column.name: title(column) for _, column in columns(table)}
+        rows = [{titles.get(name, name): cell for name, cell in row.items()} for row in given]
         header = tuple(dict.fromkeys(name for row in rows for name in row))
         cells = tuple((line, tuple(row.get(name, "") for name in header)) for line, row in enumerate(rows, 2))
         if cells:

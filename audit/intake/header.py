@@ -108,7 +108,8 @@ def _unknown(name: str, known: tuple[str, ...]) -> str:
 def _unit(unit: str | None, column: Column) -> tuple[str, str]:
     """The header's unit, empty where it is the column's own, and what is wrong with it."""
     if unit is None:
-        return "", ""
+        bare = column.kind != "number" or column.unit in ("", "*", "%")  # these can be meant one way only
+        return "", "" if bare else f"the header names no unit; accepted: {title(column)}, or another unit of the kind"
     unit = unit.strip()
     if column.kind != "number" or not column.unit:
         return "", f"the header names the unit {quoted(unit)}; accepted: {column.name} without a unit"

@@ -137,13 +137,15 @@ def _limits(limits: Limits) -> Section:
     """Every limit and doubt in force, with its source."""
     rows: list[tuple[Cell, ...]] = []
     for group in limits.groups.values():
-        values = "; ".join(_limit_words(name, value, group.unit) for name, value in group.values.items())
+        said = [_limit_words(name, value, group.unit) for name, value in group.values.items()]
+        said += [f"{name.replace('_', ' ')}: {word}" for name, word in group.words.items()]
+        values = "; ".join(said)
         status = "" if group.status in group.source else group.status
         source = ", ".join(text for text in (group.source, group.edition, status) if text)
         rows.append((group.title, values, source))
     for rule, setting in limits.rules.items():
-        said = "switched off" if setting.off else f"severity {setting.severity}"
-        rows.append((f"Rule {rule}", said, setting.reason))
+        changed = "switched off" if setting.off else f"severity {setting.severity}"
+        rows.append((f"Rule {rule}", changed, setting.reason))
     settled = (
         f"A limit counts as kept where the probability of being past it is {limits['decision.passes_at']:g} or less, "
         f"as not kept where it is {limits['decision.fails_at']:g} or more, and as not settled between. A measured "

@@ -18,7 +18,7 @@ from rich.console import Console
 from rich.text import Text
 
 from audit.console import PlainConsole
-from audit.report.bar import ASCII, BLOCKS, CELLS, text_bar
+from audit.report.bar import ASCII, BLOCKS, CELLS, legend, text_bar
 from audit.report.phrases import (
     CAUSES_NOT_JUDGED,
     STATUS_MEANING,
@@ -176,6 +176,9 @@ def _cautions(page: Page, assessment: Assessment) -> None:
 
 def _walk(page: Page, index: Index, assessment: Assessment) -> None:
     place = None
+    page.line()
+    if assessment.circuits:
+        page.line(legend(BLOCKS if page.has_blocks else ASCII))
     tag_cells = min(14, max((cell_len(page.text(r.circuit).plain) for r in assessment.circuits), default=0))
     for feed, group in by_feed(index, assessment.circuits):
         location = location_of(index, feed)

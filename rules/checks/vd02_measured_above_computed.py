@@ -3,10 +3,11 @@
 import math
 from collections.abc import Iterator
 
-from rules.assessment import Citation, Finding, Severity
+from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
 from rules.errors import MissingData
+from rules.limits import Limits
 from rules.record import Figure
 from rules.rule import rule
 from rules.units import show
@@ -23,16 +24,18 @@ from rules.units import show
     "The drop does not say where the excess lies: a wrong length or size in the record looks the same.",
     source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
 )
-def measured_above_computed(case: CircuitCase) -> Iterator[Finding]:
+def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     More voltage is lost than the recorded conductors account for, beyond the doubt of both.
 
     **Finds**: 2.45 ± 0.02 V measured against 1.92 ± 0.05 V computed at 8 A: 4.2 W too much, so it is for soon.
-    Below the profile's 2 W the severity is watch.
+    Below the profile's 2 W the severity is watch; from 10 W on, which can burn if it sits in one place, it is immediate.
 
     **Leaves alone**: 2.02 ± 0.02 V against the same computed drop, which two standard uncertainties cover. Readings
     that cannot be (RD01, RD02) are not judged.
     """
+    if case.unused:
+        yield measured_above_computed.gap(case, "readings", f"read, but not used yet: {', '.join(case.unused)}")
     if case.drop is None:
         if case.visit:
             raise MissingData(case.drop_gap)
@@ -65,6 +68,14 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding]:
             "current": drop.current,
             "heat": Figure(heat_w, "W", heat_u),
         },
-        severity=Severity.SOON if heat_w >= case.limits["heat.soon_w"] else Severity.WATCH,
+        severity=_severity(heat_w, case.limits),
+        source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
         consequences=(f"at this current {show(heat_w, 'W', heat_u)} turn into heat that the record does not explain",),
     )
+
+
+def _severity(heat_w: float, limits: Limits) -> Severity:
+    """By what may turn into heat in one place, which is not known yet."""
+    if heat_w >= limits["heat.immediate_w"]:
+        return Severity.IMMEDIATE
+    return Severity.SOON if heat_w >= limits["heat.soon_w"] else Severity.WATCH

@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from functools import partial
 from typing import TypeAlias
 
+from rules.columns import METER_QUANTITY
 from rules.index import Index
 from rules.problems.problem import Problem
 from rules.record import UNIT_OF_QUANTITY, Reading
@@ -14,17 +15,6 @@ from rules.text import Suggestions, either, quoted
 
 Ranges: TypeAlias = tuple[float | None, ...]
 """Full scales of an instrument for one quantity, in its unit; ``None`` holds every value."""
-
-METER_OF_QUANTITY = {
-    "voltage": "voltage",
-    "drop": "voltage",
-    "joint": "voltage",
-    "current": "current",
-    "residual": "current",
-    "temperature": "temperature",
-    "resistance": "resistance",
-}
-"""What an instrument must measure to show a reading of each quantity."""
 
 _ROUNDING = 1e-9
 """Relative; 200 mV and 0.2 V are one range."""
@@ -35,7 +25,7 @@ def meter_problems(index: Index, suggestions: Suggestions) -> Iterator[Problem]:
     ranges: dict[tuple[str, str], Ranges] = {}
     known = list(dict.fromkeys(row.tag for row in index.site.instruments if row.tag))
     for reading in index.site.readings:
-        measured = METER_OF_QUANTITY.get(reading.quantity)
+        measured = METER_QUANTITY.get(reading.quantity)
         if not reading.instrument or measured is None:
             continue
         key = reading.instrument, measured

@@ -196,11 +196,11 @@ def test_the_inspector_sees_replaced_readings_and_the_electrician_does_not(site:
 
 def test_the_inspector_sees_where_each_value_comes_from(site: Site, assessment: Assessment) -> None:
     texts = list(texts_of(content_of(site, assessment, "inspector").sections))
-    assert "13.72 m (typed “45 ft”), by tape" in texts
-    assert "8 m, by drawing (assumed)" in texts
+    assert "13.72 m (typed “45 ft”), taped" in texts
+    assert "8 m, from a drawing (assumed)" in texts
     assert "copper (assumed), stranded (assumed)" in texts
     assert "18 °C (the site's ambient, assumed)" in texts
-    assert "22 °C, by probe" in texts
+    assert "22 °C, by a probe" in texts
     assert "24 V (taken from what feeds it)" in texts
     assert "2026-03 as found, round 1, 2026-03-02, load current 6.02 A at way" in texts
 

@@ -7,6 +7,7 @@ import html
 import io
 import json
 import re
+from dataclasses import replace
 from functools import cache
 from pathlib import Path
 from typing import Any
@@ -19,10 +20,12 @@ from audit.intake.folder import read_folder
 from audit.opening import judge_site
 from audit.report.as_json import as_json, schema
 from audit.report.content import content_of
+from audit.report.records import as_shown
 from audit.report.text import print_check
 from audit.report.write import FORMS
 from rules.assessment import STATUS_SIGNS, Assessment, Status
-from rules.record import Site
+from rules.index import Index
+from rules.record import Instrument, Reading, Site
 from rules.units import show
 from sample_sites.catalogue import SAMPLE_SITES, SampleSite
 
@@ -135,6 +138,17 @@ def test_every_form_says_that_the_site_is_invented(sample: SampleSite) -> None:
 @every_site
 def test_every_reading_stands_in_the_inspectors_report(sample: SampleSite) -> None:
     site, _ = judged(sample)
+    index = Index(site)
     for reading in site.readings:
-        value = show(reading.value, reading.unit, digits=9)
+        value = as_shown(reading, index)
+        assert value.startswith(show(reading.value, reading.unit, digits=9).split()[0])
         assert not [form for form in (".html", ".md", ".json") if value not in forms_of(sample)[form]]
+
+
+def test_a_reading_keeps_the_decimals_of_the_display() -> None:
+    meter = Instrument(id="m", tag="M", quantity="voltage", accuracy_percent=0.1, counts=2, resolution=0.001)
+    reading = Reading(id="r", round="1", quantity="voltage", at="way", value=53.5, instrument="M")
+    index = Index(Site(name="x", instruments=(meter,)))
+    assert as_shown(reading, index) == "53.500 V"
+    assert as_shown(replace(reading, instrument=""), index) == "53.5 V"
+    assert as_shown(replace(reading, value=0.1234567), index) == "0.1234567 V"
