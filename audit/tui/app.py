@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import asyncio
-import getpass
 from collections.abc import Callable
 from dataclasses import replace
 from datetime import datetime
@@ -143,7 +142,7 @@ class OhmwalkApp(App[None]):
         if not self.settings.who:
             hint = "it stands beside everything you save in this file, and is kept on this laptop"
             name = await self.push_screen_wait(
-                Ask("Your name", getpass.getuser(), hint=hint, check=complaint_about_name)
+                Ask("Your name", self.settings.who_or_login, hint=hint, check=complaint_about_name)
             )
             if name:
                 self.settings.remember_who(name)

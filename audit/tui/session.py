@@ -7,9 +7,11 @@ requests into a queue and gets messages back.
 
 from __future__ import annotations
 
+import gc
 import queue
 import threading
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TypeAlias
@@ -40,6 +42,22 @@ class _Undo:
 
 
 _Request: TypeAlias = _Write | _Undo | None
+
+
+@contextmanager
+def _uncollected() -> Iterator[None]:
+    """
+    Make a site without the garbage collector, and keep it out of its sight.
+
+    It would look at each of a hundred thousand rows again and again, and stop the screen while it does.
+    Nothing in a site refers back, so that an old one is freed all the same.
+    """
+    gc.disable()
+    try:
+        yield
+    finally:
+        gc.freeze()
+        gc.enable()
 
 
 class Session(threading.Thread):
@@ -120,10 +138,12 @@ class Session(threading.Thread):
             version = store.version
             if version == self._seen:
                 return
-            site = store.site()
+            with _uncollected():
+                site = store.site()
+                loaded = Loaded(site, Index(site), read_by_visit(site), store.read_only)
             self._seen = version
             self._trouble = ""
-            self._post(Loaded(site, Index(site), read_by_visit(site), store.read_only))
+            self._post(loaded)
         except SiteError as error:
             if str(error) != self._trouble:  # said once, not twice a second
                 self._trouble = str(error)

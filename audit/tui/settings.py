@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import getpass
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -9,14 +10,19 @@ from typing import Protocol
 class UserSettings(Protocol):
     """Kept on this laptop, never in the site file."""
 
-    laptop: str
-    """Random id of this laptop."""
+    @property
+    def laptop(self) -> str:
+        """Random id of this laptop."""
+
+    @property
+    def who_or_login(self) -> str:
+        """The name, or that of the login where none is known."""
 
     @property
     def who(self) -> str:
         """The name to save under; empty while it is not known."""
 
-    def remember_who(self, who: str) -> None:
+    def remember_who(self, name: str, /) -> None:
         """Keep the name for the next time."""
 
 
@@ -27,5 +33,9 @@ class PassingSettings:
     laptop: str
     who: str = ""
 
-    def remember_who(self, who: str) -> None:
-        self.who = who
+    @property
+    def who_or_login(self) -> str:
+        return self.who or getpass.getuser()
+
+    def remember_who(self, name: str, /) -> None:
+        self.who = name

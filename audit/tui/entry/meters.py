@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from rules.columns import METER_QUANTITY
 from rules.index import Index
-from rules.meters import METER_QUANTITY
 from rules.units import show
 
 _UNITS = {"voltage": "V", "current": "A", "temperature": "degC", "resistance": "ohm"}

@@ -2,24 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
-
 from audit.tui.drawing.page import CircuitView
+from audit.tui.entry.typing import Typing
 from rules.assess import assess_circuit
 from rules.case import Context, case_of
 from rules.expected import expected_voltages
-from rules.record import Reading
-
-
-@dataclass(frozen=True, slots=True)
-class Typing:
-    """What is being typed on a circuit."""
-
-    circuit_id: str
-    round: str
-    of_visit: Sequence[Reading]
-    """The visit's readings as they would be: what is typed among them, what it would replace left out."""
 
 
 def provisional(context: Context, typing: Typing) -> CircuitView | None:

@@ -28,7 +28,7 @@ from audit.tui.drawing.pieces import Line, cut, line, piece
 from audit.tui.entry.meters import NO_METER, Meter, meter_quantity
 from audit.tui.entry.reading import Where, reading_from, value_words
 from audit.tui.entry.slots import Place, Slot, readings_of_visit, round_at_hand, slots_of
-from audit.tui.entry.verdict import Typing, provisional
+from audit.tui.entry.typing import Typing
 from audit.tui.state import Survey
 from audit.tui.widgets.entry_cell import EntryCell
 from audit.tui.widgets.few_lines import FewLines
@@ -269,6 +269,8 @@ class EntryStrip(Widget):
 
     def _judge(self) -> None:
         """Say what the circuit would be with what is typed."""
+        from audit.tui.entry.verdict import provisional  # it brings numpy, for which the first screen does not wait
+
         if not self.is_open or self.survey is None:
             return
         start = time.perf_counter()
