@@ -33,7 +33,7 @@ def detail_lines(finding: Finding, width: int) -> list[Line]:
         ("why", finding.why, ""),
         ("if left", "; ".join(finding.consequences), ""),
         ("do", finding.remedy, "strong"),
-        ("caution", finding.caution, "act"),
+        ("caution", finding.caution, "caution"),
         ("numbers", "; ".join(number_words(finding)), "quiet"),
         ("source", finding.source, "quiet"),
     )

@@ -161,17 +161,18 @@ def _volts(view: CircuitView) -> dict[str, tuple[float, ...]]:
 
 def _verdict(result: CircuitResult, width: int) -> list[Line]:
     words = drop_words(result)
-    bar = piece(text_bar(words.bar, 24), "act" if words.bar is not None and words.bar.past else "read")
+    bar = piece(text_bar(words.bar, 24), "act" if words.bar is not None and words.bar.past else "bar")
     state = f"computed {words.computed or 'not known'}"
     if (drop := result.drop) is not None:
-        state += f", {drop.start} to {drop.end} at {figure_words(drop.current)} in round {drop.round}"
+        amps = show(drop.current.value, drop.current.unit, digits=3)
+        state += f", {drop.start} to {drop.end} at {amps}, round {drop.round}"
     elif result.design_drop is not None:
         state += " at design load"
     lines: list[Line] = [()]
     lines.append(cut((piece(" "), bar, piece(f"  {words.of_allowed}", "strong"), piece(f"  {state}", "quiet")), width))
-    lines += wrapped(result.why or STATUS_MEANING[result.status], width - 1, 3, str(result.status))
+    lines += wrapped(result.why or STATUS_MEANING[result.status], width - 1, 3)
     if (following := result.next_reading) is not None:
         said = next_reading_words(following)
         lines += wrapped(f"{said}: {following.why}" if following.why else said, width - 1, 9, "loud", "   next")
-        lines += wrapped(following.caution, width - 1, 9, "act") if following.caution else []
+        lines += wrapped(following.caution, width - 1, 9, "caution") if following.caution else []
     return lines

@@ -22,6 +22,7 @@ ROLES = (
     "title",
     "loud",
     "read",
+    "bar",
     "computed",
     "limit",
     "band",
@@ -31,6 +32,8 @@ ROLES = (
     "measure",
     "incomplete",
     "trail",
+    "cursor",
+    "caution",
     "typed",
     "wrong",
 )

@@ -12,6 +12,8 @@ _DOTS = ((0x01, 0x08), (0x02, 0x10), (0x04, 0x20), (0x40, 0x80))
 """Bit of each dot of a braille cell, by row and column."""
 _EMPTY = 0x2800
 _SHADE = "░"
+_DOTS_COVERED = 1.5
+"""A cell is shaded where a band covers so many of its four rows of dots."""
 
 Point = tuple[float, float]
 
@@ -54,7 +56,7 @@ class Plot:
                 self._set(x0 + round((x1 - x0) * step / steps), y0 + round((y1 - y0) * step / steps))
 
     def band(self, lower: Iterable[Point], upper: Iterable[Point]) -> None:
-        """Shade between two curves over the same x; a band thinner than a cell is not drawn."""
+        """Shade between two curves over the same x; a band much thinner than a cell is not drawn."""
         low = [self._dot(*point) for point in lower]
         high = [self._dot(*point) for point in upper]
         for (left, right), (left_up, right_up) in zip(pairwise(low), pairwise(high), strict=True):
@@ -62,8 +64,8 @@ class Plot:
                 share = (x - left[0]) / max(1, right[0] - left[0])
                 bottom = left[1] + (right[1] - left[1]) * share
                 top = left_up[1] + (right_up[1] - left_up[1]) * share
-                if bottom - top >= 2:
-                    for y in range(round(top) // 4, round(bottom) // 4 + 1):
+                for y in range(int(top) // 4, int(bottom) // 4 + 1):
+                    if min(bottom, 4 * y + 4) - max(top, 4 * y) >= _DOTS_COVERED:
                         self._shade.add((x // 2, y))
 
     def rule(self, y: float) -> None:

@@ -6,7 +6,8 @@ from dataclasses import dataclass
 
 from audit.report.phrases import visit_words
 from audit.report.records import board_title, device_words, feed_words, joined
-from audit.tui.drawing.pieces import Line, cut, fit, piece
+from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece
+from audit.tui.drawing.walk import CHOSEN
 from audit.tui.entry.fields import SITE
 from rules.index import Index
 from rules.record import Board, Circuit, Feed, Instrument, Load, Row, Run, Site, Source, Visit
@@ -59,9 +60,9 @@ def item_line(item: Item, row: Row | Site | None, index: Index, width: int, *, c
         return (piece(f" {item.heading}", "strong"),)
     if row is None:
         return ()
-    mark = "▸" if chosen else " "
+    mark = Piece(f"   {CHOSEN if chosen else ' '} ", "cursor")
     return cut(
-        (piece(f"   {mark} "), piece(fit(row_tag(row), _TAG_CELLS), "strong"), piece(f"  {row_words(row, index)}")),
+        (mark, piece(fit(row_tag(row), _TAG_CELLS), "strong"), piece(f"  {row_words(row, index)}")),
         width,
     )
 

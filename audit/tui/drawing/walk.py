@@ -14,7 +14,7 @@ from typing import Literal
 from audit.report.bar import text_bar
 from audit.report.phrases import drop_words, status_words
 from audit.report.records import board_title
-from audit.tui.drawing.pieces import Line, Piece, apart, cut, fit, line, piece
+from audit.tui.drawing.pieces import Line, Piece, apart, cut, fit, line, piece, width_of
 from audit.tui.state import Survey
 from rules.assessment import CircuitResult, Place, Status
 from rules.index import Index
@@ -99,13 +99,13 @@ def stop_line(stop: Stop, survey: Survey, width: int, tags: int, *, chosen: bool
     if stop.kind == "place":
         return cut((piece(" "), piece(stop.words, "strong")), width)
     if stop.kind == "board":
-        trail = Piece(f" {_board_sign(stop, survey)} {mark} ", "trail")
-        return cut((trail, piece(stop.words, "title" if chosen else "quiet")), width)
+        sign = Piece(f" {_board_sign(stop, survey)} ", "trail")
+        return cut((sign, Piece(f"{mark} ", "cursor"), piece(stop.words, "title" if chosen else "quiet")), width)
     circuit = survey.index.circuits[stop.id]
-    trail = Piece(f" {READ if circuit.id in survey.read_now else NOT_READ} {mark} ", "trail")
-    head = (trail, piece(fit(circuit.tag, tags), "strong"), piece("  "))
+    trail = Piece(f" {READ if circuit.id in survey.read_now else NOT_READ} ", "trail")
+    head = (trail, Piece(f"{mark} ", "cursor"), piece(fit(circuit.tag, tags), "strong"), piece("  "))
     tail = _tail(survey.results.get(circuit.id), with_percent=width >= 70)
-    used = sum(len(part.text) for part in (*head, *tail))
+    used = width_of((*head, *tail))
     return (*head, piece(fit(circuit.description, max(0, width - used))), *tail)
 
 
@@ -115,7 +115,7 @@ def reason_line(stop: Stop, survey: Survey, width: int) -> Line:
     result = survey.results.get(stop.id)
     if stop.kind != "circuit" or result is None:
         return ()
-    return cut((indent, piece(reason(result), str(result.status))), width)
+    return cut((indent, piece(reason(result))), width)
 
 
 def reason(result: CircuitResult) -> str:
@@ -163,7 +163,7 @@ def _tail(result: CircuitResult | None, *, with_percent: bool) -> Line:
         blank = _BAR_CELLS + (_PERCENT_CELLS + 2 if with_percent else 0) + 1
         return line(" " * (blank + 1), Piece(fit("…", _STATUS_CELLS), "quiet"))
     words = drop_words(result)
-    bar = Piece(text_bar(words.bar), "act" if words.bar is not None and words.bar.past else "read")
+    bar = Piece(text_bar(words.bar), "act" if words.bar is not None and words.bar.past else "bar")
     percent = (piece("  "), piece(fit(words.of_allowed, _PERCENT_CELLS))) if with_percent else ()
     status = Piece(fit(status_words(result.status), _STATUS_CELLS), str(result.status))
     return (piece(" "), bar, *percent, piece(" "), status)

@@ -12,7 +12,8 @@ from textual.binding import Binding, BindingType
 from textual.containers import Horizontal, Vertical
 from textual.widgets import Input, Static
 
-from audit.tui.drawing.pieces import Line, cut, piece
+from audit.tui.drawing.pieces import Line, Piece, cut, piece
+from audit.tui.drawing.walk import CHOSEN
 from audit.tui.screens.foot import Foot
 from audit.tui.widgets.pick_list import PickList
 from rules.text import clean
@@ -46,8 +47,14 @@ class _Choices(PickList, can_focus=False):
 
     def item_line(self, item: int, *, chosen: bool) -> Line:
         choice = self.shown[item]
-        mark = "▸ " if chosen else "  "
-        return cut((piece(mark), piece(choice.answer, "strong"), piece(f"  {choice.words}", "quiet")), self.inner_width)
+        return cut(
+            (
+                Piece(f"{CHOSEN if chosen else ' '} ", "cursor"),
+                piece(choice.answer, "strong"),
+                piece(f"  {choice.words}", "quiet"),
+            ),
+            self.inner_width,
+        )
 
 
 class Ask(Foot[str | None]):

@@ -129,7 +129,7 @@ class FormScreen(OurScreen[None]):
             return ()
         words = drop_words(result)
         return (
-            piece(text_bar(words.bar), "read"),
+            piece(text_bar(words.bar), "bar"),
             piece(f"  {words.of_allowed}  "),
             piece(f"{status_words(result.status)} ", str(result.status)),
         )

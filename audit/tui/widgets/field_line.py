@@ -40,8 +40,10 @@ class FieldLine(Horizontal):
     FieldLine {
         height: 1;
         & > .name { width: 20; color: $quiet; padding-left: 3; }
-        & > .edge { width: 1; color: $quiet; }
-        & > Input { width: 30; background: $cell; }
+        & > .edge { width: 1; color: $background; }
+        & > Input { width: 30; background: $background; }
+        &:focus-within > .edge { color: $quiet; }
+        &:focus-within > Input { background: $cell; }
         & > .sign { width: 2; }
         & > .aside { width: 1fr; color: $quiet; }
         &:focus-within > .name { color: $foreground; text-style: bold; }

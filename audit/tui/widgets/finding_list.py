@@ -5,7 +5,8 @@ from __future__ import annotations
 from audit.report.phrases import finding_place
 from audit.report.sections import by_severity
 from audit.tui.drawing.findings import detail_lines, gap_lines, severity_piece
-from audit.tui.drawing.pieces import Line, cut, fit, piece
+from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece
+from audit.tui.drawing.walk import CHOSEN
 from audit.tui.widgets.pick_list import PickList
 from rules.assessment import Assessment, Finding
 
@@ -58,10 +59,18 @@ class FindingList(PickList):
         if item >= len(self._findings):
             return self._gaps[item - len(self._findings)]
         finding = self._findings[item]
-        mark = "▸" if chosen else " "
         place = piece(fit(finding_place(finding), _PLACE_CELLS), "strong")
         severity = severity_piece(finding.severity, _SEVERITY_CELLS)
-        return cut((piece(f" {mark} "), severity, piece("  "), place, piece(f"  {finding.title}")), self.inner_width)
+        return cut(
+            (
+                Piece(f" {CHOSEN if chosen else ' '} ", "cursor"),
+                severity,
+                piece("  "),
+                place,
+                piece(f"  {finding.title}"),
+            ),
+            self.inner_width,
+        )
 
     def more_lines(self, item: int) -> list[Line]:
         return detail_lines(self._findings[item], self.inner_width)

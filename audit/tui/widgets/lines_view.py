@@ -37,12 +37,15 @@ class LinesView(ScrollView, can_focus=True, inherit_bindings=False):
         & > .lines--quiet { color: $quiet; }
         & > .lines--strong { text-style: bold; }
         & > .lines--title { text-style: bold; }
-        & > .lines--loud { color: $accent; text-style: bold; }
+        & > .lines--loud { color: $loud; text-style: bold; }
         & > .lines--read { text-style: bold; }
+        & > .lines--bar { color: $bar; }
         & > .lines--computed { color: $foreground; }
         & > .lines--band { color: $quiet; }
         & > .lines--limit { color: $status-act; }
         & > .lines--trail { color: $quiet; }
+        & > .lines--cursor { color: $loud; text-style: bold; }
+        & > .lines--caution { color: $status-act; }
         & > .lines--typed { background: $cell; text-style: bold; }
         & > .lines--wrong { color: $status-act; text-style: bold; }
         & > .lines--sound { color: $status-sound; }
