@@ -281,7 +281,7 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     reached = []
     for end in read[1:]:
         try:
-            reached.append(_compare(read[0], end, this, tree, limits))
+            reached.append(compare(read[0], end, this, tree, limits))
         except MissingData as error:
             reason = error
     if not reached:
@@ -289,7 +289,10 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     return max(reached, key=lambda drop: drop.computed.value)
 
 
-def _compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
+def compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
+    """
+    Measured against computed drop between two points of a round; ``MissingData`` says what is missing for it.
+    """
     path = tree.path(start, end)
     measured, by = _measured(start, path, this)
     carried: list[Carried] = []

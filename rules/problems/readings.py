@@ -50,7 +50,7 @@ def reading_problems(index: Index, suggestions: Suggestions) -> Iterator[Problem
         readings = index.readings_of(circuit_id)
         if not readings:
             continue
-        places = _places(index, circuit_id)
+        places = places_of(index, circuit_id)
         of_shape = right[tuple(places.values())]
         for reading in readings:
             taken = (reading.quantity, reading.at, reading.to, reading.leg)
@@ -65,7 +65,8 @@ def reading_problems(index: Index, suggestions: Suggestions) -> Iterator[Problem
     yield from _replacements(index, suggestions)
 
 
-def _places(index: Index, circuit_id: str) -> Places:
+def places_of(index: Index, circuit_id: str) -> Places:
+    """Where a meter can be put on a circuit, by kind of place."""
     names = [run.name for run in index.runs_of(circuit_id)]
     has_device = index.circuits[circuit_id].device != "none"
     return {

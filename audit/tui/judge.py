@@ -1,0 +1,94 @@
+"""
+The thread that judges: what is on the screen first, then all the rest.
+
+It works on the newest record alone; what was asked before and is not begun is dropped.
+"""
+
+from __future__ import annotations
+
+import threading
+import time
+from collections.abc import Callable
+from dataclasses import dataclass
+
+from textual.message import Message
+
+from audit.tui.messages import Assessed, Crashed, Judged, Troubled
+from rules.errors import RulesError
+from rules.record import Site
+
+LONGEST_WAIT_S = 2.0
+"""For how long the judging of a whole site is put off while saves follow each other. [s]"""
+
+
+@dataclass(frozen=True, slots=True)
+class _Request:
+    site: Site
+    first: tuple[str, ...]
+    """Ids of the circuits that are wanted first."""
+
+
+class Judge(threading.Thread):
+    """Judges one record after another from ``start`` to ``stop``."""
+
+    def __init__(self, post: Callable[[Message], object]) -> None:
+        super().__init__(name="judge", daemon=True)
+        self._post = post
+        self._news = threading.Condition()
+        self._request: _Request | None = None
+        self._stopped = False
+        self._last_took_s = 0.0
+
+    # --- asked for by the event loop
+
+    def judge(self, site: Site, first: tuple[str, ...]) -> None:
+        """Have a record judged: ``Judged`` comes back for the circuits ``first``, then ``Assessed``."""
+        with self._news:
+            self._request = _Request(site, first)
+            self._news.notify()
+
+    def stop(self) -> None:
+        """End; a judgement that has begun is not waited for."""
+        with self._news:
+            self._stopped = True
+            self._news.notify()
+
+    # --- in the thread
+
+    def run(self) -> None:
+        try:
+            while (request := self._next()) is not None:
+                self._judge(request)
+        except Exception as error:
+            self._post(Crashed(error))
+
+    def _next(self) -> _Request | None:
+        with self._news:
+            self._news.wait_for(lambda: self._stopped or self._request is not None)
+            request, self._request = self._request, None
+            return None if self._stopped else request
+
+    def _is_outdated(self, wait_s: float) -> bool:
+        """Whether something newer is asked for, or comes within a while."""
+        with self._news:
+            return self._news.wait_for(lambda: self._stopped or self._request is not None, wait_s)
+
+    def _judge(self, request: _Request) -> None:
+        # Here and not above: numpy takes as long to import as the first screen takes to appear.
+        from rules import limits
+        from rules.assess import assess, assess_circuit, prepare
+
+        try:
+            in_force = limits.of(request.site)
+            context = prepare(request.site, in_force)
+            wanted = [context.index.circuits[id_] for id_ in request.first if id_ in context.index.circuits]
+            results = {circuit.id: assess_circuit(context, circuit) for circuit in wanted}
+            self._post(Judged(request.site, context, results))
+            if self._is_outdated(min(self._last_took_s, LONGEST_WAIT_S)):
+                return
+            start = time.monotonic()
+            assessment = assess(request.site, in_force)
+            self._last_took_s = time.monotonic() - start
+            self._post(Assessed(request.site, context, assessment))
+        except RulesError as error:
+            self._post(Troubled(str(error).replace("\n", "; ")))

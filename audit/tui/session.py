@@ -1,0 +1,150 @@
+"""
+The thread that owns the site file: it loads, saves, undoes, and sees what others save.
+
+SQLite waits up to five seconds for another program and for the disk; here it may. The event loop only puts
+requests into a queue and gets messages back.
+"""
+
+from __future__ import annotations
+
+import gc
+import queue
+import threading
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TypeAlias
+
+from textual.message import Message
+
+from audit.tui.edits import Edit
+from audit.tui.messages import Crashed, Loaded, Refused, Saved, Troubled, Undone
+from audit.tui.state import read_by_visit
+from db.errors import SiteError, SiteReadOnly
+from db.store import SiteStore
+from rules.index import Index
+
+POLL_S = 0.5
+"""How often to ask whether someone else saved; what they saved is to be seen within two seconds. [s]"""
+
+
+@dataclass(frozen=True, slots=True)
+class _Write:
+    edit: Edit
+    who: str
+
+
+@dataclass(frozen=True, slots=True)
+class _Undo:
+    who: str
+    again: bool
+
+
+_Request: TypeAlias = _Write | _Undo | None
+
+
+@contextmanager
+def _uncollected() -> Iterator[None]:
+    """
+    Make a site without the garbage collector, and keep it out of its sight.
+
+    It would look at each of a hundred thousand rows again and again, and stop the screen while it does.
+    Nothing in a site refers back, so that an old one is freed all the same.
+    """
+    gc.disable()
+    try:
+        yield
+    finally:
+        gc.freeze()
+        gc.enable()
+
+
+class Session(threading.Thread):
+    """Owns the store of one site file from ``start`` to ``stop``."""
+
+    def __init__(self, path: Path, laptop: str, post: Callable[[Message], object]) -> None:
+        super().__init__(name="site file", daemon=True)
+        self._path = path
+        self._laptop = laptop
+        self._post = post
+        self._requests: queue.Queue[_Request] = queue.Queue()
+        self._seen: tuple[int, int] | None = None
+        self._trouble = ""
+
+    # --- asked for by the event loop
+
+    def save(self, edit: Edit, who: str) -> None:
+        """Have an edit saved: ``Saved`` or ``Refused`` comes back."""
+        self._requests.put(_Write(edit, who))
+
+    def undo(self, who: str, *, again: bool = False) -> None:
+        """Have one's last save written back (or done again): ``Undone`` comes back."""
+        self._requests.put(_Undo(who, again))
+
+    def stop(self) -> None:
+        """End once everything asked for so far is done, and wait for it."""
+        self._requests.put(None)
+        self.join()
+
+    # --- in the thread
+
+    def run(self) -> None:
+        try:
+            with self._opened() as store:
+                self._look(store)
+                while self._serve(store):
+                    pass
+        except SiteError as error:
+            self._post(Troubled(str(error)))
+        except Exception as error:
+            self._post(Crashed(error))
+
+    def _opened(self) -> SiteStore:
+        try:
+            return SiteStore(self._path, laptop=self._laptop)
+        except SiteReadOnly:
+            return SiteStore(self._path, read_only=True, laptop=self._laptop)
+
+    def _serve(self, store: SiteStore) -> bool:
+        """Do what was asked for, look at the record, then answer: who is answered finds it up to date. False: the end."""
+        answers: list[Message] = []
+        try:
+            request = self._requests.get(timeout=POLL_S)
+            while request is not None:
+                answers.append(self._do(store, request))
+                request = self._requests.get_nowait()
+        except queue.Empty:
+            self._look(store)
+            for answer in answers:
+                self._post(answer)
+            return True
+        return False
+
+    def _do(self, store: SiteStore, request: _Write | _Undo) -> Message:
+        try:
+            if isinstance(request, _Undo):
+                what = store.redo(request.who) if request.again else store.undo(request.who)
+                return Undone(what, request.again)
+            with store.save(request.who, request.edit.why) as save:
+                ids = tuple(step.write(save) for step in request.edit.steps)
+            return Saved(request.edit, ids)
+        except SiteError as error:
+            return Refused(request.edit, str(error)) if isinstance(request, _Write) else Troubled(str(error))
+
+    def _look(self, store: SiteStore) -> None:
+        """Load the record if anyone saved since the last look."""
+        try:
+            version = store.version
+            if version == self._seen:
+                return
+            with _uncollected():
+                site = store.site()
+                loaded = Loaded(site, Index(site), read_by_visit(site), store.read_only)
+            self._seen = version
+            self._trouble = ""
+            self._post(loaded)
+        except SiteError as error:
+            if str(error) != self._trouble:  # said once, not twice a second
+                self._trouble = str(error)
+                self._post(Troubled(str(error)))

@@ -1,0 +1,146 @@
+"""One cell of the entry strip: what is expected, the value being typed, and whether it is saved."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import ClassVar, Literal
+
+from textual import on
+from textual.app import ComposeResult
+from textual.binding import Binding, BindingType
+from textual.containers import Horizontal
+from textual.message import Message
+from textual.reactive import reactive
+from textual.widgets import Input, Static
+
+from audit.tui.entry.reading import value_words
+from audit.tui.entry.slots import Slot
+from rules.text import clean
+
+SIGNS = {"empty": " ", "typing": " ", "saving": "…", "saved": "✓", "refused": "×"}
+"""What stands behind a cell; the line beneath says the same in words."""
+
+
+class ValueInput(Input):
+    """A value; the keys that move between cells, and ``?``, are the strip's."""
+
+    BINDINGS: ClassVar[list[BindingType]] = [Binding("question_mark", "screen.help", show=False)]
+
+    def check_consume_key(self, key: str, character: str | None) -> bool:
+        """No value holds a question mark."""
+        return key != "question_mark" and super().check_consume_key(key, character)
+
+
+class EntryCell(Horizontal):
+    """A slot of a round with its input."""
+
+    DEFAULT_CSS = """
+    EntryCell {
+        width: auto;
+        height: 1;
+        margin-right: 2;
+        & > .name { width: auto; color: $quiet; }
+        & > ValueInput { width: 10; background: $cell; }
+        &.-round > ValueInput { width: 4; }
+        & > .edge { width: 1; color: $quiet; }
+        & > .sign { width: 1; }
+        &:focus-within > .name { color: $foreground; text-style: bold; }
+        &.-saved > .sign { color: $status-sound; }
+        &.-refused > .sign { color: $status-act; text-style: bold; }
+    }
+    """
+
+    state: reactive[Literal["empty", "typing", "saving", "saved", "refused"]] = reactive("empty", init=False)
+
+    @dataclass
+    class Accepted(Message):
+        """Enter was pressed in the cell."""
+
+        cell: EntryCell
+
+    @dataclass
+    class Typed(Message):
+        """What stands in the cell has changed."""
+
+        cell: EntryCell
+
+    @dataclass
+    class Entered(Message):
+        """The cell was moved to."""
+
+        cell: EntryCell
+
+    def __init__(self, slot: Slot | None, text: str = "", name: str = "") -> None:
+        super().__init__(classes="" if slot is not None else "-round")
+        self.slot = slot
+        """``None`` for the cell that names the round."""
+        self._label = name or (slot.label if slot is not None else "")
+        self._shown = text or self._saved_text
+
+    def compose(self) -> ComposeResult:
+        yield Static(f"{clean(self._label)} ", classes="name", markup=False)
+        yield Static("▐", classes="edge")
+        yield ValueInput(self._shown, compact=True, select_on_focus=True)
+        yield Static("▌", classes="edge")
+        yield Static(SIGNS["empty"], classes="sign")
+
+    def on_mount(self) -> None:
+        if self.slot is not None and self.slot.saved is not None:
+            self.state = "saved"
+
+    @property
+    def _saved_text(self) -> str:
+        saved = self.slot.saved if self.slot is not None else None
+        return "" if saved is None else saved.as_typed("value") or value_words(saved)
+
+    @property
+    def text(self) -> str:
+        """What stands in the cell."""
+        return self.query_one(ValueInput).value.strip()
+
+    @property
+    def is_changed(self) -> bool:
+        """Whether something stands there that is not saved."""
+        return bool(self.text) and self.text != self._saved_text
+
+    def take(self, slot: Slot) -> None:
+        """The record has changed: show what is saved unless something else is being typed."""
+        before, self.slot = self._saved_text, slot
+        field = self.query_one(ValueInput)
+        if self._saved_text == before:
+            return
+        if self.state == "saving" or field.value.strip() in ("", before):
+            field.value = self._saved_text
+            self.state = "saved" if slot.saved is not None else "empty"
+
+    def restore(self) -> None:
+        """Show what is saved again."""
+        self.query_one(ValueInput).value = self._saved_text
+
+    def go_to(self) -> None:
+        """Put the cursor here."""
+        self.query_one(ValueInput).focus()
+
+    def accept(self) -> None:
+        """As if Enter were pressed here."""
+        self.post_message(self.Accepted(self))
+
+    def watch_state(self, state: str) -> None:
+        self.query_one(".sign", Static).update(SIGNS[state])
+        for name in ("saved", "refused"):
+            self.set_class(state == name, f"-{name}")
+
+    @on(Input.Submitted)
+    def _accepted(self, event: Input.Submitted) -> None:
+        event.stop()
+        self.post_message(self.Accepted(self))
+
+    @on(Input.Changed)
+    def _typed(self, event: Input.Changed) -> None:
+        event.stop()
+        if self.slot is not None and self.state != "saving":
+            self.state = "typing" if self.is_changed else "saved" if self.slot.saved is not None else "empty"
+        self.post_message(self.Typed(self))
+
+    def on_descendant_focus(self) -> None:
+        self.post_message(self.Entered(self))

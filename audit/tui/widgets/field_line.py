@@ -1,0 +1,140 @@
+"""One field of a form: its name, what it says, its unit, and what counts while it is empty."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Literal
+
+from textual import on
+from textual.app import ComposeResult
+from textual.containers import Horizontal
+from textual.message import Message
+from textual.reactive import reactive
+from textual.suggester import Suggester
+from textual.widgets import Input, Static
+
+from audit.tui.entry.fields import Field, completed
+from rules.text import clean
+
+SIGNS = {"idle": " ", "saving": "…", "saved": "✓", "refused": "×"}
+
+
+class _Completing(Suggester):
+    """Shows the answer that the typed letters mean."""
+
+    def __init__(self, answers: Sequence[str]) -> None:
+        super().__init__(use_cache=False, case_sensitive=True)
+        self.answers = tuple(answers)
+
+    async def get_suggestion(self, value: str) -> str | None:
+        whole = completed(value, self.answers)
+        # What is shown continues what was typed, so that the letters must agree in case too.
+        return value + whole[len(value) :] if whole != value and len(whole) > len(value) else None
+
+
+class FieldLine(Horizontal):
+    """A field with its input."""
+
+    DEFAULT_CSS = """
+    FieldLine {
+        height: 1;
+        & > .name { width: 20; color: $quiet; padding-left: 3; }
+        & > .edge { width: 1; color: $background; }
+        & > Input { width: 30; background: $background; }
+        &:focus-within > .edge { color: $quiet; }
+        &:focus-within > Input { background: $cell; }
+        & > .sign { width: 2; }
+        & > .aside { width: 1fr; color: $quiet; }
+        &:focus-within > .name { color: $foreground; text-style: bold; }
+        &.-saved > .sign { color: $status-sound; }
+        &.-refused > .sign { color: $status-act; text-style: bold; }
+    }
+    """
+
+    state: reactive[Literal["idle", "saving", "saved", "refused"]] = reactive("idle", init=False)
+
+    @dataclass
+    class Accepted(Message):
+        """Enter was pressed in the field, or it was left by an arrow after a change."""
+
+        field_line: FieldLine
+        step: int
+        """Where to go on: 1 the next field, -1 the one before."""
+
+    @dataclass
+    class Entered(Message):
+        """The field was moved to."""
+
+        field_line: FieldLine
+
+    def __init__(self, field: Field, text: str, answers: Sequence[str], unit: str, assumed: str) -> None:
+        super().__init__()
+        self.field = field
+        self._saved = text
+        self._answers = tuple(answers)
+        self._unit = unit
+        self._assumed = assumed
+
+    def compose(self) -> ComposeResult:
+        yield Static(clean(self.field.label), classes="name", markup=False)
+        yield Static("▐", classes="edge")
+        suggester = _Completing(self._answers) if self._answers else None
+        yield Input(clean(self._saved), compact=True, select_on_focus=True, suggester=suggester)
+        yield Static("▌", classes="edge")
+        yield Static(SIGNS["idle"], classes="sign")
+        yield Static(clean(self._aside), classes="aside", markup=False)
+
+    @property
+    def _aside(self) -> str:
+        unit = {"degC": "°C", "ohm": "Ω"}.get(self._unit, self._unit)
+        mark = "" if "assumed" in self._assumed else " (assumed)"
+        return f"{unit}  {self._assumed}{mark}".strip() if self._assumed and not self._saved else unit
+
+    @property
+    def text(self) -> str:
+        """What stands in the field."""
+        return self.query_one(Input).value
+
+    @property
+    def meant(self) -> str:
+        """The text with its letters completed to the answer that they mean."""
+        return completed(self.text.strip(), self._answers) if self._answers else self.text
+
+    @property
+    def is_changed(self) -> bool:
+        """Whether something else stands there than what is saved."""
+        return self.text != clean(self._saved)
+
+    def take(self, text: str, answers: Sequence[str], unit: str, assumed: str) -> None:
+        """The record has changed: show what it says unless something else is being typed."""
+        was_changed = self.is_changed and self.state != "saving"
+        self._saved, self._answers, self._unit, self._assumed = text, tuple(answers), unit, assumed
+        field = self.query_one(Input)
+        if isinstance(field.suggester, _Completing):
+            field.suggester.answers = self._answers
+        if not was_changed and field.value != clean(text):
+            field.value = clean(text)
+        self.query_one(".aside", Static).update(clean(self._aside))
+
+    def restore(self) -> None:
+        """Show what is saved again."""
+        self.query_one(Input).value = clean(self._saved)
+        self.state = "idle"
+
+    def go_to(self) -> None:
+        """Put the cursor here."""
+        self.query_one(Input).focus()
+
+    def watch_state(self, state: str) -> None:
+        self.query_one(".sign", Static).update(SIGNS[state])
+        for name in ("saved", "refused"):
+            self.set_class(state == name, f"-{name}")
+
+    @on(Input.Submitted)
+    def _submitted(self, event: Input.Submitted) -> None:
+        event.stop()
+        self.post_message(self.Accepted(self, 1))
+
+    def on_descendant_focus(self) -> None:
+        self.post_message(self.Entered(self))
