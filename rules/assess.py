@@ -27,7 +27,7 @@ from rules.runs import figures
 from rules.service import service_of
 from rules.verdict import agrees, unsettled, unsound
 
-FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01")
+FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "NW01", "NW02")
 
 
 def assess(site: Site, limits: Limits) -> Assessment:

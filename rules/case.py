@@ -8,11 +8,11 @@ from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
-import numpy as np
-
 from rules.assessment import Drop
 from rules.calc.doubt import total
+from rules.calc.network import Solved
 from rules.consistency import Problem
+from rules.diagnosis.budget import Current
 from rules.diagnosis.diagnose import Diagnosis, diagnose
 from rules.diagnosis.problem import Problem as Posed
 from rules.diagnosis.rows import problem_of
@@ -20,15 +20,17 @@ from rules.errors import MissingData
 from rules.impossible import impossible
 from rules.index import Index
 from rules.limits import Limits
-from rules.network import GAP_NOTHING_FEEDS, Network, device_ohm, nominal_v
+from rules.network import GAP_NOTHING_FEEDS, Network, device_ohm
+from rules.nominal import nominal_v
 from rules.record import Board, Circuit, Figure, Load, Reading, Run, Site, Source
-from rules.rounds import Round, Tree, drop_of, judged, rounds_of, temperature_read, visit_of
-from rules.runs import Carrying, RunFigures, record_variance
+from rules.rounds import Round, Tree, current_at, drop_of, judged, rounds_of, temperature_read, visit_of
+from rules.routes import Shared, first_ends
+from rules.runs import SHARED, Carrying, Figures, record_variance
 from rules.worst import largest_current_a, worst_of
 
 RUN = re.compile(r"run \d+")
 
-GAP_COLLAPSE = "the loads behind this source cannot be supplied: the voltage collapses"
+GAP_COLLAPSE = "the voltage collapses behind {}, which cannot carry what hangs on it"
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,8 +40,8 @@ class Context:
     site: Site
     limits: Limits
     index: Index
-    figures: Mapping[str, RunFigures]
-    """Of every run, by id."""
+    figures: Figures
+    """Of every run, by id, and of the returns that runs share."""
     network: Network
     visit_ranks: Mapping[str, tuple[float, str, int]]
     problems: tuple[Problem, ...]
@@ -215,7 +217,7 @@ def _worst(context: Context, circuit: Circuit, diagnosis: Diagnosis | None) -> d
         network,
         context.figures,
         lambda id_: diagnosis if id_ == circuit.id else context.diagnoses.get(id_),
-        lambda node: _computed_u(context, list(network.way_up(node))[:-1], network.lowest.current_a),
+        lambda node: _computed_u(context, list(network.way_up(node))[:-1], network.lowest),
     )
 
 
@@ -235,11 +237,9 @@ def _return_leg(circuit: Circuit, index: Index) -> str:
 def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tree:
     index, limits = context.index, context.limits
     runs = index.runs_of(circuit.id)
-    nodes = context.network.nodes_of.get(circuit.id, {})
-    ends: dict[str, Run] = {}
-    for run in runs:
-        if not run.to_board_id and run.to_point not in (*ends, "way"):
-            ends[run.to_point] = run
+    network = context.network
+    nodes = network.nodes_of.get(circuit.id, {})
+    ends = first_ends(runs, index.end_of)
     figures = {}
     for run in runs:
         known = context.figures[run.id]
@@ -250,8 +250,49 @@ def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tr
     taps = {point for point, count in starts.items() if count > 1}
     taps |= {load.point for load in index.loads_of(circuit.id)}
     taps |= {_fed_at(fed, circuit, index) for fed in index.fed_by_circuit(circuit.id)}
-    currents = {point: context.network.design_current_a(node) for point, node in nodes.items() if point != "bus"}
-    return Tree(circuit, runs, ends, figures, device_ohm(circuit, limits), currents, frozenset(taps))
+    taps |= {run.to_point for branch, run in ends.items() if branch == run.name}
+    nodes = nodes | {
+        branch: at for branch, run in ends.items() if (at := network.node_at_run_end.get(run.id)) is not None
+    }
+    return Tree(
+        circuit,
+        runs,
+        ends,
+        figures,
+        device_ohm(circuit, limits),
+        {point: network.design_current_a(node) for point, node in nodes.items() if point != "bus"},
+        frozenset(taps),
+        {run.id: shared for run in runs if (shared := _shared(context, run, readings)) is not None},
+        network.meshed,
+    )
+
+
+def _shared(context: Context, run: Run, readings: Sequence[Reading]) -> Shared | None:
+    """The return that a run shares, with what the other runs put into it on the same visit."""
+    of = context.figures.returns.get(run.return_conductor.removeprefix(SHARED))
+    if of is None or not run.return_conductor.startswith(SHARED):
+        return None
+    visit = readings[-1].visit_or_default if readings else ""
+    others = [other for other in of.runs if other.id != run.id]
+    return Shared(of.figures, lambda round_: tuple(_carried(context, other, visit, round_) for other in others))
+
+
+def _carried(context: Context, run: Run, visit: str, round_: str) -> Current:
+    """The current in a run of another circuit, in a round of the same visit and name."""
+    circuit, index = context.index.circuits[run.circuit_id], context.index
+    there = judged(index.readings_of(circuit.id), index)
+    of_round = [row for row in there if row.visit_or_default == visit and row.round == round_]
+    tree = _tree(context, circuit, of_round)
+    branch = next(branch for branch, other in tree.ends.items() if other.id == run.id)
+    try:
+        (this,) = rounds_of(of_round, tree, index, context.limits)
+        current = current_at(branch, this, tree, context.limits)
+    except (ValueError, MissingData):
+        raise MissingData(
+            f"round {round_} has no current of {circuit.tag}, which shares the return {run.return_conductor.removeprefix(SHARED)}"
+        ) from None
+    # taps of two circuits may be named alike and err on their own
+    return Current(current.terms, tuple((f"{circuit.tag} {tap}", u) for tap, u in current.shares))
 
 
 def _fed_at(fed: object, circuit: Circuit, index: Index) -> str:
@@ -275,19 +316,20 @@ def _load_point(context: Context, circuit: Circuit, load: Load, rounds: Sequence
     inside = branches[: branches.index(bus)]
     design, lowest = network.design, network.lowest
     collapsed, collapsed_lowest = bool(design.collapsed[node]), bool(lowest.collapsed[node])
-    gap = network.gap_of(node, bus) or (GAP_COLLAPSE if collapsed else "")
-    lowest_gap = network.gap_of(node, lowest=True) or (GAP_COLLAPSE if collapsed_lowest else "")
+    gap = network.gap_of(node, bus) or (_collapse(network, node, lowest=False) if collapsed else "")
+    lowest_gap = network.gap_of(node, lowest=True)
+    lowest_gap = lowest_gap or (_collapse(network, node, lowest=True) if collapsed_lowest else "")
     return LoadPoint(
         load=load,
         drop_v=float(design.voltage_v[bus] - design.voltage_v[node]),
-        drop_u=_computed_u(context, inside, design.current_a),
+        drop_u=_computed_u(context, inside, design),
         gap=gap,
         total_drop_v=float(design.voltage_v[source] - design.voltage_v[node]),
-        total_drop_u=_computed_u(context, branches[:-1], design.current_a),
+        total_drop_u=_computed_u(context, branches[:-1], design),
         total_gap=network.gap_of(node) or gap,
         design_v=float(design.voltage_v[node]),
         lowest_v=float(lowest.voltage_v[node]),
-        lowest_u=_computed_u(context, branches[:-1], lowest.current_a),
+        lowest_u=_computed_u(context, branches[:-1], lowest),
         lowest_gap=lowest_gap,
         source_lowest_v=float(network.held_lowest_v[source]),
         collapsed=collapsed,
@@ -301,20 +343,26 @@ def _volts(this: Round, point: str) -> tuple[float, str, float]:
     return value, "V", u
 
 
-def _computed_u(
-    context: Context, branches: Sequence[int], current_a: np.ndarray[tuple[int], np.dtype[np.float64]]
-) -> float:
+def _collapse(network: Network, node: int, lowest: bool) -> str:
+    found = network.collapse_of(node, lowest)
+    return GAP_COLLAPSE.format(network.place_of(found.node)) if found is not None else ""
+
+
+def _computed_u(context: Context, branches: Sequence[int], solved: Solved) -> float:
     """Standard uncertainty of the computed drop over branches, at currents that are exact. [V]"""
     network, limits = context.network, context.limits
     parts: dict[str, list[Carrying]] = defaultdict(list)
     variance = 0.0
     for branch in branches:
-        amps = float(current_a[branch])
+        amps = float(solved.current_a[branch])
         if math.isnan(amps):  # a tree that cannot be supplied
             return math.nan
         run_id = network.run_at[branch]
         if run_id:
-            parts[network.circuit_at[branch]].append(Carrying(context.figures[run_id], amps))
+            path = parts[network.circuit_at[branch]]
+            path.append(Carrying(context.figures[run_id], amps))
+            if branch in network.return_at:
+                path.append(Carrying(network.return_at[branch].figures, float(solved.back_a[branch])))
         else:
             variance += (limits["device_doubt.relative"] * float(network.cold_ohm[branch]) * amps) ** 2
     return math.sqrt(variance + sum(record_variance(path, limits) for path in parts.values()))

@@ -11,7 +11,7 @@ import math
 import re
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from statistics import mean, stdev
 
 from rules.assessment import Drop
@@ -22,6 +22,7 @@ from rules.index import Index
 from rules.limits import Limits
 from rules.meters import worth
 from rules.record import Circuit, Figure, Reading, Run
+from rules.routes import Hop, Shared, along, together, tree_path, ways
 from rules.runs import RunFigures
 
 RUN_PLACE = re.compile(r"run (\d+)( start| end)?$")
@@ -34,7 +35,7 @@ class Tree:
     circuit: Circuit
     runs: tuple[Run, ...]
     ends: Mapping[str, Run]
-    """The run that arrives at each point; ``way`` and ``bus`` have none."""
+    """The run that arrives at each point, from ``rules.routes.first_ends``; ``way`` and ``bus`` have none."""
     figures: Mapping[str, RunFigures]
     """By run id, at the temperature of the visit."""
     device_ohm: float | None
@@ -43,6 +44,11 @@ class Tree:
     """In the branch that arrives at each point (``way``: through the device); ``None`` where not known."""
     taps: frozenset[str]
     """Points at which current leaves: loads, boards, converters and forks."""
+
+    shared: Mapping[str, Shared] = field(default_factory=dict)
+    """The return that a run shares with other circuits, by run id."""
+    meshed: frozenset[str] = frozenset()
+    """Ids of the runs that are part of a mesh."""
 
     def path(self, start: str, end: str) -> list[str]:
         """
@@ -53,17 +59,7 @@ class Tree:
         MissingData
             If ``end`` does not lie behind ``start``.
         """
-        points: list[str] = []
-        here = end
-        while here != start:
-            points.append(here)
-            if here == "way" and start == "bus":
-                break
-            run = self.ends.get(here)
-            if run is None or len(points) > len(self.ends) + 2:
-                raise MissingData(f"no way leads from {start} to {end}")
-            here = run.from_point
-        return points[::-1]
+        return [hop.branch for hop in tree_path(start, end, self.ends)]
 
 
 @dataclass(frozen=True, slots=True)
@@ -229,6 +225,9 @@ def _share(point: str, near: str, tree: Tree) -> tuple[float, dict[str, float]]:
     between = line[line.index(close) + 1 : line.index(far) + 1]
     if not any(p in tree.taps for p in between):
         return 1.0, {}
+    for end in (point, near):
+        if (run := tree.ends.get(end)) is not None and run.id in tree.meshed:
+            raise MissingData(f"{run.name} is part of a mesh, where no share of the loads says what a run carries")
     wanted, known = tree.design_current_a.get(point), tree.design_current_a.get(near)
     if wanted is None or not known:
         raise MissingData(f"the current to {point} was not read, and its share of the loads is not known")
@@ -263,14 +262,14 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     reason = MissingData("no voltages were read at two points")
     for this in rounds:
         try:
-            able.append((abs(current_at(first, this, tree, limits).value_a), this))
+            able.append((_loading_a(first, this, tree, limits), this))
         except MissingData as error:
             reason = error
     if not able:
         raise reason
     this = max(able, key=lambda pair: pair[0])[1]
     points = set(this.volts) | {point for pair in this.direct for point in pair}
-    order = ["bus", "way", *(run.to_point for run in tree.runs)]
+    order = ["bus", "way", *tree.ends]
     read = [point for point in order if point in points]
     if tree.device_ohm is None and len(read) > 1 and read[0] == "bus":
         read = read[1:]  # the device is not recorded: what it loses is not the wiring's
@@ -289,24 +288,48 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     return max(reached, key=lambda drop: drop.computed.value)
 
 
+def _loading_a(first: str, this: Round, tree: Tree, limits: Limits) -> float:
+    """By which the rounds of a circuit are ranked: the current at its first run, in a ring else the largest read. [A]"""
+    try:
+        return abs(current_at(first, this, tree, limits).value_a)
+    except MissingData:
+        if not this.amps or not any(run.id in tree.meshed for run in tree.runs):
+            raise
+        return max(abs(Current(terms).value_a) for terms in this.amps.values())
+
+
 def compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
     """
     Measured against computed drop between two points of a round; ``MissingData`` says what is missing for it.
     """
-    path = tree.path(start, end)
-    measured, by = _measured(start, path, this)
+    reason: MissingData | None = None
+    for way in ways(start, end, tree.ends, tree.meshed, frozenset(this.amps)):
+        try:
+            return _on_way(way, start, end, this, tree, limits)
+        except MissingData as error:
+            reason = reason or error
+    raise reason or MissingData(f"no way leads from {start} to {end}")
+
+
+def _on_way(way: Sequence[Hop], start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
+    measured, by = _measured(start, end, [hop.branch for hop in way], this)
     carried: list[Carried] = []
-    for point in path:
-        current = current_at(point, this, tree, limits)
-        if point == "way":
+    for hop in way:
+        current = along(current_at(hop.branch, this, tree, limits), hop.sign)
+        if hop.branch == "way":
             carried.append(Carried(tree.device_ohm or 0.0, current, None))
-        else:
-            run = tree.figures[tree.ends[point].id]
-            if run.gap:
-                raise MissingData(run.gap)
-            carried.append(Carried(run.loop_ohm, current, run))
+            continue
+        run = tree.ends[hop.branch]
+        stretches = [(tree.figures[run.id], current)]
+        if (shared := tree.shared.get(run.id)) is not None:
+            others = [along(other, hop.sign) for other in shared.others(this.name)]
+            stretches.append((shared.figures, together([current, *others])))
+        for figures, amps in stretches:
+            if figures.gap:
+                raise MissingData(figures.gap)
+            carried.append(Carried(figures.loop_ohm, amps, figures))
     found = difference(measured, carried, limits)
-    first, first_u = total(current_at(path[0], this, tree, limits).terms)
+    first, first_u = total(along(current_at(way[0].branch, this, tree, limits), way[0].sign).terms)
     return Drop(
         round=this.name,
         start=start,
@@ -320,9 +343,8 @@ def compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Dr
     )
 
 
-def _measured(start: str, path: list[str], this: Round) -> tuple[list[Weighted], str]:
+def _measured(start: str, end: str, path: list[str], this: Round) -> tuple[list[Weighted], str]:
     """The drop over a path as a sum of readings: by direct drops where they cover it, else by two voltages."""
-    end = path[-1]
     order = {point: n for n, point in enumerate([start, *path])}
     hops = {pair: terms for pair, terms in this.direct.items() if pair[0] in order and pair[1] in order}
     here, chain = start, list[Weighted]()

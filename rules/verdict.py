@@ -100,6 +100,8 @@ def unsettled(case: CircuitCase) -> str:
     if not case.visit:
         return (case.circuit.not_tested and f"not tested: {case.circuit.not_tested}") or "nothing was read"
     if case.diagnosis is None:
+        if case.drop is not None and any(run.id in case.tree.shared for run in case.runs):
+            return "a drop over a shared return is compared with the record, but its causes are not weighed"
         return case.drop_gap or "the readings say nothing about a run"
     causes = case.diagnosis.causes
     if claimed(causes, case.limits) is not None or _as_recorded(causes) >= case.limits["decision.sound_at"]:

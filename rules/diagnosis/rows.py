@@ -20,9 +20,12 @@ from rules.errors import MissingData
 from rules.limits import Limits
 from rules.record import Reading, Run
 from rules.rounds import RUN_PLACE, Round, Tree, current_at
+from rules.runs import LegFigures
 from rules.tables.conductors import area_mm2, is_known
 
 DEVICE = "device"
+NO_LEG = LegFigures(0.0, 0.0, 0.0, 0.0)
+"""In place of a return that is shared."""
 Node = tuple[tuple[int, int], ...]
 """What stands for the voltage at a point: observations with signs (two where it is made of both poles)."""
 
@@ -164,6 +167,8 @@ class _Gather:
         for branch, _ in path:
             if self.names[branch] != DEVICE and self.tree.figures[self._run(branch).id].gap:
                 return False
+            if self._shares(branch) and not part.endswith("positive" if self.return_leg == "negative" else "negative"):
+                return False  # a return that others share carries their currents too
             if state != DEAD and self._slot(state, branch, this) is None:
                 return False
         self.rows.append(Row(state, part, path, shown))
@@ -289,7 +294,8 @@ class _Gather:
         known = self.tree.figures[run.id]
         if known.gap:
             return Branch(extra_scale=_scale(run.size), hot_ohm=hot)
-        first_leg, second_leg = known.legs[::-1] if self.return_leg == "positive" else known.legs
+        out, back = (*known.legs, NO_LEG)[:2]
+        first_leg, second_leg = (back, out) if self.return_leg == "positive" else (out, back)
         return Branch(
             first_leg.conductor_ohm,
             second_leg.conductor_ohm,
@@ -317,6 +323,9 @@ class _Gather:
         returned = out if back == kind else alternatives(*back, degrees)
         first_leg, second_leg = (returned, out) if self.return_leg == "positive" else (out, returned)
         return tuple(ratio for pair in zip(first_leg, second_leg, strict=True) for ratio in pair)
+
+    def _shares(self, place: int) -> bool:
+        return self.names[place] != DEVICE and self._run(place).id in self.tree.shared
 
     def _run(self, place: int) -> Run:
         return self.tree.runs[place - (self.names[0] == DEVICE)]
