@@ -78,10 +78,11 @@ class Forest:
         self.parent = parent
         self.depth = _depths(parent)
         self._order = np.argsort(self.depth, kind="stable")
-        place = np.empty(size, dtype=np.int64)
-        place[self._order] = np.arange(size)
+        self._place = np.empty(size, dtype=np.int64)
+        self._place[self._order] = np.arange(size)
+        self._in_order = bool(np.all(self.depth[1:] >= self.depth[:-1]))
         above = parent[self._order]
-        self._above = np.where(above < 0, -1, place[above])
+        self._above = np.where(above < 0, -1, self._place[above])
         self._starts = np.searchsorted(self.depth[self._order], np.arange(int(self.depth.max(initial=0)) + 2)).tolist()
         self._least = np.zeros(size)
         if may_turn is not None:
@@ -123,13 +124,12 @@ class Forest:
         Linear
             Arrays (n,); NaN in all of a root's branch in which a pivot is not above zero.
         """
-        order = self._order
-        r, g, a, held, emf = (x[order] for x in (resistance_ohm, conductance_s, current_a, held_v, emf_v))
         walk = self._by_levels if self._is_wide else self._by_nodes
-        v, j, g, pivot = walk(r, g, a, held, emf)
-        back = np.empty_like(order)
-        back[order] = np.arange(len(order))
-        return Linear(v[back], j[back], g[back], pivot[back])
+        if self._in_order:
+            return Linear(*walk(resistance_ohm, conductance_s.copy(), current_a.copy(), held_v, emf_v))
+        order, place = self._order, self._place
+        solved = walk(*(x[order] for x in (resistance_ohm, conductance_s, current_a, held_v, emf_v)))
+        return Linear(*(x[place] for x in solved))
 
     def ohm_above(self, resistance_ohm: Floats, seen: Linear) -> Floats:
         """
