@@ -52,11 +52,3 @@ def test_it_prints_every_ratio(
         "× bare numpy (at most 10)",
     ):
         assert words in said
-
-
-@pytest.mark.long
-def test_the_ratios_hold(network: ModuleType) -> None:
-    found = network.measure(100_000, 100_000, 5)
-    assert found["tree / sparse"] <= network.AT_MOST_A_SPARSE_SOLUTION
-    assert found["growth"] <= network.AT_MOST_GROWTH
-    assert found["circuits / bare"] <= network.AT_MOST_BARE_NUMPY
