@@ -153,3 +153,10 @@ def test_a_current_against_a_run_of_a_ring_is_no_mistake() -> None:
     assert "RD06" not in {f.rule for f in judged(RING, *readings)["C1"].findings}
     chain = RING | {"runs": RING["runs"][:3]}
     assert "RD06" in {f.rule for f in judged(chain, *readings)["C1"].findings}
+
+
+def test_a_current_in_a_ring_is_not_compared_with_loads_behind_it() -> None:
+    """Run 2 carries next to nothing by the record, more if p3 draws less than recorded; at the way all loads count."""
+    in_ring = (WAY, reading("C1", "current", "run 2", 1.1))
+    assert "RD05" not in {f.rule for f in judged(RING, *in_ring)["C1"].findings}
+    assert "RD05" in {f.rule for f in judged(RING, WAY, reading("C1", "current", "way", 5))["C1"].findings}
