@@ -30,7 +30,7 @@ from rules.worst import largest_current_a, worst_of
 
 RUN = re.compile(r"run \d+")
 
-GAP_COLLAPSE = "the voltage collapses behind {}, which cannot carry what hangs on it"
+GAP_COLLAPSE = "the voltage collapses behind {}: the path there cannot carry what hangs on it"
 
 
 @dataclass(frozen=True, slots=True)

@@ -156,8 +156,9 @@ class Network:
     def place_of(self, node: int) -> str:
         """What leads to a node, for people: ``run 2 of B1-07``."""
         circuit = self._index.circuits[self.circuit_at[node]]
-        run = self._figures.runs[int(self._row[node])].name if self._row[node] >= 0 else "the device"
-        return f"{run} of {circuit.tag}"
+        if self._row[node] >= 0:
+            return f"{self._figures.runs[int(self._row[node])].name} of {circuit.tag}"
+        return f"the {'way' if circuit.device == 'none' else 'device'} of {circuit.tag}"
 
     def sources_at(self, held: int) -> tuple[Source, ...]:
         """The sources that hold a node without a parent."""

@@ -257,7 +257,7 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     """
     if not tree.runs:
         raise MissingData("no run is recorded")
-    first = tree.runs[0].to_point
+    first = next(iter(tree.ends))
     able: list[tuple[float, Round]] = []
     reason = MissingData("no voltages were read at two points")
     for this in rounds:

@@ -242,7 +242,7 @@ def recorded_temperature_c(run: Run, site: Site, limits: Limits) -> float:
 
 def gap_of(run: Run) -> str:
     """Why a run's own resistance cannot be computed; empty where it can."""
-    if run.one_way_length_m is None:
+    if run.one_way_length_m is None or not run.one_way_length_m >= 0:
         return GAP_LENGTH.format(run.name)
     if not is_known(run.size):
         return GAP_SIZE.format(run.name)

@@ -137,7 +137,7 @@ class _Builder:
             if at is None:
                 continue
             draws = drawn(load, nominal)
-            if draws is None:
+            if draws is None or min(draws.current_a, draws.power_w, draws.conductance_s) < 0:
                 wiring.unknown[at] = f"{load.tag} on {circuit.tag}"
             else:
                 wiring.loads.append((at, draws))

@@ -57,7 +57,7 @@ def _tell(case: CircuitCase, lost: Sequence[LoadPoint], lowest: bool) -> Iterato
     yield cannot_be_supplied.finding(
         case,
         lost[0].load.point,
-        f"{lost[0].load.tag}{more} cannot be supplied {when}: {place} can carry {' and '.join(words)} that hang on it",
+        f"{lost[0].load.tag}{more} cannot be supplied {when}: through {place} {' and '.join(words)} that hang on it could be had",
         numbers=asked,
     )
 

@@ -355,7 +355,7 @@ def test_a_converter_that_cannot_be_supplied_takes_its_loads_with_it() -> None:
     assert design(assessment, "K1", "p1") is None
     (found,) = [f for f in assessment.findings if f.rule == "NW01"]
     assert found.circuit == "K1"
-    assert "run 1 of F1 can carry at most" in found.why
+    assert "through run 1 of F1 at most" in found.why
     assert found.numbers["at most W"].value == pytest.approx(54**2 / (4 * F1_OHM), rel=1e-6)
 
 
@@ -435,3 +435,52 @@ def test_a_temperature_that_nobody_recorded_is_the_profiles() -> None:
     assert end == pytest.approx(
         54 - 10 * ((F1_OHM - joints(16)) * warm + joints(16) + (C1_OHM - joints(4)) * warm + joints(4)), rel=1e-6
     )
+
+
+def test_a_board_hangs_on_the_feeder_that_leads_somewhere() -> None:
+    """The first of its feeders is not in the record; intake refuses that, a combined site file may hold it."""
+    boards = [PLANT["boards"][0], {"board": "DB1", "fed_by": "GONE + F1"}]
+    assessment = judged(site_of(PLANT | {"boards": boards}, {"name": "x"}, check=False))
+    assert design(assessment, "C1", "p1") == pytest.approx(54 - 10 * (F1_OHM + C1_OHM), rel=1e-9)
+
+
+def test_a_run_that_starts_nowhere_or_goes_nowhere_is_left_out() -> None:
+    runs = [
+        *PLANT["runs"],
+        PLANT["runs"][1] | {"run": "2", "from": "p9", "to": "p3"},
+        PLANT["runs"][1] | {"run": "3", "from": "p1", "to": "p1"},
+    ]
+    assessment = judged(site_of(PLANT | {"runs": runs}, {"name": "x"}, check=False))
+    assert design(assessment, "C1", "p1") == pytest.approx(54 - 10 * (F1_OHM + C1_OHM), rel=1e-9)
+    assert {f.rule for f in assessment.findings if f.circuit == "C1"} == {"RC02"}
+
+
+def test_a_run_to_a_board_that_is_not_there_closes_nothing() -> None:
+    runs = [*PLANT["runs"], PLANT["runs"][1] | {"run": "2", "from": "p1", "to": "board:GONE"}]
+    assessment = judged(site_of(PLANT | {"runs": runs}, {"name": "x"}, check=False))
+    assert design(assessment, "C1", "p1") == pytest.approx(54 - 10 * (F1_OHM + C1_OHM), rel=1e-9)
+
+
+@pytest.mark.parametrize("loads", [[PLANT["loads"][0] | {"current": "-3"}], [PLANT["loads"][0] | {"point": "p7"}]])
+def test_a_load_that_cannot_be_does_not_stop_the_rest(loads: list[dict[str, str]]) -> None:
+    assessment = judged(site_of(PLANT | {"loads": loads}, {"name": "x"}, check=False))
+    assert design(assessment, "F1", "way") == pytest.approx(54)
+    assert "RC02" in {f.rule for f in assessment.findings}
+
+
+def test_two_unknown_loads_behind_one_feeder() -> None:
+    loads = [
+        *PLANT["loads"],
+        {"circuit": "F1", "point": "end", "load": "one", "current": ""},
+        {"circuit": "C1", "point": "p1", "load": "two", "current": ""},
+    ]
+    assessment = judged(plant(loads=loads))
+    assert design(assessment, "C1", "p1") is None
+    assert {f.where for f in assessment.findings if f.rule == "RC01"} == {"end", "p1"}
+
+
+def test_a_length_below_zero_is_not_a_length() -> None:
+    runs = [PLANT["runs"][0], PLANT["runs"][1] | {"length": "-5"}]
+    assessment = judged(site_of(PLANT | {"runs": runs}, {"name": "x"}, check=False))
+    assert design(assessment, "C1", "p1") is None
+    assert design(assessment, "F1", "end") == pytest.approx(54 - 10 * F1_OHM, rel=1e-9)
