@@ -74,11 +74,13 @@ class EntryCell(Horizontal):
         super().__init__(classes="" if slot is not None else "-round")
         self.slot = slot
         """``None`` for the cell that names the round."""
-        self._label = name or (slot.label if slot is not None else "")
+        self.label = name or (slot.label if slot is not None else "")
+        self.complaint = ""
+        """What is wrong with a value that was refused."""
         self._shown = text or self._saved_text
 
     def compose(self) -> ComposeResult:
-        yield Static(f"{clean(self._label)} ", classes="name", markup=False)
+        yield Static(f"{clean(self.label)} ", classes="name", markup=False)
         yield Static("▐", classes="edge")
         yield ValueInput(self._shown, compact=True, select_on_focus=True)
         yield Static("▌", classes="edge")
@@ -119,7 +121,7 @@ class EntryCell(Horizontal):
 
     def go_to(self) -> None:
         """Put the cursor here."""
-        self.query_one(ValueInput).focus()
+        self.screen.set_focus(self.query_one(ValueInput))
 
     def accept(self) -> None:
         """As if Enter were pressed here."""

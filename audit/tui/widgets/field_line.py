@@ -124,7 +124,7 @@ class FieldLine(Horizontal):
 
     def go_to(self) -> None:
         """Put the cursor here."""
-        self.query_one(Input).focus()
+        self.screen.set_focus(self.query_one(Input))
 
     def watch_state(self, state: str) -> None:
         self.query_one(".sign", Static).update(SIGNS[state])
