@@ -3,14 +3,17 @@
 from __future__ import annotations
 
 import asyncio
-from collections.abc import Callable
+from collections.abc import Callable, Coroutine
 from dataclasses import replace
 from datetime import datetime
 from pathlib import Path
+from typing import Any, TypeVar
 
-from textual import on, work
+from textual import on
 from textual.app import App
+from textual.events import Event, Key, Paste
 from textual.reactive import reactive
+from textual.screen import Screen
 
 from audit.tui.edits import Edit
 from audit.tui.entry.habits import Habits
@@ -24,7 +27,10 @@ from audit.tui.session import Session
 from audit.tui.settings import UserSettings
 from audit.tui.state import Survey, latest_visit
 from audit.tui.theme import THEMES
+from audit.tui.type_ahead import TypeAhead
 from rules.problems.cells import text_complaint
+
+R = TypeVar("R")
 
 
 class OhmwalkApp(App[None]):
@@ -52,6 +58,7 @@ class OhmwalkApp(App[None]):
         self._judge = Judge(self.post_message)
         self._answers: dict[Edit, asyncio.Future[Saved | Refused]] = {}
         self._saving = asyncio.Lock()
+        self.type_ahead = TypeAhead(self, super().on_event)
         self.habits = Habits()
         """What was chosen once and is not asked again."""
         for theme in THEMES:
@@ -65,7 +72,15 @@ class OhmwalkApp(App[None]):
         assert isinstance(screen, SurveyScreen)
         return screen
 
+    async def on_event(self, event: Event) -> None:
+        """Keys wait for their turn; everything else is dealt with at once."""
+        if isinstance(event, Key | Paste) and not event.is_forwarded:
+            self.type_ahead.take(event)
+        else:
+            await super().on_event(event)
+
     def on_mount(self) -> None:
+        self.run_worker(self.type_ahead.give(), group="keys")
         self._session.start()
         self._judge.start()
 
@@ -120,6 +135,14 @@ class OhmwalkApp(App[None]):
 
     # --- what the screens ask for
 
+    def flow(self, work: Coroutine[Any, Any, object]) -> None:
+        """Run work that asks one question after another with ``ask``."""
+        self.type_ahead.flow(work)
+
+    async def ask(self, screen: Screen[R]) -> R | None:
+        """Show a screen in a flow, and wait for what it gives back."""
+        return await self.type_ahead.ask(screen)
+
     def say(self, words: str, role: str = "quiet") -> None:
         """One line on the screen in front."""
         screens = [screen for screen in self.screen_stack if isinstance(screen, OurScreen)]
@@ -141,9 +164,7 @@ class OhmwalkApp(App[None]):
         """The name to save under, asked for once where it is not known; empty where she does not say."""
         if not self.settings.who:
             hint = "it stands beside everything you save in this file, and is kept on this laptop"
-            name = await self.push_screen_wait(
-                Ask("Your name", self.settings.who_or_login, hint=hint, check=complaint_about_name)
-            )
+            name = await self.ask(Ask("Your name", self.settings.who_or_login, hint=hint, check=complaint_about_name))
             if name:
                 self.settings.remember_who(name)
         return self.settings.who
@@ -161,10 +182,9 @@ class OhmwalkApp(App[None]):
         else:
             self.say("nothing of yours to undo")
 
-    @work(exclusive=True, group="report")
-    async def action_report(self) -> None:
+    def action_report(self) -> None:
         """Write the audit report to a file."""
-        await reporting.write(self)
+        self.flow(reporting.write(self))
 
     def action_change_light(self) -> None:
         """From the theme for a dark room to that for bright sun and back."""

@@ -21,7 +21,7 @@ from textual.message import Message
 from audit.tui.edits import Edit
 from audit.tui.messages import Crashed, Loaded, Refused, Saved, Troubled, Undone
 from audit.tui.state import read_by_visit
-from db.errors import SiteError, SiteReadOnly
+from db.errors import SiteError, SiteReadOnly, shown
 from db.store import SiteStore
 from rules.index import Index
 
@@ -96,7 +96,7 @@ class Session(threading.Thread):
                 while self._serve(store):
                     pass
         except SiteError as error:
-            self._post(Troubled(str(error)))
+            self._post(Troubled(self._line(error)))
         except Exception as error:
             self._post(Crashed(error))
 
@@ -130,7 +130,12 @@ class Session(threading.Thread):
                 ids = tuple(step.write(save) for step in request.edit.steps)
             return Saved(request.edit, ids)
         except SiteError as error:
-            return Refused(request.edit, str(error)) if isinstance(request, _Write) else Troubled(str(error))
+            line = self._line(error)
+            return Refused(request.edit, line) if isinstance(request, _Write) else Troubled(line)
+
+    def _line(self, error: SiteError) -> str:
+        """What went wrong; the file, which is the one on the screen, need not be named."""
+        return str(error).removeprefix(f"{shown(self._path)}: ")
 
     def _look(self, store: SiteStore) -> None:
         """Load the record if anyone saved since the last look."""
@@ -145,6 +150,6 @@ class Session(threading.Thread):
             self._trouble = ""
             self._post(loaded)
         except SiteError as error:
-            if str(error) != self._trouble:  # said once, not twice a second
-                self._trouble = str(error)
-                self._post(Troubled(str(error)))
+            if self._line(error) != self._trouble:  # said once, not twice a second
+                self._trouble = self._line(error)
+                self._post(Troubled(self._trouble))

@@ -78,7 +78,8 @@ def row_title(table: str, row: Row | Site, index: Index) -> str:
     """What a row is called in the site: ``run 2 of DB1-02``."""
     if isinstance(row, Run | Load):
         circuit = index.circuits.get(row.circuit_id)
-        return f"{row_tag(row)} of {circuit.tag if circuit is not None else '?'}"
+        noun = "load " if isinstance(row, Load) and not row.tag.startswith("load") else ""
+        return f"{noun}{row_tag(row)} of {circuit.tag if circuit is not None else '?'}"
     if isinstance(row, Site):
         return "the site"
     noun = {"instruments": "meter"}.get(table, table.removesuffix("s"))

@@ -140,7 +140,8 @@ class Ask(Foot[str | None]):
             self.dismiss(begin[0].answer)
             return
         if self._free and typed.strip():
-            matching = [Choice(typed.strip(), "as typed"), *matching] if self._choices else []
+            others = [choice for choice in matching if choice not in begin]
+            matching = [*begin, Choice(typed.strip(), "as typed"), *others] if self._choices else []
         self.query_one(_Choices).narrow(matching)
 
     @on(Input.Submitted)

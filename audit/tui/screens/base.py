@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, TypeVar, cast
+from typing import TYPE_CHECKING, Any, TypeVar, cast
 
 from textual.screen import Screen
 
@@ -40,7 +40,11 @@ class OurScreen(Screen[R]):
         """What the keys do here, and the cautions."""
         from audit.tui.screens.help import help_on  # it is a screen of ours itself
 
-        self.app.push_screen(help_on(self))
+        self.open(help_on(self))
+
+    def open(self, screen: Screen[Any]) -> None:
+        """Show another screen; what it gives back is not asked for."""
+        self.ohmwalk.flow(self.ohmwalk.ask(screen))
 
     def _unsay(self, words: str) -> None:
         if self._said == words:

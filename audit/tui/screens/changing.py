@@ -58,7 +58,7 @@ async def add(screen: OurScreen[None], row_id: str) -> str:
     if survey is None:
         return ""
     choices = [Choice(word, words) for word, (_, words) in WHAT.items()]
-    answer = await app.push_screen_wait(Ask("Add a", choices=choices, instant=True))
+    answer = await app.ask(Ask("Add a", choices=choices, instant=True))
     if answer is None:
         return ""
     table = WHAT[answer][0]
@@ -66,10 +66,10 @@ async def add(screen: OurScreen[None], row_id: str) -> str:
     while row is not None:
         answer_ = await app.save(Edit(f"{_title(table, row, survey)} added", (Add(table, row),)))
         if not isinstance(answer_, Refused):
-            await app.push_screen_wait(FormScreen(table, answer_.ids[0], _NEXT_FIELD[table]))
+            await app.ask(FormScreen(table, answer_.ids[0], _NEXT_FIELD[table]))
             return answer_.ids[0]
         # The tag is taken, or the file cannot be written: the tag that was typed stays.
-        tag = await app.push_screen_wait(Ask("Its tag", getattr(row, "tag", ""), hint=answer_.line))
+        tag = await app.ask(Ask("Its tag", getattr(row, "tag", ""), hint=answer_.line))
         row = None if not tag or table == "runs" else replace(row, tag=tag)  # type: ignore[call-arg]
     return ""
 
@@ -83,7 +83,7 @@ async def _new_row(screen: OurScreen[None], survey: Survey, table: str, row_id: 
     if table == "runs":
         return new_rows.new_run(index, row_id)
     if table == "visits":
-        kind = await app.push_screen_wait(Ask("A visit", choices=[Choice(kind) for kind in KINDS], free=False))
+        kind = await app.ask(Ask("A visit", choices=[Choice(kind) for kind in KINDS], free=False))
         return None if kind is None else new_visit(survey.site, kind, app.now().date(), app.settings.who)
     feed = new_rows.feed_at(index, row_id)
 
@@ -102,9 +102,7 @@ async def _new_row(screen: OurScreen[None], survey: Survey, table: str, row_id: 
 
     proposed = new_rows.tag_for(table, index, feed, row_id)
     noun = next(word for word, (name, _) in WHAT.items() if name == table)
-    tag = await app.push_screen_wait(
-        Ask(f"The new {noun}'s tag", proposed, hint=_hint(table, survey, feed), check=complaint)
-    )
+    tag = await app.ask(Ask(f"The new {noun}'s tag", proposed, hint=_hint(table, survey, feed), check=complaint))
     return None if tag is None else made(tag)
 
 
@@ -133,7 +131,7 @@ async def remove(screen: OurScreen[None], table: str, row_id: str) -> None:
     if table == SITE:
         screen.say("the site itself stays", "wrong")
         return
-    if await app.push_screen_wait(confirm(f"Remove {title}?", "u brings it back")) != YES:
+    if await app.ask(confirm(f"Remove {title}?", "u brings it back")) != YES:
         return
     answer = await app.save(Edit(f"{title} removed", (Remove(table, row_id),)))
     if isinstance(answer, Refused):

@@ -23,6 +23,8 @@ class Find(Foot[None]):
     look : callable
         Puts the cursor on a place that matches, the next one where the second argument is true; says whether
         there is one.
+    back : callable
+        Puts the cursor back to where it was.
     """
 
     BINDINGS: ClassVar[list[BindingType]] = [
@@ -30,9 +32,10 @@ class Find(Foot[None]):
         Binding("down", "further", show=False),
     ]
 
-    def __init__(self, look: Callable[[str, bool], bool]) -> None:
+    def __init__(self, look: Callable[[str, bool], bool], back: Callable[[], object]) -> None:
         super().__init__()
         self._look = look
+        self._back = back
 
     def compose(self) -> ComposeResult:
         with Vertical(id="question"):
@@ -56,6 +59,11 @@ class Find(Foot[None]):
         self.query_one("#hint", Static).update(words if is_found else "nothing in this site is called so")
 
     @on(Input.Submitted)
-    def action_leave(self) -> None:
+    def stay(self) -> None:
         """Stay where the cursor is."""
+        self.dismiss(None)
+
+    def action_leave(self) -> None:
+        """Leave, the cursor where it was before."""
+        self._back()
         self.dismiss(None)

@@ -65,7 +65,6 @@ class FormScreen(OurScreen[None]):
         self._table = table
         self._row_id = row_id
         self._start = start
-        self._complaint = ""
 
     def compose(self) -> ComposeResult:
         yield FewLines(id="title")
@@ -138,11 +137,9 @@ class FormScreen(OurScreen[None]):
 
     @on(FieldLine.Entered)
     def _show_hint(self, message: FieldLine.Entered) -> None:
-        hint = self.query_one("#hint", FewLines)
-        if message.field_line.state == "refused" and self._complaint:
-            hint.say_words(self._complaint, "wrong")
-        else:
-            hint.say_words(self._hint(message.field_line.field))
+        self.query_one("#hint", FewLines).say_words(self._hint(message.field_line.field))
+        if not any(one.state == "refused" for one in self.query(FieldLine)):
+            self.say("")
 
     def _hint(self, field: Field) -> str:
         row, survey = self._row, self._survey
@@ -168,8 +165,11 @@ class FormScreen(OurScreen[None]):
 
     def _go_on(self, field_line: FieldLine, by: int, *, may_end: bool) -> None:
         lines = list(self.query(FieldLine))
+        refused = next((one for one in lines if one.state == "refused" and one is not field_line), None)
         place = lines.index(field_line) + by
-        if 0 <= place < len(lines):
+        if refused is not None and by > 0:
+            refused.go_to()
+        elif 0 <= place < len(lines):
             lines[place].go_to()
         elif may_end and not any(one.state in ("saving", "refused") for one in lines):
             self.dismiss()
@@ -202,7 +202,11 @@ class FormScreen(OurScreen[None]):
             self._refuse(field_line, str(error))
             return
         field_line.state = "saving"
-        self.run_worker(self._save(field_line, value, row_title(self._table, row, survey.index)), group="save")
+        saving = self._save(field_line, value, row_title(self._table, row, survey.index))
+        if self.ohmwalk.settings.who:
+            self.run_worker(saving, group="save")
+        else:
+            self.ohmwalk.flow(saving)  # it asks for the name
         self._go_on(field_line, step, may_end=False)
 
     def _checked(self, field_line: FieldLine, row: Row | Site, survey: Survey) -> FieldValue:
@@ -228,8 +232,10 @@ class FormScreen(OurScreen[None]):
             field_line.state = "saved"
 
     def _refuse(self, field_line: FieldLine, complaint: str) -> None:
-        """What was typed stays in the field, and the cursor goes back there."""
-        self._complaint = complaint
+        """
+        What was typed stays in the field; its sign and a line say why, and with the next Enter the cursor goes back.
+
+        Not at once: her fingers may be typing into the next field already.
+        """
         field_line.state = "refused"
-        field_line.go_to()
-        self._show_hint(FieldLine.Entered(field_line))
+        self.say(f"{field_line.field.label}: {complaint}", "wrong")

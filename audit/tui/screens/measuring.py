@@ -61,7 +61,7 @@ async def _visit(screen: SurveyScreen, survey: Survey) -> str | None:
     assert row is not None
     choices = [Choice(GO_ON, visit_words(row)), *(Choice(kind, "a new visit, from today") for kind in KINDS)]
     question = Ask("The last visit is not of today. Readings belong to", choices=choices, free=False)
-    answer = await screen.app.push_screen_wait(question)
+    answer = await screen.ohmwalk.ask(question)
     if answer is None:
         return None
     if answer == GO_ON:
@@ -80,7 +80,7 @@ async def choose_visit(screen: SurveyScreen) -> None:
     choices = [Choice(tag, words.removeprefix(tag).strip(", ")) for tag, words in known.items()]
     choices += [Choice(kind, "a new visit, from today") for kind in KINDS if kind not in known]
     question = Ask("Readings belong to", survey.visit, choices=choices, free=False)
-    answer = await screen.app.push_screen_wait(question)
+    answer = await screen.ohmwalk.ask(question)
     if answer in known:
         screen.ohmwalk.habits.confirmed.add(answer)
         screen.ohmwalk.choose_visit(answer)
@@ -112,7 +112,7 @@ async def _cautions_read(screen: SurveyScreen, visit: str) -> bool:
     if not unread:
         return True
     shown = CautionScreen(cautions_of(site), highest_voltage_v(site), visit or "first visit")
-    if not await app.push_screen_wait(shown):
+    if not await app.ask(shown):
         return False
     who = await app.who()
     if not who:
@@ -153,6 +153,14 @@ async def meter_at_hand(screen: SurveyScreen, quantity: str, visit: str) -> Mete
     return known or await choose_meter(screen, quantity, visit)
 
 
+async def choose_meters(screen: SurveyScreen) -> None:
+    """Ask for the meters of the visit anew."""
+    visit = screen.ohmwalk.survey.visit if screen.ohmwalk.survey is not None else ""
+    for quantity in ("voltage", "current"):
+        if await choose_meter(screen, quantity, visit) is None:
+            return
+
+
 async def choose_meter(screen: SurveyScreen, quantity: str, visit: str) -> Meter | None:
     """Ask which meter and range; kept for the visit."""
     app = screen.ohmwalk
@@ -163,7 +171,7 @@ async def choose_meter(screen: SurveyScreen, quantity: str, visit: str) -> Meter
     question = Ask(
         f"Which meter reads {quantity}?", choices=[Choice(words) for words in by_words], free=False, hint=hint
     )
-    answer = await app.push_screen_wait(question)
+    answer = await app.ask(question)
     if answer is None:
         return None
     app.habits.meters[visit, quantity] = by_words[answer]
@@ -175,9 +183,11 @@ async def save_value(screen: SurveyScreen, strip: EntryStrip, message: EntryStri
     reason = ""
     if message.replaced is not None:
         words = f"Why in place of {value_words(message.replaced)}?"
-        answer = await screen.app.push_screen_wait(Ask(words, choices=REASONS, hint="both readings stay in the record"))
+        answer = await screen.ohmwalk.ask(Ask(words, choices=REASONS, hint="both readings stay in the record"))
         if not answer:
-            strip.refuse(message.cell, "not saved: a correction needs a reason; Enter asks again, Esc leaves it")
+            strip.refuse(
+                message.cell, "not saved: a correction needs a reason; Enter asks again, Esc leaves it", go_back=True
+            )
             return
         reason = answer
     edit = edit_for(message.reading, screen.place_words(), message.replaced, reason)

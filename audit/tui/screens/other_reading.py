@@ -55,7 +55,7 @@ async def correct(screen: SurveyScreen, place: Place) -> None:
         return
     by_words = {_choice_words(number, reading): reading for number, reading in enumerate(readings, start=1)}
     choices = [Choice(words, f"{value_words(reading)}, {_state(reading)}") for words, reading in by_words.items()]
-    answer = await app.push_screen_wait(Ask("Correct which reading?", choices=choices, free=False))
+    answer = await app.ask(Ask("Correct which reading?", choices=choices, free=False))
     if answer is None:
         return
     old = by_words[answer]
@@ -93,7 +93,7 @@ async def _where(screen: SurveyScreen, index: Index, where: Where, wanted: NextR
             return "".join(answers)
         ordered = sorted(answers, key=lambda answer: answer != preferred)
         choices = [Choice(answer, QUANTITY_WORDS.get(answer, "")) for answer in ordered]
-        return await screen.app.push_screen_wait(Ask(question, choices=choices, free=False, instant=instant))
+        return await screen.ohmwalk.ask(Ask(question, choices=choices, free=False, instant=instant))
 
     place = where.place
     quantity = await one_of("Read what?", quantities_at(place), wanted.quantity)
@@ -132,13 +132,13 @@ async def _ask_value(
         return ""
 
     while True:
-        answer = await app.push_screen_wait(Ask(words, text, hint=hint, check=complaint))
+        answer = await app.ask(Ask(words, text, hint=hint, check=complaint))
         if answer is None:
             return
         text = answer
         if replaced is not None and not reason:
             asked = Ask("Why?", choices=measuring.REASONS, hint="both readings stay in the record")
-            why = await app.push_screen_wait(asked)
+            why = await app.ask(asked)
             if not why:
                 return
             reason = why

@@ -39,14 +39,14 @@ async def write(app: OhmwalkApp) -> None:
 
     proposed = str(app.site_file.with_name(f"{app.site_file.stem}-audit.html"))
     hint = f"the ending chooses the form: {' '.join(FORMS)}"
-    answer = await app.push_screen_wait(Ask("Report to", proposed, hint=hint, check=complaint))
+    answer = await app.ask(Ask("Report to", proposed, hint=hint, check=complaint))
     if answer is None:
         return
     target = Path(answer).expanduser()
     overwrite = target.exists()
-    if overwrite and await app.push_screen_wait(confirm(f"{target.name} is there already. Replace it?")) != YES:
+    if overwrite and await app.ask(confirm(f"{target.name} is there already. Replace it?")) != YES:
         return
-    audience = await app.push_screen_wait(Ask("For the", choices=AUDIENCES, instant=True))
+    audience = await app.ask(Ask("For the", choices=AUDIENCES, instant=True))
     if audience is None:
         return
     made_at = app.now().strftime("%Y-%m-%d %H:%M %z")

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import ClassVar
 
-from textual import on, work
+from textual import on
 from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 
@@ -69,18 +69,16 @@ class RowsScreen(OurScreen[None]):
     def open_row(self) -> None:
         """Open the form of the row at the cursor."""
         if (item := self._chosen) is not None:
-            self.app.push_screen(FormScreen(item.table, item.id))
+            self.open(FormScreen(item.table, item.id))
 
-    @work(exclusive=True, group="change")
-    async def action_add(self) -> None:
+    def action_add(self) -> None:
         """Add a row."""
-        await changing.add(self, self._circuit_id)
+        self.ohmwalk.flow(changing.add(self, self._circuit_id))
 
-    @work(exclusive=True, group="change")
-    async def action_remove(self) -> None:
+    def action_remove(self) -> None:
         """Remove the row at the cursor, after asking."""
         if (item := self._chosen) is not None:
-            await changing.remove(self, item.table, item.id)
+            self.ohmwalk.flow(changing.remove(self, item.table, item.id))
 
     def action_leave(self) -> None:
         """Back to where it was opened."""

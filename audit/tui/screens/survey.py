@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import ClassVar
 
-from textual import on, work
+from textual import on
 from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 from textual.containers import Horizontal
@@ -137,12 +137,12 @@ class SurveyScreen(OurScreen[None]):
         """Open the circuit or board at the cursor."""
         if self.page.place_id:
             self.turned = True
-            self.page.focus()
+            self.set_focus(self.page)
 
     def action_turn_back(self) -> None:
         """Back to the walk."""
         self.turned = False
-        self.walk.focus()
+        self.set_focus(self.walk)
 
     def action_go_next(self) -> None:
         """To the next circuit that wants doing."""
@@ -154,21 +154,27 @@ class SurveyScreen(OurScreen[None]):
 
     def action_find(self) -> None:
         """Find a circuit or board by typing."""
-        self.app.push_screen(Find(self.walk.find))
+        here = self.page.place_id
+        self.open(Find(self.walk.find, lambda: self.walk.choose(here)))
 
-    @work(exclusive=True, group="change")
-    async def action_show_findings(self) -> None:
+    def action_show_findings(self) -> None:
+        """All findings."""
+        self.ohmwalk.flow(self._show_findings())
+
+    async def _show_findings(self) -> None:
         """All findings; the circuit of the one that was opened is shown."""
-        row_id = await self.app.push_screen_wait(FindingsScreen())
+        row_id = await self.ohmwalk.ask(FindingsScreen())
         if row_id:
             self.walk.choose(row_id)
             self.turned = True
 
     # --- the record
 
-    @work(exclusive=True, group="change")
-    async def action_add(self) -> None:
+    def action_add(self) -> None:
         """Add a circuit, a run, a load …"""
+        self.ohmwalk.flow(self._add())
+
+    async def _add(self) -> None:
         chosen = self.walk.chosen
         new_id = await changing.add(self, chosen.id if chosen is not None else "")
         self.walk.choose(new_id)
@@ -177,19 +183,19 @@ class SurveyScreen(OurScreen[None]):
         """The rows of the circuit at the cursor, or the form of the board."""
         chosen = self.walk.chosen
         if chosen is not None and chosen.kind == "circuit":
-            self.app.push_screen(RowsScreen(chosen.id))
+            self.open(RowsScreen(chosen.id))
         elif (place := self.place_at_hand()) is not None and place.board is not None:
-            self.app.push_screen(FormScreen(place.board.table, place.board.id))
+            self.open(FormScreen(place.board.table, place.board.id))
 
-    @work(exclusive=True, group="change")
-    async def action_remove(self) -> None:
+    def action_remove(self) -> None:
         """Remove the circuit or board at the cursor, after asking."""
         if (place := self.place_at_hand()) is not None:
-            await changing.remove(self, "circuits" if place.board is None else place.board.table, place.id)
+            table = "circuits" if place.board is None else place.board.table
+            self.ohmwalk.flow(changing.remove(self, table, place.id))
 
     def action_show_site(self) -> None:
         """The site's settings, sources, boards, meters and visits."""
-        self.app.push_screen(RowsScreen())
+        self.open(RowsScreen())
 
     # --- readings
 
@@ -212,11 +218,13 @@ class SurveyScreen(OurScreen[None]):
         row = index.circuits.get(place.id) or index.boards.get(place.id) or index.sources.get(place.id)
         return row.tag if row is not None else ""
 
-    @work(exclusive=True, group="measure")
-    async def action_measure(self) -> None:
+    def action_measure(self) -> None:
         """Open the strip for a round on the circuit or busbar at the cursor."""
-        place = self.place_at_hand()
-        of = None if place is None else await measuring.round_at(self, place)
+        if (place := self.place_at_hand()) is not None:
+            self.ohmwalk.flow(self._measure(place))
+
+    async def _measure(self, place: Place) -> None:
+        of = await measuring.round_at(self, place)
         if of is not None:
             self.turned = True
             self.say("")
@@ -224,17 +232,15 @@ class SurveyScreen(OurScreen[None]):
             self.page.scroll_home(animate=False)
             await self.strip.open(of)
 
-    @work(exclusive=True, group="measure")
-    async def action_take_other(self) -> None:
+    def action_take_other(self) -> None:
         """A reading beside the round: a joint, a drop along a lead, a temperature …"""
         if (place := self.place_at_hand()) is not None:
-            await other_reading.take(self, place)
+            self.ohmwalk.flow(other_reading.take(self, place))
 
-    @work(exclusive=True, group="measure")
-    async def action_correct(self) -> None:
+    def action_correct(self) -> None:
         """Replace a reading; both stay."""
         if (place := self.place_at_hand()) is not None:
-            await other_reading.correct(self, place)
+            self.ohmwalk.flow(other_reading.correct(self, place))
 
     @on(EntryStrip.Typed)
     def show_as_typed(self, message: EntryStrip.Typed) -> None:
@@ -242,27 +248,27 @@ class SurveyScreen(OurScreen[None]):
 
     @on(EntryStrip.Accepted)
     def save_value(self, message: EntryStrip.Accepted) -> None:
-        self.run_worker(measuring.save_value(self, self.strip, message), group="save")
+        saving = measuring.save_value(self, self.strip, message)
+        if message.replaced is not None:
+            self.ohmwalk.flow(saving)  # it asks why
+        else:
+            self.run_worker(saving, group="save")
 
     @on(EntryStrip.Left)
     def leave_strip(self, message: EntryStrip.Left) -> None:
         self.strip.close()
         self.remove_class("-entering")
         self.page.typing = None
-        (self.page if self.turned else self.walk).focus()
+        self.set_focus(self.page if self.turned else self.walk)
         if message.finished:
             self.say(
                 f"round {self.strip.round_name} of {self.place_words()} is saved · n next circuit · m another round"
             )
 
-    @work(exclusive=True, group="measure")
-    async def action_choose_meters(self) -> None:
+    def action_choose_meters(self) -> None:
         """Choose the meters of the visit anew."""
-        if self.survey is not None:
-            for quantity in ("voltage", "current"):
-                await measuring.choose_meter(self, quantity, self.survey.visit)
+        self.ohmwalk.flow(measuring.choose_meters(self))
 
-    @work(exclusive=True, group="measure")
-    async def action_choose_visit(self) -> None:
+    def action_choose_visit(self) -> None:
         """Choose the visit that readings go to, or begin one."""
-        await measuring.choose_visit(self)
+        self.ohmwalk.flow(measuring.choose_visit(self))

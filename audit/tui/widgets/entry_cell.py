@@ -3,32 +3,34 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import ClassVar, Literal
+from typing import Literal
 
 from textual import on
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
 from textual.containers import Horizontal
+from textual.events import Key
 from textual.message import Message
 from textual.reactive import reactive
 from textual.widgets import Input, Static
 
 from audit.tui.entry.reading import value_words
 from audit.tui.entry.slots import Slot
+from audit.tui.widgets.cell_input import CellInput
 from rules.text import clean
 
 SIGNS = {"empty": " ", "typing": " ", "saving": "…", "saved": "✓", "refused": "×"}
 """What stands behind a cell; the line beneath says the same in words."""
 
 
-class ValueInput(Input):
-    """A value; the keys that move between cells, and ``?``, are the strip's."""
+class ValueInput(CellInput):
+    """A value; no value holds a question mark, which is help."""
 
-    BINDINGS: ClassVar[list[BindingType]] = [Binding("question_mark", "screen.help", show=False)]
-
-    def check_consume_key(self, key: str, character: str | None) -> bool:
-        """No value holds a question mark."""
-        return key != "question_mark" and super().check_consume_key(key, character)
+    async def on_key(self, event: Key) -> None:
+        """Ask for help in place of typing a question mark."""
+        if event.key == "question_mark":
+            event.stop()
+            event.prevent_default()
+            await self.run_action("screen.help")
 
 
 class EntryCell(Horizontal):
@@ -40,9 +42,8 @@ class EntryCell(Horizontal):
         height: 1;
         margin-right: 2;
         & > .name { width: auto; color: $quiet; }
-        & > ValueInput { width: 10; background: $cell; }
-        &.-round > ValueInput { width: 4; }
-        & > .edge { width: 1; color: $quiet; }
+        & > ValueInput { width: 12; }
+        &.-round > ValueInput { width: 6; }
         & > .sign { width: 1; }
         &:focus-within > .name { color: $foreground; text-style: bold; }
         &.-saved > .sign { color: $status-sound; }
@@ -74,14 +75,14 @@ class EntryCell(Horizontal):
         super().__init__(classes="" if slot is not None else "-round")
         self.slot = slot
         """``None`` for the cell that names the round."""
-        self._label = name or (slot.label if slot is not None else "")
+        self.label = name or (slot.label if slot is not None else "")
+        self.complaint = ""
+        """What is wrong with a value that was refused."""
         self._shown = text or self._saved_text
 
     def compose(self) -> ComposeResult:
-        yield Static(f"{clean(self._label)} ", classes="name", markup=False)
-        yield Static("▐", classes="edge")
-        yield ValueInput(self._shown, compact=True, select_on_focus=True)
-        yield Static("▌", classes="edge")
+        yield Static(f"{clean(self.label)} ", classes="name", markup=False)
+        yield ValueInput(self._shown)
         yield Static(SIGNS["empty"], classes="sign")
 
     def on_mount(self) -> None:
@@ -119,7 +120,7 @@ class EntryCell(Horizontal):
 
     def go_to(self) -> None:
         """Put the cursor here."""
-        self.query_one(ValueInput).focus()
+        self.screen.set_focus(self.query_one(ValueInput))
 
     def accept(self) -> None:
         """As if Enter were pressed here."""

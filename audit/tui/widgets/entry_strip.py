@@ -31,7 +31,7 @@ from audit.tui.entry.slots import Place, Slot, readings_of_visit, round_at_hand,
 from audit.tui.entry.typing import Typing
 from audit.tui.state import Survey
 from audit.tui.widgets.entry_cell import EntryCell
-from audit.tui.widgets.few_lines import FewLines
+from audit.tui.widgets.few_lines import FewLines, remark
 from rules.errors import RulesError
 from rules.record import Reading
 
@@ -181,8 +181,7 @@ class EntryStrip(Widget):
         try:
             reading = self._reading(cell)
         except RulesError as error:
-            cell.state = "refused"
-            self._echo(cell, str(error))
+            self.refuse(cell, str(error))
             return
         cell.state = "saving"
         self.post_message(self.Accepted(cell, reading, cell.slot.saved))
@@ -193,16 +192,28 @@ class EntryStrip(Widget):
         cell.state = "saved"
         self._finish()
 
-    def refuse(self, cell: EntryCell, complaint: str) -> None:
-        """The value of a cell was not saved: it stays in the cell, and the cursor goes back there."""
+    def refuse(self, cell: EntryCell, complaint: str, *, go_back: bool = False) -> None:
+        """
+        The value of a cell was not saved: it stays in the cell, and the cursor goes back there with the next Enter.
+
+        Not at once (but for ``go_back``): her eyes may be on the meter while her fingers type the next value.
+        """
+        go_back = go_back or self._is_at_end
         self._is_at_end = False
         cell.state = "refused"
-        self._go_to(cell)
-        self._echo(cell, complaint)
+        cell.complaint = complaint
+        at_hand = self._cell_at_hand()
+        if go_back or at_hand is None:
+            self._go_to(cell)
+        else:
+            self._echo(at_hand)
 
     def _go_on(self, cell: EntryCell) -> None:
         cells = self.cells
-        if cell is cells[-1]:
+        refused = next((one for one in cells if one.state == "refused"), None)
+        if refused is not None:
+            self._go_to(refused)
+        elif cell is cells[-1]:
             self._is_at_end = True
             self._finish()
         else:
@@ -220,8 +231,7 @@ class EntryStrip(Widget):
     @on(EntryCell.Entered)
     def _entered(self, message: EntryCell.Entered) -> None:
         message.stop()
-        if message.cell.state != "refused":
-            self._echo(message.cell)
+        self._echo(message.cell)
 
     def action_back(self) -> None:
         """To the cell before; what is typed stays in its cell, unsaved."""
@@ -281,7 +291,7 @@ class EntryStrip(Widget):
         self._took_s = time.perf_counter() - start
         self.post_message(self.Typed(self._view if is_typed else None))
         cell = self._cell_at_hand()
-        if cell is not None and cell.state != "refused":
+        if cell is not None:
             self._echo(cell)
 
     def _typing(self) -> Typing:
@@ -300,14 +310,17 @@ class EntryStrip(Widget):
             readings[typed.id] = typed
         return Typing(place.circuit_id, self._round, tuple(readings.values()))
 
-    def _echo(self, cell: EntryCell, complaint: str = "") -> None:
-        """Beneath the cells: what was understood of the one at hand, or what is wrong with it."""
-        echo = self.query_one("#echo", FewLines)
-        if complaint:
-            echo.say_words(complaint, "wrong")
-        else:
-            said = self._understood(cell)
-            echo.say(lambda width: [cut(said, width)])
+    def _echo(self, cell: EntryCell) -> None:
+        """Beneath the cells: what was understood of the one at hand, and what is wrong with one that was refused."""
+        refused = cell if cell.state == "refused" else next((c for c in self.cells if c.state == "refused"), None)
+        said = self._understood(cell) if cell is not refused else ()
+        label = f"{refused.label}: " if refused is not None and refused is not cell else ""
+
+        def draw(width: int) -> list[Line]:
+            wrong = remark(f"{label}{refused.complaint}", "wrong", width) if refused is not None else []
+            return ([cut(said, width)] if said else []) + wrong
+
+        self.query_one("#echo", FewLines).say(draw)
 
     def _understood(self, cell: EntryCell) -> Line:
         slot = cell.slot

@@ -11,26 +11,13 @@ from textual.app import ComposeResult
 from textual.containers import Horizontal
 from textual.message import Message
 from textual.reactive import reactive
-from textual.suggester import Suggester
 from textual.widgets import Input, Static
 
 from audit.tui.entry.fields import Field, completed
+from audit.tui.widgets.cell_input import CellInput, Completing
 from rules.text import clean
 
 SIGNS = {"idle": " ", "saving": "…", "saved": "✓", "refused": "×"}
-
-
-class _Completing(Suggester):
-    """Shows the answer that the typed letters mean."""
-
-    def __init__(self, answers: Sequence[str]) -> None:
-        super().__init__(use_cache=False, case_sensitive=True)
-        self.answers = tuple(answers)
-
-    async def get_suggestion(self, value: str) -> str | None:
-        whole = completed(value, self.answers)
-        # What is shown continues what was typed, so that the letters must agree in case too.
-        return value + whole[len(value) :] if whole != value and len(whole) > len(value) else None
 
 
 class FieldLine(Horizontal):
@@ -40,15 +27,12 @@ class FieldLine(Horizontal):
     FieldLine {
         height: 1;
         & > .name { width: 20; color: $quiet; padding-left: 3; }
-        & > .edge { width: 1; color: $background; }
-        & > Input { width: 30; background: $background; }
-        &:focus-within > .edge { color: $quiet; }
-        &:focus-within > Input { background: $cell; }
-        & > .sign { width: 2; }
+        & > CellInput { width: 32; }
+        & > CellInput:blur { background: $background; border-left: inner $background; border-right: inner $background; }
         & > .aside { width: 1fr; color: $quiet; }
         &:focus-within > .name { color: $foreground; text-style: bold; }
-        &.-saved > .sign { color: $status-sound; }
-        &.-refused > .sign { color: $status-act; text-style: bold; }
+        &.-saved > .aside { color: $status-sound; }
+        &.-refused > .aside { color: $status-act; text-style: bold; }
     }
     """
 
@@ -78,23 +62,20 @@ class FieldLine(Horizontal):
 
     def compose(self) -> ComposeResult:
         yield Static(clean(self.field.label), classes="name", markup=False)
-        yield Static("▐", classes="edge")
-        suggester = _Completing(self._answers) if self._answers else None
-        yield Input(clean(self._saved), compact=True, select_on_focus=True, suggester=suggester)
-        yield Static("▌", classes="edge")
-        yield Static(SIGNS["idle"], classes="sign")
+        yield CellInput(clean(self._saved), suggester=Completing(self._answers) if self._answers else None)
         yield Static(clean(self._aside), classes="aside", markup=False)
 
     @property
     def _aside(self) -> str:
         unit = {"degC": "°C", "ohm": "Ω"}.get(self._unit, self._unit)
         mark = "" if "assumed" in self._assumed else " (assumed)"
-        return f"{unit}  {self._assumed}{mark}".strip() if self._assumed and not self._saved else unit
+        words = f"{unit}  {self._assumed}{mark}".strip() if self._assumed and not self._saved else unit
+        return f"{SIGNS[self.state]} {words}"
 
     @property
     def text(self) -> str:
         """What stands in the field."""
-        return self.query_one(Input).value
+        return self.query_one(CellInput).value
 
     @property
     def meant(self) -> str:
@@ -110,8 +91,8 @@ class FieldLine(Horizontal):
         """The record has changed: show what it says unless something else is being typed."""
         was_changed = self.is_changed and self.state != "saving"
         self._saved, self._answers, self._unit, self._assumed = text, tuple(answers), unit, assumed
-        field = self.query_one(Input)
-        if isinstance(field.suggester, _Completing):
+        field = self.query_one(CellInput)
+        if isinstance(field.suggester, Completing):
             field.suggester.answers = self._answers
         if not was_changed and field.value != clean(text):
             field.value = clean(text)
@@ -119,15 +100,15 @@ class FieldLine(Horizontal):
 
     def restore(self) -> None:
         """Show what is saved again."""
-        self.query_one(Input).value = clean(self._saved)
+        self.query_one(CellInput).value = clean(self._saved)
         self.state = "idle"
 
     def go_to(self) -> None:
         """Put the cursor here."""
-        self.query_one(Input).focus()
+        self.screen.set_focus(self.query_one(CellInput))
 
     def watch_state(self, state: str) -> None:
-        self.query_one(".sign", Static).update(SIGNS[state])
+        self.query_one(".aside", Static).update(clean(self._aside))
         for name in ("saved", "refused"):
             self.set_class(state == name, f"-{name}")
 

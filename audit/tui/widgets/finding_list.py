@@ -11,7 +11,7 @@ from audit.tui.widgets.pick_list import PickList
 from rules.assessment import Assessment, Finding
 
 _SEVERITY_CELLS = 11
-_PLACE_CELLS = 26
+_PLACE_CELLS = 24
 
 
 class FindingList(PickList):
