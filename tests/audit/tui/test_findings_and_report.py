@@ -108,7 +108,7 @@ async def test_undo_says_what_it_undoes_and_can_be_done_again(hut: Path) -> None
         await walk.enter("4.02")
         await walk.keys("escape", "u")
         await walk.shows("undone: DB1-01 round 1: current at run 1 4.02 A · U does it again")
-        assert walk.record.readings == ()
+        assert not walk.record.readings
         await walk.keys("U")
         await walk.shows("done again: DB1-01 round 1: current at run 1 4.02 A")
         assert [reading.value for reading in walk.record.readings] == [4.02]

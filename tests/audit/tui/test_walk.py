@@ -21,11 +21,11 @@ async def test_opens_on_the_walk_with_nothing_in_front_of_it(plant: Path) -> Non
         assert [type(screen) for screen in walk.app.screen_stack] == [SurveyScreen]
         lines = walk.screen.split("\n")
         assert lines[0].startswith(" Beispielhausen exchange (invented)   2026-03 as found")
-        assert lines[0].endswith("21 of 24 read   9 act")
+        assert lines[0].endswith("27 of 30 read   9 act")
         assert lines[2:4] == [" power room", " ●   MDB, 48 V from RECT-1 + BATT-A"]
         assert "▸ F1" in lines[4]
         assert "0.9 of 3 %" in lines[4]
-        assert "? measure" in lines[4]
+        assert "✓ sound" in lines[4]
         assert any("! act" in line for line in lines)
 
 
@@ -53,7 +53,7 @@ async def test_the_chosen_circuit_says_why_beneath_it(plant: Path) -> None:
         await walk.at("F2")
         lines = walk.screen.split("\n")
         row = next(n for n, line in enumerate(lines) if "▸ F2" in line)
-        assert "measured against" in lines[row + 1]
+        assert "bad connection at run 1 end positive" in lines[row + 1]
 
 
 async def test_enter_turns_to_the_circuit_and_escape_back(plant: Path) -> None:
@@ -114,7 +114,7 @@ async def test_a_board_at_the_cursor_shows_how_its_circuits_stand(plant: Path) -
     async with walking(plant) as walk:
         await walk.at("MDB")
         await walk.keys("enter")
-        await walk.shows("6 circuits, 6 read on this visit")
+        await walk.shows("8 circuits, 8 read on this visit")
         assert "voltage at bus, negative to earth" in walk.screen
 
 
@@ -168,7 +168,7 @@ async def test_another_visit_shows_what_is_left_to_do_in_it(plant: Path) -> None
         await walk.keys("v")
         await walk.enter("as left")
         await walk.judged()
-        await walk.shows("0 of 24 read")
+        await walk.shows("0 of 30 read")
         assert walk.record.visits[-1].tag == "2026-03 as left"
         assert walk.record.visits[-1].walk_order == 2
 
