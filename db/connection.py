@@ -89,6 +89,12 @@ def made_whole(target: Path, *, overwrite: bool = False) -> Iterator[Path]:
         raise NoSuchSite(target, "there is no such folder")
     if target.is_dir() or (target.exists() and not overwrite):
         raise SiteExists(target, "there is already something of that name; nothing is overwritten")
+    journal = target.with_name(target.name + "-journal")
+    if journal.exists():
+        # SQLite would roll what another file's interrupted save left there back into the new file
+        raise SiteExists(
+            target, f"a save in it is under way or was interrupted ({journal.name}); open it once, then try again"
+        )
     part = target.with_name(f".{secrets.token_hex(8)}.part")
     try:
         yield part

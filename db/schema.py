@@ -147,9 +147,14 @@ def _places(table: str) -> dict[str, int]:
     return {name: n for n, name in enumerate(SCHEMA[table].columns)}
 
 
+@cache
+def _key_places(table: str) -> tuple[int, ...]:
+    return tuple(SCHEMA[table].place(name) for name in KEYS.get(table, ()))
+
+
 def key(table: str, values: Values) -> tuple[object, ...] | None:
     """What no other row of the table may share; ``None`` for a row that has no tag."""
-    found = tuple(values[SCHEMA[table].place(name)] for name in KEYS.get(table, ()))
+    found = tuple(values[place] for place in _key_places(table))
     return None if not found or (table == "readings" and found == ("",)) else found
 
 

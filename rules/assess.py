@@ -8,13 +8,15 @@ for each keystroke; ``assess`` is ``prepare``, every circuit, and the rules abou
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from importlib.metadata import version
 
 from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, PointVoltage, Severity, Status
-from rules.case import CircuitCase, Context, case_of
+from rules.case import CircuitCase, Context, case_of, measured_of, posed_by
 from rules.cautions import cautions_of
 from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
+from rules.diagnosis.diagnose import diagnose
 from rules.index import Index
 from rules.limits import Limits
 from rules.network import network_of
@@ -23,10 +25,9 @@ from rules.rounds import visit_ranks
 from rules.rule import BoardCase, SiteCase, judge, switched_off
 from rules.runs import figures
 from rules.service import service_of
+from rules.verdict import agrees, unsettled, unsound
 
-FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01")
-
-CAUSES_NOT_JUDGED = "the drop agrees with the record within its doubt; causes are not yet judged"
+FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "NW01", "NW02")
 
 
 def assess(site: Site, limits: Limits) -> Assessment:
@@ -62,10 +63,10 @@ def assess(site: Site, limits: Limits) -> Assessment:
 
 
 def prepare(site: Site, limits: Limits) -> Context:
-    """Index, resistances, network and visits of a site: what circuits are judged in."""
+    """Index, resistances, network, readings and diagnoses of a site: what circuits are judged in."""
     index = Index(site)
     known = figures(site.runs, site, limits)
-    return Context(
+    context = Context(
         site=site,
         limits=limits,
         index=index,
@@ -74,6 +75,10 @@ def prepare(site: Site, limits: Limits) -> Context:
         visit_ranks=visit_ranks(index),
         problems=problems(site),
     )
+    measured = {circuit.id: measured_of(context, circuit) for circuit in site.circuits}
+    posed = {id_: problem for id_, side in measured.items() if (problem := posed_by(context, side)) is not None}
+    diagnoses = dict(zip(posed, diagnose(list(posed.values()), limits), strict=True))
+    return replace(context, measured=measured, diagnoses=diagnoses)
 
 
 def assess_circuit(
@@ -112,6 +117,7 @@ def assess_circuit(
         allowed_drop_percent=case.allowed_drop_percent,
         nominal_voltage_v=case.nominal_v,
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
+        causes=case.diagnosis.causes if case.diagnosis is not None else (),
         points=_points(case),
         service=service_of(case),
         findings=tuple(findings),
@@ -120,22 +126,21 @@ def assess_circuit(
 
 
 def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str]:
-    """The first that holds; ``sound`` needs the probabilities of the diagnosis, which is not there yet."""
+    """The first that holds, with its reason."""
     urgent = [finding for finding in findings if finding.severity in (Severity.IMMEDIATE, Severity.SOON)]
     if urgent:
         return Status.ACT, min(urgent, key=_weight).why
     gaps = gaps_of(case)
     if gaps:
         return Status.INCOMPLETE, gaps[0][1]
-    if not case.visit:
-        return (
-            Status.MEASURE,
-            (case.circuit.not_tested and f"not tested: {case.circuit.not_tested}") or "nothing was read",
-        )
+    open_ = unsettled(case)
+    if open_:
+        return Status.MEASURE, open_
     watched = [finding for finding in findings if finding.severity is Severity.WATCH]
     if watched:
         return Status.WATCH, min(watched, key=_weight).why
-    return Status.MEASURE, CAUSES_NOT_JUDGED if case.drop else case.drop_gap
+    against = unsound(case)
+    return (Status.MEASURE, against) if against else (Status.SOUND, agrees(case))
 
 
 def _weight(finding: Finding) -> tuple[int, bool]:
@@ -144,7 +149,7 @@ def _weight(finding: Finding) -> tuple[int, bool]:
 
 
 def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:
-    """Design voltages of the circuit's points; ``worst`` waits for the diagnosis."""
+    """Voltages of the circuit's points at design and in the worst case."""
     network = case.context.network
     nodes = network.nodes_of.get(case.circuit.id)
     if nodes is None:
@@ -163,6 +168,7 @@ def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:
             PointVoltage(
                 point,
                 design=Figure(float(network.design.voltage_v[node]), "V") if known else None,
+                worst=case.worst.get(point),
                 lowest=Figure(lowest[point], "V") if point in lowest else None,
             )
         )

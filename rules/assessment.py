@@ -98,6 +98,17 @@ class NotJudged:
 
 
 @dataclass(frozen=True, slots=True)
+class Doubt:
+    """What one doubt adds to the standard uncertainty of a drop's excess."""
+
+    name: str
+    u_v: float
+    """[V]"""
+    group: str = ""
+    """Group of the limits profile that states it; empty where it is a meter's own figure."""
+
+
+@dataclass(frozen=True, slots=True)
 class Drop:
     """Measured against computed drop of one round, between two points of a circuit."""
 
@@ -112,11 +123,13 @@ class Drop:
     """In the circuit's first run, in that round."""
     by: str
     """How it was measured: ``two voltages`` or ``direct drops``."""
+    budget: tuple[Doubt, ...] = ()
+    """What its doubt is made of, largest first: the squares add to that of the excess's ``u``."""
 
 
 @dataclass(frozen=True, slots=True)
 class Place:
-    """A probability of a cause at a place; filled by the diagnosis."""
+    """A probability of a cause at a place."""
 
     cause: str
     where: str
@@ -124,6 +137,13 @@ class Place:
     low_ohm: float | None = None
     best_ohm: float | None = None
     high_ohm: float | None = None
+    """Extra resistance of a bad connection: median and central 95 % of its posterior. [ohm]"""
+    heat: float | None = None
+    """Probability of a bad connection there whose heat at design current passes the profile's limit."""
+    what: str = ""
+    """The cause's most probable way: ``one size smaller``, or which reading is doubtful and how."""
+    point: str = ""
+    """Where the branch of the place ends: ``way`` for the device; empty for the whole circuit."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -6,25 +6,31 @@ import math
 import re
 from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
-
-import numpy as np
+from dataclasses import dataclass, field
 
 from rules.assessment import Drop
 from rules.calc.doubt import total
+from rules.calc.network import Solved
 from rules.consistency import Problem
+from rules.diagnosis.budget import Current
+from rules.diagnosis.diagnose import Diagnosis, diagnose
+from rules.diagnosis.problem import Problem as Posed
+from rules.diagnosis.rows import problem_of
 from rules.errors import MissingData
 from rules.impossible import impossible
 from rules.index import Index
 from rules.limits import Limits
-from rules.network import GAP_NOTHING_FEEDS, Network, device_ohm, nominal_v
-from rules.record import Circuit, Figure, Load, Reading, Run, Site
-from rules.rounds import Round, Tree, drop_of, judged, rounds_of, temperature_read, visit_of
-from rules.runs import Carrying, RunFigures, record_variance
+from rules.network import GAP_NOTHING_FEEDS, Network, device_ohm
+from rules.nominal import nominal_v
+from rules.record import Board, Circuit, Figure, Load, Reading, Run, Site, Source
+from rules.rounds import Round, Tree, current_at, drop_of, judged, rounds_of, temperature_read, visit_of
+from rules.routes import Shared, first_ends
+from rules.runs import SHARED, Carrying, Figures, record_variance
+from rules.worst import largest_current_a, worst_of
 
 RUN = re.compile(r"run \d+")
 
-GAP_COLLAPSE = "the loads behind this source cannot be supplied: the voltage collapses"
+GAP_COLLAPSE = "the voltage collapses behind {}: the path there cannot carry what hangs on it"
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,11 +40,26 @@ class Context:
     site: Site
     limits: Limits
     index: Index
-    figures: Mapping[str, RunFigures]
-    """Of every run, by id."""
+    figures: Figures
+    """Of every run, by id, and of the returns that runs share."""
     network: Network
     visit_ranks: Mapping[str, tuple[float, str, int]]
     problems: tuple[Problem, ...]
+    measured: Mapping[str, Measured] = field(default_factory=dict)
+    """By circuit id: what was read on the visit that it is judged on."""
+    diagnoses: Mapping[str, Diagnosis] = field(default_factory=dict)
+    """By circuit id, of those whose readings say something."""
+
+
+@dataclass(frozen=True, slots=True)
+class Measured:
+    """The readings of one visit on one circuit."""
+
+    visit: str
+    """Empty where nothing was read."""
+    readings: tuple[Reading, ...]
+    rounds: tuple[Round, ...]
+    tree: Tree
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,8 +103,14 @@ class CircuitCase:
     drop: Drop | None
     drop_gap: str
     """Why there is no drop; empty where there is one."""
-    unused: tuple[str, ...] = ()
+    unused: tuple[str, ...]
     """Readings of the visit that nothing here makes use of."""
+    diagnosis: Diagnosis | None
+    """``None`` where no reading says anything about a run or the device."""
+    worst: Mapping[str, Figure]
+    """Voltage by point with the source at its lowest, hot conductors and what readings support. [V]"""
+    largest_current_a: Mapping[str, float]
+    """By the point at which a branch arrives (``way``: the device), at design and the voltage that makes it largest."""
 
     @property
     def tag(self) -> str:
@@ -101,17 +128,16 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
     ``readings``, where given, stand in for the circuit's readings in the record: what is being typed.
     """
     index, limits = context.index, context.limits
-    if readings is None:
-        visit = visit_of(circuit.id, index, context.visit_ranks) or ""
-        of_visit = [r for r in judged(index.readings_of(circuit.id), index) if r.visit_or_default == visit]
-    else:
-        of_visit = list(readings)
-        visit = of_visit[-1].visit_or_default if of_visit else ""
-    tree = _tree(context, circuit, of_visit)
+    known = context.measured.get(circuit.id) if readings is None else None
+    measured = measured_of(context, circuit, readings) if known is None else known
     nominal = nominal_v(circuit, index)
-    rounds = rounds_of(of_visit, tree, index, limits)
-    drop, gap = None, "nothing was read" if not of_visit else ""
-    if of_visit:
+    problem = posed_by(context, measured)
+    diagnosis = context.diagnoses.get(circuit.id)
+    if known is None:
+        diagnosis = diagnose([problem], limits)[0] if problem is not None else None
+    tree, rounds = measured.tree, measured.rounds
+    drop, gap = None, "nothing was read" if not measured.readings else ""
+    if measured.readings:
         against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
         possible = [this for this in rounds if not against[this.name]]
         try:
@@ -128,40 +154,92 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         allowed_drop_percent=limits["drop.allowed_percent"] if allowed is None else allowed,
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
-        visit=visit,
+        visit=measured.visit,
         rounds=rounds,
         tree=tree,
         drop=drop,
         drop_gap=gap,
-        unused=tuple(dict.fromkeys(_name(row) for row in of_visit if not _is_used(row, rounds))),
+        unused=_unused(measured, problem),
+        diagnosis=diagnosis,
+        worst=_worst(context, circuit, diagnosis),
+        largest_current_a=_largest_currents(context, circuit),
     )
 
 
-def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
-    """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
-    this = next(round_ for round_ in rounds if round_.name == reading.round)
-    if reading.quantity == "voltage":
-        return reading.at in this.volts
-    if reading.quantity == "drop":
-        return (reading.at, reading.to) in this.direct
-    if reading.quantity == "temperature":
-        return bool(RUN.fullmatch(reading.at))
-    return reading.quantity == "current"
+def _unused(measured: Measured, problem: Posed | None) -> tuple[str, ...]:
+    """The readings that neither the drop nor the diagnosis makes use of."""
+    used = {row.id for seen in problem.observations for row in seen.readings} if problem is not None else set()
+    unused = []
+    for reading in measured.readings:
+        conductor = reading.quantity == "temperature" and RUN.fullmatch(reading.at)
+        # why a voltage or a drop over both legs was not used is said where the drop is missing
+        of_drop = reading.quantity in ("voltage", "drop") and reading.leg in ("", "both")
+        if reading.id not in used and reading.quantity != "current" and not conductor and not of_drop:
+            leg = f" {reading.leg}" if reading.leg not in ("", "both") else ""
+            unused.append(f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}")
+    return tuple(dict.fromkeys(unused))
 
 
-def _name(reading: Reading) -> str:
-    leg = f" {reading.leg}" if reading.leg and reading.leg != "both" else ""
-    return f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}"
+def measured_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | None = None) -> Measured:
+    """The rounds of the visit that a circuit is judged on, or of the readings given."""
+    index = context.index
+    if readings is None:
+        visit = visit_of(circuit.id, index, context.visit_ranks) or ""
+        readings = [r for r in judged(index.readings_of(circuit.id), index) if r.visit_or_default == visit]
+    else:
+        visit = readings[-1].visit_or_default if readings else ""
+    tree = _tree(context, circuit, readings)
+    return Measured(visit, tuple(readings), rounds_of(readings, tree, index, context.limits), tree)
+
+
+def posed_by(context: Context, measured: Measured) -> Posed | None:
+    """What the readings of a visit pose to the diagnosis; ``None`` where they say nothing about a run or the device."""
+    if not measured.rounds:
+        return None
+    circuit, limits = measured.tree.circuit, context.limits
+    amps = _largest_currents(context, circuit)
+    hot_ohm = {point: limits["heat.limit_w"] / a**2 if a else math.inf for point, a in amps.items()}
+    return_leg = _return_leg(circuit, context.index)
+    return problem_of(measured.rounds, measured.tree, limits, hot_ohm, return_leg, nominal_v(circuit, context.index))
+
+
+def _largest_currents(context: Context, circuit: Circuit) -> dict[str, float]:
+    nodes = context.network.nodes_of.get(circuit.id, {})
+    amps = {point: largest_current_a(context.network, node) for point, node in nodes.items() if point != "bus"}
+    return {point: a for point, a in amps.items() if a is not None}
+
+
+def _worst(context: Context, circuit: Circuit, diagnosis: Diagnosis | None) -> dict[str, Figure]:
+    """Voltages of the circuit's points in the worst case, its own diagnosis as it is judged now."""
+    network = context.network
+    return worst_of(
+        network.nodes_of.get(circuit.id, {}),
+        network,
+        context.figures,
+        lambda id_: diagnosis if id_ == circuit.id else context.diagnoses.get(id_),
+        lambda node: _computed_u(context, list(network.way_up(node))[:-1], network.lowest),
+    )
+
+
+def _return_leg(circuit: Circuit, index: Index) -> str:
+    """The leg without the device: negative, unless the source is positive earthed."""
+    if circuit.device_leg in ("positive", "negative"):
+        return "negative" if circuit.device_leg == "positive" else "positive"
+    here: Circuit | Board | Source | None = circuit
+    seen: set[str] = set()
+    while here is not None and not isinstance(here, Source) and here.id not in seen:
+        seen.add(here.id)
+        feeds = here.fed_by if isinstance(here, Board) else (here.fed_from,)
+        here = index.named(feeds[0]) if feeds and feeds[0] is not None else None
+    return "positive" if isinstance(here, Source) and here.earthing == "positive earthed" else "negative"
 
 
 def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tree:
     index, limits = context.index, context.limits
     runs = index.runs_of(circuit.id)
-    nodes = context.network.nodes_of.get(circuit.id, {})
-    ends: dict[str, Run] = {}
-    for run in runs:
-        if not run.to_board_id and run.to_point not in (*ends, "way"):
-            ends[run.to_point] = run
+    network = context.network
+    nodes = network.nodes_of.get(circuit.id, {})
+    ends = first_ends(runs, index.end_of)
     figures = {}
     for run in runs:
         known = context.figures[run.id]
@@ -172,8 +250,49 @@ def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tr
     taps = {point for point, count in starts.items() if count > 1}
     taps |= {load.point for load in index.loads_of(circuit.id)}
     taps |= {_fed_at(fed, circuit, index) for fed in index.fed_by_circuit(circuit.id)}
-    currents = {point: context.network.design_current_a(node) for point, node in nodes.items() if point != "bus"}
-    return Tree(circuit, runs, ends, figures, device_ohm(circuit, limits), currents, frozenset(taps))
+    taps |= {run.to_point for branch, run in ends.items() if branch == run.name}
+    nodes = nodes | {
+        branch: at for branch, run in ends.items() if (at := network.node_at_run_end.get(run.id)) is not None
+    }
+    return Tree(
+        circuit,
+        runs,
+        ends,
+        figures,
+        device_ohm(circuit, limits),
+        {point: network.design_current_a(node) for point, node in nodes.items() if point != "bus"},
+        frozenset(taps),
+        {run.id: shared for run in runs if (shared := _shared(context, run, readings)) is not None},
+        network.meshed,
+    )
+
+
+def _shared(context: Context, run: Run, readings: Sequence[Reading]) -> Shared | None:
+    """The return that a run shares, with what the other runs put into it on the same visit."""
+    of = context.figures.returns.get(run.return_conductor.removeprefix(SHARED))
+    if of is None or not run.return_conductor.startswith(SHARED):
+        return None
+    visit = readings[-1].visit_or_default if readings else ""
+    others = [other for other in of.runs if other.id != run.id]
+    return Shared(of.figures, lambda round_: tuple(_carried(context, other, visit, round_) for other in others))
+
+
+def _carried(context: Context, run: Run, visit: str, round_: str) -> Current:
+    """The current in a run of another circuit, in a round of the same visit and name."""
+    circuit, index = context.index.circuits[run.circuit_id], context.index
+    there = judged(index.readings_of(circuit.id), index)
+    of_round = [row for row in there if row.visit_or_default == visit and row.round == round_]
+    tree = _tree(context, circuit, of_round)
+    branch = next(branch for branch, other in tree.ends.items() if other.id == run.id)
+    try:
+        (this,) = rounds_of(of_round, tree, index, context.limits)
+        current = current_at(branch, this, tree, context.limits)
+    except (ValueError, MissingData):
+        raise MissingData(
+            f"round {round_} has no current of {circuit.tag}, which shares the return {run.return_conductor.removeprefix(SHARED)}"
+        ) from None
+    # taps of two circuits may be named alike and err on their own
+    return Current(current.terms, tuple((f"{circuit.tag} {tap}", u) for tap, u in current.shares))
 
 
 def _fed_at(fed: object, circuit: Circuit, index: Index) -> str:
@@ -197,19 +316,20 @@ def _load_point(context: Context, circuit: Circuit, load: Load, rounds: Sequence
     inside = branches[: branches.index(bus)]
     design, lowest = network.design, network.lowest
     collapsed, collapsed_lowest = bool(design.collapsed[node]), bool(lowest.collapsed[node])
-    gap = network.gap_of(node, bus) or (GAP_COLLAPSE if collapsed else "")
-    lowest_gap = network.gap_of(node, lowest=True) or (GAP_COLLAPSE if collapsed_lowest else "")
+    gap = network.gap_of(node, bus) or (_collapse(network, node, lowest=False) if collapsed else "")
+    lowest_gap = network.gap_of(node, lowest=True)
+    lowest_gap = lowest_gap or (_collapse(network, node, lowest=True) if collapsed_lowest else "")
     return LoadPoint(
         load=load,
         drop_v=float(design.voltage_v[bus] - design.voltage_v[node]),
-        drop_u=_computed_u(context, inside, design.current_a),
+        drop_u=_computed_u(context, inside, design),
         gap=gap,
         total_drop_v=float(design.voltage_v[source] - design.voltage_v[node]),
-        total_drop_u=_computed_u(context, branches[:-1], design.current_a),
+        total_drop_u=_computed_u(context, branches[:-1], design),
         total_gap=network.gap_of(node) or gap,
         design_v=float(design.voltage_v[node]),
         lowest_v=float(lowest.voltage_v[node]),
-        lowest_u=_computed_u(context, branches[:-1], lowest.current_a),
+        lowest_u=_computed_u(context, branches[:-1], lowest),
         lowest_gap=lowest_gap,
         source_lowest_v=float(network.held_lowest_v[source]),
         collapsed=collapsed,
@@ -223,20 +343,26 @@ def _volts(this: Round, point: str) -> tuple[float, str, float]:
     return value, "V", u
 
 
-def _computed_u(
-    context: Context, branches: Sequence[int], current_a: np.ndarray[tuple[int], np.dtype[np.float64]]
-) -> float:
+def _collapse(network: Network, node: int, lowest: bool) -> str:
+    found = network.collapse_of(node, lowest)
+    return GAP_COLLAPSE.format(network.place_of(found.node)) if found is not None else ""
+
+
+def _computed_u(context: Context, branches: Sequence[int], solved: Solved) -> float:
     """Standard uncertainty of the computed drop over branches, at currents that are exact. [V]"""
     network, limits = context.network, context.limits
     parts: dict[str, list[Carrying]] = defaultdict(list)
     variance = 0.0
     for branch in branches:
-        amps = float(current_a[branch])
+        amps = float(solved.current_a[branch])
         if math.isnan(amps):  # a tree that cannot be supplied
             return math.nan
         run_id = network.run_at[branch]
         if run_id:
-            parts[network.circuit_at[branch]].append(Carrying(context.figures[run_id], amps))
+            path = parts[network.circuit_at[branch]]
+            path.append(Carrying(context.figures[run_id], amps))
+            if branch in network.return_at:
+                path.append(Carrying(network.return_at[branch].figures, float(solved.back_a[branch])))
         else:
             variance += (limits["device_doubt.relative"] * float(network.cold_ohm[branch]) * amps) ** 2
     return math.sqrt(variance + sum(record_variance(path, limits) for path in parts.values()))

@@ -36,7 +36,8 @@ def expected_voltages(case: CircuitCase, round_name: str) -> dict[str, Figure]:
     this = next((one for one in case.rounds if one.name == round_name), None)
     if this is None:
         return {}
-    order = ["bus", "way", *case.tree.ends]
+    # a run that closes a mesh arrives at no point of its own
+    order = ["bus", "way", *(point for point, run in case.tree.ends.items() if point != run.name)]
     if case.tree.device_ohm is None:
         order.remove("bus")  # what a device that is not recorded loses is not known
     start = next((point for point in order if point in this.volts), None)

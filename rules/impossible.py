@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from rules.calc.doubt import Weighted, probability_above, total
@@ -44,7 +44,12 @@ def reversed_points(this: Round, limits: Limits) -> list[tuple[str, Figure]]:
 
 
 def dead_points(this: Round, nominal_v: float, limits: Limits) -> list[tuple[str, Figure]]:
-    """Points whose voltage is a small part of nominal and not below zero."""
+    """
+    Points whose voltage is a small part of nominal and not below zero, in a round in which no current was read to flow:
+    where current flows, such a voltage is a slip.
+    """
+    if any(_flows(terms, limits) for terms in this.amps.values()):
+        return []
     reversed_ = {point for point, _ in reversed_points(this, limits)}
     found = []
     for point, terms in this.volts.items():
@@ -63,7 +68,7 @@ def rises(this: Round, tree: Tree, limits: Limits) -> list[Rise]:
     None while the current flows towards the source, as when a battery charges.
     """
     limit = limits["decision.beyond_doubt"]
-    if _backward(this, limit) is not None:
+    if _backward(this, tree, limit) is not None:
         return []
     found = [
         Rise(start, end, Figure(-fall.value, "V", fall.u))
@@ -76,7 +81,7 @@ def rises(this: Round, tree: Tree, limits: Limits) -> list[Rise]:
 def against_the_drop(this: Round, tree: Tree, limits: Limits) -> Against | None:
     """A current that is negative beyond doubt in a round whose voltage falls beyond doubt."""
     limit = limits["decision.beyond_doubt"]
-    backward = _backward(this, limit)
+    backward = _backward(this, tree, limit)
     if backward is None:
         return None
     for start, end, fall in _falls(this, tree, limits):
@@ -98,11 +103,18 @@ def impossible(this: Round, tree: Tree, nominal_v: float | None, limits: Limits)
     return ""
 
 
-def _backward(this: Round, limit: float) -> tuple[str, Figure] | None:
+def _flows(terms: Sequence[Weighted], limits: Limits) -> bool:
+    value, u = total(terms)
+    return probability_above(abs(value), 0.0, u) >= limits["decision.beyond_doubt"]
+
+
+def _backward(this: Round, tree: Tree, limit: float) -> tuple[str, Figure] | None:
     """A branch whose current is negative beyond doubt."""
     for point, terms in this.amps.items():
+        run = tree.ends.get(point)
         value, u = total(terms)
-        if probability_above(-value, 0.0, u) >= limit:
+        # in a mesh a run may carry current either way
+        if (run is None or run.id not in tree.meshed) and probability_above(-value, 0.0, u) >= limit:
             return point, Figure(value, "A", u)
     return None
 
@@ -124,6 +136,8 @@ def _before(tree: Tree, point: str, read: list[str]) -> str:
     here = point
     for _ in range(len(tree.runs) + 2):
         run = tree.ends.get(here)
+        if run is not None and run.id in tree.meshed:
+            return ""  # in a mesh voltage may rise along a run
         if run is not None:
             here = run.from_point
         elif here == "way":

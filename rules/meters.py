@@ -52,4 +52,4 @@ def worth(reading: Reading, index: Index, limits: Limits, wander: float = 0.0) -
     # a reading without an instrument shares its gain with no other
     key = f"{reading.instrument}\x1f{quantity}\x1f{row.id}\x1f{reading.visit_or_default}" if row else reading.id
     zero = row.zero or 0.0 if row else 0.0
-    return Worth(Shown(reading.value - zero, key, gain, (each**2 + wander**2) ** 0.5), known)
+    return Worth(Shown(reading.value - zero, key, gain, each, wander), known)

@@ -1,101 +1,103 @@
 """
-A site as a network: which node is what, which branch is which run, and its voltages at design.
+A site as a solved network: which node is what, which branch is which run, its voltages in two states.
 
-Sources, boards and circuits become one forest. What cannot be computed (an unknown length, a load
-without a figure) is left out of the sums and remembered: a voltage below it is then known only to
-be *at most* what is computed, and ``gap_of`` says why.
+What cannot be computed (an unknown length, a load without a figure) is left out of the sums and remembered: a
+voltage below it is then known only to be *at most* what is computed, and ``gap_of`` says why. In a mesh, or where a
+return is shared, what is missing may push current either way: such voltages are not a number.
 """
 
 from __future__ import annotations
 
-from collections import deque
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass, replace
 
 import numpy as np
 
+from rules.calc.collapse import Collapse
 from rules.calc.device import device_resistance_ohm
-from rules.calc.radial import Integers, Radial, Solved, solve
+from rules.calc.forest import Bools, Floats, Integers
+from rules.calc.loops import Legs
+from rules.calc.network import NO_TIES, Solved
+from rules.calc.network import Network as Shape
+from rules.calc.newton import Loads
 from rules.index import Index
 from rules.limits import Limits
-from rules.loads import Drawn, drawn
-from rules.record import Board, Circuit, Feed, Source
-from rules.runs import RunFigures
+from rules.record import Circuit, Source
+from rules.runs import Figures, SharedReturn
+from rules.wiring import wiring_of
 
-GAP_SEVERAL_FEEDS = "{} is fed from several sides, which this version does not compute"
 GAP_NOTHING_FEEDS = "nothing in the record feeds {}"
 GAP_SOURCE = "the voltage of {} is not known"
 GAP_LOWEST = "the lowest voltage of {} is not known"
-GAP_MESH = "{} closes a mesh, which this version does not compute"
 GAP_LOAD = "what {} draws is not known"
-NESTED_CONVERTERS = 12
-"""Passes over the site until the power that converters take has settled."""
+GAP_BACK = "current would flow back into {}, whose voltage under that is not known"
+STAND_IN_OHM = 1e-3
+"""Keeps the equations of a mesh solvable in place of a resistance that is not known; what they give is not used. [ohm]"""
+MOST_NESTED = 50
+"""Converters one behind the other, after which the power that they take is no longer followed."""
 
 
-@dataclass(slots=True)
-class _Draft:
-    """The forest while it grows."""
+@dataclass(frozen=True, slots=True)
+class State:
+    """Resistances and source voltages of one state of the site."""
 
-    parent: list[int] = field(default_factory=list)
-    cold: list[float] = field(default_factory=list)
-    hot: list[float] = field(default_factory=list)
-    held: list[float] = field(default_factory=list)
-    held_lowest: list[float] = field(default_factory=list)
-    gap: list[str] = field(default_factory=list)
-    gap_lowest: list[str] = field(default_factory=list)
-    loads: list[tuple[int, Drawn]] = field(default_factory=list)
-    unknown: dict[int, str] = field(default_factory=dict)
-    run: list[str] = field(default_factory=list)
-    circuit: list[str] = field(default_factory=list)
-
-    def node(
-        self, parent: int, cold: float = 0.0, hot: float = 0.0, gap: str = "", circuit: str = "", run: str = ""
-    ) -> int:
-        self.parent.append(parent)
-        self.circuit.append(circuit)
-        self.run.append(run)
-        self.cold.append(cold)
-        self.hot.append(hot)
-        self.held.append(0.0)
-        self.held_lowest.append(0.0)
-        self.gap.append(gap)
-        self.gap_lowest.append(gap)
-        return len(self.parent) - 1
-
-    def held_node(self, tag: str, working: float | None, lowest: float | None, gap: str = "") -> int:
-        node = self.node(-1)
-        self.held[node] = working if working is not None else 0.0
-        self.held_lowest[node] = lowest if lowest is not None else self.held[node]
-        self.gap[node] = gap or (GAP_SOURCE.format(tag) if working is None else "")
-        self.gap_lowest[node] = self.gap[node] or (GAP_LOWEST.format(tag) if lowest is None else "")
-        return node
+    legs: Legs
+    held_v: Floats
 
 
 class Network:
-    """The solved forest of a site; build with ``network_of``."""
+    """The solved network of a site; build with ``network_of``."""
 
-    def __init__(self, draft: _Draft, node_of: dict[tuple[str, str], int], nodes_of: dict[str, dict[str, int]]) -> None:
-        self.node_of = node_of
+    def __init__(self, index: Index, figures: Figures, limits: Limits) -> None:
+        wiring = wiring_of(index)
+        self._wiring, self._figures, self._index = wiring, figures, index
+        self.node_of = wiring.node_of
         """Node by table and id, of sources and boards."""
-        self.nodes_of = nodes_of
+        self.nodes_of = wiring.nodes_of
         """By circuit id: node by point, ``bus`` included; a circuit that nothing feeds is not in it."""
-        self.parent: Integers = np.array(draft.parent, dtype=np.int64)
-        self.cold_ohm = np.array(draft.cold)
-        self.hot_ohm = np.array(draft.hot)
-        self.held_v = np.array(draft.held)
-        self.held_lowest_v = np.array(draft.held_lowest)
-        self.gap = draft.gap
-        self.gap_lowest = draft.gap_lowest
-        self.unknown_load = draft.unknown
-        self.run_at = draft.run
+        self.run_at = wiring.run
         """Id of the run that arrives at each node; empty for a device and for a held node."""
-        self.circuit_at = draft.circuit
+        self.circuit_at = wiring.circuit
         """Id of the circuit whose branch arrives at each node."""
+        self.parent: Integers = np.array(wiring.parent, dtype=np.int64)
+        self.return_at = self._returns()
+        """The shared return of the run that arrives at each node, by node; most have none."""
+        self._row = np.array([figures.row[run] if run else -1 for run in wiring.run], dtype=np.int64)
+        self._device_out, self._device_back = self._devices(limits)
+        is_device = (self.parent >= 0) & (self._row < 0)
+        ties = np.array(wiring.ties, dtype=np.int64).reshape(-1, 2) if wiring.ties else NO_TIES
+        shared = [np.array(nodes, dtype=np.int64) for nodes in wiring.shared.values()]
+        self._shape = Shape(self.parent, is_device & (self._device_back == 0), ties, shared)
+        self.coupled: Bools = self._shape.coupled
+        """Branches whose current is not that of the loads beyond alone: in a mesh, or with a shared return."""
+        self.node_at_run_end = {run: node for node, run in enumerate(wiring.run) if run}
+        """Node to which each run leads, by run id; of a run that closes a mesh, one of its own."""
+        self.meshed = frozenset(
+            wiring.run[node]
+            for part in self._shape.parts
+            if part.loops is not None
+            for node in part.nodes[part.loops.meshed].tolist()
+            if wiring.run[node]
+        )
+        """Ids of the runs that are part of a mesh."""
+        self._held()
+        self.gap, self.gap_lowest = self._gaps(lowest=False), self._gaps(lowest=True)
+        self.unknown_load = wiring.unknown
+        """By node: a load there whose figure is not known."""
+        self._unknown_converters()
         self._below = self._unknown_below()
-        self.design: Solved
+        self._load = self._loads()
+        cold, hot = (
+            self._state(figures.legs.out, figures.legs.back, 0),
+            self._state(figures.legs.out_hot, figures.legs.back_hot, 1),
+        )
+        self.cold_ohm = cold.legs.out + cold.legs.back
+        """Both own legs of the branch to each node at the recorded temperature; of a device, its resistance. [ohm]"""
+        self.design: Solved = self._solve(cold, self.gap)
         """The source at ``working``, the recorded temperature, healthy joints."""
-        self.lowest: Solved
+        self.lowest: Solved = self._solve(hot, self.gap_lowest)
         """The same record with the source at ``lowest`` and hot conductors."""
+        self._hot_ohm = hot.legs.out + hot.legs.back
 
     def way_up(self, node: int, until: int = -1) -> Iterator[int]:
         """Branches from a node towards its source, as far as the node ``until`` (itself left out)."""
@@ -118,107 +120,245 @@ class Network:
         current = float(self.design.current_a[node])
         return None if node in self._below or np.isnan(current) else current
 
+    def collapse_of(self, node: int, lowest: bool = False) -> Collapse | None:
+        """Where supply fails that a lost node hangs on; ``None`` of a node that is supplied."""
+        solved = self.lowest if lowest else self.design
+        while solved.collapsed[node]:
+            found = next((one for one in solved.collapses if node in one.nodes), None)
+            if found is not None:
+                return found
+            root = list(self.way_up(node))[-1]
+            node = next(
+                self._wiring.takes[source.id] for source in self.sources_at(root) if source.id in self._wiring.takes
+            )
+        return None
+
+    def pieces_ohm(self, branch: int) -> tuple[list[tuple[str, float]], list[tuple[str, float]]]:
+        """What the outgoing and the return leg of a branch are made of, at the recorded temperature. [ohm]"""
+        row, legs = int(self._row[branch]), self._figures.legs
+        if row < 0:
+            return [("device", float(self._device_out[branch]))], [("device", float(self._device_back[branch]))]
+        out = [("conductors", float(legs.out[row])), ("joints", float(legs.out_joints[row]))]
+        return out, [("conductors", float(legs.back[row])), ("joints", float(legs.back_joints[row]))]
+
+    def path_ohm(self, node: int, lowest: bool = False) -> float:
+        """Both legs from the source's terminals along the tree, shared returns included. [ohm]"""
+        own = self._hot_ohm if lowest else self.cold_ohm
+        ohm = 0.0
+        for branch in self.way_up(node):
+            if self.parent[branch] >= 0:
+                ohm += float(own[branch])
+            if branch in self.return_at:
+                figures = self.return_at[branch].figures
+                ohm += figures.loop_hot_ohm if lowest else figures.loop_ohm
+        return ohm
+
+    def place_of(self, node: int) -> str:
+        """What leads to a node, for people: ``run 2 of B1-07``."""
+        circuit = self._index.circuits[self.circuit_at[node]]
+        if self._row[node] >= 0:
+            return f"{self._figures.runs[int(self._row[node])].name} of {circuit.tag}"
+        return f"the {'way' if circuit.device == 'none' else 'device'} of {circuit.tag}"
+
+    def sources_at(self, held: int) -> tuple[Source, ...]:
+        """The sources that hold a node without a parent."""
+        return self._wiring.sources.get(held, ())
+
+    def worst(self, extra_ohm: Floats, offset_v: Floats, conductor_factor: Floats) -> Solved:
+        """
+        The lowest state with what readings support.
+
+        Parameters
+        ----------
+        extra_ohm : array (runs,)
+            Extra resistance in each run of the record, in the order of its rows; in the outgoing leg. [ohm]
+        offset_v : array (circuits,)
+            Voltage lost in a semiconductor at the start of each circuit, whatever the current. [V]
+        conductor_factor : array (runs,)
+            What each run's own conductors have over the recorded ones, joints left out; a shared return stays as recorded.
+
+        Returns
+        -------
+        Solved
+            The source at ``lowest``, hot conductors.
+
+        Notes
+        -----
+        Where the factor or the extra resistance is uniform within a run and the run is no part of a mesh, it does not matter
+        in which leg it lies.
+        """
+        legs, of_run = self._figures.legs, self._row >= 0
+        state = self._state(legs.out_hot * conductor_factor, legs.back_hot * conductor_factor, 1)
+        out = state.legs.out.copy()
+        out[of_run] += extra_ohm[self._row[of_run]]
+        emf = np.zeros(len(out))
+        for row, circuit in enumerate(self._index.site.circuits):
+            if circuit.id in self.nodes_of:
+                emf[self.nodes_of[circuit.id]["way"]] = -offset_v[row]
+        return self._solve(State(replace(state.legs, out=out), state.held_v), list(self.gap_lowest), emf)
+
+    def _returns(self) -> dict[int, SharedReturn]:
+        returns = self._figures.returns
+        return {node: returns[name] for name, nodes in self._wiring.shared.items() for node in nodes}
+
+    def _devices(self, limits: Limits) -> tuple[Floats, Floats]:
+        """Of the branch to each ``way``: in the leg that has the device, and in the other where both are switched."""
+        out, back = np.zeros(len(self.parent)), np.zeros(len(self.parent))
+        for circuit_id, points in self.nodes_of.items():
+            circuit = self._index.circuits[circuit_id]
+            ohm = device_ohm(circuit, limits) or 0.0
+            both = circuit.device_leg == "both" and (circuit.device_poles or 1) > 1
+            out[points["way"]], back[points["way"]] = (ohm / 2, ohm / 2) if both else (ohm, 0.0)
+        return out, back
+
+    def _held(self) -> None:
+        size = len(self.parent)
+        self.held_v, self.held_lowest_v = np.full(size, np.nan), np.full(size, np.nan)
+        for node, sources in self._wiring.sources.items():
+            working, lowest = working_v(sources), lowest_v(sources)
+            self.held_v[node] = np.nan if working is None else working
+            self.held_lowest_v[node] = self.held_v[node] if lowest is None else lowest
+
+    def _gaps(self, lowest: bool) -> list[str]:
+        """Why each branch, or each held node's voltage, is not known; in a mesh the whole mesh shares it."""
+        gaps = [""] * len(self.parent)
+        for node, row in enumerate(self._row.tolist()):
+            if row >= 0:
+                gaps[node] = self._figures.gaps[row]
+        for node, shared in self.return_at.items():
+            gaps[node] = gaps[node] or shared.figures.gap
+        for node, sources in self._wiring.sources.items():
+            names = " + ".join(source.tag for source in sources)
+            if working_v(sources) is None:
+                gaps[node] = GAP_SOURCE.format(names)
+            elif lowest and lowest_v(sources) is None:
+                gaps[node] = GAP_LOWEST.format(names)
+        for branches, held in self._meshes():
+            gap = next((gaps[node] for node in (*branches, *held) if gaps[node]), "")
+            for branch in branches if gap else ():
+                gaps[branch] = gaps[branch] or gap
+        return gaps
+
+    def _meshes(self) -> Iterator[tuple[list[int], list[int]]]:
+        """The branches of each set that ties and shared returns hold together, and its held nodes if they are several."""
+        for part in self._shape.parts:
+            if part.loops is not None:
+                roots = part.nodes[part.forest.is_root].tolist()
+                yield part.nodes[part.loops.coupled].tolist(), roots if len(roots) > 1 else []
+
+    def _unknown_converters(self) -> None:
+        """A converter draws what is not known where its efficiency, or a load behind it, is not."""
+        takes = self._wiring.takes
+        for _ in range(len(takes)):
+            behind = {list(self.way_up(node))[-1]: name for node, name in self.unknown_load.items()}
+            for source in self._index.site.sources:
+                if source.id not in takes or takes[source.id] in self.unknown_load:
+                    continue
+                held = [node for node in behind if source.id in {one.id for one in self.sources_at(node)}]
+                if source.efficiency_percent is None or source.working_or_nominal_v is None or held:
+                    self.unknown_load[takes[source.id]] = source.tag
+                    break
+            else:
+                return
+
     def _unknown_below(self) -> dict[int, str]:
-        """By branch: one load beneath it whose figure is not known."""
+        """By branch: one load beneath it whose figure is not known; in a mesh, beneath any of its branches."""
         below: dict[int, str] = {}
         for node, name in self.unknown_load.items():
             for branch in self.way_up(node):
                 if branch in below:
                     break
                 below[branch] = name
+        for branches, _ in self._meshes():
+            name = next((below[branch] for branch in branches if branch in below), "")
+            for branch in branches if name else ():
+                below.setdefault(branch, name)
         return below
 
+    def _loads(self) -> Loads:
+        size = len(self.parent)
+        loads = Loads(np.zeros(size), np.zeros(size), np.zeros(size))
+        for node, draws in self._wiring.loads:
+            loads.current_a[node] += draws.current_a
+            loads.power_w[node] += draws.power_w
+            loads.conductance_s[node] += draws.conductance_s
+        return loads
 
-def network_of(index: Index, figures: dict[str, RunFigures], limits: Limits) -> Network:
-    """Build a site's forest and solve it at design and at the lowest source voltage."""
-    draft = _Draft()
-    node_of: dict[tuple[str, str], int] = {}
-    nodes_of: dict[str, dict[str, int]] = {}
-    queue: deque[tuple[int, Board | Source]] = deque()
-    for source in index.site.sources:
-        node = draft.held_node(source.tag, source.working_or_nominal_v, source.lowest_voltage_v)
-        node_of["sources", source.id] = node
-        queue.append((node, source))
-    for board in index.site.boards:
-        if len(board.fed_by) > 1 or (board.fed_by and board.fed_by[0].table == "sources"):
-            node_of["boards", board.id] = node = _board_node(draft, board, index)
-            queue.append((node, board))
-    while queue:
-        node, feeder = queue.popleft()
-        for circuit in index.circuits_of(feeder.id):
-            if circuit.id in nodes_of:
+    def _state(self, out_conductor: Floats, back_conductor: Floats, hot: int) -> State:
+        legs, has = self._figures.legs, self._row >= 0
+        rows = self._row[has]
+        out, back = self._device_out.copy(), self._device_back.copy()
+        out[has] = out_conductor[rows] + legs.out_joints[rows]
+        back[has] = back_conductor[rows] + legs.back_joints[rows]
+        returns = [self._figures.returns[name].figures for name in self._wiring.shared]
+        shared = np.array([one.loop_hot_ohm if hot else one.loop_ohm for one in returns])
+        shared[[bool(one.gap) for one in returns]] = STAND_IN_OHM
+        open_ = self.coupled & np.array([bool(gap) for gap in self.gap], dtype=bool)
+        out[open_] += STAND_IN_OHM
+        back[open_] += STAND_IN_OHM
+        none = np.zeros(len(self._wiring.ties))
+        return State(self._shape.legs(out, back, none, none, shared), self.held_lowest_v if hot else self.held_v)
+
+    def _solve(self, state: State, gaps: list[str], emf_v: Floats | None = None) -> Solved:
+        """One state; converters take the power of what they feed, over their efficiency."""
+        size, takes = len(self.parent), self._wiring.takes
+        given_by = {
+            node: giving
+            for node, sources in self._wiring.sources.items()
+            if (giving := _giving(sources, state.held_v[node])) is not None and giving.id in takes
+        }
+        taken = np.zeros(size)
+        for _ in range(MOST_NESTED):
+            solved = self._shape.solve(
+                state.legs, replace(self._load, power_w=self._load.power_w + taken), state.held_v, emf_v
+            )
+            fresh = np.zeros(size)
+            for node, source in given_by.items():
+                watts = max(0.0, float(np.nan_to_num(state.held_v[node] * solved.current_a[node])))
+                fresh[takes[source.id]] += watts / ((source.efficiency_percent or 100.0) / 100)
+            if np.allclose(fresh, taken, rtol=1e-12, atol=1e-12):
+                break
+            taken = fresh
+        return self._without_what_is_open(self._dead_converters(solved, given_by), gaps)
+
+    def _dead_converters(self, solved: Solved, given_by: dict[int, Source]) -> Solved:
+        """What hangs on a converter that cannot be supplied is lost with it."""
+        root = self._shape.forest.climb(self._shape.forest.is_root)
+        lost = solved.collapsed.copy()
+        for _ in given_by:
+            dead = [node for node, source in given_by.items() if lost[self._wiring.takes[source.id]] and not lost[node]]
+            if not dead:
+                break
+            lost |= np.isin(root, dead)
+        if lost.sum() == solved.collapsed.sum():
+            return solved
+        volts, out, back = (np.where(lost, np.nan, x) for x in (solved.voltage_v, solved.current_a, solved.back_a))
+        return replace(solved, voltage_v=volts, current_a=out, back_a=back, collapsed=lost)
+
+    def _without_what_is_open(self, solved: Solved, gaps: list[str]) -> Solved:
+        """No figure of a mesh in which something is not known, or which drives a source backwards."""
+        open_ = np.zeros(len(self.parent), dtype=bool)
+        for part in self._shape.parts:
+            if part.loops is None:
                 continue
-            nodes_of[circuit.id] = points = _add_circuit(draft, node, circuit, index, figures, limits)
-            for fed in index.fed_by_circuit(circuit.id):
-                if isinstance(fed, Board) and len(fed.fed_by) == 1 and ("boards", fed.id) not in node_of:
-                    node_of["boards", fed.id] = below = points.get(_point(fed.fed_by[0], index), points["way"])
-                    queue.append((below, fed))
-    network = Network(draft, node_of, nodes_of)
-    _solve(network, draft, index)
-    return network
+            branches = part.nodes[part.loops.coupled]
+            roots = part.nodes[part.forest.is_root]
+            into = roots[solved.current_a[roots] < -1e-9] if len(roots) > 1 else roots[:0]
+            if len(into):
+                names = " + ".join(source.tag for source in self.sources_at(int(into[0])))
+                for branch in branches.tolist():
+                    gaps[branch] = gaps[branch] or GAP_BACK.format(names)
+            if any(gaps[branch] for branch in branches.tolist()):
+                open_[part.nodes[part.loops.behind]] = True
+        if not open_.any():
+            return solved
+        volts, out, back = (np.where(open_, np.nan, x) for x in (solved.voltage_v, solved.current_a, solved.back_a))
+        return replace(solved, voltage_v=volts, current_a=out, back_a=back)
 
 
-def nominal_v(circuit: Circuit, index: Index) -> float | None:
-    """A circuit's nominal voltage: its own, its board's, that of what feeds the board, else the site's. [V]"""
-    seen: set[str] = set()
-    here: Circuit | Board | Source | None = circuit
-    while here is not None and here.id not in seen:
-        seen.add(here.id)
-        if here.nominal_voltage_v is not None:
-            return here.nominal_voltage_v
-        here = _above(here, index)
-    return index.site.nominal_voltage_v
-
-
-def _above(row: Circuit | Board | Source, index: Index) -> Circuit | Board | Source | None:
-    feeds = row.fed_by if isinstance(row, Board) else (row.fed_from,)
-    feed = feeds[0] if feeds else None
-    if feed is None:
-        return None
-    return index.sources.get(feed.id) or index.boards.get(feed.id) or index.circuits.get(feed.id)
-
-
-def _point(feed: Feed, index: Index) -> str:
-    return feed.point or index.last_point(feed.id)
-
-
-def _board_node(draft: _Draft, board: Board, index: Index) -> int:
-    """A busbar held by its sources: working of the highest, lowest of the battery."""
-    sources = [index.sources[feed.id] for feed in board.fed_by if feed.id in index.sources]
-    if len(sources) < len(board.fed_by):
-        return draft.held_node(board.tag, None, None, GAP_SEVERAL_FEEDS.format(board.tag))
-    working = [volts for source in sources if (volts := source.working_or_nominal_v) is not None]
-    batteries = [source for source in sources if source.kind == "battery"] or sources
-    lowest = [source.lowest_voltage_v for source in batteries if source.lowest_voltage_v is not None]
-    names = " + ".join(source.tag for source in sources)
-    return draft.held_node(names, max(working, default=None), min(lowest, default=None))
-
-
-def _add_circuit(
-    draft: _Draft, bus: int, circuit: Circuit, index: Index, figures: dict[str, RunFigures], limits: Limits
-) -> dict[str, int]:
-    device = device_ohm(circuit, limits) or 0.0
-    points = {"bus": bus, "way": draft.node(bus, device, device, circuit=circuit.id)}
-    for run in index.runs_of(circuit.id):
-        start = points.get(run.from_point)
-        end = index.end_of(run)
-        if start is None or end in points or run.to_board_id:
-            # a mesh leaves every voltage of the circuit open: the current may go either way
-            draft.gap[points["way"]] = draft.gap_lowest[points["way"]] = GAP_MESH.format(run.name)
-            continue
-        known = figures[run.id]
-        points[end] = draft.node(start, known.loop_ohm, known.loop_hot_ohm, known.gap, circuit.id, run.id)
-    nominal = nominal_v(circuit, index)
-    for load in index.loads_of(circuit.id):
-        node = points.get(load.point)
-        if node is None:
-            continue
-        draws = drawn(load, nominal)
-        if draws is None:
-            draft.unknown[node] = f"{load.tag} on {circuit.tag}"
-        else:
-            draft.loads.append((node, draws))
-    return points
+def network_of(index: Index, figures: Figures, limits: Limits) -> Network:
+    """Build a site's network and solve it at design and at the lowest source voltage."""
+    return Network(index, figures, limits)
 
 
 def device_ohm(circuit: Circuit, limits: Limits) -> float | None:
@@ -230,42 +370,20 @@ def device_ohm(circuit: Circuit, limits: Limits) -> float | None:
     )
 
 
-def _solve(network: Network, draft: _Draft, index: Index) -> None:
-    """Both states; converters take the power of what they feed, over their efficiency."""
-    size = len(network.parent)
-    current, power, conductance = np.zeros(size), np.zeros(size), np.zeros(size)
-    for node, draws in draft.loads:
-        current[node] += draws.current_a
-        power[node] += draws.power_w
-        conductance[node] += draws.conductance_s
-    converters = [(source, _taken_at(source, index, network)) for source in index.site.sources]
-    states = []
-    for resistance, held in ((network.cold_ohm, network.held_v), (network.hot_ohm, network.held_lowest_v)):
-        # a converter holds its own output: it does not follow the battery down
-        held = held.copy()
-        for source, taken_at in converters:
-            if taken_at is not None:
-                out = network.node_of["sources", source.id]
-                held[out] = network.held_v[out]
-        from_converters = np.zeros(size)
-        for _ in range(NESTED_CONVERTERS):
-            solved = solve(Radial(network.parent, current, power + from_converters, conductance), resistance, held)
-            fresh = np.zeros(size)
-            for source, taken_at in converters:
-                if taken_at is None:
-                    continue
-                out = network.node_of["sources", source.id]
-                given = held[out] * np.nan_to_num(solved.current_a[out])
-                fresh[taken_at] += given / ((source.efficiency_percent or 100.0) / 100)
-            if np.allclose(fresh, from_converters, rtol=1e-12, atol=1e-12):
-                break
-            from_converters = fresh
-        states.append(solved)
-    network.design, network.lowest = states
+def working_v(sources: tuple[Source, ...]) -> float | None:
+    """The voltage of sources in parallel: that of the highest. [V]"""
+    return max((volts for source in sources if (volts := source.working_or_nominal_v) is not None), default=None)
 
 
-def _taken_at(source: Source, index: Index, network: Network) -> int | None:
-    """The node at which a converter takes its power."""
-    if source.fed_from is None or source.fed_from.id not in network.nodes_of:
-        return None
-    return network.nodes_of[source.fed_from.id].get(_point(source.fed_from, index))
+def lowest_v(sources: tuple[Source, ...]) -> float | None:
+    """The lowest voltage of sources in parallel: the battery's where there is one, else the lowest of all. [V]"""
+    batteries = [source for source in sources if source.kind == "battery"] or sources
+    return min((source.lowest_voltage_v for source in batteries if source.lowest_voltage_v is not None), default=None)
+
+
+def _giving(sources: tuple[Source, ...], held_v: float) -> Source | None:
+    """Which of several sources in parallel gives the current: the one whose voltage the busbar has."""
+    for source in sources:
+        if held_v in (source.working_or_nominal_v, source.lowest_voltage_v):
+            return source
+    return sources[0] if sources else None

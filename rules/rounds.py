@@ -11,17 +11,19 @@ import math
 import re
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from statistics import mean, stdev
 
 from rules.assessment import Drop
-from rules.calc.doubt import Weighted, total
+from rules.calc.doubt import Shown, Weighted, total
+from rules.diagnosis.budget import Carried, Current, difference
 from rules.errors import MissingData
 from rules.index import Index
 from rules.limits import Limits
 from rules.meters import worth
 from rules.record import Circuit, Figure, Reading, Run
-from rules.runs import Carrying, RunFigures, record_variance
+from rules.routes import Hop, Shared, along, together, tree_path, ways
+from rules.runs import RunFigures
 
 RUN_PLACE = re.compile(r"run (\d+)( start| end)?$")
 
@@ -33,7 +35,7 @@ class Tree:
     circuit: Circuit
     runs: tuple[Run, ...]
     ends: Mapping[str, Run]
-    """The run that arrives at each point; ``way`` and ``bus`` have none."""
+    """The run that arrives at each point, from ``rules.routes.first_ends``; ``way`` and ``bus`` have none."""
     figures: Mapping[str, RunFigures]
     """By run id, at the temperature of the visit."""
     device_ohm: float | None
@@ -42,6 +44,11 @@ class Tree:
     """In the branch that arrives at each point (``way``: through the device); ``None`` where not known."""
     taps: frozenset[str]
     """Points at which current leaves: loads, boards, converters and forks."""
+
+    shared: Mapping[str, Shared] = field(default_factory=dict)
+    """The return that a run shares with other circuits, by run id."""
+    meshed: frozenset[str] = frozenset()
+    """Ids of the runs that are part of a mesh."""
 
     def path(self, start: str, end: str) -> list[str]:
         """
@@ -52,17 +59,7 @@ class Tree:
         MissingData
             If ``end`` does not lie behind ``start``.
         """
-        points: list[str] = []
-        here = end
-        while here != start:
-            points.append(here)
-            if here == "way" and start == "bus":
-                break
-            run = self.ends.get(here)
-            if run is None or len(points) > len(self.ends) + 2:
-                raise MissingData(f"no way leads from {start} to {end}")
-            here = run.from_point
-        return points[::-1]
+        return [hop.branch for hop in tree_path(start, end, self.ends)]
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,6 +77,8 @@ class Round:
     poor: tuple[str, ...]
     """What was read with an instrument that is not recorded."""
     wander_v: float
+    shown: Mapping[str, Shown]
+    """What each reading is worth, by its id; temperatures and residual currents left out."""
 
 
 def visit_of(circuit_id: str, index: Index, ranks: Mapping[str, tuple[float, str, int]]) -> str | None:
@@ -133,21 +132,22 @@ def _round(name: str, readings: list[Reading], tree: Tree, index: Index, limits:
             amps[point].append(reading)
     wander = _wander(pairs.values(), limits)
     poor: list[str] = []
-
-    def average(rows: list[Reading], sign: float = 1.0, wander_v: float = 0.0) -> tuple[Weighted, ...]:
-        weighed = []
-        for row in rows:
-            value = worth(row, index, limits, wander_v)
+    shown: dict[str, Shown] = {}
+    for row in readings:
+        if row.quantity not in ("temperature", "residual"):
+            value = worth(row, index, limits, wander if row.quantity == "voltage" else 0.0)
+            shown[row.id] = value.shown
             if not value.known:
                 poor.append(f"{row.quantity} at {row.at}")
-            weighed.append(Weighted(sign / len(rows), value.shown))
-        return tuple(weighed)
 
-    volts = {point: average(rows, wander_v=wander) for point, rows in pairs.items()}
+    def average(rows: list[Reading], sign: float = 1.0) -> tuple[Weighted, ...]:
+        return tuple(Weighted(sign / len(rows), shown[row.id]) for row in rows)
+
+    volts = {point: average(rows) for point, rows in pairs.items()}
     for point in dict.fromkeys(point for point, _ in poles):
         both = poles.get((point, "positive")), poles.get((point, "negative"))
         if point not in volts and both[0] and both[1]:
-            volts[point] = average(both[0], wander_v=wander) + average(both[1], -1.0, wander)
+            volts[point] = average(both[0]) + average(both[1], -1.0)
     direct: dict[tuple[str, str], tuple[Weighted, ...]] = {}
     for start, end in dict.fromkeys((start, end) for start, end, _ in drops):
         legs = [drops.get((start, end, leg)) for leg in ("both", "positive", "negative")]
@@ -156,7 +156,7 @@ def _round(name: str, readings: list[Reading], tree: Tree, index: Index, limits:
         elif legs[1] and legs[2]:
             direct[start, end] = average(legs[1]) + average(legs[2])
     clamped = {point: average(rows) for point, rows in amps.items()}
-    return Round(name, tuple(readings), volts, clamped, direct, tuple(dict.fromkeys(poor)), wander)
+    return Round(name, tuple(readings), volts, clamped, direct, tuple(dict.fromkeys(poor)), wander, shown)
 
 
 def _branch(at: str, tree: Tree) -> str:
@@ -175,19 +175,6 @@ def _wander(pairs: Iterable[list[Reading]], limits: Limits) -> float:
         return limits["source.wander_v"]
     freedom = sum(len(rows) - 1 for rows in repeated)
     return math.sqrt(sum(stdev(row.value for row in rows) ** 2 * (len(rows) - 1) for rows in repeated) / freedom)
-
-
-@dataclass(frozen=True, slots=True)
-class Current:
-    """The current in one branch of a round: readings with weights, and what a share of loads adds."""
-
-    terms: tuple[Weighted, ...]
-    share_u: float = 0.0
-    """Standard uncertainty of what taps draw between the branch that was read and this one. [A]"""
-
-    @property
-    def value_a(self) -> float:
-        return sum(term.weight * term.shown.value for term in self.terms)
 
 
 def current_at(point: str, this: Round, tree: Tree, limits: Limits) -> Current:
@@ -210,10 +197,11 @@ def current_at(point: str, this: Round, tree: Tree, limits: Limits) -> Current:
         if not behind:
             raise MissingData(f"round {this.name} has no current on the way to {point} or behind it")
         near = min(behind, key=lambda p: len(_line_up(p, tree)))
-    ratio = _share(point, near, tree)
+    ratio, taps = _share(point, near, tree)
     terms = tuple(Weighted(term.weight * ratio, term.shown) for term in this.amps[near])
-    between = abs(1 - ratio) * abs(sum(term.weight * term.shown.value for term in this.amps[near]))
-    return Current(terms, limits["load_share.relative"] * between)
+    read_a = abs(sum(term.weight * term.shown.value for term in this.amps[near]))
+    relative = limits["load_share.relative"]
+    return Current(terms, tuple((tap, relative * share * read_a) for tap, share in taps.items()))
 
 
 def _line_up(point: str, tree: Tree) -> list[str]:
@@ -224,15 +212,35 @@ def _line_up(point: str, tree: Tree) -> list[str]:
     return line
 
 
-def _share(point: str, near: str, tree: Tree) -> float:
-    line = _line_up(near, tree) if point in _line_up(near, tree) else _line_up(point, tree)
-    low, high = sorted((line.index(point), line.index(near)))
-    if not any(p in tree.taps for p in line[low + 1 : high + 1]):
-        return 1.0
+def _share(point: str, near: str, tree: Tree) -> tuple[float, dict[str, float]]:
+    """
+    The current to a point over that to another on the same line, and what each tap between them adds to it.
+
+    Signed: what a tap draws between a reading and a point behind it makes the current there less. A tap is named
+    with the way on, since of two ways from one fork the one draws more where the other draws less.
+    """
+    before = near in _line_up(point, tree)
+    line = _line_up(point if before else near, tree)
+    far, close = (near, point) if before else (point, near)
+    between = line[line.index(close) + 1 : line.index(far) + 1]
+    if not any(p in tree.taps for p in between):
+        return 1.0, {}
+    for end in (point, near):
+        if (run := tree.ends.get(end)) is not None and run.id in tree.meshed:
+            raise MissingData(f"{run.name} is part of a mesh, where no share of the loads says what a run carries")
     wanted, known = tree.design_current_a.get(point), tree.design_current_a.get(near)
     if wanted is None or not known:
         raise MissingData(f"the current to {point} was not read, and its share of the loads is not known")
-    return wanted / known
+    sign = -1.0 if before else 1.0
+    taps: dict[str, float] = {}
+    on, behind = close, tree.design_current_a.get(close)
+    for tap in between:
+        arriving = tree.design_current_a.get(tap)
+        if arriving is None or behind is None:  # what one tap draws is not known, but what all of them draw is
+            return wanted / known, {f"{far} to {close}": sign * abs(wanted - known) / known}
+        taps[f"{tap} beside {on}"] = sign * (arriving - behind) / known
+        on, behind = tap, arriving
+    return wanted / known, {tap: share for tap, share in taps.items() if share}
 
 
 def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
@@ -249,19 +257,19 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     """
     if not tree.runs:
         raise MissingData("no run is recorded")
-    first = tree.runs[0].to_point
+    first = next(iter(tree.ends))
     able: list[tuple[float, Round]] = []
     reason = MissingData("no voltages were read at two points")
     for this in rounds:
         try:
-            able.append((abs(current_at(first, this, tree, limits).value_a), this))
+            able.append((_loading_a(first, this, tree, limits), this))
         except MissingData as error:
             reason = error
     if not able:
         raise reason
     this = max(able, key=lambda pair: pair[0])[1]
     points = set(this.volts) | {point for pair in this.direct for point in pair}
-    order = ["bus", "way", *(run.to_point for run in tree.runs)]
+    order = ["bus", "way", *tree.ends]
     read = [point for point in order if point in points]
     if tree.device_ohm is None and len(read) > 1 and read[0] == "bus":
         read = read[1:]  # the device is not recorded: what it loses is not the wiring's
@@ -280,51 +288,63 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     return max(reached, key=lambda drop: drop.computed.value)
 
 
+def _loading_a(first: str, this: Round, tree: Tree, limits: Limits) -> float:
+    """By which the rounds of a circuit are ranked: the current at its first run, in a ring else the largest read. [A]"""
+    try:
+        return abs(current_at(first, this, tree, limits).value_a)
+    except MissingData:
+        if not this.amps or not any(run.id in tree.meshed for run in tree.runs):
+            raise
+        return max(abs(Current(terms).value_a) for terms in this.amps.values())
+
+
 def compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
     """
     Measured against computed drop between two points of a round; ``MissingData`` says what is missing for it.
     """
-    path = tree.path(start, end)
-    measured, by = _measured(start, path, this)
-    carrying: list[Carrying] = []
-    terms: list[Weighted] = []
-    own_variance = share_v = value = 0.0
-    for point in path:
-        current = current_at(point, this, tree, limits)
-        if point == "way":
-            ohm = tree.device_ohm or 0.0
-            own_variance += (limits["device_doubt.relative"] * ohm * current.value_a) ** 2
-        else:
-            run = tree.figures[tree.ends[point].id]
-            if run.gap:
-                raise MissingData(run.gap)
-            ohm = run.loop_ohm
-            carrying.append(Carrying(run, current.value_a))
-        value += ohm * current.value_a
-        share_v += ohm * current.share_u
-        terms += [Weighted(ohm * term.weight, term.shown) for term in current.terms]
-    # what taps draw is one doubt for the whole path: it errs alike in every run behind it
-    own_variance += record_variance(carrying, limits) + share_v**2
-    measured_v, measured_u = total(measured)
-    _, current_u = total(terms)
-    against = [*measured, *(Weighted(-term.weight, term.shown) for term in terms)]
-    _, readings_u = total(against)
-    first, first_u = total(current_at(path[0], this, tree, limits).terms)
+    reason: MissingData | None = None
+    for way in ways(start, end, tree.ends, tree.meshed, frozenset(this.amps)):
+        try:
+            return _on_way(way, start, end, this, tree, limits)
+        except MissingData as error:
+            reason = reason or error
+    raise reason or MissingData(f"no way leads from {start} to {end}")
+
+
+def _on_way(way: Sequence[Hop], start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
+    measured, by = _measured(start, end, [hop.branch for hop in way], this)
+    carried: list[Carried] = []
+    for hop in way:
+        current = along(current_at(hop.branch, this, tree, limits), hop.sign)
+        if hop.branch == "way":
+            carried.append(Carried(tree.device_ohm or 0.0, current, None))
+            continue
+        run = tree.ends[hop.branch]
+        stretches = [(tree.figures[run.id], current)]
+        if (shared := tree.shared.get(run.id)) is not None:
+            others = [along(other, hop.sign) for other in shared.others(this.name)]
+            stretches.append((shared.figures, together([current, *others])))
+        for figures, amps in stretches:
+            if figures.gap:
+                raise MissingData(figures.gap)
+            carried.append(Carried(figures.loop_ohm, amps, figures))
+    found = difference(measured, carried, limits)
+    first, first_u = total(along(current_at(way[0].branch, this, tree, limits), way[0].sign).terms)
     return Drop(
         round=this.name,
         start=start,
         end=end,
-        measured=Figure(measured_v, "V", measured_u),
-        computed=Figure(value, "V", math.sqrt(current_u**2 + own_variance)),
-        excess=Figure(measured_v - value, "V", math.sqrt(readings_u**2 + own_variance)),
+        measured=found.measured,
+        computed=found.computed,
+        excess=found.excess,
         current=Figure(first, "A", first_u),
         by=by,
+        budget=found.budget,
     )
 
 
-def _measured(start: str, path: list[str], this: Round) -> tuple[list[Weighted], str]:
+def _measured(start: str, end: str, path: list[str], this: Round) -> tuple[list[Weighted], str]:
     """The drop over a path as a sum of readings: by direct drops where they cover it, else by two voltages."""
-    end = path[-1]
     order = {point: n for n, point in enumerate([start, *path])}
     hops = {pair: terms for pair, terms in this.direct.items() if pair[0] in order and pair[1] in order}
     here, chain = start, list[Weighted]()

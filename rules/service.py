@@ -18,11 +18,12 @@ def service_of(case: CircuitCase) -> tuple[RunService, ...]:
     It serves the eye: ``design`` and the diagnosis keep the recorded temperature, and no rule judges by it. The
     temperature is as doubtful as one that is assumed.
     """
-    return tuple(_of_run(case, run) for run in case.runs)
+    branches = {run.id: branch for branch, run in case.tree.ends.items()}
+    return tuple(_of_run(case, run, branches.get(run.id, "")) for run in case.runs)
 
 
-def _of_run(case: CircuitCase, run: Run) -> RunService:
-    amperes = case.tree.design_current_a.get(case.context.index.end_of(run))
+def _of_run(case: CircuitCase, run: Run, branch: str) -> RunService:
+    amperes = case.tree.design_current_a.get(branch)
     current = None if amperes is None else Figure(amperes, "A")
     try:
         capacity = capacity_of(run, case.context.site, case.limits, case.circuit.rated_current_a)

@@ -46,7 +46,7 @@ SAMPLE_SITES = (
         "plant",
         "plant_48v",
         "48 V plant",
-        "A 48 V exchange with battery and rectifier, feeders to four boards, equipment shelves, lighting and heaters.",
+        "A 48 V exchange with battery and rectifier, feeders to four boards, shelves, a ring of lights, heaters, a 24 V converter.",
     ),
     SampleSite(
         "doors",

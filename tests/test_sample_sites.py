@@ -13,7 +13,9 @@ import pytest
 
 from audit.intake.folder import read_folder
 from audit.opening import judge_site
-from rules.assessment import Assessment
+from rules import limits
+from rules.assess import prepare
+from rules.assessment import Assessment, Status
 from rules.consistency import problems
 from rules.index import Index
 from rules.meters import instrument_row
@@ -55,8 +57,32 @@ def test_every_seeded_fault_is_found_and_nothing_else(sample: SampleSite) -> Non
 
 @every_site
 def test_site_is_large_enough_to_show_the_program(sample: SampleSite) -> None:
-    assert 18 <= len(record_of(sample).circuits) <= 24
+    assert 18 <= len(record_of(sample).circuits) <= 32
     assert len(assessment_of(sample).findings) >= 6
+
+
+@every_site
+def test_every_complete_circuit_has_its_voltages(sample: SampleSite) -> None:
+    """At every point of every run, at design and in the worst case."""
+    for result in assessment_of(sample).circuits:
+        if result.status is Status.INCOMPLETE:
+            continue
+        points = {point.point: point for point in result.points}
+        record = record_of(sample)
+        ends = {run.to_point for run in record.runs if run.circuit_id == result.circuit_id}
+        assert {"way", *ends} <= set(points)
+        assert all(point.design is not None and point.worst is not None for point in points.values())
+
+
+def test_the_plant_shows_a_mesh_sources_in_parallel_a_converter_and_a_shared_return() -> None:
+    record = record_of(sample_site("plant"))
+    network = prepare(record, limits.of(record)).network
+    assert {network.place_of(network.node_at_run_end[run_id]) for run_id in network.meshed} == {
+        f"run {number} of M-04" for number in (1, 2, 3, 4)
+    }
+    assert any(len(board.fed_by) > 1 for board in record.boards)
+    assert [source.tag for source in record.sources if source.fed_from is not None] == ["CONV-24"]
+    assert {shared.name: len(shared.runs) for shared in network.return_at.values()} == {"DAMPERS": 3}
 
 
 @every_site

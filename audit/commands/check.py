@@ -22,11 +22,11 @@ SITE = click.argument("site", type=click.Path(path_type=Path))
     help="Exit with 1 if a finding is at or above this severity.",
 )
 def command(site: Path, as_json_: bool, circuit: str | None, visit: str | None, fail_on: str | None) -> int:
-    """Run every rule on SITE, a site folder, and print the findings."""
-    from audit.opening import judge_site, only, open_site
+    """Run every rule on SITE, a site file or a site folder, and print the findings."""
+    from audit.opening import judge_site, only, open_site, settings_place
 
     record = open_site(site)
-    assessment = judge_site(record, visit)
+    assessment = judge_site(record, visit, settings_place(site))
     if circuit is not None:
         assessment = only(assessment, circuit)
     if as_json_:

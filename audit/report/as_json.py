@@ -88,7 +88,8 @@ def _drop(drop: Drop | None) -> Json | None:
     figures = {name: quantity(getattr(drop, name)) for name in ("measured", "computed", "excess")}
     if None in figures.values():
         return None
-    return {"round": clean(drop.round), **figures}
+    doubts = {clean(doubt.name): quantity(Figure(doubt.u_v, "V")) for doubt in drop.budget}
+    return _without_none({"round": clean(drop.round), **figures, "doubts": _without_none(doubts) or None})
 
 
 def _cause(place: Place) -> Json:
@@ -100,6 +101,7 @@ def _cause(place: Place) -> Json:
             "where": clean(place.where),
             "probability": place.probability,
             "extra_resistance": {**known, "unit": "ohm"} if len(known) == len(extra) else None,
+            "what": clean(place.what) or None,
         }
     )
 

@@ -29,6 +29,7 @@ from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, Seve
 from rules.index import Index
 from rules.record import Decision, Feed, Site
 from rules.units import show
+from rules.verdict import probability_words
 
 BAR_LEGEND = (
     "Bar: solid is the measured drop, its pointed or grey end the doubt (u), the tick the computed drop, "
@@ -154,17 +155,20 @@ def walk(index: Index, assessment: Assessment) -> Section:
 
 def evidence_words(assessment: Assessment) -> Callable[[Finding], str]:
     """How sure a finding's cause is, apart from how soon it asks for action; empty where not judged."""
-    causes = {
-        (result.circuit, place.cause, place.where): place.probability
-        for result in assessment.circuits
-        for place in result.causes
-    }
+    causes: dict[tuple[str, str, str], float] = defaultdict(float)
+    for result in assessment.circuits:
+        for place in result.causes:
+            causes[result.circuit, place.cause, place.where] = place.probability
+            causes[result.circuit, place.cause, ""] += place.probability if place.where else 0.0
 
     def words(finding: Finding) -> str:
         if finding.cause is None or finding.circuit is None:
             return ""
-        probability = causes.get((finding.circuit, finding.cause, finding.where))
-        return finding.cause if probability is None else f"{finding.cause}, probability {probability:.2f}"
+        of_cause = causes.get((finding.circuit, finding.cause, ""))
+        probability = causes.get((finding.circuit, finding.cause, finding.where), of_cause)
+        return (
+            finding.cause if probability is None else f"{finding.cause}, probability {probability_words(probability)}"
+        )
 
     return words
 

@@ -30,6 +30,13 @@ class Shown:
     """Relative standard uncertainty of the gain."""
     each_u: float
     """Standard uncertainty of counts and display, each reading anew, in the value's unit."""
+    wander_u: float = 0.0
+    """Standard deviation of what was read itself, each reading anew, in the value's unit."""
+
+    @property
+    def own_variance(self) -> float:
+        """Variance of what no other reading shares."""
+        return self.each_u**2 + self.wander_u**2
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,6 +81,61 @@ def each_u(counts: float, resolution: float) -> float:
     return resolution * math.sqrt(counts**2 / 3 + 1 / 12)
 
 
+@dataclass(frozen=True, slots=True)
+class Parts:
+    """A sum of readings, and what each kind of doubt adds to its variance."""
+
+    value: float
+    gain_variance: float
+    counts_variance: float
+    wander_variance: float
+
+    @property
+    def variance(self) -> float:
+        return self.gain_variance + self.counts_variance + self.wander_variance
+
+
+def parts(terms: Iterable[Weighted]) -> Parts:
+    """
+    A weighted sum of readings with its variance by kind of doubt.
+
+    Parameters
+    ----------
+    terms : iterable of Weighted
+        A reading may occur several times; its weights add.
+
+    Returns
+    -------
+    Parts
+        Sum in the readings' unit times the weights', and three variances.
+
+    Notes
+    -----
+    ``u² = Σ_gains (u_g Σ w v)² + Σ_readings (Σw)² u_each²``: JCGM 100:2008, equation 13, with
+    correlation one within a gain and zero elsewhere.
+
+    Examples
+    --------
+    >>> one = parts([Weighted(1, Shown(24.12, "a", 0.003, 0.01)), Weighted(-1, Shown(23.41, "a", 0.003, 0.01))])
+    >>> round(one.gain_variance**0.5, 5), round(one.counts_variance**0.5, 4)
+    (0.00213, 0.0141)
+    """
+    value = 0.0
+    by_gain: dict[tuple[str, float], float] = defaultdict(float)
+    weights: dict[int, float] = defaultdict(float)
+    shown: dict[int, Shown] = {}
+    for term in terms:
+        part = term.weight * term.shown.value
+        value += part
+        by_gain[term.shown.gain_key, term.shown.gain_u] += part
+        weights[id(term.shown)] += term.weight
+        shown[id(term.shown)] = term.shown
+    gain = sum((u * part) ** 2 for (_, u), part in by_gain.items())
+    counts = sum((weight * shown[key].each_u) ** 2 for key, weight in weights.items())
+    wander = sum((weight * shown[key].wander_u) ** 2 for key, weight in weights.items())
+    return Parts(value, gain, counts, wander)
+
+
 def total(terms: Iterable[Weighted]) -> tuple[float, float]:
     """
     Value and standard uncertainty of a weighted sum of readings.
@@ -88,11 +150,6 @@ def total(terms: Iterable[Weighted]) -> tuple[float, float]:
     tuple of float
         Sum and standard uncertainty, in the readings' unit times the weights'.
 
-    Notes
-    -----
-    ``u² = Σ_gains (u_g Σ w v)² + Σ_readings (Σw)² u_each²``: JCGM 100:2008, equation 13, with
-    correlation one within a gain and zero elsewhere.
-
     Examples
     --------
     Two readings by one 0.5 % + 2 counts meter against two meters:
@@ -104,18 +161,8 @@ def total(terms: Iterable[Weighted]) -> tuple[float, float]:
     >>> round(one[1], 3), round(two[1], 3)
     (0.017, 0.098)
     """
-    value = 0.0
-    by_gain: dict[tuple[str, float], float] = defaultdict(float)
-    weights: dict[int, tuple[float, float]] = {}
-    for term in terms:
-        part = term.weight * term.shown.value
-        value += part
-        by_gain[term.shown.gain_key, term.shown.gain_u] += part
-        before = weights.get(id(term.shown), (0.0, 0.0))[0]
-        weights[id(term.shown)] = (before + term.weight, term.shown.each_u)
-    variance = sum((u * part) ** 2 for (_, u), part in by_gain.items())
-    variance += sum((weight * u) ** 2 for weight, u in weights.values())
-    return value, math.sqrt(variance)
+    summed = parts(terms)
+    return summed.value, math.sqrt(summed.variance)
 
 
 def probability_above(value: float, limit: float, u: float) -> float:

@@ -25,10 +25,10 @@ def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     A load was read below its lowest voltage, or by the record falls below it at the lowest source voltage.
 
     **Finds**: 48 V battery down to 43.2 V, 0.20 Ω of path, a 600 W constant-power load with a lowest of 40.5 V: 40.2 V.
-    A load that cannot be supplied at all: the voltage collapses. Severity is immediate where a life-safety or
-    trip-or-close load was read below its lowest.
+    Severity is immediate where a life-safety or trip-or-close load was read below its lowest.
 
-    **Leaves alone**: the same load of 500 W: 40.7 V. A voltage within its doubt of the limit is not judged.
+    **Leaves alone**: the same load of 500 W: 40.7 V. A voltage within its doubt of the limit is not judged, nor a load
+    that cannot be supplied at all (NW01).
     """
     unknown = [point.load.tag for point in case.loads if point.load.lowest_voltage_v is None]
     if unknown:
@@ -57,15 +57,6 @@ def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Findi
                 severity=Severity.IMMEDIATE if vital else Severity.SOON,
             )
             return
-    if point.collapsed or (point.collapsed_lowest and not case.context.network.gap_lowest[_source(case)]):
-        when = "at design" if point.collapsed else f"with the source at {show(point.source_lowest_v, 'V')}"
-        yield load_below_lowest.finding(
-            case,
-            point.load.point,
-            f"{name} cannot be supplied {when}: the voltage collapses, no current gives its power",
-            numbers={"lowest": Figure(lowest, "V")},
-        )
-        return
     volts = Figure(point.lowest_v, "V", point.lowest_u)
     verdict = (
         Verdict.OPEN

@@ -31,14 +31,13 @@ def current_above_recorded(case: CircuitCase) -> Iterator[Finding]:
     margin = 1 + case.limits["readings.load_margin"]
     for this in case.rounds:
         for point, terms in this.amps.items():
-            design = case.tree.design_current_a.get(point)
-            if not design:
-                continue
+            design, run = case.tree.design_current_a.get(point), case.tree.ends.get(point)
+            if not design or (run is not None and run.id in case.tree.meshed):
+                continue  # in a mesh no loads are those behind a run
             value, u = total(terms)
             if probability_above(value, margin * design, u) < case.limits["decision.beyond_doubt"]:
                 continue
             shown, recorded = show_against(value, design, "A")
-            run = case.tree.ends.get(point)
             where = run.name if run else point
             yield current_above_recorded.finding(
                 case,

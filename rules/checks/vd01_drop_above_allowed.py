@@ -3,12 +3,15 @@
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
-from rules.case import CircuitCase
+from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
 from rules.record import Figure
 from rules.rule import rule
-from rules.units import show, show_against
+from rules.sufficient import sufficient_of
+from rules.units import show, show_against, show_size
+
+MEASURE_FIRST = "Measure the drop of each run at a known current;"
 
 
 @rule(
@@ -16,7 +19,7 @@ from rules.units import show, show_against
     title="Computed drop above the allowed drop",
     about="circuit",
     severity=Severity.SOON,
-    remedy="Measure the drop of each run at a known current; then choose a larger size, a shorter way or a nearer board.",
+    remedy=f"{MEASURE_FIRST} then choose a larger size, a shorter way or a nearer board.",
     caution="Isolate and prove dead before touching a termination; local code and a licensed person decide. "
     "Computed for steady current and healthy joints; says nothing about inrush.",
     source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation"),
@@ -44,6 +47,7 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     share, limit = show_against(worst.drop_v / nominal, case.allowed_drop_percent / 100, "1")
     drop = show(worst.drop_v, "V", worst.drop_u)
     if verdict is Verdict.FAILS:
+        enough = _enough(case, worst)
         own = case.circuit.allowed_drop_percent is not None
         total_percent = case.limits["drop.allowed_total_percent"]
         past_total = worst.total_drop_v / nominal > total_percent / 100
@@ -56,7 +60,11 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "share": Figure(worst.drop_v / nominal, "1", worst.drop_u / nominal),
                 "allowed": Figure(case.allowed_drop_percent / 100, "1"),
                 "nominal": Figure(nominal, "V"),
-            },
+            }
+            | {name: Figure(drop_v, "V") for name, _, drop_v in enough},
+            remedy=f"{MEASURE_FIRST} then {_would_do(enough, nominal)}, or choose a shorter way or a nearer board."
+            if enough
+            else None,
             source="the circuit's own allowed drop" if own else case.limits.citation("drop"),
             consequences=(f"from the source it loses more than the {total_percent:g} % allowed in all",)
             if past_total and not worst.total_gap
@@ -67,3 +75,27 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     elif verdict is Verdict.OPEN:
         why = f"not settled: {drop} ({share}) to {worst.load.tag} against {limit} allowed"
         yield drop_above_allowed.gap(case, worst.load.point, why)
+
+
+def _enough(case: CircuitCase, worst: LoadPoint) -> list[tuple[str, str, float]]:
+    """What would do by the drop alone, a size for the thinner runs of the path or a number of conductors; the drop then."""
+    by_size, by_number = sufficient_of(case, worst)
+    enough = []
+    if by_size is not None:
+        what = f"{show_size(by_size.size)} in {_names(by_size.runs)}"
+        enough.append(("drop at sufficient size", what, by_size.drop_v))
+    if by_number is not None:
+        what = f"{by_number.parallel} times the conductors in {_names(by_number.runs)}"
+        enough.append(("drop at sufficient number", what, by_number.drop_v))
+    return enough
+
+
+def _names(runs: tuple[str, ...]) -> str:
+    return runs[0] if len(runs) == 1 else f"runs {', '.join(name.removeprefix('run ') for name in runs)}"
+
+
+def _would_do(enough: list[tuple[str, str, float]], nominal_v: float) -> str:
+    told = []
+    for _, what, drop_v in enough:
+        told.append(f"{what} ({show(drop_v, 'V', digits=3)}, {show(drop_v / nominal_v, '1', digits=3)})")
+    return f"{' or '.join(told)} would do by the drop alone"

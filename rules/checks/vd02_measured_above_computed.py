@@ -1,16 +1,32 @@
-"""VD02: the measured drop is above the computed one beyond doubt."""
+"""VD02: more voltage is lost than the record accounts for, with the cause that the readings claim."""
 
-import math
 from collections.abc import Iterator
 
-from rules.assessment import Citation, Finding, NotJudged, Severity
+from rules.assessment import Citation, Drop, Finding, NotJudged, Place, Severity
 from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
+from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHER_METAL, SEMICONDUCTOR, SMALLER
 from rules.errors import MissingData
 from rules.limits import Limits
 from rules.record import Figure
 from rules.rule import rule
 from rules.units import show
+from rules.verdict import MOST_SAID, TOLD, Claim, cause_words, claimed, doubtful, probability_words
+
+CONDUCTOR = (
+    "Look at the conductor at both ends: print on the sheath, size by gauge, a scraped cut end for its metal; tape or pulse its "
+    "length. Correct the record; a smaller conductor or another metal is compared with its device and terminals."
+)
+REMEDIES = {
+    BAD_CONNECTION: "Measure millivolts across each termination of {} at the same current; isolate, cut back and remake the bad "
+    "one, then read it again.",
+    SMALLER: CONDUCTOR,
+    OTHER_METAL: CONDUCTOR,
+    LONGER: CONDUCTOR,
+    SEMICONDUCTOR: "Look for a diode or an electronic switch at the start of {} and read the drop across it at two currents.",
+}
+"""What to do next, by cause; the place goes into the braces."""
+ENDS_KNOWN = "Isolate, cut back and remake the termination at {}, then read it again at the same current."
 
 
 @rule(
@@ -21,61 +37,168 @@ from rules.units import show
     remedy="Measure millivolts along each leg and across each termination of the path at the same current, the middle first.",
     caution="Millivolt readings across a closed joint become the full system voltage if it opens: start on auto volts. "
     "Do not tighten or open anything live; cut back and remake heated conductors when isolated. "
-    "The drop does not say where the excess lies: a wrong length or size in the record looks the same.",
+    "A cause is named by probability: look before replacing anything.",
     source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
 )
 def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     More voltage is lost than the recorded conductors account for, beyond the doubt of both.
 
+    The cause is named where the readings claim one: some fault at the profile's probability, most of it with a
+    joint, a semiconductor, or the conductors, of which size, metal and length are often not to be told apart. A
+    bad connection has its severity from the heat in it at design current, any other cause from the excess times
+    the current read: soon from the profile's 2 W. An excess that a slip explains better than a fault is for watch.
+
     **Finds**: 2.45 ± 0.02 V measured against 1.92 ± 0.05 V computed at 8 A: 4.2 W too much, so it is for soon.
-    Below the profile's 2 W the severity is watch; from 10 W on, which can burn if it sits in one place, it is immediate.
+    From 10 W on, which burns where it sits in one place, it is immediate: in a bad connection, or where no cause is claimed.
+    A joint of 40 mΩ, read across itself, that the drop of a cable of guessed length would hide.
 
     **Leaves alone**: 2.02 ± 0.02 V against the same computed drop, which two standard uncertainties cover. Readings
     that cannot be (RD01, RD02) are not judged.
     """
     if case.unused:
         yield measured_above_computed.gap(case, "readings", f"read, but not used yet: {', '.join(case.unused)}")
-    if case.drop is None:
+    causes = case.diagnosis.causes if case.diagnosis is not None else ()
+    claim = claimed(causes, case.limits)
+    if case.drop is None and claim is None:
         if case.visit:
             raise MissingData(case.drop_gap)
         return
-    drop = case.drop
-    this = next(r for r in case.rounds if r.name == drop.round)
-    if probability_above(drop.excess.value, 0.0, drop.excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
+    if claim is None and not _beyond_doubt(case):
         return
-    heat_w = drop.excess.value * abs(drop.current.value)
-    heat_u = math.hypot((drop.excess.u or 0.0) * drop.current.value, drop.excess.value * (drop.current.u or 0.0))
-    remarks = []
-    if this.wander_v == 0 and drop.by == "two voltages":
-        remarks.append("the source is taken as steady, since no point was read twice")
-    if this.poor:
-        remarks.append(f"{', '.join(this.poor)}: instrument not recorded, counted as a poor meter")
-    why = (
-        f"{show(drop.measured.value, 'V', drop.measured.u)} measured against "
-        f"{show(drop.computed.value, 'V', drop.computed.u)} computed from {drop.start} to {drop.end} at "
-        f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}: "
-        f"{show(drop.excess.value, 'V', drop.excess.u)} too much"
-    )
+    drop = case.drop
+    along = f"{drop.start} to {drop.end}" if drop else "all runs"
+    if claim is None and (slip := doubtful(causes)) is not None:
+        yield measured_above_computed.finding(
+            case,
+            along,
+            "; ".join([*_drop_words(drop), f"probably {cause_words(slip)}", *_remarks(case)]),
+            numbers=_numbers(drop, None),
+            remedy="Read it again, and compare length, size and points with the record, before anything else is done.",
+            cause=slip.cause,
+        )
+        return
+    heat_w = _heat_w(case, claim)
+    parts = [*_drop_words(drop), *([_claim_words(claim)] if claim else _open_words(causes)), *_remarks(case)]
     yield measured_above_computed.finding(
         case,
-        f"{drop.start} to {drop.end}",
-        "; ".join([why, *remarks]),
-        numbers={
+        claim.where if claim and claim.where else along,
+        "; ".join(parts),
+        numbers=_numbers(drop, claim) | ({"heat": Figure(heat_w, "W")} if heat_w is not None else {}),
+        severity=_severity(heat_w, claim, case.limits),
+        remedy=_remedy(claim),
+        source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
+        cause=claim.cause if claim else None,
+        consequences=tuple(_consequences(case, claim, heat_w)),
+    )
+
+
+def _beyond_doubt(case: CircuitCase) -> bool:
+    """The excess is real, whatever it comes from; without a diagnosis by its doubt alone."""
+    if case.drop is None:
+        return False
+    excess = case.drop.excess
+    if probability_above(excess.value, 0.0, excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
+        return False
+    return case.diagnosis is None or case.diagnosis.probability(AS_RECORDED) < 0.5
+
+
+def _heat_w(case: CircuitCase, claim: Claim | None) -> float | None:
+    """Heat that the record does not explain: in the bad connection at design current, else in all at this current. [W]"""
+    if claim is not None and claim.cause == BAD_CONNECTION:
+        read_a = abs(case.drop.current.value) if case.drop is not None else 0.0
+        return max(
+            (place.best_ohm or 0.0) * case.largest_current_a.get(place.point, read_a) ** 2 for place in claim.places
+        )
+    if case.drop is None:
+        return None
+    return case.drop.excess.value * abs(case.drop.current.value)
+
+
+def _drop_words(drop: Drop | None) -> Iterator[str]:
+    if drop is not None:
+        yield (
+            f"{show(drop.measured.value, 'V', drop.measured.u)} measured against "
+            f"{show(drop.computed.value, 'V', drop.computed.u)} computed from {drop.start} to {drop.end} at "
+            f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}: "
+            f"{show(drop.excess.value, 'V', drop.excess.u)} too much"
+        )
+
+
+def _open_words(causes: tuple[Place, ...]) -> Iterator[str]:
+    """What it may be where no cause is claimed."""
+    rows = [row for row in causes[:MOST_SAID] if row.probability >= TOLD]
+    if rows:
+        yield "its cause is not settled: " + ", ".join(cause_words(row) for row in rows)
+
+
+def _claim_words(claim: Claim) -> str:
+    against = "".join(f", else {cause_words(row)}" for row in claim.against)
+    if claim.cause in (SMALLER, OTHER_METAL, LONGER):
+        rows = sorted([*claim.places, *claim.others], key=lambda place: -place.probability)
+        return "the conductors are probably not as recorded: " + ", ".join(cause_words(row) for row in rows) + against
+    said = f"probably a {claim.cause} in {claim.where} ({probability_words(claim.probability)})"
+    low, best, high = claim.place.low_ohm, claim.place.best_ohm, claim.place.high_ohm
+    if low is None or best is None or high is None:
+        return said + against
+    bounds = f"{show(low, 'ohm', digits=3)} to {show(high, 'ohm', digits=3)}"
+    return f"{said}: {show(best, 'ohm', digits=3)} extra ({bounds}){against}"
+
+
+def _remarks(case: CircuitCase) -> Iterator[str]:
+    if case.drop is None:
+        return
+    this = next(r for r in case.rounds if r.name == case.drop.round)
+    if this.wander_v == 0 and case.drop.by == "two voltages":
+        yield "the source is taken as steady, since no point was read twice"
+    if this.poor:
+        yield f"{', '.join(this.poor)}: instrument not recorded, counted as a poor meter"
+
+
+def _numbers(drop: Drop | None, claim: Claim | None) -> dict[str, Figure]:
+    numbers: dict[str, Figure] = {}
+    if drop is not None:
+        numbers |= {
             "measured": drop.measured,
             "computed": drop.computed,
             "excess": drop.excess,
             "current": drop.current,
-            "heat": Figure(heat_w, "W", heat_u),
-        },
-        severity=_severity(heat_w, case.limits),
-        source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
-        consequences=(f"at this current {show(heat_w, 'W', heat_u)} turn into heat that the record does not explain",),
-    )
+        }
+    if claim is not None:
+        numbers["probability"] = Figure(claim.probability, "1")
+        bounds = (
+            ("extra resistance", claim.place.best_ohm),
+            ("from", claim.place.low_ohm),
+            ("to", claim.place.high_ohm),
+        )
+        numbers |= {name: Figure(ohm, "ohm") for name, ohm in bounds if ohm is not None}
+    return numbers
 
 
-def _severity(heat_w: float, limits: Limits) -> Severity:
-    """By what may turn into heat in one place, which is not known yet."""
-    if heat_w >= limits["heat.immediate_w"]:
-        return Severity.IMMEDIATE
-    return Severity.SOON if heat_w >= limits["heat.soon_w"] else Severity.WATCH
+def _remedy(claim: Claim | None) -> str | None:
+    if claim is None:
+        return None
+    separated = claim.cause == BAD_CONNECTION and len(claim.places) == 1 and claim.where.count(" ") >= 3
+    return (ENDS_KNOWN if separated else REMEDIES[claim.cause]).format(claim.where)
+
+
+def _consequences(case: CircuitCase, claim: Claim | None, heat_w: float | None) -> Iterator[str]:
+    if heat_w is not None and claim is not None and claim.cause == BAD_CONNECTION:
+        yield f"at design current {show(heat_w, 'W', digits=2)} turn into heat in one place"
+    elif heat_w is not None:
+        yield f"at this current up to {show(heat_w, 'W')} turn into heat that the record does not explain"
+    for point in case.loads:
+        lowest, worst = point.load.lowest_voltage_v, case.worst.get(point.load.point)
+        if lowest is not None and worst is not None and worst.value < lowest <= point.lowest_v:
+            yield (
+                f"with the source at its lowest {point.load.tag} gets {show(worst.value, 'V', worst.u)}, below its "
+                f"lowest {show(lowest, 'V')}"
+            )
+
+
+def _severity(heat_w: float | None, claim: Claim | None, limits: Limits) -> Severity:
+    """By the heat; spread over conductors it does not burn in one place."""
+    if heat_w is None or heat_w < limits["heat.soon_w"]:
+        return Severity.WATCH
+    in_one_place = claim is None or claim.cause == BAD_CONNECTION
+    return Severity.IMMEDIATE if in_one_place and heat_w >= limits["heat.immediate_w"] else Severity.SOON

@@ -232,8 +232,10 @@ def _rules(name: str, given: object, parent: Limits | None, faults: list[str]) -
     return settings
 
 
-ABOVE_ZERO = ("drop", "termination", "heat", "length_doubt", "bad_connection", "series_semiconductor")
-SHARES = ("decision",)
+ABOVE_ZERO = (
+    "drop", "termination", "heat", "length_doubt", "bad_connection", "series_semiconductor", "longer_route", "slip",
+)  # fmt: skip
+SHARES = ("decision", "other_metal", "doubtful")
 
 
 def _impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -> None:
@@ -253,6 +255,8 @@ def _impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) 
     for group_name, low, high in (
         ("bad_connection", "low_ohm", "high_ohm"),
         ("series_semiconductor", "low_v", "high_v"),
+        ("longer_route", "low_factor", "high_factor"),
+        ("slip", "parallel_low", "parallel_high"),
         ("decision", "passes_at", "fails_at"),
     ):
         values = groups[group_name].values if group_name in groups else {}

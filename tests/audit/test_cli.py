@@ -49,7 +49,7 @@ def refused(args: list[str], capsys: Captured, status: int = 2) -> list[str]:
 def test_json_is_one_object_on_standard_output(plant: Path, capsys: Captured) -> None:
     told = checked(plant, capsys)
     assert told["schema"] == "ohmwalk.check/1"
-    assert told["summary"]["circuits"] == len(told["circuits"]) == 24
+    assert told["summary"]["circuits"] == len(told["circuits"]) == 30
 
 
 def test_one_circuit(plant: Path, capsys: Captured) -> None:
@@ -68,8 +68,9 @@ def test_an_unknown_circuit_or_visit_names_the_nearest(plant: Path, capsys: Capt
 
 
 def test_fail_on_a_severity(plant: Path, capsys: Captured) -> None:
-    assert cli.run(["check", str(plant), "--fail-on", "soon"]) == 1
-    assert cli.run(["check", str(plant), "--fail-on", "immediate"]) == 0
+    assert cli.run(["check", str(plant), "--fail-on", "immediate"]) == 1
+    assert cli.run(["check", str(plant), "--fail-on", "soon", "--circuit", "M-02"]) == 1
+    assert cli.run(["check", str(plant), "--fail-on", "immediate", "--circuit", "M-02"]) == 0
     capsys.readouterr()
 
 
@@ -132,28 +133,6 @@ def test_a_report_of_an_unknown_form_is_refused_before_anything_is_read(capsys: 
     (line,) = refused(["report", "nowhere", "--to", "audit.docx"], capsys)
     assert ".docx" in line
     assert ".html" in line
-
-
-def test_demo_copies_a_site_and_uses_its_own_earlier_one(tmp_path: Path, capsys: Captured) -> None:
-    assert cli.run(["demo", "doors"]) == 0
-    folder = tmp_path / "doors_24v_12v"
-    assert (folder / "site.toml").is_file()
-    (folder / "notes.txt").write_text("mine", encoding="utf-8")
-    assert cli.run(["demo", "doors"]) == 0
-    assert (folder / "notes.txt").read_text(encoding="utf-8") == "mine"
-    capsys.readouterr()
-    (line,) = refused(["demo", "doors", "--to", str(folder)], capsys)
-    assert "--overwrite" in line
-    assert cli.run(["demo", "doors", "--to", str(folder), "--overwrite"]) == 0
-    assert not (folder / "notes.txt").exists()
-
-
-def test_demo_leaves_a_folder_that_is_no_site(tmp_path: Path, capsys: Captured) -> None:
-    (tmp_path / "mine").mkdir()
-    (tmp_path / "mine" / "letter.txt").write_text("x", encoding="utf-8")
-    (line,) = refused(["demo", "--to", "mine", "--overwrite"], capsys)
-    assert "no site folder" in line
-    assert (tmp_path / "mine" / "letter.txt").exists()
 
 
 def test_tables_name_source_and_status(capsys: Captured) -> None:

@@ -400,3 +400,18 @@ def test_a_fault_of_the_disk_is_told(path: Path, monkeypatch: pytest.MonkeyPatch
     with pytest.raises(DiskFault, match="Input/output error"):
         SiteStore.create(path, None, "ann", "lap", "new")
     assert os.listdir(path.parent) == []
+
+
+def test_no_backup_is_laid_beside_the_journal_of_an_interrupted_save(tmp_path: Path) -> None:
+    """SQLite would roll the old file's journal back into the new one."""
+    target = tmp_path / "copy.ohmwalk"
+    with SiteStore.create(tmp_path / "a.ohmwalk", None, "ann", "laptop", "new") as store:
+        store.backup(target)
+        before = target.read_bytes()
+        journal = tmp_path / "copy.ohmwalk-journal"
+        journal.write_bytes(b"half a save")
+        with pytest.raises(SiteExists, match="interrupted"):
+            store.backup(target, overwrite=True)
+        assert target.read_bytes() == before
+        journal.unlink()
+        store.backup(target, overwrite=True)

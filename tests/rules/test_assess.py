@@ -34,9 +34,9 @@ def test_one_circuit_alone_agrees_with_the_whole(sample: Site) -> None:
     assert {circuit.id: assess_circuit(context, circuit) for circuit in sample.circuits} == whole
 
 
-def test_no_circuit_is_sound_while_causes_are_not_judged(sample: Site) -> None:
+def test_every_circuit_has_one_status(sample: Site) -> None:
     summary = assess(sample, limits.of(sample)).summary
-    assert summary["sound"] == 0
+    assert summary["sound"] >= 5
     assert sum(summary[str(status)] for status in Status) == summary["circuits"] == len(sample.circuits)
 
 

@@ -257,3 +257,31 @@ def test_a_large_record_full_of_mistakes_is_judged_in_seconds() -> None:
     found = problems(Site(name="hut", circuits=circuits, runs=runs))
     assert len(found) == 10_000
     assert time.perf_counter() - start < 20
+
+
+def test_of_many_circuits_alike_the_one_with_a_wrong_reading_is_told() -> None:
+    tables = deepcopy(GOOD)
+    alike = [{**row, "circuit": "C4"} for row in tables["runs"] if row["circuit"] == "C1"]
+    tables["circuits"].append({"circuit": "C4", "fed_from": "MDB", "device": "fuse gG"})
+    tables["runs"] += alike
+    tables["readings"] += [
+        {"circuit": "C4", "round": "1", "quantity": "voltage", "at": at, "value": "47", "instrument": "DMM"}
+        for at in ("p1", "p9", "p1", "p9")
+    ]
+    assert [line.partition(": ")[0] for line in judged(tables)] == ["readings 10 at", "readings 12 at"]
+
+
+def test_a_value_that_is_no_number_is_told_once_and_its_instrument_is_looked_for() -> None:
+    circuit = Circuit(id="c", tag="C1")
+    meter = Instrument(id="m", tag="DMM", quantity="voltage", accuracy_percent=1, counts=1, resolution=1)
+    rows = tuple(
+        Reading(id=tag, circuit_id="c", round="1", quantity="voltage", at="way", value=math.nan, instrument=tag)
+        for tag in ("DMM", "DMN")
+    )
+    site = Site(name="hut", circuits=(circuit,), instruments=(meter,), readings=rows)
+    assert [line for line in told(site) if "readings" in line] == [
+        "readings 0 value: nan is not possible; accepted: a number",
+        "readings 1 value: nan is not possible; accepted: a number",
+        "readings 1 instrument: 'DMN' names no instrument; accepted: the tag of an instrument that is there, "
+        "or an empty cell, did you mean 'DMM'?",
+    ]

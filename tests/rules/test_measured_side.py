@@ -11,6 +11,7 @@ from audit.intake.folder import site_of
 from rules import limits
 from rules.assess import assess, assess_circuit, prepare
 from rules.assessment import CircuitResult, Drop, Status
+from rules.case import case_of
 from rules.record import Site
 
 CHAIN: dict[str, list[dict[str, str]]] = {
@@ -75,10 +76,12 @@ def drop(record: Site) -> Drop:
 
 
 def gap(record: Site) -> str:
-    assessed = result(record)
-    assert assessed.drop is None
-    assert assessed.status is Status.MEASURE
-    return assessed.why
+    """Why there is no drop."""
+    context = prepare(record, limits.of(record))
+    case = case_of(context, record.circuits[0])
+    assert case.drop is None
+    assert result(record).status is Status.MEASURE
+    return case.drop_gap
 
 
 def test_the_far_point_is_the_one_with_the_largest_computed_drop() -> None:

@@ -1,0 +1,236 @@
+"""
+Problems of equal shape as stacked arrays, and the Gaussian that the record predicts for their rows.
+
+Written throughout: b problems, n rows, e elements, s sources of current doubt, f hypotheses about the conductors.
+A row's drop is bilinear, current times resistance, so its doubt has two halves: currents times the doubt of
+resistances, and the doubt of currents times resistances; to them come the gains and counts of the readings.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, fields, replace
+
+import numpy as np
+
+from rules.diagnosis.problem import Branch, Problem
+from rules.diagnosis.shape import Floats, Shape
+from rules.limits import Limits
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Block:
+    """Stacked problems."""
+
+    shape: Shape
+    limits: Limits
+    shown: Floats
+    """(b, n): what the meters say of each row. [V, or ohm in a dead test]"""
+    value: Floats
+    """(b, O): each observation."""
+    variance: Floats
+    """(b, O)"""
+    gain_u: Floats
+    """(b, gains)"""
+    gain_fixed: Floats
+    """(b, gains, n): doubt of rows whose observations have several gains, under each."""
+    amps: Floats
+    """(b, slots)"""
+    amps_u: Floats
+    """(b, slots)"""
+    carried: Floats
+    """(b, 1 + s, n, e): what one ohm adds to each row, then to its doubt through each source. [A]"""
+    conductor: Floats
+    """(b, e of conductors), as recorded. [ohm]"""
+    conductor_slope: Floats
+    """(b, e of conductors): what one standard uncertainty of the temperature adds. [ohm]"""
+    others: Floats
+    """(b, e of terminations and poles): healthy. [ohm]"""
+    others_u: Floats
+    """(b, e of terminations and poles): standard uncertainty, each on its own but for the poles. [ohm]"""
+    length_u: Floats
+    """(b, branches)"""
+    alternatives: Floats
+    """(b, alternatives, e of conductors): resistance with another conductor. [ohm]"""
+    possible: Floats
+    """(b, alternatives): 1 where every run on a row's path has it."""
+    extra_scale: Floats
+    """(b, branches)"""
+    hot_ohm: Floats
+    """(b, branches)"""
+    nominal_v: Floats
+    """(b,)"""
+    reading_a: Floats
+    """(b, current readings)"""
+    reading_u: Floats
+    """(b, current readings)"""
+    reading_gain_u: Floats
+    """(b, current readings)"""
+    own: Floats
+    """(b, n, n): covariance of what no hypothesis changes: counts, terminations, device."""
+
+    def __len__(self) -> int:
+        return len(self.shown)
+
+
+def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
+    """Stack problems of one shape."""
+
+    def column(name: str) -> Floats:
+        return np.array([getattr(problem, name) for problem in problems], dtype=float)
+
+    size, branches = len(problems), len(shape.signature.branches)
+    value, variance, gain_u = column("value"), column("variance"), column("gain_u")
+    amps, error = column("amps"), column("error_a")
+    carried = np.zeros((size, 1 + shape.signature.sources, shape.signature.states + 1, branches))
+    carried[:, 0, shape.signature.states] = 1.0  # a dead test: the drop over one ampere
+    carried[:, 0, shape.slot_state, shape.slot_branch] = amps
+    errors = (1 + shape.error_source, shape.slot_state[shape.error_slot], shape.slot_branch[shape.error_slot])
+    carried[:, *errors] = error
+    carried = carried[:, :, shape.row_state][:, :, :, shape.element_branch] * shape.coefficient
+    amps_u = np.zeros_like(amps)
+    for entry, slot in enumerate(shape.error_slot):
+        amps_u[:, slot] += error[:, entry] ** 2
+    numbers = np.array([problem.branches for problem in problems], dtype=float)
+    at = {name: place for place, name in enumerate(Branch._fields)}
+
+    def of_branches(name: str) -> Floats:
+        return numbers[:, :, at[name]]
+
+    def of_legs(name: str) -> Floats:
+        """(b, 2 branches), positive leg before negative."""
+        first = at["positive_" + name]
+        return numbers[:, :, first : first + 2].reshape(size, -1)
+
+    ohm = of_legs("ohm")
+    slope = of_legs("slope_ohm_per_k") * np.repeat(of_branches("temperature_u_k"), 2, axis=1)
+    other = column("alternatives").reshape(size, branches, -1, 2).transpose(0, 2, 1, 3).reshape(size, -1, 2 * branches)
+    poles = ohm @ shape.pole_of.T
+    terminations_u = np.sqrt(of_legs("joint_variance") @ shape.termination_of.T)
+    others_u = np.concatenate([terminations_u, limits["device_doubt.relative"] * poles], axis=1)
+    joints = shape.coefficient.shape[1] - shape.conductors.stop
+    apart = carried[:, 0, :, shape.conductors.stop :] * others_u[:, None]
+    device = apart[:, :, joints - poles.shape[1] :].sum(axis=2)
+    apart = apart[:, :, : joints - poles.shape[1]]
+    own = (shape.difference * variance[:, None]) @ shape.difference.T
+    own = own + apart @ apart.transpose(0, 2, 1) + device[:, :, None] * device[:, None, :]
+    runs = shape.reached & np.array([kind == "run" for kind in shape.signature.branches], dtype=bool)
+    fixed = np.zeros((size, shape.signature.gains, shape.rows))
+    if shape.gain_parts is not None:
+        fixed = gain_u[:, :, None] * np.einsum("gno,bo->bgn", shape.gain_parts, value)
+    return Block(
+        shape=shape,
+        limits=limits,
+        shown=value @ shape.difference.T,
+        value=value,
+        variance=variance,
+        gain_u=gain_u,
+        gain_fixed=fixed,
+        amps=amps,
+        amps_u=np.sqrt(amps_u),
+        carried=carried,
+        conductor=ohm @ shape.conductor_of.T,
+        conductor_slope=slope @ shape.conductor_of.T,
+        others=np.concatenate([of_legs("joint_ohm") @ shape.termination_of.T, poles], axis=1),
+        others_u=others_u,
+        length_u=of_branches("length_u"),
+        alternatives=(other * ohm[:, None]) @ shape.conductor_of.T,
+        possible=np.where(runs.any(), (other.reshape(size, -1, branches, 2)[:, :, runs] > 0).all(axis=(2, 3)), 0.0),
+        extra_scale=of_branches("extra_scale"),
+        hot_ohm=of_branches("hot_ohm"),
+        nominal_v=column("nominal_v"),
+        reading_a=column("reading_a"),
+        reading_u=column("reading_u"),
+        reading_gain_u=column("reading_gain_u"),
+        own=own,
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Model:
+    """
+    What the rows should be, split by the conductors' resistance: b problems, f hypotheses, n rows.
+
+    With all conductors at ``factor`` times the given resistance the mean is ``mean + factor conductor_mean``,
+    the columns of shared doubts ``shared + factor conductor_shared`` and the rest of the covariance
+    ``own + factor² conductor_own``.
+    """
+
+    mean: Floats
+    conductor_mean: Floats
+    """(b, f, n)"""
+    shared: Floats
+    conductor_shared: Floats
+    """(b, f, n, gains + s): one column for each gain and each source of current doubt."""
+    own: Floats
+    conductor_own: Floats
+    """(b, f, n, n)"""
+
+    @property
+    def whole_mean(self) -> Floats:
+        """At factor one (b, f, n)."""
+        return self.mean + self.conductor_mean
+
+    @property
+    def whole_shared(self) -> Floats:
+        """At factor one (b, f, n, gains + s)."""
+        return self.shared + self.conductor_shared
+
+    @property
+    def whole_own(self) -> Floats:
+        """At factor one, without shared doubts (b, f, n, n)."""
+        return self.own + self.conductor_own
+
+    @property
+    def covariance(self) -> Floats:
+        """At factor one (b, f, n, n)."""
+        shared = self.whole_shared
+        return self.whole_own + shared @ np.swapaxes(shared, -1, -2)
+
+
+def model_of(block: Block, conductor: Floats, slope: Floats, carried: Floats | None = None) -> Model:
+    """
+    The Gaussian of the rows under hypotheses about the conductors.
+
+    Parameters
+    ----------
+    conductor, slope : array (b, f, e of conductors)
+        Resistance, and what one standard uncertainty of the temperature adds. [ohm]
+    carried : array (b, 1 + s, n, e), optional
+        Other currents than those read.
+    """
+    shape = block.shape
+    carried = block.carried if carried is None else carried
+    size, planes, rows, _ = carried.shape
+    split = shape.conductors.stop
+    of_others = (carried[..., split:] @ block.others[:, None, :, None])[:, None, ..., 0]
+    flat = carried[..., :split].reshape(size, planes * rows, split)
+    of_conductors = (conductor @ np.swapaxes(flat, 1, 2)).reshape(size, -1, planes, rows)
+    amps = carried[:, None, 0, :, :split]
+    of_elements = amps * conductor[:, :, None]
+    lengths = (of_elements @ shape.run_of.T) * block.length_u[:, None, None]
+    alike = [(amps @ slope[..., None])[..., 0], block.limits["resistance_doubt.relative"] * of_conductors[:, :, 0]]
+    columns = np.concatenate([lengths, np.stack(alike, axis=-1)], axis=-1)
+    gain = block.gain_u[:, None, :, None] * shape.gain_rows
+    return Model(
+        mean=of_others[:, :, 0],
+        conductor_mean=of_conductors[:, :, 0],
+        shared=_columns(gain * of_others[:, :, :1] + block.gain_fixed[:, None], of_others[:, :, 1:]),
+        conductor_shared=_columns(gain * of_conductors[:, :, :1], of_conductors[:, :, 1:]),
+        own=block.own[:, None],
+        conductor_own=columns @ np.swapaxes(columns, -1, -2),
+    )
+
+
+def _columns(*rows: Floats) -> Floats:
+    """(b, f, n, k) of rows (b, f, k, n)."""
+    return np.swapaxes(np.concatenate(rows, axis=2), -1, -2)
+
+
+def taken(block: Block, rows: Floats) -> Block:
+    """Some of a block's problems."""
+    arrays = {name: getattr(block, name)[rows] for name in _ARRAYS}
+    return replace(block, **arrays)
+
+
+_ARRAYS = tuple(entry.name for entry in fields(Block) if entry.name not in ("shape", "limits"))

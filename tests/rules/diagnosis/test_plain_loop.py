@@ -1,0 +1,105 @@
+"""The fast path against the plain loop over causes and sizes: the same log evidence and the same probabilities."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from types import ModuleType
+
+import numpy as np
+import pytest
+
+from rules.case import CircuitCase
+from rules.diagnosis.diagnose import diagnose
+from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, SEMICONDUCTOR
+from rules.diagnosis.judge import Judged, judge_block
+from rules.diagnosis.problem import Problem
+from rules.diagnosis.shape import place_words, shape_of
+
+Draw = Callable[[int, int], tuple[CircuitCase, ...]]
+ProblemFrom = Callable[[CircuitCase], Problem]
+
+CIRCUITS = 300
+ALWAYS = 30
+AGREES = 1e-4
+MATTERS = 30.0
+"""Natural logarithms below the best evidence: less has no probability that could be seen."""
+NAMES = {
+    "one size smaller": "1",
+    "two sizes smaller": "2",
+    "a loop entered as one way": "2",
+    "feet entered as metres": "3.28",
+    "a longer way": "range",
+}
+
+
+def evidences(judged: Judged, problem: Problem) -> dict[tuple[str, str], float]:
+    """Log evidence of the fast path under the loop's names, slips left out."""
+    shape = judged.block.shape
+    found: dict[tuple[str, str], float] = {}
+    for name, evidence in zip(judged.hypotheses.names, judged.hypotheses.log_evidence[0].tolist(), strict=True):
+        if name.cause == BAD_CONNECTION:
+            place = shape.places[name.which[0]]
+            words = [""] if place.whole else [place_words([member]) for member in place.members]
+            found |= {(name.cause, f"{problem.names[place.branch]} {what}".strip()): evidence for what in words}
+        elif name.cause != DOUBTFUL:
+            what = "" if name.cause == SEMICONDUCTOR else NAMES.get(name.what, name.what)
+            found[name.cause, what] = evidence
+    return found
+
+
+def agrees(case: CircuitCase, plain: ModuleType, problem_from: ProblemFrom) -> None:
+    """One circuit by both ways."""
+    problem = problem_from(case)
+    fast = evidences(judge_block(shape_of(problem.signature), [problem], case.limits), problem)
+    loop = plain.Plain(case)
+    slow: dict[tuple[str, str], float] = loop.evidences()
+    assert fast.keys() == slow.keys()
+    best = max(slow.values())
+    apart = {key: abs(fast[key] - slow[key]) for key in slow if slow[key] > best - MATTERS}
+    assert max(apart.values()) < AGREES, (case.tag, apart)
+    (diagnosis,) = diagnose([problem], case.limits)
+    settled = 1 - diagnosis.probability(DOUBTFUL)
+    for cause, probability in loop.posterior().items():
+        assert diagnosis.probability(cause) / settled == pytest.approx(probability, abs=AGREES)
+
+
+def by_size(cases: tuple[CircuitCase, ...]) -> list[CircuitCase]:
+    """Cases from one run and one round to five runs and two rounds."""
+    return sorted(cases, key=lambda case: len(case.runs) * len(case.rounds))
+
+
+def test_a_tenth_of_the_circuits_agrees(draw: Draw, plain: ModuleType, problem_from: ProblemFrom) -> None:
+    cases = by_size(draw(5, CIRCUITS))
+    for case in [*cases[:: CIRCUITS // (ALWAYS - 2)], *cases[-2:]]:
+        agrees(case, plain, problem_from)
+
+
+@pytest.mark.long
+def test_every_circuit_agrees(draw: Draw, plain: ModuleType, problem_from: ProblemFrom) -> None:
+    for case in draw(5, CIRCUITS):
+        agrees(case, plain, problem_from)
+
+
+def test_a_batch_gives_what_each_circuit_alone_gives(draw: Draw, problem_from: ProblemFrom) -> None:
+    cases = draw(5, CIRCUITS)[:60]
+    problems = [problem_from(case) for case in cases]
+    for problem, together in zip(problems, diagnose(problems, cases[0].limits), strict=True):
+        (alone,) = diagnose([problem], cases[0].limits)
+        assert [row.where for row in alone.causes[:2]] == [row.where for row in together.causes[:2]]
+        first, second = ([row.probability for row in found.causes] for found in (alone, together))
+        np.testing.assert_allclose(first, second, atol=1e-7)
+
+
+def test_probabilities_sum_to_one_and_bounds_enclose_the_value(draw: Draw, problem_from: ProblemFrom) -> None:
+    cases = draw(5, CIRCUITS)
+    for diagnosis in diagnose([problem_from(case) for case in cases], cases[0].limits):
+        assert sum(row.probability for row in diagnosis.causes) == pytest.approx(1.0, abs=1e-12)
+        assert diagnosis.probability(AS_RECORDED) <= 1.0
+        probabilities = [row.probability for row in diagnosis.causes]
+        assert probabilities == sorted(probabilities, reverse=True)
+        for row in diagnosis.causes:
+            if row.cause == BAD_CONNECTION:
+                assert row.low_ohm is not None
+                assert row.best_ohm is not None
+                assert row.high_ohm is not None
+                assert row.low_ohm < row.best_ohm < row.high_ohm
