@@ -87,7 +87,7 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
     lines = [head_line(circuit, result, width, is_typing=view.is_typing), ()]
     lines += _sketch(survey, view, width)
     if result is None:
-        return [*lines, (), (Piece("   judging …", "quiet"),)]
+        return [cut(one, width) for one in (*lines, (), (Piece("   judging …", "quiet"),))]
     lines += _verdict(result, width)
     lines += cause_lines(result, width)
     plotted = profile_lines(
@@ -101,7 +101,7 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
     if survey.context is not None:
         lines += _section("record", record_lines(survey.index, circuit, result, survey.context.limits, width))
     lines += _section("not judged", gap_lines(result.not_judged, width)) if result.not_judged else []
-    return [*lines, ()]
+    return [cut(one, width) for one in (*lines, ())]
 
 
 def head_line(circuit: Circuit, result: CircuitResult | None, width: int, *, is_typing: bool = False) -> Line:

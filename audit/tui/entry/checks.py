@@ -18,7 +18,7 @@ from rules.record import Board, Circuit, Feed, Load, Row, Run, Site, Source
 
 def complaint_about(field: Field, row: Row | Site, new: dict[str, Any], index: Index) -> str:
     """
-    What would be wrong with a field that is not wrong already, in one line; empty where nothing is.
+    What would be wrong with a field, in one line; empty where nothing is.
 
     Parameters
     ----------
@@ -29,9 +29,7 @@ def complaint_about(field: Field, row: Row | Site, new: dict[str, Any], index: I
     new : dict
         The new values by field.
     """
-    changed = replace(row, **new)
-    before, after = (_problems(field, one, index) for one in (row, changed))
-    return next((text for text in after if text not in before), "")
+    return next(iter(_problems(field, replace(row, **new), index)), "")
 
 
 def _problems(field: Field, row: Row | Site, index: Index) -> list[str]:

@@ -14,7 +14,7 @@ from rules.index import Index
 from rules.problems.cells import accepted
 from rules.problems.settings import SETTINGS
 from rules.record import TABLES, Instrument, Row, Run, Site, Typed, columns, is_missing
-from rules.references import feed_text, feeds_text, read_end, read_feed, read_feeds, tags_of
+from rules.references import TO_BOARD, feed_text, feeds_text, read_end, read_feed, read_feeds, tags_of
 from rules.text import either, nearest, quoted
 from rules.units import plain
 
@@ -182,6 +182,6 @@ def _reference(text: str, field: Field, index: Index) -> dict[str, Any]:
 
 def _names_nothing(text: str, tables: Sequence[str], index: Index) -> str:
     known = [row.tag for table in tables for row in index.site.table(table)]  # type: ignore[attr-defined]
-    near = nearest(text, known)
+    near = nearest(text.removeprefix(TO_BOARD).strip(), known)
     hint = f", did you mean {quoted(near)}?" if near else ""
     return f"{quoted(text)} names no {either([table.removesuffix('s') for table in tables])} that is there{hint}"

@@ -12,7 +12,7 @@ from audit.tui.screens.findings import FindingsScreen
 from audit.tui.screens.survey import SurveyScreen
 from db.store import SiteStore
 from rules.record import Board, Circuit
-from tests.audit.tui.walker import HUT, cautions_read, walking
+from tests.audit.tui.walker import HUT, cautions_read, site_of, walking
 
 HOSTILE = "[bold]x[/] [@click=app.quit]y[/] [TBD] :smile: =1+1 <b>"
 
@@ -108,10 +108,10 @@ async def test_undo_says_what_it_undoes_and_can_be_done_again(hut: Path) -> None
         await walk.enter("4.02")
         await walk.keys("escape", "u")
         await walk.shows("undone: DB1-01 round 1: current at run 1 4.02 A · U does it again")
-        assert not walk.record.readings
+        assert [entry.value for entry in site_of(hut).readings] == []
         await walk.keys("U")
         await walk.shows("done again: DB1-01 round 1: current at run 1 4.02 A")
-        assert [reading.value for reading in walk.record.readings] == [4.02]
+        assert [entry.value for entry in site_of(hut).readings] == [4.02]
 
 
 async def test_two_on_one_file_see_each_others_saves_and_none_is_lost(hut: Path) -> None:

@@ -102,7 +102,7 @@ async def test_what_is_no_value_is_refused_and_stays_in_its_cell(hut: Path) -> N
         assert "'12 apples' has an unknown unit" in walk.screen
         cell = walk.survey.strip.cells[0]
         assert (cell.state, cell.text, cell.has_focus_within) == ("refused", "12 apples", True)
-        assert walk.record.readings == ()
+        assert len(walk.record.readings) == 0
 
 
 async def test_a_correction_replaces_for_a_stated_reason_and_both_stay(hut: Path) -> None:

@@ -1,0 +1,249 @@
+"""The thread that owns the file and the thread that judges, without a screen."""
+
+from __future__ import annotations
+
+import queue
+import threading
+import time
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from dataclasses import replace
+from pathlib import Path
+
+import pytest
+from textual.message import Message
+
+from audit.tui import judge as judging
+from audit.tui.edits import Add, Change, ChangeSettings, Edit, Remove
+from audit.tui.judge import Judge
+from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Refused, Saved, Troubled, Undone
+from audit.tui.run import run_survey
+from audit.tui.session import Session
+from audit.tui.settings import PassingSettings
+from audit.tui.state import latest_visit
+from db import connection
+from db.errors import NoSuchSite, NotASiteFile
+from db.store import SiteStore
+from rules.record import Load, Reading, Site, Visit
+from tests.audit.tui.walker import HUT, site_of
+
+PATIENCE_S = 10.0
+
+
+class Told:
+    """What a thread told, in order."""
+
+    def __init__(self) -> None:
+        self.messages: queue.Queue[Message] = queue.Queue()
+
+    def __call__(self, message: Message) -> None:
+        self.messages.put(message)
+
+    def next(self) -> Message:
+        return self.messages.get(timeout=PATIENCE_S)
+
+
+@contextmanager
+def session(path: Path) -> Iterator[tuple[Session, Told]]:
+    told = Told()
+    thread = Session(path, "laptop", told)
+    thread.start()
+    try:
+        yield thread, told
+    finally:
+        thread.stop()
+
+
+def test_a_record_is_loaded_then_each_save_is_answered_with_the_record_up_to_date(hut: Path) -> None:
+    with session(hut) as (thread, told):
+        first = told.next()
+        assert isinstance(first, Loaded)
+        assert first.site == HUT
+        assert not first.read_only
+        load = Load(id="", circuit_id="c1", point="p1", tag="extra", current_a=1.0)
+        edit = Edit("changes", (Add("loads", load), Change("circuits", "c1", {"description": "Well"}),
+                                ChangeSettings({"address": "Lane 1"}), Remove("loads", "l2")))  # fmt: skip
+        thread.save(edit, "Ada")
+        loaded, saved = told.next(), told.next()
+        assert isinstance(loaded, Loaded)
+        assert isinstance(saved, Saved)
+        assert saved.edit is edit
+        assert saved.ids[1:] == ("c1", "", "l2")
+        assert [row.tag for row in loaded.site.loads] == ["pump", "extra"]
+        assert (loaded.site.circuits[0].description, loaded.site.address) == ("Well", "Lane 1")
+
+
+def test_an_edit_is_saved_whole_or_not_at_all(hut: Path) -> None:
+    with session(hut) as (thread, told):
+        told.next()
+        edit = Edit("half", (Change("circuits", "c1", {"description": "Well"}), Remove("circuits", "c2")))
+        thread.save(edit, "Ada")
+        refused = told.next()
+        assert isinstance(refused, Refused)
+        assert refused.edit is edit
+        assert refused.line.startswith("circuit 'DB1-02' cannot be removed")
+    assert site_of(hut) == HUT
+
+
+def test_undo_and_redo_tell_what_they_did(hut: Path) -> None:
+    with session(hut) as (thread, told):
+        told.next()
+        thread.undo("Ada")
+        nothing = told.next()
+        assert isinstance(nothing, Undone)
+        assert nothing.what is None
+        thread.save(Edit("name", (ChangeSettings({"name": "Shed"}),)), "Ada")
+        told.next(), told.next()
+        thread.undo("Ada")
+        loaded, undone = told.next(), told.next()
+        assert isinstance(loaded, Loaded)
+        assert isinstance(undone, Undone)
+        assert (loaded.site.name, undone.what, undone.again) == ("Hut", "name", False)
+        thread.undo("Ada", again=True)
+        loaded, undone = told.next(), told.next()
+        assert isinstance(loaded, Loaded)
+        assert loaded.site.name == "Shed"
+
+
+def test_what_another_program_saves_is_seen_within_two_seconds(hut: Path) -> None:
+    with session(hut) as (_, told):
+        told.next()
+        with SiteStore(hut, laptop="another") as other, other.save("Bob", "his") as save:
+            save.settings(name="Bob's hut")
+        start = time.monotonic()
+        loaded = told.next()
+        assert time.monotonic() - start < 2
+        assert isinstance(loaded, Loaded)
+        assert loaded.site.name == "Bob's hut"
+
+
+def test_everything_asked_for_is_saved_before_the_end(hut: Path) -> None:
+    with session(hut) as (thread, told):
+        told.next()
+        for number in range(5):
+            thread.save(Edit("one", (ChangeSettings({"name": f"Hut {number}"}),)), "Ada")
+    assert site_of(hut).name == "Hut 4"
+
+
+def test_a_file_that_was_spoilt_is_said_once(hut: Path) -> None:
+    with session(hut) as (_, told):
+        told.next()
+        hut.write_bytes(b"no database" * 1_000)
+        trouble = told.next()
+        assert isinstance(trouble, Troubled)
+        assert str(hut) not in trouble.line
+        with pytest.raises(queue.Empty):
+            told.messages.get(timeout=1.2)
+
+
+def test_a_file_that_cannot_be_opened_is_told(tmp_path: Path) -> None:
+    with session(tmp_path / "none.ohmwalk") as (_, told):
+        trouble = told.next()
+        assert isinstance(trouble, Troubled)
+        assert trouble.line == "there is no such file"
+
+
+def test_a_fault_of_the_program_is_not_swallowed(hut: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("audit.tui.session.read_by_visit", lambda site: 1 / 0)
+    with session(hut) as (_, told):
+        crashed = told.next()
+        assert isinstance(crashed, Crashed)
+        assert isinstance(crashed.error, ZeroDivisionError)
+
+
+def test_a_file_is_looked_at_before_any_screen_is_drawn(tmp_path: Path) -> None:
+    settings = PassingSettings("laptop", "Ada")
+    with pytest.raises(NoSuchSite):
+        run_survey(tmp_path / "none.ohmwalk", settings)
+    (tmp_path / "plan.ohmwalk").write_text("%PDF", encoding="utf-8")
+    with pytest.raises(NotASiteFile):
+        run_survey(tmp_path / "plan.ohmwalk", settings)
+
+
+def test_a_file_that_may_only_be_read_is_opened(hut: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(connection, "_may_write", lambda path: False)
+    with session(hut) as (thread, told):
+        loaded = told.next()
+        assert isinstance(loaded, Loaded)
+        assert loaded.read_only
+        thread.save(Edit("name", (ChangeSettings({"name": "Shed"}),)), "Ada")
+        refused = told.next()
+        assert isinstance(refused, Refused)
+        assert refused.line == "this file was opened for reading only"
+
+
+# --- the judge
+
+
+@contextmanager
+def judge() -> Iterator[tuple[Judge, Told]]:
+    told = Told()
+    thread = Judge(told)
+    thread.start()
+    try:
+        yield thread, told
+    finally:
+        thread.stop()
+        thread.join()
+
+
+def test_what_is_in_sight_is_judged_first_then_all() -> None:
+    with judge() as (thread, told):
+        thread.judge(HUT, ("c2", "gone"))
+        first, rest = told.next(), told.next()
+        assert isinstance(first, Judged)
+        assert list(first.results) == ["c2"]
+        assert first.site is HUT
+        assert isinstance(rest, Assessed)
+        assert [result.circuit_id for result in rest.assessment.circuits] == ["c1", "c2"]
+        assert rest.assessment.circuits[1] == first.results["c2"]
+
+
+def test_only_the_newest_record_is_judged_whole(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(judging, "LONGEST_WAIT_S", 5.0)
+    with judge() as (thread, told):
+        thread._last_took_s = 5.0  # as after a large site
+        newer = replace(HUT, name="Newer")
+        thread.judge(HUT, ("c1",))
+        first = told.next()
+        assert isinstance(first, Judged)
+        thread._last_took_s = 0.0
+        thread.judge(newer, ("c1",))
+        second, whole = told.next(), told.next()
+        assert isinstance(second, Judged)
+        assert second.site is newer
+        assert isinstance(whole, Assessed)
+        assert whole.site is newer
+
+
+def test_limits_that_are_not_there_are_told() -> None:
+    with judge() as (thread, told):
+        thread.judge(replace(HUT, limits="none such"), ())
+        trouble = told.next()
+        assert isinstance(trouble, Troubled)
+        assert "none such" in trouble.line
+        assert "\n" not in trouble.line
+        thread.judge(HUT, ())
+        assert isinstance(told.next(), Judged)
+
+
+def test_a_fault_of_the_judge_is_not_swallowed(monkeypatch: pytest.MonkeyPatch) -> None:
+    def broken(site: Site, limits: object) -> Callable[[], None]:
+        raise ZeroDivisionError
+
+    monkeypatch.setattr("rules.assess.prepare", broken)
+    with judge() as (thread, told):
+        thread.judge(HUT, ())
+        assert isinstance(told.next(), Crashed)
+    assert threading.active_count() >= 1
+
+
+def test_the_latest_visit_goes_by_order_then_by_time() -> None:
+    visits = (Visit(id="v", tag="two", walk_order=2.0), Visit(id="w", tag="one", walk_order=1.0))
+    assert latest_visit(replace(HUT, visits=visits)) == "two"
+    readings = tuple(
+        Reading(id=name, circuit_id="c1", visit=name, round="1", quantity="voltage", at="way", value=1, taken_at=at)
+        for name, at in (("late", "2026-05-01"), ("early", "2026-01-01"))
+    )
+    assert latest_visit(replace(HUT, visits=(), readings=readings)) == "late"
+    assert latest_visit(Site(name="x")) == ""
