@@ -11,7 +11,7 @@ from collections.abc import Sequence
 from dataclasses import replace
 from importlib.metadata import version
 
-from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, PointVoltage, Severity, Status
+from rules.assessment import Assessment, CircuitResult, Finding, LoadMargin, NotJudged, PointVoltage, Severity, Status
 from rules.case import CircuitCase, Context, case_of, measured_of, posed_by
 from rules.cautions import cautions_of
 from rules.checks.rc01_record_incomplete import gaps_of
@@ -19,6 +19,7 @@ from rules.consistency import problems
 from rules.diagnosis.diagnose import diagnose
 from rules.index import Index
 from rules.limits import Limits
+from rules.margins import margins_of
 from rules.network import network_of
 from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
@@ -119,6 +120,7 @@ def assess_circuit(
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
         causes=case.diagnosis.causes if case.diagnosis is not None else (),
         points=_points(case),
+        margins=_margins(case),
         service=service_of(case),
         findings=tuple(findings),
         not_judged=tuple(gaps),
@@ -146,6 +148,31 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
 def _weight(finding: Finding) -> tuple[int, bool]:
     """The most urgent first; of those alike, what was read before what the record alone says."""
     return finding.severity.rank, finding.rule in FROM_THE_RECORD
+
+
+def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
+    """The loads' margins, the worst case with what readings support."""
+
+    def volts(value: float | None) -> Figure | None:
+        return None if value is None else Figure(value, "V")
+
+    rows = []
+    for margin in margins_of(case):
+        load = margin.load
+        worst, lowest = case.worst.get(load.point), load.lowest_voltage_v
+        rows.append(
+            LoadMargin(
+                load=load.tag,
+                point=load.point,
+                design=volts(margin.design_v),
+                worst=worst,
+                lowest=volts(lowest),
+                margin=None if worst is None or lowest is None else Figure(worst.value - lowest, "V", worst.u),
+                below_highest=volts(margin.below_highest_v),
+                dip=volts(margin.peak.design_v) if margin.peak is not None else None,
+            )
+        )
+    return tuple(rows)
 
 
 def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:

@@ -190,6 +190,25 @@ class NextReading:
 
 
 @dataclass(frozen=True, slots=True)
+class LoadMargin:
+    """Voltage at one load, and how far it stays from what the load lives with; what is not known is ``None``."""
+
+    load: str
+    point: str
+    design: Figure | None = None
+    worst: Figure | None = None
+    """With the source at its lowest, hot conductors and what readings support."""
+    lowest: Figure | None = None
+    """The load's own."""
+    margin: Figure | None = None
+    """From ``worst`` down to ``lowest``; below zero where it is not kept."""
+    below_highest: Figure | None = None
+    """From the source's highest up to the load's own."""
+    dip: Figure | None = None
+    """At the load's peak current, from the design voltage."""
+
+
+@dataclass(frozen=True, slots=True)
 class CircuitResult:
     """What is said of one circuit on the visit that it is judged on."""
 
@@ -207,6 +226,8 @@ class CircuitResult:
     """Largest computed drop from the feeding board to a load at design current. [V]"""
     causes: tuple[Place, ...] = ()
     points: tuple[PointVoltage, ...] = ()
+    margins: tuple[LoadMargin, ...] = ()
+    """One for each load, in the order of their rows."""
     service: tuple[RunService, ...] = ()
     """Capacity and temperature in service of each run."""
     next_reading: NextReading | None = None
