@@ -33,4 +33,4 @@ def _line(margin: LoadMargin, name: int) -> Line:
 
 
 def _volts(figure: Figure | None) -> str:
-    return fit("not known" if figure is None else figure_words(figure), _CELLS, "right")
+    return " " + fit("not known" if figure is None else figure_words(figure), _CELLS - 1, "right")
