@@ -5,6 +5,7 @@ from __future__ import annotations
 from audit.tui.entry.fields import SITE, Field
 from rules.index import Index
 from rules.limits import Limits
+from rules.nominal import nominal_v
 from rules.record import Circuit, Row, Site, Source
 from rules.units import show, show_size
 
@@ -64,8 +65,6 @@ def assumed(field: Field, row: Row | Site, index: Index, limits: Limits | None) 
     if known is not None:
         return known
     if isinstance(row, Circuit) and field.name == "nominal_voltage_v":
-        from rules.network import nominal_v  # it brings numpy, for which the first screen does not wait
-
         volts = nominal_v(row, index)
         return "" if volts is None else f"{show(volts, 'V')}, of what feeds it"
     if isinstance(row, Circuit) and field.name == "allowed_drop_percent" and limits is not None:

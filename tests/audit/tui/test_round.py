@@ -67,7 +67,7 @@ async def test_the_verdict_follows_each_key_and_nothing_of_it_is_saved(hut: Path
         assert "11.5 V, computed 12.1" in walk.screen
         assert "voltage p1" not in values(hut)
         await walk.keys("backspace", "backspace", "backspace", "2", "full_stop", "2")
-        await walk.shows("as typed  ? measure")
+        await walk.shows("as typed  ✓ sound")
         await walk.keys("escape")
         assert "as typed" not in walk.screen
 
