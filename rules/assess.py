@@ -33,8 +33,12 @@ FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "NW01", "NW02")
 
 def assess(site: Site, limits: Limits) -> Assessment:
     """Everything that can be said of a site under its limits."""
-    context = prepare(site, limits)
-    index = context.index
+    return assess_prepared(prepare(site, limits))
+
+
+def assess_prepared(context: Context) -> Assessment:
+    """Everything that can be said of a prepared site."""
+    site, limits, index = context.site, context.limits, context.index
     findings, gaps = judge(SiteCase(context), "site")
     gaps = [*switched_off(limits), *gaps]
     for about, rows in (("source", index.walked_sources), ("board", index.walked_boards)):

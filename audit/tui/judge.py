@@ -76,7 +76,7 @@ class Judge(threading.Thread):
     def _judge(self, request: _Request) -> None:
         # Here and not above: numpy takes as long to import as the first screen takes to appear.
         from rules import limits
-        from rules.assess import assess, assess_circuit, prepare
+        from rules.assess import assess_circuit, assess_prepared, prepare
 
         try:
             in_force = limits.of(request.site)
@@ -87,7 +87,7 @@ class Judge(threading.Thread):
             if self._is_outdated(min(self._last_took_s, LONGEST_WAIT_S)):
                 return
             start = time.monotonic()
-            assessment = assess(request.site, in_force)
+            assessment = assess_prepared(context)
             self._last_took_s = time.monotonic() - start
             self._post(Assessed(request.site, context, assessment))
         except RulesError as error:

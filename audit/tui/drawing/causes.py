@@ -2,28 +2,29 @@
 
 from __future__ import annotations
 
-from audit.report.phrases import figure_words
+from rich.cells import cell_len
+
 from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece
-from audit.tui.drawing.walk import cause_words
 from rules.assessment import CircuitResult, Place
-from rules.record import Figure
+from rules.units import show
 
 LEAST_SHOWN = 0.01
 """Causes less probable than this are left out; the report has all of them."""
-_BAR = 20
+_NAME_CELLS = 36
+_PROBABILITY_CELLS = 11
 _EIGHTHS = " ▏▎▍▌▋▊▉█"
 
 
 def cause_lines(result: CircuitResult, width: int) -> list[Line]:
-    """One bar a cause, the likeliest first; nothing while causes are not judged."""
+    """One bar a cause, the likeliest first; nothing where readings say nothing of causes."""
     shown = [place for place in result.causes if place.probability >= LEAST_SHOWN]
     if not shown:
         return []
-    cells = min(34, max(len(cause_words(place)) for place in shown))
+    cells = min(_NAME_CELLS, max(cell_len(_name(place)) for place in shown))
     return [(), *(_cause_line(place, cells, width) for place in shown)]
 
 
-def probability_bar(probability: float, cells: int = _BAR) -> str:
+def probability_bar(probability: float, cells: int) -> str:
     """
     A bar in eighths of a cell.
 
@@ -35,14 +36,19 @@ def probability_bar(probability: float, cells: int = _BAR) -> str:
     return ("█" * full + (_EIGHTHS[part] if part else "")).ljust(cells)
 
 
+def _name(place: Place) -> str:
+    """Cause, place, and how where that is known: ``bad connection, run 2``."""
+    return ", ".join(part for part in (place.cause, place.where, place.what) if part)
+
+
 def _cause_line(place: Place, cells: int, width: int) -> Line:
+    from rules.verdict import probability_words  # who judged has it loaded; the first screen does not wait for it
+
     ohms = ""
     if place.best_ohm is not None and place.low_ohm is not None and place.high_ohm is not None:
-        best, low, high = (figure_words(Figure(ohm, "ohm")) for ohm in (place.best_ohm, place.low_ohm, place.high_ohm))
-        ohms = f"   {best} ({low} to {high})"
+        best, low, high = (show(ohm, "ohm", digits=3) for ohm in (place.best_ohm, place.low_ohm, place.high_ohm))
+        ohms = f"{best} ({low} to {high})"
     role = "strong" if place.probability >= 0.5 else ""
-    bar = Piece(probability_bar(place.probability), "read")
-    return cut(
-        (piece(f"   {fit(cause_words(place), cells)} ", role), bar, piece(f" {place.probability:.2f}{ohms}", role)),
-        width,
-    )
+    bar = Piece(probability_bar(place.probability, 20 if width > 100 else 12), "bar")
+    words = piece(f" {fit(probability_words(place.probability), _PROBABILITY_CELLS)} {ohms}", role)
+    return cut((piece(f"   {fit(_name(place), cells)} ", role), bar, words), width)

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterable
 
 from audit.report.phrases import finding_place, number_words
-from audit.report.sections import group_gaps
 from audit.tui.drawing.pieces import Line, Piece, cut, piece, wrapped
 from rules.assessment import Finding, NotJudged, Severity
 
@@ -46,6 +45,8 @@ def detail_lines(finding: Finding, width: int) -> list[Line]:
 
 def gap_lines(gaps: Iterable[NotJudged], width: int) -> list[Line]:
     """What could not be judged: a gap is not a pass."""
+    from audit.report.sections import group_gaps  # with the judge's modules, for which the first screen does not wait
+
     lines: list[Line] = []
     for rules, why, where in group_gaps(gaps):
         lines += wrapped(f"{rules}: {why} ({where})", width - 1, 3, "quiet")

@@ -24,7 +24,7 @@ from audit.tui.drawing.pieces import Line, Piece, apart, cut, piece, wrapped
 from audit.tui.drawing.profile import profile_lines, profile_of
 from audit.tui.drawing.record import record_lines
 from audit.tui.drawing.rounds import round_lines
-from audit.tui.drawing.sketch import sketch_lines
+from audit.tui.drawing.sketch import Bad, sketch_lines
 from audit.tui.state import Survey
 from rules.assessment import CircuitResult, Status
 from rules.record import Circuit, Figure, Reading
@@ -137,14 +137,17 @@ def _sketch(survey: Survey, view: CircuitView, width: int) -> list[Line]:
     return sketch_lines(drawn.paths, above, below, width, _bad_places(survey, result))
 
 
-def _bad_places(survey: Survey, result: CircuitResult) -> dict[str, str]:
-    """Words for the likeliest bad place, by the point where its run ends."""
+def _bad_places(survey: Survey, result: CircuitResult) -> dict[str, Bad]:
+    """The likeliest bad place, by the point where its run ends."""
     leading = max(result.causes, key=lambda place: place.probability, default=None)
     if leading is None or not leading.where.startswith("run "):
         return {}
-    number = leading.where.split()[1]
+    from rules.verdict import probability_words  # who judged has it loaded; the first screen does not wait for it
+
+    _, number, *rest = leading.where.split()
+    mark = Bad(probability_words(leading.probability), at_start="start" in rest)
     runs = survey.index.runs_of(result.circuit_id)
-    return {survey.index.end_of(run): f"{leading.probability:.2f}" for run in runs if str(run.number) == number}
+    return {survey.index.end_of(run): mark for run in runs if str(run.number) == number}
 
 
 def _computed(view: CircuitView) -> Mapping[str, Figure]:

@@ -26,13 +26,38 @@ NODE, BRANCH, CABLE, THIN, BAD = "●", "├", "━", "─", "╳"
 
 
 @dataclass(frozen=True, slots=True)
+class Bad:
+    """Something wrong with a run: a sign on the line, and words beneath it."""
+
+    words: str
+    at_start: bool = False
+    """At the end of the run that current comes from; else at, or anywhere before, the other."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Stretch:
+    """What lies between two nodes of a row."""
+
+    start: int
+    end: int
+    """Columns of its nodes."""
+    words: str
+    is_device: bool
+    bad: Bad | None
+
+    @property
+    def bad_column(self) -> int:
+        """Where the sign of what is wrong stands."""
+        return self.start + 2 if self.bad is not None and self.bad.at_start else self.end - 2
+
+
+@dataclass(frozen=True, slots=True)
 class _Row:
     """One row of a path: its nodes with their columns, and the stretches between them."""
 
     nodes: tuple[tuple[int, str], ...]
     """Column and name."""
-    stretches: tuple[tuple[int, int, str, bool, bool], ...]
-    """First column, end, words, through the device, bad."""
+    stretches: tuple[_Stretch, ...]
     is_continued: bool
 
 
@@ -41,7 +66,7 @@ def sketch_lines(
     read: Mapping[str, str],
     computed: Mapping[str, str],
     width: int,
-    bad: Mapping[str, str] | None = None,
+    bad: Mapping[str, Bad] | None = None,
 ) -> list[Line]:
     """
     The paths of a circuit, one beneath the other.
@@ -55,7 +80,7 @@ def sketch_lines(
     width : int
         Cells of a line; a path too long goes on in a further row.
     bad : mapping
-        Words for the end of a stretch at which something is wrong, by the point where the stretch ends.
+        What is wrong with stretches, by the point where each ends.
     """
     out: list[Line] = []
     for number, path in enumerate(paths):
@@ -69,7 +94,7 @@ def sketch_lines(
 
 
 def _rows(
-    path: Path, read: Mapping[str, str], computed: Mapping[str, str], width: int, bad: Mapping[str, str]
+    path: Path, read: Mapping[str, str], computed: Mapping[str, str], width: int, bad: Mapping[str, Bad]
 ) -> Iterable[_Row]:
     """The path cut where it would leave the screen, each row spread over it."""
     names = [stop.point for stop in path.stops]
@@ -88,11 +113,11 @@ def _rows(
         while last < len(lengths) and start + sum(lengths[first : last + 1]) + half[last + 1] <= width:
             last += 1
         spread = _spread(lengths[first:last], width - start - half[last], is_device=path.through_device and first == 0)
-        nodes, stretches, column = [(start, names[first])], list[tuple[int, int, str, bool, bool]](), start
+        nodes, stretches, column = [(start, names[first])], list[_Stretch](), start
         for n, length in enumerate(spread, first):
             end = column + length
-            through = path.through_device and n == 0
-            stretches.append((column, end, path.stretches[n], through, names[n + 1] in bad))
+            is_device = path.through_device and n == 0
+            stretches.append(_Stretch(column, end, path.stretches[n], is_device, bad.get(names[n + 1])))
             nodes.append((end, names[n + 1]))
             column = end
         yield _Row(tuple(nodes), tuple(stretches), first > 0)
@@ -115,14 +140,14 @@ def _row_lines(
     read: Mapping[str, str],
     computed: Mapping[str, str],
     shown: set[str],
-    bad: Mapping[str, str],
+    bad: Mapping[str, Bad],
     *,
     is_branch: bool,
 ) -> list[Line]:
     above = _placed([(column, read[name]) for column, name in row.nodes if name in shown and name in read])
     names = _placed([(column, _name(name)) for column, name in row.nodes])
     below = _placed([(column, computed[name]) for column, name in row.nodes if name in shown and name in computed])
-    words = _placed([(column, bad[name]) for column, name in row.nodes if name in shown and name in bad])
+    words = _placed([(one.bad_column, one.bad.words) for one in row.stretches if one.bad is not None])
     lines: list[Line] = []
     if above.strip():
         lines.append(_labelled("read", above, "read"))
@@ -147,21 +172,25 @@ def _conductor(row: _Row, *, is_branch: bool) -> Line:
     lead = "┄" if row.is_continued else " "
     parts.append(Piece(" " * (first - 2) + lead * 2, "quiet"))
     parts.append(Piece(BRANCH if is_branch else NODE))
-    for start, end, words, through, is_bad in row.stretches:
-        room = end - start - 1
-        if through:
-            text = fit(clean(words), min(cell_len(clean(words)), room - 4))
-            left = max(1, (room - cell_len(text) - 2) // 2)
-            right = max(1, room - cell_len(text) - 2 - left)
-            parts += [Piece(THIN * left), Piece("┤"), piece(text), Piece("├"), Piece(THIN * right)]
-        else:
-            text = fit(clean(words), min(cell_len(clean(words)), max(1, room - 4)))
-            left = max(1, (room - cell_len(text) - 2) // 2)
-            right = max(1, room - cell_len(text) - 2 - left)
-            tail = [Piece(CABLE * (right - 2)), Piece(BAD, "act"), Piece(CABLE)] if is_bad and right > 2 else []
-            parts += [Piece(CABLE * left + " "), piece(text), Piece(" "), *(tail or [Piece(CABLE * right)])]
+    for stretch in row.stretches:
+        parts += _stretch(stretch)
         parts.append(Piece(NODE))
     return tuple(parts)
+
+
+def _stretch(stretch: _Stretch) -> list[Piece]:
+    room = stretch.end - stretch.start - 1
+    text = fit(clean(stretch.words), min(cell_len(clean(stretch.words)), max(1, room - 4)))
+    left = max(1, (room - cell_len(text) - 2) // 2)
+    right = max(1, room - cell_len(text) - 2 - left)
+    if stretch.is_device:
+        return [Piece(THIN * left), Piece("┤"), piece(text), Piece("├"), Piece(THIN * right)]
+    before, after = [Piece(CABLE * left)], [Piece(CABLE * right)]
+    if stretch.bad is not None and stretch.bad.at_start and left > 2:
+        before = [Piece(CABLE), Piece(BAD, "act"), Piece(CABLE * (left - 2))]
+    elif stretch.bad is not None and right > 2:
+        after = [Piece(CABLE * (right - 2)), Piece(BAD, "act"), Piece(CABLE)]
+    return [*before, Piece(" "), piece(text), Piece(" "), *after]
 
 
 def _placed(texts: Iterable[tuple[int, str]]) -> str:

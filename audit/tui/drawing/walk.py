@@ -16,7 +16,7 @@ from audit.report.phrases import drop_words, status_words
 from audit.report.records import board_title
 from audit.tui.drawing.pieces import Line, Piece, apart, cut, fit, line, piece, width_of
 from audit.tui.state import Survey
-from rules.assessment import CircuitResult, Place, Status
+from rules.assessment import CircuitResult, Status
 from rules.index import Index
 from rules.record import Board, Circuit, Feed, Source
 
@@ -123,16 +123,9 @@ def reason(result: CircuitResult) -> str:
     leading = max(result.causes, key=lambda place: place.probability, default=None)
     if leading is None or leading.cause == "as recorded":
         return result.why
-    return f"{cause_words(leading)}, {leading.probability:.2f} · {result.why}"
+    from rules.verdict import cause_words  # who judged has it loaded; the first screen does not wait for it
 
-
-def cause_words(place: Place) -> str:
-    """A cause with its place: ``bad connection in run 2``."""
-    if not place.where:
-        return place.cause
-    return (
-        f"{place.cause} {'in' if place.where.startswith('run') and place.where.count(' ') == 1 else 'at'} {place.where}"
-    )
+    return f"{cause_words(leading)} · {result.why}"
 
 
 def head_line(survey: Survey, width: int, *, read_only: bool) -> Line:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from audit.report.phrases import finding_place
-from audit.report.sections import by_severity
 from audit.tui.drawing.findings import detail_lines, gap_lines, severity_piece
 from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece
 from audit.tui.drawing.walk import CHOSEN
@@ -27,7 +26,7 @@ class FindingList(PickList):
         """Show another assessment; the cursor stays at its finding."""
         chosen = self.chosen
         self._assessment = assessment
-        self._findings = by_severity(assessment.findings)
+        self._findings = sorted(assessment.findings, key=lambda finding: finding.severity.rank)
         self._draw_gaps()
         ids = [finding.id for finding in self._findings]
         self.renewed(ids.index(chosen.id) if chosen is not None and chosen.id in ids else 0)

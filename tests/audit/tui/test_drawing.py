@@ -21,7 +21,7 @@ from audit.tui.drawing.page import page_lines, view_of
 from audit.tui.drawing.pieces import Line, Piece, apart, cut, fit, line, text_of, width_of, wrapped
 from audit.tui.drawing.profile import profile_lines, profile_of
 from audit.tui.drawing.rows import circuit_items, item_line, row_title, row_words, site_items
-from audit.tui.drawing.sketch import sketch_lines
+from audit.tui.drawing.sketch import Bad, sketch_lines
 from audit.tui.drawing.walk import head_line, reason_line, stop_line, tag_cells, walk_stops
 from audit.tui.entry.fields import row_of
 from audit.tui.state import Survey, latest_visit, read_by_visit
@@ -142,7 +142,7 @@ def two_runs() -> CircuitPath:
 def test_the_sketch_has_what_was_read_above_what_was_computed() -> None:
     read = {"way": "54.05 V", "p1": "52.96 V", "p2": "50.15 V"}
     computed = {"way": "54.05 V", "p1": "52.97 ± 0.03 V", "p2": "52.02 ± 0.05 V"}
-    above, conductor, names, below, bad = texts(sketch_lines([two_runs()], read, computed, 100, {"p2": "0.93"}))
+    above, conductor, names, below, bad = texts(sketch_lines([two_runs()], read, computed, 100, {"p2": Bad("0.93")}))
     assert above.split() == ["read", "54.05", "V", "52.96", "V", "50.15", "V"]
     assert below.startswith(" computed")
     assert "┤breaker C 16 A├" in conductor
@@ -151,6 +151,8 @@ def test_the_sketch_has_what_was_read_above_what_was_computed() -> None:
     for name in ("bus", "way", "p1", "p2"):
         middle = names.index(name) + len(name) // 2
         assert conductor[middle - 1 : middle + 2].count("●") == 1
+    start = texts(sketch_lines([two_runs()], {}, {}, 100, {"p1": Bad("0.6", at_start=True)}))
+    assert "●━╳━" in start[0]
     for value in ("52.96 V", "50.15 V"):
         assert abs(above.index(value) + 3 - names.index({"52.96 V": "p1", "50.15 V": "p2"}[value])) <= 2
 
@@ -254,16 +256,16 @@ def test_causes_are_bars_with_their_place_and_resistance() -> None:
     result = replace(survey.results["c1"], causes=causes)
     blank, first, second = texts(cause_lines(result, 80))
     assert blank == ""
-    assert first.startswith("   bad connection in run 1 ")
-    assert first.endswith(" 0.93   155 mΩ (151 mΩ to 159 mΩ)")
-    assert first.count("█") == 18
+    assert first.startswith("   bad connection, run 1 ")
+    assert first.endswith(" 0.93        155 mΩ (151 mΩ to 159 mΩ)")
+    assert first.count("█") == 11
     assert second.endswith(" 0.06")
     survey = replace(survey, results={**survey.results, "c1": result})
     view = view_of(survey, "c1")
     assert view is not None
     assert any("━╳━●" in text for text in texts(page_lines(survey, view, 80, 24)))
     stop = next(stop for stop in walk_stops(survey.index) if stop.id == "c1")
-    assert text_of(reason_line(stop, survey, 80)).strip().startswith("bad connection in run 1, 0.93 · ")
+    assert text_of(reason_line(stop, survey, 80)).strip().startswith("bad connection in run 1 (0.93) · ")
 
 
 # --- what is next
