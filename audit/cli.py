@@ -16,10 +16,17 @@ from collections.abc import Sequence
 import click
 
 COMMANDS = {
+    "backup": "copy a site file, safe while others save in it",
     "check": "run every rule on a site and print the findings",
-    "demo": "copy an invented sample site here and check it",
+    "demo": "make a site file from an invented sample site and open it",
+    "drop": "compute the drop of one run, without a site",
+    "history": "who changed what in a site file, and when",
+    "intake": "take a site folder or single tables into a site file",
     "report": "write the audit report of a site",
+    "survey": "open the terminal interface on a site file",
     "tables": "show the reference data in use, with source and status",
+    "unload": "write a site file as a site folder",
+    "verify": "look whether a site file is whole",
 }
 """Name and one line of each command, so that help imports none of them."""
 
@@ -53,16 +60,28 @@ class LazyGroup(click.Group):
             formatter.write_dl(sorted(COMMANDS.items()))
 
 
-@click.group(cls=LazyGroup, context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
+@click.group(
+    cls=LazyGroup,
+    invoke_without_command=True,
+    context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
+)
 @click.version_option(package_name="ohmwalk", message="%(prog)s %(version)s")
-def group() -> None:
+@click.pass_context
+def group(context: click.Context) -> int:
     """
     Audit d.c. distribution in existing buildings: compare measured with computed voltage drop, with the
     doubt of both.
 
     What is reported is what was recorded and measured. It never says that something is safe: local code and a
     licensed person decide.
+
+    Without a command: the site files opened last, one of them to be chosen.
     """
+    if context.invoked_subcommand is None:
+        from audit.recent import choose_recent
+
+        return choose_recent()
+    return 0
 
 
 def main(args: Sequence[str] | None = None) -> None:
@@ -73,6 +92,7 @@ def main(args: Sequence[str] | None = None) -> None:
 def run(args: Sequence[str] | None = None) -> int:
     """Run a command; its exit status."""
     from audit.errors import AuditError
+    from db.errors import SiteError
     from rules.errors import RulesError
 
     try:
@@ -88,6 +108,8 @@ def run(args: Sequence[str] | None = None) -> int:
         return _complain([f"{where}: {error.format_message()}"], WRONG_USE)
     except AuditError as error:
         return _complain(error.lines, error.exit_status)
+    except SiteError as error:
+        return _complain(str(error).splitlines(), error.exit_status)
     except RulesError as error:
         return _complain(str(error).splitlines(), WRONG_USE)
     except BrokenPipeError:
@@ -103,8 +125,10 @@ def run(args: Sequence[str] | None = None) -> int:
 
 
 def _complain(lines: Sequence[str], status: int) -> int:
+    from rules.text import clean
+
     for line in lines:
-        click.echo(line, err=True)
+        click.echo(clean(line), err=True)
     return status
 
 

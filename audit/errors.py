@@ -5,7 +5,8 @@ AuditError
 ├── WrongUse        an option or name that a command cannot take
 ├── IntakeRefused   a site folder that does not hold together: a line for each problem, all in one go
 ├── TargetExists    something stands where a file or folder is to be written
-└── WriteFailed     it could not be written: no permission, no space
+├── WriteFailed     it could not be written: no permission, no space
+└── SiteDamaged     a site file that is not whole
 """
 
 from __future__ import annotations
@@ -46,3 +47,9 @@ class TargetExists(AuditError):
 
 class WriteFailed(AuditError):
     """A file or folder that could not be written."""
+
+
+class SiteDamaged(AuditError):
+    """A site file that can be opened but is not whole."""
+
+    exit_status = 3

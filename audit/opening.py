@@ -7,6 +7,7 @@ from pathlib import Path
 
 from audit.errors import WrongUse
 from audit.intake.folder import read_folder
+from audit.site_file import site_file
 from rules import limits
 from rules.assess import assess
 from rules.assessment import Assessment
@@ -16,13 +17,39 @@ from rules.text import nearest
 
 
 def open_site(path: Path) -> Site:
-    """The record of a site folder."""
-    return read_folder(path)
+    """
+    The record of a site file or a site folder; a file is only read, its bytes are left alone.
+
+    Raises
+    ------
+    IntakeRefused
+        If it is a folder that does not hold together.
+    SiteError
+        If it is a file, but none of a site, or there is nothing of that name.
+    """
+    if path.is_dir():
+        return read_folder(path)
+    with site_file(path) as store:
+        return store.site()
 
 
-def judge_site(site: Site, visit: str | None = None) -> Assessment:
+def settings_place(path: Path) -> str:
+    """Where the settings of what ``open_site`` opened stand: ``site.toml``, or the site file."""
+    return "site.toml" if path.is_dir() else str(path)
+
+
+def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -> Assessment:
     """
     Assess a site, on one visit if named.
+
+    Parameters
+    ----------
+    site : Site
+        The record.
+    visit : str, optional
+        The visit to judge on; each circuit's latest unless named.
+    place : str
+        Where the settings stand, for what is wrong with the limits that they name.
 
     Raises
     ------
@@ -37,7 +64,7 @@ def judge_site(site: Site, visit: str | None = None) -> Assessment:
     try:
         in_force = limits.of(site)
     except ProfileError as error:
-        raise WrongUse(*(f"site.toml:limits: {line}" for line in str(error).splitlines())) from None
+        raise WrongUse(*(f"{place}:limits: {line}" for line in str(error).splitlines())) from None
     return assess(site, in_force)
 
 

@@ -1,50 +1,86 @@
-"""The text of ``ohmwalk tables``."""
+"""The text of ``ohmwalk tables``: plain in a pipe, within 80 columns, in the encoding of the output."""
 
 from __future__ import annotations
 
-from rich.console import Console
-from rich.table import Table
-from rich.text import Text
+import sys
+from typing import TextIO
 
 from audit.errors import WrongUse
-from rules.tables.loader import Group, groups
+from audit.report.text import Page, console_for
+from rules.tables.loader import Cell, Group, groups
 from rules.text import nearest
 
+DIGITS = 7
+"""Significant digits of a figure: more than any print has, fewer than would pass for knowledge."""
+GAP = 2
+"""Blanks between two columns."""
 
-def print_tables() -> None:
-    """One entry a group: name, title, and where it comes from."""
-    console = Console(highlight=False)
+
+def print_tables(stream: TextIO | None = None) -> None:
+    """One entry a group: its name, what it holds, and where that comes from."""
+    page = _page(stream)
+    widest = max(len(group.name) for group in groups())
     for group in groups():
-        console.print(Text(group.name, style="bold"), Text(group.title))
-        console.print(Text(f"    {_origin(group)}", style="dim"))
-    console.print(Text("\nohmwalk tables NAME prints the values of one."))
+        page.hang(f"{group.name.ljust(widest)}  ", group.title, "bold")
+        page.line(_origin(group), indent=widest + GAP)
+    page.line()
+    page.line("ohmwalk tables NAME prints the values of one.")
 
 
-def print_table(name: str) -> None:
-    """All values of one group."""
+def print_table(name: str, stream: TextIO | None = None) -> None:
+    """
+    All values of one group.
+
+    Raises
+    ------
+    WrongUse
+        If there is no group of that name.
+    """
     known = {group.name: group for group in groups()}
     if name not in known:
         close = nearest(name, list(known))
         meant = f"; did you mean {close!r}?" if close else ""
         raise WrongUse(f"no table {name!r}{meant}; there are: {', '.join(known)}")
     group = known[name]
-    console = Console(highlight=False)
-    console.print(Text(group.title, style="bold"))
-    console.print(Text(_origin(group)))
-    if group.unit:
-        console.print(Text(f"unit: {group.unit}"))
-    table = Table(box=None, pad_edge=False)
-    for title in group.columns:
-        table.add_column(title)
-    for row in group.rows:
-        table.add_row(
-            *(Text("–" if cell is None else cell if isinstance(cell, str) else f"{cell:.10g}") for cell in row)
-        )
-    console.print(table)
+    page = _page(stream)
+    page.line(group.title, "bold")
+    page.pairs(
+        (("source", group.source), ("edition", group.edition), ("status", group.status), ("unit", group.unit)), 0
+    )
+    page.line()
+    for number, row in enumerate(_grid(group)):
+        page.line(row, "bold" if number == 0 else "")
     if group.note:
-        console.print(Text(group.note))
+        page.line()
+        page.line(group.note)
+
+
+def _page(stream: TextIO | None) -> Page:
+    out = sys.stdout if stream is None else stream
+    return Page(console_for(out), getattr(out, "encoding", None) or "utf-8")
 
 
 def _origin(group: Group) -> str:
-    edition = f", {group.edition}" if group.edition else ""
-    return f"{group.source}{edition} · {group.status}"
+    edition = f"edition {group.edition}" if group.edition[:1].isdigit() else group.edition
+    return f"{group.source} · {edition} · {group.status}"
+
+
+def _grid(group: Group) -> list[str]:
+    """Header and rows as aligned lines: texts to the left, numbers to the right."""
+    shown = [list(group.columns), *([_shown(cell) for cell in row] for row in group.rows)]
+    widths = [max(len(texts[place]) for texts in shown) for place in range(len(group.columns))]
+    left = [any(isinstance(row[place], str) for row in group.rows) for place in range(len(group.columns))]
+    lines = []
+    for texts in shown:
+        cells = zip(texts, widths, left, strict=True)
+        lines.append(
+            (" " * GAP).join(text.ljust(width) if to_left else text.rjust(width) for text, width, to_left in cells)
+        )
+    return lines
+
+
+def _shown(cell: Cell) -> str:
+    """A value as people read it; a gap in the source as a dash."""
+    if cell is None:
+        return "–"
+    return cell if isinstance(cell, str) else f"{cell:.{DIGITS}g}"

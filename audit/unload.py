@@ -19,6 +19,7 @@ from rules.index import Index
 from rules.problems.settings import SETTINGS, is_profile_file
 from rules.record import TABLES, Row, Run, Site, columns
 from rules.references import feed_text, feeds_text
+from rules.text import clean
 from rules.units import plain
 
 _OUR_FILES = frozenset({"site.toml", *(f"{table}.csv" for table in TABLES)})
@@ -91,10 +92,14 @@ def _check_target(folder: Path, overwrite: bool) -> None:
         return
     if not overwrite:
         raise TargetExists(folder)
-    names = {path.name for path in folder.iterdir()} if folder.is_dir() else {folder.name}
-    own = {name for name in names if name in _OUR_FILES or (name.endswith(".toml") and "site.toml" in names)}
-    if foreign := sorted(names - own):
-        raise WriteFailed(f"{folder} holds {foreign[0]}, which is no part of a site folder; accepted: another name")
+    if not folder.is_dir():
+        raise WriteFailed(f"{folder} is a file, which no folder overwrites; accepted: another name")
+    names = {path.name for path in folder.iterdir()}
+    for path in sorted(folder.iterdir()):
+        is_profile = path.suffix == ".toml" and "site.toml" in names
+        if not path.is_file() or not (path.name in _OUR_FILES or is_profile):
+            what = f"{folder} holds {clean(path.name)}, which is no part of a site folder"
+            raise WriteFailed(f"{what}; accepted: another name")
 
 
 def _move(beside: Path, folder: Path) -> None:
@@ -115,7 +120,7 @@ def _move(beside: Path, folder: Path) -> None:
 def _table_text(table: str, index: Index) -> str:
     """One table as CSV."""
     rows = index.site.table(table)
-    cells_of = {column: [_cell(row, name, column, index) for row in rows] for name, column in columns(table)}
+    cells_of = {column: [cell_text(row, name, column, index) for row in rows] for name, column in columns(table)}
     kept = [column for column, cells in cells_of.items() if column.header or any(cells)]
     out = io.StringIO()
     writer = csv.writer(out, lineterminator="\n")
@@ -124,8 +129,8 @@ def _table_text(table: str, index: Index) -> str:
     return out.getvalue()
 
 
-def _cell(row: Row, name: str, column: Column, index: Index) -> str:
-    """One cell as it would be typed."""
+def cell_text(row: Row, name: str, column: Column, index: Index) -> str:
+    """One cell as it would be typed; ``index`` is that of the row's site."""
     typed = row.as_typed(name) if row.typed else None
     if typed is not None:
         return typed
@@ -170,6 +175,16 @@ def _settings_text(site: Site) -> str:
     if site.prior:
         lines += ["", "[prior]", *(f"{_key(cause)} = {_toml(share)}" for cause, share in site.prior)]
     return "\n".join(lines) + "\n"
+
+
+def setting_text(site: Site, name: str) -> str:
+    """One setting as it would be typed, by its field: the shares of ``prior`` in a row, an own profile's text as it is."""
+    value = dict(site.typed).get(name, getattr(site, name))
+    if value is None:
+        return ""
+    if isinstance(value, tuple):
+        return ", ".join(f"{_key(cause)} = {plain(share)}" for cause, share in value)
+    return plain(value) if isinstance(value, float) else str(value)
 
 
 def _key(cause: str) -> str:

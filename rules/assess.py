@@ -12,7 +12,7 @@ from dataclasses import replace
 from importlib.metadata import version
 
 from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, PointVoltage, Severity, Status
-from rules.case import CircuitCase, Context, case_of, measured_of, posed_by
+from rules.case import CircuitCase, Context, case_of, measured_of, posed_by, unused_readings
 from rules.cautions import cautions_of
 from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
@@ -24,7 +24,10 @@ from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
 from rules.rule import BoardCase, SiteCase, judge, switched_off
 from rules.runs import figures
+from rules.service import service_of
 from rules.verdict import agrees, unsettled, unsound
+
+FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01")
 
 
 def assess(site: Site, limits: Limits) -> Assessment:
@@ -73,9 +76,14 @@ def prepare(site: Site, limits: Limits) -> Context:
         problems=problems(site),
     )
     measured = {circuit.id: measured_of(context, circuit) for circuit in site.circuits}
-    posed = {id_: problem for id_, side in measured.items() if (problem := posed_by(context, side)) is not None}
-    diagnoses = dict(zip(posed, diagnose(list(posed.values()), limits), strict=True))
-    return replace(context, measured=measured, diagnoses=diagnoses)
+    posed = {id_: posed_by(context, side) for id_, side in measured.items()}
+    some = {id_: problem for id_, problem in posed.items() if problem is not None}
+    return replace(
+        context,
+        measured=measured,
+        diagnoses=dict(zip(some, diagnose(list(some.values()), limits), strict=True)),
+        unused={id_: names for id_, side in measured.items() if (names := unused_readings(side, posed[id_]))},
+    )
 
 
 def assess_circuit(
@@ -116,6 +124,7 @@ def assess_circuit(
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
         causes=case.diagnosis.causes if case.diagnosis is not None else (),
         points=_points(case),
+        service=service_of(case),
         findings=tuple(findings),
         not_judged=tuple(gaps),
     )
@@ -125,7 +134,7 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
     """The first that holds, with its reason."""
     urgent = [finding for finding in findings if finding.severity in (Severity.IMMEDIATE, Severity.SOON)]
     if urgent:
-        return Status.ACT, urgent[0].why
+        return Status.ACT, min(urgent, key=_weight).why
     gaps = gaps_of(case)
     if gaps:
         return Status.INCOMPLETE, gaps[0][1]
@@ -134,9 +143,14 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
         return Status.MEASURE, open_
     watched = [finding for finding in findings if finding.severity is Severity.WATCH]
     if watched:
-        return Status.WATCH, watched[0].why
+        return Status.WATCH, min(watched, key=_weight).why
     against = unsound(case)
     return (Status.MEASURE, against) if against else (Status.SOUND, agrees(case))
+
+
+def _weight(finding: Finding) -> tuple[int, bool]:
+    """The most urgent first; of those alike, what was read before what the record alone says."""
+    return finding.severity.rank, finding.rule in FROM_THE_RECORD
 
 
 def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:

@@ -157,6 +157,25 @@ class PointVoltage:
 
 
 @dataclass(frozen=True, slots=True)
+class RunService:
+    """One run at its design current: what it may carry and how warm that makes it; no verdict."""
+
+    run: str
+    current: Figure | None
+    """At design; ``None`` where it is not known."""
+    ampacity: Figure | None
+    """As installed; ``None`` where no table has the case."""
+    temperature: Figure | None
+    """Of the conductor in service; ``None`` where it is not known or above what its insulation stands."""
+    basis: str
+    """Column, table and edition of the capacity."""
+    assumed: tuple[str, ...]
+    """What the record does not say and was taken instead."""
+    gap: str
+    """Why something is not known; empty where all is."""
+
+
+@dataclass(frozen=True, slots=True)
 class NextReading:
     """The reading to take next; filled by the diagnosis."""
 
@@ -188,6 +207,8 @@ class CircuitResult:
     """Largest computed drop from the feeding board to a load at design current. [V]"""
     causes: tuple[Place, ...] = ()
     points: tuple[PointVoltage, ...] = ()
+    service: tuple[RunService, ...] = ()
+    """Capacity and temperature in service of each run."""
     next_reading: NextReading | None = None
     findings: tuple[Finding, ...] = ()
     not_judged: tuple[NotJudged, ...] = ()

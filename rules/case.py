@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
@@ -25,6 +26,8 @@ from rules.rounds import Round, Tree, drop_of, judged, rounds_of, temperature_re
 from rules.runs import Carrying, RunFigures, record_variance
 from rules.worst import largest_current_a, worst_of
 
+RUN = re.compile(r"run \d+")
+
 GAP_COLLAPSE = "the loads behind this source cannot be supplied: the voltage collapses"
 
 
@@ -44,6 +47,8 @@ class Context:
     """By circuit id: what was read on the visit that it is judged on."""
     diagnoses: Mapping[str, Diagnosis] = field(default_factory=dict)
     """By circuit id, of those whose readings say something."""
+    unused: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    """By circuit id: readings that nothing makes use of."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -104,6 +109,8 @@ class CircuitCase:
     """Voltage by point with the source at its lowest, hot conductors and what readings support. [V]"""
     largest_current_a: Mapping[str, float]
     """By the point at which a branch arrives (``way``: the device), at design and the voltage that makes it largest."""
+    unused: tuple[str, ...] = ()
+    """Readings of the visit that nothing here makes use of."""
 
     @property
     def tag(self) -> str:
@@ -122,15 +129,18 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
     """
     index, limits = context.index, context.limits
     known = context.measured.get(circuit.id) if readings is None else None
-    measured = measured_of(context, circuit, readings) if known is None else known
-    diagnosis = context.diagnoses.get(circuit.id)
     if known is None:
+        measured = measured_of(context, circuit, readings)
         problem = posed_by(context, measured)
         diagnosis = diagnose([problem], limits)[0] if problem is not None else None
-    tree, rounds = measured.tree, measured.rounds
+        unused = unused_readings(measured, problem)
+    else:
+        measured, diagnosis = known, context.diagnoses.get(circuit.id)
+        unused = context.unused.get(circuit.id, ())
+    tree, rounds, nominal = measured.tree, measured.rounds, nominal_v(circuit, index)
     drop, gap = None, "nothing was read" if not measured.readings else ""
     if measured.readings:
-        against = {this.name: impossible(this, tree, limits) for this in rounds}
+        against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
         possible = [this for this in rounds if not against[this.name]]
         try:
             if rounds and not possible:
@@ -142,7 +152,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
     return CircuitCase(
         context=context,
         circuit=circuit,
-        nominal_v=nominal_v(circuit, index),
+        nominal_v=nominal,
         allowed_drop_percent=limits["drop.allowed_percent"] if allowed is None else allowed,
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
@@ -154,6 +164,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         diagnosis=diagnosis,
         worst=_worst(context, circuit, diagnosis),
         largest_current_a=_largest_currents(context, circuit),
+        unused=unused,
     )
 
 
@@ -178,6 +189,16 @@ def posed_by(context: Context, measured: Measured) -> Posed | None:
     hot_ohm = {point: limits["heat.limit_w"] / a**2 if a else math.inf for point, a in amps.items()}
     return_leg = _return_leg(circuit, context.index)
     return problem_of(measured.rounds, measured.tree, limits, hot_ohm, return_leg, nominal_v(circuit, context.index))
+
+
+def unused_readings(measured: Measured, problem: Posed | None) -> tuple[str, ...]:
+    """Names of the visit's readings that enter neither a drop nor the diagnosis."""
+    posed = problem.used if problem is not None else frozenset()
+    return tuple(
+        dict.fromkeys(
+            _name(row) for row in measured.readings if row.id not in posed and not _is_used(row, measured.rounds)
+        )
+    )
 
 
 def _largest_currents(context: Context, circuit: Circuit) -> dict[str, float]:
@@ -209,6 +230,23 @@ def _return_leg(circuit: Circuit, index: Index) -> str:
         feeds = here.fed_by if isinstance(here, Board) else (here.fed_from,)
         here = index.named(feeds[0]) if feeds and feeds[0] is not None else None
     return "positive" if isinstance(here, Source) and here.earthing == "positive earthed" else "negative"
+
+
+def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
+    """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
+    this = next(round_ for round_ in rounds if round_.name == reading.round)
+    if reading.quantity == "voltage":
+        return reading.at in this.volts
+    if reading.quantity == "drop":
+        return (reading.at, reading.to) in this.direct
+    if reading.quantity == "temperature":
+        return bool(RUN.fullmatch(reading.at))
+    return reading.quantity == "current"
+
+
+def _name(reading: Reading) -> str:
+    leg = f" {reading.leg}" if reading.leg and reading.leg != "both" else ""
+    return f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}"
 
 
 def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tree:
@@ -288,7 +326,9 @@ def _computed_u(
     parts: dict[str, list[Carrying]] = defaultdict(list)
     variance = 0.0
     for branch in branches:
-        amps = float(np.nan_to_num(current_a[branch]))
+        amps = float(current_a[branch])
+        if math.isnan(amps):  # a tree that cannot be supplied
+            return math.nan
         run_id = network.run_at[branch]
         if run_id:
             parts[network.circuit_at[branch]].append(Carrying(context.figures[run_id], amps))

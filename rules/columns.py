@@ -10,6 +10,18 @@ ColumnKind: TypeAlias = Literal[
 ]
 
 
+METER_QUANTITY = {
+    "voltage": "voltage",
+    "drop": "voltage",
+    "joint": "voltage",
+    "current": "current",
+    "residual": "current",
+    "temperature": "temperature",
+    "resistance": "resistance",
+}
+"""Which rows of an instrument a reading uses: drop and joint readings use the voltage rows."""
+
+
 @dataclass(frozen=True, slots=True)
 class Column:
     """How a field stands in the site folder."""

@@ -5,20 +5,10 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from rules.calc.doubt import Shown, each_u, gain_u
+from rules.columns import METER_QUANTITY
 from rules.index import Index
 from rules.limits import Limits
 from rules.record import Instrument, Reading
-
-METER_QUANTITY = {
-    "voltage": "voltage",
-    "drop": "voltage",
-    "joint": "voltage",
-    "current": "current",
-    "residual": "current",
-    "temperature": "temperature",
-    "resistance": "resistance",
-}
-"""Which rows of an instrument a reading uses: drop and joint readings use the voltage rows."""
 
 
 @dataclass(frozen=True, slots=True)

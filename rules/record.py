@@ -441,7 +441,7 @@ def row_id(table: str, *key: object, salt: int = 0) -> str:
     The id of a row that has a tag: derived from table and tag as first given, so that two laptops that
     add the same tag share one row; ``salt`` counts up while the id is taken.
     """
-    text = "\x1f".join([table, *(str(part) for part in key), str(salt)])
+    text = "\x1f".join((table, *map(str, key), str(salt)))
     return hashlib.blake2b(text.encode(), digest_size=8).hexdigest()
 
 

@@ -121,3 +121,16 @@ def nearest(typed: str, kind: str) -> str:
 
     words = {word.lower(): word for measured, spelt in UNITS.values() if measured == kind for word in spelt.split()}
     return words[get_close_matches(typed.lower(), words, n=1, cutoff=0)[0]]
+
+
+def column_unit(typed: str) -> str | None:
+    """
+    The unit of a record's column that measures the same as a typed one; ``None`` for an unknown unit.
+
+    >>> column_unit("ft"), column_unit("kW"), column_unit("mΩ"), column_unit("furlong")
+    ('m', 'W', 'ohm', None)
+    """
+    name = spellings().get(key(typed.translate(SAME_SIGNS).strip()))
+    if name is None:
+        return None
+    return next((unit for unit, (base, _) in COLUMNS.items() if unit and UNITS[base][0] == UNITS[name][0]), None)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from pathlib import Path
 
 import click
@@ -23,17 +22,17 @@ SITE = click.argument("site", type=click.Path(path_type=Path))
     help="Exit with 1 if a finding is at or above this severity.",
 )
 def command(site: Path, as_json_: bool, circuit: str | None, visit: str | None, fail_on: str | None) -> int:
-    """Run every rule on SITE, a site folder, and print the findings."""
-    from audit.opening import judge_site, only, open_site
+    """Run every rule on SITE, a site file or a site folder, and print the findings."""
+    from audit.opening import judge_site, only, open_site, settings_place
 
     record = open_site(site)
-    assessment = judge_site(record, visit)
+    assessment = judge_site(record, visit, settings_place(site))
     if circuit is not None:
         assessment = only(assessment, circuit)
     if as_json_:
-        from audit.report.as_json import as_json
+        from audit.report.as_json import as_json, as_text
 
-        click.echo(json.dumps(as_json(assessment), ensure_ascii=False, indent=1, allow_nan=False))
+        click.echo(as_text(as_json(assessment)), nl=False)
     else:
         from audit.report.text import print_check
 

@@ -1,4 +1,4 @@
-"""``ohmwalk demo``: copy an invented sample site here and check it."""
+"""``ohmwalk demo``: make a site file from an invented sample site and open it."""
 
 from __future__ import annotations
 
@@ -9,18 +9,28 @@ import click
 
 @click.command(name="demo")
 @click.argument("name", required=False)
-@click.option(
-    "--to", "target", type=click.Path(path_type=Path), help="Folder to write; default: the site's name, here."
-)
-@click.option("--overwrite", is_flag=True, help="Replace an existing folder.")
-def command(name: str | None, target: Path | None, overwrite: bool) -> None:
-    """Copy a packaged sample site (default: the 48 V plant) here as a site folder and check it."""
-    from audit.demo import copy_sample
-    from audit.opening import judge_site, open_site
-    from audit.report.text import print_check
+@click.option("--to", "target", type=click.Path(path_type=Path), help="Site file to make; default: demo.ohmwalk, here.")
+@click.option("--no-open", is_flag=True, help="Only make it, and say what to do next.")
+@click.option("--overwrite", is_flag=True, help="Replace an existing file.")
+@click.option("--by", metavar="NAME", help="Who saves.")
+def command(name: str | None, target: Path | None, no_open: bool, overwrite: bool, by: str | None) -> int:
+    """
+    Make a site file from a packaged sample site, plant (the default) or doors, and open it; an earlier demo here is
+    opened as it is. Everything in it is invented.
+    """
+    from audit.demo import make_demo
+    from audit.interface import open_interface
+    from audit.settings import UserSettings
+    from audit.terminal import is_terminal
+    from rules.text import clean
 
-    folder, fresh = copy_sample(name, target, overwrite)
-    record = open_site(folder)
-    print_check(record, judge_site(record))
-    what = "an invented building, copied to" if fresh else "the earlier copy in"
-    click.echo(f"This is {what} {folder}. Next: ohmwalk report {folder} --to audit.html", err=True)
+    settings = UserSettings(by)
+    path, is_new = make_demo(name, target, overwrite, settings)
+    if is_terminal() and not no_open:
+        return open_interface(path, settings)
+    settings.opened(path)
+    what = "made" if is_new else "the earlier demo, as it is:"
+    line = f"{what} {path}, an invented building. Next: ohmwalk survey {path}, or ohmwalk check {path}"
+    click.echo(clean(line), err=True)
+    settings.tell()
+    return 0

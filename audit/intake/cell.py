@@ -14,6 +14,8 @@ from rules.units import is_plain, parse, parse_size
 _SPACES = " \t\r\n\u00a0"
 """What is dropped at both ends of a cell; notes alone keep theirs."""
 _WITHOUT_UNIT = re.compile(r"[+\-−]?[0-9.,]+([eE][+-]?[0-9]+)?")
+_LARGEST_WHOLE = 2**53
+"""Beyond it a float skips whole numbers, and what was typed might not be what is stored."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,5 +71,7 @@ def read_cell(text: str, column: Column, unit: str, header_unit: str = "") -> Ce
 
 def _whole(text: str, column: Column) -> int:
     if is_plain(text) and (number := parse(text, "")).is_integer():
-        return int(number)
+        if abs(number) <= _LARGEST_WHOLE:
+            return int(number)
+        raise UnreadableText(f"{quoted(text)} is too large a number; accepted: {accepted(column)}")
     raise UnreadableText(f"{quoted(text)} is not a whole number; accepted: {accepted(column)}")

@@ -35,4 +35,4 @@ class Grid:
 
 def is_empty(cells: Sequence[str]) -> bool:
     """Whether a row holds nothing but empty cells."""
-    return not any(cell and not cell.isspace() for cell in cells)
+    return not any(cells) or not "".join(cells).strip()

@@ -17,6 +17,9 @@ from rules.units import parse
 
 _HEADER = re.compile(r"(.*?)\s*(?:\[([^\[\]]*)\])?", re.DOTALL)
 _HEADER_CELL = Column("header")
+_SEPARATORS = re.compile(r"[;\t|]")
+_LONGEST_NAME = 60
+"""What is shown of an unknown name. [characters]"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -47,12 +50,16 @@ class Header:
 def read_header(grid: Grid, faults: Faults) -> Header:
     """Find the field of every column; what is unknown, double or missing goes to ``faults``."""
     known = {column.name: (order, field, column) for order, (field, column) in enumerate(columns(grid.table))}
+    required = [name for name, (_, _, column) in known.items() if column.header]
     found: dict[str, Heading] = {}
     nameless: list[int] = []
 
-    def fault(what: str, column: str) -> None:
-        grid.fault(faults, what, row=grid.header_line, column=column, place=known.get(column, (0,))[0])
+    def fault(what: str, column: str, place: int) -> None:
+        grid.fault(faults, what, row=grid.header_line, column=column, place=place)
 
+    if len(grid.header) == 1 and (separator := _SEPARATORS.search(grid.header[0])):
+        fault(f"cells are separated by {quoted(separator.group())}; accepted: a file separated by commas", "", 0)
+        return Header((), (), frozenset(required))
     for place, text in enumerate(grid.header):
         text = trimmed(text, _HEADER_CELL)
         match = _HEADER.fullmatch(text)
@@ -60,19 +67,19 @@ def read_header(grid: Grid, faults: Faults) -> Header:
         if not text:
             nameless.append(place)
         elif name not in known:
-            fault(_unknown(text, name, tuple(known)), "")
+            fault(_unknown(name, tuple(known)), "" if forbidden_character(name) else name[:_LONGEST_NAME], place)
         elif name in found:
-            fault("the column stands there twice; accepted: once", name)
+            fault("the column stands there twice; accepted: once", name, place)
         else:
             order, field, column = known[name]
             own_unit, wrong = _unit(unit, column)
             if wrong:
-                fault(wrong, name)
+                fault(wrong, name, place)
             found[name] = Heading(place, order, field, column, own_unit)
-    absent = frozenset(name for name, (_, _, column) in known.items() if column.header and name not in found)
-    for name in absent:
-        fault(f"the column is missing; accepted: a column {title(known[name][2])}", name)
-    return Header(tuple(found.values()), tuple(nameless), absent)
+    absent = [name for name in required if name not in found]
+    for place, name in enumerate(absent, len(grid.header)):
+        fault(f"the column is missing; accepted: a column {title(known[name][2])}", name, place)
+    return Header(tuple(found.values()), tuple(nameless), frozenset(absent))
 
 
 @cache
@@ -89,22 +96,20 @@ def title(column: Column) -> str:
     return f"{column.name} [{column.unit}]" if column.unit not in ("", "*") else column.name
 
 
-def _unknown(text: str, name: str, known: tuple[str, ...]) -> str:
-    if forbidden_character(text) is not None:
-        return f"the header {quoted(text)} holds control characters; accepted: {either(known, most=99)}"
-    for separator, word in ((";", "semicolons"), ("\t", "tabs")):
-        if separator in text:
-            return f"the header is separated by {word}; accepted: a file separated by commas"
-    near = nearest(name[:100], known)
+def _unknown(name: str, known: tuple[str, ...]) -> str:
+    if forbidden_character(name) is not None:
+        return f"the header {quoted(name)} holds control characters; accepted: {either(known, most=99)}"
+    near = nearest(name[:_LONGEST_NAME], known)
     if near is None:
-        return f"there is no column {quoted(name)}; accepted: {either(known, most=99)}"
-    return f"there is no column {quoted(name)}; did you mean {near}?"
+        return f"there is no column of this name; accepted: {either(known, most=99)}"
+    return f"there is no column of this name; did you mean {near}?"
 
 
 def _unit(unit: str | None, column: Column) -> tuple[str, str]:
     """The header's unit, empty where it is the column's own, and what is wrong with it."""
     if unit is None:
-        return "", ""
+        bare = column.kind != "number" or column.unit in ("", "*", "%")  # these can be meant one way only
+        return "", "" if bare else f"the header names no unit; accepted: {title(column)}, or another unit of the kind"
     unit = unit.strip()
     if column.kind != "number" or not column.unit:
         return "", f"the header names the unit {quoted(unit)}; accepted: {column.name} without a unit"

@@ -1,54 +1,69 @@
-"""A grid of texts to rows of the record, with the line that each row stands on."""
+"""A grid of texts to rows of the record, with the line that each row stands on; worked down the columns."""
 
 from __future__ import annotations
 
-from collections import Counter
-from collections.abc import Mapping
-from dataclasses import dataclass, field, fields, replace
-from functools import cache
+from collections import defaultdict, deque
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field, fields
+from functools import cached_property
+from itertools import repeat
+from operator import itemgetter
 from typing import Any
 
-from audit.intake.cell import read_cell, trimmed
+from audit.intake.cell import trimmed
+from audit.intake.column import ReadColumn, read_column
 from audit.intake.faults import Faults
 from audit.intake.grid import Grid
-from audit.intake.header import Header, Heading, is_unit
-from rules.columns import Column
-from rules.errors import RulesError
-from rules.problems.cells import accepted
-from rules.record import KEY_FIELDS, TABLES, UNIT_OF_QUANTITY, Reading, Row, missing, row_id
-from rules.references import Tags, read_end, read_feed, read_feeds
+from audit.intake.header import Header
+from audit.intake.ids import Known
+from rules.record import TABLES, UNIT_OF_QUANTITY, Row
+from rules.references import Tags
 
 
-@dataclass(slots=True)
+@dataclass
 class Taken:
     """What was taken from one table."""
 
     grid: Grid
     header: Header
     rows: list[Row] = field(default_factory=list)
-    lines: dict[str, int] = field(default_factory=dict)
-    """Line of each row, by id."""
-    circuits: dict[str, str] = field(default_factory=dict)
-    """Id of the circuit of each row that belongs to one, by the row's id."""
-    told: set[tuple[str, str]] = field(default_factory=set)
-    """Cells whose problem is told already, by row id and column."""
-    ragged: set[str] = field(default_factory=set)
-    """Ids of rows whose cells may stand in the wrong columns."""
+    told: set[tuple[int, str]] = field(default_factory=set)
+    """Cells whose problem is told already, by the row's number and the column."""
+    ragged: set[int] = field(default_factory=set)
+    """Numbers of rows whose cells may stand in the wrong columns."""
     doubtful_circuits: set[str] = field(default_factory=set)
-    """Ids of circuits of which a run could not be read whole."""
+    """Ids of circuits of which a run lacks its number or an end."""
+
+    @cached_property
+    def numbers(self) -> Mapping[str, int]:
+        """The number of each row, by its id; asked once something is wrong."""
+        return {row.id: n for n, row in enumerate(self.rows)}
+
+    @property
+    def given(self) -> frozenset[str]:
+        """The fields that the table has a column for."""
+        names = {heading.field for heading in self.header.headings}
+        return frozenset(names | {"to_board_id"} if "to_point" in names else names)
+
+    def line(self, id_: str) -> int:
+        """The line that a row stands on."""
+        return self.grid.rows[self.numbers[id_]][0]
 
 
-def read_tags(grid: Grid, header: Header) -> dict[str, str]:
+def read_tags(grid: Grid, header: Header, known: Known) -> dict[str, str]:
     """Id of each tag of a table whose key is its tag, before the rows are read: references need them."""
-    place = next((heading.place for heading in header.headings if heading.field == "tag"), None)
-    if place is None:
-        return {}
-    column = next(heading.column for heading in header.headings if heading.field == "tag")
-    tags = (trimmed(cells[place], column) for _, cells in grid.rows if place < len(cells))
-    return {tag: row_id(grid.table, tag) for tag in tags if tag}
+    heading = next((heading for heading in header.headings if heading.field == "tag"), None)
+    ids = known.tag_ids(grid.table)
+    if heading is not None:
+        place = heading.place
+        texts = dict.fromkeys(cells[place] for _, cells in grid.rows if place < len(cells))
+        trimmed_texts = dict.fromkeys(trimmed(text, heading.column) for text in texts)
+        new = [tag for tag in trimmed_texts if tag and tag not in ids]
+        ids.update(zip(new, known.ids(grid.table, {"tag": new}, len(new)), strict=True))
+    return ids
 
 
-def read_rows(grid: Grid, header: Header, tags: Tags, faults: Faults) -> Taken:
+def read_rows(grid: Grid, header: Header, tags: Tags, known: Known, faults: Faults) -> Taken:
     """
     Make a row of every line of a table.
 
@@ -56,29 +71,63 @@ def read_rows(grid: Grid, header: Header, tags: Tags, faults: Faults) -> Taken:
     refers to the row still finds it and all problems are told in one go.
     """
     taken = Taken(grid, header)
-    alike: Counter[str] = Counter()
+    count = len(grid.rows)
     _nameless_columns(grid, header, faults)
-    for line, cells in grid.rows:
-        values, wrong = _values(grid, header, line, cells, tags)
-        is_ragged = len(cells) != len(grid.header)
-        row = _row(grid.table, values, alike)
-        taken.rows.append(row)
-        taken.lines[row.id] = line
-        if "circuit_id" in values:
-            taken.circuits[row.id] = values["circuit_id"]
-        if is_ragged:
-            taken.ragged.add(row.id)
-            what = f"the row has {len(cells)} cells, the header {len(grid.header)}; accepted: as many as the header"
-            grid.fault(faults, what, row=line)
-        for heading, what in wrong:
-            taken.told.add((row.id, heading.column.name))
-            if not is_ragged:
-                grid.fault(faults, what, row=line, column=heading.column.name, place=heading.order)
-        if grid.table == "runs" and (is_ragged or any(heading.field == "number" for heading, _ in wrong)):
-            taken.doubtful_circuits.add(values.get("circuit_id", ""))
+    columns = _read_columns(grid, header, tags)
+    _tell(taken, columns, faults)
+    values: dict[str, Sequence[Any]] = {name: column.values for name, column in columns.items()}
+    if "to_point" in values:
+        ends = values["to_point"]
+        values["to_point"], values["to_board_id"] = [point for point, _ in ends], [board for _, board in ends]
+    values["typed"] = _typed(columns, count)
+    ids = known.ids(grid.table, values, count)
     if grid.table == "readings":
-        _resolve_replacements(taken)
+        values = _with_replacements(values, ids, known)
+    if grid.table == "runs":
+        taken.doubtful_circuits = _doubtful_circuits(columns, values.get("circuit_id", [""] * count))
+    taken.rows = _made(TABLES[grid.table], {"id": ids, **values}, count)
     return taken
+
+
+def _read_columns(grid: Grid, header: Header, tags: Tags) -> dict[str, ReadColumn]:
+    """Every column that the table has, by field."""
+    width = max((heading.place for heading in header.headings), default=-1) + 1
+    rows = [cells if len(cells) >= width else cells + ("",) * (width - len(cells)) for _, cells in grid.rows]
+    defaults = {f.name: f.default for f in fields(TABLES[grid.table])} | {"to_point": ("", "")}
+    numbers = {line: n for n, (line, _) in enumerate(grid.rows)} if grid.unreadable else {}
+    units: list[str | None] | None = None
+    columns: dict[str, ReadColumn] = {}
+    # the quantity comes first: the units of other columns follow it
+    for heading in sorted(header.headings, key=lambda heading: heading.field != "quantity"):
+        follows = units if heading.column.unit == "*" else None
+        if heading.column.unit == "*" and units is None:
+            follows = [None] * len(rows)
+        column = read_column(
+            heading, list(map(itemgetter(heading.place), rows)), follows, tags, defaults[heading.field]
+        )
+        for (line, place), what in grid.unreadable.items():
+            if place == heading.place and line in numbers:
+                column.wrong[numbers[line]] = what
+        if heading.field == "quantity":
+            units = [UNIT_OF_QUANTITY.get(quantity) for quantity in column.values]
+        columns[heading.field] = column
+    return {heading.field: columns[heading.field] for heading in header.headings}
+
+
+def _tell(taken: Taken, columns: Mapping[str, ReadColumn], faults: Faults) -> None:
+    """Say what is wrong with single cells and with rows of another length than the header."""
+    grid, width = taken.grid, len(taken.grid.header)
+    for n, (line, cells) in enumerate(grid.rows):
+        if len(cells) != width:
+            taken.ragged.add(n)
+            what = f"the row has {len(cells)} cells, the header {width}; accepted: as many as the header"
+            grid.fault(faults, what, row=line)
+    for heading in taken.header.headings:
+        for n, what in columns[heading.field].wrong.items():
+            taken.told.add((n, heading.column.name))
+            if n not in taken.ragged:
+                line = grid.rows[n][0]
+                grid.fault(faults, what, row=line, column=heading.column.name, place=heading.order)
 
 
 def _nameless_columns(grid: Grid, header: Header, faults: Faults) -> None:
@@ -88,88 +137,46 @@ def _nameless_columns(grid: Grid, header: Header, faults: Faults) -> None:
             grid.fault(faults, what, row=grid.header_line)
 
 
-def _values(
-    grid: Grid, header: Header, line: int, cells: tuple[str, ...], tags: Tags
-) -> tuple[dict[str, Any], list[tuple[Heading, str]]]:
-    """Values of the fields of one row, ``typed`` among them, and what is wrong with which cells."""
-    texts = {h.field: trimmed(cells[h.place], h.column) for h in header.headings if h.place < len(cells)}
-    row_unit = UNIT_OF_QUANTITY.get(texts.get("quantity", ""))
-    values: dict[str, Any] = {}
-    typed: list[tuple[str, str]] = []
-    wrong: list[tuple[Heading, str]] = []
-    for heading in header.headings:
-        column, name = heading.column, heading.field
-        text = texts.get(name, "")
-        if (line, heading.place) in grid.unreadable:
-            wrong.append((heading, grid.unreadable[line, heading.place]))
-        elif not text:
-            if column.filled:
-                wrong.append((heading, f"is empty; accepted: {accepted(column, row_unit or '')}"))
-        elif column.kind in ("reference", "feeds") or name == "to_point":
-            values |= _references(name, text, column, tags)
-        else:
-            unit = row_unit if column.unit == "*" else column.unit
-            if unit is None:
-                continue  # no unit without a known quantity, which is told in its own cell
-            foreign = "" if not heading.unit or is_unit(heading.unit, unit) else heading.unit
-            try:
-                cell = read_cell(text, column, unit, foreign)
-            except RulesError as error:
-                wrong.append((heading, str(error)))
-                continue
-            values[name] = cell.value
-            if cell.typed is not None:
-                typed.append((name, cell.typed))
-    values["typed"] = tuple(sorted(typed))
-    return values, wrong
+def _typed(columns: Mapping[str, ReadColumn], count: int) -> Sequence[tuple[tuple[str, str], ...]]:
+    """The texts as typed of each row, sorted by field."""
+    found: defaultdict[int, list[tuple[str, str]]] = defaultdict(list)
+    for name in sorted(columns):
+        for n, text in columns[name].typed.items():
+            found[n].append((name, text))
+    return [tuple(found[n]) if n in found else () for n in range(count)] if found else [()] * count
 
 
-def _references(name: str, text: str, column: Column, tags: Tags) -> dict[str, Any]:
-    """The fields that a reference fills."""
-    if name == "circuit_id":
-        found = tags.find(("circuits",), text)
-        return {name: missing(text) if found is None else found.id}
-    if name == "replaces_id":
-        return {name: missing(text)}  # resolved once all readings are there
-    if name == "to_point":
-        point, board_id = read_end(text, tags)
-        return {"to_point": point, "to_board_id": board_id}
-    if column.kind == "feeds":
-        return {name: read_feeds(text, column.tables, tags)}
-    return {name: read_feed(text, column.tables, tags)}
+def _doubtful_circuits(columns: Mapping[str, ReadColumn], circuits: Sequence[str]) -> set[str]:
+    """Circuits of which a run has no number or no end that could be read: of their tree nothing can be said."""
+    needed = ("number", "from_point", "to_point")
+    if not columns.keys() >= set(needed):
+        return set(circuits)
+    return {circuits[n] for name in needed for n in columns[name].wrong}
 
 
-def _row(table: str, values: Mapping[str, Any], alike: Counter[str]) -> Row:
+def _with_replacements(
+    values: Mapping[str, Sequence[Any]], ids: Sequence[str], known: Known
+) -> dict[str, Sequence[Any]]:
+    """The values with each reading that is replaced named by its id."""
+    if not any(values.get("replaces_id", ())):
+        return dict(values)
+    by_tag: dict[str, str] = {}
+    for tag, id_ in zip(values.get("tag", repeat("")), ids, strict=False):
+        by_tag.setdefault(tag, id_)
+    by_tag = known.tag_ids("readings") | {tag: id_ for tag, id_ in by_tag.items() if tag}
+    named = [by_tag.get(id_.removeprefix("?"), id_) for id_ in values["replaces_id"]]
+    return {**values, "replaces_id": named}
+
+
+def _made(row_type: type[Row], columns: Mapping[str, Iterable[Any]], count: int) -> list[Row]:
     """
-    One row with its id, derived from what makes its tag, or from the whole row where it has none.
+    Rows of a frozen type from their columns; a field without a column is empty.
 
-    The n-th row alike has the n-th id, so that the same folder read twice gives the same ids; ``alike``
-    counts them.
+    The slot's own descriptor sets a field of all rows: ``__init__`` of a frozen row goes through
+    ``object.__setattr__`` for each of twenty fields, three times as slow.
     """
-    key = [values.get(name, default) for name, default in _key_defaults(table)]
-    first = row_id(table, *key)
-    salt = alike[first]
-    alike[first] += 1
-    return TABLES[table](id=row_id(table, *key, salt=salt) if salt else first, **values)
-
-
-@cache
-def _key_defaults(table: str) -> tuple[tuple[str, Any], ...]:
-    """The fields that a row's id is derived from, with what they are in an empty cell."""
-    names = KEY_FIELDS.get(table)
-    return tuple(
-        (f.name, f.default) for f in fields(TABLES[table]) if f.name != "id" and (names is None or f.name in names)
-    )
-
-
-def _resolve_replacements(taken: Taken) -> None:
-    ids: dict[str, str] = {}
-    for row in taken.rows:
-        assert isinstance(row, Reading)
-        if row.tag:
-            ids.setdefault(row.tag, row.id)
-    for n, row in enumerate(taken.rows):
-        assert isinstance(row, Reading)
-        if row.replaces_id:
-            tag = row.replaces_id.removeprefix("?")
-            taken.rows[n] = replace(row, replaces_id=ids.get(tag, row.replaces_id))
+    rows: list[Any] = list(map(object.__new__, repeat(row_type, count)))
+    for f in fields(row_type):
+        values = columns[f.name] if f.name in columns else repeat(f.default, count)
+        deque(map(getattr(row_type, f.name).__set__, rows, values), maxlen=0)
+    return rows

@@ -40,7 +40,7 @@ def read_toml(file: str, content: bytes, faults: Faults) -> dict[str, Any] | Non
         return tomllib.loads(decode(content))
     except NotUtf8 as error:
         faults.add(file, error.what, row=error.line)
-    except tomllib.TOMLDecodeError as error:
+    except ValueError as error:  # tomllib's own, and Python's where a number has thousands of digits
         found = _LINE.match(str(error))
         reason, line = (found[1], int(found[2])) if found else (str(error), 0)
         faults.add(file, f'is not TOML: {reason}; accepted: lines such as name = "Plant 2"', row=line)
@@ -66,8 +66,7 @@ def read_settings(data: Mapping[str, Any], beside: Callable[[str], bytes | None]
     typed: list[tuple[str, str]] = []
 
     def fault(key: str, what: str) -> None:
-        settings.told.add(key)
-        faults.add(FILE, what, column=key, order=(0, list(SETTINGS).index(key) if key in SETTINGS else len(SETTINGS)))
+        faults.add(FILE, what, column=key, order=(0, place_of(key)))
 
     for key, value in data.items():
         if key == "prior":
@@ -82,15 +81,22 @@ def read_settings(data: Mapping[str, Any], beside: Callable[[str], bytes | None]
                 cell_value, text = _setting(value, column)
             except RulesError as error:
                 fault(key, str(error))
+                settings.told.add(key)
                 continue
             settings.values[name] = cell_value
             if text is not None:
                 typed.append((name, text))
     if "name" not in data:
+        settings.told.add("name")
         fault("name", 'is missing; accepted: the name of the site, name = "Plant 2"')
     settings.values["typed"] = tuple(sorted(typed))
     _own_limits(settings, beside, faults)
     return settings
+
+
+def place_of(key: str) -> int:
+    """Place of a setting, by which error lines are sorted."""
+    return list(SETTINGS).index(key) if key in SETTINGS else len(SETTINGS)
 
 
 def _setting(value: object, column: Column) -> tuple[Any, str | None]:
@@ -116,8 +122,8 @@ def _prior(value: object, fault: Callable[[str, str], None]) -> tuple[tuple[str,
     for key, share in value.items():
         if isinstance(share, bool) or not isinstance(share, int | float):
             fault("prior", f"the share of {quoted(key)} is {_shown(share)}; accepted: a number, 0 or more")
-        else:
-            shares.append((key.replace("_", " "), _float(share)))
+            share = 1.0  # stands in, so that the other keys can be judged too
+        shares.append((key.replace("_", " "), _float(share)))
     return tuple(shares)
 
 
@@ -130,7 +136,8 @@ def _own_limits(settings: Settings, beside: Callable[[str], bytes | None], fault
     content = beside(name) if is_plain_name else None
     if content is None:
         settings.told.add("limits")
-        faults.add(FILE, f"{quoted(name)} is no file beside {FILE}; accepted: a file there", column="limits")
+        what = f"{quoted(name)} is no file beside {FILE}; accepted: a file there"
+        faults.add(FILE, what, column="limits", order=(0, place_of("limits")))
         return
     if read_toml(name, content, faults) is not None:
         settings.values["own_limits"] = decode(content)
@@ -140,8 +147,12 @@ def _float(value: int | float) -> float:
     try:
         return float(value)
     except OverflowError:  # TOML's whole numbers have any length
-        return math.copysign(math.inf, value)
+        return math.inf if value > 0 else -math.inf
 
 
 def _shown(value: object) -> str:
-    return quoted("true" if value is True else "false" if value is False else str(value))
+    if isinstance(value, bool):
+        return quoted(str(value).lower())
+    if isinstance(value, int) and math.isinf(_float(value)):
+        return "a number too large to be read"  # str() of it fails from 4,300 digits on
+    return quoted(str(value))

@@ -99,6 +99,14 @@ BLOCKS = Strokes(left="▕", right="▏", solid="█", soft="▒", tick="╵", p
 ASCII = Strokes(left="[", right="]", solid="#", soft=":", tick="|", past=">", below="<")
 
 
+def legend(strokes: Strokes = BLOCKS) -> str:
+    """What the signs of a bar mean, in one sentence."""
+    return (
+        f"Bar: {strokes.solid} read, {strokes.soft} its doubt, {strokes.tick} computed, {strokes.right} allowed, "
+        f"{strokes.past} past it; between the points that were read, percent of nominal."
+    )
+
+
 def text_bar(bar: Bar | None, cells: int = CELLS, strokes: Strokes = BLOCKS) -> str:
     """
     A bar of ``cells`` characters between its edges; blanks where there is none.

@@ -8,7 +8,6 @@ the site is data, and ``cleaned`` has taken control codes out of it.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass, fields, is_dataclass, replace
 from typing import Any, Literal, TypeAlias, TypeVar
 
@@ -149,18 +148,6 @@ def cleaned(value: T) -> T:
     'a\\ufffdb'
     """
     return _cleaned(value)  # type: ignore[no-any-return]
-
-
-def texts_of(value: Any) -> Iterator[str]:
-    """Every text in some blocks, a bar by its words, from top to bottom."""
-    if isinstance(value, str):
-        yield value
-    elif isinstance(value, tuple):
-        for item in value:
-            yield from texts_of(item)
-    elif is_dataclass(value):
-        for field in fields(value):
-            yield from texts_of(getattr(value, field.name))
 
 
 def _cleaned(value: Any) -> Any:

@@ -29,6 +29,7 @@ def circuit_section(
             runs_table(index, circuit, limits),
             loads_table(index, circuit),
             _points(result),
+            _service(result),
             readings_table(index, circuit.id, visit),
         )
         blocks += [part for part in parts if part is not None]
@@ -62,8 +63,8 @@ def _drop(result: CircuitResult) -> Table:
                 _lines(figure_words(drop.measured), words.of_allowed),
                 _lines(figure_words(drop.computed), words.computed),
                 figure_words(drop.excess),
-                f"{result.visit}, round {drop.round}\n{drop.start} to {drop.end}, {figure_words(drop.current)}, "
-                f"by {drop.by}",
+                f"{result.visit}, round {drop.round}, by {drop.by}\n"
+                f"{drop.start} to {drop.end}, {figure_words(drop.current)}",
             )
         )
     if result.design_drop is not None:
@@ -79,7 +80,7 @@ def _drop(result: CircuitResult) -> Table:
         )
     columns = (
         Column("Drop", share=3), Column("Measured", share=3), Column("Computed", share=3),
-        Column("Difference", share=3), Column("State", share=5),
+        Column("Difference", share=3), Column("State", share=6),
     )  # fmt: skip
     return Table(columns, tuple(rows) or (("", words.of_allowed, "not known", "", ""),))
 
@@ -97,6 +98,25 @@ def _cause(place: Place) -> tuple[str, str]:
         best, low, high = (figure_words(Figure(ohm, "ohm")) for ohm in ohms if ohm is not None)
         said += f", {best} ({low} to {high})"
     return f"{place.probability:.2f}", said
+
+
+def _service(result: CircuitResult) -> Table | None:
+    """What each run carries at design, what it may carry, and how warm that makes it; ``None`` without runs."""
+    rows: list[tuple[Cell, ...]] = [
+        (
+            each.run,
+            "not known" if each.current is None else figure_words(each.current),
+            "not known" if each.ampacity is None else figure_words(each.ampacity),
+            "not known" if each.temperature is None else figure_words(each.temperature),
+            _lines(each.basis, f"assumed: {', '.join(each.assumed)}" if each.assumed else "", each.gap),
+        )
+        for each in result.service
+    ]
+    columns = (
+        Column("In service at design"), Column("Current", "right"), Column("Capacity", "right"),
+        Column("Conductor", "right"), Column("From", share=5),
+    )  # fmt: skip
+    return Table(columns, tuple(rows)) if rows else None
 
 
 def _points(result: CircuitResult) -> Table | None:

@@ -33,6 +33,7 @@ from rules.index import Index
 from rules.limits import Limits, of
 from rules.record import Site
 from rules.text import clean
+from rules.units import show
 
 AUDIENCES = ("electrician", "inspector", "supervisor")
 """Who a report can be for; the inspector's is the whole."""
@@ -120,30 +121,31 @@ def _plant(site: Site, index: Index) -> Section:
     return Section("Sources, boards and meters", blocks or (Paragraph("None is recorded."),))
 
 
-_UNITS_OF_LIMITS = {
-    "%": (" %", "_percent"),
-    "degC": (" °C", "_c"),
-    "W": (" W", "_w"),
-    "V": (" V", "_v"),
-    "ohm": (" Ω", "_ohm"),
-    "K": (" K", ""),
-}
-"""How a group's unit is written behind its numbers, and how their names end in it."""
+_SUFFIXES = {"%": "_percent", "degC": "_c", "W": "_w", "V": "_v", "ohm": "_ohm"}
+"""How the names of a group's numbers end in its unit; a name without the ending is a pure number."""
+
+
+def _limit_words(name: str, value: float, unit: str) -> str:
+    """One number of a profile: ``median 150 µΩ``, ``tape 0.01``."""
+    suffix = _SUFFIXES.get(unit, "")
+    has_unit = unit == "K" or (suffix and name.endswith(suffix))
+    number = show(value, unit) if has_unit else f"{value:g}"
+    return f"{name.removesuffix(suffix).replace('_', ' ')} {number}"
 
 
 def _limits(limits: Limits) -> Section:
     """Every limit and doubt in force, with its source."""
     rows: list[tuple[Cell, ...]] = []
     for group in limits.groups.values():
-        unit, suffix = _UNITS_OF_LIMITS.get(group.unit, ("", ""))
-        values = "; ".join(
-            f"{name.removesuffix(suffix).replace('_', ' ')} {value:g}{unit}" for name, value in group.values.items()
-        )
-        source = ", ".join(dict.fromkeys(text for text in (group.source, group.edition, group.status) if text))
+        said = [_limit_words(name, value, group.unit) for name, value in group.values.items()]
+        said += [f"{name.replace('_', ' ')}: {word}" for name, word in group.words.items()]
+        values = "; ".join(said)
+        status = "" if group.status in group.source else group.status
+        source = ", ".join(text for text in (group.source, group.edition, status) if text)
         rows.append((group.title, values, source))
     for rule, setting in limits.rules.items():
-        said = "switched off" if setting.off else f"severity {setting.severity}"
-        rows.append((f"Rule {rule}", said, setting.reason))
+        changed = "switched off" if setting.off else f"severity {setting.severity}"
+        rows.append((f"Rule {rule}", changed, setting.reason))
     settled = (
         f"A limit counts as kept where the probability of being past it is {limits['decision.passes_at']:g} or less, "
         f"as not kept where it is {limits['decision.fails_at']:g} or more, and as not settled between. A measured "

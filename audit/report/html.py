@@ -7,15 +7,24 @@ escape their own. The page forbids scripts and outside content besides.
 
 from __future__ import annotations
 
+import re
+from html import escape
 from importlib.resources import files
 from typing import TYPE_CHECKING, Any
 
 from audit.report.bar import Bar, svg_bar
 from audit.report.blocks import Content, Line, Table
 from audit.report.line import svg_line
+from rules.text import clean
 
 if TYPE_CHECKING:
     from markupsafe import Markup
+
+
+_RIGHT_TO_LEFT = "\u0590-\u08ff\ufb1d-\ufdff\ufe70-\ufefc\U00010800-\U00010fff\U0001e800-\U0001eeff"
+"""Letters of scripts that run from right to left."""
+
+_RUN = re.compile(rf"[{_RIGHT_TO_LEFT}](?:[\s\d'’-]*[{_RIGHT_TO_LEFT}])*")
 
 
 def html_report(content: Content) -> str:
@@ -24,7 +33,14 @@ def html_report(content: Content) -> str:
     from jinja2 import Environment, StrictUndefined
 
     environment = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True)
-    environment.filters |= {"bar": _bar, "line": _line, "kind": _kind, "widths": _widths}
+    environment.filters |= {
+        "bar": _bar,
+        "line": _line,
+        "kind": _kind,
+        "widths": _widths,
+        "clean": clean,
+        "isolated": _isolated,
+    }
     template = environment.from_string(_file("report.html.jinja"))
     return template.render(content=content, style=_markup(_file("report.css")))
 
@@ -37,6 +53,15 @@ def _markup(text: str) -> Markup:
     from markupsafe import Markup
 
     return Markup(text)
+
+
+def _isolated(text: str) -> Markup:
+    """
+    A text, escaped, in which words that run from right to left keep to themselves.
+
+    Without that, a date or figure behind such a word changes its place, and 2026-03-02 is read from its end.
+    """
+    return _markup(_RUN.sub(lambda run: f"<bdi>{run.group()}</bdi>", escape(text)))
 
 
 def _bar(bar: Bar) -> Markup:

@@ -132,7 +132,8 @@ def _stop_width(stop: Stop) -> float:
 
 
 def _below(stop: Stop) -> str:
-    return f"{stop.point} · {stop.computed}" if stop.computed else stop.point
+    # A name may run from right to left; isolated, it leaves the figure behind it in its place.
+    return f"\u2068{stop.point}\u2069 · {stop.computed}" if stop.computed else stop.point
 
 
 def _row(path: Path, y: int) -> str:

@@ -60,9 +60,7 @@ def _block(block: Block) -> Iterator[str]:
         case Table():
             yield from _table(block)
         case Line():
-            # An indented block shows text as it is; its lines hold no newline.
-            for path in block.paths:
-                yield "    " + " ".join(text_line(path).split())
+            yield from _literal([" ".join(text_line(path).split()) for path in block.paths])
         case FindingCard():
             yield f"**{escaped(str(block.severity))}: {escaped(block.title)}**"
             yield ""
@@ -74,6 +72,13 @@ def _block(block: Block) -> Iterator[str]:
             yield "| --- | --- | --- | --- |"
             for label in block.labels:
                 yield f"| {escaped(label)} | | | |"
+
+
+def _literal(lines: list[str]) -> Iterator[str]:
+    """Lines shown as they are, in a fence that none of them can close."""
+    longest = max((len(run) for line in lines for run in re.findall("`+", line)), default=0)
+    fence = "`" * max(3, longest + 1)
+    yield from (fence, *lines, fence)
 
 
 def _table(table: Table) -> Iterator[str]:

@@ -99,7 +99,7 @@ def drop_words(result: CircuitResult) -> DropWords:
     drop = result.drop
     measured = None if drop is None else drop.measured
     computed = result.design_drop if drop is None else drop.computed
-    said = "not read" if not result.visit else "no drop read"
+    said = "not read" if not result.visit else "not compared"
     if nominal is None or not nominal > 0:
         read = said if measured is None else figure_words(measured)
         return DropWords(None, read, "" if computed is None else figure_words(computed))

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+import math
+
 from audit.report.blocks import Cell, Column, Facts, Line, Table
 from audit.report.line import line_of
 from audit.report.phrases import figure_words, reading_words, time_words, visit_words
 from rules.assessment import CircuitResult
 from rules.index import Index
 from rules.limits import Limits
+from rules.meters import instrument_row
 from rules.record import Board, Circuit, Feed, Instrument, Load, Reading, Row, Run, Site, Source
 from rules.units import show, show_size
 
@@ -17,6 +20,18 @@ READING_DIGITS = 9
 """A reading keeps every digit that its meter showed."""
 MOST_READ = 2
 """Values that stand above one point of a line; the table has all of them."""
+
+
+LENGTH_WORDS = {
+    "marks": "by the sheath's marks",
+    "tape": "taped",
+    "tdr": "by pulse echo",
+    "paced": "paced",
+    "drawing": "from a drawing",
+    "guess": "guessed",
+}
+"""How a length was obtained, in words."""
+TEMPERATURE_WORDS = {"probe": "by a probe", "air": "of the air beside it"}
 
 
 def quantity(row: Row, field: str, value: float | None, unit: str, digits: int = 4) -> str:
@@ -88,7 +103,7 @@ def circuit_facts(index: Index, circuit: Circuit, result: CircuitResult) -> Fact
         nominal = f"{show(result.nominal_voltage_v, 'V')} (taken from what feeds it)"
     allowed = NOT_KNOWN if result.allowed_drop_percent is None else f"{result.allowed_drop_percent:g} %"
     if circuit.allowed_drop_percent is None and result.allowed_drop_percent is not None:
-        allowed += " (of the limits profile)"
+        allowed += " (from the limits profile)"
     breaking = circuit.breaking_capacity_a
     rows = [
         ("Fed from", feed_words(index, circuit.fed_from)),
@@ -141,8 +156,8 @@ def loads_table(index: Index, circuit: Circuit) -> Table | None:
         for load in index.loads_of(circuit.id)
     ]
     columns = (
-        Column("Load", share=3), Column("At"), Column("Draws", share=4), Column("Needs", share=3),
-        Column("Simultaneous", share=2), Column("Function, remarks", share=4),
+        Column("Load", share=4), Column("At", share=3), Column("Draws", share=5), Column("Needs", share=4),
+        Column("Simultaneous", share=3), Column("Function, remarks", share=5),
     )  # fmt: skip
     return Table(columns, tuple(rows), "Loads") if rows else None
 
@@ -164,7 +179,7 @@ def readings_table(index: Index, place_id: str, visit: str | None = None) -> Tab
         dates = {time_words(reading.taken_at)[:10] for reading in of_state}
         date = dates.pop() if len(dates) == 1 else ""
         rows.append((joined(visit_tag, f"round {round_name}", date, _load_state(of_state, index)),))
-        rows += [_reading_row(reading, date, successors) for reading in of_state]
+        rows += [_reading_row(reading, date, successors, index) for reading in of_state]
     columns = (
         Column("Reading", share=8), Column("Value", "right", share=4), Column("Taken at", share=3),
         Column("Meter, range", share=6), Column("By", share=4), Column("Remarks", share=7),
@@ -172,16 +187,29 @@ def readings_table(index: Index, place_id: str, visit: str | None = None) -> Tab
     return Table(columns, tuple(rows), "Readings") if rows else None
 
 
-def _reading_row(reading: Reading, date: str, successors: dict[str, Reading]) -> tuple[Cell, ...]:
+def _reading_row(reading: Reading, date: str, successors: dict[str, Reading], index: Index) -> tuple[Cell, ...]:
     taken = time_words(reading.taken_at)
     return (
         reading_words(reading),
-        quantity(reading, "value", reading.value, reading.unit, READING_DIGITS),
+        as_shown(reading, index),
         (taken.removeprefix(date).strip() if date else taken) or NOT_RECORDED,
         _meter(reading),
         reading.by or NOT_RECORDED,
         _remarks(reading, successors),
     )
+
+
+def as_shown(reading: Reading, index: Index) -> str:
+    """A reading with the decimals of the meter's display: 53.500 V where it shows thousandths."""
+    row = instrument_row(reading, index)
+    large = abs(reading.value) >= 0.1  # smaller ones are shown in thousandths
+    if large and row is not None and row.resolution and reading.as_typed("value") is None:
+        decimals = max(0, math.ceil(-math.log10(row.resolution) - 1e-9))
+        if math.isclose(round(reading.value, decimals), reading.value, rel_tol=1e-12):
+            # the sign between number and unit comes from the one formatter
+            unit = show(1.0, reading.unit).partition(" ")[2]
+            return f"{reading.value:.{decimals}f} {unit}"
+    return quantity(reading, "value", reading.value, reading.unit, READING_DIGITS)
 
 
 def _load_state(readings: list[Reading], index: Index) -> str:
@@ -277,8 +305,8 @@ def instruments_table(site: Site) -> Table | None:
     ]
     columns = (
         Column("Meter", share=3), Column("Measures", share=4), Column("Accuracy", "right", share=2),
-        Column("Counts", "right", share=2), Column("Resolution", "right", share=2), Column("Category", share=3),
-        Column("Calibrated until", share=2), Column("Notes", share=4),
+        Column("Counts", "right", share=2), Column("Resolution", "right", share=3), Column("Category", share=4),
+        Column("Calibrated until", share=3), Column("Notes", share=5),
     )  # fmt: skip
     return Table(columns, tuple(rows), "Meters") if rows else None
 
@@ -304,7 +332,9 @@ def _stretch(run: Run) -> str:
 
 def _length(run: Run) -> str:
     text = quantity(run, "one_way_length_m", run.one_way_length_m, "m")
-    return text if run.one_way_length_m is None else f"{text}, by {or_assumed(run.length_by, 'drawing')}"
+    if run.one_way_length_m is None:
+        return text
+    return f"{text}, {LENGTH_WORDS[run.length_by_or_default]}{'' if run.length_by else ' (assumed)'}"
 
 
 def _size(run: Run) -> str:
@@ -318,10 +348,14 @@ def _size(run: Run) -> str:
 def _temperature(run: Run, site: Site, limits: Limits) -> str:
     if run.conductor_temperature_c is not None:
         text = quantity(run, "conductor_temperature_c", run.conductor_temperature_c, "degC")
-        return f"{text}, by {run.temperature_by}" if run.temperature_by in ("probe", "air") else f"{text} (assumed)"
+        return (
+            f"{text}, {TEMPERATURE_WORDS[run.temperature_by]}"
+            if run.temperature_by in ("probe", "air")
+            else f"{text} (assumed)"
+        )
     if site.ambient_temperature_c is not None:
         return f"{show(site.ambient_temperature_c, 'degC')} (the site's ambient, assumed)"
-    return f"{show(limits['ambient.assumed_c'], 'degC')} (of the limits profile, assumed)"
+    return f"{show(limits['ambient.assumed_c'], 'degC')} (from the limits profile, assumed)"
 
 
 def _return(run: Run) -> str:

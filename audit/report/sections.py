@@ -228,11 +228,18 @@ def sign_off() -> Section:
 
 
 def group_gaps(gaps: Iterable[NotJudged]) -> list[tuple[str, str, str]]:
-    """Rule, reason and places of what could not be judged: equal reasons of one rule stand together."""
-    places: dict[tuple[str, str], list[str]] = defaultdict(list)
+    """
+    Rules, reason and places of what could not be judged.
+
+    Equal reasons of one rule stand together, and so do rules that miss the same at the same places.
+    """
+    places: dict[tuple[str, str], dict[str, None]] = defaultdict(dict)
     for gap in gaps:
-        places[gap.rule, gap.why].append(place_words(gap.circuit, None, gap.where))
-    return [(rule, why, "; ".join(dict.fromkeys(where))) for (rule, why), where in places.items()]
+        places[gap.rule, gap.why][place_words(gap.circuit, None, gap.where)] = None
+    rules: dict[tuple[str, str], list[str]] = defaultdict(list)
+    for (rule, why), where in places.items():
+        rules[why, "; ".join(where)].append(rule)
+    return [(", ".join(names), why, where) for (why, where), names in rules.items()]
 
 
 def not_judged(gaps: Iterable[NotJudged]) -> Section:
@@ -242,7 +249,7 @@ def not_judged(gaps: Iterable[NotJudged]) -> Section:
         return Section("Not judged", (Paragraph("Every rule could be judged."),))
     note = Paragraph("A gap is not a pass. These judgements could not be made:")
     return Section(
-        "Not judged", (note, Table((Column("Rule"), Column("Why", share=5), Column("Where", share=4)), rows))
+        "Not judged", (note, Table((Column("Rules", share=2), Column("Why", share=5), Column("Where", share=4)), rows))
     )
 
 

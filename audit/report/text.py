@@ -17,7 +17,8 @@ from rich.cells import cell_len, set_cell_size
 from rich.console import Console
 from rich.text import Text
 
-from audit.report.bar import ASCII, BLOCKS, CELLS, text_bar
+from audit.console import PlainConsole
+from audit.report.bar import ASCII, BLOCKS, CELLS, legend, text_bar
 from audit.report.phrases import (
     CAUSES_NOT_JUDGED,
     STATUS_MEANING,
@@ -42,7 +43,7 @@ WIDEST = 110
 """Longer lines are hard to read."""
 
 _LETTERS = {
-    "✓": "+", "…": "...", "±": "+/-", "Ω": "ohm", "µ": "u", "²": "2", "°": " deg ", "×": "x", "−": "-", "–": "-",
+    "✓": "+", "…": "...", "±": "+/-", "Ω": "ohm", "µ": "u", "²": "2", "°": "deg ", "×": "x", "−": "-", "–": "-",
     "—": "-", "·": "-", "“": '"', "”": '"', "’": "'", "≤": "<=", "≥": ">=", "Δ": "delta ", "√": "sqrt ", "\ufffd": "?",
 }  # fmt: skip
 """How signs of ours are written where the encoding has none."""
@@ -100,10 +101,8 @@ def console_for(stream: TextIO) -> Console:
     """A console for a stream: with colour on a terminal, else plain and 80 columns wide."""
     terminal = stream.isatty()
     width = None if terminal else PLAIN_WIDTH
-    console = Console(
-        file=stream, force_terminal=terminal, width=width, highlight=False, markup=False, emoji=False,
-        color_system="auto" if terminal else None,
-    )  # fmt: skip
+    colours = "auto" if terminal else None
+    console = PlainConsole(file=stream, force_terminal=terminal, width=width, color_system=colours)
     console.width = min(console.width, WIDEST)
     return console
 
@@ -163,7 +162,9 @@ def _heading(page: Page, site: Site, assessment: Assessment) -> None:
     summary = assessment.summary
     page.line()
     states = [f"{summary[str(status)]} {status_words(status)}" for status in STATUS_MEANING if summary[str(status)]]
-    page.line("   ".join([f"{read} of {counted(len(assessment.circuits), 'circuit')} read", *states]), "bold")
+    # two lines, since five statuses beside the share read are wider than a narrow terminal
+    page.line(f"{read} of {counted(len(assessment.circuits), 'circuit')} read", "bold")
+    page.line("   ".join(states), "bold")
 
 
 def _cautions(page: Page, assessment: Assessment) -> None:
@@ -177,6 +178,9 @@ def _cautions(page: Page, assessment: Assessment) -> None:
 
 def _walk(page: Page, index: Index, assessment: Assessment) -> None:
     place = None
+    page.line()
+    if assessment.circuits:
+        page.line(legend(BLOCKS if page.has_blocks else ASCII))
     tag_cells = min(14, max((cell_len(page.text(r.circuit).plain) for r in assessment.circuits), default=0))
     for feed, group in by_feed(index, assessment.circuits):
         location = location_of(index, feed)

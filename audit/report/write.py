@@ -49,6 +49,10 @@ def check_target(target: Path, overwrite: bool) -> None:
         raise WrongUse(f"no report has {shown}{hint}; accepted: {either(list(FORMS))}")
     if target.is_dir():
         raise WriteFailed(f"{quoted(str(target))} is a folder; accepted: the name of a file")
+    if ending in (".csv", ".xlsx") and (target.parent / "site.toml").is_file():
+        raise WrongUse(
+            f"{quoted(str(target))} would lie among a site's tables; accepted: a place outside the site folder"
+        )
     if not overwrite and os.path.lexists(target):
         raise TargetExists(target)
     if not target.parent.is_dir():

@@ -6,15 +6,10 @@ Pure functions on floats or arrays in SI units, area in mm²; arrays broadcast a
 
 from __future__ import annotations
 
-from typing import TypeAlias
-
 import numpy as np
-import numpy.typing as npt
 
-from rules.errors import InvalidQuantity
+from rules.calc.guard import Floats, require
 from rules.tables.conductors import resistivity_20c
-
-Floats: TypeAlias = float | npt.NDArray[np.float64]
 
 REFERENCE_AREA_MM2 = 10.0
 """Area for which the median of a healthy termination is stated. [mm²]"""
@@ -69,9 +64,9 @@ def conductor_resistance_ohm(
     >>> round(conductor_resistance_ohm(29, 4.61e-3, 0.00393, 20), 4)
     0.1337
     """
-    _require(one_way_length_m, np.greater_equal(one_way_length_m, 0), "a length must not be negative", "m")
-    _require(resistance_20c_ohm_per_m, np.greater(resistance_20c_ohm_per_m, 0), "a resistance must be above 0", "Ω/m")
-    _require(parallel, np.greater_equal(parallel, 1), "the number of parallel conductors must be 1 or more", "")
+    require(one_way_length_m, np.greater_equal(one_way_length_m, 0), "a length must not be negative", "m")
+    require(resistance_20c_ohm_per_m, np.greater(resistance_20c_ohm_per_m, 0), "a resistance must be above 0", "Ω/m")
+    require(parallel, np.greater_equal(parallel, 1), "the number of parallel conductors must be 1 or more", "")
     at_20c = one_way_length_m * resistance_20c_ohm_per_m / parallel
     return at_temperature(at_20c, alpha_20c_per_k, temperature_c)
 
@@ -224,9 +219,9 @@ def termination_ohm(area_mm2: Floats, median_ohm: Floats, gsd: Floats) -> tuple[
     >>> f"{mean * 1e3:.4f} mΩ, standard deviation {variance**0.5 * 1e3:.4f} mΩ"
     '0.1907 mΩ, standard deviation 0.1498 mΩ'
     """
-    _require(area_mm2, np.greater(area_mm2, 0), "an area must be above 0", "mm²")
-    _require(median_ohm, np.greater(median_ohm, 0), "a resistance must be above 0", "Ω")
-    _require(gsd, np.greater_equal(gsd, 1), "a geometric standard deviation must be 1 or more", "")
+    require(area_mm2, np.greater(area_mm2, 0), "an area must be above 0", "mm²")
+    require(median_ohm, np.greater(median_ohm, 0), "a resistance must be above 0", "Ω")
+    require(gsd, np.greater_equal(gsd, 1), "a geometric standard deviation must be 1 or more", "")
     log_variance = np.log(gsd) ** 2
     mean = median_ohm * np.sqrt(REFERENCE_AREA_MM2 / area_mm2) * np.exp(log_variance / 2)
     return mean, mean**2 * np.expm1(log_variance)
@@ -262,21 +257,13 @@ def percent_iacs(resistance_ohm_per_m: Floats, area_mm2: Floats) -> Floats:
     >>> round(percent_iacs(0.028264 / 2.5, 2.5), 1)
     61.0
     """
-    _require(resistance_ohm_per_m, np.greater(resistance_ohm_per_m, 0), "a resistance must be above 0", "Ω/m")
-    _require(area_mm2, np.greater(area_mm2, 0), "an area must be above 0", "mm²")
+    require(resistance_ohm_per_m, np.greater(resistance_ohm_per_m, 0), "a resistance must be above 0", "Ω/m")
+    require(area_mm2, np.greater(area_mm2, 0), "an area must be above 0", "mm²")
     return 100 * resistivity_20c("copper") * 1e6 / (resistance_ohm_per_m * area_mm2)
 
 
 def _warming(alpha_20c_per_k: Floats, temperature_c: Floats) -> Floats:
     """Resistance at a temperature over that at 20 °C."""
     warming = 1 + alpha_20c_per_k * (temperature_c - 20)
-    _require(temperature_c, np.greater(warming, 0), "a temperature must leave the metal a resistance", "°C")
+    require(temperature_c, np.greater(warming, 0), "a temperature must leave the metal a resistance", "°C")
     return warming
-
-
-def _require(value: Floats, holds: npt.ArrayLike, what: str, unit: str) -> None:
-    """Refuse values for which a condition does not hold; NaN holds for none. Names the first of them."""
-    if np.all(holds):
-        return
-    wrong = np.broadcast_to(value, np.shape(holds))[~np.asarray(holds)].flat[0]
-    raise InvalidQuantity(f"{what}, got {wrong:g} {unit}".rstrip())

@@ -32,8 +32,8 @@ def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     unknown = [point.load.tag for point in case.loads if point.load.lowest_voltage_v is None]
     if unknown:
-        more = f" and {len(unknown) - 1} more" if len(unknown) > 1 else ""
-        yield load_below_lowest.gap(case, "", f"the lowest voltage of {unknown[0]}{more} is not known")
+        more = f" and of {len(unknown) - 1} more" if len(unknown) > 1 else ""
+        yield load_below_lowest.gap(case, "", f"the lowest voltage of “{unknown[0]}”{more} is not known")
     for point in case.loads:
         if point.load.lowest_voltage_v is not None:
             yield from _judge(case, point, point.load.lowest_voltage_v)
@@ -41,7 +41,9 @@ def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
 def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Finding | NotJudged]:
     name = point.load.tag
-    read = [(name_, volts) for name_, volts in point.read if volts.value > 0]
+    # without voltage, or with its leads swapped, a point says nothing about what its load can live with
+    some = case.limits["readings.no_voltage_share"] * (case.nominal_v or 0.0)
+    read = [(name_, volts) for name_, volts in point.read if volts.value > some]
     if read:
         round_, volts = min(read, key=lambda item: item[1].value)
         if against_limit(volts.value, lowest, volts.u or 0.0, case.limits, above_is_bad=False) is Verdict.FAILS:

@@ -4,6 +4,10 @@ Limits profiles as data: packaged profile, then the site's own, then the site's 
 A profile is TOML: groups of plain numbers, each group with ``title``, ``unit``, ``source``, ``edition`` and
 ``status``; ``inherits`` names the profile that it starts from (``general`` where it names none). The keys
 of ``general.toml`` are the keys there are: any other is an error that names the nearest.
+
+A key may hold a word instead of a number where ``general.toml`` says which words there are:
+``table = { word = "by size", accepted = ["by size", "iec"] }``. Any other profile writes the word alone,
+``table = "iec"``.
 """
 
 from __future__ import annotations
@@ -12,7 +16,7 @@ import difflib
 import math
 import tomllib
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import cache
 from importlib.resources import files
 from typing import Any
@@ -40,6 +44,10 @@ class LimitGroup:
     origin: str
     """Name of the profile that stated it last."""
     values: Mapping[str, float]
+    words: Mapping[str, str] = field(default_factory=dict)
+    """What is chosen by a word; no key has both a word and a number."""
+    accepted: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    """The words that each key of ``words`` may hold."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,6 +77,16 @@ class Limits:
         """
         group, _, name = key.partition(".")
         return self.groups[group].values[name]
+
+    def word(self, key: str) -> str:
+        """
+        One word by group and key.
+
+        >>> of(Site(name="x")).word("capacity.table")
+        'by size'
+        """
+        group, _, name = key.partition(".")
+        return self.groups[group].words[name]
 
     def values(self, group: str) -> Mapping[str, float]:
         """All numbers of one group."""
@@ -154,15 +172,26 @@ def _group(name: str, group: str, content: dict[str, Any], parent: LimitGroup | 
             faults.append(f"{name}: {group}.{key} is not a text")
     if parent:
         if content and not texts.get("source"):
-            faults.append(f"{name}: [{group}] changes numbers without naming its source")
+            faults.append(f"{name}: [{group}] changes values without naming its source")
         if texts.get("unit", parent.unit) != parent.unit:
             faults.append(f"{name}: {group}.unit is {texts['unit']!r}, its numbers are in {parent.unit!r}")
     values = dict(parent.values) if parent else {}
+    words = dict(parent.words) if parent else {}
+    accepted = dict(parent.accepted) if parent else {}
     for key, value in content.items():
-        if parent and key not in parent.values:
-            faults.append(f"{name}: there is no {group}.{key}{_nearest(key, parent.values)}")
+        where = f"{name}: {group}.{key}"
+        if parent is None and isinstance(value, dict):  # the root alone says which words there are
+            words[key], accepted[key] = value["word"], tuple(value["accepted"])
+        elif key in words:
+            if value in accepted[key]:
+                words[key] = value
+            else:
+                one_of = ", ".join(accepted[key])
+                faults.append(f"{where} is {value!r}; one of {one_of}{_nearest(str(value), accepted[key])}")
+        elif parent and key not in parent.values:
+            faults.append(f"{name}: there is no {group}.{key}{_nearest(key, [*parent.values, *parent.words])}")
         elif isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
-            faults.append(f"{name}: {group}.{key} is {value!r}, not a finite number")
+            faults.append(f"{where} is {value!r}, not a finite number")
         else:
             values[key] = float(value)
     return LimitGroup(
@@ -174,6 +203,8 @@ def _group(name: str, group: str, content: dict[str, Any], parent: LimitGroup | 
         status=texts.get("status", "not stated" if "source" in texts or not parent else parent.status),
         origin=name if content or not parent else parent.origin,
         values=values,
+        words=words,
+        accepted=accepted,
     )
 
 

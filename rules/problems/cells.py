@@ -45,6 +45,7 @@ def accepted(column: Column, unit: str = "") -> str:
     if column.kind == "choice":
         return either(column.choices)
     words: dict[ColumnKind, str] = {
+        "tag": "a tag",
         "size": "a size such as 2.5 mm2, 12 AWG, 4/0 AWG or 250 kcmil",
         "date": "a date such as 2026-03-14",
         "time": "an ISO 8601 time such as 2026-03-14T09:30",
@@ -70,6 +71,9 @@ def text_complaint(text: str, *, lines: bool = False) -> Complaint:
 
 def _column_problems(table: str, name: str, column: Column, rows: tuple[Row, ...]) -> Iterator[Problem]:
     check, value_of = _CHECKS[column.kind], attrgetter(name)
+    # Most columns hold few distinct values, and hardly any holds one that is wrong.
+    if not any(_may_be_wrong(value, column, check) for value in set(map(value_of, rows))):
+        return
     for row in rows:
         value = value_of(row)
         if value is None or value in ("", ()):
@@ -77,6 +81,11 @@ def _column_problems(table: str, name: str, column: Column, rows: tuple[Row, ...
                 yield Problem(table, row.id, column.name, "is empty", accepted(column))
         elif (complaint := check(value, column)) is not None:
             yield Problem(table, row.id, column.name, *complaint)
+
+
+def _may_be_wrong(value: Any, column: Column, check: Callable[[Any, Column], Complaint]) -> bool:
+    is_empty = value is None or value in ("", ())
+    return column.filled if is_empty else check(value, column) is not None
 
 
 def _ends_on_board(row: Row, name: str) -> bool:

@@ -21,8 +21,8 @@ class Problem:
     """What is accepted instead."""
     seen_in: tuple[str, ...] = ()
     """
-    Other tables that were looked at to find it. An intake that could not read one of them whole leaves the
-    problem out: it may be none.
+    Tables that were looked at to find it beyond the cell's own row. An intake that could not read one of them
+    whole leaves the problem out: it may be none.
     """
 
     @property

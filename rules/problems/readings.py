@@ -7,6 +7,7 @@ is ``bus``, for ``voltage``, ``current`` and ``residual``; ``temperature`` may b
 
 from __future__ import annotations
 
+from collections import defaultdict
 from collections.abc import Iterator
 from functools import partial
 from itertools import chain
@@ -43,11 +44,21 @@ _NAMED_LEG = "positive or negative"
 def reading_problems(index: Index, suggestions: Suggestions) -> Iterator[Problem]:
     """Everything that is wrong with where readings were taken, and with what they replace."""
     yield from circuit_problems("readings", index.site.readings, index, suggestions)
+    # Circuits have few shapes, and readings of them are taken at the same few places: each is asked once.
+    right: defaultdict[tuple[object, ...], set[tuple[str, ...]]] = defaultdict(set)
     for circuit_id in index.circuits:
         readings = index.readings_of(circuit_id)
-        places = _places(index, circuit_id) if readings else {}
+        if not readings:
+            continue
+        places = _places(index, circuit_id)
+        of_shape = right[tuple(places.values())]
         for reading in readings:
-            yield from _on_circuit(reading, places, index, suggestions)
+            taken = (reading.quantity, reading.at, reading.to, reading.leg)
+            if taken not in of_shape:
+                wrong = list(_on_circuit(reading, places, index, suggestions))
+                yield from wrong
+                if not wrong:
+                    of_shape.add(taken)
     for reading in index.site.readings:
         if not reading.circuit_id or reading.board is not None:
             yield from _on_busbar(reading, index, suggestions)

@@ -73,7 +73,8 @@ def _tree(index: Index, circuit_id: str) -> Iterator[Problem]:
             yield _reserved(run, "from", start, tuple(reached))
         elif start not in reached:
             reach = "the first run starts at way" if first else f"no earlier run ends at {quoted(start)}"
-            yield Problem("runs", run.id, "from", f"{run.name} starts nowhere: {reach}", either(tuple(reached)))
+            what = f"{run.name} starts nowhere: {reach}"
+            yield Problem("runs", run.id, "from", what, either(tuple(reached)), ("runs",))
         if start == end:
             what = f"{run.name} goes nowhere: it ends where it starts, at {quoted(start)}"
             yield Problem("runs", run.id, "to", what, "another point")
@@ -125,7 +126,7 @@ def _returns(index: Index) -> Iterator[Problem]:
         if _ends(run, index) != _ends(leader, index):
             what = f"{run.name} does not go between the same two places as the other runs of {quoted(text)}"
             accepted = f"{_ends_text(leader, index)}, points named alike in each circuit"
-            yield Problem("runs", run.id, "return", what, accepted, ("circuits",))
+            yield Problem("runs", run.id, "return", what, accepted, ("circuits", "boards", "sources"))
         for column, stated, own in (
             ("return_size", sizes, run.return_size),
             ("return_material", metals, run.return_material),

@@ -16,6 +16,9 @@ from rules.errors import UnknownSize
 from rules.tables import awg
 from rules.tables.loader import group
 
+METALS = ("copper", "tinned copper", "aluminium", "copper-clad aluminium")
+"""Metals that the tables know, as a record names them."""
+
 _IEC: dict[str, dict[str, tuple[str, ...]]] = {
     "solid": {
         "copper": ("iec_class1",),
@@ -197,9 +200,8 @@ def _ladder(name: str) -> tuple[str, ...]:
 @cache
 def _metal(material: str) -> tuple[float, float]:
     """Resistivity [Ω m] and temperature coefficient [1/K] at 20 °C."""
-    metals = ("copper", "tinned copper", "aluminium", "copper-clad aluminium")
-    if material not in metals:
-        raise UnknownSize(f"no table has the metal {material!r}; accepted are {', '.join(metals)}")
+    if material not in METALS:
+        raise UnknownSize(f"no table has the metal {material!r}; accepted are {', '.join(METALS)}")
     metal = group("metal_" + material.replace(" ", "_").replace("-", "_"))
     return metal.value("resistivity_20c_ohm_m"), metal.value("alpha_20c_per_k")
 

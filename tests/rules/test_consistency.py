@@ -144,15 +144,15 @@ def test_empty_rows_miss_every_required_cell() -> None:
     assert told(site) == [
         "site - name: is empty; accepted: a text",
         "site - limits: is empty; accepted: a text",
-        "circuits 0 circuit: is empty; accepted: text of up to 10,000 characters",
+        "circuits 0 circuit: is empty; accepted: a tag",
         "circuits 0 fed_from: is empty; accepted: the tag of a board or source",
         "runs 0 circuit: is empty; accepted: the tag of a circuit",
         "runs 0 run: 0 is not possible; accepted: a whole number, 1 or more",
         "runs 0 from: is empty; accepted: the name of a point",
         "runs 0 to: is empty; accepted: the name of a point",
-        "instruments 0 instrument: is empty; accepted: text of up to 10,000 characters",
+        "instruments 0 instrument: is empty; accepted: a tag",
         "instruments 0 quantity: is empty; accepted: voltage, current, resistance or temperature",
-        "visits 0 visit: is empty; accepted: text of up to 10,000 characters",
+        "visits 0 visit: is empty; accepted: a tag",
     ]
 
 
@@ -177,6 +177,19 @@ def test_text_as_typed_is_held_to_the_same_rules() -> None:
     assert told(site) == [
         "site - nominal: '\ufffd84 V' holds the control character U+202E; accepted: text without control characters",
         "runs 0 length: '4\ufffdft' holds the control character U+001B; accepted: text without control characters",
+    ]
+
+
+def test_sizes_and_feeds_that_no_folder_gives_are_found() -> None:
+    site = Site(
+        name="hut",
+        sources=(Source(id="s", tag="S", kind="pv"),),
+        circuits=(Circuit(id="c", tag="C", fed_from=Feed("sources", "s", "p1")),),
+        runs=(Run(id="r", circuit_id="c", number=1, from_point="way", to_point="p", size="2 mm2\x1b"),),
+    )
+    assert told(site) == [
+        "circuits 0 fed_from: 'S:p1' names a point of a source; accepted: its tag alone",
+        "runs 0 size: '2 mm2\ufffd' holds the control character U+001B; accepted: text without control characters",
     ]
 
 
@@ -244,3 +257,31 @@ def test_a_large_record_full_of_mistakes_is_judged_in_seconds() -> None:
     found = problems(Site(name="hut", circuits=circuits, runs=runs))
     assert len(found) == 10_000
     assert time.perf_counter() - start < 20
+
+
+def test_of_many_circuits_alike_the_one_with_a_wrong_reading_is_told() -> None:
+    tables = deepcopy(GOOD)
+    alike = [{**row, "circuit": "C4"} for row in tables["runs"] if row["circuit"] == "C1"]
+    tables["circuits"].append({"circuit": "C4", "fed_from": "MDB", "device": "fuse gG"})
+    tables["runs"] += alike
+    tables["readings"] += [
+        {"circuit": "C4", "round": "1", "quantity": "voltage", "at": at, "value": "47", "instrument": "DMM"}
+        for at in ("p1", "p9", "p1", "p9")
+    ]
+    assert [line.partition(": ")[0] for line in judged(tables)] == ["readings 10 at", "readings 12 at"]
+
+
+def test_a_value_that_is_no_number_is_told_once_and_its_instrument_is_looked_for() -> None:
+    circuit = Circuit(id="c", tag="C1")
+    meter = Instrument(id="m", tag="DMM", quantity="voltage", accuracy_percent=1, counts=1, resolution=1)
+    rows = tuple(
+        Reading(id=tag, circuit_id="c", round="1", quantity="voltage", at="way", value=math.nan, instrument=tag)
+        for tag in ("DMM", "DMN")
+    )
+    site = Site(name="hut", circuits=(circuit,), instruments=(meter,), readings=rows)
+    assert [line for line in told(site) if "readings" in line] == [
+        "readings 0 value: nan is not possible; accepted: a number",
+        "readings 1 value: nan is not possible; accepted: a number",
+        "readings 1 instrument: 'DMN' names no instrument; accepted: the tag of an instrument that is there, "
+        "or an empty cell, did you mean 'DMM'?",
+    ]

@@ -27,7 +27,23 @@ def test_every_group_of_every_packaged_profile_says_where_it_comes_from() -> Non
                 "common practice, no source",
             )
             assert group.unit
-            assert group.values
+            assert group.values or group.words
+
+
+def test_what_general_chooses_by_a_word_is_among_the_words_it_accepts() -> None:
+    groups = limits.of(Site(name="x")).groups.values()
+    assert any(group.words for group in groups)
+    for group in groups:
+        assert group.words.keys() == group.accepted.keys()
+        assert not group.words.keys() & group.values.keys()
+        assert all(group.words[key] in accepted for key, accepted in group.accepted.items())
+
+
+def test_a_sites_own_profile_chooses_by_a_word() -> None:
+    ours = limits.of(own('[capacity]\nsource = "local code"\ntable = "nec before 2011"\n'))
+    assert ours.word("capacity.table") == "nec before 2011"
+    assert ours.word("capacity.assumed_method") == limits.of(Site(name="x")).word("capacity.assumed_method")
+    assert "local code" in ours.citation("capacity")
 
 
 def test_a_sites_own_profile_starts_from_the_one_it_inherits() -> None:
@@ -63,12 +79,17 @@ def test_a_rule_may_be_lowered_or_switched_off_with_a_reason() -> None:
         ('[drop]\nsource="s"\nallowed_percent = nan', "drop.allowed_percent is nan, not a finite number"),
         ('[drop]\nsource="s"\nallowed_percent = -1', "drop.allowed_percent is -1; not below 0"),
         ('[drop]\nsource="s"\nallowed_percent = 0', "drop.allowed_percent is 0; above 0"),
-        ("[drop]\nallowed_percent = 2", "[drop] changes numbers without naming its source"),
+        ("[drop]\nallowed_percent = 2", "[drop] changes values without naming its source"),
         ('[drop]\nsource="s"\nunit="V"\nallowed_percent = 2', "drop.unit is 'V', its numbers are in '%'"),
         ("[drop]\nsource=3\nallowed_percent = 2", "drop.source is not a text"),
         ('[temperature]\nsource="s"\nhot_c = 900', "temperature.hot_c is 900; a temperature from -90 to 400 degC"),
         ('[decision]\nsource="s"\nsound_at = 1.5', "decision.sound_at is 1.5; a share from 0 to 1"),
         ('[decision]\nsource="s"\npasses_at = 0.99', "decision.passes_at is not below decision.fails_at"),
+        ('[capacity]\nsource="s"\ntable = "ice"', "table is 'ice'; one of by size, iec, nec, nec before 2011; did you mean 'iec'?"),
+        ('[capacity]\nsource="s"\ntable = 3', "capacity.table is 3; one of by size, iec, nec, nec before 2011"),
+        ('[capacity]\nsource="s"\ntable = { word = "iec", accepted = ["iec"] }', "capacity.table is {'word': 'iec'"),
+        ('[capacity]\nsource="s"\ntabel = "iec"', "there is no capacity.tabel; did you mean 'table'?"),
+        ('[capacity]\ntable = "iec"', "[capacity] changes values without naming its source"),
         ("[rules.VD01]\noff = true", "rules.VD01 has no reason"),
         ('[rules.VD01]\noff = "yes"\nreason="r"', "rules.VD01.off is 'yes'; true or false"),
         ('[rules.VD01]\nseverity = "later"\nreason="r"', "rules.VD01.severity is 'later'; one of immediate, soon, watch, note"),

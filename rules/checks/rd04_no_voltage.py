@@ -1,0 +1,44 @@
+"""RD04: there is no voltage at a point."""
+
+from collections.abc import Iterator
+
+from rules.assessment import Citation, Finding, Severity
+from rules.case import CircuitCase
+from rules.errors import MissingData
+from rules.impossible import dead_points
+from rules.record import Figure
+from rules.rule import rule
+from rules.units import show
+
+
+@rule(
+    id="RD04",
+    title="No voltage at a point",
+    about="circuit",
+    severity=Severity.SOON,
+    remedy="Find out whether it was switched off, its device open, or the path broken: follow the voltage from the source, on auto volts.",
+    caution="Never bridge a gap with a meter on millivolts or amperes: across an open joint or fuse stands the full system voltage. "
+    "No voltage on a meter does not prove a circuit dead.",
+    source=Citation("closure tests on readings", status="common practice, no source"),
+)
+def no_voltage(case: CircuitCase) -> Iterator[Finding]:
+    """
+    The voltage between the legs at a point is a small part of nominal.
+
+    **Finds**: way 24.03 V, p1 0.02 V: the circuit is open or switched off, and no drop can be taken from the round.
+
+    **Leaves alone**: 19.6 V of 24 V, which is a drop. The profile holds the share of nominal below which it is none.
+    """
+    if not case.rounds:
+        return
+    nominal = case.nominal_v
+    if nominal is None:
+        raise MissingData("the nominal voltage is not known")
+    for this in case.rounds:
+        for point, volts in dead_points(this, nominal, case.limits):
+            yield no_voltage.finding(
+                case,
+                f"{point}, round {this.name}",
+                f"{point} reads {show(volts.value, 'V', volts.u)} where {show(nominal, 'V')} belongs: open or switched off",
+                numbers={"voltage": volts, "nominal": Figure(nominal, "V")},
+            )

@@ -1,0 +1,50 @@
+"""RD05: a circuit draws more than its loads are recorded to draw."""
+
+from collections.abc import Iterator
+
+from rules.assessment import Citation, Finding, Severity
+from rules.calc.doubt import probability_above, total
+from rules.case import CircuitCase
+from rules.record import Figure
+from rules.rule import rule
+from rules.units import show, show_against
+
+
+@rule(
+    id="RD05",
+    title="Current above the recorded loads",
+    about="circuit",
+    severity=Severity.WATCH,
+    remedy="Find out what draws it: a load that is not recorded, a wrong figure, or a leak; then correct the record.",
+    caution="Design drop, lowest voltage and device are judged with the recorded loads and come out too good. More current than the "
+    "loads explain can be a fault current: mind what it flows through.",
+    source=Citation("closure tests on readings", status="common practice, no source"),
+)
+def current_above_recorded(case: CircuitCase) -> Iterator[Finding]:
+    """
+    A clamp showed more than the loads behind it are recorded to draw, beyond doubt and the profile's margin.
+
+    **Finds**: 2.38 A behind which 0.8 A of loads are recorded.
+
+    **Leaves alone**: 8.3 A where 8 A are recorded, which the profile's margin covers; less than recorded, since loads may be off.
+    """
+    margin = 1 + case.limits["readings.load_margin"]
+    for this in case.rounds:
+        for point, terms in this.amps.items():
+            design = case.tree.design_current_a.get(point)
+            if not design:
+                continue
+            value, u = total(terms)
+            if probability_above(value, margin * design, u) < case.limits["decision.beyond_doubt"]:
+                continue
+            shown, recorded = show_against(value, design, "A")
+            run = case.tree.ends.get(point)
+            where = run.name if run else point
+            yield current_above_recorded.finding(
+                case,
+                f"{where}, round {this.name}",
+                f"{shown} was read ({show(value, 'A', u)}) where the loads are recorded to draw {recorded}",
+                numbers={"current": Figure(value, "A", u), "recorded": Figure(design, "A")},
+                source=case.limits.citation("readings"),
+            )
+            break
