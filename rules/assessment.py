@@ -187,6 +187,12 @@ class NextReading:
     current_at_least: Figure | None = None
     why: str = ""
     caution: str = ""
+    current_at_most: Figure | None = None
+    """What device, cable, source and the heat in a suspected joint allow; where a current is asked for."""
+    minutes: float | None = None
+    """What it takes, by the limits profile."""
+    fall_nats: float | None = None
+    """Expected fall in entropy of the causes, where the diagnosis chose it. [nat]"""
 
 
 @dataclass(frozen=True, slots=True)

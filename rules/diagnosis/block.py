@@ -165,6 +165,9 @@ class Model:
     own: Floats
     conductor_own: Floats
     """(b, f, n, n)"""
+    conductor_columns: Floats
+    """(b, f, n, branches + 2): the length of each branch, temperature, resistance per metre; ``conductor_own`` is their
+    square."""
 
     @property
     def whole_mean(self) -> Floats:
@@ -219,6 +222,7 @@ def model_of(block: Block, conductor: Floats, slope: Floats, carried: Floats | N
         conductor_shared=_columns(gain * of_conductors[:, :, :1], of_conductors[:, :, 1:]),
         own=block.own[:, None],
         conductor_own=columns @ np.swapaxes(columns, -1, -2),
+        conductor_columns=columns,
     )
 
 

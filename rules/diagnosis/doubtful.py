@@ -55,27 +55,18 @@ def slips(block: Block, recorded: Model) -> Slips:
         With everything as recorded: (b, 1, …).
     """
     shape, limits = block.shape, block.limits
-    covariance, mean = recorded.covariance[:, 0], recorded.whole_mean[:, 0]
-    residual = block.shown - mean
-    # what one volt more, meant than entered, takes off the residual
-    observations = np.broadcast_to(-shape.difference[:, shape.read], (len(block), shape.rows, len(shape.read)))
-    gains, own = shape.signature.gains, [read.own for read in shape.signature.current_readings]
-    currents = recorded.whole_shared[:, 0][:, :, [gains + source for source in own]] / block.reading_u[:, None]
-    pairs = np.array(shape.signature.swaps, dtype=np.int64).reshape(-1, 2)
-    apart = block.value[:, pairs[:, 1]] - block.value[:, pairs[:, 0]]
-    swapped = (shape.swap_columns.T * apart[:, None, :]) + residual[..., None]
-    live = np.where(shape.row_state == shape.signature.states, 1.0, -1.0)
-    turned = live * block.shown - mean
-    right = [residual[..., None], observations, currents, swapped, turned[..., None]]
+    covariance, own = recorded.covariance[:, 0], shape.signature.current_readings
+    residual, observations, currents, swapped, turned = rows_of_slips(block, recorded)
+    right = [residual[..., None], observations, currents, swapped + residual[..., None], turned[..., None]]
     lower = cholesky(covariance)
     white = forward(lower, np.concatenate(right, axis=-1))
     scale = -0.5 * (log_determinant(lower) + shape.rows * LOG_2PI)
     base, readings = white[:, :, 0], observations.shape[-1] + currents.shape[-1]
     entered = np.concatenate([block.value[:, shape.read], block.reading_a], axis=1)
-    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, _typed(block))
+    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, typed_off(block))
     evidence, off = _looked_at_again(block, recorded, currents, evidence, off)
     others = scale[:, None] - 0.5 * (white[:, :, 1 + readings :] ** 2).sum(axis=1)
-    several = covariance + np.eye(shape.rows) * _several(block)[:, :, None] ** 2
+    several = covariance + np.eye(shape.rows) * several_off(block)[:, :, None] ** 2
     found = np.concatenate([evidence, others, log_density(residual, several)[:, None]], axis=1)
     names = [Hypothesis(DOUBTFUL, ONE_READING, (int(number),)) for number in shape.read]
     names += [Hypothesis(DOUBTFUL, CURRENT_READING, (number,)) for number in range(len(own))]
@@ -90,7 +81,30 @@ def slips(block: Block, recorded: Model) -> Slips:
     return Slips(Hypotheses(tuple(names), weights[None], found), off)
 
 
-def _typed(block: Block) -> Floats:
+def rows_of_slips(block: Block, recorded: Model) -> tuple[Floats, Floats, Floats, Floats, Floats]:
+    """
+    What a slip does to the rows, measured less computed.
+
+    Returns
+    -------
+    tuple of arrays
+        The residual as it stands (b, n); what one volt or ampere more, meant than entered, takes off it, for each
+        observation (b, n, observations) and each current reading (b, n, currents); what two voltages at each other's
+        points add to it (b, n, pairs); the residual if the clamp was held the other way round (b, n).
+    """
+    shape = block.shape
+    mean = recorded.whole_mean[:, 0]
+    observations = np.broadcast_to(-shape.difference[:, shape.read], (len(block), shape.rows, len(shape.read)))
+    gains, own = shape.signature.gains, [read.own for read in shape.signature.current_readings]
+    currents = recorded.whole_shared[:, 0][:, :, [gains + source for source in own]] / block.reading_u[:, None]
+    pairs = np.array(shape.signature.swaps, dtype=np.int64).reshape(-1, 2)
+    apart = block.value[:, pairs[:, 1]] - block.value[:, pairs[:, 0]]
+    live = np.where(shape.row_state == shape.signature.states, 1.0, -1.0)
+    swapped = shape.swap_columns.T * apart[:, None, :]
+    return block.shown - mean, observations, currents, swapped, live * block.shown - mean
+
+
+def typed_off(block: Block) -> Floats:
     """(b, readings): within how much half of all mistyped readings are."""
     shape, limits = block.shape, block.limits
     dead = {number for row in shape.signature.rows if row.state < 0 for number, _ in row.shown}
@@ -101,7 +115,7 @@ def _typed(block: Block) -> Floats:
     return np.concatenate([np.broadcast_to(of_observations, (len(block), len(shape.read))), of_currents], axis=1)
 
 
-def _several(block: Block) -> Floats:
+def several_off(block: Block) -> Floats:
     """(b, n): how far every drop may be off where several things are wrong."""
     dead = block.shape.row_state == block.shape.signature.states
     volts = block.limits["slip.several_share"] * block.nominal_v[:, None]
@@ -175,7 +189,7 @@ def _looked_at_again(
     right = np.stack([block.shown - again.whole_mean[:, 0], currents[rows, :, best]], axis=-1)
     white = forward(lower, right)
     scale = -0.5 * (log_determinant(lower) + block.shape.rows * LOG_2PI)
-    typed = _typed(block)[rows, start + best]
+    typed = typed_off(block)[rows, start + best]
     within = (white[:, :, 0] * white[:, :, 1]).sum(axis=1)
     square = np.maximum((white[:, :, 1] ** 2).sum(axis=1), 1e-300)
     further = within / square

@@ -60,14 +60,14 @@ class Line:
         return self.constant[..., None] - 0.5 * (quadratic - taken_up + log_scale)
 
 
-def line_of(block: Block, recorded: Model) -> Line:
+def moved(block: Block) -> tuple[Floats, Floats]:
     """
-    The places of a bad connection, then those of a semiconductor.
+    What a unit of each extra adds: the places of a bad connection, then those of a semiconductor.
 
-    Parameters
-    ----------
-    recorded : Model
-        With everything as recorded: (b, 1, …).
+    Returns
+    -------
+    tuple of arrays
+        To the rows' means (b, places, n), and to the columns of their shared doubts (b, places, gains + s, n).
     """
     shape = block.shape
     sense = np.where(np.abs(block.amps) > 2 * block.amps_u, np.sign(block.amps), 0.0)
@@ -78,7 +78,20 @@ def line_of(block: Block, recorded: Model) -> Line:
     gains = block.gain_u[:, None, :, None] * shape.gain_rows * direction[:, :, None]
     sources = np.zeros((*direction.shape[:2], shape.signature.sources, shape.rows))
     sources[:, : len(shape.places)] = through[:, 1:].transpose(0, 3, 1, 2)
-    moving = np.concatenate([gains, sources], axis=2)
+    return direction, np.concatenate([gains, sources], axis=2)
+
+
+def line_of(block: Block, recorded: Model) -> Line:
+    """
+    The places of a bad connection, then those of a semiconductor.
+
+    Parameters
+    ----------
+    recorded : Model
+        With everything as recorded: (b, 1, …).
+    """
+    shape = block.shape
+    direction, moving = moved(block)
     touched = _touched(shape)
     shared = recorded.whole_shared[:, 0]
     fixed = shared[:, None] * (1 - touched)[:, None]

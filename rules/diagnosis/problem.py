@@ -142,3 +142,9 @@ class Problem:
     current_readings: tuple[Observation, ...]
     rounds: tuple[str, ...]
     """Name of each state."""
+
+    @property
+    def used(self) -> frozenset[str]:
+        """Ids of the readings that enter a row; those of currents left out."""
+        numbers = {number for row in self.signature.rows for number, _ in row.shown}
+        return frozenset(reading.id for number in numbers for reading in self.observations[number].readings)

@@ -70,8 +70,8 @@ class Density:
     def nodes(self) -> Floats:
         return self.low[..., None] + self.width[..., None] * UNIT_NODES
 
-    def _below(self) -> Floats:
-        """(..., fine steps): probability below each; it never falls."""
+    def below(self) -> Floats:
+        """(..., fine steps): probability below each of ``UNIT_STEPS`` of the width; it never falls."""
         below = (self.share / UNIT_WEIGHTS) @ BELOW_STEPS
         rising: Floats = np.maximum.accumulate(np.clip(below, 0.0, 1.0), axis=-1)
         return rising
@@ -82,7 +82,7 @@ class Density:
 
         Between two steps the cumulative density is the cubic that has its values and slopes there.
         """
-        below = self._below()
+        below = self.below()
         step = np.clip((below <= share).sum(axis=-1) - 1, 0, FINE - 1)[..., None]
         here = np.take_along_axis(below, step, axis=-1)[..., 0]
         rise = np.maximum(np.take_along_axis(below, step + 1, axis=-1)[..., 0] - here, 1e-300)
@@ -94,7 +94,7 @@ class Density:
 
     def above(self, coordinate: Floats) -> Floats:
         """Probability that the size lies above a coordinate (...)."""
-        below = self._below()
+        below = self.below()
         place = (coordinate - self.low) / self.width * FINE
         step = np.clip(np.floor(np.nan_to_num(place, neginf=0.0, posinf=FINE)), 0, FINE - 1).astype(np.int64)[..., None]
         here = np.take_along_axis(below, step, axis=-1)[..., 0]

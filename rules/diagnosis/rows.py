@@ -289,11 +289,11 @@ class _Gather:
             whole = self.tree.device_ohm or 0.0
             share = {"both": 0.5, "positive": 1.0, "negative": 0.0}[_device_legs(self.tree, self.return_leg)]
             first = self.tree.runs[0].size if self.tree.runs else ""
-            return Branch(whole * share, whole * (1 - share), extra_scale=_scale(first), hot_ohm=hot)
+            return Branch(whole * share, whole * (1 - share), extra_scale=extra_scale(first), hot_ohm=hot)
         run = self._run(place)
         known = self.tree.figures[run.id]
         if known.gap:
-            return Branch(extra_scale=_scale(run.size), hot_ohm=hot)
+            return Branch(extra_scale=extra_scale(run.size), hot_ohm=hot)
         out, back = (*known.legs, NO_LEG)[:2]
         first_leg, second_leg = (back, out) if self.return_leg == "positive" else (out, back)
         return Branch(
@@ -307,7 +307,7 @@ class _Gather:
             second_leg.joint_variance,
             known.length_u,
             known.temperature_u_k,
-            _scale(run.size),
+            extra_scale(run.size),
             hot,
         )
 
@@ -331,7 +331,7 @@ class _Gather:
         return self.tree.runs[place - (self.names[0] == DEVICE)]
 
 
-def _scale(size: str) -> float:
+def extra_scale(size: str) -> float:
     """What the range of a bad connection is multiplied with, by the area of one conductor."""
     return math.sqrt(REFERENCE_AREA_MM2 / area_mm2(size)) if is_known(size) else 1.0
 
