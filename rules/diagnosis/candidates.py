@@ -220,7 +220,8 @@ def _unread(case: CircuitCase, strongest: Round | None) -> list[tuple[str, str]]
     read = strongest.volts if strongest is not None else {}
     found = []
     for point, run in case.tree.ends.items():
-        if point not in read:
+        closes = point == run.name  # a run that closes a mesh arrives at a point that another run reaches
+        if point not in read and not closes:
             above = run.from_point
             for _ in case.tree.ends:  # no longer than the tree: a record may close a ring
                 if above in read or above not in case.tree.ends:
