@@ -60,9 +60,15 @@ def view_of(survey: Survey, circuit_id: str) -> CircuitView | None:
     name = ""
     if result is not None and result.visit:
         of_visit = [reading for reading in readings if reading.visit_or_default == result.visit]
-        name = result.drop.round if result.drop is not None else of_visit[-1].round if of_visit else ""
+        name = result.drop.round if result.drop is not None else _last_round(of_visit)
         readings = [reading for reading in of_visit if reading.round == name]
     return CircuitView(circuit, result, name, readings if name else (), _expected(survey, circuit_id, name))
+
+
+def _last_round(readings: Sequence[Reading]) -> str:
+    """The last round with a voltage, else the last; empty where nothing was read."""
+    with_volts = [reading.round for reading in readings if reading.quantity == "voltage"]
+    return next(reversed(with_volts or [reading.round for reading in readings]), "")
 
 
 def _expected(survey: Survey, circuit_id: str, round_name: str) -> Mapping[str, Figure]:
