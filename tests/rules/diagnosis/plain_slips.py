@@ -8,6 +8,8 @@ entered. For circuits whose voltages and currents were read at every point, as i
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
+from functools import partial
 from types import ModuleType
 from typing import Any
 
@@ -49,26 +51,42 @@ def slips(loop: Any, plain: ModuleType) -> dict[tuple[str, str], tuple[float, fl
     return {(DOUBTFUL, name): (share / total, evidence) for name, (share, evidence) in found.items()}
 
 
+def normal(x: float, centre: float, width: float) -> float:
+    return math.exp(-0.5 * ((x - centre) / width) ** 2) / (width * math.sqrt(2 * math.pi))
+
+
 def entered_density(entered: float, off: float, variance: float, typed: float) -> float:
-    """Density of a mistyped value: half Cauchy, half about known slips, each widened by the doubt of what was meant."""
-    density = 0.5 / (math.pi * typed * (1 + (off / typed) ** 2))
-    for ratio in RATIOS:
-        slipped = (entered + off) / ratio
-        width = math.sqrt((NEAR * slipped) ** 2 + variance / ratio**2)
-        density += (
-            0.5 / len(RATIOS) * math.exp(-0.5 * ((entered - slipped) / width) ** 2) / (width * math.sqrt(2 * math.pi))
-        )
-    return density
+    """Density of what was entered for a voltage: half Cauchy, half about known slips, widened by the doubt of what was meant."""
+    meant = entered + off
+    about = [normal(entered, meant / c, math.hypot(NEAR * meant / c, math.sqrt(variance) / c)) for c in RATIOS]
+    return 0.5 / (math.pi * typed * (1 + (off / typed) ** 2)) + 0.5 * sum(about) / len(RATIOS)
 
 
-def _one(residual: Floats, covariance: Floats, direction: Floats, entered: float, typed: float) -> tuple[float, float]:
-    """Log evidence of a slip along a direction, summed over its size, and its best size."""
+def meant_density(entered: float, off: float, variance: float, typed: float) -> float:
+    """Density of what was meant by a current, which nothing predicts but what was entered."""
+    meant = entered + off
+    about = [normal(meant, entered * c, math.hypot(NEAR * entered * c, math.sqrt(variance))) for c in RATIOS]
+    return 0.5 / (math.pi * typed * (1 + (off / typed) ** 2)) + 0.5 * sum(about) / len(RATIOS)
+
+
+def _one(
+    residual: Floats, covariance: Floats, direction: Floats, density: Callable[[float, float], float]
+) -> tuple[float, float]:
+    """Log evidence of a slip along a direction, summed over its size, and its best size; ``density``: of size, variance."""
     solved = np.linalg.solve(covariance, direction)
     square = float(direction @ solved)
     off = float(residual @ solved) / square
     # the residual without the slip, and the width of the Gaussian over its size
-    base = log_gaussian(residual - off * direction, covariance)
-    return base + 0.5 * math.log(2 * math.pi / square) + math.log(entered_density(entered, off, 1 / square, typed)), off
+    base = log_gaussian(residual - off * direction, covariance) + 0.5 * math.log(2 * math.pi / square)
+    return base + math.log(density(off, 1 / square)), off
+
+
+def _entered(entered: float, typed: float, off: float, variance: float) -> float:
+    return entered_density(entered, off, variance, typed)
+
+
+def _meant(entered: float, typed: float, off: float, variance: float) -> float:
+    return meant_density(entered, off, variance, typed)
 
 
 def _one_reading(loop: Any, plain: ModuleType) -> dict[str, tuple[float, float]]:
@@ -83,11 +101,14 @@ def _one_reading(loop: Any, plain: ModuleType) -> dict[str, tuple[float, float]]
     for number, shown in enumerate(readings):
         direction = -np.array([sum(w for s, w in row.shown if s is shown) for row in loop.rows])
         typed = limits["slip.voltage_share"] * loop.case.nominal_v
-        found[f"voltage {number}"] = (share, _one(residual, covariance, direction, shown.value, typed)[0])
+        found[f"voltage {number}"] = (
+            share,
+            _one(residual, covariance, direction, partial(_entered, shown.value, typed))[0],
+        )
     typed = limits["slip.current_share"] * max(abs(shown.value) for shown in loop.currents_read)
     offs: list[float] = []
     for number, shown in enumerate(loop.currents_read):
-        evidence, off = _one(residual, covariance, _per_ampere(loop, plain, shown), shown.value, typed)
+        evidence, off = _one(residual, covariance, _per_ampere(loop, plain, shown), partial(_meant, shown.value, typed))
         found[f"current {number}"] = (share, evidence)
         offs.append(off)
     # the current that explains most is judged with the doubt that its corrected value brings
@@ -100,7 +121,7 @@ def _one_reading(loop: Any, plain: ModuleType) -> dict[str, tuple[float, float]]
     square, left = float(direction @ solved), loop.shown - mean
     further = float(left @ solved) / square
     base = log_gaussian(left - further * direction, covariance) + 0.5 * math.log(2 * math.pi / square)
-    density = entered_density(shown.value, off + further, 1 / square, typed)
+    density = meant_density(shown.value, off + further, 1 / square, typed)
     found[f"current {best}"] = (share, base + math.log(density))
     return found
 
