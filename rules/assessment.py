@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from enum import StrEnum
+from typing import NamedTuple
 
 from rules.record import Figure
 
@@ -127,9 +128,8 @@ class Drop:
     """What its doubt is made of, largest first: the squares add to that of the excess's ``u``."""
 
 
-@dataclass(frozen=True, slots=True)
-class Place:
-    """A probability of a cause at a place."""
+class Place(NamedTuple):
+    """A probability of a cause at a place: a row of ``causes``. A tuple, since a site has a million of them."""
 
     cause: str
     where: str
@@ -144,6 +144,8 @@ class Place:
     """The cause's most probable way: ``one size smaller``, or which reading is doubtful and how."""
     point: str = ""
     """Where the branch of the place ends: ``way`` for the device; empty for the whole circuit."""
+    joints: tuple[Place, ...] = ()
+    """Of bad connections in two places at once: each, with its own figures."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -29,7 +29,7 @@ REMEDIES = {
 """What to do next, by cause; the place goes into the braces."""
 NORMAL_95 = 1.96
 """Standard deviations from the middle of a Gaussian to the bounds of its central 95 %."""
-ENDS_KNOWN = "Isolate, cut back and remake the termination at {}, then read it again at the same current."
+ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it again at the same current."
 
 
 @rule(
@@ -114,7 +114,7 @@ def _heat(case: CircuitCase, claim: Claim | None) -> Figure | None:
     if claim is not None and claim.cause == BAD_CONNECTION:
         read_a = abs(drop.current.value) if drop is not None else 0.0
         return max(
-            (_joint_heat(place, case.largest_current_a.get(place.point, read_a)) for place in claim.places),
+            (_joint_heat(joint, case.largest_current_a.get(joint.point, read_a)) for joint in claim.joints),
             key=lambda heat: heat.value,
         )
     if drop is None:
@@ -160,11 +160,16 @@ def _claim_words(claim: Claim) -> str:
         rows = sorted([*claim.places, *claim.others], key=lambda place: -place.probability)
         return "the conductors are probably not as recorded: " + ", ".join(cause_words(row) for row in rows) + against
     said = f"probably a {claim.cause} in {claim.where} ({probability_words(claim.probability)})"
-    low, best, high = claim.place.low_ohm, claim.place.best_ohm, claim.place.high_ohm
+    ohms = " and ".join(filter(None, (_ohm_words(joint) for joint in claim.place.joints or (claim.place,))))
+    return f"{said}: {ohms} extra{against}" if ohms else said + against
+
+
+def _ohm_words(joint: Place) -> str:
+    """An extra resistance with its bounds; empty where it has none."""
+    low, best, high = joint.low_ohm, joint.best_ohm, joint.high_ohm
     if low is None or best is None or high is None:
-        return said + against
-    bounds = f"{show(low, 'ohm', digits=3)} to {show(high, 'ohm', digits=3)}"
-    return f"{said}: {show(best, 'ohm', digits=3)} extra ({bounds}){against}"
+        return ""
+    return f"{show(best, 'ohm', digits=3)} ({show(low, 'ohm', digits=3)} to {show(high, 'ohm', digits=3)})"
 
 
 def _remarks(case: CircuitCase) -> Iterator[str]:
@@ -200,8 +205,9 @@ def _numbers(drop: Drop | None, claim: Claim | None) -> dict[str, Figure]:
 def _remedy(claim: Claim | None) -> str | None:
     if claim is None:
         return None
-    separated = claim.cause == BAD_CONNECTION and len(claim.places) == 1 and claim.where.count(" ") >= 3
-    return (ENDS_KNOWN if separated else REMEDIES[claim.cause]).format(claim.where)
+    separated = claim.cause == BAD_CONNECTION and all(joint.where.count(" ") == 3 for joint in claim.joints)
+    several = len(claim.places) > 1
+    return (ENDS_KNOWN if separated and not several else REMEDIES[claim.cause]).format(claim.where)
 
 
 def _consequences(case: CircuitCase, claim: Claim | None, heat: Figure | None) -> Iterator[str]:

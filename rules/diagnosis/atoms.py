@@ -155,8 +155,10 @@ def _extras(judged: Judged, shape: Shape) -> _Part:
     posterior = judged.posterior[:, [*judged.of_cause(BAD_CONNECTION), *judged.of_cause(SEMICONDUCTOR)]]
     weight = posterior[:, old] * np.array(split)
     coordinate, distance = _strata(judged)
-    size = judged.line.size(coordinate)
-    smoothed = SMOOTHED * distance * np.where(judged.line.logarithmic[:, None] > 0, size, 1.0)
+    # the coordinate of a bad connection is the logarithm of its size, that of a semiconductor the size itself
+    logarithmic = (np.arange(coordinate.shape[1]) < len(before.places))[:, None]
+    size = np.where(logarithmic, np.exp(np.where(logarithmic, coordinate, 0.0)), coordinate)
+    smoothed = SMOOTHED * distance * np.where(logarithmic, size, 1.0)
     names = [Group(BAD_CONNECTION, number) for number in range(len(shape.places))]
     names += [Group(SEMICONDUCTOR, number) for number in range(len(shape.offsets))]
     count = len(judged.block)
@@ -174,7 +176,7 @@ def _extras(judged: Judged, shape: Shape) -> _Part:
 def _strata(judged: Judged) -> tuple[Floats, Floats]:
     """Coordinates in the middle of equal shares of each size's posterior, and how wide each share is (b, places, s)."""
     density = judged.density
-    below = density.below()
+    below = density.cumulative().below
     edges = np.clip(np.arange(SIZES + 1) / SIZES, TAIL, 1 - TAIL)
     wanted = np.sort(np.concatenate([edges, (np.arange(SIZES) + 0.5) / SIZES]))
     step = (below[..., None, :] <= wanted[:, None]).sum(axis=-1).clip(1, len(UNIT_STEPS) - 1)

@@ -260,5 +260,6 @@ def _round(case: CircuitCase, name: str, rows: Sequence[tuple[Reading, Shown]], 
         direct={},
         poor=(),
         wander_v=0.0,
+        wander_freedom=0,
         shown={row.id: shown for row, shown in rows} | {row.id: shown for _, row, shown in clamped},
     )

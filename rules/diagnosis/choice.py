@@ -74,7 +74,7 @@ def looked_at(posed: Sequence[Posed], limits: Limits) -> Batch:
     block = stacked(shape, [each.imagined for each in posed], limits)
     atoms = atoms_of(judged, block)
     outlook = outlook_of(judged, block, atoms, posed)
-    high = np.exp(judged.density.quantile(COVERED)[:, : len(judged.block.shape.places)])
+    high = np.exp(judged.density.cumulative().quantiles(COVERED)[0][:, : len(judged.block.shape.places)])
     most = np.array([_most_level(each, judged, number, high[number], limits) for number, each in enumerate(posed)])
     options = options_of(posed, block, atoms, outlook, most, limits)
     return Batch(posed, limits, shape, judged, atoms, outlook, options, high, most)

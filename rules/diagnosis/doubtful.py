@@ -63,7 +63,8 @@ def slips(block: Block, recorded: Model) -> Slips:
     scale = -0.5 * (log_determinant(lower) + shape.rows * LOG_2PI)
     base, readings = white[:, :, 0], observations.shape[-1] + currents.shape[-1]
     entered = np.concatenate([block.value[:, shape.read], block.reading_a], axis=1)
-    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, typed_off(block))
+    given = np.array([0.0] * len(shape.read) + [1.0] * len(own))
+    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, typed_off(block), given)
     evidence, off = _looked_at_again(block, recorded, currents, evidence, off)
     others = scale[:, None] - 0.5 * (white[:, :, 1 + readings :] ** 2).sum(axis=1)
     several = covariance + np.eye(shape.rows) * several_off(block)[:, :, None] ** 2
@@ -122,7 +123,9 @@ def several_off(block: Block) -> Floats:
     return np.where(dead, block.limits["slip.resistance_ohm"], volts)
 
 
-def _off(base: Floats, directions: Floats, scale: Floats, entered: Floats, typed: Floats) -> tuple[Floats, Floats]:
+def _off(
+    base: Floats, directions: Floats, scale: Floats, entered: Floats, typed: Floats, given: Floats
+) -> tuple[Floats, Floats]:
     """
     Log evidence of a shift along each direction, and its best size.
 
@@ -134,12 +137,12 @@ def _off(base: Floats, directions: Floats, scale: Floats, entered: Floats, typed
     off = within / square
     recorded = scale - 0.5 * (base**2).sum(axis=1)
     gained = 0.5 * within * off + 0.5 * (LOG_2PI - np.log(square))
-    return recorded[:, None] + gained + np.log(slip_density(entered, off, 1 / square, typed)), off
+    return recorded[:, None] + gained + np.log(slip_density(entered, off, 1 / square, typed, given)), off
 
 
-def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats) -> Floats:
+def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats, given: Floats) -> Floats:
     """
-    Density of an entered value where the reading was mistaken.
+    Density of a mistake that takes one value for another.
 
     Parameters
     ----------
@@ -151,18 +154,22 @@ def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats) 
         Of ``off``.
     typed : array
         Within how much half of all mistyped readings are.
+    given : array
+        0 for a voltage or resistance, which the record predicts: the density is over what might have been entered.
+        1 for a current, which the record does not predict: it is over what might have been meant.
 
     Returns
     -------
     array
-        Half of it over any distance, half about the slips of ``RATIOS``; over all values that might have been
-        entered it integrates to one.
+        Half of it over any distance, half about the slips of ``RATIOS``; it integrates to one.
     """
     anything = 1 / (math.pi * typed * (1 + (off / typed) ** 2))
     ratios = np.array(list(RATIOS))
-    slipped = (entered + off)[..., None] / ratios
-    width = np.sqrt((NEAR * slipped) ** 2 + variance[..., None] / ratios**2)
-    apart = (entered[..., None] - slipped) / width
+    meant, entered, given = (entered + off)[..., None], entered[..., None], given[..., None]
+    centre = np.where(given > 0, entered * ratios, meant / ratios)
+    spread = np.where(given > 0, variance[..., None], variance[..., None] / ratios**2)
+    width = np.sqrt((NEAR * centre) ** 2 + spread)
+    apart = (np.where(given > 0, meant, entered) - centre) / width
     about = (np.exp(-0.5 * apart**2) / (width * math.sqrt(2 * math.pi))).mean(axis=-1)
     density: Floats = (anything + about) / 2
     return density
@@ -195,7 +202,7 @@ def _looked_at_again(
     further = within / square
     total = moved + further
     new = scale - 0.5 * (white[:, :, 0] ** 2).sum(axis=1) + 0.5 * within * further + 0.5 * (LOG_2PI - np.log(square))
-    new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed))
+    new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed, np.ones(len(block))))
     evidence, off = evidence.copy(), off.copy()
     evidence[rows, start + best], off[rows, start + best] = new, total
     return evidence, off
