@@ -124,6 +124,22 @@ class Drop:
     """In the circuit's first run, in that round."""
     by: str
     """How it was measured: ``two voltages`` or ``direct drops``."""
+
+    @property
+    def sense(self) -> float:
+        """1, or -1 while the current flows towards the source: what is lost is then a rise."""
+        return -1.0 if self.current.value < 0 else 1.0
+
+    @property
+    def lost(self) -> Figure:
+        """Measured, in the sense of the current."""
+        return Figure(self.sense * self.measured.value, self.measured.unit, self.measured.u)
+
+    @property
+    def too_much(self) -> Figure:
+        """Excess, in the sense of the current."""
+        return Figure(self.sense * self.excess.value, self.excess.unit, self.excess.u)
+
     budget: tuple[Doubt, ...] = ()
     """What its doubt is made of, largest first: the squares add to that of the excess's ``u``."""
 

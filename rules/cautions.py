@@ -72,8 +72,11 @@ LICENSED = Caution(
 
 
 def highest_voltage_v(site: Site) -> float:
-    """The highest voltage that the record names for any source, board or circuit. [V]"""
-    named = [source.highest_voltage_v or source.working_or_nominal_v for source in site.sources]
+    """The highest voltage that the record names for any source, board or circuit, or that was read. [V]"""
+    named = [source.highest_voltage_v for source in site.sources]
+    named += [source.working_voltage_v for source in site.sources]
+    named += [source.nominal_voltage_v for source in site.sources]
+    named += [abs(reading.value) for reading in site.readings if reading.quantity == "voltage"]
     named += [board.nominal_voltage_v for board in site.boards]
     named += [circuit.nominal_voltage_v for circuit in site.circuits]
     return max((volts for volts in [*named, site.nominal_voltage_v] if volts is not None), default=0.0)

@@ -54,7 +54,7 @@ def dead_points(this: Round, nominal_v: float, limits: Limits) -> list[tuple[str
     found = []
     for point, terms in this.volts.items():
         value, u = total(terms)
-        share = value / nominal_v
+        share = value / nominal_v if nominal_v else 1.0
         limit = limits["readings.no_voltage_share"]
         if point not in reversed_ and share < limit and not math.isclose(share, limit):
             found.append((point, Figure(value, "V", u)))

@@ -12,6 +12,7 @@ import re
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
+from datetime import UTC, datetime
 from statistics import mean, stdev
 
 from rules.assessment import Drop
@@ -104,10 +105,26 @@ def visit_ranks(index: Index) -> dict[str, tuple[float, str, int]]:
         visit = reading.visit_or_default
         appeared.setdefault(visit, n)
         if reading.taken_at:
-            first[visit] = min(first.get(visit, reading.taken_at), reading.taken_at)
+            moment = _moment(reading.taken_at)
+            first[visit] = min(first.get(visit, moment), moment)
     for visit, n in appeared.items():
-        ranks.setdefault(visit, (math.inf, first.get(visit, ""), n))
+        if visit in ranks:
+            continue
+        # a visit that is not listed stands behind the listed ones that began before it, the last without a time
+        began = first.get(visit, "")
+        before = [place for place, row in enumerate(listed) if began and row.tag in first and first[row.tag] <= began]
+        known = began and any(row.tag in first for row in listed)
+        ranks[visit] = (max(before, default=-1) + 0.5 if known else math.inf, began, n)
     return ranks
+
+
+def _moment(taken_at: str) -> str:
+    """A time as text that sorts by time: with an offset it is taken to UTC."""
+    try:
+        read = datetime.fromisoformat(taken_at)
+    except ValueError:
+        return taken_at
+    return (read.astimezone(UTC).replace(tzinfo=None) if read.tzinfo else read).isoformat(timespec="microseconds")
 
 
 def rounds_of(readings: Sequence[Reading], tree: Tree, index: Index, limits: Limits) -> tuple[Round, ...]:

@@ -84,7 +84,7 @@ class Rule:
         if setting is not None and setting.severity is not None:
             severity = setting.severity
         return Finding(
-            id="/".join(part for part in (self.id, place, where) if part),
+            id="/".join(_unslashed(part) for part in (self.id, place, where) if part),
             rule=self.id,
             circuit=circuit,
             board=board,
@@ -103,6 +103,11 @@ class Rule:
     def gap(self, case: Case, where: str, why: str) -> NotJudged:
         """What this rule could not judge at one place; the rest of the case goes on."""
         return NotJudged(self.id, case.tag if isinstance(case, CircuitCase) else None, where, why)
+
+
+def _unslashed(part: str) -> str:
+    """A part of an id: a slash within it is written so that two places never make one id."""
+    return part.replace("%", "%25").replace("/", "%2F")
 
 
 def rule(

@@ -3,8 +3,10 @@
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
+from rules.calc.doubt import probability_above
 from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
+from rules.impossible import dead_points
 from rules.record import Figure
 from rules.rule import rule
 from rules.units import show, show_against
@@ -41,17 +43,27 @@ def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
 def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Finding | NotJudged]:
     name = point.load.tag
-    # without voltage, or with its leads swapped, a point says nothing about what its load can live with
-    some = case.limits["readings.no_voltage_share"] * (case.nominal_v or 0.0)
-    read = [(name_, volts) for name_, volts in point.read if volts.value > some]
+    without = {
+        (this.name, dead) for this in case.rounds for dead, _ in dead_points(this, case.nominal_v or 0.0, case.limits)
+    }
+    read = [
+        (name_, volts)
+        for name_, volts in point.read
+        if volts.value > 0 and (name_, point.load.point) not in without  # RD04 and RD01 say so
+    ]
     if read:
-        round_, volts = min(read, key=lambda item: item[1].value)
+
+        def below(item: tuple[str, Figure]) -> tuple[float, float]:
+            return probability_above(-item[1].value, -lowest, item[1].u or 0.0), -item[1].value
+
+        # the reading that says most, not the lowest: a poor meter's may be lower and say nothing
+        round_, volts = max(read, key=below)
         if against_limit(volts.value, lowest, volts.u or 0.0, case.limits, above_is_bad=False) is Verdict.FAILS:
             shown, limit = show_against(volts.value, lowest, "V")
             vital = point.load.function_or_default != "ordinary"
             yield load_below_lowest.finding(
                 case,
-                point.load.point,
+                _where(case, point),
                 f"{name} was read at {shown} in round {round_}, below its lowest {limit}",
                 numbers={"voltage": volts, "lowest": Figure(lowest, "V")},
                 severity=Severity.IMMEDIATE if vital else Severity.SOON,
@@ -67,7 +79,7 @@ def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Findi
         shown, limit = show_against(point.lowest_v, lowest, "V")
         yield load_below_lowest.finding(
             case,
-            point.load.point,
+            _where(case, point),
             f"{name} gets {'at most ' if point.lowest_gap else ''}{shown} with the source at "
             f"{show(point.source_lowest_v, 'V')} and hot conductors, as recorded; its lowest is {limit}",
             numbers={"voltage": volts, "lowest": Figure(lowest, "V"), "source": Figure(point.source_lowest_v, "V")},
@@ -77,6 +89,12 @@ def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Findi
     elif verdict is Verdict.OPEN:
         why = f"not settled: {name} gets {show(volts.value, 'V', volts.u)} against its lowest {show(lowest, 'V')}"
         yield load_below_lowest.gap(case, point.load.point, why)
+
+
+def _where(case: CircuitCase, point: LoadPoint) -> str:
+    """The load's point; with the load's tag where others are there too, so that each finding has an id of its own."""
+    alone = sum(other.load.point == point.load.point for other in case.loads) == 1
+    return point.load.point if alone else f"{point.load.point}, {point.load.tag}"
 
 
 def _source(case: CircuitCase) -> int:

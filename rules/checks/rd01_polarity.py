@@ -23,8 +23,8 @@ def polarity_reversed(case: CircuitCase) -> Iterator[Finding]:
     """
     The voltage between the legs at a point reads below zero beyond doubt.
 
-    **Finds**: way +24.02 V, p1 -23.61 V: the polarity changes along the circuit, which is urgent (soon).
-    Where every point of the round reads negative, the meter's leads were swapped (watch).
+    **Finds**: way +24.02 V, p1 -23.61 V: the polarity changes along the circuit: soon, or immediate where a life-safety or
+    trip-or-close load hangs on it. Where every point of the round reads negative, the meter's leads were swapped (watch).
 
     **Leaves alone**: 0.00 V within the meter's counts; one pole against earth, which may have either sign.
     """
@@ -38,5 +38,12 @@ def polarity_reversed(case: CircuitCase) -> Iterator[Finding]:
                 f"{point} reads {show(volts.value, 'V', volts.u)}"
                 + (", other points of the round read above zero" if some else ", as does every point of the round"),
                 numbers={"voltage": volts},
-                severity=Severity.SOON if some else Severity.WATCH,
+                severity=_severity(some, case.is_vital(point)),
             )
+
+
+def _severity(some: bool, vital: bool) -> Severity:
+    """Swapped leads of the meter are for watch; a load that lives depend on may have lost its supply."""
+    if not some:
+        return Severity.WATCH
+    return Severity.IMMEDIATE if vital else Severity.SOON

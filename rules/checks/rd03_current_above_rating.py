@@ -42,8 +42,13 @@ def current_above_rating(case: CircuitCase) -> Iterator[Finding]:
     rating = case.circuit.rated_current_a
     if rating is None:
         raise MissingData("the rating of the device is not recorded")
-    this, point, amps = max(read, key=lambda item: abs(item[2].value))
-    if probability_above(abs(amps.value), rating, amps.u or 0.0) < case.limits["decision.beyond_doubt"]:
+
+    def past(amps: Figure) -> float:
+        return probability_above(abs(amps.value), rating, amps.u or 0.0)
+
+    # the reading that says most, not the largest: a poor meter's may be larger and say nothing
+    this, point, amps = max(read, key=lambda item: (past(item[2]), abs(item[2].value)))
+    if past(amps) < case.limits["decision.beyond_doubt"]:
         return
     shown, limit = show_against(abs(amps.value), rating, "A")
     run = case.tree.ends.get(point)

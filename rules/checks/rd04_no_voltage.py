@@ -25,6 +25,8 @@ def no_voltage(case: CircuitCase) -> Iterator[Finding]:
     """
     The voltage between the legs at a point is a small part of nominal.
 
+    Immediate where a life-safety or trip-or-close load hangs on it.
+
     **Finds**: way 24.03 V, p1 0.02 V: the circuit is open or switched off, and no drop can be taken from the round.
 
     **Leaves alone**: 19.6 V of 24 V, which is a drop. The profile holds the share of nominal below which it is none.
@@ -41,4 +43,5 @@ def no_voltage(case: CircuitCase) -> Iterator[Finding]:
                 f"{point}, round {this.name}",
                 f"{point} reads {show(volts.value, 'V', volts.u)} where {show(nominal, 'V')} belongs: open or switched off",
                 numbers={"voltage": volts, "nominal": Figure(nominal, "V")},
+                severity=Severity.IMMEDIATE if case.is_vital(point) else Severity.SOON,
             )

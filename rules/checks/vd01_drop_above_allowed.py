@@ -40,7 +40,7 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         raise MissingData("the nominal voltage is not known")
     known = [point for point in case.loads if point.drop_v == point.drop_v and not point.collapsed]
     if not known:
-        raise MissingData(case.loads[0].gap)
+        raise MissingData(case.loads[0].gap or case.loads[0].total_gap or "the voltages are not known")
     worst = max(known, key=lambda point: point.drop_v)
     allowed_v = case.allowed_drop_percent / 100 * nominal
     verdict = against_limit(worst.drop_v, allowed_v, worst.drop_u, case.limits)

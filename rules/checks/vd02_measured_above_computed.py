@@ -4,7 +4,7 @@ import math
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Drop, Finding, NotJudged, Place, Severity
-from rules.calc.doubt import probability_above
+from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHER_METAL, SEMICONDUCTOR, SMALLER
 from rules.errors import MissingData
@@ -60,7 +60,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     joint, a semiconductor, or the conductors, of which size, metal and length are often not to be told apart. A
     bad connection has its severity from the heat in it at design current, any other cause from the excess times
     the current read: soon from the profile's 2 W, immediate from 10 W on, which can burn. An excess that a slip
-    explains better than a fault is for watch.
+    explains better than a fault is to be read again: soon where it would be such heat, else watch.
 
     **Finds**: 2.45 ± 0.02 V measured against 1.92 ± 0.05 V computed at 8 A: 4.2 W too much, so it is for soon.
     A joint of 40 mΩ, read across itself, that the drop of a cable of guessed length would hide.
@@ -87,6 +87,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             "; ".join([*_drop_words(drop), f"probably {cause_words(slip)}", *_remarks(case)]),
             numbers=_numbers(drop, None),
             remedy="Read it again, and compare length, size and points with the record, before anything else is done.",
+            severity=_of_doubtful(case),
             cause=slip.cause,
             source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
         )
@@ -111,7 +112,7 @@ def _beyond_doubt(case: CircuitCase) -> bool:
     """The excess is real, whatever it comes from; without a diagnosis by its doubt alone."""
     if case.drop is None:
         return False
-    excess = case.drop.excess
+    excess = case.drop.too_much
     if probability_above(excess.value, 0.0, excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return False
     return case.diagnosis is None or case.diagnosis.probability(AS_RECORDED) < 0.5
@@ -121,16 +122,28 @@ def _heat(case: CircuitCase, claim: Claim | None) -> Figure | None:
     """Heat that the record does not explain: in the bad connection at design current, else in all at this current."""
     drop = case.drop
     if claim is not None and claim.cause == BAD_CONNECTION:
+        # at design, or at what was read where that is more: a load is not always recorded as it is
         read_a = abs(drop.current.value) if drop is not None else 0.0
         return max(
-            (_joint_heat(joint, case.largest_current_a.get(joint.point, read_a)) for joint in claim.joints),
+            (_joint_heat(joint, _most_a(case, joint.point, read_a)) for joint in claim.joints),
             key=lambda heat: heat.value,
         )
     if drop is None:
         return None
-    value = drop.excess.value * abs(drop.current.value)
+    value = drop.too_much.value * abs(drop.current.value)
     u = math.hypot((drop.excess.u or 0.0) * drop.current.value, drop.excess.value * (drop.current.u or 0.0))
     return Figure(value, "W", u)
+
+
+def _most_a(case: CircuitCase, point: str, read_a: float) -> float:
+    read = [abs(total(this.amps[point])[0]) for this in case.rounds if point in this.amps]
+    return max([case.largest_current_a.get(point, read_a), *read])
+
+
+def _of_doubtful(case: CircuitCase) -> Severity:
+    """That a slip explains it best does not make the heat less urgent, should it be there: it is to be read again soon."""
+    heat = _heat(case, None)
+    return Severity.SOON if heat is not None and heat.value >= case.limits["heat.soon_w"] else Severity.WATCH
 
 
 def _joint_heat(place: Place, current_a: float) -> Figure:
@@ -152,7 +165,7 @@ def _drop_words(drop: Drop | None) -> Iterator[str]:
             f"{show(drop.measured.value, 'V', drop.measured.u)} measured against "
             f"{show(drop.computed.value, 'V', drop.computed.u)} computed from {drop.start} to {drop.end} at "
             f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}: "
-            f"{show(drop.excess.value, 'V', drop.excess.u)} too much"
+            f"{show(drop.too_much.value, 'V', drop.excess.u)} too much"
         )
 
 

@@ -36,7 +36,7 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         raise MissingData("the nominal voltage is not known")
     known = [point for point in case.loads if point.total_drop_v == point.total_drop_v and not point.collapsed]
     if not known:
-        raise MissingData(case.loads[0].total_gap)
+        raise MissingData(case.loads[0].total_gap or case.loads[0].total_gap or "the voltages are not known")
     worst = max(known, key=lambda point: point.total_drop_v)
     if _said_already(worst, case):
         return

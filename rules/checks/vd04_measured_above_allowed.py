@@ -35,11 +35,11 @@ def measured_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     if nominal is None:
         raise MissingData("the nominal voltage is not known")
     drop, allowed = case.drop, case.allowed_drop_percent / 100
-    verdict = against_limit(drop.measured.value, allowed * nominal, drop.measured.u or 0.0, case.limits)
-    share, limit = show_against(round(drop.measured.value / nominal, 12), allowed, "1")
+    verdict = against_limit(drop.lost.value, allowed * nominal, drop.measured.u or 0.0, case.limits)
+    share, limit = show_against(round(drop.lost.value / nominal, 12), allowed, "1")
     where = f"{drop.start} to {drop.end}"
     read = (
-        f"{show(drop.measured.value, 'V', drop.measured.u)} ({share}) read from {where} at "
+        f"{show(drop.lost.value, 'V', drop.measured.u)} ({share}) read from {where} at "
         f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}, allowed {limit}"
     )
     if verdict is Verdict.FAILS:
@@ -50,7 +50,7 @@ def measured_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             read,
             numbers={
                 "measured": drop.measured,
-                "share": Figure(drop.measured.value / nominal, "1", (drop.measured.u or 0.0) / nominal),
+                "share": Figure(drop.lost.value / nominal, "1", (drop.measured.u or 0.0) / nominal),
                 "allowed": Figure(allowed, "1"),
                 "current": drop.current,
                 "nominal": Figure(nominal, "V"),

@@ -34,7 +34,7 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
     if drop is None:
         return
     beyond = beyond_common(drop, case.common)
-    if probability_above(-beyond.value, 0.0, beyond.u or 0.0) < case.limits["decision.beyond_doubt"]:
+    if probability_above(-drop.sense * beyond.value, 0.0, beyond.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return
     slip = doubtful(case.diagnosis.causes) if case.diagnosis is not None else None
     yield measured_below_computed.finding(
@@ -43,7 +43,7 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
         f"{show(drop.measured.value, 'V', drop.measured.u)} measured against "
         f"{show(drop.computed.value, 'V', drop.computed.u)} computed from {drop.start} to {drop.end} at "
         f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}: "
-        f"{show(-drop.excess.value, 'V', drop.excess.u)} too little"
+        f"{show(-drop.too_much.value, 'V', drop.excess.u)} too little"
         + (f"; probably {cause_words(slip)}" if slip else "")
         + (f"; {common_words(case.common)}" if case.common is not None else ""),
         numbers={

@@ -54,8 +54,10 @@ def problem_of(
     Returns
     -------
     Problem or None
-        ``None`` where no reading says anything about a run or the device.
+        ``None`` where no reading says anything about a run or the device, or no run is recorded yet.
     """
+    if not tree.runs:
+        return None
     gathered = _Gather(tree, limits, return_leg)
     for state, this in enumerate(rounds):
         gathered.take(state, this)

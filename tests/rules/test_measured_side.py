@@ -290,3 +290,29 @@ def test_what_is_being_typed_stands_in_for_the_record() -> None:
     assert judged.drop is not None
     assert judged.drop.measured.value == pytest.approx(2.0)
     assert assess_circuit(context, record.circuits[0], readings=[]).drop is None
+
+
+def test_times_with_an_offset_are_ordered_as_moments() -> None:
+    rows = [
+        volts("p1", 23, visit="early") | {"taken_at": "2026-06-01T10:00+05:00"},
+        volts("p1", 22, visit="late") | {"taken_at": "2026-06-01T06:00"},
+    ]
+    assert result(site(*rows)).visit == "late"
+
+
+def test_a_visit_that_is_not_listed_stands_where_its_time_puts_it() -> None:
+    rows = [
+        volts("p1", 23, visit="as left") | {"taken_at": "2026-02-01T10:00"},
+        volts("p1", 22, visit="as found") | {"taken_at": "2026-01-01T10:00"},
+    ]
+    assert result(site(*rows, visits=[{"visit": "as left"}])).visit == "as left"
+
+
+def test_a_point_read_twice_before_any_run_is_recorded_stops_nothing() -> None:
+    record = site(volts("way", 24), volts("way", 24.1), runs=[], loads=[])
+    assert result(record).status is Status.INCOMPLETE
+
+
+def test_the_cautions_go_by_what_was_read_too() -> None:
+    record = site(volts("way", 220, instrument=""))
+    assert any("60 V" in caution for caution in assess(record, limits.of(record)).cautions)
