@@ -53,6 +53,8 @@ class OneRun:
     ambient_c: float
     lowest_v: float | None = None
     """Voltage that the load needs; ``None`` for not asked. [V]"""
+    duty: float | None = None
+    """Share of the year in which the load is on, 0 to 1; ``None`` for not asked."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -28,6 +28,7 @@ INSULATIONS = tuple(word for word in _RUN["insulation"].choices if word != "unkn
 )
 @click.option("--allowed", metavar="PERCENT", help="Allowed drop; default: of the limits profile.")
 @click.option("--lowest", metavar="VOLTAGE", help="Voltage that the load needs.")
+@click.option("--duty", metavar="PERCENT", help="Share of the year in which the load is on; for the energy lost.")
 @click.option("--json", "as_json", is_flag=True, help="Print one JSON object instead of text.")
 def command(values: tuple[str, ...], as_json: bool, **chosen: str | int | None) -> None:
     """

@@ -9,6 +9,7 @@ from audit.drop.phrases import caution_texts
 from audit.drop.reading import Understood
 from audit.report.as_json import quantity
 from rules.calc.ampacity import Capacity
+from rules.calc.peak import energy_kwh_a_year
 from rules.one_run import Answer
 from rules.record import Figure
 from rules.text import clean
@@ -70,12 +71,21 @@ def _carried(found: Answer) -> dict[str, Any]:
         "share": quantity(carried.share),
         "at_load": quantity(carried.at_load),
         "heat": quantity(carried.loss),
+        "energy_a_year": _energy(found),
         "margin": quantity(carried.margin),
         "verdict": carried.verdict.value,
         "lowest_margin": quantity(carried.lowest_margin),
         "lowest_verdict": None if lowest is None else lowest.value,
         "may_collapse": carried.may_collapse,
     }
+
+
+def _energy(found: Answer) -> dict[str, Any] | None:
+    """Lost a year at the stated duty. [J]"""
+    carried, duty = found.carried, found.asked.duty
+    if carried is None or duty is None:
+        return None
+    return quantity(Figure(3.6e6 * energy_kwh_a_year(carried.loss.value, duty), "J"))
 
 
 def _capacity(found: Answer) -> dict[str, Any]:

@@ -9,11 +9,12 @@ from audit.drop.reading import Understood
 from audit.drop.words import ALLOWED, AMBIENT, LENGTH, SIZE
 from audit.report.phrases import figure_words
 from rules.calc.ampacity import Capacity
+from rules.calc.peak import energy_kwh_a_year
 from rules.cautions import ARC, ARC_VOLTAGE_V, SHOCK, SHOCK_LIMIT_V
 from rules.decision import Verdict
 from rules.limits import Limits
 from rules.one_run import MOST_PARALLEL, Answer, Carried
-from rules.record import Run
+from rules.record import Figure, Run
 from rules.tables.conductors import resistance_20c_ohm_per_m
 from rules.units import show, show_against, show_size
 
@@ -63,6 +64,9 @@ def result_rows(found: Answer) -> Iterator[Row]:
     yield "drop", f"{figure_words(carried.drop)}, {figure_words(carried.share)} of nominal"
     yield "at the load", figure_words(carried.at_load)
     yield "heat", f"{figure_words(carried.loss)} in the run"
+    if (duty := found.asked.duty) is not None:
+        energy = Figure(energy_kwh_a_year(carried.loss.value, duty), "kWh")
+        yield "energy", f"{figure_words(energy)} lost a year, with the load on for {show(duty, '1')} of it"
     yield "margin", f"{figure_words(carried.margin)} to the allowed drop"
     if carried.lowest_margin is not None:
         yield "", f"{figure_words(carried.lowest_margin)} to the load's lowest"

@@ -7,7 +7,19 @@ from dataclasses import dataclass
 from typing import TypeVar
 
 from audit.drop import words
-from audit.drop.words import ALLOWED, AMBIENT, CURRENT, LENGTH, LOWEST, NOMINAL, POWER, RESISTANCE, SIZE, TEMPERATURE
+from audit.drop.words import (
+    ALLOWED,
+    AMBIENT,
+    CURRENT,
+    DUTY,
+    LENGTH,
+    LOWEST,
+    NOMINAL,
+    POWER,
+    RESISTANCE,
+    SIZE,
+    TEMPERATURE,
+)
 from audit.errors import WrongUse
 from rules.errors import RulesError
 from rules.limits import Limits
@@ -39,6 +51,7 @@ class Options:
     temperature: str = ""
     allowed: str = ""
     lowest: str = ""
+    duty: str = ""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -132,6 +145,7 @@ def understand(typed: Sequence[str], options: Options, limits: Limits) -> Unders
         ("--allowed", ALLOWED, options.allowed),
         ("--ambient", AMBIENT, options.ambient),
         ("--lowest", LOWEST, options.lowest),
+        ("--duty", DUTY, options.duty),
     ):
         if text:
             desk.take(quantity, text, f"{option}: ")
@@ -156,6 +170,7 @@ def understand(typed: Sequence[str], options: Options, limits: Limits) -> Unders
         allowed_percent=desk.numbers.get(ALLOWED.name, limits["drop.allowed_percent"]),
         ambient_c=desk.numbers.get(AMBIENT.name, limits["ambient.assumed_c"]),
         lowest_v=desk.number(LOWEST),
+        duty=None if (duty := desk.number(DUTY)) is None else duty / 100,
     )
     return Understood(asked=asked, load=load, load_value=desk.numbers[load.name], typed=desk.typed)
 

@@ -41,6 +41,7 @@ ALLOWED = Quantity("allowed drop", "5%", "%", above=0.0, most=100.0)
 TEMPERATURE = Quantity("conductor temperature", "70C", "degC", least=-90.0, most=400.0)
 AMBIENT = Quantity("ambient temperature", "35C", "degC", least=-90.0, most=400.0)
 LOWEST = Quantity("lowest voltage", "20.4V", "V", above=0.0)
+DUTY = Quantity("duty", "20%", "%", least=0.0, most=100.0)
 
 BY_UNIT = {each.unit: each for each in (LENGTH, NOMINAL, CURRENT, POWER, RESISTANCE, ALLOWED, TEMPERATURE)}
 """What a unit says of a word; a size has no unit of its own but is told by its look."""

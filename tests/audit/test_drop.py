@@ -5,6 +5,7 @@ from __future__ import annotations
 import io
 import json
 import re
+from collections.abc import Iterator
 from typing import Any
 
 import pytest
@@ -328,3 +329,31 @@ def test_help_shows_a_line_that_works(capsys: Captured) -> None:
     assert len(examples) >= 3
     for example in examples:
         assert cli.run(example.split()) == 0
+
+
+def test_the_energy_lost_a_year_at_a_stated_duty(capsys: pytest.CaptureFixture[str]) -> None:
+    """17.8 W for a tenth of 8,760 h: 15.6 kWh."""
+    assert cli.run(["drop", "29m", "4mm2", "8A", "24V", "--duty", "10%", "--json"]) == 0
+    told = json.loads(capsys.readouterr().out)
+    text = json.dumps(told)
+    heat = next(value for value in _values(told, "heat"))["value"]
+    energy = next(value for value in _values(told, "energy_a_year"))
+    assert energy["unit"] == "J"
+    assert energy["value"] == pytest.approx(heat * 0.1 * 8760 * 3600)
+    assert "energy_a_year" in text
+    assert cli.run(["drop", "29m", "4mm2", "8A", "24V", "--duty", "10%"]) == 0
+    assert "15.59 kWh lost a year, with the load on for 10 % of it" in " ".join(capsys.readouterr().out.split())
+    assert cli.run(["drop", "29m", "4mm2", "8A", "24V", "--duty", "110%"]) == 2
+    assert "--duty" in capsys.readouterr().err
+
+
+def _values(document: Any, name: str) -> Iterator[Any]:
+    """Every value of a name, at any depth."""
+    if isinstance(document, dict):
+        for key, value in document.items():
+            if key == name:
+                yield value
+            yield from _values(value, name)
+    elif isinstance(document, list):
+        for each in document:
+            yield from _values(each, name)
