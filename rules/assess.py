@@ -11,14 +11,16 @@ from collections.abc import Sequence
 from dataclasses import replace
 from importlib.metadata import version
 
-from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, PointVoltage, Severity, Status
-from rules.case import CircuitCase, Context, case_of, measured_of, posed_by
+from rules.assessment import Assessment, CircuitResult, Finding, LoadMargin, NotJudged, PointVoltage, Severity, Status
+from rules.case import CircuitCase, Context, case_of, measured_of, posed_by, unused_readings
 from rules.cautions import cautions_of
 from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
 from rules.diagnosis.diagnose import diagnose
+from rules.diagnosis.next_reading import next_readings
 from rules.index import Index
 from rules.limits import Limits
+from rules.margins import margins_of
 from rules.network import network_of
 from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
@@ -27,6 +29,8 @@ from rules.runs import figures
 from rules.service import service_of
 from rules.verdict import agrees, unsettled, unsound
 
+TOGETHER = 1000
+"""Circuits whose cases are kept until it is clear what to read next on them."""
 FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "NW01", "NW02")
 
 
@@ -49,9 +53,10 @@ def assess_prepared(context: Context) -> Assessment:
     for finding in findings:
         if finding.circuit is not None:
             of_circuit.setdefault(finding.circuit, []).append(finding)
-    results = [
-        assess_circuit(context, circuit, more=of_circuit.get(circuit.tag, ())) for circuit in index.walked_circuits
-    ]
+    results: list[CircuitResult] = []
+    for start in range(0, len(index.walked_circuits), TOGETHER):
+        some = index.walked_circuits[start : start + TOGETHER]
+        results += _followed([_judged(context, circuit, None, of_circuit.get(circuit.tag, ())) for circuit in some])
     for result in results:
         findings += [finding for finding in result.findings if finding not in of_circuit.get(result.circuit, ())]
         gaps += result.not_judged
@@ -80,9 +85,14 @@ def prepare(site: Site, limits: Limits) -> Context:
         problems=problems(site),
     )
     measured = {circuit.id: measured_of(context, circuit) for circuit in site.circuits}
-    posed = {id_: problem for id_, side in measured.items() if (problem := posed_by(context, side)) is not None}
-    diagnoses = dict(zip(posed, diagnose(list(posed.values()), limits), strict=True))
-    return replace(context, measured=measured, diagnoses=diagnoses)
+    posed = {id_: posed_by(context, side) for id_, side in measured.items()}
+    some = {id_: problem for id_, problem in posed.items() if problem is not None}
+    return replace(
+        context,
+        measured=measured,
+        diagnoses=dict(zip(some, diagnose(list(some.values()), limits), strict=True)),
+        unused={id_: names for id_, side in measured.items() if (names := unused_readings(side, posed[id_]))},
+    )
 
 
 def assess_circuit(
@@ -90,6 +100,7 @@ def assess_circuit(
     circuit: Circuit,
     readings: Sequence[Reading] | None = None,
     more: Sequence[Finding] = (),
+    next_reading: bool = True,
 ) -> CircuitResult:
     """
     Judge one circuit in a prepared site.
@@ -104,14 +115,31 @@ def assess_circuit(
         Readings of one visit that stand in for the recorded ones: what is being typed.
     more : sequence of Finding, optional
         What rules about the site say of this circuit.
+    next_reading : bool
+        Without it the result comes some milliseconds sooner.
     """
+    judged = _judged(context, circuit, readings, more)
+    return _followed([judged])[0] if next_reading else judged[1]
+
+
+def _followed(judged: Sequence[tuple[CircuitCase, CircuitResult]]) -> list[CircuitResult]:
+    """Results with what to read next, where a circuit is not settled."""
+    open_ = [number for number, (_, result) in enumerate(judged) if result.status is not Status.SOUND]
+    found = dict(zip(open_, next_readings([judged[number][0] for number in open_]), strict=True))
+    return [replace(result, next_reading=found.get(number)) for number, (_, result) in enumerate(judged)]
+
+
+def _judged(
+    context: Context, circuit: Circuit, readings: Sequence[Reading] | None, more: Sequence[Finding]
+) -> tuple[CircuitCase, CircuitResult]:
+    """A circuit's case and what is said of it, but for the next reading."""
     case = case_of(context, circuit, readings)
     found, gaps = judge(case, "circuit")
     findings = sorted([*more, *found], key=lambda finding: finding.severity.rank)
     status, why = _status(case, findings)
     known = [load for load in case.loads if not load.gap]
     worst = max(known, key=lambda load: load.drop_v, default=None)
-    return CircuitResult(
+    return case, CircuitResult(
         circuit=circuit.tag,
         circuit_id=circuit.id,
         visit=case.visit,
@@ -123,6 +151,7 @@ def assess_circuit(
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
         causes=case.diagnosis.causes if case.diagnosis is not None else (),
         points=_points(case),
+        margins=_margins(case),
         service=service_of(case),
         findings=tuple(findings),
         not_judged=tuple(gaps),
@@ -150,6 +179,31 @@ def _status(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Status, str
 def _weight(finding: Finding) -> tuple[int, bool]:
     """The most urgent first; of those alike, what was read before what the record alone says."""
     return finding.severity.rank, finding.rule in FROM_THE_RECORD
+
+
+def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
+    """The loads' margins, the worst case with what readings support."""
+
+    def volts(value: float | None) -> Figure | None:
+        return None if value is None else Figure(value, "V")
+
+    rows = []
+    for margin in margins_of(case):
+        load = margin.load
+        worst, lowest = case.worst.get(load.point), load.lowest_voltage_v
+        rows.append(
+            LoadMargin(
+                load=load.tag,
+                point=load.point,
+                design=volts(margin.design_v),
+                worst=worst,
+                lowest=volts(lowest),
+                margin=None if worst is None or lowest is None else Figure(worst.value - lowest, "V", worst.u),
+                below_highest=volts(margin.below_highest_v),
+                dip=volts(margin.peak.design_v) if margin.peak is not None else None,
+            )
+        )
+    return tuple(rows)
 
 
 def _points(case: CircuitCase) -> tuple[PointVoltage, ...]:

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from enum import StrEnum
+from typing import NamedTuple
 
 from rules.record import Figure
 
@@ -127,9 +128,8 @@ class Drop:
     """What its doubt is made of, largest first: the squares add to that of the excess's ``u``."""
 
 
-@dataclass(frozen=True, slots=True)
-class Place:
-    """A probability of a cause at a place."""
+class Place(NamedTuple):
+    """A probability of a cause at a place: a row of ``causes``. A tuple, since a site has a million of them."""
 
     cause: str
     where: str
@@ -144,6 +144,8 @@ class Place:
     """The cause's most probable way: ``one size smaller``, or which reading is doubtful and how."""
     point: str = ""
     """Where the branch of the place ends: ``way`` for the device; empty for the whole circuit."""
+    joints: tuple[Place, ...] = ()
+    """Of bad connections in two places at once: each, with its own figures."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -187,6 +189,31 @@ class NextReading:
     current_at_least: Figure | None = None
     why: str = ""
     caution: str = ""
+    current_at_most: Figure | None = None
+    """What device, cable, source and the heat in a suspected joint allow; where a current is asked for."""
+    minutes: float | None = None
+    """What it takes, by the limits profile."""
+    fall_nats: float | None = None
+    """Expected fall in entropy of the causes, where the diagnosis chose it. [nat]"""
+
+
+@dataclass(frozen=True, slots=True)
+class LoadMargin:
+    """Voltage at one load, and how far it stays from what the load lives with; what is not known is ``None``."""
+
+    load: str
+    point: str
+    design: Figure | None = None
+    worst: Figure | None = None
+    """With the source at its lowest, hot conductors and what readings support."""
+    lowest: Figure | None = None
+    """The load's own."""
+    margin: Figure | None = None
+    """From ``worst`` down to ``lowest``; below zero where it is not kept."""
+    below_highest: Figure | None = None
+    """From the source's highest up to the load's own."""
+    dip: Figure | None = None
+    """At the load's peak current, from the design voltage."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -207,6 +234,8 @@ class CircuitResult:
     """Largest computed drop from the feeding board to a load at design current. [V]"""
     causes: tuple[Place, ...] = ()
     points: tuple[PointVoltage, ...] = ()
+    margins: tuple[LoadMargin, ...] = ()
+    """One for each load, in the order of their rows."""
     service: tuple[RunService, ...] = ()
     """Capacity and temperature in service of each run."""
     next_reading: NextReading | None = None

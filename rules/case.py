@@ -49,6 +49,8 @@ class Context:
     """By circuit id: what was read on the visit that it is judged on."""
     diagnoses: Mapping[str, Diagnosis] = field(default_factory=dict)
     """By circuit id, of those whose readings say something."""
+    unused: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    """By circuit id: readings that nothing makes use of."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,14 +105,14 @@ class CircuitCase:
     drop: Drop | None
     drop_gap: str
     """Why there is no drop; empty where there is one."""
-    unused: tuple[str, ...]
-    """Readings of the visit that nothing here makes use of."""
     diagnosis: Diagnosis | None
     """``None`` where no reading says anything about a run or the device."""
     worst: Mapping[str, Figure]
     """Voltage by point with the source at its lowest, hot conductors and what readings support. [V]"""
     largest_current_a: Mapping[str, float]
     """By the point at which a branch arrives (``way``: the device), at design and the voltage that makes it largest."""
+    unused: tuple[str, ...] = ()
+    """Readings of the visit that nothing here makes use of."""
 
     @property
     def tag(self) -> str:
@@ -129,13 +131,15 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
     """
     index, limits = context.index, context.limits
     known = context.measured.get(circuit.id) if readings is None else None
-    measured = measured_of(context, circuit, readings) if known is None else known
-    nominal = nominal_v(circuit, index)
-    problem = posed_by(context, measured)
-    diagnosis = context.diagnoses.get(circuit.id)
     if known is None:
+        measured = measured_of(context, circuit, readings)
+        problem = posed_by(context, measured)
         diagnosis = diagnose([problem], limits)[0] if problem is not None else None
-    tree, rounds = measured.tree, measured.rounds
+        unused = unused_readings(measured, problem)
+    else:
+        measured, diagnosis = known, context.diagnoses.get(circuit.id)
+        unused = context.unused.get(circuit.id, ())
+    tree, rounds, nominal = measured.tree, measured.rounds, nominal_v(circuit, index)
     drop, gap = None, "nothing was read" if not measured.readings else ""
     if measured.readings:
         against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
@@ -159,25 +163,11 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         tree=tree,
         drop=drop,
         drop_gap=gap,
-        unused=_unused(measured, problem),
         diagnosis=diagnosis,
         worst=_worst(context, circuit, diagnosis),
         largest_current_a=_largest_currents(context, circuit),
+        unused=unused,
     )
-
-
-def _unused(measured: Measured, problem: Posed | None) -> tuple[str, ...]:
-    """The readings that neither the drop nor the diagnosis makes use of."""
-    used = {row.id for seen in problem.observations for row in seen.readings} if problem is not None else set()
-    unused = []
-    for reading in measured.readings:
-        conductor = reading.quantity == "temperature" and RUN.fullmatch(reading.at)
-        # why a voltage or a drop over both legs was not used is said where the drop is missing
-        of_drop = reading.quantity in ("voltage", "drop") and reading.leg in ("", "both")
-        if reading.id not in used and reading.quantity != "current" and not conductor and not of_drop:
-            leg = f" {reading.leg}" if reading.leg not in ("", "both") else ""
-            unused.append(f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}")
-    return tuple(dict.fromkeys(unused))
 
 
 def measured_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | None = None) -> Measured:
@@ -201,6 +191,16 @@ def posed_by(context: Context, measured: Measured) -> Posed | None:
     hot_ohm = {point: limits["heat.limit_w"] / a**2 if a else math.inf for point, a in amps.items()}
     return_leg = _return_leg(circuit, context.index)
     return problem_of(measured.rounds, measured.tree, limits, hot_ohm, return_leg, nominal_v(circuit, context.index))
+
+
+def unused_readings(measured: Measured, problem: Posed | None) -> tuple[str, ...]:
+    """Names of the visit's readings that enter neither a drop nor the diagnosis."""
+    posed = problem.used if problem is not None else frozenset()
+    return tuple(
+        dict.fromkeys(
+            _name(row) for row in measured.readings if row.id not in posed and not _is_used(row, measured.rounds)
+        )
+    )
 
 
 def _largest_currents(context: Context, circuit: Circuit) -> dict[str, float]:
@@ -232,6 +232,23 @@ def _return_leg(circuit: Circuit, index: Index) -> str:
         feeds = here.fed_by if isinstance(here, Board) else (here.fed_from,)
         here = index.named(feeds[0]) if feeds and feeds[0] is not None else None
     return "positive" if isinstance(here, Source) and here.earthing == "positive earthed" else "negative"
+
+
+def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
+    """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
+    this = next(round_ for round_ in rounds if round_.name == reading.round)
+    if reading.quantity == "voltage":
+        return reading.at in this.volts
+    if reading.quantity == "drop":
+        return (reading.at, reading.to) in this.direct
+    if reading.quantity == "temperature":
+        return bool(RUN.fullmatch(reading.at))
+    return reading.quantity == "current"
+
+
+def _name(reading: Reading) -> str:
+    leg = f" {reading.leg}" if reading.leg and reading.leg != "both" else ""
+    return f"{reading.quantity} at {reading.at}{f' to {reading.to}' if reading.to else ''}{leg}"
 
 
 def _tree(context: Context, circuit: Circuit, readings: Sequence[Reading]) -> Tree:

@@ -77,6 +77,8 @@ class Round:
     poor: tuple[str, ...]
     """What was read with an instrument that is not recorded."""
     wander_v: float
+    wander_freedom: int
+    """Degrees of freedom of ``wander_v``; 0 where it is the profile's."""
     shown: Mapping[str, Shown]
     """What each reading is worth, by its id; temperatures and residual currents left out."""
 
@@ -130,7 +132,7 @@ def _round(name: str, readings: list[Reading], tree: Tree, index: Index, limits:
             drops[reading.at, reading.to, reading.leg or "both"].append(reading)
         elif reading.quantity == "current" and (point := _branch(reading.at, tree)):
             amps[point].append(reading)
-    wander = _wander(pairs.values(), limits)
+    wander, freedom = _wander(pairs.values(), limits)
     poor: list[str] = []
     shown: dict[str, Shown] = {}
     for row in readings:
@@ -156,7 +158,7 @@ def _round(name: str, readings: list[Reading], tree: Tree, index: Index, limits:
         elif legs[1] and legs[2]:
             direct[start, end] = average(legs[1]) + average(legs[2])
     clamped = {point: average(rows) for point, rows in amps.items()}
-    return Round(name, tuple(readings), volts, clamped, direct, tuple(dict.fromkeys(poor)), wander, shown)
+    return Round(name, tuple(readings), volts, clamped, direct, tuple(dict.fromkeys(poor)), wander, freedom, shown)
 
 
 def _branch(at: str, tree: Tree) -> str:
@@ -168,13 +170,22 @@ def _branch(at: str, tree: Tree) -> str:
     return next((point for point, run in tree.ends.items() if run.number == number), "")
 
 
-def _wander(pairs: Iterable[list[Reading]], limits: Limits) -> float:
-    """Standard deviation of repeated readings of one point in the round, else the profile's figure. [V]"""
-    repeated = [rows for rows in pairs if len(rows) > 1]
+def _wander(pairs: Iterable[list[Reading]], limits: Limits) -> tuple[float, int]:
+    """
+    Standard deviation of repeated readings of one point in the round with its freedom, else the profile's. [V]
+
+    By one meter: two meters at one point differ by their gains, which is no wander.
+    """
+    by_meter: dict[tuple[int, str, float | None], list[Reading]] = defaultdict(list)
+    for number, rows in enumerate(pairs):
+        for row in rows:
+            by_meter[number, row.instrument, row.full_scale].append(row)
+    repeated = [rows for rows in by_meter.values() if len(rows) > 1]
     if not repeated:
-        return limits["source.wander_v"]
+        return limits["source.wander_v"], 0
     freedom = sum(len(rows) - 1 for rows in repeated)
-    return math.sqrt(sum(stdev(row.value for row in rows) ** 2 * (len(rows) - 1) for rows in repeated) / freedom)
+    squares = sum(stdev(row.value for row in rows) ** 2 * (len(rows) - 1) for rows in repeated)
+    return math.sqrt(squares / freedom), freedom
 
 
 def current_at(point: str, this: Round, tree: Tree, limits: Limits) -> Current:

@@ -113,11 +113,14 @@ class Figures(Mapping[str, RunFigures]):
         self.gaps = [gap_of(run) for run in self.runs]
         self.returns = {name: self._shared(name, members) for name, members in shared_runs(self.runs).items()}
         rows = [row for row, gap in enumerate(self.gaps) if not gap]
-        whole = [self.runs[row] for row in rows]
-        self._out = self._leg(whole, [_outgoing(run) for run in whole]).spread(rows, len(self.runs))
+        out = [_outgoing(self.runs[row]) for row in rows]
+        self._out = self._leg([self.runs[row] for row in rows], out).spread(rows, len(self.runs))
         rows = [row for row in rows if not has_no_own_return(self.runs[row])]
-        own = [self.runs[row] for row in rows]
-        self._back = self._leg(own, [_own_return(run) for run in own]).spread(rows, len(self.runs))
+        back = [_own_return(self.runs[row]) for row in rows]
+        # most returns are of what their runs are of: then both legs are one computation
+        self._back = self._out
+        if back != out:
+            self._back = self._leg([self.runs[row] for row in rows], back).spread(rows, len(self.runs))
         self._made: dict[str, RunFigures] = {}
 
     def __len__(self) -> int:

@@ -49,6 +49,11 @@ class Claim:
         return self.places[0]
 
     @property
+    def joints(self) -> tuple[Place, ...]:
+        """Every single place in which a connection may be bad."""
+        return tuple(joint for place in self.places for joint in place.joints or (place,))
+
+    @property
     def where(self) -> str:
         """The places, empty for what holds for the whole circuit."""
         return " or ".join(place.where for place in self.places if place.where)

@@ -12,7 +12,8 @@ from collections import defaultdict
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
-from rules.diagnosis.diagnose import Diagnosis, Learned
+from rules.diagnosis.diagnose import Diagnosis
+from rules.diagnosis.learned import Learned
 from rules.network import Network
 from rules.record import Figure
 from rules.runs import RunFigures
@@ -22,6 +23,7 @@ from rules.runs import RunFigures
 class Taken:
     """What a branch loses more than computed, by kind; the kinds exclude each other within a circuit."""
 
+    current_a: float
     extra_v: float
     extra_square: float
     conductor_v: float
@@ -53,22 +55,24 @@ def worst_of(
     Notes
     -----
     First order: a constant-power load that gets less draws a little more than is counted here. Of one circuit one
-    cause holds at a time, so that the mean square of its loss is the sum over causes; circuits are independent.
+    cause holds at a time (two bad connections count as one), so that the mean square of its loss is the sum over
+    causes; circuits are independent.
     """
     found = {}
     for point, node in points.items():
         if network.gap_of(node, lowest=True) or network.lowest.collapsed[node]:
             continue
-        by_circuit: dict[str, list[Taken]] = defaultdict(list)
+        by_circuit: dict[str, dict[str, Taken]] = defaultdict(dict)
         for branch in network.way_up(node):
             taken = _taken(branch, network, figures, diagnosis_of)
             if taken is not None:
-                by_circuit[network.circuit_at[branch]].append(taken)
+                by_circuit[network.circuit_at[branch]][network.run_at[branch]] = taken
         lost = variance = 0.0
-        for parts in by_circuit.values():
-            mean = sum(part.extra_v + part.conductor_v + part.offset_v for part in parts)
-            square = sum(part.extra_square + part.offset_square for part in parts)
-            square += sum(part.conductor_spread for part in parts) ** 2
+        for circuit_id, parts in by_circuit.items():
+            mean = sum(part.extra_v + part.conductor_v + part.offset_v for part in parts.values())
+            square = sum(part.extra_square + part.offset_square for part in parts.values())
+            square += sum(part.conductor_spread for part in parts.values()) ** 2
+            square += _both(diagnosis_of(circuit_id), parts)
             lost += mean
             variance += max(square - mean**2, 0.0)
         u = math.sqrt(variance + computed_u(node) ** 2)
@@ -108,9 +112,19 @@ def _taken(
     return _of(learned, amps, conductor_v)
 
 
+def _both(diagnosis: Diagnosis | None, parts: Mapping[str, Taken]) -> float:
+    """Mean of twice the product of what two joints lose that are bad at the same time. [V²]"""
+    together = diagnosis.together if diagnosis is not None else None
+    if together is None or not all(run_id in parts for run_id in together.run_ids):
+        return 0.0
+    first, second = (parts[run_id].current_a for run_id in together.run_ids)
+    return 2 * together.mean_product * first * second
+
+
 def _of(learned: Learned, amps: float, conductor_v: float) -> Taken:
     sense = math.copysign(1.0, amps) if amps else 0.0
     return Taken(
+        current_a=amps,
         extra_v=amps * learned.extra_ohm,
         extra_square=amps**2 * (learned.extra_u**2 + learned.extra_ohm**2),
         conductor_v=conductor_v * (learned.factor - 1),

@@ -125,6 +125,7 @@ def _next_reading(reading: NextReading | None) -> Json | None:
         {name: text or None for name, text in texts.items()}
         | {
             "current_at_least": quantity(reading.current_at_least),
+            "current_at_most": quantity(reading.current_at_most),
             "why": clean(reading.why) or None,
             "caution": clean(reading.caution) or None,
         }

@@ -29,6 +29,7 @@ def circuit_section(
             runs_table(index, circuit, limits),
             loads_table(index, circuit),
             _points(result),
+            _margins(result),
             _service(result),
             readings_table(index, circuit.id, visit),
         )
@@ -117,6 +118,32 @@ def _service(result: CircuitResult) -> Table | None:
         Column("Conductor", "right"), Column("From", share=5),
     )  # fmt: skip
     return Table(columns, tuple(rows)) if rows else None
+
+
+def _margins(result: CircuitResult) -> Table | None:
+    """What is left between each load's worst voltage and its lowest; ``None`` where no load's is known."""
+    if all(each.margin is None and each.below_highest is None and each.dip is None for each in result.margins):
+        return None
+
+    def words(figure: Figure | None) -> str:
+        return "not known" if figure is None else figure_words(figure)
+
+    rows: list[tuple[Cell, ...]] = [
+        (
+            f"{each.load}, {each.point}",
+            words(each.worst),
+            words(each.lowest),
+            words(each.margin),
+            words(each.below_highest),
+            "" if each.dip is None else figure_words(each.dip),
+        )
+        for each in result.margins
+    ]
+    columns = (
+        Column("Margin of each load", share=4), Column("At worst", "right"), Column("Its lowest", "right"),
+        Column("Margin", "right"), Column("Below its highest", "right"), Column("At its peak", "right"),
+    )  # fmt: skip
+    return Table(columns, tuple(rows))
 
 
 def _points(result: CircuitResult) -> Table | None:

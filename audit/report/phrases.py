@@ -178,17 +178,44 @@ def leg_words(leg: str) -> str:
 
 
 def next_reading_words(reading: NextReading) -> str:
-    """What to read next: ``joint at run 2 end, positive leg, at 4 A or more``."""
-    what = reading.quantity or reading.what
-    where = f"{what} from {reading.at} to {reading.to}" if reading.to else f"{what} at {reading.at}"
-    parts = [where if reading.at else what]
-    if reading.what not in ("", "reading", what):
-        parts[0] = f"{reading.what}: {parts[0]}" if reading.at or reading.quantity else reading.what
-    if reading.leg:
+    """
+    What to read next: ``millivolts across run 2 end, positive leg, at 4 A or more``.
+
+    >>> next_reading_words(NextReading("dead test", "resistance", "run 2 end", leg="positive"))
+    'dead test: resistance across run 2 end, positive leg'
+    """
+    parts = [_asked_words(reading)]
+    if reading.leg and reading.quantity != "voltage":
         parts.append(leg_words(reading.leg))
     if reading.current_at_least is not None:
         parts.append(f"at {figure_words(reading.current_at_least)} or more")
+    if reading.current_at_most is not None:
+        parts.append(f"at most {figure_words(reading.current_at_most)}")
     return ", ".join(parts)
+
+
+def _asked_words(reading: NextReading) -> str:
+    """The reading without leg and current."""
+    where = f" of {reading.at}" if reading.at else ""
+    if reading.what == "length":
+        return f"the taped length{where}"
+    if reading.what == "temperature":
+        return f"the temperature{where} by probe"
+    if not reading.quantity:
+        return f"a look at {reading.at}" if reading.at else "a look at the circuit"
+    if reading.to:
+        said = f"{'voltages' if reading.quantity == 'voltage' else reading.quantity} from {reading.at} to {reading.to}"
+    elif reading.quantity == "joint":
+        said = f"millivolts across {reading.at}"
+    elif reading.quantity == "resistance":
+        said = f"resistance across {reading.at}"
+    else:
+        said = f"{reading.quantity} at {reading.at}"
+    return said if reading.what == "reading" else f"{WHAT_WORDS.get(reading.what, reading.what)}: {said}"
+
+
+WHAT_WORDS = {"round": "a round with its current", "finer meter": "with a finer meter"}
+"""What is to be done, where it is more than a reading."""
 
 
 def time_words(taken_at: str) -> str:

@@ -27,12 +27,13 @@ from audit.report.phrases import (
     drop_words,
     finding_place,
     limits_defer,
+    next_reading_words,
     number_words,
     status_words,
 )
 from audit.report.records import board_title, location_of
 from audit.report.sections import by_feed, by_severity, evidence_words, group_gaps
-from rules.assessment import Assessment, CircuitResult, Finding, Severity, Status
+from rules.assessment import Assessment, CircuitResult, Finding, NextReading, Severity, Status
 from rules.index import Index
 from rules.record import Site
 from rules.text import clean
@@ -140,6 +141,7 @@ def print_check(site: Site, assessment: Assessment, stream: TextIO | None = None
     _walk(page, index, assessment)
     _findings(page, assessment)
     _unsettled(page, assessment.circuits)
+    _next_readings(page, assessment.circuits)
     _gaps(page, assessment)
     page.line()
     if not causes_are_judged(assessment.circuits):
@@ -162,7 +164,9 @@ def _heading(page: Page, site: Site, assessment: Assessment) -> None:
     summary = assessment.summary
     page.line()
     states = [f"{summary[str(status)]} {status_words(status)}" for status in STATUS_MEANING if summary[str(status)]]
-    page.line("   ".join([f"{read} of {counted(len(assessment.circuits), 'circuit')} read", *states]), "bold")
+    # two lines, since five statuses beside the share read are wider than a narrow terminal
+    page.line(f"{read} of {counted(len(assessment.circuits), 'circuit')} read", "bold")
+    page.line("   ".join(states), "bold")
 
 
 def _cautions(page: Page, assessment: Assessment) -> None:
@@ -260,6 +264,23 @@ def _unsettled(page: Page, circuits: Iterable[CircuitResult]) -> None:
     for (status, why), tags in reasons.items():
         page.line(f"{status_words(status)}  {', '.join(tags)}", indent=2)
         page.line(why, indent=4)
+
+
+def _next_readings(page: Page, circuits: Iterable[CircuitResult]) -> None:
+    """What to read next on each circuit that is not settled; readings with the same cautions stand together."""
+    by_caution: dict[str, list[tuple[str, NextReading]]] = {}
+    for result in circuits:
+        if (following := result.next_reading) is not None:
+            by_caution.setdefault(following.caution, []).append((result.circuit, following))
+    if not by_caution:
+        return
+    page.line()
+    page.line("What to read next", "bold")
+    for caution, readings in by_caution.items():
+        for tag, reading in readings:
+            page.line(f"{tag}  {next_reading_words(reading)}", indent=2)
+            page.line(reading.why, indent=4)
+        page.pairs([("caution", caution)], indent=2)
 
 
 def _gaps(page: Page, assessment: Assessment) -> None:

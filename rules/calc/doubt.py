@@ -165,6 +165,35 @@ def total(terms: Iterable[Weighted]) -> tuple[float, float]:
     return summed.value, math.sqrt(summed.variance)
 
 
+STUDENT_95 = (12.706, 4.303, 3.182, 2.776, 2.571, 2.447, 2.365, 2.306, 2.262, 2.228)
+"""Two-sided coverage factors of Student's t for 1 to 10 degrees of freedom. JCGM 100:2008, Table G.2; computed."""
+
+
+def few_readings_factor(freedom: int) -> float:
+    """
+    By how much a standard deviation of few readings is widened to cover 95 % where a Gaussian takes its place.
+
+    Parameters
+    ----------
+    freedom : int
+        Degrees of freedom, readings less their means; 0 for a standard deviation that is known.
+
+    References
+    ----------
+    JCGM 100:2008, G.3 and Table G.2.
+
+    Examples
+    --------
+    >>> [round(few_readings_factor(freedom), 3) for freedom in (0, 2, 10, 1000)]
+    [1.0, 2.195, 1.137, 1.001]
+    """
+    if freedom <= 0:
+        return 1.0
+    if freedom <= len(STUDENT_95):
+        return STUDENT_95[freedom - 1] / STANDARD_NORMAL.inv_cdf(0.975)
+    return math.sqrt(freedom / (freedom - 2))
+
+
 def probability_above(value: float, limit: float, u: float) -> float:
     """
     Probability that what was measured or computed lies above a limit, taken as Gaussian.

@@ -89,12 +89,14 @@ class Loops:
         place[self.nodes] = np.arange(len(self.nodes))
         self._above = place[parent[self.nodes]].tolist()
         sizes = {"out": len(self.nodes), "back": len(self.nodes), "tie_out": len(ties), "tie_back": len(ties)}
-        sizes |= {"shared": len(shared), "source": len(parent)}
+        self._roots = np.flatnonzero(parent < 0)
+        sizes |= {"shared": len(shared), "source": len(self._roots)}
+        column = {"out": place, "back": place, "source": np.searchsorted(self._roots, np.arange(len(parent)))}
         self._turns = {kind: np.zeros((len(loops), size)) for kind, size in sizes.items()}
         """How often, and which way, each loop runs through each leg."""
         for row, loop in enumerate(loops):
             for (kind, index), sign in loop.items():
-                self._turns[kind][row, place[index] if kind in ("out", "back") else index] += sign
+                self._turns[kind][row, column[kind][index] if kind in column else index] += sign
         self._member = np.zeros((len(shared), len(self.nodes)))
         for row, members in enumerate(shared):
             self._member[row, place[members]] = 1.0
@@ -110,7 +112,9 @@ class Loops:
         own = (turns["out"] * legs.out[nodes]) @ turns["out"].T + (turns["back"] * legs.back[nodes]) @ turns["back"].T
         own += (turns["tie_out"] * legs.tie_out) @ turns["tie_out"].T
         own += (turns["tie_back"] * legs.tie_back) @ turns["tie_back"].T
-        drives = np.concatenate([np.zeros(len(member)), turns["source"] @ held_v + turns["out"] @ emf_v[nodes]])
+        drives = np.concatenate(
+            [np.zeros(len(member)), turns["source"] @ held_v[self._roots] + turns["out"] @ emf_v[nodes]]
+        )
         return System(
             nodes=nodes,
             above=self._above,
@@ -179,7 +183,7 @@ class System:
         return answers
 
 
-Part = tuple[str, int]
+Element = tuple[str, int]
 """A leg: ``out`` or ``back`` of a node's branch, ``tie_out``, ``tie_back``, ``shared``, ``source`` of a root."""
 
 
@@ -200,7 +204,7 @@ class _Graph:
             for node in members[1:].tolist():
                 self._join(size + node, size + first)
                 self._join(size + parent[node], size + parent[first])
-        edges: list[tuple[int, int, Part]] = []
+        edges: list[tuple[int, int, Element]] = []
         for node, up in enumerate(parent):
             edges.append((up, node, ("out", node)) if up >= 0 else (size + node, node, ("source", node)))
         for node, up in enumerate(parent):
@@ -214,10 +218,10 @@ class _Graph:
             edges.append((size + end, size + start, ("tie_back", index)))
         self._edges = [(self._find(a), self._find(b), part) for a, b, part in edges]
 
-    def loops(self) -> list[dict[Part, float]]:
+    def loops(self) -> list[dict[Element, float]]:
         """A set of independent loops: how often each runs through each leg, and which way."""
         linked = list(range(len(self._same)))
-        beside: dict[int, list[tuple[int, Part, float]]] = {}
+        beside: dict[int, list[tuple[int, Element, float]]] = {}
         closing = []
         for a, b, part in self._edges:
             one, other = representative(linked, a), representative(linked, b)
@@ -229,7 +233,7 @@ class _Graph:
             beside.setdefault(b, []).append((a, part, -1.0))
         if not closing:
             return []
-        came: dict[int, tuple[int, Part, float]] = {}
+        came: dict[int, tuple[int, Element, float]] = {}
         depth: dict[int, int] = {}
         for start in beside:
             if start in depth:
@@ -245,8 +249,8 @@ class _Graph:
 
     @staticmethod
     def _close(
-        a: int, b: int, part: Part, came: dict[int, tuple[int, Part, float]], depth: dict[int, int]
-    ) -> dict[Part, float]:
+        a: int, b: int, part: Element, came: dict[int, tuple[int, Element, float]], depth: dict[int, int]
+    ) -> dict[Element, float]:
         """From ``a`` along the closing leg to ``b``, and back to ``a`` through the spanning tree."""
         loop = {part: 1.0}
         while a != b:

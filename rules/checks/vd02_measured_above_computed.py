@@ -1,5 +1,6 @@
 """VD02: more voltage is lost than the record accounts for, with the cause that the readings claim."""
 
+import math
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Drop, Finding, NotJudged, Place, Severity
@@ -26,7 +27,9 @@ REMEDIES = {
     SEMICONDUCTOR: "Look for a diode or an electronic switch at the start of {} and read the drop across it at two currents.",
 }
 """What to do next, by cause; the place goes into the braces."""
-ENDS_KNOWN = "Isolate, cut back and remake the termination at {}, then read it again at the same current."
+NORMAL_95 = 1.96
+"""Standard deviations from the middle of a Gaussian to the bounds of its central 95 %."""
+ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it again at the same current."
 
 
 @rule(
@@ -47,17 +50,17 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     The cause is named where the readings claim one: some fault at the profile's probability, most of it with a
     joint, a semiconductor, or the conductors, of which size, metal and length are often not to be told apart. A
     bad connection has its severity from the heat in it at design current, any other cause from the excess times
-    the current read: soon from the profile's 2 W. An excess that a slip explains better than a fault is for watch.
+    the current read: soon from the profile's 2 W, immediate from 10 W on, which can burn. An excess that a slip
+    explains better than a fault is for watch.
 
     **Finds**: 2.45 ± 0.02 V measured against 1.92 ± 0.05 V computed at 8 A: 4.2 W too much, so it is for soon.
-    From 10 W on, which burns where it sits in one place, it is immediate: in a bad connection, or where no cause is claimed.
     A joint of 40 mΩ, read across itself, that the drop of a cable of guessed length would hide.
 
     **Leaves alone**: 2.02 ± 0.02 V against the same computed drop, which two standard uncertainties cover. Readings
     that cannot be (RD01, RD02) are not judged.
     """
     if case.unused:
-        yield measured_above_computed.gap(case, "readings", f"read, but not used yet: {', '.join(case.unused)}")
+        yield measured_above_computed.gap(case, "readings", f"read, but of no use here: {', '.join(case.unused)}")
     causes = case.diagnosis.causes if case.diagnosis is not None else ()
     claim = claimed(causes, case.limits)
     if case.drop is None and claim is None:
@@ -76,20 +79,22 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             numbers=_numbers(drop, None),
             remedy="Read it again, and compare length, size and points with the record, before anything else is done.",
             cause=slip.cause,
+            source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
         )
         return
-    heat_w = _heat_w(case, claim)
+    heat = _heat(case, claim)
+    citation = f"{measured_above_computed.source}; {case.limits.citation('decision')}"
     parts = [*_drop_words(drop), *([_claim_words(claim)] if claim else _open_words(causes)), *_remarks(case)]
     yield measured_above_computed.finding(
         case,
         claim.where if claim and claim.where else along,
         "; ".join(parts),
-        numbers=_numbers(drop, claim) | ({"heat": Figure(heat_w, "W")} if heat_w is not None else {}),
-        severity=_severity(heat_w, claim, case.limits),
+        numbers=_numbers(drop, claim) | ({"heat": heat} if heat is not None else {}),
+        severity=_severity(heat, case.limits),
         remedy=_remedy(claim),
-        source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
         cause=claim.cause if claim else None,
-        consequences=tuple(_consequences(case, claim, heat_w)),
+        source=citation,
+        consequences=tuple(_consequences(case, claim, heat)),
     )
 
 
@@ -103,16 +108,33 @@ def _beyond_doubt(case: CircuitCase) -> bool:
     return case.diagnosis is None or case.diagnosis.probability(AS_RECORDED) < 0.5
 
 
-def _heat_w(case: CircuitCase, claim: Claim | None) -> float | None:
-    """Heat that the record does not explain: in the bad connection at design current, else in all at this current. [W]"""
+def _heat(case: CircuitCase, claim: Claim | None) -> Figure | None:
+    """Heat that the record does not explain: in the bad connection at design current, else in all at this current."""
+    drop = case.drop
     if claim is not None and claim.cause == BAD_CONNECTION:
-        read_a = abs(case.drop.current.value) if case.drop is not None else 0.0
+        read_a = abs(drop.current.value) if drop is not None else 0.0
         return max(
-            (place.best_ohm or 0.0) * case.largest_current_a.get(place.point, read_a) ** 2 for place in claim.places
+            (_joint_heat(joint, case.largest_current_a.get(joint.point, read_a)) for joint in claim.joints),
+            key=lambda heat: heat.value,
         )
-    if case.drop is None:
+    if drop is None:
         return None
-    return case.drop.excess.value * abs(case.drop.current.value)
+    value = drop.excess.value * abs(drop.current.value)
+    u = math.hypot((drop.excess.u or 0.0) * drop.current.value, drop.excess.value * (drop.current.u or 0.0))
+    return Figure(value, "W", u)
+
+
+def _joint_heat(place: Place, current_a: float) -> Figure:
+    """Of a bad connection at a current; its doubt from the bounds of the resistance."""
+    low, best, high = place.low_ohm or 0.0, place.best_ohm or 0.0, place.high_ohm or 0.0
+    return Figure(best * current_a**2, "W", (high - low) / (2 * NORMAL_95) * current_a**2)
+
+
+def _severity(heat: Figure | None, limits: Limits) -> Severity:
+    """By what turns into heat in one place, or may."""
+    if heat is None or heat.value < limits["heat.soon_w"]:
+        return Severity.WATCH
+    return Severity.IMMEDIATE if heat.value >= limits["heat.immediate_w"] else Severity.SOON
 
 
 def _drop_words(drop: Drop | None) -> Iterator[str]:
@@ -138,11 +160,16 @@ def _claim_words(claim: Claim) -> str:
         rows = sorted([*claim.places, *claim.others], key=lambda place: -place.probability)
         return "the conductors are probably not as recorded: " + ", ".join(cause_words(row) for row in rows) + against
     said = f"probably a {claim.cause} in {claim.where} ({probability_words(claim.probability)})"
-    low, best, high = claim.place.low_ohm, claim.place.best_ohm, claim.place.high_ohm
+    ohms = " and ".join(filter(None, (_ohm_words(joint) for joint in claim.place.joints or (claim.place,))))
+    return f"{said}: {ohms} extra{against}" if ohms else said + against
+
+
+def _ohm_words(joint: Place) -> str:
+    """An extra resistance with its bounds; empty where it has none."""
+    low, best, high = joint.low_ohm, joint.best_ohm, joint.high_ohm
     if low is None or best is None or high is None:
-        return said + against
-    bounds = f"{show(low, 'ohm', digits=3)} to {show(high, 'ohm', digits=3)}"
-    return f"{said}: {show(best, 'ohm', digits=3)} extra ({bounds}){against}"
+        return ""
+    return f"{show(best, 'ohm', digits=3)} ({show(low, 'ohm', digits=3)} to {show(high, 'ohm', digits=3)})"
 
 
 def _remarks(case: CircuitCase) -> Iterator[str]:
@@ -178,15 +205,16 @@ def _numbers(drop: Drop | None, claim: Claim | None) -> dict[str, Figure]:
 def _remedy(claim: Claim | None) -> str | None:
     if claim is None:
         return None
-    separated = claim.cause == BAD_CONNECTION and len(claim.places) == 1 and claim.where.count(" ") >= 3
-    return (ENDS_KNOWN if separated else REMEDIES[claim.cause]).format(claim.where)
+    separated = claim.cause == BAD_CONNECTION and all(joint.where.count(" ") == 3 for joint in claim.joints)
+    several = len(claim.places) > 1
+    return (ENDS_KNOWN if separated and not several else REMEDIES[claim.cause]).format(claim.where)
 
 
-def _consequences(case: CircuitCase, claim: Claim | None, heat_w: float | None) -> Iterator[str]:
-    if heat_w is not None and claim is not None and claim.cause == BAD_CONNECTION:
-        yield f"at design current {show(heat_w, 'W', digits=2)} turn into heat in one place"
-    elif heat_w is not None:
-        yield f"at this current up to {show(heat_w, 'W')} turn into heat that the record does not explain"
+def _consequences(case: CircuitCase, claim: Claim | None, heat: Figure | None) -> Iterator[str]:
+    if heat is not None and claim is not None and claim.cause == BAD_CONNECTION:
+        yield f"at design current {show(heat.value, 'W', heat.u)} turn into heat in one place"
+    elif heat is not None:
+        yield f"at this current {show(heat.value, 'W', heat.u)} turn into heat that the record does not explain"
     for point in case.loads:
         lowest, worst = point.load.lowest_voltage_v, case.worst.get(point.load.point)
         if lowest is not None and worst is not None and worst.value < lowest <= point.lowest_v:
@@ -194,11 +222,3 @@ def _consequences(case: CircuitCase, claim: Claim | None, heat_w: float | None) 
                 f"with the source at its lowest {point.load.tag} gets {show(worst.value, 'V', worst.u)}, below its "
                 f"lowest {show(lowest, 'V')}"
             )
-
-
-def _severity(heat_w: float | None, claim: Claim | None, limits: Limits) -> Severity:
-    """By the heat; spread over conductors it does not burn in one place."""
-    if heat_w is None or heat_w < limits["heat.soon_w"]:
-        return Severity.WATCH
-    in_one_place = claim is None or claim.cause == BAD_CONNECTION
-    return Severity.IMMEDIATE if in_one_place and heat_w >= limits["heat.immediate_w"] else Severity.SOON

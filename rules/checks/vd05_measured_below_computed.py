@@ -7,6 +7,7 @@ from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
 from rules.rule import rule
 from rules.units import show
+from rules.verdict import cause_words, doubtful
 
 
 @rule(
@@ -21,7 +22,8 @@ from rules.units import show
 )
 def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
     """
-    Less voltage is lost than the recorded conductors must lose, beyond the doubt of both.
+    Less voltage is lost than the recorded conductors must lose, beyond the doubt of both. What the diagnosis finds most
+    probable is named: a slip in a reading, a length out and back, feet, a larger conductor, a parallel path.
 
     **Finds**: 0.88 ± 0.02 V measured against 1.76 ± 0.04 V computed at 8 A: half, as when both ways of a cable are entered.
 
@@ -33,18 +35,21 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
         return
     if probability_above(-drop.excess.value, 0.0, drop.excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return
+    slip = doubtful(case.diagnosis.causes) if case.diagnosis is not None else None
     yield measured_below_computed.finding(
         case,
         f"{drop.start} to {drop.end}",
         f"{show(drop.measured.value, 'V', drop.measured.u)} measured against "
         f"{show(drop.computed.value, 'V', drop.computed.u)} computed from {drop.start} to {drop.end} at "
         f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}: "
-        f"{show(-drop.excess.value, 'V', drop.excess.u)} too little",
+        f"{show(-drop.excess.value, 'V', drop.excess.u)} too little"
+        + (f"; probably {cause_words(slip)}" if slip else ""),
         numbers={
             "measured": drop.measured,
             "computed": drop.computed,
             "excess": drop.excess,
             "current": drop.current,
         },
+        cause=slip.cause if slip else None,
         source=f"{measured_below_computed.source}; {case.limits.citation('decision')}",
     )

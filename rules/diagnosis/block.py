@@ -66,8 +66,10 @@ class Block:
     """(b, current readings)"""
     reading_gain_u: Floats
     """(b, current readings)"""
+    counts: Floats
+    """(b, n, n): covariance of what each observation has of its own."""
     own: Floats
-    """(b, n, n): covariance of what no hypothesis changes: counts, terminations, device."""
+    """(b, n, n): with terminations and device, at the currents read."""
 
     def __len__(self) -> int:
         return len(self.shown)
@@ -108,12 +110,8 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
     poles = ohm @ shape.pole_of.T
     terminations_u = np.sqrt(of_legs("joint_variance") @ shape.termination_of.T)
     others_u = np.concatenate([terminations_u, limits["device_doubt.relative"] * poles], axis=1)
-    joints = shape.coefficient.shape[1] - shape.conductors.stop
-    apart = carried[:, 0, :, shape.conductors.stop :] * others_u[:, None]
-    device = apart[:, :, joints - poles.shape[1] :].sum(axis=2)
-    apart = apart[:, :, : joints - poles.shape[1]]
-    own = (shape.difference * variance[:, None]) @ shape.difference.T
-    own = own + apart @ apart.transpose(0, 2, 1) + device[:, :, None] * device[:, None, :]
+    counts = (shape.difference * variance[:, None]) @ shape.difference.T
+    own = counts + _others_covariance(shape, carried, others_u)
     runs = shape.reached & np.array([kind == "run" for kind in shape.signature.branches], dtype=bool)
     fixed = np.zeros((size, shape.signature.gains, shape.rows))
     if shape.gain_parts is not None:
@@ -142,8 +140,20 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
         reading_a=column("reading_a"),
         reading_u=column("reading_u"),
         reading_gain_u=column("reading_gain_u"),
+        counts=counts,
         own=own,
     )
+
+
+def _others_covariance(shape: Shape, carried: Floats, others_u: Floats) -> Floats:
+    """(b, n, n): from terminations, each on its own, and the device, whose poles err alike."""
+    apart = carried[:, 0, :, shape.conductors.stop :] * others_u[:, None]
+    poles = shape.poles.start - shape.conductors.stop
+    device = apart[:, :, poles:].sum(axis=2)
+    found: Floats = (
+        apart[:, :, :poles] @ np.swapaxes(apart[:, :, :poles], 1, 2) + device[:, :, None] * device[:, None, :]
+    )
+    return found
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -165,6 +175,9 @@ class Model:
     own: Floats
     conductor_own: Floats
     """(b, f, n, n)"""
+    conductor_columns: Floats
+    """(b, f, n, branches + 2): the length of each branch, temperature, resistance per metre; ``conductor_own`` is their
+    square."""
 
     @property
     def whole_mean(self) -> Floats:
@@ -199,8 +212,11 @@ def model_of(block: Block, conductor: Floats, slope: Floats, carried: Floats | N
     carried : array (b, 1 + s, n, e), optional
         Other currents than those read.
     """
-    shape = block.shape
-    carried = block.carried if carried is None else carried
+    shape, own = block.shape, block.own
+    if carried is None:
+        carried = block.carried
+    else:
+        own = block.counts + _others_covariance(shape, carried, block.others_u)
     size, planes, rows, _ = carried.shape
     split = shape.conductors.stop
     of_others = (carried[..., split:] @ block.others[:, None, :, None])[:, None, ..., 0]
@@ -217,8 +233,9 @@ def model_of(block: Block, conductor: Floats, slope: Floats, carried: Floats | N
         conductor_mean=of_conductors[:, :, 0],
         shared=_columns(gain * of_others[:, :, :1] + block.gain_fixed[:, None], of_others[:, :, 1:]),
         conductor_shared=_columns(gain * of_conductors[:, :, :1], of_conductors[:, :, 1:]),
-        own=block.own[:, None],
+        own=own[:, None],
         conductor_own=columns @ np.swapaxes(columns, -1, -2),
+        conductor_columns=columns,
     )
 
 

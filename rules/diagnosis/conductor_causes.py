@@ -90,7 +90,7 @@ def conductor_causes(block: Block, recorded: Model) -> ConductorCauses:
         range_of(limits["slip.parallel_low"], limits["slip.parallel_high"]),
     )
     single = np.concatenate([SINGLE_FACTORS, *(part.nodes for part in spread)])
-    ratio = _ratios(block)
+    ratio = ratios_of(block)
     count, branches = len(ALTERNATIVES), len(block.shape.signature.branches)
     read = ratio[:, :, block.shape.reached[block.shape.element_branch[block.shape.conductors]]]
     lowest, highest = read.min(axis=2, initial=np.inf), read.max(axis=2, initial=0.0)
@@ -140,7 +140,7 @@ _ALTERNATIVE_NAMES = tuple(
 )
 
 
-def _ratios(block: Block) -> Floats:
+def ratios_of(block: Block) -> Floats:
     """(b, alternatives, e of conductors): resistance over the recorded one; 1 where there is none to compare."""
     recorded = np.broadcast_to(block.conductor[:, None], block.alternatives.shape)
     there = (block.alternatives > 0) & (recorded > 0)

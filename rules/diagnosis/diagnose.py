@@ -6,37 +6,32 @@ The diagnosis of circuits: what is probably wrong, where and how much, in batche
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import gc
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
+from operator import attrgetter
+from typing import NamedTuple
 
 import numpy as np
 
 from rules.assessment import Place
+from rules.calc.doubt import probability_above
 from rules.diagnosis.hypotheses import BAD_CONNECTION, CAUSES, SEMICONDUCTOR
 from rules.diagnosis.judge import Judged, grouped, judge_block
+from rules.diagnosis.learned import Learned, Together, learned, together
 from rules.diagnosis.problem import Problem
-from rules.diagnosis.shape import Floats, Shape, place_words, shape_of
+from rules.diagnosis.shape import Shape, place_words, shape_of
 from rules.diagnosis.words import what_words
 from rules.limits import Limits
 
-TOLD = 1e-3
+PROBABILITY = attrgetter("probability")
+LEAST = 1e-12
+"""Probability that the sum of all would not feel: such a row is left out."""
+TOLD = 0.01
 """Probability of a cause from which its most probable way is put into words."""
 COVERED = 0.95
 """Share of a place's posterior between the bounds of its extra resistance."""
-
-
-@dataclass(frozen=True, slots=True)
-class Learned:
-    """What the readings support about one branch, over all causes: means with standard deviations."""
-
-    extra_ohm: float
-    extra_u: float
-    factor: float
-    """Resistance of the conductors over the recorded one."""
-    factor_u: float
-    offset_v: float
-    """Lost in a semiconductor at its start."""
-    offset_u: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -45,8 +40,12 @@ class Diagnosis:
 
     causes: tuple[Place, ...]
     """Highest first; the probabilities sum to one."""
-    learned: tuple[tuple[str, Learned], ...]
-    """By id of the run; empty for the device."""
+    run_ids: tuple[str, ...]
+    """Of the branches; empty for the device."""
+    figures: tuple[tuple[float, ...], ...]
+    """Of each branch: the fields of ``Learned``."""
+    together: Together | None
+    """The two places that would be bad at the same time."""
     log_evidence: float
 
     def probability(self, cause: str) -> float:
@@ -55,7 +54,9 @@ class Diagnosis:
 
     def of_branch(self, run_id: str) -> Learned | None:
         """What the readings support about a run, or with an empty id about the device; ``None`` for one they do not know."""
-        return next((learned for branch, learned in self.learned if branch == run_id), None)
+        if run_id not in self.run_ids:
+            return None
+        return Learned(*self.figures[self.run_ids.index(run_id)])
 
 
 def diagnose(problems: Sequence[Problem], limits: Limits) -> list[Diagnosis]:
@@ -73,101 +74,128 @@ def diagnose(problems: Sequence[Problem], limits: Limits) -> list[Diagnosis]:
         In the order of the problems.
     """
     found: dict[int, Diagnosis] = {}
-    for batch in grouped(problems):
-        some = [problems[number] for number in batch]
-        judged = judge_block(shape_of(some[0].signature), some, limits)
-        found |= dict(zip(batch, results(judged, some), strict=True))
+    with _collector_paused():
+        for batch in grouped(problems):
+            some = [problems[number] for number in batch]
+            judged = judge_block(shape_of(some[0].signature), some, limits)
+            found |= dict(zip(batch, results(judged, some), strict=True))
     return [found[number] for number in range(len(problems))]
 
 
-def results(judged: Judged, problems: Sequence[Problem]) -> list[Diagnosis]:
+@contextmanager
+def _collector_paused() -> Iterator[None]:
+    """Without the search for cycles: results hold none, and walking over all of them again costs a fifth of the time."""
+    enabled = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if enabled:
+            gc.enable()
+
+
+def results(judged: Judged, problems: list[Problem]) -> list[Diagnosis]:
     """One diagnosis for each problem of a judged batch."""
     shape = judged.block.shape
-    places = len(shape.places)
-    of_places = judged.posterior[:, judged.of_cause(BAD_CONNECTION)]
-    of_offsets = judged.posterior[:, judged.of_cause(SEMICONDUCTOR)]
-    sizes = [
-        np.exp(judged.density.quantile(share)[:, :places]) for share in ((1 - COVERED) / 2, 0.5, (1 + COVERED) / 2)
-    ]
-    with np.errstate(divide="ignore"):
-        hot = np.log(judged.block.hot_ohm[:, [place.branch for place in shape.places]])
-    edge = np.concatenate([hot, np.full((len(problems), len(shape.offsets)), np.inf)], axis=1)
-    heat = judged.density.above(edge)[:, :places]
-    columns = np.stack([of_places, *sizes, heat], axis=-1).tolist()
     others = [cause for cause in CAUSES if cause not in (BAD_CONNECTION, SEMICONDUCTOR)]
     members = [judged.of_cause(cause) for cause in others]
     sums = np.stack([judged.posterior[:, numbers].sum(axis=1) for numbers in members], axis=-1).tolist()
     best = np.stack([np.array(ns)[judged.posterior[:, ns].argmax(axis=1)] for ns in members], axis=-1).tolist()
-    offsets, learned = of_offsets.tolist(), _learned(judged, of_places, of_offsets)
-    evidence = judged.log_evidence.tolist()
+    offsets = judged.posterior[:, judged.of_cause(SEMICONDUCTOR)].tolist()
+    evidence, singles, doubles = judged.log_evidence.tolist(), _single(judged), _double(judged)
+    figures, pairs_learned = learned(judged), together(judged, problems)
+    words: dict[tuple[str, ...], Words] = {}
     found = []
     for number, problem in enumerate(problems):
-        branches = problem.names
+        said = words.get(problem.names) or words.setdefault(problem.names, Words.of(shape, problem.names))
+        ends = [problem.ends[place.branch] for place in shape.places]
         rows = [
-            Place(
-                BAD_CONNECTION,
-                where_words(shape, place, branches),
-                p,
-                low,
-                middle,
-                high,
-                heat=p * hotter,
-                point=problem.ends[shape.places[place].branch],
-            )
-            for place, (p, low, middle, high, hotter) in enumerate(columns[number])
+            Place(BAD_CONNECTION, said.places[n], p, low, middle, high, heat=heat, point=ends[n])
+            for n, (p, low, middle, high, heat) in enumerate(singles[number])
+            if p > LEAST
         ]
         rows += [
-            Place(
-                SEMICONDUCTOR,
-                offset_words(shape, place, branches),
-                p,
-                point=problem.ends[shape.offset_branch(place)],
-            )
-            for place, p in enumerate(offsets[number])
+            Place(SEMICONDUCTOR, said.offsets[n], p, point=problem.ends[shape.offset_branch(n)])
+            for n, p in enumerate(offsets[number])
+            if p > LEAST
         ]
         rows += [
             Place(cause, "", p, what=what_words(judged, number, which, problem) if p >= TOLD else "")
             for cause, p, which in zip(others, sums[number], best[number], strict=True)
+            if p > LEAST
         ]
-        rows = [row for row in rows if row.probability > 0]
-        rows.sort(key=lambda row: -row.probability)
-        said = tuple(zip(problem.run_ids, (Learned(*figures) for figures in learned[number]), strict=True))
-        found.append(Diagnosis(tuple(rows), said, evidence[number]))
+        if doubles and doubles[number].probability > LEAST:
+            rows.append(_both(doubles[number], said, ends))
+        rows.sort(key=PROBABILITY, reverse=True)
+        branches = tuple(map(tuple, figures[number]))
+        found.append(Diagnosis(tuple(rows), problem.run_ids, branches, pairs_learned[number], evidence[number]))
     return found
 
 
-def _learned(judged: Judged, of_places: Floats, of_offsets: Floats) -> list[list[list[float]]]:
-    """For each problem and branch: mean and standard deviation of extra resistance, factor and offset."""
-    shape, places = judged.block.shape, len(judged.block.shape.places)
-    branches = len(shape.signature.branches)
-    at = np.zeros((places, branches))
-    at[np.arange(places), [place.branch for place in shape.places]] = 1.0
-    extra = (of_places * judged.density.mean(np.exp)[:, :places]) @ at
-    extra_square = (of_places * judged.density.mean(lambda u: np.exp(2 * u))[:, :places]) @ at
-    # the offsets' coordinate is the voltage itself
-    start = np.zeros((len(shape.offsets), branches))
-    start[np.arange(len(shape.offsets)), [shape.offset_branch(n) for n in range(len(shape.offsets))]] = 1.0
-    offset = (of_offsets * judged.density.mean(lambda u: u)[:, places:]) @ start
-    offset_square = (of_offsets * judged.density.mean(lambda u: u**2)[:, places:]) @ start
-    first = 1 + places + len(shape.offsets)
-    weight = judged.posterior[:, first : first + len(judged.conductors.hypotheses.names), None]
-    change = judged.conductors.factor - 1
-    factor = (weight * change).sum(axis=1)
-    factor_square = (weight * (judged.conductors.factor_square - 2 * judged.conductors.factor + 1)).sum(axis=1)
+@dataclass(frozen=True, slots=True)
+class Words:
+    """Where causes are, for problems of one shape whose branches have the same names."""
 
-    def spread(square: Floats, mean: Floats) -> Floats:
-        return np.sqrt(np.maximum(square - mean**2, 0.0))
+    places: tuple[str, ...]
+    offsets: tuple[str, ...]
 
-    figures = [
-        extra,
-        spread(extra_square, extra),
-        1 + factor,
-        spread(factor_square, factor),
-        offset,
-        spread(offset_square, offset),
-    ]
-    said: list[list[list[float]]] = np.stack(figures, axis=-1).tolist()
+    @classmethod
+    def of(cls, shape: Shape, names: Sequence[str]) -> Words:
+        return cls(
+            tuple(where_words(shape, place, names) for place in range(len(shape.places))),
+            tuple(offset_words(shape, place, names) for place in range(len(shape.offsets))),
+        )
+
+
+def _single(judged: Judged) -> list[list[list[float]]]:
+    """For each problem and place: probability, bounds and median of the extra resistance, probability of it being hot."""
+    shape, count = judged.block.shape, len(judged.block.shape.places)
+    cumulative = judged.density.cumulative()
+    edges = cumulative.quantiles((1 - COVERED) / 2, 0.5, (1 + COVERED) / 2)
+    sizes = [np.exp(edge[:, :count]) for edge in edges]
+    with np.errstate(divide="ignore"):
+        hot = np.log(judged.block.hot_ohm[:, [place.branch for place in shape.places]])
+    edge = np.concatenate([hot, np.full((len(hot), len(shape.offsets)), np.inf)], axis=1)
+    heat = judged.of_places * cumulative.above(edge)[:, :count]
+    said: list[list[list[float]]] = np.stack([judged.of_places, *sizes, heat], axis=-1).tolist()
     return said
+
+
+class Double(NamedTuple):
+    """Bad connections at two places at once."""
+
+    probability: float
+    heat: float
+    """Probability of it and of either being hot."""
+    joints: list[list[float]]
+    """Place, bounds and median of its extra resistance, probability of it being hot."""
+
+
+def _double(judged: Judged) -> list[Double]:
+    """The pair of each problem; nothing where no pair is told apart."""
+    if not judged.pairs.hypotheses.names:
+        return []
+    places, ohm, u = judged.pairs.places, judged.pairs.ohm, judged.pairs.ohm_u
+    branches = np.array([place.branch for place in judged.block.shape.places])[places]
+    edge = np.take_along_axis(judged.block.hot_ohm, branches, axis=1)
+    p = judged.of_pair
+    hot = np.where(ohm > edge, 1.0, 0.0)
+    for row in np.flatnonzero(p >= TOLD).tolist():
+        hot[row] = [probability_above(*figures) for figures in zip(ohm[row], edge[row], u[row], strict=True)]
+    either = p * (1 - (1 - hot).prod(axis=1))
+    low, high = np.moveaxis(judged.pairs.bounds, -1, 0)
+    columns = np.stack([places, low, ohm, high, p[:, None] * hot], axis=-1).tolist()
+    return [Double(*row) for row in zip(p.tolist(), either.tolist(), columns, strict=True)]
+
+
+def _both(double: Double, said: Words, ends: Sequence[str]) -> Place:
+    """The row of two bad connections."""
+    joints = tuple(
+        Place(BAD_CONNECTION, said.places[int(n)], double.probability, low, middle, high, heat=hot, point=ends[int(n)])
+        for n, low, middle, high, hot in double.joints
+    )
+    where = " and ".join(joint.where for joint in joints)
+    return Place(BAD_CONNECTION, where, double.probability, heat=double.heat, joints=joints)
 
 
 def where_words(shape: Shape, number: int, branches: Sequence[str]) -> str:

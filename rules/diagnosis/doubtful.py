@@ -55,27 +55,19 @@ def slips(block: Block, recorded: Model) -> Slips:
         With everything as recorded: (b, 1, …).
     """
     shape, limits = block.shape, block.limits
-    covariance, mean = recorded.covariance[:, 0], recorded.whole_mean[:, 0]
-    residual = block.shown - mean
-    # what one volt more, meant than entered, takes off the residual
-    observations = np.broadcast_to(-shape.difference[:, shape.read], (len(block), shape.rows, len(shape.read)))
-    gains, own = shape.signature.gains, [read.own for read in shape.signature.current_readings]
-    currents = recorded.whole_shared[:, 0][:, :, [gains + source for source in own]] / block.reading_u[:, None]
-    pairs = np.array(shape.signature.swaps, dtype=np.int64).reshape(-1, 2)
-    apart = block.value[:, pairs[:, 1]] - block.value[:, pairs[:, 0]]
-    swapped = (shape.swap_columns.T * apart[:, None, :]) + residual[..., None]
-    live = np.where(shape.row_state == shape.signature.states, 1.0, -1.0)
-    turned = live * block.shown - mean
-    right = [residual[..., None], observations, currents, swapped, turned[..., None]]
+    covariance, own = recorded.covariance[:, 0], shape.signature.current_readings
+    residual, observations, currents, swapped, turned = rows_of_slips(block, recorded)
+    right = [residual[..., None], observations, currents, swapped + residual[..., None], turned[..., None]]
     lower = cholesky(covariance)
     white = forward(lower, np.concatenate(right, axis=-1))
     scale = -0.5 * (log_determinant(lower) + shape.rows * LOG_2PI)
     base, readings = white[:, :, 0], observations.shape[-1] + currents.shape[-1]
     entered = np.concatenate([block.value[:, shape.read], block.reading_a], axis=1)
-    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, _typed(block))
+    given = np.array([0.0] * len(shape.read) + [1.0] * len(own))
+    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, typed_off(block), given)
     evidence, off = _looked_at_again(block, recorded, currents, evidence, off)
     others = scale[:, None] - 0.5 * (white[:, :, 1 + readings :] ** 2).sum(axis=1)
-    several = covariance + np.eye(shape.rows) * _several(block)[:, :, None] ** 2
+    several = covariance + np.eye(shape.rows) * several_off(block)[:, :, None] ** 2
     found = np.concatenate([evidence, others, log_density(residual, several)[:, None]], axis=1)
     names = [Hypothesis(DOUBTFUL, ONE_READING, (int(number),)) for number in shape.read]
     names += [Hypothesis(DOUBTFUL, CURRENT_READING, (number,)) for number in range(len(own))]
@@ -90,7 +82,30 @@ def slips(block: Block, recorded: Model) -> Slips:
     return Slips(Hypotheses(tuple(names), weights[None], found), off)
 
 
-def _typed(block: Block) -> Floats:
+def rows_of_slips(block: Block, recorded: Model) -> tuple[Floats, Floats, Floats, Floats, Floats]:
+    """
+    What a slip does to the rows, measured less computed.
+
+    Returns
+    -------
+    tuple of arrays
+        The residual as it stands (b, n); what one volt or ampere more, meant than entered, takes off it, for each
+        observation (b, n, observations) and each current reading (b, n, currents); what two voltages at each other's
+        points add to it (b, n, pairs); the residual if the clamp was held the other way round (b, n).
+    """
+    shape = block.shape
+    mean = recorded.whole_mean[:, 0]
+    observations = np.broadcast_to(-shape.difference[:, shape.read], (len(block), shape.rows, len(shape.read)))
+    gains, own = shape.signature.gains, [read.own for read in shape.signature.current_readings]
+    currents = recorded.whole_shared[:, 0][:, :, [gains + source for source in own]] / block.reading_u[:, None]
+    pairs = np.array(shape.signature.swaps, dtype=np.int64).reshape(-1, 2)
+    apart = block.value[:, pairs[:, 1]] - block.value[:, pairs[:, 0]]
+    live = np.where(shape.row_state == shape.signature.states, 1.0, -1.0)
+    swapped = shape.swap_columns.T * apart[:, None, :]
+    return block.shown - mean, observations, currents, swapped, live * block.shown - mean
+
+
+def typed_off(block: Block) -> Floats:
     """(b, readings): within how much half of all mistyped readings are."""
     shape, limits = block.shape, block.limits
     dead = {number for row in shape.signature.rows if row.state < 0 for number, _ in row.shown}
@@ -101,14 +116,16 @@ def _typed(block: Block) -> Floats:
     return np.concatenate([np.broadcast_to(of_observations, (len(block), len(shape.read))), of_currents], axis=1)
 
 
-def _several(block: Block) -> Floats:
+def several_off(block: Block) -> Floats:
     """(b, n): how far every drop may be off where several things are wrong."""
     dead = block.shape.row_state == block.shape.signature.states
     volts = block.limits["slip.several_share"] * block.nominal_v[:, None]
     return np.where(dead, block.limits["slip.resistance_ohm"], volts)
 
 
-def _off(base: Floats, directions: Floats, scale: Floats, entered: Floats, typed: Floats) -> tuple[Floats, Floats]:
+def _off(
+    base: Floats, directions: Floats, scale: Floats, entered: Floats, typed: Floats, given: Floats
+) -> tuple[Floats, Floats]:
     """
     Log evidence of a shift along each direction, and its best size.
 
@@ -120,12 +137,12 @@ def _off(base: Floats, directions: Floats, scale: Floats, entered: Floats, typed
     off = within / square
     recorded = scale - 0.5 * (base**2).sum(axis=1)
     gained = 0.5 * within * off + 0.5 * (LOG_2PI - np.log(square))
-    return recorded[:, None] + gained + np.log(slip_density(entered, off, 1 / square, typed)), off
+    return recorded[:, None] + gained + np.log(slip_density(entered, off, 1 / square, typed, given)), off
 
 
-def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats) -> Floats:
+def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats, given: Floats) -> Floats:
     """
-    Density of an entered value where the reading was mistaken.
+    Density of a mistake that takes one value for another.
 
     Parameters
     ----------
@@ -137,18 +154,22 @@ def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats) 
         Of ``off``.
     typed : array
         Within how much half of all mistyped readings are.
+    given : array
+        0 for a voltage or resistance, which the record predicts: the density is over what might have been entered.
+        1 for a current, which the record does not predict: it is over what might have been meant.
 
     Returns
     -------
     array
-        Half of it over any distance, half about the slips of ``RATIOS``; over all values that might have been
-        entered it integrates to one.
+        Half of it over any distance, half about the slips of ``RATIOS``; it integrates to one.
     """
     anything = 1 / (math.pi * typed * (1 + (off / typed) ** 2))
     ratios = np.array(list(RATIOS))
-    slipped = (entered + off)[..., None] / ratios
-    width = np.sqrt((NEAR * slipped) ** 2 + variance[..., None] / ratios**2)
-    apart = (entered[..., None] - slipped) / width
+    meant, entered, given = (entered + off)[..., None], entered[..., None], given[..., None]
+    centre = np.where(given > 0, entered * ratios, meant / ratios)
+    spread = np.where(given > 0, variance[..., None], variance[..., None] / ratios**2)
+    width = np.sqrt((NEAR * centre) ** 2 + spread)
+    apart = (np.where(given > 0, meant, entered) - centre) / width
     about = (np.exp(-0.5 * apart**2) / (width * math.sqrt(2 * math.pi))).mean(axis=-1)
     density: Floats = (anything + about) / 2
     return density
@@ -175,13 +196,13 @@ def _looked_at_again(
     right = np.stack([block.shown - again.whole_mean[:, 0], currents[rows, :, best]], axis=-1)
     white = forward(lower, right)
     scale = -0.5 * (log_determinant(lower) + block.shape.rows * LOG_2PI)
-    typed = _typed(block)[rows, start + best]
+    typed = typed_off(block)[rows, start + best]
     within = (white[:, :, 0] * white[:, :, 1]).sum(axis=1)
     square = np.maximum((white[:, :, 1] ** 2).sum(axis=1), 1e-300)
     further = within / square
     total = moved + further
     new = scale - 0.5 * (white[:, :, 0] ** 2).sum(axis=1) + 0.5 * within * further + 0.5 * (LOG_2PI - np.log(square))
-    new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed))
+    new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed, np.ones(len(block))))
     evidence, off = evidence.copy(), off.copy()
     evidence[rows, start + best], off[rows, start + best] = new, total
     return evidence, off

@@ -16,48 +16,65 @@ import numpy as np
 from rules.diagnosis.block import Block, Model
 from rules.diagnosis.gaussian import LOG_2PI, along, cholesky, forward, log_determinant
 from rules.diagnosis.quadrature import Density, integrated
-from rules.diagnosis.shape import Floats, Shape
+from rules.diagnosis.shape import Floats, Integers, Shape
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Line:
     """
-    Rows along the size of an extra, in scalars: arrays (b, places, …) of inner products under the inverse of the
-    covariance that does not change. With p columns that do.
+    Rows along the size of an extra, in scalars: arrays (k, …) of inner products under the inverse of the covariance
+    that does not change, with p columns that do. There are k = b times places.
     """
 
     logarithmic: Floats
-    """(places,): 1 where the coordinate is the logarithm of the size, 0 where it is the size."""
+    """(k,): 1 where the coordinate is the logarithm of the size, 0 where it is the size."""
     constant: Floats
-    """(b, places): log density but for what follows."""
+    """(k,): log density but for what follows."""
     rr: Floats
     rw: Floats
     ww: Floats
-    """(b, places): of residual and direction."""
+    """(k,): of residual and direction."""
     aa: Floats
     ab: Floats
     bb: Floats
-    """(b, places, p, p): of the columns, ``a + size b``; ``ab`` is symmetric already."""
+    """(k, p, p): of the columns, ``a + size b``; ``ab`` is symmetric already."""
     ar: Floats
     aw: Floats
     br: Floats
     bw: Floats
-    """(b, places, p)"""
+    """(k, p)"""
 
-    def size(self, coordinate: Floats) -> Floats:
-        """The size at a coordinate (b, places, …)."""
-        logarithmic = self.logarithmic.reshape(-1, *(1,) * (coordinate.ndim - 2))
-        return np.where(logarithmic > 0, np.exp(coordinate * logarithmic), coordinate)
-
-    def log_density(self, coordinate: Floats) -> Floats:
-        """Log density of the rows (b, places, nodes) at coordinates of the size."""
-        size = self.size(coordinate)
+    def log_density(self, coordinate: Floats, which: Integers) -> Floats:
+        """Log density of the rows (…, nodes) at coordinates of the size of some of the extras."""
+        logarithmic = self.logarithmic[which, None] > 0
+        size = np.where(logarithmic, np.exp(np.where(logarithmic, coordinate, 0.0)), coordinate)
         identity = np.eye(self.ar.shape[-1])
-        log_scale, taken_up = along(
-            size, (self.aa + identity, self.ab, self.bb), (self.ar, self.br - self.aw, -self.bw)
-        )
-        quadratic = self.rr[..., None] + size * (size * self.ww[..., None] - 2 * self.rw[..., None])
-        return self.constant[..., None] - 0.5 * (quadratic - taken_up + log_scale)
+        matrix = (self.aa[which] + identity, self.ab[which], self.bb[which])
+        vector = (self.ar[which], self.br[which] - self.aw[which], -self.bw[which])
+        log_scale, taken_up = along(size, matrix, vector)
+        quadratic = self.rr[which, None] + size * (size * self.ww[which, None] - 2 * self.rw[which, None])
+        return self.constant[which, None] - 0.5 * (quadratic - taken_up + log_scale)
+
+
+def moved(block: Block) -> tuple[Floats, Floats]:
+    """
+    What a unit of each extra adds: the places of a bad connection, then those of a semiconductor.
+
+    Returns
+    -------
+    tuple of arrays
+        To the rows' means (b, places, n), and to the columns of their shared doubts (b, places, gains + s, n).
+    """
+    shape = block.shape
+    sense = np.where(np.abs(block.amps) > 2 * block.amps_u, np.sign(block.amps), 0.0)
+    sense = np.concatenate([sense, np.zeros((len(block), 1))], axis=1)  # slot -1: it does not enter
+    offsets = shape.offset_rows * sense[:, shape.offset_slot]
+    through = block.carried[..., shape.place_element]
+    direction = np.concatenate([through[:, 0].transpose(0, 2, 1), offsets], axis=1)
+    gains = block.gain_u[:, None, :, None] * shape.gain_rows * direction[:, :, None]
+    sources = np.zeros((*direction.shape[:2], shape.signature.sources, shape.rows))
+    sources[:, : len(shape.places)] = through[:, 1:].transpose(0, 3, 1, 2)
+    return direction, np.concatenate([gains, sources], axis=2)
 
 
 def line_of(block: Block, recorded: Model) -> Line:
@@ -70,34 +87,33 @@ def line_of(block: Block, recorded: Model) -> Line:
         With everything as recorded: (b, 1, …).
     """
     shape = block.shape
-    sense = np.where(np.abs(block.amps) > 2 * block.amps_u, np.sign(block.amps), 0.0)
-    sense = np.concatenate([sense, np.zeros((len(block), 1))], axis=1)  # slot -1: it does not enter
-    offsets = shape.offset_rows * sense[:, shape.offset_slot]
-    through = block.carried[..., shape.place_element]
-    direction = np.concatenate([through[:, 0].transpose(0, 2, 1), offsets], axis=1)
-    gains = block.gain_u[:, None, :, None] * shape.gain_rows * direction[:, :, None]
-    sources = np.zeros((*direction.shape[:2], shape.signature.sources, shape.rows))
-    sources[:, : len(shape.places)] = through[:, 1:].transpose(0, 3, 1, 2)
-    moving = np.concatenate([gains, sources], axis=2)
+    direction, moving = moved(block)
     touched = _touched(shape)
     shared = recorded.whole_shared[:, 0]
     fixed = shared[:, None] * (1 - touched)[:, None]
     covariance = recorded.whole_own + fixed @ np.swapaxes(fixed, -1, -2)
-    most, order = int(touched.sum(axis=1).max(initial=0)), np.argsort(-touched, axis=1, kind="stable")
-    chosen, used = order[:, :most], np.take_along_axis(touched, order, axis=1)[:, :most]
+    chosen, used = _columns(shape, touched)
+    most = chosen.shape[1]
     places = np.arange(len(touched))[:, None]
     a = np.swapaxes(shared[:, :, chosen], 1, 2) * used[:, None, :]
     b = np.swapaxes(moving[:, places, chosen], -1, -2) * used[:, None, :]
+    if shape.one_gain >= 0:
+        # the gains of the one voltmeter and the one clamp act alike: one column, the first, stands for both
+        count = len(shape.places)
+        both = np.hypot(block.gain_u, block.reading_gain_u[:, :1])[:, :, None] * used[:count, :1]
+        a[:, :count, :, 0] = recorded.whole_mean * both
+        b[:, :count, :, 0] = direction[:, :count] * both
     residual = np.broadcast_to((block.shown - recorded.whole_mean[:, 0])[:, None], direction.shape)
     right = np.concatenate([residual[..., None], direction[..., None], a, b], axis=-1)
     lower = cholesky(covariance)
     white = forward(lower, right)
     gram = np.swapaxes(white, -1, -2) @ white
     first, second = slice(2, 2 + most), slice(2 + most, 2 + 2 * most)
+    gram = gram.reshape(-1, *gram.shape[2:])
     mixed = gram[..., first, second]
     return Line(
-        logarithmic=np.array([1.0] * len(shape.places) + [0.0] * len(shape.offsets)),
-        constant=-0.5 * (log_determinant(lower) + shape.rows * LOG_2PI),
+        logarithmic=np.tile([1.0] * len(shape.places) + [0.0] * len(shape.offsets), len(block)),
+        constant=-0.5 * (log_determinant(lower).ravel() + shape.rows * LOG_2PI),
         rr=gram[..., 0, 0],
         rw=gram[..., 0, 1],
         ww=gram[..., 1, 1],
@@ -120,6 +136,16 @@ def _touched(shape: Shape) -> Floats:
     return np.concatenate([of_places, of_offsets]).astype(float)
 
 
+def _columns(shape: Shape, touched: Floats) -> tuple[Integers, Floats]:
+    """Of each place: which columns move along its size, and 1 where one does (places, p)."""
+    kept = touched.copy()
+    if shape.one_gain >= 0:
+        kept[: len(shape.places), shape.signature.gains + shape.one_gain] = 0.0
+    order = np.argsort(-kept, axis=1, kind="stable")
+    most = int(kept.sum(axis=1).max(initial=0))
+    return order[:, :most], np.take_along_axis(kept, order, axis=1)[:, :most]
+
+
 def ranges(block: Block) -> tuple[Floats, Floats]:
     """Lowest and highest coordinate of each place's size, (b, places and offsets)."""
     shape, limits = block.shape, block.limits
@@ -133,4 +159,5 @@ def ranges(block: Block) -> tuple[Floats, Floats]:
 def extras(block: Block, recorded: Model) -> tuple[Line, Density]:
     """Lines and densities of all places of a bad connection, then of a semiconductor."""
     line = line_of(block, recorded)
-    return line, integrated(line.log_density, *ranges(block))
+    low, high = ranges(block)
+    return line, integrated(line.log_density, low.ravel(), high.ravel()).shaped(*low.shape)

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -18,6 +18,7 @@ from rules.diagnosis.conductor_causes import ConductorCauses, conductor_causes
 from rules.diagnosis.doubtful import Slips, slips
 from rules.diagnosis.extra import Line, extras
 from rules.diagnosis.gaussian import log_density
+from rules.diagnosis.healthy import corrected
 from rules.diagnosis.hypotheses import (
     AS_RECORDED,
     BAD_CONNECTION,
@@ -29,14 +30,15 @@ from rules.diagnosis.hypotheses import (
     joined,
     normalised,
 )
-from rules.diagnosis.problem import Problem, Signature
+from rules.diagnosis.pairs import MATTERS, TWO_PLACES, Pairs, pairs, summed
+from rules.diagnosis.problem import Problem
 from rules.diagnosis.quadrature import Density
 from rules.diagnosis.shape import Floats, Shape
 from rules.limits import Limits
 
-BATCH = 256
+BATCH = 512
 """Most problems that go through the arrays together: memory grows with this, not with the site."""
-ROOM = 100_000
+ROOM = 200_000
 """Problems in a batch times their rows squared: fewer of the large ones go together."""
 
 
@@ -56,10 +58,27 @@ class Judged:
     """Of the sizes of bad connections, then of semiconductors: (b, places and offsets)."""
     conductors: ConductorCauses
     slips: Slips
+    pairs: Pairs
 
     def of_cause(self, cause: str) -> list[int]:
-        """Where a cause's hypotheses stand."""
-        return [number for number, name in enumerate(self.hypotheses.names) if name.cause == cause]
+        """Where a cause's hypotheses stand, a pair of bad connections left out."""
+        return [
+            number
+            for number, name in enumerate(self.hypotheses.names)
+            if name.cause == cause and name.what != TWO_PLACES
+        ]
+
+    @property
+    def of_places(self) -> Floats:
+        """(b, places): probability of one bad connection at each."""
+        return self.posterior[:, self.of_cause(BAD_CONNECTION)]
+
+    @property
+    def of_pair(self) -> Floats:
+        """(b,): probability of bad connections at both places of the best pair."""
+        if not self.pairs.hypotheses.names:
+            return np.zeros(len(self.block))
+        return self.posterior[:, self.hypotheses.names.index(self.pairs.hypotheses.names[0])]
 
 
 def judge_block(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Judged:
@@ -68,7 +87,7 @@ def judge_block(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Ju
     recorded = model_of(block, block.conductor[:, None], block.conductor_slope[:, None])
     evidence = log_density(block.shown[:, None] - recorded.whole_mean, recorded.covariance)
     line, density = extras(block, recorded)
-    conductors, found = conductor_causes(block, recorded), slips(block, recorded)
+    conductors, found, two = conductor_causes(block, recorded), slips(block, recorded), pairs(block, recorded)
     places = [Hypothesis(BAD_CONNECTION, which=(number,)) for number in range(len(shape.places))]
     offsets = [Hypothesis(SEMICONDUCTOR, which=(number,)) for number in range(len(shape.offsets))]
     shares = [place.share for place in shape.places] + [1 / len(offsets)] * len(offsets)
@@ -76,10 +95,17 @@ def judge_block(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Ju
         Hypotheses((Hypothesis(AS_RECORDED),), np.ones((1, 1)), evidence),
         Hypotheses((*places, *offsets), np.array([shares]), density.log_evidence),
     ]
-    hypotheses = joined([*parts, conductors.hypotheses, found.hypotheses])
-    weight = _weights(hypotheses, limits)
+    hypotheses = joined([*parts, conductors.hypotheses, found.hypotheses, two.hypotheses])
+    pair = shape.place_element[two.places] if shape.places else two.places
+    hypotheses = replace(hypotheses, log_evidence=corrected(block, hypotheses.names, hypotheses.log_evidence, pair))
     with np.errstate(divide="ignore"):
-        joint = np.log(weight) + hypotheses.log_evidence
+        joint = np.log(_weights(hypotheses, limits)) + hypotheses.log_evidence
+    if two.hypotheses.names:
+        place = hypotheses.names.index(two.hypotheses.names[0])
+        some = np.flatnonzero(joint[:, place] > joint.max(axis=1) - MATTERS)
+        more, two = summed(two, some)
+        joint[some, place] += more
+        hypotheses.log_evidence[some, place] += more
     best = joint.max(axis=1, keepdims=True)
     posterior = np.exp(joint - best)
     total = posterior.sum(axis=1, keepdims=True)
@@ -93,6 +119,7 @@ def judge_block(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Ju
         density=density,
         conductors=conductors,
         slips=found,
+        pairs=two,
     )
 
 
@@ -109,11 +136,11 @@ def _weights(hypotheses: Hypotheses, limits: Limits) -> Floats:
 
 def grouped(problems: Sequence[Problem]) -> list[list[int]]:
     """Batches of equal shape, as places in the list."""
-    by_shape: dict[Signature, list[int]] = defaultdict(list)
+    by_shape: dict[int, list[int]] = defaultdict(list)
     for number, problem in enumerate(problems):
-        by_shape[problem.signature].append(number)
+        by_shape[id(problem.signature)].append(number)  # equal signatures are one object
     batches = []
-    for signature, group in by_shape.items():
-        most = min(BATCH, max(1, ROOM // len(signature.rows) ** 2))
+    for group in by_shape.values():
+        most = min(BATCH, max(1, ROOM // len(problems[group[0]].signature.rows) ** 2))
         batches += [group[start : start + most] for start in range(0, len(group), most)]
     return batches

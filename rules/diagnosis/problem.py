@@ -11,6 +11,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from typing import NamedTuple
+from weakref import WeakValueDictionary
 
 from rules.record import Reading
 
@@ -42,7 +43,7 @@ class CurrentReading(NamedTuple):
     gain: int
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, weakref_slot=True)
 class Signature:
     """The structure of a problem: circuits that share it go through the same arrays."""
 
@@ -61,6 +62,14 @@ class Signature:
     current_readings: tuple[CurrentReading, ...]
     swaps: tuple[tuple[int, int], ...]
     """Observations that may have been entered at each other's points."""
+
+
+def one(signature: Signature) -> Signature:
+    """The one object for all equal signatures, so that circuits are grouped without comparing structures again."""
+    return _KNOWN.setdefault(signature, signature)
+
+
+_KNOWN: WeakValueDictionary[Signature, Signature] = WeakValueDictionary()
 
 
 @dataclass(frozen=True, slots=True)
@@ -142,3 +151,9 @@ class Problem:
     current_readings: tuple[Observation, ...]
     rounds: tuple[str, ...]
     """Name of each state."""
+
+    @property
+    def used(self) -> frozenset[str]:
+        """Ids of the readings that enter a row; those of currents left out."""
+        numbers = {number for row in self.signature.rows for number, _ in row.shown}
+        return frozenset(reading.id for number in numbers for reading in self.observations[number].readings)

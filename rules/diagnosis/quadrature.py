@@ -14,22 +14,22 @@ from typing import TypeAlias
 
 import numpy as np
 
-from rules.diagnosis.shape import Floats
+from rules.diagnosis.shape import Floats, Integers
 
-LogDensity: TypeAlias = Callable[[Floats], Floats]
-"""From coordinates (..., nodes) to log densities of the same shape."""
+LogDensity: TypeAlias = Callable[[Floats, Integers], Floats]
+"""From coordinates (k, nodes) of some densities, and which they are (k,), to log densities (k, nodes)."""
 
-SEARCHED = 16
+SEARCHED = 12
 """Nodes of each step of the search."""
 STEPS = 9
 """More than any density needs that floats can hold."""
-ENOUGH = 6
+ENOUGH = 5
 """Kept nodes with which the search has found the density: it then spans at most 14 standard deviations."""
 KEPT = 18.0
 """Natural logarithms below the best within which a node is kept, with one neighbour on each side."""
 NODES = 32
 """Gauss-Legendre nodes of the sum."""
-FINE = 96
+FINE = 64
 """Steps in which the cumulative density is laid out."""
 
 
@@ -70,42 +70,55 @@ class Density:
     def nodes(self) -> Floats:
         return self.low[..., None] + self.width[..., None] * UNIT_NODES
 
-    def _below(self) -> Floats:
-        """(..., fine steps): probability below each; it never falls."""
-        below = (self.share / UNIT_WEIGHTS) @ BELOW_STEPS
-        rising: Floats = np.maximum.accumulate(np.clip(below, 0.0, 1.0), axis=-1)
-        return rising
+    def shaped(self, *shape: int) -> Density:
+        """The same densities in an array of another shape."""
+        low, width, evidence = (array.reshape(shape) for array in (self.low, self.width, self.log_evidence))
+        return Density(low, width, evidence, self.share.reshape(*shape, NODES))
 
-    def quantile(self, share: float) -> Floats:
-        """
-        The coordinate (...) below which this share of the probability lies.
-
-        Between two steps the cumulative density is the cubic that has its values and slopes there.
-        """
-        below = self._below()
-        step = np.clip((below <= share).sum(axis=-1) - 1, 0, FINE - 1)[..., None]
-        here = np.take_along_axis(below, step, axis=-1)[..., 0]
-        rise = np.maximum(np.take_along_axis(below, step + 1, axis=-1)[..., 0] - here, 1e-300)
-        slopes = (self.share / UNIT_WEIGHTS) @ AT_STEPS / FINE
-        start = np.take_along_axis(slopes, step, axis=-1)[..., 0] / rise
-        end = np.take_along_axis(slopes, step + 1, axis=-1)[..., 0] / rise
-        place: Floats = self.low + self.width * (step[..., 0] + _along((share - here) / rise, start, end)) / FINE
-        return place
-
-    def above(self, coordinate: Floats) -> Floats:
-        """Probability that the size lies above a coordinate (...)."""
-        below = self._below()
-        place = (coordinate - self.low) / self.width * FINE
-        step = np.clip(np.floor(np.nan_to_num(place, neginf=0.0, posinf=FINE)), 0, FINE - 1).astype(np.int64)[..., None]
-        here = np.take_along_axis(below, step, axis=-1)[..., 0]
-        there = np.take_along_axis(below, step + 1, axis=-1)[..., 0]
-        part = np.clip(place - step[..., 0], 0.0, 1.0)
-        return 1 - (here + (there - here) * part)
+    def cumulative(self) -> Cumulative:
+        """The probability below each of some fine steps over what matters."""
+        density = self.share / UNIT_WEIGHTS
+        below = np.maximum.accumulate(np.clip(density @ BELOW_STEPS, 0.0, 1.0), axis=-1)
+        return Cumulative(self.low, self.width, below, density @ AT_STEPS / FINE)
 
     def mean(self, of: Callable[[Floats], Floats]) -> Floats:
         """Mean (...) of a function of the coordinate."""
         total: Floats = (self.share * of(self.nodes)).sum(axis=-1)
         return total
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Cumulative:
+    """A density laid out in steps: between two of them the cubic that has its values and slopes there."""
+
+    low: Floats
+    width: Floats
+    below: Floats
+    """(..., fine steps): probability below each; it never falls."""
+    slopes: Floats
+    """(..., fine steps): probability a step."""
+
+    def quantiles(self, *shares: float) -> list[Floats]:
+        """The coordinates (...) below which these shares of the probability lie."""
+        found = []
+        for share in shares:
+            step = np.clip((self.below <= share).sum(axis=-1) - 1, 0, FINE - 1)[..., None]
+            here = np.take_along_axis(self.below, step, axis=-1)[..., 0]
+            rise = np.maximum(np.take_along_axis(self.below, step + 1, axis=-1)[..., 0] - here, 1e-300)
+            start = np.take_along_axis(self.slopes, step, axis=-1)[..., 0] / rise
+            end = np.take_along_axis(self.slopes, step + 1, axis=-1)[..., 0] / rise
+            place = step[..., 0] + _along((share - here) / rise, start, end)
+            found.append(self.low + self.width * place / FINE)
+        return found
+
+    def above(self, coordinate: Floats) -> Floats:
+        """Probability (...) that the size lies above a coordinate (...)."""
+        place = np.nan_to_num((coordinate - self.low) / self.width * FINE, neginf=0.0, posinf=FINE)
+        step = np.clip(np.floor(place), 0, FINE - 1).astype(np.int64)[..., None]
+        here = np.take_along_axis(self.below, step, axis=-1)[..., 0]
+        rise = np.take_along_axis(self.below, step + 1, axis=-1)[..., 0] - here
+        found: Floats = 1 - (here + rise * np.clip(place - step[..., 0], 0.0, 1.0))
+        return found
 
 
 def _along(wanted: Floats, start: Floats, end: Floats) -> Floats:
@@ -120,39 +133,41 @@ def _along(wanted: Floats, start: Floats, end: Floats) -> Floats:
 
 def integrated(log_density: LogDensity, low: Floats, high: Floats) -> Density:
     """
-    The density of a size that is even over its coordinate before anything is read.
+    Densities of sizes that are even over their coordinate before anything is read.
 
     Parameters
     ----------
     log_density : callable
-        Log likelihood of what was read, at coordinates (..., nodes).
-    low, high : array (...)
-        The coordinate's range.
+        Log likelihood of what was read; only those densities are asked for that are not found yet.
+    low, high : array (n,)
+        Each coordinate's range.
 
     Examples
     --------
     A likelihood of standard deviation 0.01 within a range of 10:
 
-    >>> found = integrated(lambda u: -0.5 * ((u - 3) / 0.01) ** 2, np.array([0.0]), np.array([10.0]))
+    >>> found = integrated(lambda u, _: -0.5 * ((u - 3) / 0.01) ** 2, np.array([0.0]), np.array([10.0]))
     >>> float(np.exp(found.log_evidence[0]) * 10 / 0.01 / np.sqrt(2 * np.pi)).__round__(8)
     1.0
-    >>> [round(float(found.quantile(share)[0]), 4) for share in (0.025, 0.5, 0.975)]
+    >>> [round(float(low[0]), 4) for low in found.cumulative().quantiles(0.025, 0.5, 0.975)]
     [2.9804, 3.0, 3.0196]
     """
     full = high - low
-    left, width = low, full
+    left, width = low.copy(), full.copy()
     grid = np.linspace(0, 1, SEARCHED)
+    everything = sought = np.arange(len(low))
     for _ in range(STEPS):
-        found = log_density(left[..., None] + width[..., None] * grid)
-        kept = found >= found.max(axis=-1, keepdims=True) - KEPT
-        first = np.maximum(kept.argmax(axis=-1) - 1, 0)
-        last = np.minimum(SEARCHED - kept[..., ::-1].argmax(axis=-1), SEARCHED - 1)
-        left, width = left + width * grid[first], width * (grid[last] - grid[first])
-        if kept.sum(axis=-1).min() >= ENOUGH:
+        start, span = left[sought], width[sought]
+        found = log_density(start[:, None] + span[:, None] * grid, sought)
+        kept = found >= found.max(axis=1, keepdims=True) - KEPT
+        first = np.maximum(kept.argmax(axis=1) - 1, 0)
+        last = np.minimum(SEARCHED - kept[:, ::-1].argmax(axis=1), SEARCHED - 1)
+        left[sought], width[sought] = start + span * grid[first], span * (grid[last] - grid[first])
+        sought = sought[kept.sum(axis=1) < ENOUGH]
+        if not len(sought):
             break
-    found = log_density(left[..., None] + width[..., None] * UNIT_NODES)
-    best = found.max(axis=-1)
-    share = np.exp(found - best[..., None]) * UNIT_WEIGHTS
-    total = share.sum(axis=-1)
-    evidence = best + np.log(total * width / full)
-    return Density(left, width, evidence, share / total[..., None])
+    found = log_density(left[:, None] + width[:, None] * UNIT_NODES, everything)
+    best = found.max(axis=1)
+    share = np.exp(found - best[:, None]) * UNIT_WEIGHTS
+    total = share.sum(axis=1)
+    return Density(left, width, best + np.log(total * width / full), share / total[:, None])

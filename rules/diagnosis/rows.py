@@ -12,10 +12,10 @@ from collections import defaultdict
 from collections.abc import Mapping, Sequence
 
 from rules.calc.conductor import REFERENCE_AREA_MM2
-from rules.calc.doubt import Shown
+from rules.calc.doubt import Shown, few_readings_factor
 from rules.diagnosis.budget import Current
 from rules.diagnosis.conductors import ALTERNATIVES, alternatives
-from rules.diagnosis.problem import DEAD, LEGS, Branch, CurrentReading, Observation, Problem, Row, Signature
+from rules.diagnosis.problem import DEAD, LEGS, Branch, CurrentReading, Observation, Problem, Row, Signature, one
 from rules.errors import MissingData
 from rules.limits import Limits
 from rules.record import Reading, Run
@@ -117,13 +117,15 @@ class _Gather:
             shown = this.shown.get(row.id)
             if shown is not None and row.quantity != "current":
                 groups[row.quantity, row.at, row.to, row.leg or "both", shown.gain_key].append(row)
-        first = len(self.observations)
+        first, few = len(self.observations), few_readings_factor(this.wander_freedom)
         for (quantity, at, to, leg, key), rows in groups.items():
             worths = [this.shown[row.id] for row in rows]
             value = sum(worth.value for worth in worths) / len(rows)
             self.observations.append(Observation(quantity, at, to, leg, this.name, tuple(rows)))
             self.shown.append(Shown(value, key, worths[0].gain_u, 0.0))
-            self.variances.append(sum(worth.own_variance for worth in worths) / len(rows) ** 2)
+            self.variances.append(
+                sum(worth.each_u**2 + (few * worth.wander_u) ** 2 for worth in worths) / len(rows) ** 2
+            )
             self.gain_of.append(self.gains.setdefault(key, len(self.gains)))
             if len(self.gain_u) < len(self.gains):
                 self.gain_u.append(worths[0].gain_u)
@@ -239,17 +241,19 @@ class _Gather:
         """Put together what was gathered."""
         reached = [(key, slot) for key, slot in self.slots.items() if slot is not None]
         reads = list(self.amps_read.values())
-        signature = Signature(
-            branches=tuple(self._kind(place) for place in range(len(self.names))),
-            rows=tuple(self.rows),
-            gain_of=tuple(self.gain_of),
-            gains=len(self.gains),
-            states=len(rounds),
-            slots=tuple(key for key, _ in reached),
-            errors=tuple(self.errors),
-            sources=len(self.sources),
-            current_readings=tuple(read for read, _, _ in reads),
-            swaps=tuple(self.swaps),
+        signature = one(
+            Signature(
+                branches=tuple(self._kind(place) for place in range(len(self.names))),
+                rows=tuple(self.rows),
+                gain_of=tuple(self.gain_of),
+                gains=len(self.gains),
+                states=len(rounds),
+                slots=tuple(key for key, _ in reached),
+                errors=tuple(self.errors),
+                sources=len(self.sources),
+                current_readings=tuple(read for read, _, _ in reads),
+                swaps=tuple(self.swaps),
+            )
         )
         voltages = [abs(shown.value) for shown in self.shown]
         return Problem(
@@ -289,11 +293,11 @@ class _Gather:
             whole = self.tree.device_ohm or 0.0
             share = {"both": 0.5, "positive": 1.0, "negative": 0.0}[_device_legs(self.tree, self.return_leg)]
             first = self.tree.runs[0].size if self.tree.runs else ""
-            return Branch(whole * share, whole * (1 - share), extra_scale=_scale(first), hot_ohm=hot)
+            return Branch(whole * share, whole * (1 - share), extra_scale=extra_scale(first), hot_ohm=hot)
         run = self._run(place)
         known = self.tree.figures[run.id]
         if known.gap:
-            return Branch(extra_scale=_scale(run.size), hot_ohm=hot)
+            return Branch(extra_scale=extra_scale(run.size), hot_ohm=hot)
         out, back = (*known.legs, NO_LEG)[:2]
         first_leg, second_leg = (back, out) if self.return_leg == "positive" else (out, back)
         return Branch(
@@ -307,7 +311,7 @@ class _Gather:
             second_leg.joint_variance,
             known.length_u,
             known.temperature_u_k,
-            _scale(run.size),
+            extra_scale(run.size),
             hot,
         )
 
@@ -331,7 +335,7 @@ class _Gather:
         return self.tree.runs[place - (self.names[0] == DEVICE)]
 
 
-def _scale(size: str) -> float:
+def extra_scale(size: str) -> float:
     """What the range of a bad connection is multiplied with, by the area of one conductor."""
     return math.sqrt(REFERENCE_AREA_MM2 / area_mm2(size)) if is_known(size) else 1.0
 

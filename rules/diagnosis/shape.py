@@ -79,6 +79,9 @@ class Shape:
     """(places, sources)"""
     place_gains: NDArray[np.bool_]
     """(places, gains)"""
+    one_gain: int
+    """The source that is the gain of the only clamp, where one voltmeter reads all rows; else -1. Both then act on
+    every drop alike."""
     offsets: tuple[tuple[tuple[int, str], ...], ...]
     """Where a semiconductor may be, as far as the readings separate it: branches with a leg."""
     offset_rows: Floats
@@ -167,6 +170,7 @@ def shape_of(signature: Signature) -> Shape:
         place_element=np.array([element for element, _ in places], dtype=np.int64),
         place_sources=place_sources,
         place_gains=(place_column != 0) @ gain_rows.T > 0,
+        one_gain=_one_gain(signature, gain_rows),
         offsets=offsets,
         offset_rows=offset_rows,
         offset_slot=offset_slot,
@@ -238,6 +242,19 @@ def _gains(signature: Signature, difference: Floats) -> tuple[Floats, Floats | N
         for observation, sign in row.shown:
             several[signature.gain_of[observation], number, observation] += sign
     return one, several if several.any() else None
+
+
+def _one_gain(signature: Signature, gain_rows: Floats) -> int:
+    """The gain of the only clamp, where one voltmeter reads all rows and no test is dead; else -1."""
+    clamps = {read.gain for read in signature.current_readings}
+    if (
+        len(clamps) != 1
+        or len(gain_rows) != 1
+        or not gain_rows.all()
+        or any(row.state == DEAD for row in signature.rows)
+    ):
+        return -1
+    return clamps.pop()
 
 
 def _offsets(

@@ -7,6 +7,9 @@ from rules.diagnosis.judge import Judged
 from rules.diagnosis.problem import Observation, Problem
 from rules.units import show
 
+ABOUT_AS_MUCH = 0.3
+"""Share of the best slip's probability from which another reading is named beside it."""
+MOST_READINGS = 2
 RECORD_WORDS = {
     "length_as_loop": "the length recorded as one way is that of the loop",
     "metres_for_feet": "the length recorded in metres is in feet",
@@ -19,19 +22,36 @@ RECORD_WORDS = {
 def what_words(judged: Judged, number: int, which: int, problem: Problem) -> str:
     """The way of a hypothesis in words; empty where the cause has but one."""
     name = judged.hypotheses.names[which]
-    read = judged.block.shape.read
-    if name.what == ONE_READING:
-        place = int(read.searchsorted(name.which[0]))
-        said, value = problem.observations[name.which[0]], problem.value[name.which[0]]
-        return slip_words(said, value, float(judged.slips.off[number, place]))
-    if name.what == CURRENT_READING:
-        (place,) = name.which
-        off = float(judged.slips.off[number, len(read) + place])
-        return slip_words(problem.current_readings[place], problem.reading_a[place], off)
+    if name.what in (ONE_READING, CURRENT_READING):
+        return "; or ".join(_slipped(judged, number, other, problem) for other in _alike(judged, number, which))
     if name.what == SWAPPED:
         first, second = (problem.observations[place] for place in sorted(name.which))
         return f"the voltages at {first.at} and {second.at}, round {first.round}, stand at each other's points"
     return RECORD_WORDS.get(name.what, name.what)
+
+
+def _alike(judged: Judged, number: int, which: int) -> list[int]:
+    """The readings whose slip explains about as much as the best one's, which is first."""
+    posterior = judged.posterior[number]
+    others = [
+        other
+        for other, name in enumerate(judged.hypotheses.names)
+        if name.what in (ONE_READING, CURRENT_READING)
+        and other != which
+        and posterior[other] > ABOUT_AS_MUCH * posterior[which]
+    ]
+    return [which, *others][:MOST_READINGS]
+
+
+def _slipped(judged: Judged, number: int, which: int, problem: Problem) -> str:
+    """One reading that does not fit."""
+    name, read = judged.hypotheses.names[which], judged.block.shape.read
+    (place,) = name.which
+    if name.what == CURRENT_READING:
+        off = float(judged.slips.off[number, len(read) + place])
+        return slip_words(problem.current_readings[place], problem.reading_a[place], off)
+    off = float(judged.slips.off[number, int(read.searchsorted(place))])
+    return slip_words(problem.observations[place], problem.value[place], off)
 
 
 def slip_words(said: Observation, entered: float, off: float) -> str:

@@ -136,7 +136,7 @@ def test_a_claimed_fault_of_little_heat_is_watch_and_of_more_is_soon() -> None:
     large = result(site(read(extra=(0.0, 0.15))))
     assert (large.status, large.findings[0].cause, large.findings[0].where) == (Status.ACT, BAD_CONNECTION, "run 2")
     assert large.findings[0].numbers["extra resistance"].value == pytest.approx(0.15, rel=0.02)
-    assert "at design current 3.7 W turn into heat in one place" in large.findings[0].consequences
+    assert "at design current 3.75 ± 0.02 W turn into heat in one place" in large.findings[0].consequences
 
 
 def test_a_doubtful_reading_settles_nothing() -> None:

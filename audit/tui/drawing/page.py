@@ -19,6 +19,7 @@ from audit.report.phrases import (
 from audit.report.records import READING_DIGITS, circuit_line
 from audit.tui.drawing.causes import cause_lines
 from audit.tui.drawing.findings import finding_lines, gap_lines
+from audit.tui.drawing.margins import margin_lines
 from audit.tui.drawing.pieces import Line, Piece, apart, cut, piece, wrapped
 from audit.tui.drawing.profile import profile_lines, profile_of
 from audit.tui.drawing.record import record_lines
@@ -102,6 +103,8 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
     lines += [(), *plotted] if plotted else []
     for finding in result.findings:
         lines += [(), *finding_lines(finding, width, place=False)]
+    if loads := margin_lines(result, width):
+        lines += _section("loads", loads)
     rounds = round_lines(survey.index, circuit.id, width)
     lines += _section("rounds", rounds or [(piece("   nothing was read", "measure"),)])
     if survey.context is not None:

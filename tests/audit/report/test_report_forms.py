@@ -125,7 +125,7 @@ def test_causes_are_called_not_judged_only_while_they_are_not(site: Site, with_c
     words = html_words(content_of(site, with_causes, "inspector"))
     assert squeezed(CAUSES_NOT_JUDGED) not in words
     assert squeezed("bad connection run 2, 155 mΩ (151 mΩ to 159 mΩ)") in words
-    assert squeezed("joint at run 2 end, positive leg, at 4 A or more: tells the ends apart") in words
+    assert squeezed("millivolts across run 2 end, positive leg, at 4 A or more: tells the ends apart") in words
 
 
 def test_no_clock_is_read(site: Site, assessment: Assessment) -> None:

@@ -65,8 +65,9 @@ def test_the_walk_has_one_line_a_circuit_in_walking_order(site: Site, assessment
 
 
 def test_counts_are_words_with_signs(site: Site, assessment: Assessment) -> None:
-    line = next(line for line in printed(site, assessment).splitlines() if "circuits read" in line)
-    assert flat(line) == "2 of 4 circuits read 1 ! act 1 ? measure 2 … incomplete"
+    lines = printed(site, assessment).splitlines()
+    first = next(number for number, line in enumerate(lines) if "circuits read" in line)
+    assert flat(" ".join(lines[first : first + 2])) == "2 of 4 circuits read 1 ! act 1 ? measure 2 … incomplete"
 
 
 def test_cautions_stand_before_the_walk(site: Site, assessment: Assessment) -> None:

@@ -275,7 +275,10 @@ def test_the_next_act_begins_at_the_cursor() -> None:
     survey = survey_of(HUT)
     act = next_act(survey, "c2", ["c1"])
     assert act is not None
-    assert (act.circuit_id, act.words) == ("c2", "DB1-02: current, then the voltage at way, p1, p2: m measures")
+    assert (act.circuit_id, act.words) == (
+        "c2",
+        "DB1-02: a round with its current: voltages from way to p2, at 0.85 A or more, at most 19 A",
+    )
 
 
 def test_a_reading_that_the_judgement_asks_for_goes_before_all_but_danger() -> None:
@@ -284,7 +287,7 @@ def test_a_reading_that_the_judgement_asks_for_goes_before_all_but_danger() -> N
     survey = replace(survey, results={"c1": replace(survey.results["c1"], next_reading=wanted)})
     act = next_act(survey, "c1", [])
     assert act is not None
-    assert act.words == "DB1-01: joint at run 1 end, positive leg, at 4 A or more"
+    assert act.words == "DB1-01: millivolts across run 1 end, positive leg, at 4 A or more"
 
 
 def test_nothing_is_next_where_nothing_is_judged() -> None:

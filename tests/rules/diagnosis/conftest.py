@@ -42,6 +42,12 @@ def plain() -> ModuleType:
 
 
 @pytest.fixture(scope="session")
+def plain_slips() -> ModuleType:
+    """Its part about slips."""
+    return module("rules/diagnosis/plain_slips.py")
+
+
+@pytest.fixture(scope="session")
 def trial() -> ModuleType:
     """The blind trial."""
     return module("trial/trial.py")

@@ -8,7 +8,7 @@ its mean and its whole covariance, one column for each doubt, and each integral 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -38,8 +38,9 @@ class Row:
 class Plain:
     """A circuit's rows: for each doubt a column over them, made anew for each hypothesis."""
 
-    def __init__(self, case: CircuitCase) -> None:
-        self.case, self.limits = case, case.limits
+    def __init__(self, case: CircuitCase, instead: Mapping[int, float] | None = None) -> None:
+        """``instead`` gives other values to some current readings, by the id of what they show."""
+        self.case, self.limits, self.instead = case, case.limits, instead or {}
         self.points = list(case.tree.ends)
         self.rows = [row for number in range(len(case.rounds)) for row in self._rows(number)]
         self.elements = [key for point in self.points for key in both_legs(point)]
@@ -96,12 +97,16 @@ class Plain:
         currents = [
             {p: current_at(p, this, self.case.tree, self.limits) for p in self.points} for this in self.case.rounds
         ]
-        self.amps = self._through(lambda n, p: currents[n][p].value_a)
+
+        def value(shown: Shown) -> float:
+            return self.instead.get(id(shown), shown.value)
+
+        self.amps = self._through(lambda n, p: sum(t.weight * value(t.shown) for t in currents[n][p].terms))
         terms = [t for of_round in currents for c in of_round.values() for t in c.terms]
 
         def of_gain(key: str, u: float) -> Callable[[int, str], float]:
             return lambda n, p: (
-                u * sum(t.weight * t.shown.value for t in currents[n][p].terms if t.shown.gain_key == key)
+                u * sum(t.weight * value(t.shown) for t in currents[n][p].terms if t.shown.gain_key == key)
             )
 
         def of_counts(shown: Shown) -> Callable[[int, str], float]:
@@ -115,6 +120,7 @@ class Plain:
         doubts += [of_counts(shown) for shown in {id(t.shown): t.shown for t in terms}.values()]
         doubts += [of_tap(tap) for tap in {tap for row in currents for c in row.values() for tap, _ in c.shares}]
         self.doubtful_amps = [self._through(doubt) for doubt in doubts]
+        self.currents_read = list({id(t.shown): t.shown for t in terms}.values())
 
     def _meters(self) -> None:
         """Which rows each voltmeter's gain acts on, and each reading's own doubt."""
@@ -172,7 +178,7 @@ class Plain:
                     self._along(place), low + scale, high + scale
                 )
         for steps in (1, 2):
-            found["smaller conductor", str(steps)] = self.log_density(self._sizes(-steps))
+            found["smaller conductor", str(steps)] = self.log_density(self.sizes(-steps))
         for metal in ("copper-clad aluminium", "aluminium"):
             found["other metal", metal] = self.log_density(self._metal(metal))
         found["longer route", "2"] = self.log_density(2.0)
@@ -199,8 +205,8 @@ class Plain:
             return {corners[0]: ""}
         return {corner: corner[1] for corner in corners}
 
-    def posterior(self) -> dict[str, float]:
-        """Probability of each cause; slips and doubtful records are left out."""
+    def posterior(self, more: Mapping[tuple[str, str], tuple[float, float]] | None = None) -> dict[str, float]:
+        """Probability of each cause; ``more`` adds causes with a share and a log evidence (``plain_slips``)."""
         prior = self.limits.prior
         shares = {"as recorded": 1.0, "smaller conductor": 1 / 2, "longer route": 1 / 3, "series semiconductor": 1.0}
         joint: dict[tuple[str, str], float] = {}
@@ -212,6 +218,8 @@ class Plain:
             else:
                 share = shares[cause]
             joint[cause, what] = math.log(prior[cause] * share) + evidence if prior[cause] else -math.inf
+        for (cause, what), (share, evidence) in (more or {}).items():
+            joint[cause, what] = math.log(prior[cause] * share) + evidence
         best = max(joint.values())
         total = sum(math.exp(value - best) for value in joint.values())
         causes = dict.fromkeys((cause for cause, _ in joint), 0.0)
@@ -219,13 +227,15 @@ class Plain:
             causes[cause] += math.exp(value - best) / total
         return causes
 
-    def _sizes(self, steps: int) -> Floats:
-        """Factor of each element where every run is some sizes smaller."""
+    def sizes(self, steps: int) -> Floats:
+        """Factor of each element where every run is some sizes smaller (below 0) or larger."""
         factors = {}
         for point, run in self.case.tree.ends.items():
             smaller = [size for size in ladder(run.size) if area_mm2(size) < area_mm2(run.size)]
+            larger = [size for size in ladder(run.size) if area_mm2(size) > area_mm2(run.size)]
+            other = smaller[steps] if steps < 0 else larger[steps - 1]
             kind = (run.material_or_default, run.stranding_or_default)
-            factors[point] = resistance_20c_ohm_per_m(smaller[steps], *kind) / resistance_20c_ohm_per_m(run.size, *kind)
+            factors[point] = resistance_20c_ohm_per_m(other, *kind) / resistance_20c_ohm_per_m(run.size, *kind)
         return np.array([factors[point] for point, _ in self.elements])
 
     def _metal(self, metal: str) -> Floats:

@@ -13,13 +13,13 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from rules.diagnosis.quadrature import Density, integrated
-from rules.diagnosis.shape import Floats
+from rules.diagnosis.shape import Floats, Integers
 
 LOW, HIGH = math.log(3e-3), math.log(0.3)
 
 
 def found(log_density: Callable[[Floats], Floats], low: float = LOW, high: float = HIGH) -> Density:
-    return integrated(log_density, np.array([low]), np.array([high]))
+    return integrated(lambda u, _: log_density(u), np.array([low]), np.array([high]))
 
 
 def by_scipy(log_density: Callable[[Floats], Floats], peak: float, low: float, high: float) -> float:
@@ -54,7 +54,7 @@ def test_a_peak_anywhere_also_past_the_edge(centre: float, log_sd: float) -> Non
     expected = math.log((mass.cdf(HIGH) - mass.cdf(LOW)) * sd * math.sqrt(2 * math.pi) / (HIGH - LOW))
     assert float(density.log_evidence[0]) == pytest.approx(expected, abs=1e-6)
     for share in (0.025, 0.5, 0.975):
-        assert inside.cdf(float(density.quantile(share)[0])) == pytest.approx(share, abs=1e-4)
+        assert inside.cdf(float(density.cumulative().quantiles(share)[0][0])) == pytest.approx(share, abs=1e-4)
     assert float(density.mean(lambda u: u)[0]) == pytest.approx(float(inside.mean()), abs=1e-5)
 
 
@@ -73,26 +73,33 @@ def test_nothing_read_leaves_the_range_even() -> None:
     density = found(lambda u: np.zeros_like(u))
     assert float(density.log_evidence[0]) == pytest.approx(0.0, abs=1e-12)
     for share in (0.025, 0.3, 0.975):
-        assert float(density.quantile(share)[0]) == pytest.approx(LOW + share * (HIGH - LOW), abs=1e-9)
+        assert float(density.cumulative().quantiles(share)[0][0]) == pytest.approx(LOW + share * (HIGH - LOW), abs=1e-9)
     middle = np.array([(LOW + HIGH) / 2])
-    assert float(density.above(middle)[0]) == pytest.approx(0.5)
-    assert float(density.above(np.array([-np.inf]))[0]) == 1.0
-    assert float(density.above(np.array([np.inf]))[0]) == 0.0
+    assert float(density.cumulative().above(middle)[0]) == pytest.approx(0.5)
+    assert float(density.cumulative().above(np.array([-np.inf]))[0]) == 1.0
+    assert float(density.cumulative().above(np.array([np.inf]))[0]) == 0.0
 
 
 @given(edge=st.floats(-4.0, 4.0))
 def test_the_probability_above_an_edge(edge: float) -> None:
     density = found(lambda u: -0.5 * ((u + 3) / 0.02) ** 2)
     expected = float(scipy.stats.norm.sf(edge))
-    assert float(density.above(np.array([-3 + edge * 0.02]))[0]) == pytest.approx(expected, abs=2e-3)
+    assert float(density.cumulative().above(np.array([-3 + edge * 0.02]))[0]) == pytest.approx(expected, abs=2e-3)
 
 
 def test_many_at_once_are_each_alone() -> None:
     """One density of a batch does not disturb another, however differently sharp they are."""
     centre, sd = np.array([-5.0, -2.0, -3.0]), np.array([1e-3, 2.0, 0.1])
-    together = integrated(
-        lambda u: -0.5 * ((u - centre[:, None]) / sd[:, None]) ** 2, np.full(3, LOW), np.full(3, HIGH)
-    )
+
+    def log_density(u: Floats, which: Integers) -> Floats:
+        found: Floats = -0.5 * ((u - centre[which, None]) / sd[which, None]) ** 2
+        return found
+
+    together = integrated(log_density, np.full(3, LOW), np.full(3, HIGH))
     for n in range(3):
-        alone = integrated(lambda u: -0.5 * ((u - centre[n]) / sd[n]) ** 2, np.array([LOW]), np.array([HIGH]))  # noqa: B023
+        alone = found(_gaussian(float(centre[n]), float(sd[n])))
         assert float(alone.log_evidence[0]) == pytest.approx(float(together.log_evidence[n]), abs=1e-7)
+
+
+def _gaussian(centre: float, sd: float) -> Callable[[Floats], Floats]:
+    return lambda u: -0.5 * ((u - centre) / sd) ** 2

@@ -1,0 +1,247 @@
+"""
+The choice among what could be done next on one circuit, and what is said of it.
+
+The option with the largest expected fall in entropy for its minutes is taken, provided that it is conclusive within
+the bounds on current: a live reading for which no current that may flow is enough gives way to the next best, which a
+finer meter, a reading across the joint itself or a dead test then is.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from rules.diagnosis.atoms import Atoms, atoms_of
+from rules.diagnosis.block import stacked
+from rules.diagnosis.bounds import heat_level, largest_level, rounded_down, rounded_up
+from rules.diagnosis.candidates import SINGLE, Posed
+from rules.diagnosis.contrast import conclusive_level, groups_apart
+from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, REVERSED, SEVERAL, SWAPPED
+from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, LONGER, OTHER_METAL, SMALLER
+from rules.diagnosis.judge import Judged, judge_block
+from rules.diagnosis.options import (
+    AS_IT_IS,
+    DEAD_TEST,
+    LENGTH,
+    LOOK,
+    ROUND,
+    TEMPERATURE,
+    Options,
+    Way,
+    minutes_of,
+    options_of,
+)
+from rules.diagnosis.outlook import Outlook, outlook_of
+from rules.diagnosis.shape import Floats, Shape, shape_of
+from rules.limits import Limits
+
+COVERED = 0.975
+"""Upper bound of a suspected extra resistance: that of the central 95 %."""
+AS_TELLING = 0.3
+"""Share of the largest fall below which an option does not stand in for one that is not conclusive."""
+OF_LENGTH = ("length_as_loop", "metres_for_feet")
+"""Doubtful records that a tape tells."""
+OF_READINGS = (ONE_READING, CURRENT_READING, SWAPPED, REVERSED, SEVERAL)
+"""Slips that the same readings once more tell."""
+CONDUCTORS = (SMALLER, OTHER_METAL, LONGER)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Batch:
+    """Circuits of one structure, looked at together."""
+
+    posed: Sequence[Posed]
+    limits: Limits
+    shape: Shape
+    """Of the imagined problems."""
+    judged: Judged
+    atoms: Atoms
+    outlook: Outlook
+    options: Options
+    high_ohm: Floats
+    """(b, places of what was read): upper bound of the extra resistance in each. [ohm]"""
+    most_level: Floats
+    """(b,): by how much the currents of the round with the most current may be multiplied."""
+
+
+def looked_at(posed: Sequence[Posed], limits: Limits) -> Batch:
+    """Everything that could be done next on circuits of one structure."""
+    judged = judge_block(shape_of(posed[0].read.signature), [each.read for each in posed], limits)
+    shape = shape_of(posed[0].imagined.signature)
+    block = stacked(shape, [each.imagined for each in posed], limits)
+    atoms = atoms_of(judged, block)
+    outlook = outlook_of(judged, block, atoms, posed)
+    high = np.exp(judged.density.cumulative().quantiles(COVERED)[0][:, : len(judged.block.shape.places)])
+    most = np.array([_most_level(each, judged, number, high[number], limits) for number, each in enumerate(posed)])
+    options = options_of(posed, block, atoms, outlook, most, limits)
+    return Batch(posed, limits, shape, judged, atoms, outlook, options, high, most)
+
+
+def _most_level(posed: Posed, judged: Judged, number: int, high_ohm: Floats, limits: Limits) -> float:
+    """The smallest over the ratings and the heat in what is suspected."""
+    amps, names = posed.amps, posed.imagined.names
+    of_record = largest_level(posed.case, {names[branch]: ampere for branch, ampere in amps.items()})
+    places = judged.block.shape.places
+    share = judged.posterior[number, judged.of_cause(BAD_CONNECTION)]
+    least = min(limits["next_reading.suspected_at"], float(share.max(initial=0.0)))
+    suspects = [(float(high_ohm[n]), amps.get(places[n].branch, 0.0)) for n in np.flatnonzero(share >= least)]
+    return min(of_record, heat_level(suspects, limits["heat.load_test_w"]))
+
+
+@dataclass(frozen=True, slots=True)
+class Choice:
+    """One option with what it tells apart and the current that it takes."""
+
+    option: int
+    way: Way
+    row: int
+    """Of the imagined problem for a single reading, among the candidates of one row for a length or temperature, else -1."""
+    pair: tuple[int, int] | None
+    """Groups; ``None`` where there is one alone."""
+    asked_a: float = 0.0
+    """The least current at which the reading is conclusive; 0 where none is asked for, infinite where none is enough."""
+    reached_a: float = math.inf
+    """What is reached where it is taken in this way."""
+    most_a: float = math.inf
+    """That may flow for it; infinite where no bound is known."""
+    slip: int | None = None
+    """Hypothesis of a doubtful reading or record that is more probable than all else."""
+
+    @property
+    def is_conclusive(self) -> bool:
+        """The current that it takes is reached, and may flow."""
+        return self.asked_a <= min(self.reached_a, self.most_a)
+
+    @property
+    def current_a(self) -> float:
+        """To be asked for; 0 for none."""
+        return min(self.asked_a, self.reached_a, self.most_a) if self.way.takes_current else 0.0
+
+
+def chosen(batch: Batch, number: int) -> Choice | None:
+    """What to do next on one circuit of a batch; ``None`` where nothing is left to settle, or nothing can be done."""
+    if _is_settled(batch, number):
+        return None
+    # equal ones keep their order, whatever else goes through the arrays with them
+    options, score = batch.options, batch.options.score[number].round(9)
+    order = [int(option) for option in np.argsort(-score, kind="stable") if options.can_be_done[number, option]]
+    slip = _slip(batch, number)
+    forced = [option for option in order if _answers(batch, slip, options.ways[option])]
+    if forced:
+        return replace(_choice(batch, number, forced[0]), slip=slip)
+    least = AS_TELLING * float(options.fall[number].max(initial=0.0))
+    telling = [option for option in order if options.fall[number, option] >= least]
+    first: Choice | None = None
+    for option in telling:
+        tried = _choice(batch, number, option)
+        if tried.is_conclusive:
+            break
+        first = first or tried
+    else:
+        return first  # nothing is conclusive: the most telling, at the most current that may flow
+    if options.fall[number, option] >= batch.limits["next_reading.least_fall"] or not _conductors_lead(batch, number):
+        return tried
+    return Choice(-1, Way(LOOK, AS_IT_IS, minutes_of(LOOK, AS_IT_IS, batch.limits)), -1, None)
+
+
+def _conductors_lead(batch: Batch, number: int) -> bool:
+    """Size, metal or length is more probable than all else."""
+    ours = [group.cause in CONDUCTORS for group in batch.atoms.groups]
+    return float(batch.atoms.shares[number, ours].sum()) > 0.5
+
+
+def _is_settled(batch: Batch, number: int) -> bool:
+    """One cause in one place is probable enough, and no heat is left open beside it."""
+    shares, limits = batch.atoms.shares[number], batch.limits
+    best = int(shares.argmax())
+    cause = batch.atoms.groups[best].cause
+    if shares[best] < limits["next_reading.settled_at"] or cause == DOUBTFUL:
+        return False
+    diagnosis = batch.posed[number].case.diagnosis
+    places = diagnosis.causes if diagnosis is not None and cause == AS_RECORDED else ()
+    return all((place.heat or 0.0) < limits["decision.sound_heat_share"] for place in places)
+
+
+def _choice(batch: Batch, number: int, option: int) -> Choice:
+    """What an option tells apart, and the current that it takes."""
+    options, outlook, atoms = batch.options, batch.outlook, batch.atoms
+    way, level, row = options.ways[option], float(options.level[number, option]), int(options.row[number, option])
+    posed, amps = batch.posed[number], batch.posed[number].amps
+    weight, group = atoms.weight[number], atoms.group[number]
+    if way.kind == ROUND:
+        mean = outlook.again_steady[number] + level * outlook.again_mean[number]
+        covariance = outlook.again_fixed[number] + level**2 * outlook.again_covariance[number]
+        pair = groups_apart(weight, group, mean, covariance)
+        ampere = max(abs(a) for a in amps.values())
+        most_a = rounded_down(batch.most_level[number] * ampere)
+        asked_a = min(rounded_down(level * ampere), most_a)
+        return Choice(option, way, -1, pair, asked_a, most_a=most_a)
+    counts = options.counts[number, option] + outlook.clamp[number, row]
+    mean = outlook.steady[number, row] + level * outlook.mean[number, row]
+    variance = counts + level**2 * outlook.variance[number, row]
+    pair = groups_apart(weight, group, mean[:, None], variance[:, None, None])
+    if way.kind in (LENGTH, TEMPERATURE):
+        return Choice(option, way, row, pair)
+    at = posed.rows_of(SINGLE)[row]
+    needed = _conclusive(batch, number, row, counts, pair)
+    if way.how == DEAD_TEST:
+        return Choice(option, way, at, pair, 0.0 if needed <= level else math.inf)
+    ampere = abs(amps[posed.imagined.signature.rows[at].path[0][0]])
+    # what a semiconductor loses shows at any current, but a reading needs one
+    needed = needed or batch.limits["next_reading.lower_share"] * level
+    most = min(batch.most_level[number], _heat_there(batch, number, at, amps))
+    # an asked-for current has two digits; the load of the day is still reached if it rounds up to a little more
+    reached_a = rounded_up(level * ampere)
+    return Choice(option, way, at, pair, rounded_up(needed * ampere), reached_a, rounded_down(most * ampere))
+
+
+def _conclusive(batch: Batch, number: int, row: int, counts: Floats, pair: tuple[int, int] | None) -> float:
+    """Level of current at which a single reading puts two groups far enough apart."""
+    if pair is None:
+        return math.inf
+    outlook, weight, group = batch.outlook, batch.atoms.weight[number], batch.atoms.group[number]
+    figures = []
+    for name in pair:
+        inside = np.flatnonzero(group == name)
+        share = weight[inside] / weight[inside].sum()
+        mean, steady = (float(part[number, row, inside] @ share) for part in (outlook.mean, outlook.steady))
+        # what two sizes of one cause say differently is no doubt of the reading
+        figures.append(
+            (mean, steady, float(outlook.variance[number, row, inside].min()), float(counts[inside] @ share))
+        )
+    (mean, steady, variance, fixed), (mean_2, steady_2, variance_2, fixed_2) = figures
+    apart = batch.limits["next_reading.apart"]
+    return conclusive_level(mean - mean_2, steady - steady_2, (variance + variance_2) / 2, (fixed + fixed_2) / 2, apart)
+
+
+def _heat_there(batch: Batch, number: int, row: int, amps: dict[int, float]) -> float:
+    """Level of current at which what may be wrong in the joint that is read across gives the profile's heat."""
+    path, part = batch.shape.signature.rows[row].path, batch.shape.signature.rows[row].part
+    suspects = [
+        (float(batch.high_ohm[number, n]), amps[place.branch])
+        for n, place in enumerate(batch.judged.block.shape.places)
+        if len(path) == 1 and place.branch == path[0][0] and (part in place.members or len(place.members) == 1)
+    ]
+    return heat_level(suspects, batch.limits["heat.load_test_w"])
+
+
+def _slip(batch: Batch, number: int) -> int | None:
+    """The most probable slip or doubtful record, where that is more probable than all else; ``None`` where it is not."""
+    posterior = batch.judged.posterior[number]
+    doubtful = batch.judged.of_cause(DOUBTFUL)
+    if posterior[doubtful].sum() <= 0.5:
+        return None
+    return max(doubtful, key=lambda n: float(posterior[n]))
+
+
+def _answers(batch: Batch, slip: int | None, way: Way) -> bool:
+    """Whether a doubtful reading or record is settled by reading that round again, or by a tape."""
+    if slip is None:
+        return False
+    what = batch.judged.hypotheses.names[slip].what
+    if what in OF_LENGTH:
+        return way.kind == LENGTH
+    return what in OF_READINGS and way.kind == ROUND and way.how == AS_IT_IS

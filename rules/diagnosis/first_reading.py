@@ -1,0 +1,117 @@
+"""
+What to read or find first, where the diagnosis has nothing to go by: nothing was read, too little, or the record lacks
+a length, a size, a load or the source's voltage.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import replace
+
+from rules.assessment import NextReading
+from rules.calc.doubt import each_u
+from rules.case import CircuitCase
+from rules.checks.rc01_record_incomplete import gaps_of
+from rules.diagnosis.bounds import largest_level, rounded_down, rounded_up
+from rules.diagnosis.candidates import POINT, Meters, shown_by, voltmeter_of
+from rules.diagnosis.next_cautions import caution_words
+from rules.diagnosis.options import AS_IT_IS, FINER, LENGTH, LOOK, ROUND, Way, minutes_of
+from rules.diagnosis.rows import extra_scale
+from rules.record import Figure, Run
+from rules.units import show
+
+
+def missing_record(case: CircuitCase) -> NextReading | None:
+    """
+    How to find what the record lacks; ``None`` where the drop can be computed.
+
+    A length is taped; a size is read off the sheath, what a load draws by the clamp, a source by the voltmeter.
+    """
+    gaps = gaps_of(case)
+    if not gaps:
+        return None
+    where, why = gaps[0]
+    run = next((run for run in case.runs if run.name == where), None)
+    if where == "runs" or (run is not None and run.one_way_length_m is None):
+        size = " and read the size off the sheath" if run is None or not run.size else ""
+        return _found(
+            case, LENGTH, NextReading("length", at=run.name if run else "", why=f"{why}: tape the route{size}")
+        )
+    if run is not None:
+        return _found(case, LOOK, NextReading("reading", at=where, why=f"{why}: read it off the sheath"))
+    if where == "source":
+        why += ": find the busbar that feeds it and read its voltage under load"
+        return _found(case, POINT, NextReading("reading", "voltage", "bus", leg="both", why=why))
+    arriving = case.tree.ends.get(where)
+    at = arriving.name if arriving is not None else "way"
+    why += ": read the current with everything on, or the load's plate"
+    return _found(case, POINT, NextReading("reading", "current", at, why=why))
+
+
+def _found(case: CircuitCase, kind: str, reading: NextReading) -> NextReading:
+    """With its cautions and minutes."""
+    way = Way(kind, AS_IT_IS, minutes_of(kind, AS_IT_IS, case.limits))
+    return replace(reading, caution=caution_words(case, way), minutes=way.minutes)
+
+
+def first_round(case: CircuitCase, meters: Meters) -> NextReading | None:
+    """
+    The round to read where no reading says anything yet; ``None`` where no run leads anywhere.
+
+    Voltages at the circuit's start and at the load that loses most by the record, with the current, at a load at which
+    a middling bad connection, or one that gives the profile's heat, would stand out of the meter's counts.
+    """
+    end = _far_end(case)
+    if not end:
+        return None
+    limits = case.limits
+    path = case.tree.path("way", end)
+    last = case.tree.ends[path[-1]]
+    middling = math.sqrt(limits["bad_connection.low_ohm"] * limits["bad_connection.high_ohm"]) * extra_scale(last.size)
+    design_a = case.largest_current_a.get(path[-1], 0.0)
+    suspected = min(middling, limits["heat.limit_w"] / design_a**2) if design_a else middling
+    counts_v = shown_by(case, "voltage", case.nominal_v or 0.0, voltmeter_of(case, meters)).each_u
+    most = _most_current(case, case.tree.ends[path[0]])
+    needed, how = _needed(case, suspected, counts_v), AS_IT_IS
+    if needed > most:
+        finer_v = each_u(limits["finer_meter.voltage_counts"], limits["finer_meter.voltage_resolution"])
+        needed, how = min(_needed(case, suspected, min(finer_v, counts_v)), most), FINER
+    way = Way(ROUND, how, minutes_of(ROUND, how, limits))
+    start = "bus" if case.tree.device_ohm else "way"
+    told = f"a bad connection of {show(suspected, 'ohm', digits=2)} stands out at {show(needed, 'A')}"
+    untested = f"not tested: {case.circuit.not_tested}" if case.circuit.not_tested else "nothing was read"
+    reason = case.drop_gap if case.visit else untested
+    return NextReading(
+        what=FINER if how == FINER else "round",
+        quantity="voltage",
+        at=start,
+        to=end,
+        leg="both",
+        current_at_least=Figure(needed, "A"),
+        why=f"{reason}: voltages at {start} and {end} with the current, in one round; {told}",
+        caution=caution_words(case, way),
+        current_at_most=None if math.isinf(most) else Figure(most, "A"),
+        minutes=way.minutes,
+    )
+
+
+def _far_end(case: CircuitCase) -> str:
+    """The load's point that loses most by the record, else the last end of a run; empty for none."""
+    reached = [point for point in case.loads if point.load.point in case.tree.ends and not math.isnan(point.drop_v)]
+    if reached:
+        return max(reached, key=lambda point: point.drop_v).load.point
+    return list(case.tree.ends)[-1] if case.tree.ends else ""
+
+
+def _needed(case: CircuitCase, ohm: float, counts_v: float) -> float:
+    """The current at which an extra resistance stands out of the counts of two voltages. [A]"""
+    return rounded_up(case.limits["next_reading.apart"] * math.sqrt(2) * counts_v / ohm)
+
+
+def _most_current(case: CircuitCase, first: Run) -> float:
+    """The most current that may flow in a circuit's first run, all others in proportion to their design currents. [A]"""
+    design = {run.name: case.tree.design_current_a.get(point) for point, run in case.tree.ends.items()}
+    known = {name: ampere for name, ampere in design.items() if ampere}
+    if first.name not in known:  # as if one ampere ran through the first run alone
+        known = {first.name: 1.0}
+    return rounded_down(largest_level(case, known) * abs(known[first.name]))

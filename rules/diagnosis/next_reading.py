@@ -1,0 +1,72 @@
+"""
+The next reading: the one with the largest expected fall in entropy of the causes for its minutes.
+
+``next_readings`` is what the rest of ``rules`` calls, for circuits that are not settled. Where the readings pose a
+problem to the diagnosis the choice follows from its model (``candidates``, ``atoms``, ``outlook``, ``options``,
+``choice``); where nothing was read, or the record lacks something, from what is missing (``first_reading``).
+"""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Sequence
+
+from rules.assessment import NextReading
+from rules.case import CircuitCase
+from rules.diagnosis.candidates import Meters, Posed, posed
+from rules.diagnosis.choice import chosen, looked_at
+from rules.diagnosis.first_reading import first_round, missing_record
+from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, SEMICONDUCTOR
+from rules.diagnosis.problem import Signature
+from rules.diagnosis.spoken import spoken
+
+TOGETHER = 24
+"""Most circuits that go through the arrays together: memory grows with this, not with the site."""
+
+
+def next_readings(cases: Sequence[CircuitCase]) -> list[NextReading | None]:
+    """
+    What to read next on each of some circuits.
+
+    Parameters
+    ----------
+    cases : sequence of CircuitCase
+        Of one site; those that are not settled, since each costs some milliseconds.
+
+    Returns
+    -------
+    list of NextReading or None
+        ``None`` where nothing is left to settle, or nothing can be read.
+    """
+    found: dict[int, NextReading | None] = {}
+    looked: dict[int, Posed] = {}
+    alike: dict[tuple[Signature, Signature], list[int]] = defaultdict(list)
+    meters = Meters.of(cases[0].context.site) if cases else Meters()
+    for number, case in enumerate(cases):
+        found[number] = missing_record(case)
+        if found[number] is None and not _is_settled(case):
+            this = posed(case, meters)
+            if this is None:
+                # a drop that was compared is not read again for causes that cannot be weighed, as over a shared return
+                found[number] = first_round(case, meters) if case.drop is None else None
+            else:
+                looked[number] = this
+                alike[this.read.signature, this.imagined.signature].append(number)
+    for group in alike.values():
+        for start in range(0, len(group), TOGETHER):
+            some = group[start : start + TOGETHER]
+            batch = looked_at([looked[number] for number in some], cases[some[0]].limits)
+            for place, number in enumerate(some):
+                choice = chosen(batch, place)
+                found[number] = None if choice is None else spoken(batch, place, choice)
+    return [found[number] for number in range(len(cases))]
+
+
+def _is_settled(case: CircuitCase) -> bool:
+    """Settled at first sight: a cause of the whole circuit is probable enough, and no heat is left open beside it."""
+    causes = case.diagnosis.causes if case.diagnosis is not None else ()
+    if not causes or causes[0].probability < case.limits["next_reading.settled_at"]:
+        return False
+    if causes[0].cause == AS_RECORDED:
+        return all((place.heat or 0.0) < case.limits["decision.sound_heat_share"] for place in causes)
+    return causes[0].cause not in (BAD_CONNECTION, SEMICONDUCTOR, DOUBTFUL)

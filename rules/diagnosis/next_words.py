@@ -1,0 +1,97 @@
+"""A next reading in words that a surveyor can act on: what it tells from what."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from rules.diagnosis.candidates import JOINT, LEG, POINT
+from rules.diagnosis.hypotheses import (
+    AS_RECORDED,
+    BAD_CONNECTION,
+    DOUBTFUL,
+    LONGER,
+    OTHER_METAL,
+    SEMICONDUCTOR,
+    SMALLER,
+)
+from rules.diagnosis.options import ADDED, DEAD_TEST, FINER, LESS, MORE, Way
+from rules.diagnosis.problem import Observation
+
+CAUSE_WORDS = {
+    AS_RECORDED: "a circuit as recorded",
+    BAD_CONNECTION: "a bad connection",
+    SEMICONDUCTOR: "a semiconductor",
+    SMALLER: "a smaller conductor",
+    OTHER_METAL: "another metal",
+    LONGER: "a longer route",
+    DOUBTFUL: "a doubtful reading or record",
+}
+"""Causes as a sentence names them."""
+BESIDE_WORDS = {
+    FINER: "; the meter at hand is too coarse for it",
+    DEAD_TEST: "; live, no current that may flow is enough",
+    LESS: "; a second round at less current, at which a semiconductor loses as much",
+    MORE: "; at more current than today",
+    ADDED: "; with a load of your own",
+}
+"""What is to be known of how a reading is taken."""
+
+
+@dataclass(frozen=True, slots=True)
+class Said:
+    """A cause in one place, beside the reading that is to tell it from another."""
+
+    cause: str
+    branch: str = ""
+    """``run 2``; empty for the whole circuit."""
+    touched: bool = False
+    """It lies in what is read across."""
+
+
+def why_words(way: Way, at: Observation | None, pair: Sequence[Said], halves: bool, slip: Observation | None) -> str:
+    """
+    What a reading tells, as one sentence part.
+
+    Parameters
+    ----------
+    at : Observation or None
+        The single reading; ``None`` for a round, a length, a temperature.
+    pair : sequence of Said
+        The two causes that it tells apart, the more probable first; empty where there is one alone.
+    halves : bool
+        It parts many suspected places about evenly.
+    slip : Observation or None
+        The reading that is doubtful, where one is.
+
+    Examples
+    --------
+    >>> at = Observation("joint", "run 2 end", "", "positive", "", ())
+    >>> pair = [Said("longer route"), Said("bad connection", "run 2", True)]
+    >>> why_words(Way("joint", "as it is", 5), at, pair, False, None)
+    'tells a bad connection there from a longer route'
+    """
+    if slip is not None:
+        return f"the {slip.words} does not fit"
+    ordered = sorted(pair, key=lambda said: not said.touched)
+    told = " from ".join(_words(said, way, at, ordered[0]) for said in ordered)
+    told = f"tells {told}" if told else "tells most for its effort"
+    if halves:
+        told = f"measure the middle first: {told}" if way.kind == POINT else f"{told}, and halves the suspected joints"
+    return told + BESIDE_WORDS.get(way.how, "")
+
+
+def _words(said: Said, way: Way, at: Observation | None, first: Said) -> str:
+    """One of two causes."""
+    if at is None or not said.branch:
+        return CAUSE_WORDS[said.cause] + (f" in {said.branch}" if said.branch else "")
+    name = CAUSE_WORDS[said.cause]
+    if said.touched:
+        return name + {JOINT: " there", LEG: " in this leg", POINT: f" before {at.to}"}[way.kind]
+    if first is not said and first.cause == said.cause:
+        name = "one"
+    if way.kind == LEG:
+        return f"{name} in the other leg" if said.branch == first.branch else f"{name} in {said.branch}"
+    if way.kind == POINT:
+        return f"{name} behind {at.to}"
+    return f"{name} elsewhere in {said.branch}" if said.branch == first.branch else f"{name} in {said.branch}"
