@@ -12,11 +12,11 @@ from dataclasses import replace
 from importlib.metadata import version
 
 from rules.assessment import Assessment, CircuitResult, Finding, LoadMargin, NotJudged, PointVoltage, Severity, Status
-from rules.case import CircuitCase, Context, case_of, measured_of, posed_by, unused_readings
+from rules.case import CircuitCase, Context, case_of, measured_of, posed_by, ties_by, unused_readings
 from rules.cautions import cautions_of
 from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
-from rules.diagnosis.diagnose import diagnose
+from rules.diagnosis.learning import diagnose_told, learn
 from rules.diagnosis.next_reading import next_readings
 from rules.index import Index
 from rules.limits import Limits
@@ -79,7 +79,7 @@ def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], 
 
 
 def prepare(site: Site, limits: Limits) -> Context:
-    """Index, resistances, network, readings and diagnoses of a site: what circuits are judged in."""
+    """Index, resistances, network, readings, what they teach, and diagnoses of a site: what circuits are judged in."""
     index = Index(site)
     known = figures(site.runs, site, limits)
     context = Context(
@@ -94,10 +94,16 @@ def prepare(site: Site, limits: Limits) -> Context:
     measured = {circuit.id: measured_of(context, circuit) for circuit in site.circuits}
     posed = {id_: posed_by(context, side) for id_, side in measured.items()}
     some = {id_: problem for id_, problem in posed.items() if problem is not None}
+    diagnoses = dict(zip(some, diagnose_told(list(some.values()), limits), strict=True))
+    tied = {id_: (problem, ties_by(context, measured[id_], problem)) for id_, problem in some.items()}
+    taught = learn(tied, diagnoses, limits)
+    told = {id_: taught.told(id_, *both) for id_, both in tied.items() if taught.touches(both[1])}
     return replace(
         context,
         measured=measured,
-        diagnoses=dict(zip(some, diagnose(list(some.values()), limits), strict=True)),
+        diagnoses=diagnoses | dict(zip(told, diagnose_told(list(told.values()), limits), strict=True)),
+        taught=taught,
+        common={id_: problem.common.relative for id_, problem in told.items() if problem.common is not None},
         unused={id_: names for id_, side in measured.items() if (names := unused_readings(side, posed[id_]))},
     )
 

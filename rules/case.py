@@ -13,7 +13,10 @@ from rules.calc.doubt import total
 from rules.calc.network import Solved
 from rules.consistency import Problem
 from rules.diagnosis.budget import Current
-from rules.diagnosis.diagnose import Diagnosis, diagnose
+from rules.diagnosis.common_error import Taught
+from rules.diagnosis.diagnose import Diagnosis
+from rules.diagnosis.habits import Tie, ties_of
+from rules.diagnosis.learning import diagnose_told
 from rules.diagnosis.problem import Problem as Posed
 from rules.diagnosis.rows import problem_of
 from rules.errors import MissingData
@@ -49,6 +52,10 @@ class Context:
     """By circuit id: what was read on the visit that it is judged on."""
     diagnoses: Mapping[str, Diagnosis] = field(default_factory=dict)
     """By circuit id, of those whose readings say something."""
+    taught: Taught = field(default_factory=Taught)
+    """What meters and habits that circuits share have taught."""
+    common: Mapping[str, Figure] = field(default_factory=dict)
+    """By circuit id: error that a circuit shares with others, relative to its computed drops; none where none was found."""
     unused: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     """By circuit id: readings that nothing makes use of."""
 
@@ -113,6 +120,8 @@ class CircuitCase:
     """By the point at which a branch arrives (``way``: the device), at design and the voltage that makes it largest."""
     unused: tuple[str, ...] = ()
     """Readings of the visit that nothing here makes use of."""
+    common: Figure | None = None
+    """Error that its readings share with those of other circuits, relative to the computed drop; ``None`` where none was found."""
 
     @property
     def tag(self) -> str:
@@ -134,10 +143,14 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
     if known is None:
         measured = measured_of(context, circuit, readings)
         problem = posed_by(context, measured)
-        diagnosis = diagnose([problem], limits)[0] if problem is not None else None
         unused = unused_readings(measured, problem)
+        if problem is not None:
+            problem = context.taught.told(circuit.id, problem, ties_by(context, measured, problem))
+        diagnosis = diagnose_told([problem], limits)[0] if problem is not None else None
+        common = problem.common.relative if problem is not None and problem.common is not None else None
     else:
         measured, diagnosis = known, context.diagnoses.get(circuit.id)
+        common = context.common.get(circuit.id)
         unused = context.unused.get(circuit.id, ())
     tree, rounds, nominal = measured.tree, measured.rounds, nominal_v(circuit, index)
     drop, gap = None, "nothing was read" if not measured.readings else ""
@@ -167,6 +180,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         worst=_worst(context, circuit, diagnosis),
         largest_current_a=_largest_currents(context, circuit),
         unused=unused,
+        common=common,
     )
 
 
@@ -191,6 +205,11 @@ def posed_by(context: Context, measured: Measured) -> Posed | None:
     hot_ohm = {point: limits["heat.limit_w"] / a**2 if a else math.inf for point, a in amps.items()}
     return_leg = _return_leg(circuit, context.index)
     return problem_of(measured.rounds, measured.tree, limits, hot_ohm, return_leg, nominal_v(circuit, context.index))
+
+
+def ties_by(context: Context, measured: Measured, problem: Posed) -> tuple[Tie, ...]:
+    """What ties a circuit's problem to meters and habits that others share."""
+    return ties_of(problem, {run.id: run for run in measured.tree.runs}, measured.readings, context.index)
 
 
 def unused_readings(measured: Measured, problem: Posed | None) -> tuple[str, ...]:

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
-from rules.assessment import Place
+from rules.assessment import Drop, Place
 from rules.case import CircuitCase
 from rules.diagnosis.hypotheses import (
     AS_RECORDED,
@@ -16,6 +17,7 @@ from rules.diagnosis.hypotheses import (
     SMALLER,
 )
 from rules.limits import Limits
+from rules.record import Figure
 from rules.units import show
 
 FAMILIES = ((BAD_CONNECTION,), (SEMICONDUCTOR,), (SMALLER, OTHER_METAL, LONGER))
@@ -139,7 +141,32 @@ def unsound(case: CircuitCase) -> str:
 def agrees(case: CircuitCase) -> str:
     """Why a circuit is sound."""
     causes = case.diagnosis.causes if case.diagnosis is not None else ()
-    return f"the readings agree with the record: probability {probability_words(_as_recorded(causes))}"
+    alike = f"; {common_words(case.common)}" if case.common is not None else ""
+    return f"the readings agree with the record: probability {probability_words(_as_recorded(causes))}{alike}"
+
+
+def common_words(common: Figure) -> str:
+    """
+    An error that circuits share, as it is carried in one of them.
+
+    >>> common_words(Figure(-0.062, "1", 0.005))
+    'judged with the 6.2 ± 0.5 % less that circuits which share its meters and habits lose alike (HB01)'
+    """
+    return (
+        f"judged with the {show(abs(common.value), '1', common.u)} {'more' if common.value > 0 else 'less'} "
+        "that circuits which share its meters and habits lose alike (HB01)"
+    )
+
+
+def beyond_common(drop: Drop, common: Figure | None) -> Figure:
+    """Excess of a drop over what is computed with the error that circuits share; the excess as it is where there is none."""
+    if common is None:
+        return drop.excess
+    return Figure(
+        drop.excess.value - common.value * drop.computed.value,
+        "V",
+        math.hypot(drop.excess.u or 0.0, (common.u or 0.0) * drop.computed.value),
+    )
 
 
 def cause_words(place: Place) -> str:

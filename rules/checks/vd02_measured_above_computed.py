@@ -12,7 +12,16 @@ from rules.limits import Limits
 from rules.record import Figure
 from rules.rule import rule
 from rules.units import show
-from rules.verdict import MOST_SAID, TOLD, Claim, cause_words, claimed, doubtful, probability_words
+from rules.verdict import (
+    MOST_SAID,
+    TOLD,
+    Claim,
+    cause_words,
+    claimed,
+    common_words,
+    doubtful,
+    probability_words,
+)
 
 CONDUCTOR = (
     "Look at the conductor at both ends: print on the sheath, size by gauge, a scraped cut end for its metal; tape or pulse its "
@@ -173,6 +182,8 @@ def _ohm_words(joint: Place) -> str:
 
 
 def _remarks(case: CircuitCase) -> Iterator[str]:
+    if case.common is not None:
+        yield common_words(case.common)
     if case.drop is None:
         return
     this = next(r for r in case.rounds if r.name == case.drop.round)

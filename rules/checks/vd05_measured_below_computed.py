@@ -7,7 +7,7 @@ from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
 from rules.rule import rule
 from rules.units import show
-from rules.verdict import cause_words, doubtful
+from rules.verdict import beyond_common, cause_words, common_words, doubtful
 
 
 @rule(
@@ -33,7 +33,8 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
     drop = case.drop
     if drop is None:
         return
-    if probability_above(-drop.excess.value, 0.0, drop.excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
+    beyond = beyond_common(drop, case.common)
+    if probability_above(-beyond.value, 0.0, beyond.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return
     slip = doubtful(case.diagnosis.causes) if case.diagnosis is not None else None
     yield measured_below_computed.finding(
@@ -43,7 +44,8 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
         f"{show(drop.computed.value, 'V', drop.computed.u)} computed from {drop.start} to {drop.end} at "
         f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}: "
         f"{show(-drop.excess.value, 'V', drop.excess.u)} too little"
-        + (f"; probably {cause_words(slip)}" if slip else ""),
+        + (f"; probably {cause_words(slip)}" if slip else "")
+        + (f"; {common_words(case.common)}" if case.common is not None else ""),
         numbers={
             "measured": drop.measured,
             "computed": drop.computed,

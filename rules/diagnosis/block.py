@@ -70,6 +70,12 @@ class Block:
     """(b, n, n): covariance of what each observation has of its own."""
     own: Floats
     """(b, n, n): with terminations and device, at the currents read."""
+    common_rows: Floats
+    """(b, c, n): relative doubt of each row's readings through each column of ``Common``, the last c sources."""
+    common_fixed: Floats
+    """(b, c, n): the same of rows whose observations have several gains, as it is."""
+    common_ohm: Floats
+    """(b, c, e of conductors): relative doubt of conductors through each column."""
 
     def __len__(self) -> int:
         return len(self.shown)
@@ -84,11 +90,23 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
     size, branches = len(problems), len(shape.signature.branches)
     value, variance, gain_u = column("value"), column("variance"), column("gain_u")
     amps, error = column("amps"), column("error_a")
+    columns = shape.signature.common
+    common = [problem.common for problem in problems if problem.common is not None]
+
+    def of_common(name: str) -> Floats:
+        return np.array([getattr(one, name) for one in common], dtype=float)
+
+    if columns:
+        value = value / (1 + of_common("gain")[:, list(shape.signature.gain_of)])
+        amps = amps + of_common("amps")
     carried = np.zeros((size, 1 + shape.signature.sources, shape.signature.states + 1, branches))
     carried[:, 0, shape.signature.states] = 1.0  # a dead test: the drop over one ampere
     carried[:, 0, shape.slot_state, shape.slot_branch] = amps
     errors = (1 + shape.error_source, shape.slot_state[shape.error_slot], shape.slot_branch[shape.error_slot])
     carried[:, *errors] = error
+    if columns:
+        ways = (slice(1 + shape.signature.sources - columns, None), shape.slot_state, shape.slot_branch)
+        carried[:, *ways] = of_common("amps_columns")
     carried = carried[:, :, shape.row_state][:, :, :, shape.element_branch] * shape.coefficient
     amps_u = np.zeros_like(amps)
     for entry, slot in enumerate(shape.error_slot):
@@ -106,6 +124,9 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
 
     ohm = of_legs("ohm")
     slope = of_legs("slope_ohm_per_k") * np.repeat(of_branches("temperature_u_k"), 2, axis=1)
+    if columns:
+        factor = np.repeat(1 + of_common("ohm"), 2, axis=1)
+        ohm, slope = ohm * factor, slope * factor
     other = column("alternatives").reshape(size, branches, -1, 2).transpose(0, 2, 1, 3).reshape(size, -1, 2 * branches)
     poles = ohm @ shape.pole_of.T
     terminations_u = np.sqrt(of_legs("joint_variance") @ shape.termination_of.T)
@@ -116,6 +137,15 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
     fixed = np.zeros((size, shape.signature.gains, shape.rows))
     if shape.gain_parts is not None:
         fixed = gain_u[:, :, None] * np.einsum("gno,bo->bgn", shape.gain_parts, value)
+    conductors = shape.element_branch[shape.conductors]
+    common_rows, common_fixed = np.zeros((2, size, columns, shape.rows))
+    common_ohm = np.zeros((size, columns, len(conductors)))
+    if columns:
+        gains = of_common("gain_columns")
+        common_rows = gains @ shape.gain_rows
+        common_ohm = (of_common("ohm_columns") / (1 + of_common("ohm"))[:, None])[:, :, conductors]
+        if shape.gain_parts is not None:
+            common_fixed = gains @ np.einsum("gno,bo->bgn", shape.gain_parts, value)
     return Block(
         shape=shape,
         limits=limits,
@@ -142,6 +172,9 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
         reading_gain_u=column("reading_gain_u"),
         counts=counts,
         own=own,
+        common_rows=common_rows,
+        common_fixed=common_fixed,
+        common_ohm=common_ohm,
     )
 
 
@@ -223,6 +256,8 @@ def model_of(block: Block, conductor: Floats, slope: Floats, carried: Floats | N
     flat = carried[..., :split].reshape(size, planes * rows, split)
     of_conductors = (conductor @ np.swapaxes(flat, 1, 2)).reshape(size, -1, planes, rows)
     amps = carried[:, None, 0, :, :split]
+    if shape.signature.common:
+        of_others, of_conductors = _with_common(block, of_others, of_conductors, conductor, amps)
     of_elements = amps * conductor[:, :, None]
     lengths = (of_elements @ shape.run_of.T) * block.length_u[:, None, None]
     alike = [(amps @ slope[..., None])[..., 0], block.limits["resistance_doubt.relative"] * of_conductors[:, :, 0]]
@@ -237,6 +272,18 @@ def model_of(block: Block, conductor: Floats, slope: Floats, carried: Floats | N
         conductor_own=columns @ np.swapaxes(columns, -1, -2),
         conductor_columns=columns,
     )
+
+
+def _with_common(
+    block: Block, of_others: Floats, of_conductors: Floats, conductor: Floats, amps: Floats
+) -> tuple[Floats, Floats]:
+    """Both with what a column of ``Common`` does through readings and conductors, beside what it does through currents."""
+    last = slice(-block.shape.signature.common, None)
+    of_others, of_conductors = of_others.copy(), of_conductors.copy()
+    of_others[:, :, last] += block.common_rows[:, None] * of_others[:, :, :1] + block.common_fixed[:, None]
+    doubtful = (conductor[:, :, None] * block.common_ohm[:, None]) @ np.swapaxes(amps, -1, -2)
+    of_conductors[:, :, last] += block.common_rows[:, None] * of_conductors[:, :, :1] + doubtful
+    return of_others, of_conductors
 
 
 def _columns(*rows: Floats) -> Floats:

@@ -74,6 +74,8 @@ def moved(block: Block) -> tuple[Floats, Floats]:
     gains = block.gain_u[:, None, :, None] * shape.gain_rows * direction[:, :, None]
     sources = np.zeros((*direction.shape[:2], shape.signature.sources, shape.rows))
     sources[:, : len(shape.places)] = through[:, 1:].transpose(0, 3, 1, 2)
+    if shape.signature.common:
+        sources[:, :, -shape.signature.common :] += block.common_rows[:, None] * direction[:, :, None]
     return direction, np.concatenate([gains, sources], axis=2)
 
 
@@ -133,7 +135,9 @@ def _touched(shape: Shape) -> Floats:
     of_offsets = np.concatenate(
         [shape.offset_gains, np.zeros((len(shape.offsets), shape.signature.sources), dtype=bool)], axis=1
     )
-    return np.concatenate([of_places, of_offsets]).astype(float)
+    touched = np.concatenate([of_places, of_offsets])
+    touched[:, touched.shape[1] - shape.signature.common :] = True  # a column may move any row
+    return touched.astype(float)
 
 
 def _columns(shape: Shape, touched: Floats) -> tuple[Integers, Floats]:

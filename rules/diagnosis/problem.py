@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from typing import NamedTuple
 from weakref import WeakValueDictionary
 
-from rules.record import Reading
+from rules.record import Figure, Reading
 
 DEAD = -1
 """State of a dead test, which needs no current."""
@@ -62,6 +62,8 @@ class Signature:
     current_readings: tuple[CurrentReading, ...]
     swaps: tuple[tuple[int, int], ...]
     """Observations that may have been entered at each other's points."""
+    common: int = 0
+    """How many columns of doubt other circuits have taught (``Common``); each counts as a source."""
 
 
 def one(signature: Signature) -> Signature:
@@ -115,6 +117,30 @@ class Branch(NamedTuple):
 
 
 @dataclass(frozen=True, slots=True)
+class Common:
+    """
+    What other circuits have taught about errors that this one shares with them, through a meter or a habit.
+
+    The figures are means; each column moves all of them together by one standard uncertainty, so that errors of
+    which only the sum is known stay tied.
+    """
+
+    gain: tuple[float, ...]
+    """Of each gain: shown over true, less one."""
+    amps: tuple[float, ...]
+    """Of each slot: true less read. [A]"""
+    ohm: tuple[float, ...]
+    """Of each branch: resistance of its conductors over the recorded one, less one."""
+    gain_columns: tuple[tuple[float, ...], ...]
+    amps_columns: tuple[tuple[float, ...], ...]
+    ohm_columns: tuple[tuple[float, ...], ...]
+    lasting: tuple[Figure, ...]
+    """Of each branch: the part of ``ohm`` that is not its temperature while it was read."""
+    relative: Figure
+    """What all of it adds to the computed drops, on average."""
+
+
+@dataclass(frozen=True, slots=True)
 class Problem:
     """One circuit as the diagnosis takes it."""
 
@@ -151,6 +177,8 @@ class Problem:
     current_readings: tuple[Observation, ...]
     rounds: tuple[str, ...]
     """Name of each state."""
+    common: Common | None = None
+    """``None`` where nothing was learned: all other figures are as read and recorded either way."""
 
     @property
     def used(self) -> frozenset[str]:
