@@ -95,6 +95,10 @@ def run(args: Sequence[str] | None = None) -> int:
     from db.errors import SiteError
     from rules.errors import RulesError
 
+    if sys.stdout is None:
+        from audit.no_output import NoOutput
+
+        sys.stdout = NoOutput()
     try:
         status = group.main(args=args, prog_name="ohmwalk", standalone_mode=False)
         sys.stdout.flush()

@@ -13,7 +13,8 @@ from rules.assess import assess
 from rules.assessment import Assessment
 from rules.errors import ProfileError
 from rules.record import Site
-from rules.text import nearest
+from rules.rule import catalogue
+from rules.text import nearest, quoted
 
 
 def open_site(path: Path) -> Site:
@@ -60,11 +61,17 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -
         known = list(dict.fromkeys([row.tag for row in site.visits] + [r.visit_or_default for r in site.readings]))
         if visit not in known:
             raise WrongUse(f"--visit: no visit {visit!r}{_meant(visit, known)}")
-        site = replace(site, readings=tuple(row for row in site.readings if row.visit_or_default == visit))
+        site = on_visit(site, visit)
     try:
         in_force = limits.of(site)
     except ProfileError as error:
         raise WrongUse(*(f"{place}:limits: {line}" for line in str(error).splitlines())) from None
+    unknown = sorted(set(in_force.rules) - {rule.id for rule in catalogue()})
+    if unknown:
+        rules = [rule.id for rule in catalogue()]
+        raise WrongUse(
+            *(f"{place}:limits: {in_force.name}: there is no rule {quoted(id_)}{_meant(id_, rules)}" for id_ in unknown)
+        )
     return assess(site, in_force)
 
 
@@ -85,8 +92,25 @@ def only(assessment: Assessment, circuit: str) -> Assessment:
         assessment,
         circuits=results,
         findings=tuple(finding for finding in assessment.findings if finding.circuit == circuit),
-        not_judged=tuple(gap for gap in assessment.not_judged if gap.circuit == circuit),
+        # what is about no place at all, such as a rule that is switched off, is about this circuit too
+        not_judged=tuple(
+            gap for gap in assessment.not_judged if gap.circuit == circuit or (gap.circuit is None and not gap.where)
+        ),
     )
+
+
+def on_visit(site: Site, visit: str) -> Site:
+    """
+    The site with the readings of one visit alone.
+
+    A reading may be replaced by one of another visit, so that this is settled first: readings that are replaced are
+    left out, and those that stay name none that is left out.
+    """
+    ids = {row.id for row in site.readings}
+    replaced = {row.replaces_id for row in site.readings}
+    kept = [row for row in site.readings if row.visit_or_default == visit and row.id not in replaced]
+    readings = tuple(replace(row, replaces_id="") if row.replaces_id in ids else row for row in kept)
+    return replace(site, readings=readings)
 
 
 def _meant(word: str, known: list[str]) -> str:

@@ -72,20 +72,23 @@ def quoted(text: str) -> str:
     >>> quoted("ten m")
     "'ten m'"
     """
-    shown = text if len(text) <= _MOST_SHOWN else text[: _MOST_SHOWN - 1] + "…"
-    return f"'{clean(shown)}'"
+    return f"'{clean(_cut(text))}'"
+
+
+def _cut(text: str) -> str:
+    return text if len(text) <= _MOST_SHOWN else text[: _MOST_SHOWN - 1] + "…"
 
 
 def either(words: Collection[str], most: int = 12) -> str:
     """
-    The words as a list in a sentence, cut after ``most``.
+    The words as a list in a sentence, long ones cut, the list after ``most``.
 
     Examples
     --------
     >>> either(["own", "structure", "shared:NAME"])
     'own, structure or shared:NAME'
     """
-    shown = [clean(word) for word in words]
+    shown = [clean(_cut(word)) for word in words]
     if len(shown) > most:
         return ", ".join(shown[:most]) + f" and {len(shown) - most} more"
     return " or ".join(filter(None, [", ".join(shown[:-1]), *shown[-1:]]))

@@ -56,7 +56,7 @@ def command(values: tuple[str, ...], as_json: bool, **chosen: str | int | None) 
         from audit.drop.as_json import as_json as document
         from audit.report.as_json import as_text
 
-        click.echo(as_text(document(understood, found, enough)), nl=False)
+        click.echo(as_text(document(understood, found, enough)).encode(), nl=False)
     else:
         from audit.drop.text import print_drop
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import stat
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -56,7 +57,7 @@ def given_folder(folder: Path, stage: Stage = no_stage) -> Given:
         return given
     given.settings = _settings_of(folder, given.faults)
     for path in sorted(folder.iterdir()):
-        if path.name.startswith((".", "~$")) or not path.is_file():  # what a system or a spreadsheet leaves behind
+        if path.name.startswith((".", "~$")):  # what a system or a spreadsheet leaves behind
             continue
         if path.suffix.casefold() in _ENDINGS:
             _add_file(path, given, stage)
@@ -127,7 +128,11 @@ def _add_file(path: Path, given: Given, stage: Stage) -> None:
 
 
 def _bytes(path: Path, name: str, faults: Faults) -> bytes | None:
+    """Content of a file; a pipe or a device is never opened, which might wait or go on without end."""
     try:
+        if not stat.S_ISREG(path.stat().st_mode):
+            faults.add(name, "is no file; accepted: a file of this name")
+            return None
         return path.read_bytes()
     except FileNotFoundError:
         faults.add(name, "is not there; accepted: a file that is")

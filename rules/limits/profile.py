@@ -24,8 +24,10 @@ from typing import Any
 from rules.assessment import Severity
 from rules.errors import ProfileError
 from rules.record import Site
+from rules.text import quoted
 
 ROOT = "general"
+_MOST_SHOWN = 60
 TEXT_KEYS = ("title", "unit", "source", "edition", "status")
 DOUBTFUL = "reading or record doubtful"
 """The cause that keeps the profile's share where a site's ``[prior]`` does not name it."""
@@ -142,7 +144,7 @@ def _parsed(name: str, text: str, above: tuple[str, ...]) -> Limits:
         raise ProfileError(f"profile {name!r} inherits itself: {' > '.join([*above, name])}")
     try:
         data = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
+    except ValueError as error:  # tomllib's own, and Python's where a number has thousands of digits
         raise ProfileError(f"{name}: not TOML: {error}") from None
     title = data.pop("title", name)
     parent_name = data.pop("inherits", None if name == ROOT else ROOT)
@@ -190,8 +192,8 @@ def _group(name: str, group: str, content: dict[str, Any], parent: LimitGroup | 
                 faults.append(f"{where} is {value!r}; one of {one_of}{_nearest(str(value), accepted[key])}")
         elif parent and key not in parent.values:
             faults.append(f"{name}: there is no {group}.{key}{_nearest(key, [*parent.values, *parent.words])}")
-        elif isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
-            faults.append(f"{where} is {value!r}, not a finite number")
+        elif not _is_finite(value):
+            faults.append(f"{where} is {_shown(value)}, not a finite number")
         else:
             values[key] = float(value)
     return LimitGroup(
@@ -206,6 +208,24 @@ def _group(name: str, group: str, content: dict[str, Any], parent: LimitGroup | 
         words=words,
         accepted=accepted,
     )
+
+
+def _is_finite(value: object) -> bool:
+    """Whether a value is a number that a float can hold; TOML's whole numbers have any length."""
+    if isinstance(value, bool) or not isinstance(value, int | float):
+        return False
+    try:
+        return math.isfinite(float(value))
+    except OverflowError:
+        return False
+
+
+def _shown(value: object) -> str:
+    """A value in an error line; Python writes no whole number of more than 4,300 digits."""
+    try:
+        return quoted(value) if isinstance(value, str) else repr(value)[:_MOST_SHOWN]
+    except ValueError:
+        return "a number of thousands of digits"
 
 
 def _rules(name: str, given: object, parent: Limits | None, faults: list[str]) -> dict[str, RuleSetting]:
@@ -248,8 +268,10 @@ def _impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) 
                     faults.append(f"{where}; a temperature from -90 to 400 degC")
             elif value < 0:
                 faults.append(f"{where}; not below 0")
-            elif value == 0 and group.name in ABOVE_ZERO:
+            elif value == 0 and key != "geometric_sd" and group.name in ABOVE_ZERO:
                 faults.append(f"{where}; above 0")
+            elif value <= 1 and key == "geometric_sd":
+                faults.append(f"{where}; above 1")
             elif value > 1 and group.name in SHARES:
                 faults.append(f"{where}; a share from 0 to 1")
     for group_name, low, high in (

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import os
+import re
 import subprocess
 import sys
 from pathlib import Path
@@ -12,6 +13,8 @@ from typing import Any
 import pytest
 
 from audit import cli
+from audit.opening import judge_site, on_visit
+from rules.record import Circuit, Feed, Reading, Site, Source
 from sample_sites.catalogue import sample_site
 
 Captured = pytest.CaptureFixture[str]
@@ -196,3 +199,114 @@ def test_the_audiences_of_the_command_are_those_of_the_reports() -> None:
     from audit.report.content import AUDIENCES as OF_REPORTS
 
     assert tuple(AUDIENCES) == tuple(OF_REPORTS)
+
+
+PROGRAM = [sys.executable, "-c", "from audit.cli import main; main()"]
+
+
+def closed(*args: str) -> tuple[int, str]:
+    """Exit status and standard error of a call whose standard output is closed."""
+    done = subprocess.run(
+        ["sh", "-c", 'exec "$@" >&-', "sh", *PROGRAM, *args], stderr=subprocess.PIPE, text=True, timeout=120
+    )
+    return done.returncode, done.stderr
+
+
+def test_a_closed_standard_output_is_one_line(plant: Path) -> None:
+    line = "standard output is closed; accepted: a terminal, a file or a pipe\n"
+    assert closed("check", str(plant)) == (2, line)
+    assert closed("check", str(plant), "--json") == (2, line)
+
+
+def test_a_report_needs_no_standard_output(plant: Path) -> None:
+    assert closed("report", str(plant), "--to", "audit.md") == (0, "wrote audit.md\n")
+    assert Path("audit.md").read_text(encoding="utf-8").startswith("#")
+
+
+def test_json_is_utf_8_whatever_the_locale(plant: Path) -> None:
+    settings = plant / "site.toml"
+    text = settings.read_text(encoding="utf-8")
+    settings.write_text(re.sub("(?m)^name = .*$", 'name = "Halle Süd Ω"', text), encoding="utf-8")
+    env = os.environ | {"PYTHONIOENCODING": "utf-16", "LC_ALL": "C"}
+    done = subprocess.run([*PROGRAM, "check", str(plant), "--json"], capture_output=True, env=env, check=True)
+    assert json.loads(done.stdout.decode("utf-8"))["site"]["name"] == "Halle Süd Ω"
+
+
+@pytest.mark.parametrize("kind", ["link", "folder", "pipe", "device"])
+def test_a_table_that_is_no_file_is_a_line(kind: str, plant: Path, capsys: Captured) -> None:
+    table = plant / "decisions.csv"
+    table.unlink(missing_ok=True)
+    if kind == "folder":
+        table.mkdir()
+    elif kind == "pipe":
+        os.mkfifo(table)  # opened, it would wait for a writer
+    else:
+        table.symlink_to("nowhere" if kind == "link" else os.devnull)
+    what = "is not there; accepted: a file that is" if kind == "link" else "is no file; accepted: a file of this name"
+    assert refused(["check", str(plant)], capsys) == [f"decisions.csv: {what}"]
+
+
+def test_a_circuit_is_named_once(plant: Path, capsys: Captured) -> None:
+    (line,) = refused(["check", str(plant), "--circuit", "F2", "--circuit", "F3"], capsys)
+    assert line == "ohmwalk check: --circuit stands there twice; accepted: one circuit"
+
+
+def own_profile(plant: Path, text: str) -> None:
+    """Give the plant a limits profile of its own."""
+    settings = plant / "site.toml"
+    old = settings.read_text(encoding="utf-8")
+    settings.write_text(old.replace('limits = "general"', 'limits = "ours.toml"'), encoding="utf-8")
+    (plant / "ours.toml").write_text(text, encoding="utf-8")
+
+
+def test_a_rule_that_is_switched_off_is_told_for_one_circuit_too(plant: Path, capsys: Captured) -> None:
+    own_profile(plant, '[rules.VD05]\noff = true\nreason = "not wanted"\n')
+    told = checked(plant, capsys, "--circuit", "F2")
+    assert ("VD05", None) in {(gap["rule"], gap["circuit"]) for gap in told["not_judged"]}
+    assert {gap["circuit"] for gap in told["not_judged"]} <= {None, "F2"}
+
+
+@pytest.mark.parametrize(
+    ("text", "line"),
+    [
+        (f'[drop]\nsource = "x"\nallowed_percent = 1{"0" * 400}\n', "drop.allowed_percent is 1000"),
+        (f'[drop]\nsource = "x"\nallowed_percent = 1{"0" * 5000}\n', "not TOML: "),
+        ('[termination]\nsource = "x"\ngeometric_sd = 1\n', "termination.geometric_sd is 1; above 1"),
+        ('[rules.VD99]\noff = true\nreason = "x"\n', "there is no rule 'VD99'"),
+    ],
+    ids=["too large", "thousands of digits", "spread", "rule"],
+)
+def test_a_mistake_in_a_profile_of_the_site_s_own_is_a_line(
+    text: str, line: str, plant: Path, capsys: Captured
+) -> None:
+    own_profile(plant, text)
+    (told,) = refused(["check", str(plant)], capsys)
+    assert line in told
+    assert told.startswith(("site.toml:limits: ours.toml: ", "ours.toml: is "))
+    assert len(told) < 300
+
+
+def test_a_visit_is_judged_without_what_another_visit_replaced() -> None:
+    def reading(id_: str, visit: str, value: float, replaces: str = "") -> Reading:
+        return Reading(
+            id=id_, circuit_id="c", visit=visit, round="1", quantity="voltage", at="way", value=value, tag=id_,
+            replaces_id=replaces,
+        )  # fmt: skip
+
+    site = Site(
+        name="hut",
+        nominal_voltage_v=48.0,
+        sources=(Source(id="s", tag="BATT", kind="battery", nominal_voltage_v=48.0),),
+        circuits=(Circuit(id="c", tag="C1", fed_from=Feed("sources", "s")),),
+        readings=(
+            reading("a", "1", 48.0),
+            reading("b", "2", 47.0, "a"),
+            reading("d", "1", 46.0),
+            reading("e", "2", 45.0, "?gone"),
+        ),
+    )
+    first, second = (on_visit(site, visit).readings for visit in "12")
+    assert [row.id for row in first] == ["d"]
+    assert [(row.id, row.replaces_id) for row in second] == [("b", ""), ("e", "?gone")]
+    told = [finding.why + finding.title for finding in judge_site(site, "1").findings]
+    assert not any("names no reading" in text for text in told)

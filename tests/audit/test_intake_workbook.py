@@ -104,6 +104,22 @@ def _cell(text: str) -> str | float:
         (datetime(2026, 3, 14, 9, 30), "yyyy-mm-dd hh:mm", "2026-03-14T09:30:00"),
         (time(9, 30), "hh:mm", "09:30:00"),
         ("  padded ", "General", "  padded "),
+        (45, '0.0" ft"', "45 ft"),
+        (5, '0" mA"', "5 mA"),
+        (3.5, "0.0\\%", "3.5%"),
+        (3.5, '0.0"%"', "3.5%"),
+        (0.035, "0.0%", "3.5 %"),
+        (7, "000", "007"),
+        (7.5, "00.0", "07.5"),
+        (12000, '0.0,"k"', "12k"),
+        (-5, '0" A";[Red]-0" A"', "-5 A"),
+        (-5, "#,##0.00_);(#,##0.00)", "-5"),
+        (-5, '0" A"', "-5 A"),
+        (0, '0;-0;"none"', "none"),
+        (0.5, "# ?/?", "0.5"),
+        (1e-7, "0.00E+00", "1e-07"),
+        (5, 'General" V"', "5 V"),
+        (5, "[$EUR-407] 0.00", "EUR5"),
     ],
 )
 def test_cells_are_read_as_people_see_them(
@@ -114,6 +130,77 @@ def test_cells_are_read_as_people_see_them(
     cell.value, cell.number_format = value, number_format
     book.save(folder / "survey.xlsx")
     assert read_folder(folder).circuits[0].notes == text
+
+
+@pytest.mark.parametrize(
+    ("value", "number_format", "why"),
+    [
+        (-5, "0.0;[Red]0.0", "shows a negative number without its sign"),
+        (5, ";;;", "shows nothing of the cell's number"),
+        (5551234, "000-0000", "shows text between digits"),
+        (5, '[>3]0" A";0" V"', "depends on the value"),
+    ],
+)
+def test_a_number_that_its_format_changes_is_refused_with_its_line(
+    value: float, number_format: str, why: str, folder: Path, write: Callable[[Sheets], Workbook]
+) -> None:
+    book = write(GOOD)
+    cell = book["runs"]["E2"]
+    cell.value, cell.number_format = value, number_format
+    book.save(folder / "survey.xlsx")
+    (line,) = refusal(folder)
+    assert line.startswith("survey.xlsx[runs]:2:length: the number format ")
+    assert why in line
+
+
+def test_a_unit_in_a_number_format_counts_and_padded_tags_keep_their_digits(
+    folder: Path, write: Callable[[Sheets], Workbook]
+) -> None:
+    book = write(GOOD)
+    length, tag, named = book["runs"]["E2"], book["circuits"]["A2"], book["runs"]["A2"]
+    length.value, length.number_format = 10, '0.0" ft"'
+    for cell in (tag, named):
+        cell.value, cell.number_format = 7, "000"
+    book.save(folder / "survey.xlsx")
+    site = read_folder(folder)
+    assert site.runs[0].one_way_length_m == pytest.approx(3.048)
+    assert site.runs[0].typed == (("one_way_length_m", "10 ft"),)
+    assert site.circuits[0].tag == "007"
+
+
+def in_sheet(path: Path, name: str, old: bytes, new: bytes) -> None:
+    """Exchange bytes in one part of a workbook."""
+    with zipfile.ZipFile(path) as archive:
+        parts = {part: archive.read(part) for part in archive.namelist()}
+    assert old in parts[name]
+    parts[name] = parts[name].replace(old, new)
+    with zipfile.ZipFile(path, "w") as archive:
+        for part, content in parts.items():
+            archive.writestr(part, content)
+
+
+def test_a_row_beyond_the_last_is_refused(
+    folder: Path, write: Callable[[Sheets], Workbook], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("audit.intake.workbook._MOST_ROWS", 1_000)  # a million take seconds
+    write(GOOD)
+    in_sheet(folder / "survey.xlsx", "xl/worksheets/sheet3.xml", b'<row r="2"', b'<row r="2000000000"')
+    assert refusal(folder) == ["survey.xlsx[runs]:1001: a row stands beyond the last; accepted: up to 1,000 rows"]
+
+
+def test_a_row_of_too_many_cells_is_refused(folder: Path, write: Callable[[Sheets], Workbook]) -> None:
+    book = write(GOOD)
+    book["runs"].cell(2, 16_384).value = 1
+    book.save(folder / "survey.xlsx")
+    assert refusal(folder) == ["survey.xlsx[runs]:2: the row has 16,384 cells; accepted: up to 1,000"]
+
+
+def test_a_gap_of_empty_rows_keeps_the_line_of_what_follows(folder: Path, write: Callable[[Sheets], Workbook]) -> None:
+    book = write(GOOD)
+    book["runs"].append([])
+    book["runs"].cell(50_000, 1).value = "C9"
+    book.save(folder / "survey.xlsx")
+    assert any(line.startswith("survey.xlsx[runs]:50000:circuit: 'C9' ") for line in refusal(folder))
 
 
 def test_a_percentage_is_read_with_its_sign(folder: Path, write: Callable[[Sheets], Workbook]) -> None:
