@@ -78,6 +78,8 @@ class EntryCell(Horizontal):
         self.label = name or (slot.label if slot is not None else "")
         self.complaint = ""
         """What is wrong with a value that was refused."""
+        self.doubted = ""
+        """The text that was asked about; accepted once more, it is saved."""
         self._shown = text or self._saved_text
 
     def compose(self) -> ComposeResult:

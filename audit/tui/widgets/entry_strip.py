@@ -26,6 +26,7 @@ from audit.report.phrases import figure_words
 from audit.tui.drawing.page import CircuitView
 from audit.tui.drawing.pieces import Line, cut, line, piece
 from audit.tui.entry.meters import NO_METER, Meter, meter_quantity
+from audit.tui.entry.plausible import doubt_about
 from audit.tui.entry.reading import Where, reading_from, value_words
 from audit.tui.entry.slots import Place, Slot, readings_of_visit, round_at_hand, slots_of
 from audit.tui.entry.typing import Typing
@@ -39,6 +40,8 @@ QUICK_S = 0.005
 """A verdict that takes no longer is given with every key; a slower one once the typing pauses. [s]"""
 PAUSE_S = 0.15
 """What counts as a pause. [s]"""
+ENTER_AGAIN = "Enter again saves it"
+"""Said of a value that is hardly what the meter shows."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -183,9 +186,22 @@ class EntryStrip(Widget):
         except RulesError as error:
             self.refuse(cell, str(error))
             return
+        doubt = self._doubt(cell, reading)
+        if doubt and cell.doubted != cell.text:
+            cell.doubted = cell.text
+            self.refuse(cell, f"{doubt} · {ENTER_AGAIN}", go_back=True)
+            return
         cell.state = "saving"
         self.post_message(self.Accepted(cell, reading, cell.slot.saved))
         self._go_on(cell)
+
+    def _doubt(self, cell: EntryCell, reading: Reading) -> str:
+        """Why a value is hardly what the meter shows."""
+        assert self.survey is not None
+        assert cell.slot is not None
+        self._judge()  # a slow verdict may not have followed the last key yet
+        computed = self._view.expected.get(cell.slot.at) if self._view is not None else None
+        return doubt_about(reading, self.survey.index, computed)
 
     def settle(self, cell: EntryCell) -> None:
         """The value of a cell is in the file."""

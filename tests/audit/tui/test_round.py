@@ -169,7 +169,7 @@ async def test_another_reading_asks_quantity_place_leg_and_value(plant: Path) ->
         await walk.shows("Read what?")
         await walk.enter("jo")
         await walk.enter("run 1 st")
-        await walk.keys("n")
+        await walk.enter("neg")
         await walk.shows("joint at run 1 start, negative leg")
         await walk.enter("0.9 mV")
         await walk.shows("saved: F2 round 1: joint at run 1 start 0.9 mV")
