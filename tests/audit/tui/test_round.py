@@ -220,7 +220,7 @@ async def test_the_name_is_asked_at_the_first_save_and_never_again(hut: Path) ->
 
 async def test_the_first_visit_begins_with_the_first_reading(empty: Path) -> None:
     async with walking(empty) as walk:
-        await walk.keys("a", "s")
+        await walk.keys("a", "s", "enter")
         await walk.enter("PSU", "")
         await walk.keys("escape")
         await walk.at("PSU")
