@@ -186,6 +186,10 @@ class OhmwalkApp(App[None]):
         """Write the audit report to a file."""
         self.flow(reporting.write(self))
 
+    def action_help_quit(self) -> None:
+        """Ctrl+C leaves nothing: what is being typed would be lost."""
+        self.say("q quits, from the walk")
+
     def action_change_light(self) -> None:
         """From the theme for a dark room to that for bright sun and back."""
         names = [theme.name for theme in THEMES]

@@ -40,6 +40,11 @@ class Survey:
         return replace(self, site=site, index=index, visit=visit, read=read, results=results, assessment=None)
 
     @property
+    def is_judged(self) -> bool:
+        """Whether what is in sight was judged in this very record, not in an earlier state of it."""
+        return self.context is not None and self.context.index.site is self.site
+
+    @property
     def read_now(self) -> frozenset[str]:
         """Ids of the circuits on which something was read in the visit at hand."""
         return self.read.get(self.visit or "1", frozenset())

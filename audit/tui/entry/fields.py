@@ -111,15 +111,26 @@ def answers_for(field: Field, row: Row | Site, index: Index) -> tuple[str, ...]:
 
 def completed(text: str, answers: Sequence[str]) -> str:
     """
-    The answer that typed letters mean: the one that is them, or the first that begins with them.
+    The answer that typed letters mean: the one that is them, or the only one that begins with them.
 
-    >>> completed("t", ("marks", "tape", "tdr")), completed("TDR", ("marks", "tape", "tdr")), completed("x", ("tape",))
-    ('tape', 'tdr', 'x')
+    >>> completed("ta", ("tape", "tdr")), completed("TDR", ("tape", "tdr")), completed("t", ("tape", "tdr"))
+    ('tape', 'tdr', 't')
+    """
+    meant = meanings(text, answers)
+    return meant[0] if len(meant) == 1 else text
+
+
+def meanings(text: str, answers: Sequence[str]) -> tuple[str, ...]:
+    """
+    The answers that typed letters may mean: the one that is them, else all that begin with them.
+
+    >>> meanings("t", ("marks", "tape", "tdr")), meanings("p1", ("p1", "p12")), meanings("", ("tape",))
+    (('tape', 'tdr'), ('p1',), ())
     """
     folded = text.casefold()
-    same = [answer for answer in answers if answer.casefold() == folded]
+    same = [answer for answer in answers if answer == text] or [a for a in answers if a.casefold() == folded]
     begin = [answer for answer in answers if folded and answer.casefold().startswith(folded)]
-    return next(iter(same or begin), text)
+    return tuple(dict.fromkeys(same or begin))
 
 
 def read_field(text: str, field: Field, row: Row | Site, index: Index) -> FieldValue:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from datetime import date
 
 from audit.tui.entry.meters import Meter
 
@@ -13,7 +14,7 @@ class Habits:
 
     visit: str | None = None
     """The visit that was chosen; ``None``: the latest."""
-    confirmed: set[str] = field(default_factory=set)
-    """Visits of another day that readings still belong to."""
+    confirmed: set[tuple[str, date]] = field(default_factory=set)
+    """Visits of another day that readings still belong to, with the day on which she said so."""
     meters: dict[tuple[str, str], Meter] = field(default_factory=dict)
     """By visit and what they measure."""

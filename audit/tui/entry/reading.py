@@ -41,7 +41,7 @@ def reading_from(text: str, where: Where, now: datetime) -> Reading:
     UnreadableText, InvalidQuantity
         If the text is no value, with one line that says what is accepted.
     """
-    text = trimmed(text, _VALUE)
+    text = without_bare_point(trimmed(text, _VALUE))
     if not text:
         raise UnreadableText("nothing is typed; accepted: what the meter shows")
     cell = read_cell(text, _VALUE, UNIT_OF_QUANTITY[where.quantity])
@@ -62,6 +62,17 @@ def reading_from(text: str, where: Where, now: datetime) -> Reading:
         by=where.by,
         typed=(("value", cell.typed),) if cell.typed is not None else (),
     )
+
+
+def without_bare_point(text: str) -> str:
+    """
+    A number without a decimal point that nothing follows yet.
+
+    >>> without_bare_point("52."), without_bare_point("52.4"), without_bare_point(".")
+    ('52', '52.4', '.')
+    """
+    number = text.removesuffix(".")
+    return number if number[-1:].isdecimal() and "." not in number else text
 
 
 def value_words(reading: Reading) -> str:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass, replace
+from datetime import datetime
 
 from rules.index import Index
 from rules.record import UNIT_OF_QUANTITY, Feed, Reading
@@ -75,6 +76,23 @@ def round_at_hand(index: Index, place: Place, visit: str) -> str:
     if any(slot.saved is None and slot.at != "bus" for slot in slots_of(index, place, visit, names[-1])):
         return names[-1]
     return next_round(names)
+
+
+def resumed_words(index: Index, place: Place, visit: str, round_name: str, now: datetime) -> str:
+    """Where a round that is begun and not finished goes on, and since when it is; empty for a new or a whole one."""
+    slots = slots_of(index, place, visit, round_name)
+    there = readings_of_round(index, place, visit, round_name)
+    following = next((slot.label for slot in slots if slot.saved is None), "")
+    if not there or not following:
+        return ""
+    since = min((reading.taken_at for reading in there if reading.taken_at), default="")
+    try:
+        begun = datetime.fromisoformat(since)
+    except ValueError:  # not recorded, or typed by hand in another way
+        return f"round {round_name} goes on at {following}"
+    is_today = begun.date() == now.date()
+    when = f"{begun:%H:%M} today" if is_today else f"{begun:%Y-%m-%d %H:%M}"
+    return f"round {round_name} goes on at {following}, begun {when}"
 
 
 def next_round(names: list[str]) -> str:

@@ -32,6 +32,12 @@ def is_old(site: Site, tag: str, today: date) -> bool:
     return abs((today - of_visit).days) > OLD_AFTER_DAYS
 
 
+def goes_on(site: Site, tag: str, today: date) -> bool:
+    """Whether a reading of today belongs to a visit already: then it was asked about, also in an earlier sitting."""
+    day = today.isoformat()
+    return any(reading.taken_at.startswith(day) and reading.visit_or_default == tag for reading in site.readings)
+
+
 def new_visit(site: Site, kind: str, today: date, by: str) -> Visit:
     """A visit that begins today, with a tag that no other has and a place after all others."""
     taken = {row.tag for row in site.visits} | {reading.visit_or_default for reading in site.readings}

@@ -77,6 +77,8 @@ class Ask(Foot[str | None]):
         A letter that only one choice begins with chooses it.
     check : callable
         What is wrong with an answer; empty where it will do.
+    echo : callable
+        What is understood of what is being typed, in the place of the hint; empty where nothing is.
     """
 
     BINDINGS: ClassVar[list[BindingType]] = [
@@ -95,6 +97,7 @@ class Ask(Foot[str | None]):
         free: bool = True,
         instant: bool = False,
         check: Callable[[str], str] = lambda answer: "",
+        echo: Callable[[str], str] = lambda typed: "",
     ) -> None:
         super().__init__()
         self._question = question
@@ -104,6 +107,7 @@ class Ask(Foot[str | None]):
         self._free = free and not instant
         self._instant = instant
         self._check = check
+        self._echo = echo
 
     def compose(self) -> ComposeResult:
         with Vertical(id="question"):
@@ -131,9 +135,10 @@ class Ask(Foot[str | None]):
     def narrow(self, event: Input.Changed) -> None:
         """Show what the text may mean, and choose at once where that is asked for."""
         typed = event.value
-        if typed == self._default:
-            return
         self._complain("")
+        if typed == self._default:
+            self.query_one(_Choices).narrow(self._matching(""))
+            return
         matching = self._matching(typed)
         begin = [choice for choice in matching if choice.answer.casefold().startswith(typed.casefold())]
         if self._instant and typed and len(begin) == 1:
@@ -142,6 +147,8 @@ class Ask(Foot[str | None]):
         if self._free and typed.strip():
             others = [choice for choice in matching if choice not in begin]
             matching = [*begin, Choice(typed.strip(), "as typed"), *others] if self._choices else []
+        if self._choices and not matching:
+            self._complain("nothing matches")
         self.query_one(_Choices).narrow(matching)
 
     @on(Input.Submitted)
@@ -165,7 +172,9 @@ class Ask(Foot[str | None]):
 
     def _complain(self, complaint: str) -> None:
         hint = self.query_one("#hint", Static)
-        hint.update(clean(complaint or self._hint))
+        typed = self.query_one(Input).value.strip()
+        understood = self._echo(typed) if typed else ""
+        hint.update(clean(complaint or understood or self._hint))
         hint.set_class(bool(complaint), "-wrong")
 
     def action_step(self, by: int) -> None:

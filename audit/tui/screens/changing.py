@@ -26,11 +26,11 @@ WHAT = {
     "meter": ("instruments", "one range of an instrument"),
     "visit": ("visits", "one survey of the site"),
 }
-"""What can be added, by the word whose first letter chooses it."""
+"""What can be added, by the word that its letters choose."""
 _NEXT_FIELD = {
     "circuits": "description",
     "runs": "one_way_length_m",
-    "loads": "kind",
+    "loads": "current_a",
     "boards": "fed_by",
     "sources": "kind",
     "instruments": "quantity",
@@ -58,7 +58,7 @@ async def add(screen: OurScreen[None], row_id: str) -> str:
     if survey is None:
         return ""
     choices = [Choice(word, words) for word, (_, words) in WHAT.items()]
-    answer = await app.ask(Ask("Add a", choices=choices, instant=True))
+    answer = await app.ask(Ask("Add a", choices=choices, free=False))
     if answer is None:
         return ""
     table = WHAT[answer][0]

@@ -36,7 +36,7 @@ from audit.tui.widgets.field_line import FieldLine
 from audit.tui.widgets.keys_line import KeysLine
 from rules.problems.cells import accepted
 from rules.record import Row, Site
-from rules.text import either
+from rules.text import either, quoted
 
 
 class FormScreen(OurScreen[None]):
@@ -141,6 +141,12 @@ class FormScreen(OurScreen[None]):
         if not any(one.state == "refused" for one in self.query(FieldLine)):
             self.say("")
 
+    @on(FieldLine.Mended)
+    def _unsay_refusal(self, message: FieldLine.Mended) -> None:
+        message.stop()
+        if not any(one.state == "refused" for one in self.query(FieldLine)):
+            self.say("")
+
     def _hint(self, field: Field) -> str:
         row, survey = self._row, self._survey
         if row is None or survey is None:
@@ -211,6 +217,9 @@ class FormScreen(OurScreen[None]):
 
     def _checked(self, field_line: FieldLine, row: Row | Site, survey: Survey) -> FieldValue:
         field = field_line.field
+        if len(meant := field_line.may_mean) > 1:
+            raise FieldRefused(f"{quoted(field_line.text.strip())} may mean {either(meant)}")
+        field_line.complete()
         value = read_field(field_line.meant, field, row, survey.index)
         complaint = complaint_about(field, row, value.fields, survey.index)
         if complaint:

@@ -7,6 +7,7 @@ from typing import Any, ClassVar
 
 from textual.app import App, ComposeResult
 from textual.binding import ActiveBinding, Binding, BindingType
+from textual.containers import ScrollableContainer
 from textual.screen import Screen
 from textual.widgets import Input
 
@@ -18,9 +19,11 @@ from audit.tui.widgets.lines_view import LinesView
 from rules.cautions import cautions_of, highest_voltage_v
 
 _EVERYWHERE = {
-    binding.action for owner in (App, Screen, Input) for binding in Binding.make_bindings(owner.BINDINGS)
+    binding.action
+    for owner in (App, Screen, Input, ScrollableContainer)
+    for binding in Binding.make_bindings(owner.BINDINGS)
 } - {"app.quit"}
-"""What keys do in any program of this toolkit: editing a line, moving the focus."""
+"""What keys do in any program of this toolkit: editing a line, moving the focus, scrolling."""
 
 
 def keys_of(app: App[Any], bindings: Mapping[str, ActiveBinding]) -> list[tuple[str, str]]:

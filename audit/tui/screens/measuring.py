@@ -9,7 +9,7 @@ from audit.tui.edits import Add, Edit, Step
 from audit.tui.entry.meters import NO_METER, Meter, meter_quantity, meter_used, meters_for, only_meter
 from audit.tui.entry.reading import edit_for, value_words
 from audit.tui.entry.slots import Place, slots_of
-from audit.tui.entry.visits import KINDS, acknowledgement, is_old, new_visit, unread_cautions, visit_row
+from audit.tui.entry.visits import KINDS, acknowledgement, goes_on, is_old, new_visit, unread_cautions, visit_row
 from audit.tui.messages import Refused
 from audit.tui.screens.ask import Ask, Choice
 from audit.tui.screens.cautions import CautionScreen
@@ -55,7 +55,8 @@ async def round_at(screen: SurveyScreen, place: Place) -> RoundAt | None:
 async def _visit(screen: SurveyScreen, survey: Survey) -> str | None:
     """The visit that readings go to: the one at hand, a new one where it is old; empty where there is none yet."""
     today = screen.ohmwalk.now().date()
-    if not is_old(survey.site, survey.visit, today) or survey.visit in screen.ohmwalk.habits.confirmed:
+    is_known = (survey.visit, today) in screen.ohmwalk.habits.confirmed or goes_on(survey.site, survey.visit, today)
+    if is_known or not is_old(survey.site, survey.visit, today):
         return survey.visit
     row = visit_row(survey.site, survey.visit)
     assert row is not None
@@ -65,7 +66,7 @@ async def _visit(screen: SurveyScreen, survey: Survey) -> str | None:
     if answer is None:
         return None
     if answer == GO_ON:
-        screen.ohmwalk.habits.confirmed.add(survey.visit)
+        screen.ohmwalk.habits.confirmed.add((survey.visit, today))
         return survey.visit
     return await begin_visit(screen, answer)
 
@@ -82,7 +83,7 @@ async def choose_visit(screen: SurveyScreen) -> None:
     question = Ask("Readings belong to", survey.visit, choices=choices, free=False)
     answer = await screen.ohmwalk.ask(question)
     if answer in known:
-        screen.ohmwalk.habits.confirmed.add(answer)
+        screen.ohmwalk.habits.confirmed.add((answer, screen.ohmwalk.now().date()))
         screen.ohmwalk.choose_visit(answer)
     elif answer is not None:
         await begin_visit(screen, answer)

@@ -7,20 +7,25 @@ from typing import TYPE_CHECKING
 from audit.report.phrases import leg_words, reading_words, time_words
 from audit.tui.entry.meters import Meter, meter_quantity
 from audit.tui.entry.other import QUANTITY_WORDS, correctable, goes_to, legs_for, places_for, quantities_at
+from audit.tui.entry.plausible import SMALL, doubt_about, unit_complaint
 from audit.tui.entry.reading import Where, edit_for, reading_from, value_words
 from audit.tui.entry.slots import Place, readings_of_visit
 from audit.tui.messages import Refused
 from audit.tui.screens import measuring
 from audit.tui.screens.ask import Ask, Choice
+from audit.tui.widgets.entry_strip import ENTER_AGAIN
 from rules.assessment import NextReading
 from rules.errors import RulesError
 from rules.index import Index
-from rules.record import Reading
+from rules.record import UNIT_OF_QUANTITY, Reading
 
 if TYPE_CHECKING:
     from audit.tui.screens.survey import SurveyScreen
 
 NOT_RECORDED = "not recorded"
+_SIGNS = {"degC": "°C", "ohm": "Ω"}
+_UNIT_WORDS = dict.fromkeys(SMALL, "mV or V")
+"""The unit expected, where it is not that of the record alone."""
 
 
 async def take(screen: SurveyScreen, place: Place) -> None:
@@ -88,12 +93,12 @@ def _wanted(screen: SurveyScreen, place: Place) -> NextReading:
 async def _where(screen: SurveyScreen, index: Index, where: Where, wanted: NextReading) -> Where | None:
     """Everything about the reading but its value; ``None`` where she leaves."""
 
-    async def one_of(question: str, answers: tuple[str, ...], preferred: str, *, instant: bool = False) -> str | None:
+    async def one_of(question: str, answers: tuple[str, ...], preferred: str) -> str | None:
         if len(answers) < 2:
             return "".join(answers)
         ordered = sorted(answers, key=lambda answer: answer != preferred)
         choices = [Choice(answer, QUANTITY_WORDS.get(answer, "")) for answer in ordered]
-        return await screen.ohmwalk.ask(Ask(question, choices=choices, free=False, instant=instant))
+        return await screen.ohmwalk.ask(Ask(question, choices=choices, free=False))
 
     place = where.place
     quantity = await one_of("Read what?", quantities_at(place), wanted.quantity)
@@ -106,7 +111,7 @@ async def _where(screen: SurveyScreen, index: Index, where: Where, wanted: NextR
     to = await one_of(f"{quantity} from {at} to", ends, wanted.to)
     if to is None:
         return None
-    leg = await one_of(f"{quantity} at {at}: which leg?", legs_for(quantity, at), wanted.leg, instant=True)
+    leg = await one_of(f"{quantity} at {at}: which leg?", legs_for(quantity, at), wanted.leg)
     if leg is None:
         return None
     return Where(place, where.visit, "", quantity, at, to, "" if leg == NOT_RECORDED else leg)
@@ -122,17 +127,34 @@ async def _ask_value(
 ) -> None:
     """Ask for the value, and for the reason of a correction; a refused save asks again with the value kept."""
     app = screen.ohmwalk
-    text, reason = "", ""
+    text, reason, doubted = "", "", ""
+    unit = UNIT_OF_QUANTITY[where.quantity]
+    hint = f"in {_UNIT_WORDS.get(where.quantity) or _SIGNS.get(unit, unit)} · {hint}"
 
     def complaint(answer: str) -> str:
+        nonlocal doubted
+        if needed := unit_complaint(answer, where.quantity):
+            return needed
         try:
-            reading_from(answer, where, app.now())
+            reading = reading_from(answer, where, app.now())
         except RulesError as error:
             return str(error)
-        return ""
+        doubt = doubt_about(reading, app.survey.index) if app.survey is not None else ""
+        if not doubt or doubted == answer:
+            return ""
+        doubted = answer
+        return f"{doubt} · {ENTER_AGAIN}"
+
+    def understood(typed: str) -> str:
+        if needed := unit_complaint(typed, where.quantity):
+            return needed
+        try:
+            return f"understood: {value_words(reading_from(typed, where, app.now()))}"
+        except RulesError:
+            return ""  # half a value is typed
 
     while True:
-        answer = await app.ask(Ask(words, text, hint=hint, check=complaint))
+        answer = await app.ask(Ask(words, text, hint=hint, check=complaint, echo=understood))
         if answer is None:
             return
         text = answer

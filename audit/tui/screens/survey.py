@@ -106,6 +106,8 @@ class SurveyScreen(OurScreen[None]):
         self.walk.survey = survey
         self.page.survey = survey
         self.strip.survey = survey
+        if survey.is_judged and not self.strip.is_open:
+            self.page.typing = None
         self._look_ahead()
 
     @on(WalkList.Moved)
@@ -258,7 +260,8 @@ class SurveyScreen(OurScreen[None]):
     def leave_strip(self, message: EntryStrip.Left) -> None:
         self.strip.close()
         self.remove_class("-entering")
-        self.page.typing = None
+        if not (message.finished and self.survey is not None and not self.survey.is_judged):
+            self.page.typing = None  # else the old verdict would come back until the new one is there
         self.set_focus(self.page if self.turned else self.walk)
         if message.finished:
             self.say(

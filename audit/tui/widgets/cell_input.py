@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import takewhile
 
 from textual.suggester import Suggester
 from textual.widgets import Input
 
-from audit.tui.entry.fields import completed
+from audit.tui.entry.fields import meanings
 
 
 class CellInput(Input):
@@ -36,13 +37,20 @@ class CellInput(Input):
 
 
 class Completing(Suggester):
-    """Shows the answer that the typed letters mean."""
+    """Shows how the answers that the typed letters may mean go on."""
 
     def __init__(self, answers: Sequence[str]) -> None:
         super().__init__(use_cache=False, case_sensitive=True)
         self.answers = tuple(answers)
 
     async def get_suggestion(self, value: str) -> str | None:
-        whole = completed(value, self.answers)
+        whole = _alike(meanings(value, self.answers)) or value
         # What is shown continues what was typed, so that the letters must agree in case too.
         return value + whole[len(value) :] if whole != value and len(whole) > len(value) else None
+
+
+def _alike(answers: Sequence[str]) -> str:
+    """What several answers begin with alike."""
+    columns = zip(*answers, strict=False)
+    agreed = takewhile(lambda column: len({letter.casefold() for letter in column}) == 1, columns)
+    return "".join(column[0] for column in agreed)

@@ -23,14 +23,22 @@ SIGNS = {"empty": " ", "typing": " ", "saving": "…", "saved": "✓", "refused"
 
 
 class ValueInput(CellInput):
-    """A value; no value holds a question mark, which is help."""
+    """A value; no value holds a question mark, which is help, or begins with n, which is a new round."""
+
+    @dataclass
+    class NewRound(Message):
+        """Another round is to begin in place of the one that goes on."""
 
     async def on_key(self, event: Key) -> None:
-        """Ask for help in place of typing a question mark."""
+        """Ask for help, or for a new round, in place of typing the letter."""
         if event.key == "question_mark":
             event.stop()
             event.prevent_default()
             await self.run_action("screen.help")
+        elif event.key == "n" and not self.value:
+            event.stop()
+            event.prevent_default()
+            self.post_message(self.NewRound())
 
 
 class EntryCell(Horizontal):
@@ -78,6 +86,8 @@ class EntryCell(Horizontal):
         self.label = name or (slot.label if slot is not None else "")
         self.complaint = ""
         """What is wrong with a value that was refused."""
+        self.doubted = ""
+        """The text that was asked about; accepted once more, it is saved."""
         self._shown = text or self._saved_text
 
     def compose(self) -> ComposeResult:

@@ -26,11 +26,12 @@ from audit.report.phrases import figure_words
 from audit.tui.drawing.page import CircuitView
 from audit.tui.drawing.pieces import Line, cut, line, piece
 from audit.tui.entry.meters import NO_METER, Meter, meter_quantity
+from audit.tui.entry.plausible import doubt_about
 from audit.tui.entry.reading import Where, reading_from, value_words
-from audit.tui.entry.slots import Place, Slot, readings_of_visit, round_at_hand, slots_of
+from audit.tui.entry.slots import Place, Slot, next_round, readings_of_visit, resumed_words, round_at_hand, slots_of
 from audit.tui.entry.typing import Typing
 from audit.tui.state import Survey
-from audit.tui.widgets.entry_cell import EntryCell
+from audit.tui.widgets.entry_cell import EntryCell, ValueInput
 from audit.tui.widgets.few_lines import FewLines, remark
 from rules.errors import RulesError
 from rules.record import Reading
@@ -39,6 +40,8 @@ QUICK_S = 0.005
 """A verdict that takes no longer is given with every key; a slower one once the typing pauses. [s]"""
 PAUSE_S = 0.15
 """What counts as a pause. [s]"""
+ENTER_AGAIN = "Enter again saves it"
+"""Said of a value that is hardly what the meter shows."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -104,6 +107,8 @@ class EntryStrip(Widget):
         self._now = now
         self._of = RoundAt(Place(), "", "", {})
         self._round = ""
+        self._resumed = ""
+        """That an unfinished round goes on; said until a value is accepted."""
         self._is_at_end = False
         self._view: CircuitView | None = None
         self._took_s = 0.0
@@ -123,6 +128,7 @@ class EntryStrip(Widget):
         self._is_at_end = False
         self._view = None
         self._took_s = 0.0
+        self._resumed = resumed_words(self.survey.index, of.place, of.visit, self._round, self._now())
         cells = self.query_one("#cells", HorizontalScroll)
         await cells.remove_children()
         await cells.mount(EntryCell(None, self._round, "round"), *(EntryCell(slot) for slot in self._slots()))
@@ -186,9 +192,31 @@ class EntryStrip(Widget):
         except RulesError as error:
             self.refuse(cell, str(error))
             return
+        doubt = self._doubt(cell, reading)
+        if doubt and cell.doubted != cell.text:
+            cell.doubted = cell.text
+            self.refuse(cell, f"{doubt} · {ENTER_AGAIN}", go_back=True)
+            return
+        self._resumed = ""
         cell.state = "saving"
         self.post_message(self.Accepted(cell, reading, cell.slot.saved))
         self._go_on(cell)
+
+    def _doubt(self, cell: EntryCell, reading: Reading) -> str:
+        """Why a value is hardly what the meter shows."""
+        assert self.survey is not None
+        assert cell.slot is not None
+        self._judge()  # a slow verdict may not have followed the last key yet
+        computed = self._view.expected.get(cell.slot.at) if self._view is not None else None
+        return doubt_about(reading, self.survey.index, computed)
+
+    @on(ValueInput.NewRound)
+    async def _begin_round(self, message: ValueInput.NewRound) -> None:
+        """A new round in place of the one that goes on."""
+        message.stop()
+        if self._resumed and self.survey is not None:
+            names = [r.round for r in readings_of_visit(self.survey.index, self._of.place, self._of.visit)]
+            await self.open(self._of, next_round(list(dict.fromkeys(names))))
 
     def settle(self, cell: EntryCell) -> None:
         """The value of a cell is in the file."""
@@ -292,7 +320,8 @@ class EntryStrip(Widget):
         is_typed = any(cell.is_changed for cell in self.cells)
         self._view = provisional(context, typing) if context is not None and typing.circuit_id else None
         self._took_s = time.perf_counter() - start
-        self.post_message(self.Typed(self._view if is_typed else None))
+        # Until what is saved is judged too, what was said of it as typed is newer than what stands in the survey.
+        self.post_message(self.Typed(self._view if is_typed or not self.survey.is_judged else None))
         cell = self._cell_at_hand()
         if cell is not None:
             self._echo(cell)
@@ -320,8 +349,9 @@ class EntryStrip(Widget):
         label = f"{refused.label}: " if refused is not None and refused is not cell else ""
 
         def draw(width: int) -> list[Line]:
+            resumed = remark(f"{self._resumed} · n begins a new round", "caution", width) if self._resumed else []
             wrong = remark(f"{label}{refused.complaint}", "wrong", width) if refused is not None else []
-            return ([cut(said, width)] if said else []) + wrong
+            return resumed + ([cut(said, width)] if said else []) + wrong
 
         self.query_one("#echo", FewLines).say(draw)
 

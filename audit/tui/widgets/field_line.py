@@ -13,7 +13,7 @@ from textual.message import Message
 from textual.reactive import reactive
 from textual.widgets import Input, Static
 
-from audit.tui.entry.fields import Field, completed
+from audit.tui.entry.fields import Field, completed, meanings
 from audit.tui.widgets.cell_input import CellInput, Completing
 from rules.text import clean
 
@@ -52,6 +52,12 @@ class FieldLine(Horizontal):
 
         field_line: FieldLine
 
+    @dataclass
+    class Mended(Message):
+        """What was refused is given up: the field is empty, or says again what is saved."""
+
+        field_line: FieldLine
+
     def __init__(self, field: Field, text: str, answers: Sequence[str], unit: str, assumed: str) -> None:
         super().__init__()
         self.field = field
@@ -81,6 +87,16 @@ class FieldLine(Horizontal):
     def meant(self) -> str:
         """The text with its letters completed to the answer that they mean."""
         return completed(self.text.strip(), self._answers) if self._answers else self.text
+
+    @property
+    def may_mean(self) -> tuple[str, ...]:
+        """The answers that the text may mean; several where it is not yet clear."""
+        return meanings(self.text.strip(), self._answers)
+
+    def complete(self) -> None:
+        """Show the text as it will be stored."""
+        if self.meant != self.text:
+            self.query_one(CellInput).value = self.meant
 
     @property
     def is_changed(self) -> bool:
@@ -116,6 +132,13 @@ class FieldLine(Horizontal):
     def _submitted(self, event: Input.Submitted) -> None:
         event.stop()
         self.post_message(self.Accepted(self, 1))
+
+    @on(Input.Changed)
+    def _changed(self, event: Input.Changed) -> None:
+        event.stop()
+        if self.state == "refused" and (not self.text.strip() or not self.is_changed):
+            self.state = "idle"
+            self.post_message(self.Mended(self))
 
     def on_descendant_focus(self) -> None:
         self.post_message(self.Entered(self))

@@ -135,7 +135,7 @@ def test_answers_are_choices_tags_and_points() -> None:
     assert answers_for(field("circuits", "fed_from"), HUT.circuits[0], INDEX) == ("DB1", "BATT")
     assert answers_for(field("loads", "point"), HUT.loads[1], INDEX) == ("way", "p1", "p2")
     assert answers_for(field("runs", "one_way_length_m"), HUT.runs[0], INDEX) == ()
-    assert completed("br", answers_for(field("circuits", "device"), HUT.circuits[0], INDEX)) == "breaker B"
+    assert completed("breaker c", answers_for(field("circuits", "device"), HUT.circuits[0], INDEX)) == "breaker C"
 
 
 def test_every_meaning_is_of_a_field_that_is_there() -> None:

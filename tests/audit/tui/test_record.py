@@ -25,18 +25,18 @@ def field_at_hand(walk: Walk) -> str:
 
 async def test_a_new_circuit_with_run_load_and_round_from_an_empty_site(empty: Path) -> None:
     async with walking(empty) as walk:
-        await walk.keys("a", "s")
+        await walk.keys("a", "s", "enter")
         await walk.enter("BATT-A", "ba", "48 V", "53.5")
         await walk.keys("escape")
-        await walk.keys("a", "b", "enter")
+        await walk.keys("a", "b", "enter", "enter")
         await walk.quiet()
-        await walk.keys("escape", "a", "c")
+        await walk.keys("escape", "a", "c", "enter")
         await walk.enter("", "Fridge")
         assert field_at_hand(walk) == "location"
-        await walk.keys("escape", "a", "r")
-        await walk.enter("45 ft", "t", "2.5 mm2")
-        await walk.keys("escape", "a", "l")
-        await walk.enter("", "", "4")
+        await walk.keys("escape", "a", "r", "enter")
+        await walk.enter("45 ft", "ta", "2.5 mm2")
+        await walk.keys("escape", "a", "l", "enter")
+        await walk.enter("", "4")
         await walk.keys("escape")
         await walk.judged()
         assert "DB1-01  Fridge" in walk.screen
@@ -78,9 +78,9 @@ async def back(walk: Walk) -> str:
 async def test_the_next_run_goes_on_from_the_last_point_and_the_next_tag_counts_on(hut: Path) -> None:
     async with walking(hut) as walk:
         await walk.at("DB1-02")
-        await walk.keys("a", "r", "escape")
+        await walk.keys("a", "r", "enter", "escape")
         await walk.quiet()
-        await walk.keys("a", "c")
+        await walk.keys("a", "c", "enter")
         await walk.shows("The new circuit's tag DB1-03")
         await walk.enter("")
         run, circuit = walk.record.runs[-1], walk.record.circuits[-1]
@@ -90,7 +90,7 @@ async def test_the_next_run_goes_on_from_the_last_point_and_the_next_tag_counts_
 
 async def test_a_tag_that_is_taken_is_asked_for_again(hut: Path) -> None:
     async with walking(hut) as walk:
-        await walk.keys("a", "c")
+        await walk.keys("a", "c", "enter")
         await walk.enter("DB1-02")
         await walk.shows("is there twice")
         assert len(walk.record.circuits) == 2
@@ -176,12 +176,12 @@ async def test_settings_sources_meters_and_visits_are_under_s(hut: Path) -> None
         await walk.keys("enter")
         await walk.enter("Hütte", "Nowhere 1")
         assert (walk.record.name, walk.record.address) == ("Hütte", "Nowhere 1")
-        await walk.keys("escape", "a", "m")
+        await walk.keys("escape", "a", "m", "enter")
         await walk.enter("THERM")
         await walk.enter("te", "100", "1", "10", "0.1")
         meter = walk.record.instruments[-1]
         assert (meter.tag, meter.quantity, meter.full_scale, meter.resolution) == ("THERM", "temperature", 100.0, 0.1)
-        await walk.keys("escape", "a", "v")
+        await walk.keys("escape", "a", "v", "enter")
         await walk.enter("as left")
         assert walk.record.visits[-1] == Visit(
             id=walk.record.visits[-1].id, tag="2026-03 as left", kind="as left", date="2026-03-12", by="Ada"

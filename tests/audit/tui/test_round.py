@@ -169,7 +169,7 @@ async def test_another_reading_asks_quantity_place_leg_and_value(plant: Path) ->
         await walk.shows("Read what?")
         await walk.enter("jo")
         await walk.enter("run 1 st")
-        await walk.keys("n")
+        await walk.enter("neg")
         await walk.shows("joint at run 1 start, negative leg")
         await walk.enter("0.9 mV")
         await walk.shows("saved: F2 round 1: joint at run 1 start 0.9 mV")
@@ -220,7 +220,7 @@ async def test_the_name_is_asked_at_the_first_save_and_never_again(hut: Path) ->
 
 async def test_the_first_visit_begins_with_the_first_reading(empty: Path) -> None:
     async with walking(empty) as walk:
-        await walk.keys("a", "s")
+        await walk.keys("a", "s", "enter")
         await walk.enter("PSU", "")
         await walk.keys("escape")
         await walk.at("PSU")
