@@ -19,7 +19,16 @@ import numpy as np
 from rules.diagnosis.block import Block
 from rules.diagnosis.conductor_causes import SINGLE_FACTORS, ratios_of
 from rules.diagnosis.conductors import ALTERNATIVES
-from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, CAUSES, DOUBTFUL, SEMICONDUCTOR
+from rules.diagnosis.hypotheses import (
+    AS_RECORDED,
+    BAD_CONNECTION,
+    CAUSES,
+    DOUBTFUL,
+    LONGER,
+    OTHER_METAL,
+    SEMICONDUCTOR,
+    SMALLER,
+)
 from rules.diagnosis.judge import Judged
 from rules.diagnosis.quadrature import UNIT_STEPS
 from rules.diagnosis.shape import Floats, Integers, Shape
@@ -33,6 +42,10 @@ FACTORS = np.array([NormalDist().inv_cdf(share) for share in (1 / 8, 3 / 8, 5 / 
 SMOOTHED = 0.4
 """Standard deviation that each of several atoms gets for what lies between it and its neighbours, over their distance:
 with less a fine reading would tell places apart by the teeth of a comb that is not there."""
+OF_LENGTH = ("length_as_loop", "metres_for_feet")
+"""Doubtful records that a tape tells."""
+LARGER = ALTERNATIVES[4:]
+"""Doubtful records that a look at the conductor tells."""
 MOST = 128
 """Most atoms of a problem: the heaviest."""
 
@@ -65,8 +78,10 @@ class Atoms:
     """(b, a): standard deviation about the size, or about the factor where there is no extra."""
     slip: Integers
     """(b, a): which slip, -1 for none."""
-    stretch: Floats
-    """(b, a): true length over the recorded one."""
+    wrong_length: Floats
+    """(b,): probability that a tape would show another length than the recorded one."""
+    wrong_conductor: Floats
+    """(b,): probability that the cable is of another size or metal than recorded."""
     ratios: Floats
     """(b, f, e of conductors): resistance over the recorded one under each hypothesis about the conductors."""
 
@@ -112,7 +127,8 @@ def atoms_of(judged: Judged, block: Block) -> Atoms:
         group=group[kept],
         size=heaviest["size"],
         smoothed=heaviest["smoothed"],
-        stretch=heaviest["stretch"],
+        wrong_length=_probability(judged, (LONGER,), OF_LENGTH),
+        wrong_conductor=_probability(judged, (SMALLER, OTHER_METAL), LARGER),
         ratios=ratios,
         **whole,
     )
@@ -126,7 +142,7 @@ def _groups(shape: Shape) -> tuple[Group, ...]:
     return (*groups, *(Group(cause) for cause in CAUSES if cause not in (AS_RECORDED, BAD_CONNECTION, SEMICONDUCTOR)))
 
 
-_PLAIN = {"weight": 0.0, "conductor": 0.0, "extra": 0.0, "size": 0.0, "smoothed": 0.0, "slip": -1.0, "stretch": 1.0}
+_PLAIN = {"weight": 0.0, "conductor": 0.0, "extra": 0.0, "size": 0.0, "smoothed": 0.0, "slip": -1.0}
 """What an atom has where its hypothesis says nothing of it."""
 
 
@@ -208,16 +224,12 @@ def _conductors(judged: Judged, block: Block) -> tuple[Floats, _Part]:
     causes = [AS_RECORDED, *(name.cause for name in names[:singles])]
     causes += [name.cause for name in names[singles:] for _ in FACTORS]
     nothing = np.zeros((count, 1 + singles))
-    stretch = np.ones((count, len(causes)))
-    lengths = slice(1 + len(ALTERNATIVES), 1 + singles + len(FACTORS))
-    stretch[:, lengths] = ratios[:, lengths, 0]
     return ratios, _Part(
         tuple(Group(cause) for cause in causes),
         {
             "weight": np.concatenate([judged.posterior[:, :1], posterior[:, :singles], several], axis=1),
             "conductor": np.arange(len(causes), dtype=float)[None],
             "smoothed": np.concatenate([nothing, smoothed.reshape(count, -1)], axis=1),
-            "stretch": stretch,
         },
     )
 
@@ -227,3 +239,11 @@ def _slips(judged: Judged) -> _Part:
     count = len(judged.slips.hypotheses.names)
     numbers = np.arange(count, dtype=float)[None]
     return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, -count:], "slip": numbers})
+
+
+def _probability(judged: Judged, causes: tuple[str, ...], doubtful: tuple[str, ...]) -> Floats:
+    """Of some causes, with some of the ways in which the record may be doubtful (b,)."""
+    names = judged.hypotheses.names
+    ours = [name.cause in causes or (name.cause == DOUBTFUL and name.what in doubtful) for name in names]
+    found: Floats = judged.posterior[:, ours].sum(axis=1)
+    return found

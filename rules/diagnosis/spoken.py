@@ -42,7 +42,10 @@ def spoken(batch: Batch, number: int, choice: Choice) -> NextReading:
     """A choice in the format's words."""
     asked = _asked(batch, number, choice)
     if choice.way.kind == LOOK:
-        why = "no reading tells size, metal and length apart any further"
+        probable = batch.atoms.wrong_conductor[number] >= batch.limits["next_reading.look_at"]
+        why = (
+            "another size or metal is probable" if probable else "no reading tells size, metal and length apart further"
+        )
     else:
         at = batch.posed[number].observation(choice.row) if choice.way.kind in SINGLES else None
         pair = [_place(batch, number, choice, group) for group in choice.pair or ()]
@@ -82,9 +85,8 @@ def _asked(batch: Batch, number: int, choice: Choice) -> _Asked:
     if way.kind == LENGTH:
         return _Asked("length", at=posed.imagined.names[choice.row - len(posed.rows_of(SINGLE))])
     branches = posed.imagined.branches
-    if way.kind == TEMPERATURE:
-        warm = [(b.positive_slope_ohm_per_k + b.negative_slope_ohm_per_k) * b.temperature_u_k for b in branches]
-        return _Asked("temperature", "temperature", posed.imagined.names[warm.index(max(warm))])
+    if way.kind == TEMPERATURE and posed.probed is not None:
+        return _Asked("temperature", "temperature", posed.imagined.names[posed.probed[0]])
     ohms = [0.0 if n == DEVICE else b.positive_ohm for n, b in zip(posed.imagined.names, branches, strict=True)]
     besides = "read the print on the sheath and look at the strands"
     return _Asked("reading", at=posed.imagined.names[ohms.index(max(ohms))], besides=besides)
