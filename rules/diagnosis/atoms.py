@@ -33,8 +33,10 @@ from rules.diagnosis.judge import Judged
 from rules.diagnosis.quadrature import UNIT_STEPS
 from rules.diagnosis.shape import Floats, Integers, Shape
 
-SIZES = 6
-"""Sizes of a bad connection that stand for its posterior, each for an equal share of it."""
+MOST_SIZES, FEWEST_SIZES = 6, 2
+"""Sizes of a bad connection that stand for its posterior, each for an equal share of it: fewer where places are many."""
+ATOMS = 128
+"""About so many atoms are aimed at; a long circuit has more."""
 TAIL = 0.01
 """Share of a posterior's ends that bounds the outermost of them."""
 FACTORS = np.array([NormalDist().inv_cdf(share) for share in (1 / 8, 3 / 8, 5 / 8, 7 / 8)])
@@ -46,8 +48,6 @@ OF_LENGTH = ("length_as_loop", "metres_for_feet")
 """Doubtful records that a tape tells."""
 LARGER = ALTERNATIVES[4:]
 """Doubtful records that a look at the conductor tells."""
-MOST = 128
-"""Most atoms of a problem: the heaviest."""
 
 
 class Group(NamedTuple):
@@ -116,7 +116,8 @@ def atoms_of(judged: Judged, block: Block) -> Atoms:
         return np.concatenate(wide, axis=1)
 
     weight = column("weight")
-    kept = np.argsort(-weight.round(12), axis=1, kind="stable")[:, :MOST]
+    most = max(ATOMS, 2 * FEWEST_SIZES * len(block.shape.places))
+    kept = np.argsort(-weight.round(12), axis=1, kind="stable")[:, :most]
     heaviest = {name: np.take_along_axis(column(name), kept, axis=1) for name in _PLAIN}
     chosen = heaviest["weight"]
     whole = {name: heaviest[name].astype(np.int64) for name in ("conductor", "extra", "slip")}
@@ -170,29 +171,30 @@ def _extras(judged: Judged, shape: Shape) -> _Part:
     old = [*old_places, *(len(before.places) + n for n in old_offsets)]
     posterior = judged.posterior[:, [*judged.of_cause(BAD_CONNECTION), *judged.of_cause(SEMICONDUCTOR)]]
     weight = posterior[:, old] * np.array(split)
-    coordinate, distance = _strata(judged)
+    sizes = max(FEWEST_SIZES, min(MOST_SIZES, ATOMS // max(1, len(shape.places))))
+    coordinate, distance = _strata(judged, sizes)
     size = judged.line.size(coordinate)
     smoothed = SMOOTHED * distance * np.where(judged.line.logarithmic[:, None] > 0, size, 1.0)
     names = [Group(BAD_CONNECTION, number) for number in range(len(shape.places))]
     names += [Group(SEMICONDUCTOR, number) for number in range(len(shape.offsets))]
     count = len(judged.block)
     return _Part(
-        tuple(name for name in names for _ in range(SIZES)),
+        tuple(name for name in names for _ in range(sizes)),
         {
-            "weight": np.repeat(weight / SIZES, SIZES, axis=1),
-            "extra": np.repeat(np.arange(len(names)), SIZES)[None].astype(float),
+            "weight": np.repeat(weight / sizes, sizes, axis=1),
+            "extra": np.repeat(np.arange(len(names)), sizes)[None].astype(float),
             "size": size[:, old].reshape(count, -1),
             "smoothed": smoothed[:, old].reshape(count, -1),
         },
     )
 
 
-def _strata(judged: Judged) -> tuple[Floats, Floats]:
+def _strata(judged: Judged, sizes: int) -> tuple[Floats, Floats]:
     """Coordinates in the middle of equal shares of each size's posterior, and how wide each share is (b, places, s)."""
     density = judged.density
     below = density.below()
-    edges = np.clip(np.arange(SIZES + 1) / SIZES, TAIL, 1 - TAIL)
-    wanted = np.sort(np.concatenate([edges, (np.arange(SIZES) + 0.5) / SIZES]))
+    edges = np.clip(np.arange(sizes + 1) / sizes, TAIL, 1 - TAIL)
+    wanted = np.sort(np.concatenate([edges, (np.arange(sizes) + 0.5) / sizes]))
     step = (below[..., None, :] <= wanted[:, None]).sum(axis=-1).clip(1, len(UNIT_STEPS) - 1)
     low, high = (np.take_along_axis(below, step - back, axis=-1) for back in (1, 0))
     part = np.clip((wanted - low) / np.maximum(high - low, 1e-12), 0.0, 1.0)

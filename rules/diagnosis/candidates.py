@@ -117,13 +117,20 @@ def posed(case: CircuitCase, meters: Meters) -> Posed | None:
     read = posed_by(case.context, measured)
     if read is None:
         return None
+    rounds = imagined_rounds(case, read, meters)
+    if not rounds:
+        return None
+    imagined = posed_by(case.context, replace(measured, rounds=(*case.rounds, *rounds)))
+    return None if imagined is None else Posed(case, read, imagined)
+
+
+def imagined_rounds(case: CircuitCase, read: Problem, meters: Meters) -> tuple[Round, ...]:
+    """The round of single readings and the round that is read once more; none where no current is known."""
     fullest = fullest_round(case)
     currents = _currents(case, fullest, meters)
     if not currents:
-        return None
-    rounds = (*case.rounds, _single(case, read, fullest, currents, meters), _again(case, fullest, currents))
-    imagined = posed_by(case.context, replace(measured, rounds=rounds))
-    return None if imagined is None else Posed(case, read, imagined)
+        return ()
+    return _single(case, read, fullest, currents, meters), _again(case, fullest, currents)
 
 
 def fullest_round(case: CircuitCase) -> Round | None:
@@ -261,7 +268,8 @@ def _again(case: CircuitCase, fullest: Round | None, currents: Mapping[str, Show
             kept.setdefault((row.quantity, row.at, row.to, row.leg), row)
     shown = fullest.shown if fullest is not None else {}
     rows = [
-        (replace(row, id=f"{AGAIN} {number}", round=AGAIN), shown[row.id]) for number, row in enumerate(kept.values())
+        (replace(row, id=f"{AGAIN} {number}", round=AGAIN), replace(shown[row.id]))
+        for number, row in enumerate(kept.values())
     ]
     return _round(case, AGAIN, rows, currents)
 

@@ -12,6 +12,7 @@ from rules.diagnosis.candidates import AGAIN, JOINT, LEG, POINT, SINGLE, Posed
 from rules.diagnosis.choice import Batch, Choice
 from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, SWAPPED
 from rules.diagnosis.hypotheses import BAD_CONNECTION
+from rules.diagnosis.information import LEAST, entropy
 from rules.diagnosis.next_cautions import caution_words
 from rules.diagnosis.next_words import Said, why_words
 from rules.diagnosis.options import DEAD_TEST, FINER, LENGTH, LOOK, ROUND, TEMPERATURE
@@ -22,8 +23,8 @@ from rules.record import Figure
 EVENLY = (0.3, 0.7)
 """Between these shares of what is suspected a reading halves it."""
 SINGLES = (JOINT, LEG, POINT)
-SUSPECTS = 4
-"""Fewer suspected places are not halved, but looked at."""
+SUSPECTS = 3
+"""So many suspected places are not halved, but looked at."""
 
 
 class _Asked(NamedTuple):
@@ -139,6 +140,6 @@ def _halves(batch: Batch, number: int, choice: Choice) -> bool:
     bad = np.array([group.cause == BAD_CONNECTION for group in batch.atoms.groups])
     whole = float(shares[bad].sum())
     inside = np.array(_touched(batch, choice)) & bad
-    suspects = int((shares[bad] > batch.limits["next_reading.suspected_at"] * whole).sum())
+    suspects = float(np.exp(entropy(shares[bad] / max(whole, LEAST))))  # as many as equal ones would be
     evenly = EVENLY[0] * whole <= float(shares[inside].sum()) <= EVENLY[1] * whole
-    return whole > 0.5 and suspects >= SUSPECTS and evenly and choice.way.kind in (LEG, POINT)
+    return whole > 0.5 and suspects > SUSPECTS and evenly and choice.way.kind in (LEG, POINT)

@@ -42,6 +42,12 @@ def plain() -> ModuleType:
 
 
 @pytest.fixture(scope="session")
+def chains() -> ModuleType:
+    """Chains of runs as sites."""
+    return module("rules/diagnosis/chains.py")
+
+
+@pytest.fixture(scope="session")
 def trial() -> ModuleType:
     """The blind trial."""
     return module("trial/trial.py")
