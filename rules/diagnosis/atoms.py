@@ -19,13 +19,24 @@ import numpy as np
 from rules.diagnosis.block import Block
 from rules.diagnosis.conductor_causes import SINGLE_FACTORS, ratios_of
 from rules.diagnosis.conductors import ALTERNATIVES
-from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, CAUSES, DOUBTFUL, SEMICONDUCTOR
+from rules.diagnosis.hypotheses import (
+    AS_RECORDED,
+    BAD_CONNECTION,
+    CAUSES,
+    DOUBTFUL,
+    LONGER,
+    OTHER_METAL,
+    SEMICONDUCTOR,
+    SMALLER,
+)
 from rules.diagnosis.judge import Judged
 from rules.diagnosis.quadrature import UNIT_STEPS
 from rules.diagnosis.shape import Floats, Integers, Shape
 
-SIZES = 6
-"""Sizes of a bad connection that stand for its posterior, each for an equal share of it."""
+MOST_SIZES, FEWEST_SIZES = 6, 2
+"""Sizes of a bad connection that stand for its posterior, each for an equal share of it: fewer where places are many."""
+ATOMS = 128
+"""About so many atoms are aimed at; a long circuit has more."""
 TAIL = 0.01
 """Share of a posterior's ends that bounds the outermost of them."""
 FACTORS = np.array([NormalDist().inv_cdf(share) for share in (1 / 8, 3 / 8, 5 / 8, 7 / 8)])
@@ -33,8 +44,10 @@ FACTORS = np.array([NormalDist().inv_cdf(share) for share in (1 / 8, 3 / 8, 5 / 
 SMOOTHED = 0.4
 """Standard deviation that each of several atoms gets for what lies between it and its neighbours, over their distance:
 with less a fine reading would tell places apart by the teeth of a comb that is not there."""
-MOST = 128
-"""Most atoms of a problem: the heaviest."""
+OF_LENGTH = ("length_as_loop", "metres_for_feet")
+"""Doubtful records that a tape tells."""
+LARGER = ALTERNATIVES[4:]
+"""Doubtful records that a look at the conductor tells."""
 
 
 class Group(NamedTuple):
@@ -65,8 +78,10 @@ class Atoms:
     """(b, a): standard deviation about the size, or about the factor where there is no extra."""
     slip: Integers
     """(b, a): which slip, -1 for none."""
-    stretch: Floats
-    """(b, a): true length over the recorded one."""
+    wrong_length: Floats
+    """(b,): probability that a tape would show another length than the recorded one."""
+    wrong_conductor: Floats
+    """(b,): probability that the cable is of another size or metal than recorded."""
     ratios: Floats
     """(b, f, e of conductors): resistance over the recorded one under each hypothesis about the conductors."""
 
@@ -101,18 +116,20 @@ def atoms_of(judged: Judged, block: Block) -> Atoms:
         return np.concatenate(wide, axis=1)
 
     weight = column("weight")
-    kept = np.argsort(-weight.round(12), axis=1, kind="stable")[:, :MOST]
+    most = max(ATOMS, 2 * FEWEST_SIZES * len(block.shape.places))
+    kept = np.argsort(-weight.round(12), axis=1, kind="stable")[:, :most]
     heaviest = {name: np.take_along_axis(column(name), kept, axis=1) for name in _PLAIN}
     chosen = heaviest["weight"]
     whole = {name: heaviest[name].astype(np.int64) for name in ("conductor", "extra", "slip")}
     return Atoms(
         groups=groups,
-        shares=weight @ (group[:, None] == np.arange(len(groups))).astype(float),
+        shares=weight / weight.sum(axis=1, keepdims=True) @ (group[:, None] == np.arange(len(groups))).astype(float),
         weight=chosen / chosen.sum(axis=1, keepdims=True),
         group=group[kept],
         size=heaviest["size"],
         smoothed=heaviest["smoothed"],
-        stretch=heaviest["stretch"],
+        wrong_length=_probability(judged, (LONGER,), OF_LENGTH),
+        wrong_conductor=_probability(judged, (SMALLER, OTHER_METAL), LARGER),
         ratios=ratios,
         **whole,
     )
@@ -126,7 +143,7 @@ def _groups(shape: Shape) -> tuple[Group, ...]:
     return (*groups, *(Group(cause) for cause in CAUSES if cause not in (AS_RECORDED, BAD_CONNECTION, SEMICONDUCTOR)))
 
 
-_PLAIN = {"weight": 0.0, "conductor": 0.0, "extra": 0.0, "size": 0.0, "smoothed": 0.0, "slip": -1.0, "stretch": 1.0}
+_PLAIN = {"weight": 0.0, "conductor": 0.0, "extra": 0.0, "size": 0.0, "smoothed": 0.0, "slip": -1.0}
 """What an atom has where its hypothesis says nothing of it."""
 
 
@@ -154,7 +171,8 @@ def _extras(judged: Judged, shape: Shape) -> _Part:
     old = [*old_places, *(len(before.places) + n for n in old_offsets)]
     posterior = judged.posterior[:, [*judged.of_cause(BAD_CONNECTION), *judged.of_cause(SEMICONDUCTOR)]]
     weight = posterior[:, old] * np.array(split)
-    coordinate, distance = _strata(judged)
+    sizes = max(FEWEST_SIZES, min(MOST_SIZES, ATOMS // max(1, len(shape.places))))
+    coordinate, distance = _strata(judged, sizes)
     # the coordinate of a bad connection is the logarithm of its size, that of a semiconductor the size itself
     logarithmic = (np.arange(coordinate.shape[1]) < len(before.places))[:, None]
     size = np.where(logarithmic, np.exp(np.where(logarithmic, coordinate, 0.0)), coordinate)
@@ -163,22 +181,22 @@ def _extras(judged: Judged, shape: Shape) -> _Part:
     names += [Group(SEMICONDUCTOR, number) for number in range(len(shape.offsets))]
     count = len(judged.block)
     return _Part(
-        tuple(name for name in names for _ in range(SIZES)),
+        tuple(name for name in names for _ in range(sizes)),
         {
-            "weight": np.repeat(weight / SIZES, SIZES, axis=1),
-            "extra": np.repeat(np.arange(len(names)), SIZES)[None].astype(float),
+            "weight": np.repeat(weight / sizes, sizes, axis=1),
+            "extra": np.repeat(np.arange(len(names)), sizes)[None].astype(float),
             "size": size[:, old].reshape(count, -1),
             "smoothed": smoothed[:, old].reshape(count, -1),
         },
     )
 
 
-def _strata(judged: Judged) -> tuple[Floats, Floats]:
+def _strata(judged: Judged, sizes: int) -> tuple[Floats, Floats]:
     """Coordinates in the middle of equal shares of each size's posterior, and how wide each share is (b, places, s)."""
     density = judged.density
     below = density.cumulative().below
-    edges = np.clip(np.arange(SIZES + 1) / SIZES, TAIL, 1 - TAIL)
-    wanted = np.sort(np.concatenate([edges, (np.arange(SIZES) + 0.5) / SIZES]))
+    edges = np.clip(np.arange(sizes + 1) / sizes, TAIL, 1 - TAIL)
+    wanted = np.sort(np.concatenate([edges, (np.arange(sizes) + 0.5) / sizes]))
     step = (below[..., None, :] <= wanted[:, None]).sum(axis=-1).clip(1, len(UNIT_STEPS) - 1)
     low, high = (np.take_along_axis(below, step - back, axis=-1) for back in (1, 0))
     part = np.clip((wanted - low) / np.maximum(high - low, 1e-12), 0.0, 1.0)
@@ -210,16 +228,12 @@ def _conductors(judged: Judged, block: Block) -> tuple[Floats, _Part]:
     causes = [AS_RECORDED, *(name.cause for name in names[:singles])]
     causes += [name.cause for name in names[singles:] for _ in FACTORS]
     nothing = np.zeros((count, 1 + singles))
-    stretch = np.ones((count, len(causes)))
-    lengths = slice(1 + len(ALTERNATIVES), 1 + singles + len(FACTORS))
-    stretch[:, lengths] = ratios[:, lengths, 0]
     return ratios, _Part(
         tuple(Group(cause) for cause in causes),
         {
             "weight": np.concatenate([judged.posterior[:, :1], posterior[:, :singles], several], axis=1),
             "conductor": np.arange(len(causes), dtype=float)[None],
             "smoothed": np.concatenate([nothing, smoothed.reshape(count, -1)], axis=1),
-            "stretch": stretch,
         },
     )
 
@@ -229,3 +243,11 @@ def _slips(judged: Judged) -> _Part:
     count = len(judged.slips.hypotheses.names)
     numbers = np.arange(count, dtype=float)[None]
     return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, -count:], "slip": numbers})
+
+
+def _probability(judged: Judged, causes: tuple[str, ...], doubtful: tuple[str, ...]) -> Floats:
+    """Of some causes, with some of the ways in which the record may be doubtful (b,)."""
+    names = judged.hypotheses.names
+    ours = [name.cause in causes or (name.cause == DOUBTFUL and name.what in doubtful) for name in names]
+    found: Floats = judged.posterior[:, ours].sum(axis=1)
+    return found

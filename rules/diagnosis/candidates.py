@@ -25,6 +25,8 @@ from rules.rounds import Round
 
 SINGLE, AGAIN = "\x00single", "\x00again"
 """Names of the two imagined rounds: no cell holds a control code."""
+ABOUT_MOST = 0.9
+"""Rounds with this share of the most current count as rounds with the most."""
 JOINT, LEG, POINT = "joint", "leg", "point"
 """Kinds of single readings: across a termination or pole, along one leg, a voltage at a point not read yet."""
 
@@ -66,6 +68,22 @@ class Posed:
         design = self.case.tree.design_current_a.get(self.imagined.ends[branch])
         return abs(design / ampere) if design else 1.0
 
+    @property
+    def probed(self) -> tuple[int, float] | None:
+        """
+        The run at which a probe tells most of the temperature: its branch, and what share of the variance that comes
+        from the temperature would be left. ``None`` where every run was probed.
+        """
+        least, amps = self.case.limits["temperature_doubt.probe"], self.amps
+        volts = [
+            (each.positive_slope_ohm_per_k + each.negative_slope_ohm_per_k) * abs(amps.get(branch, 0.0))
+            for branch, each in enumerate(self.imagined.branches)
+        ]
+        doubts = [volt * each.temperature_u_k for volt, each in zip(volts, self.imagined.branches, strict=True)]
+        gains = [doubt - volt * least for doubt, volt in zip(doubts, volts, strict=True)]
+        best = max(range(len(gains)), key=gains.__getitem__)
+        return (best, (1 - gains[best] / sum(doubts)) ** 2) if gains[best] > 0 else None
+
     def rows_of(self, name: str) -> list[int]:
         """Rows of the imagined problem that stand in one of the two rounds."""
         state = self.imagined.rounds.index(name)
@@ -99,19 +117,31 @@ def posed(case: CircuitCase, meters: Meters) -> Posed | None:
     read = posed_by(case.context, measured)
     if read is None:
         return None
-    strongest = strongest_round(case)
-    currents = _currents(case, strongest, meters)
-    if not currents:
+    rounds = imagined_rounds(case, read, meters)
+    if not rounds:
         return None
-    rounds = (*case.rounds, _single(case, read, strongest, currents, meters), _again(case, strongest, currents))
-    imagined = posed_by(case.context, replace(measured, rounds=rounds))
+    imagined = posed_by(case.context, replace(measured, rounds=(*case.rounds, *rounds)))
     return None if imagined is None else Posed(case, read, imagined)
 
 
-def strongest_round(case: CircuitCase) -> Round | None:
-    """The round with the most current; ``None`` where none was read."""
-    clamped = [this for this in case.rounds if this.amps]
-    return max(clamped, key=lambda this: max(abs(_value(terms)) for terms in this.amps.values()), default=None)
+def imagined_rounds(case: CircuitCase, read: Problem, meters: Meters) -> tuple[Round, ...]:
+    """The round of single readings and the round that is read once more; none where no current is known."""
+    fullest = fullest_round(case)
+    currents = _currents(case, fullest, meters)
+    if not currents:
+        return ()
+    return _single(case, read, fullest, currents, meters), _again(case, fullest, currents)
+
+
+def fullest_round(case: CircuitCase) -> Round | None:
+    """
+    The round that others are imagined beside: of those with about the most current the one with the most readings;
+    ``None`` where no current was read.
+    """
+    most = {this.name: max((abs(_value(terms)) for terms in this.amps.values()), default=0.0) for this in case.rounds}
+    highest = max(most.values(), default=0.0)
+    near = [this for this in case.rounds if this.amps and most[this.name] >= ABOUT_MOST * highest]
+    return max(near, key=lambda this: len(this.readings), default=None)
 
 
 def voltmeter_of(case: CircuitCase, meters: Meters) -> str:
@@ -139,12 +169,12 @@ def _value(terms: tuple[Weighted, ...]) -> float:
     return sum(term.weight * term.shown.value for term in terms)
 
 
-def _currents(case: CircuitCase, strongest: Round | None, meters: Meters) -> dict[str, Shown]:
+def _currents(case: CircuitCase, fullest: Round | None, meters: Meters) -> dict[str, Shown]:
     """By the point at which a branch arrives: what the clamp shows there once more, or will show at design load."""
-    if strongest is not None:
+    if fullest is not None:
         return {
             point: replace(terms[0].shown, value=_value(terms), wander_u=0.0)
-            for point, terms in strongest.amps.items()
+            for point, terms in fullest.amps.items()
             if _value(terms)
         }
     for point, amperes in case.tree.design_current_a.items():
@@ -154,7 +184,7 @@ def _currents(case: CircuitCase, strongest: Round | None, meters: Meters) -> dic
 
 
 def _single(
-    case: CircuitCase, read: Problem, strongest: Round | None, currents: Mapping[str, Shown], meters: Meters
+    case: CircuitCase, read: Problem, fullest: Round | None, currents: Mapping[str, Shown], meters: Meters
 ) -> Round:
     """The round of single readings."""
     meter = voltmeter_of(case, meters)
@@ -178,8 +208,8 @@ def _single(
         along = shown_by(case, "drop", ohm * amperes, meter)
         for leg in LEGS:
             add("drop", start, end, leg, along)
-    between = _between(case, strongest, meter)
-    for start, end in _unread(case, strongest):
+    between = _between(case, fullest, meter)
+    for start, end in _unread(case, fullest):
         add("drop", start, end, "both", between)
     return _round(case, SINGLE, rows, currents)
 
@@ -206,18 +236,18 @@ def _stretches(case: CircuitCase) -> list[tuple[str, str, float]]:
     return [(start, end, ohm) for (start, end), ohm in found.items()]
 
 
-def _between(case: CircuitCase, strongest: Round | None, meter: str) -> Shown:
+def _between(case: CircuitCase, fullest: Round | None, meter: str) -> Shown:
     """The difference of two voltages by one meter: its gain acts on the difference, its counts come twice."""
-    volts = strongest.volts.values() if strongest is not None else ()
+    volts = fullest.volts.values() if fullest is not None else ()
     highest = max((abs(_value(terms)) for terms in volts), default=case.nominal_v or 0.0)
     shown = shown_by(case, "voltage", highest, meter)
-    wander_u = strongest.wander_v if strongest is not None else 0.0
+    wander_u = fullest.wander_v if fullest is not None else 0.0
     return replace(shown, value=0.0, each_u=2**0.5 * shown.each_u, wander_u=2**0.5 * wander_u)
 
 
-def _unread(case: CircuitCase, strongest: Round | None) -> list[tuple[str, str]]:
+def _unread(case: CircuitCase, fullest: Round | None) -> list[tuple[str, str]]:
     """Points without a voltage in the round with the most current, each behind the nearest point that has one."""
-    read = strongest.volts if strongest is not None else {}
+    read = fullest.volts if fullest is not None else {}
     found = []
     for point, run in case.tree.ends.items():
         closes = point == run.name  # a run that closes a mesh arrives at a point that another run reaches
@@ -231,15 +261,16 @@ def _unread(case: CircuitCase, strongest: Round | None) -> list[tuple[str, str]]
     return found
 
 
-def _again(case: CircuitCase, strongest: Round | None, currents: Mapping[str, Shown]) -> Round:
+def _again(case: CircuitCase, fullest: Round | None, currents: Mapping[str, Shown]) -> Round:
     """Every reading of the round with the most current once more."""
     kept: dict[tuple[str, str, str, str], Reading] = {}
-    for row in strongest.readings if strongest is not None else ():
+    for row in fullest.readings if fullest is not None else ():
         if row.quantity in ("voltage", "drop", "joint"):
             kept.setdefault((row.quantity, row.at, row.to, row.leg), row)
-    shown = strongest.shown if strongest is not None else {}
+    shown = fullest.shown if fullest is not None else {}
     rows = [
-        (replace(row, id=f"{AGAIN} {number}", round=AGAIN), shown[row.id]) for number, row in enumerate(kept.values())
+        (replace(row, id=f"{AGAIN} {number}", round=AGAIN), replace(shown[row.id]))
+        for number, row in enumerate(kept.values())
     ]
     return _round(case, AGAIN, rows, currents)
 

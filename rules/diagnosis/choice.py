@@ -14,7 +14,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from rules.diagnosis.atoms import Atoms, atoms_of
+from rules.diagnosis.atoms import OF_LENGTH, Atoms, atoms_of
 from rules.diagnosis.block import stacked
 from rules.diagnosis.bounds import heat_level, largest_level, rounded_down, rounded_up
 from rules.diagnosis.candidates import SINGLE, Posed
@@ -42,8 +42,6 @@ COVERED = 0.975
 """Upper bound of a suspected extra resistance: that of the central 95 %."""
 AS_TELLING = 0.3
 """Share of the largest fall below which an option does not stand in for one that is not conclusive."""
-OF_LENGTH = ("length_as_loop", "metres_for_feet")
-"""Doubtful records that a tape tells."""
 OF_READINGS = (ONE_READING, CURRENT_READING, SWAPPED, REVERSED, SEVERAL)
 """Slips that the same readings once more tell."""
 CONDUCTORS = (SMALLER, OTHER_METAL, LONGER)
@@ -132,6 +130,10 @@ def chosen(batch: Batch, number: int) -> Choice | None:
     forced = [option for option in order if _answers(batch, slip, options.ways[option])]
     if forced:
         return replace(_choice(batch, number, forced[0]), slip=slip)
+    # the record has no place for a size that proved right: a look comes where it will change the record, or comes last
+    look = Choice(-1, Way(LOOK, AS_IT_IS, minutes_of(LOOK, AS_IT_IS, batch.limits)), -1, None)
+    if batch.atoms.wrong_conductor[number] >= batch.limits["next_reading.look_at"]:
+        return look
     least = AS_TELLING * float(options.fall[number].max(initial=0.0))
     telling = [option for option in order if options.fall[number, option] >= least]
     first: Choice | None = None
@@ -144,7 +146,7 @@ def chosen(batch: Batch, number: int) -> Choice | None:
         return first  # nothing is conclusive: the most telling, at the most current that may flow
     if options.fall[number, option] >= batch.limits["next_reading.least_fall"] or not _conductors_lead(batch, number):
         return tried
-    return Choice(-1, Way(LOOK, AS_IT_IS, minutes_of(LOOK, AS_IT_IS, batch.limits)), -1, None)
+    return look
 
 
 def _conductors_lead(batch: Batch, number: int) -> bool:
@@ -183,8 +185,10 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
     mean = outlook.steady[number, row] + level * outlook.mean[number, row]
     variance = counts + level**2 * outlook.variance[number, row]
     pair = groups_apart(weight, group, mean[:, None], variance[:, None, None])
-    if way.kind in (LENGTH, TEMPERATURE):
+    if way.kind == TEMPERATURE:
         return Choice(option, way, row, pair)
+    if way.kind == LENGTH:
+        return Choice(option, way, row, _lengths_apart(batch, number))
     at = posed.rows_of(SINGLE)[row]
     needed = _conclusive(batch, number, row, counts, pair)
     if way.how == DEAD_TEST:
@@ -196,6 +200,17 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
     # an asked-for current has two digits; the load of the day is still reached if it rounds up to a little more
     reached_a = rounded_up(level * ampere)
     return Choice(option, way, at, pair, rounded_up(needed * ampere), reached_a, rounded_down(most * ampere))
+
+
+def _lengths_apart(batch: Batch, number: int) -> tuple[int, int] | None:
+    """A longer route and the most probable of the others; ``None`` where it is its doubt that a tape is for."""
+    shares, groups = batch.atoms.shares[number], batch.atoms.groups
+    longer = next(place for place, group in enumerate(groups) if group.cause == LONGER)
+    if shares[longer] < batch.limits["next_reading.suspected_at"]:
+        return None
+    return longer, max(
+        (place for place in range(len(groups)) if place != longer), key=lambda place: float(shares[place])
+    )
 
 
 def _conclusive(batch: Batch, number: int, row: int, counts: Floats, pair: tuple[int, int] | None) -> float:

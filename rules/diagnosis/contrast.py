@@ -8,24 +8,13 @@ outcomes of the two lie the profile's ``next_reading.apart`` standard uncertaint
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
 
 from rules.diagnosis.shape import Floats, Integers
 
-LOOKED_AT = 12
-"""Most groups that are compared: the most probable."""
-
-
-@dataclass(frozen=True, slots=True)
-class Contrast:
-    """Two groups, the first being the more probable, and how far apart they are."""
-
-    first: int
-    second: int
-    level: float
-    """Of the currents at which they are conclusively apart; infinite where no current does it."""
+LEAST = 1e-3
+"""Groups of less than this share of the most probable one's are left out."""
 
 
 def groups_apart(weight: Floats, group: Integers, mean: Floats, covariance: Floats) -> tuple[int, int] | None:
@@ -60,7 +49,8 @@ def groups_apart(weight: Floats, group: Integers, mean: Floats, covariance: Floa
     names, at = np.unique(group[there], return_inverse=True)
     member = (at[:, None] == np.arange(len(names))) * weight[:, None]
     share = member.sum(axis=0)
-    kept = np.argsort(-share, kind="stable")[:LOOKED_AT]
+    kept = np.argsort(-share, kind="stable")
+    kept = kept[share[kept] >= LEAST * share.max()]
     if len(kept) < 2:
         return None
     part = (member / share)[:, kept].T

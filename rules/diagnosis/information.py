@@ -3,8 +3,8 @@ How much an outcome that is not known yet will tell: the expected fall in entrop
 
 Each *atom* is one way in which things may be, with a weight and a Gaussian for the outcome; atoms of one *group* are
 not told apart in what is said afterwards. The fall is the mean, over outcomes, of the divergence of the groups'
-probabilities after the outcome from those before it (their mutual information), in nats. Outcomes are laid out, not
-drawn: the same question has the same answer. Written throughout: b problems, c candidates, a atoms, g groups.
+probabilities after the outcome from those before it (their mutual information), in nats. Outcomes are laid out the
+same way each time: the same question has the same answer. Written throughout: b problems, c candidates, a atoms, g groups.
 
 References
 ----------
@@ -26,8 +26,8 @@ OUTCOMES = 64
 """Outcomes of one row that stand for all."""
 SAMPLES = 192
 """Outcomes of several rows together that stand for all."""
-PLACES = np.array([NormalDist().inv_cdf(share) for share in (1 / 8, 3 / 8, 5 / 8, 7 / 8)])
-"""Where an atom's outcomes are looked for, in its standard deviations: each stands for a quarter."""
+TRIED = 512
+"""Outcomes among which those of one row are chosen; each atom has at least four."""
 TEMPERED = 0.5
 """Power of the weights by which outcomes are laid out: those of improbable atoms are looked at more often than they
 come, and count less for it."""
@@ -88,9 +88,10 @@ def _by_one(weight: Floats, member: Floats, mean: Floats, variance: Floats) -> F
     often = weight**TEMPERED
     often /= often.sum()
     spread = np.sqrt(variance)
-    tried = (mean[..., None] + spread[..., None] * PLACES).reshape(len(mean), -1)
+    places = _quantiles(max(4, TRIED // len(weight)))
+    tried = (mean[..., None] + spread[..., None] * places).reshape(len(mean), -1)
     order = tried.argsort(axis=-1)
-    below = np.repeat(often / len(PLACES), len(PLACES))[order].cumsum(axis=-1)
+    below = np.repeat(often / len(places), len(places))[order].cumsum(axis=-1)
     # one search for all candidates: each has its own whole number
     number = np.arange(len(mean))[:, None]
     steps = (np.arange(OUTCOMES) + 0.5) / OUTCOMES
@@ -158,22 +159,24 @@ def _fall(weight: Floats, often: Floats, member: Floats, density: Floats) -> Flo
 
 
 @lru_cache(maxsize=64)
+def _quantiles(count: int) -> Floats:
+    """The middles of so many equal shares of the standard normal."""
+    return np.array([NormalDist().inv_cdf((place + 0.5) / count) for place in range(count)])
+
+
+@lru_cache(maxsize=64)
 def normal_points(count: int, dimensions: int) -> Floats:
     """
-    Evenly laid points (count, dimensions) of independent standard normals.
+    Points (count, dimensions) that stand for independent standard normals: the same ones each time.
 
-    Multiples of powers of the root of ``x**(d + 1) = x + 1``, modulo one, through the inverse normal; moved and scaled
-    so that mean and variance are exact.
+    Each has its opposite, so that the mean is zero, and they are turned so that their covariance is the identity.
 
     >>> points = normal_points(192, 3)
-    >>> bool(np.allclose(points.mean(axis=0), 0)), bool(np.allclose(points.var(axis=0), 1))
+    >>> bool(np.allclose(points.mean(axis=0), 0)), bool(np.allclose(points.T @ points / 192, np.eye(3)))
     (True, True)
     """
-    root = 2.0
-    for _ in range(60):
-        root = (1 + root) ** (1 / (dimensions + 1))
-    steps = (1 / root) ** np.arange(1, dimensions + 1)
-    even = (0.5 + np.outer(np.arange(1, count + 1), steps)) % 1.0
-    normal = np.vectorize(NormalDist().inv_cdf)(even)
-    points: Floats = (normal - normal.mean(axis=0)) / normal.std(axis=0)
+    half = np.random.default_rng(20240101).standard_normal((count // 2, dimensions))
+    if dimensions < len(half):
+        half = half @ np.linalg.inv(np.linalg.cholesky(half.T @ half / len(half))).T
+    points: Floats = np.concatenate([half, -half])
     return points

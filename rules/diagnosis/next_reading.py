@@ -13,6 +13,7 @@ from collections.abc import Sequence
 
 from rules.assessment import NextReading
 from rules.case import CircuitCase
+from rules.diagnosis.atoms import ATOMS
 from rules.diagnosis.candidates import Meters, Posed, posed
 from rules.diagnosis.choice import chosen, looked_at
 from rules.diagnosis.first_reading import first_round, missing_record
@@ -20,8 +21,8 @@ from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, SE
 from rules.diagnosis.problem import Signature
 from rules.diagnosis.spoken import spoken
 
-TOGETHER = 24
-"""Most circuits that go through the arrays together: memory grows with this, not with the site."""
+ROOM = 2_500_000
+"""Numbers in the largest array of a batch: memory grows with this, not with the site."""
 
 
 def next_readings(cases: Sequence[CircuitCase]) -> list[NextReading | None]:
@@ -53,8 +54,9 @@ def next_readings(cases: Sequence[CircuitCase]) -> list[NextReading | None]:
                 looked[number] = this
                 alike[this.read.signature, this.imagined.signature].append(number)
     for group in alike.values():
-        for start in range(0, len(group), TOGETHER):
-            some = group[start : start + TOGETHER]
+        together = max(1, ROOM // _numbers(looked[group[0]]))
+        for start in range(0, len(group), together):
+            some = group[start : start + together]
             batch = looked_at([looked[number] for number in some], cases[some[0]].limits)
             for place, number in enumerate(some):
                 choice = chosen(batch, place)
@@ -70,3 +72,9 @@ def _is_settled(case: CircuitCase) -> bool:
     if causes[0].cause == AS_RECORDED:
         return all((place.heat or 0.0) < case.limits["decision.sound_heat_share"] for place in causes)
     return causes[0].cause not in (BAD_CONNECTION, SEMICONDUCTOR, DOUBTFUL)
+
+
+def _numbers(this: Posed) -> int:
+    """Numbers in the largest array that one circuit of this structure needs: atoms times rows times doubts."""
+    signature, places = this.imagined.signature, 4 * len(this.imagined.names)
+    return max(ATOMS, 4 * places) * len(signature.rows) * (signature.sources + signature.gains + places)

@@ -15,7 +15,7 @@ from rules.diagnosis.hypotheses import (
     SEMICONDUCTOR,
     SMALLER,
 )
-from rules.diagnosis.options import ADDED, DEAD_TEST, FINER, LESS, MORE, Way
+from rules.diagnosis.options import ADDED, DEAD_TEST, FINER, LENGTH, LESS, MORE, TEMPERATURE, Way
 from rules.diagnosis.problem import Observation
 
 CAUSE_WORDS = {
@@ -28,6 +28,11 @@ CAUSE_WORDS = {
     DOUBTFUL: "a doubtful reading or record",
 }
 """Causes as a sentence names them."""
+OTHERWISE = {
+    LENGTH: "the doubt of the length hides the rest",
+    TEMPERATURE: "the doubt of the temperature hides the rest",
+}
+"""What a reading is for that tells no two causes apart by itself."""
 BESIDE_WORDS = {
     FINER: "; the meter at hand is too coarse for it",
     DEAD_TEST: "; live, no current that may flow is enough",
@@ -75,7 +80,7 @@ def why_words(way: Way, at: Observation | None, pair: Sequence[Said], halves: bo
         return f"the {slip.words} does not fit"
     ordered = sorted(pair, key=lambda said: not said.touched)
     told = " from ".join(_words(said, way, at, ordered[0]) for said in ordered)
-    told = f"tells {told}" if told else "tells most for its effort"
+    told = f"tells {told}" if told else OTHERWISE.get(way.kind, "tells most for its effort")
     if halves:
         told = f"measure the middle first: {told}" if way.kind == POINT else f"{told}, and halves the suspected joints"
     return told + BESIDE_WORDS.get(way.how, "")

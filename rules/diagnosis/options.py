@@ -20,7 +20,7 @@ from rules.diagnosis.atoms import Atoms
 from rules.diagnosis.block import Block
 from rules.diagnosis.candidates import JOINT, LEG, POINT, SINGLE, Posed, kind_of
 from rules.diagnosis.hypotheses import BAD_CONNECTION, SEMICONDUCTOR
-from rules.diagnosis.information import fall_by_one, fall_by_several
+from rules.diagnosis.information import entropy, fall_by_one, fall_by_several
 from rules.diagnosis.outlook import Outlook
 from rules.diagnosis.shape import Floats, Integers, Shape
 from rules.limits import Limits
@@ -127,6 +127,10 @@ def options_of(
                 counts.append(variance.get(how, own))
     row, reached, counted = np.array(rows).T, np.array(levels).T, np.array(counts).T
     fall = _fall_by_one(atoms, outlook, row, np.nan_to_num(reached), counted)
+    # a length that proves wrong is put right in the record, and all is settled; else the tape leaves a smaller doubt
+    lengths = np.array([way.kind == LENGTH for way in ways])
+    wrong = atoms.wrong_length[:, None]
+    fall = np.where(lengths, wrong * entropy(atoms.shares)[:, None] + (1 - wrong) * fall, fall)
     if outlook.again_mean.shape[-1]:
         ways += [Way(ROUND, how, minutes_of(ROUND, how, limits)) for how in HOWS[ROUND]]
         of_rounds = np.stack([level[how] for how in HOWS[ROUND]], axis=1)
@@ -176,8 +180,7 @@ def _promise(posed: Sequence[Posed], block: Block, atoms: Atoms, kinds: Sequence
     joints = np.array([kind == JOINT for kind in kinds[: len(rows)]], dtype=bool)
     ohm = block.conductor @ shape.run_of.T
     lengths = np.where(block.length_u > limits["length_doubt.tape"], ohm * block.length_u, -1.0)
-    warm_u = np.array([max(branch.temperature_u_k for branch in each.imagined.branches) for each in posed])
-    warm = np.where(warm_u > limits["temperature_doubt.probe"], 1.0, -1.0)
+    warm = np.array([-1.0 if each.probed is None else 1.0 for each in posed])
     return np.concatenate([np.where(joints, share, share * (1 - share)), lengths, warm[:, None]], axis=1)
 
 

@@ -152,27 +152,25 @@ def _rows(block: Block, atoms: Atoms, posed: Sequence[Posed]) -> _Rows:
     steady = np.where(atoms.extra[..., None] >= len(shape.places), size * of_extra, 0.0)
     along = np.where(size > 0, of_extra, model.conductor_mean[:, :1])
     branches, first = len(shape.signature.branches), shared.shape[-1]
-    more = branches + 1
-    extended = np.zeros((*mean.shape[:2], more, columns.shape[-1]))
-    stretch = atoms.stretch[..., None]
-    extended[:, :, range(branches), first + np.arange(branches)] = stretch * block.length_u[:, None]
-    warm_u = np.array([[branch.temperature_u_k for branch in each.imagined.branches] for each in posed]).max(axis=1)
-    extended[:, :, branches, first + branches] = warm_u[:, None]
-    meters = np.full((len(block), more), block.limits["length_doubt.tape"] ** 2)
-    meters[:, branches] = block.limits["temperature_doubt.probe"] ** 2
+    # a tape tells by how much a length errs; what it says of a wrong length is reckoned apart (``options``)
+    extended = np.zeros((*mean.shape[:2], branches + 1, columns.shape[-1]))
+    extended[:, :, range(branches), first + np.arange(branches)] = block.length_u[:, None]
+    extended[:, :, branches, first + branches] = 1.0
+    left = np.array([0.5 if each.probed is None else each.probed[1] for each in posed])
+    meters = np.full((len(block), branches + 1), block.limits["length_doubt.tape"] ** 2)
+    meters[:, branches] = left / (1 - left)
     counts = (shape.difference * block.variance[:, None]) @ shape.difference.T
     counts = _bordered(counts, meters)
-    taped = np.concatenate([np.broadcast_to(stretch, (*mean.shape[:2], branches)), np.zeros((*mean.shape[:2], 1))], -1)
-    changed = (taped * (stretch != 1) > 0).astype(float)  # a range of lengths is smoothed along the length
+    nothing = np.zeros((*mean.shape[:2], branches + 1))
     clamp = np.zeros(columns.shape[-1])
     imagined = posed[0].imagined
     for read, said in zip(shape.signature.current_readings, imagined.current_readings, strict=True):
         clamp[shape.signature.gains + read.own] = said.round in (SINGLE, AGAIN)
     return _Rows(
-        mean=np.concatenate([mean, taped], axis=-1),
-        steady=np.concatenate([steady, np.zeros_like(taped)], axis=-1),
+        mean=np.concatenate([mean, nothing], axis=-1),
+        steady=np.concatenate([steady, nothing], axis=-1),
         columns=np.concatenate([columns, extended], axis=2),
-        direction=np.concatenate([along, changed], axis=-1),
+        direction=np.concatenate([along, nothing], axis=-1),
         own=_bordered(block.own, meters),
         counts=counts,
         clamp=clamp,

@@ -12,6 +12,7 @@ from rules.diagnosis.candidates import AGAIN, JOINT, LEG, POINT, SINGLE, Posed
 from rules.diagnosis.choice import Batch, Choice
 from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, SWAPPED
 from rules.diagnosis.hypotheses import BAD_CONNECTION
+from rules.diagnosis.information import LEAST, entropy
 from rules.diagnosis.next_cautions import caution_words
 from rules.diagnosis.next_words import Said, why_words
 from rules.diagnosis.options import DEAD_TEST, FINER, LENGTH, LOOK, ROUND, TEMPERATURE
@@ -22,8 +23,8 @@ from rules.record import Figure
 EVENLY = (0.3, 0.7)
 """Between these shares of what is suspected a reading halves it."""
 SINGLES = (JOINT, LEG, POINT)
-SUSPECTS = 4
-"""Fewer suspected places are not halved, but looked at."""
+SUSPECTS = 3
+"""So many suspected places are not halved, but looked at."""
 
 
 class _Asked(NamedTuple):
@@ -42,7 +43,10 @@ def spoken(batch: Batch, number: int, choice: Choice) -> NextReading:
     """A choice in the format's words."""
     asked = _asked(batch, number, choice)
     if choice.way.kind == LOOK:
-        why = "no reading tells size, metal and length apart any further"
+        probable = batch.atoms.wrong_conductor[number] >= batch.limits["next_reading.look_at"]
+        why = (
+            "another size or metal is probable" if probable else "no reading tells size, metal and length apart further"
+        )
     else:
         at = batch.posed[number].observation(choice.row) if choice.way.kind in SINGLES else None
         pair = [_place(batch, number, choice, group) for group in choice.pair or ()]
@@ -82,9 +86,8 @@ def _asked(batch: Batch, number: int, choice: Choice) -> _Asked:
     if way.kind == LENGTH:
         return _Asked("length", at=posed.imagined.names[choice.row - len(posed.rows_of(SINGLE))])
     branches = posed.imagined.branches
-    if way.kind == TEMPERATURE:
-        warm = [(b.positive_slope_ohm_per_k + b.negative_slope_ohm_per_k) * b.temperature_u_k for b in branches]
-        return _Asked("temperature", "temperature", posed.imagined.names[warm.index(max(warm))])
+    if way.kind == TEMPERATURE and posed.probed is not None:
+        return _Asked("temperature", "temperature", posed.imagined.names[posed.probed[0]])
     ohms = [0.0 if n == DEVICE else b.positive_ohm for n, b in zip(posed.imagined.names, branches, strict=True)]
     besides = "read the print on the sheath and look at the strands"
     return _Asked("reading", at=posed.imagined.names[ohms.index(max(ohms))], besides=besides)
@@ -137,6 +140,6 @@ def _halves(batch: Batch, number: int, choice: Choice) -> bool:
     bad = np.array([group.cause == BAD_CONNECTION for group in batch.atoms.groups])
     whole = float(shares[bad].sum())
     inside = np.array(_touched(batch, choice)) & bad
-    suspects = int((shares[bad] > batch.limits["next_reading.suspected_at"] * whole).sum())
+    suspects = float(np.exp(entropy(shares[bad] / max(whole, LEAST))))  # as many as equal ones would be
     evenly = EVENLY[0] * whole <= float(shares[inside].sum()) <= EVENLY[1] * whole
-    return whole > 0.5 and suspects >= SUSPECTS and evenly and choice.way.kind in (LEG, POINT)
+    return whole > 0.5 and suspects > SUSPECTS and evenly and choice.way.kind in (LEG, POINT)

@@ -48,6 +48,12 @@ def plain_slips() -> ModuleType:
 
 
 @pytest.fixture(scope="session")
+def chains() -> ModuleType:
+    """Chains of runs as sites."""
+    return module("rules/diagnosis/chains.py")
+
+
+@pytest.fixture(scope="session")
 def trial() -> ModuleType:
     """The blind trial."""
     return module("trial/trial.py")
