@@ -7,7 +7,7 @@ for each keystroke; ``assess`` is ``prepare``, every circuit, and the rules abou
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 from importlib.metadata import version
 
@@ -39,8 +39,12 @@ def assess(site: Site, limits: Limits) -> Assessment:
     return assess_prepared(prepare(site, limits))
 
 
-def assess_prepared(context: Context) -> Assessment:
-    """Everything that can be said of a prepared site."""
+def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], object] | None = None) -> Assessment:
+    """
+    Everything that can be said of a prepared site.
+
+    ``told``, where given, gets the circuits' results as they come, in walking order; what it raises ends the judging.
+    """
     site, limits, index = context.site, context.limits, context.index
     findings, gaps = judge(SiteCase(context), "site")
     gaps = [*switched_off(limits), *gaps]
@@ -56,7 +60,10 @@ def assess_prepared(context: Context) -> Assessment:
     results: list[CircuitResult] = []
     for start in range(0, len(index.walked_circuits), TOGETHER):
         some = index.walked_circuits[start : start + TOGETHER]
-        results += _followed([_judged(context, circuit, None, of_circuit.get(circuit.tag, ())) for circuit in some])
+        judged = _followed([_judged(context, circuit, None, of_circuit.get(circuit.tag, ())) for circuit in some])
+        results += judged
+        if told is not None:
+            told(judged)
     for result in results:
         findings += [finding for finding in result.findings if finding not in of_circuit.get(result.circuit, ())]
         gaps += result.not_judged

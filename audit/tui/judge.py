@@ -8,12 +8,13 @@ from __future__ import annotations
 
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 
 from textual.message import Message
 
 from audit.tui.messages import Assessed, Crashed, Judged, Troubled
+from rules.assessment import CircuitResult
 from rules.errors import RulesError
 from rules.record import Site
 
@@ -26,6 +27,10 @@ class _Request:
     site: Site
     first: tuple[str, ...]
     """Ids of the circuits that are wanted first."""
+
+
+class _Outdated(Exception):
+    """Something newer is asked for."""
 
 
 class Judge(threading.Thread):
@@ -68,7 +73,7 @@ class Judge(threading.Thread):
             request, self._request = self._request, None
             return None if self._stopped else request
 
-    def _is_outdated(self, wait_s: float) -> bool:
+    def _is_outdated(self, wait_s: float = 0.0) -> bool:
         """Whether something newer is asked for, or comes within a while."""
         with self._news:
             return self._news.wait_for(lambda: self._stopped or self._request is not None, wait_s)
@@ -78,17 +83,21 @@ class Judge(threading.Thread):
         from rules import limits
         from rules.assess import assess_circuit, assess_prepared, prepare
 
+        def tell(results: Iterable[CircuitResult]) -> None:
+            if self._is_outdated():
+                raise _Outdated
+            self._post(Judged(request.site, context, {result.circuit_id: result for result in results}))
+
         try:
-            in_force = limits.of(request.site)
-            context = prepare(request.site, in_force)
-            wanted = [context.index.circuits[id_] for id_ in request.first if id_ in context.index.circuits]
-            results = {circuit.id: assess_circuit(context, circuit) for circuit in wanted}
-            self._post(Judged(request.site, context, results))
-            if self._is_outdated(min(self._last_took_s, LONGEST_WAIT_S)):
-                return
-            start = time.monotonic()
-            assessment = assess_prepared(context)
-            self._last_took_s = time.monotonic() - start
-            self._post(Assessed(request.site, context, assessment))
+            context = prepare(request.site, limits.of(request.site))
+            circuits = context.index.circuits
+            tell([assess_circuit(context, circuits[id_]) for id_ in request.first if id_ in circuits])
+            if not self._is_outdated(min(self._last_took_s, LONGEST_WAIT_S)):
+                start = time.monotonic()
+                assessment = assess_prepared(context, tell)
+                self._last_took_s = time.monotonic() - start
+                self._post(Assessed(request.site, context, assessment))
+        except _Outdated:
+            return
         except RulesError as error:
             self._post(Troubled(str(error).replace("\n", "; ")))

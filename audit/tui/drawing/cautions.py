@@ -20,9 +20,9 @@ def bare_caution_lines(cautions: Iterable[Caution], highest_v: float, width: int
     volts = f"The highest voltage in the record is {show(highest_v, 'V')} d.c." if highest_v else ""
     lines: list[Line] = [(piece(f" {volts or 'No voltage is recorded yet.'}", "act"),), ()]
     for caution in cautions:
-        lines += [*wrapped(caution.text, width - 2, 3, "", " ! "), *_source(caution, width), ()]
+        lines += [*wrapped(caution.text, width - 1, 3, "", " ! "), *_source(caution, width)]
     return lines
 
 
 def _source(caution: Caution, width: int) -> list[Line]:
-    return wrapped(str(caution.source), width - 2, 3, "quiet")
+    return wrapped(str(caution.source), width - 1, 3, "quiet")

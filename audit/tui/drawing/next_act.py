@@ -44,27 +44,43 @@ def next_act(survey: Survey, here: str, following: Iterable[str]) -> NextAct | N
         if number > _PATIENCE:
             break
         result = survey.results.get(circuit_id)
-        words = "" if result is None else need(survey, result)
-        if words and result is not None:
-            return NextAct(circuit_id, f"{result.circuit}: {_lowered(words)}")
+        wanted = None if result is None or (number > 0 and _is_left_out(survey, circuit_id)) else need(survey, result)
+        if wanted is not None and result is not None:
+            key = f" ({wanted.key})" if wanted.key else ""
+            return NextAct(circuit_id, f"{result.circuit}{key}: {_lowered(wanted.words)}")
     return None
 
 
-def need(survey: Survey, result: CircuitResult) -> str:
-    """What a circuit wants done; empty where it wants nothing."""
+def _is_left_out(survey: Survey, circuit_id: str) -> bool:
+    """Whether a reason is recorded why a circuit was not measured: it is not asked for again and again."""
+    circuit = survey.index.circuits.get(circuit_id)
+    return circuit is not None and bool(circuit.not_tested)
+
+
+@dataclass(frozen=True, slots=True)
+class Need:
+    """What a circuit wants done."""
+
+    words: str
+    key: str = ""
+    """The key that does it."""
+
+
+def need(survey: Survey, result: CircuitResult) -> Need | None:
+    """What a circuit wants done: danger first, then what tells most; ``None`` where it wants nothing."""
     urgent = [finding for finding in result.findings if finding.severity is Severity.IMMEDIATE]
     if urgent:
-        return f"{_lowered(urgent[0].title)}: {_lowered(urgent[0].remedy)}"
-    if result.next_reading is not None:
-        return next_reading_words(result.next_reading)
+        return Need(f"{_lowered(urgent[0].title)}: {_lowered(urgent[0].remedy)}")
+    following = result.next_reading
+    if following is not None:
+        measured = following.what == "round" or following.quantity == "voltage"
+        return Need(next_reading_words(following), "m" if measured else "o" if following.quantity else "e")
     if result.status is Status.INCOMPLETE:
-        return f"{result.why}: e enters it"
-    circuit = survey.index.circuits.get(result.circuit_id)
-    if result.circuit_id not in survey.read_now and circuit is not None and not circuit.not_tested:
-        points = survey.index.points_of(result.circuit_id)
-        return f"current, then the voltage at {_points(points)}: m measures"
+        return Need(result.why, "e")
+    if result.circuit_id not in survey.read_now:
+        return Need(f"current, then the voltage at {_points(survey.index.points_of(result.circuit_id))}", "m")
     soon = [finding for finding in result.findings if finding.severity is Severity.SOON]
-    return soon[0].remedy if soon else ""
+    return Need(soon[0].remedy) if soon else None
 
 
 def _lowered(sentence: str) -> str:

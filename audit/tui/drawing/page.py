@@ -92,7 +92,7 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
     """
     circuit, result = view.circuit, view.result
     lines = [head_line(circuit, result, width, is_typing=view.is_typing), ()]
-    lines += _sketch(survey, view, width)
+    lines += circuit_sketch(survey, view, width)
     if result is None:
         return [cut(one, width) for one in (*lines, (), (Piece("   judging …", "quiet"),))]
     lines += _verdict(result, width)
@@ -127,7 +127,8 @@ def _section(name: str, lines: list[Line]) -> list[Line]:
     return [(), (piece(f" {name}", "quiet"),), *lines]
 
 
-def _sketch(survey: Survey, view: CircuitView, width: int) -> list[Line]:
+def circuit_sketch(survey: Survey, view: CircuitView, width: int) -> list[Line]:
+    """The circuit from left to right, what was read above what is computed."""
     result = view.result or CircuitResult(view.circuit.tag, view.circuit.id, "", Status.MEASURE, "")
     drawn = circuit_line(survey.index, view.circuit, result)
     if drawn is None:
@@ -173,11 +174,13 @@ def _volts(view: CircuitView) -> dict[str, tuple[float, ...]]:
 
 def _verdict(result: CircuitResult, width: int) -> list[Line]:
     words = drop_words(result)
-    bar = piece(text_bar(words.bar, 24), "act" if words.bar is not None and words.bar.past else "bar")
+    bar = piece(
+        text_bar(words.bar, 24 if width > 100 else 16), "act" if words.bar is not None and words.bar.past else "bar"
+    )
     state = f"computed {words.computed or 'not known'}"
     if (drop := result.drop) is not None:
         amps = show(drop.current.value, drop.current.unit, digits=3)
-        state += f", {drop.start} to {drop.end} at {amps}, round {drop.round}"
+        state += f", {drop.start} to {drop.end}, {amps}, round {drop.round}"
     elif result.design_drop is not None:
         state += " at design load"
     lines: list[Line] = [()]

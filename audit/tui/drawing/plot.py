@@ -62,7 +62,7 @@ class Plot:
         for (left, right), (left_up, right_up) in zip(pairwise(low), pairwise(high), strict=True):
             for x in range(left[0], right[0] + 1):
                 share = (x - left[0]) / max(1, right[0] - left[0])
-                bottom = left[1] + (right[1] - left[1]) * share
+                bottom = left[1] + (right[1] - left[1]) * share + 1  # to the lower edge of its dot
                 top = left_up[1] + (right_up[1] - left_up[1]) * share
                 for y in range(int(top) // 4, int(bottom) // 4 + 1):
                     if min(bottom, 4 * y + 4) - max(top, 4 * y) >= _DOTS_COVERED:

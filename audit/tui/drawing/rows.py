@@ -23,6 +23,8 @@ class Item:
     table: str
     id: str = ""
     heading: str = ""
+    is_empty: bool = False
+    """No row stands under the heading."""
 
     @property
     def is_choosable(self) -> bool:
@@ -32,32 +34,33 @@ class Item:
 def circuit_items(index: Index, circuit_id: str) -> tuple[Item, ...]:
     """The circuit's own row, its runs and its loads."""
     return (
-        Item("circuits", heading="circuit"),
-        Item("circuits", circuit_id),
-        Item("runs", heading="runs"),
-        *(Item("runs", run.id) for run in index.runs_of(circuit_id)),
-        Item("loads", heading="loads"),
-        *(Item("loads", load.id) for load in index.loads_of(circuit_id)),
+        *_section("circuits", "circuit", [circuit_id]),
+        *_section("runs", "runs", [run.id for run in index.runs_of(circuit_id)]),
+        *_section("loads", "loads", [load.id for load in index.loads_of(circuit_id)]),
     )
 
 
 def site_items(site: Site) -> tuple[Item, ...]:
     """The settings, sources, boards, meters and visits."""
-    items = [Item(SITE, heading="site"), Item(SITE)]
+    items = [*_section(SITE, "site", [""])]
     for table, heading in (
         ("sources", "sources"),
         ("boards", "boards"),
         ("instruments", "meters"),
         ("visits", "visits"),
     ):
-        items += [Item(table, heading=heading), *(Item(table, row.id) for row in site.table(table))]
+        items += _section(table, heading, [row.id for row in site.table(table)])
     return tuple(items)
+
+
+def _section(table: str, heading: str, ids: list[str]) -> list[Item]:
+    return [Item(table, heading=heading, is_empty=not ids), *(Item(table, id_) for id_ in ids)]
 
 
 def item_line(item: Item, row: Row | Site | None, index: Index, width: int, *, chosen: bool) -> Line:
     """One line: a tag, and the rest in a few words."""
     if item.heading:
-        return (piece(f" {item.heading}", "strong"),)
+        return (piece(f" {item.heading}", "strong"), piece("   none: a adds one" if item.is_empty else "", "quiet"))
     if row is None:
         return ()
     mark = Piece(f"   {CHOSEN if chosen else ' '} ", "cursor")

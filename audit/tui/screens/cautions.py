@@ -21,6 +21,7 @@ class CautionScreen(OurScreen[bool]):
     CSS_PATH = "cautions.tcss"
     BINDINGS: ClassVar[list[BindingType]] = [
         Binding("y", "acknowledge", "I have read this and may do it"),
+        Binding("question_mark", "help", "help", key_display="?", tooltip="what the keys do, and the cautions"),
         Binding("escape", "leave", "not now", key_display="Esc"),
     ]
 

@@ -8,6 +8,7 @@ from textual import on
 from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 
+from audit.tui.drawing.page import circuit_sketch, view_of
 from audit.tui.drawing.pieces import piece
 from audit.tui.drawing.rows import Item, circuit_items, row_title, site_items
 from audit.tui.screens import changing
@@ -40,6 +41,7 @@ class RowsScreen(OurScreen[None]):
 
     def compose(self) -> ComposeResult:
         yield FewLines(id="title")
+        yield FewLines(id="sketch")
         yield RowList(id="rows")
         yield FewLines(id="said")
         yield KeysLine()
@@ -58,6 +60,9 @@ class RowsScreen(OurScreen[None]):
             row_title("circuits", circuit, survey.index) if circuit is not None else f"the record of {survey.site.name}"
         )
         self.query_one("#title", FewLines).say(lambda width: [(piece(f" {name}", "strong"),)])
+        view = view_of(survey, circuit.id) if circuit is not None else None
+        if view is not None:
+            self.query_one("#sketch", FewLines).say(lambda width: circuit_sketch(survey, view, width))
         items = circuit_items(survey.index, circuit.id) if circuit is not None else site_items(survey.site)
         self.query_one(RowList).show(survey, items)
 

@@ -69,9 +69,12 @@ class EntryStrip(Widget):
     }
     """
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("up,shift+tab", "back", "back", key_display="↑"),
-        Binding("down,tab", "ahead", show=False),
-        Binding("escape", "leave", "leave", key_display="Esc"),
+        Binding(
+            "up,shift+tab", "back", "back", key_display="↑", tooltip="the cell before: a value typed over corrects"
+        ),
+        Binding("down,tab", "ahead", "the next cell, as Enter", show=False, key_display="↓"),
+        Binding("f1", "screen.help", "help", key_display="?", tooltip="what the keys do, and the cautions"),
+        Binding("escape", "leave", "leave", key_display="Esc", tooltip="leave; what was not accepted is given up"),
     ]
 
     survey: reactive[Survey | None] = reactive(None, init=False)

@@ -26,7 +26,7 @@ from audit.tui.drawing.walk import head_line, reason_line, stop_line, tag_cells,
 from audit.tui.entry.fields import row_of
 from audit.tui.state import Survey, latest_visit, read_by_visit
 from rules.assess import assess, prepare
-from rules.assessment import NextReading, Place
+from rules.assessment import NextReading, Place, Status
 from rules.index import Index
 from rules.limits import of
 from rules.record import Circuit, Figure, Load, Run, Site, Source
@@ -272,13 +272,28 @@ def test_causes_are_bars_with_their_place_and_resistance() -> None:
 
 
 def test_the_next_act_begins_at_the_cursor() -> None:
-    survey = survey_of(HUT)
-    act = next_act(survey, "c2", ["c1"])
+    act = next_act(survey_of(HUT), "c2", ["c1"])
     assert act is not None
-    assert (act.circuit_id, act.words) == (
-        "c2",
-        "DB1-02: a round with its current: voltages from way to p2, at 0.85 A or more, at most 19 A",
-    )
+    assert act.circuit_id == "c2"
+    assert act.words.startswith("DB1-02 (m): a round with its current")
+
+
+def test_a_circuit_that_is_settled_wants_to_be_read_on_a_new_visit() -> None:
+    survey = survey_of(HUT)
+    settled = replace(survey.results["c2"], next_reading=None, status=Status.SOUND)
+    survey = replace(survey, results={"c2": settled})
+    act = next_act(survey, "c2", [])
+    assert act is not None
+    assert act.words == "DB1-02 (m): current, then the voltage at way, p1, p2"
+    assert next_act(replace(survey, read={survey.visit: frozenset({"c2"})}), "c2", []) is None
+
+
+def test_a_circuit_that_could_not_be_measured_is_not_asked_for_again() -> None:
+    site = replace(HUT, circuits=(HUT.circuits[0], replace(HUT.circuits[1], not_tested="locked")))
+    survey = survey_of(site)
+    survey = replace(survey, results={"c2": survey.results["c2"]})
+    assert next_act(survey, "c1", ["c2"]) is None
+    assert next_act(survey, "c2", []) is not None
 
 
 def test_a_reading_that_the_judgement_asks_for_goes_before_all_but_danger() -> None:
@@ -287,7 +302,7 @@ def test_a_reading_that_the_judgement_asks_for_goes_before_all_but_danger() -> N
     survey = replace(survey, results={"c1": replace(survey.results["c1"], next_reading=wanted)})
     act = next_act(survey, "c1", [])
     assert act is not None
-    assert act.words == "DB1-01: millivolts across run 1 end, positive leg, at 4 A or more"
+    assert act.words == "DB1-01 (o): millivolts across run 1 end, positive leg, at 4 A or more"
 
 
 def test_nothing_is_next_where_nothing_is_judged() -> None:

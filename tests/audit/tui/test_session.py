@@ -190,13 +190,15 @@ def judge() -> Iterator[tuple[Judge, Told]]:
 def test_what_is_in_sight_is_judged_first_then_all() -> None:
     with judge() as (thread, told):
         thread.judge(HUT, ("c2", "gone"))
-        first, rest = told.next(), told.next()
+        first, rest, whole = told.next(), told.next(), told.next()
         assert isinstance(first, Judged)
         assert list(first.results) == ["c2"]
         assert first.site is HUT
-        assert isinstance(rest, Assessed)
-        assert [result.circuit_id for result in rest.assessment.circuits] == ["c1", "c2"]
-        assert rest.assessment.circuits[1] == first.results["c2"]
+        assert isinstance(rest, Judged)
+        assert list(rest.results) == ["c1", "c2"]
+        assert isinstance(whole, Assessed)
+        assert [result.circuit_id for result in whole.assessment.circuits] == ["c1", "c2"]
+        assert whole.assessment.circuits[1] == first.results["c2"]
 
 
 def test_only_the_newest_record_is_judged_whole(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -209,11 +211,32 @@ def test_only_the_newest_record_is_judged_whole(monkeypatch: pytest.MonkeyPatch)
         assert isinstance(first, Judged)
         thread._last_took_s = 0.0
         thread.judge(newer, ("c1",))
-        second, whole = told.next(), told.next()
+        second, third, whole = told.next(), told.next(), told.next()
         assert isinstance(second, Judged)
-        assert second.site is newer
+        assert isinstance(third, Judged)
         assert isinstance(whole, Assessed)
-        assert whole.site is newer
+        assert second.site is third.site is whole.site is newer
+
+
+def test_a_judgement_ends_where_something_newer_is_asked_for(monkeypatch: pytest.MonkeyPatch) -> None:
+    """A site of 10,000 circuits takes minutes; what was just saved must not wait for them."""
+    monkeypatch.setattr("rules.assess.TOGETHER", 1)
+    newer = replace(HUT, name="Newer")
+    with judge() as (thread, told):
+
+        def post(message: Message) -> None:
+            if isinstance(message, Judged) and list(message.results) == ["c1"] and message.site is HUT:
+                thread.judge(newer, ())
+            told(message)
+
+        thread._post = post
+        thread.judge(HUT, ())
+        heard = [told.next()]
+        while not isinstance(heard[-1], Assessed):
+            heard.append(told.next())
+        of_first = [message for message in heard if isinstance(message, Judged) and message.site is HUT]
+        assert [list(message.results) for message in of_first] == [[], ["c1"]]
+        assert heard[-1].site is newer
 
 
 def test_limits_that_are_not_there_are_told() -> None:

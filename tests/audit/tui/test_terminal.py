@@ -103,7 +103,7 @@ def test_a_circuit_is_added_and_read_and_nothing_accepted_is_lost_when_the_termi
     terminal.keys("a", "l", "Enter", "Enter", "=2", "Enter")
     terminal.shows("power: ")
     terminal.keys("Escape")
-    terminal.shows("next: T-01: a round with its current: voltages from way to p1")
+    terminal.shows("next: T-01 (m): a round with its current")
 
     terminal.keys("m")
     terminal.shows("Readings belong to")
