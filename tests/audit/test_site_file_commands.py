@@ -532,7 +532,12 @@ def test_a_file_that_may_not_be_written_is_read_but_not_changed(site: Path, plan
     (plant / "visits.csv").write_text("visit,kind\nlater,as left\n", encoding="utf-8")
     visits = str(plant / "visits.csv")
     table = (plant / "visits.csv").read_bytes()
-    done(["intake", str(site), visits, "--dry-run"], capsys)  # whatever is needed is imported by now
+    # whatever is needed is imported by now: nobody may not be allowed to read where the program lies
+    done(["intake", str(site), visits, "--dry-run"], capsys)
+    done(["check", str(site)], capsys)
+    done(["unload", str(site), str(plant.parent / "warm")], capsys)
+    done(["backup", str(site), "--to", str(plant.parent / "warm.ohmwalk")], capsys)
+    done(["demo", "--no-open", "--to", str(plant.parent / "warm-demo.ohmwalk")], capsys)
     with tempfile.TemporaryDirectory() as name:
         shared = Path(name)
         (shared / "visits.csv").write_bytes(table)
