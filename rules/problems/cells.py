@@ -23,8 +23,6 @@ LARGEST = {"V": 10_000, "A": 100_000, "ohm": 1e12, "degC": 2_000}
 """Largest size of a reading, a range, a resolution or a zero, by unit: our own bounds, as in ``rules.record``."""
 SMALLEST = 1e-12
 """Smallest size of a range or a resolution, in any unit."""
-NEAREST_ZERO = 1e-100
-"""Smallest size of any number but 0: the square of a smaller one is lost in rounding, and dividing by it fails."""
 _DATE_PART = re.compile(r"[0-9W-]+(?:[T ]|$)")
 """Python itself takes any character between date and time."""
 
@@ -150,9 +148,7 @@ def _accepted_number(column: Column, unit: str) -> str:
 
 
 def number_complaint(value: float, column: Column) -> Complaint:
-    """What is wrong with a number: not finite, too near to 0, or outside the column's bounds."""
-    if 0 < abs(value) < NEAREST_ZERO:
-        return f"{value:.12g} is too near to 0", f"0, or a number of at least {NEAREST_ZERO:g} in size"
+    """What is wrong with a number: not finite, or outside the column's bounds."""
     fits = (
         math.isfinite(value)
         and (column.least is None or value >= column.least)
