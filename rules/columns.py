@@ -63,7 +63,7 @@ def notes() -> Any:
 
 
 def order() -> Any:
-    return number("order", least=-1e9, most=1e9)
+    return number("order")
 
 
 def circuit() -> Any:

@@ -5,24 +5,19 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Callable, Iterator
-from dataclasses import replace
 from datetime import date, datetime
 from operator import attrgetter
 from typing import Any, TypeAlias
 
 from rules.columns import Column, ColumnKind
 from rules.problems.problem import Problem
-from rules.record import TABLES, UNIT_OF_QUANTITY, Row, Run, Site, columns
+from rules.record import TABLES, Row, Run, Site, columns
 from rules.tables.conductors import is_known, neighbours
 from rules.text import MOST_CHARACTERS, either, forbidden_character, nearest, quoted
 
 Complaint: TypeAlias = tuple[str, str] | None
 """What is wrong, and what is accepted; ``None`` where nothing is wrong."""
 
-LARGEST = {"V": 10_000, "A": 100_000, "ohm": 1e12, "degC": 2_000}
-"""Largest size of a reading, a range, a resolution or a zero, by unit: our own bounds, as in ``rules.record``."""
-SMALLEST = 1e-12
-"""Smallest size of a range or a resolution, in any unit."""
 _DATE_PART = re.compile(r"[0-9W-]+(?:[T ]|$)")
 """Python itself takes any character between date and time."""
 
@@ -33,8 +28,6 @@ def cell_problems(site: Site) -> Iterator[Problem]:
         rows = site.table(table)
         for name, column in columns(table):
             yield from _column_problems(table, name, column, rows)
-            if column.unit == "*":
-                yield from _quantity_problems(table, name, column, rows)
         yield from _typed_problems(table, rows)
 
 
@@ -95,31 +88,6 @@ def _may_be_wrong(value: Any, column: Column, check: Callable[[Any, Column], Com
     return column.filled if is_empty else check(value, column) is not None
 
 
-def _quantity_problems(table: str, name: str, column: Column, rows: tuple[Row, ...]) -> Iterator[Problem]:
-    """Numbers in the unit of their row's quantity that are far beyond what can be."""
-    quantity_of, value_of = attrgetter("quantity"), attrgetter(name)
-    wrong = {
-        pair for pair in set(zip(map(quantity_of, rows), map(value_of, rows), strict=True)) if _is_far(*pair, column)
-    }
-    if not wrong:
-        return
-    for row in rows:
-        quantity, value = quantity_of(row), value_of(row)
-        if (quantity, value) in wrong and number_complaint(value, column) is None:
-            unit = UNIT_OF_QUANTITY[quantity]
-            bounds = replace(column, unit=unit, least=-LARGEST[unit], most=LARGEST[unit])
-            if column.above is not None:
-                bounds = replace(bounds, least=SMALLEST, above=None)
-            yield Problem(table, row.id, column.name, f"{value:.12g} {unit} is not possible", accepted(bounds))
-
-
-def _is_far(quantity: str, value: float | None, column: Column) -> bool:
-    unit = UNIT_OF_QUANTITY.get(quantity)
-    if unit is None or value is None:
-        return False
-    return abs(value) > LARGEST[unit] or (column.above is not None and 0 < value < SMALLEST)
-
-
 def _ends_on_board(row: Row, name: str) -> bool:
     return isinstance(row, Run) and name == "to_point" and bool(row.to_board_id)
 
@@ -139,12 +107,12 @@ def _accepted_number(column: Column, unit: str) -> str:
     if unit:
         words += f" in {unit}"
     if column.least is not None and column.most is not None:
-        return f"{words} from {column.least:.12g} to {column.most:.12g}"
+        return f"{words} from {column.least:g} to {column.most:g}"
     if column.least is not None:
-        words += f", {column.least:.12g} or more"
+        words += f", {column.least:g} or more"
     if column.above is not None:
-        words += f" above {column.above:.12g}"
-    return words if column.most is None else f"{words} and at most {column.most:.12g}"
+        words += f" above {column.above:g}"
+    return words if column.most is None else f"{words} and at most {column.most:g}"
 
 
 def number_complaint(value: float, column: Column) -> Complaint:

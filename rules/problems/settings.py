@@ -28,7 +28,7 @@ SETTINGS: dict[str, tuple[str, Column]] = {
     "name": ("name", Column("name", header=True, filled=True)),
     "address": ("address", Column("address")),
     "limits": ("limits", Column("limits", filled=True)),
-    "nominal": ("nominal_voltage_v", Column("nominal", "number", unit="V", least=1e-3, most=10_000)),
+    "nominal": ("nominal_voltage_v", Column("nominal", "number", unit="V", above=0)),
     "ambient": ("ambient_temperature_c", Column("ambient", "number", unit="degC", least=-90, most=400)),
     "surveyed_by": ("surveyed_by", Column("surveyed_by")),
     "extent": ("extent", Column("extent")),
