@@ -92,11 +92,11 @@ def test_a_circuit_is_added_and_read_and_nothing_accepted_is_lost_when_the_termi
     assert opened[0].startswith(" Beispielhausen exchange (invented)")
 
     # To a terminal, Escape with a letter right behind it is another key: so each burst ends before it.
-    terminal.keys("a", "c", "=T-01", "Enter", "=Test lamp", "Enter")
+    terminal.keys("a", "c", "Enter", "=T-01", "Enter", "=Test lamp", "Enter")
     terminal.shows("location: ")
     terminal.keys("Escape")
     terminal.shows("▸ T-01")
-    terminal.keys("a", "r", "=20", "Enter", "=ta", "Enter", "=2.5 mm2", "Enter")
+    terminal.keys("a", "r", "Enter", "=20", "Enter", "=ta", "Enter", "=2.5 mm2", "Enter")
     terminal.shows("material: ")
     terminal.keys("Escape")
     terminal.shows("▸ T-01")
