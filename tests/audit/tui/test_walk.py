@@ -164,7 +164,8 @@ async def test_ten_thousand_circuits_paint_like_ten(tmp_path: Path) -> None:
         await pilot.pause()
         assert walk.chosen is not None
         assert walk.chosen.id == "n9999"
-        assert 0 < len(drawn) < 2_000
+        # judgements that arrive repaint the same lines; of 10,000 none out of sight is asked for
+        assert 0 < len(set(drawn)) <= 24
 
 
 async def test_another_visit_shows_what_is_left_to_do_in_it(plant: Path) -> None:

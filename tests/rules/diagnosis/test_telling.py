@@ -38,9 +38,10 @@ def test_information_is_the_mutual_information(probability: float, size: float, 
 
     def of(shown: float) -> float:
         both = sum(share * law.pdf(shown) for share, law in parts)
-        return sum(
+        told = sum(
             share * law.pdf(shown) * math.log2(law.pdf(shown) / both) for share, law in parts if law.pdf(shown) > 1e-200
         )
+        return float(told)
 
     reach = 9 * math.hypot(u, noise)
     total, _ = integrate.quad(of, min(0, size) - reach, max(0, size) + reach, points=[0, size], limit=400, epsabs=1e-9)
