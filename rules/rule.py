@@ -52,6 +52,10 @@ class Rule:
     caution: str
     source: Citation
     check: Callable[[Any], Iterator[Finding | NotJudged]]
+    also: tuple[Citation, ...] = ()
+    """Further sources, of what the text and the thresholds rest on."""
+    limits: tuple[str, ...] = ()
+    """Groups of the limits profile that it decides by."""
 
     @property
     def text(self) -> str:
@@ -119,11 +123,13 @@ def rule(
     remedy: str,
     caution: str,
     source: Citation,
+    also: tuple[Citation, ...] = (),
+    limits: tuple[str, ...] = (),
 ) -> Callable[[Callable[[Any], Iterator[Finding | NotJudged]]], Rule]:
     """Make a rule of a function that yields findings, and what it could not judge, about one case."""
 
     def made(check: Callable[[Any], Iterator[Finding | NotJudged]]) -> Rule:
-        return Rule(id, title, about, severity, remedy, caution, source, check)
+        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits)
 
     return made
 
