@@ -24,7 +24,7 @@ from rules.margins import margins_of
 from rules.network import network_of
 from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
-from rules.rule import BoardCase, SiteCase, judge, switched_off
+from rules.rule import BoardCase, SiteCase, changes_of, judge, switched_off
 from rules.runs import figures
 from rules.service import service_of
 from rules.verdict import agrees, unsettled, unsound
@@ -75,6 +75,7 @@ def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], 
         findings=tuple(findings),
         not_judged=tuple(gaps),
         cautions=tuple(caution.text for caution in cautions_of(site)),
+        rule_changes=changes_of(limits),
     )
 
 

@@ -66,7 +66,7 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             remedy=f"{MEASURE_FIRST} then {_would_do(enough, nominal)}, or choose a shorter way or a nearer board."
             if enough
             else None,
-            source="the circuit's own allowed drop" if own else case.limits.citation("drop"),
+            source="the circuit's own allowed drop" if own else case.limits.citation("drop", "allowed_percent"),
             consequences=(f"from the source it loses more than the {total_percent:g} % allowed in all",)
             if past_total and not worst.total_gap
             else (),

@@ -58,7 +58,7 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "allowed": Figure(allowed, "1"),
                 "nominal": Figure(nominal, "V"),
             },
-            source=case.limits.citation("drop"),
+            source=case.limits.citation("drop", "allowed_total_percent"),
         )
     elif worst.total_gap:
         yield total_above_allowed.gap(case, worst.load.point, worst.total_gap)

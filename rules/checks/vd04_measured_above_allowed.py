@@ -56,7 +56,8 @@ def measured_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "current": drop.current,
                 "nominal": Figure(nominal, "V"),
             },
-            source="the circuit's own allowed drop" if own else case.limits.citation("drop"),
+            source="the circuit's own allowed drop" if own else case.limits.citation("drop", "allowed_percent"),
+            without=("drop",) if own else (),
         )
     elif verdict is Verdict.OPEN:
         yield measured_above_allowed.gap(case, where, f"not settled: {read}")

@@ -9,6 +9,8 @@ from rules.assessment import Severity
 from rules.errors import ProfileError
 from rules.record import Site
 
+STATUSES = ("verified", "computed", "from-memory", "our own default", "common practice, no source")
+
 
 def own(text: str, **more: object) -> Site:
     return Site(name="x", limits="ours.toml", own_limits=text, **more)  # type: ignore[arg-type]
@@ -18,16 +20,13 @@ def test_every_group_of_every_packaged_profile_says_where_it_comes_from() -> Non
     for name in limits.names():
         for group in limits.of(Site(name="x", limits=name)).groups.values():
             assert group.title
-            assert group.source
-            assert group.status in (
-                "verified",
-                "computed",
-                "from-memory",
-                "our own default",
-                "common practice, no source",
-            )
             assert group.unit
             assert group.values or group.words
+            assert set(group.stated) == {*group.values, *group.words}
+            for stated in group.by_source():
+                assert stated.source
+                assert stated.status in STATUSES
+                assert stated.origin in limits.names()
 
 
 def test_what_general_chooses_by_a_word_is_among_the_words_it_accepts() -> None:
