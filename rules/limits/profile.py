@@ -22,6 +22,7 @@ from importlib.resources import files
 from typing import Any
 
 from rules.assessment import Severity
+from rules.columns import NEAREST_ZERO, OUTER
 from rules.errors import ProfileError
 from rules.record import Site
 from rules.text import quoted
@@ -234,6 +235,9 @@ def _rules(name: str, given: object, parent: Limits | None, faults: list[str]) -
         faults.append(f"{name}: [rules] holds groups such as [rules.VD01]")
         return settings
     for rule, content in given.items():
+        if rule not in rule_ids():
+            faults.append(f"{name}: there is no rule {quoted(rule)}{_nearest(rule, rule_ids())}")
+            continue
         if not isinstance(content, dict) or (unknown := sorted(set(content) - {"severity", "off", "reason"})):
             what = (
                 f"there is no rules.{rule}.{unknown[0]}" if isinstance(content, dict) else f"rules.{rule} is no group"
@@ -252,10 +256,19 @@ def _rules(name: str, given: object, parent: Limits | None, faults: list[str]) -
     return settings
 
 
+@cache
+def rule_ids() -> tuple[str, ...]:
+    """Ids of all rules, by the names of their files: a profile is read without loading them."""
+    found = (entry.name.partition("_") for entry in files("rules.checks").iterdir() if entry.name.endswith(".py"))
+    return tuple(sorted(id_.upper() for id_, _, _ in found if id_))
+
+
 ABOVE_ZERO = (
     "drop", "termination", "heat", "length_doubt", "bad_connection", "series_semiconductor", "longer_route", "slip",
 )  # fmt: skip
 SHARES = ("decision", "other_metal", "doubtful")
+LARGEST = 1e9
+"""Of a number without a unit or in one of its own; the others have those of the record."""
 
 
 def _impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -> None:
@@ -274,6 +287,10 @@ def _impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) 
                 faults.append(f"{where}; above 1")
             elif value > 1 and group.name in SHARES:
                 faults.append(f"{where}; a share from 0 to 1")
+            elif value > (most := OUTER.get(group.unit, (0, LARGEST))[1]):
+                faults.append(f"{where}; at most {most:.12g}")
+            elif 0 < value < NEAREST_ZERO:
+                faults.append(f"{where}; 0, or at least {NEAREST_ZERO:g}")
     for group_name, low, high in (
         ("bad_connection", "low_ohm", "high_ohm"),
         ("series_semiconductor", "low_v", "high_v"),
