@@ -13,8 +13,7 @@ from rules.assess import assess
 from rules.assessment import Assessment
 from rules.errors import ProfileError
 from rules.record import Site
-from rules.rule import catalogue
-from rules.text import nearest, quoted
+from rules.text import nearest
 
 
 def open_site(path: Path) -> Site:
@@ -66,12 +65,6 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -
         in_force = limits.of(site)
     except ProfileError as error:
         raise WrongUse(*(f"{place}:limits: {line}" for line in str(error).splitlines())) from None
-    unknown = sorted(set(in_force.rules) - {rule.id for rule in catalogue()})
-    if unknown:
-        rules = [rule.id for rule in catalogue()]
-        raise WrongUse(
-            *(f"{place}:limits: {in_force.name}: there is no rule {quoted(id_)}{_meant(id_, rules)}" for id_ in unknown)
-        )
     return assess(site, in_force)
 
 
