@@ -38,7 +38,7 @@ def settings_place(path: Path) -> str:
     return "site.toml" if path.is_dir() else str(path)
 
 
-def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -> Assessment:
+def judge_site(site: Site, visit: str | None = None, place: str = "site.toml", *, explain: bool = False) -> Assessment:
     """
     Assess a site, on one visit if named.
 
@@ -50,6 +50,8 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -
         The visit to judge on; each circuit's latest unless named.
     place : str
         Where the settings stand, for what is wrong with the limits that they name.
+    explain : bool
+        Whether causes say what speaks for and against each.
 
     Raises
     ------
@@ -65,7 +67,7 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -
         in_force = limits.of(site)
     except ProfileError as error:
         raise WrongUse(*(f"{place}:limits: {line}" for line in str(error).splitlines())) from None
-    return assess(site, in_force)
+    return assess(site, in_force, explain)
 
 
 def only(assessment: Assessment, circuit: str) -> Assessment:

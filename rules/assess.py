@@ -18,6 +18,7 @@ from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
 from rules.diagnosis.learning import diagnose_told, learn
 from rules.diagnosis.next_reading import next_readings
+from rules.explain import with_facts
 from rules.index import Index
 from rules.limits import Limits
 from rules.margins import margins_of
@@ -34,16 +35,19 @@ TOGETHER = 1000
 FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "NW01", "NW02")
 
 
-def assess(site: Site, limits: Limits) -> Assessment:
-    """Everything that can be said of a site under its limits."""
-    return assess_prepared(prepare(site, limits))
+def assess(site: Site, limits: Limits, explain: bool = False) -> Assessment:
+    """Everything that can be said of a site under its limits; ``explain`` adds the facts for and against each cause."""
+    return assess_prepared(prepare(site, limits), explain=explain)
 
 
-def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], object] | None = None) -> Assessment:
+def assess_prepared(
+    context: Context, told: Callable[[Sequence[CircuitResult]], object] | None = None, explain: bool = False
+) -> Assessment:
     """
     Everything that can be said of a prepared site.
 
     ``told``, where given, gets the circuits' results as they come, in walking order; what it raises ends the judging.
+    ``explain`` adds the facts that speak for and against each cause, a millisecond for each circuit that was read.
     """
     site, limits, index = context.site, context.limits, context.index
     findings, gaps = judge(SiteCase(context), "site")
@@ -61,6 +65,8 @@ def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], 
     for start in range(0, len(index.walked_circuits), TOGETHER):
         some = index.walked_circuits[start : start + TOGETHER]
         judged = _followed([_judged(context, circuit, None, of_circuit.get(circuit.tag, ())) for circuit in some])
+        if explain:
+            judged = with_facts(context, judged)
         results += judged
         if told is not None:
             told(judged)

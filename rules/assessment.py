@@ -185,6 +185,9 @@ class Place(NamedTuple):
     """Where the branch of the place ends: ``way`` for the device; empty for the whole circuit."""
     joints: tuple[Place, ...] = ()
     """Of bad connections in two places at once: each, with its own figures."""
+    speaks_for: tuple[str, ...] = ()
+    speaks_against: tuple[str, ...] = ()
+    """What was read that speaks for the cause and against it, as sentences; only where an explanation was asked for."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -104,6 +104,8 @@ def _cause(place: Place) -> Json:
             "probability": place.probability,
             "extra_resistance": {**known, "unit": "ohm"} if len(known) == len(extra) else None,
             "what": clean(place.what) or None,
+            "for": [clean(fact) for fact in place.speaks_for] or None,
+            "against": [clean(fact) for fact in place.speaks_against] or None,
         }
     )
 

@@ -45,7 +45,9 @@ def _verdict(result: CircuitResult) -> tuple[tuple[str, str], ...]:
     rows = [("Status", f"{status}: {result.why}" if result.why else status)]
     if result.drop is None and result.visit:
         rows.append(("Judged on", f"visit {result.visit}"))
-    rows += [_cause(place) for place in result.causes]
+    for place in result.causes:
+        rows.append(_cause(place))
+        rows += [("for", "; ".join(place.speaks_for)), ("against", "; ".join(place.speaks_against))]
     if (following := result.next_reading) is not None:
         said = next_reading_words(following)
         rows.append(("Read next", f"{said}: {following.why}" if following.why else said))

@@ -4,24 +4,45 @@ from __future__ import annotations
 
 from rich.cells import cell_len
 
-from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece
+from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece, wrapped
 from rules.assessment import CircuitResult, Place
 from rules.units import show
 
 LEAST_SHOWN = 0.01
 """Causes less probable than this are left out; the report has all of them."""
+LEAST_EXPLAINED = 0.05
+"""Causes less probable than this stand without what speaks for and against them."""
 _NAME_CELLS = 36
+_FACT_INDENT = 14
 _PROBABILITY_CELLS = 11
 _EIGHTHS = " ▏▎▍▌▋▊▉█"
 
 
 def cause_lines(result: CircuitResult, width: int) -> list[Line]:
-    """One bar a cause, the likeliest first; nothing where readings say nothing of causes."""
+    """One bar a cause with its facts, the likeliest first; nothing where readings say nothing of causes."""
     shown = [place for place in result.causes if place.probability >= LEAST_SHOWN]
     if not shown:
         return []
     cells = min(_NAME_CELLS, max(cell_len(_name(place)) for place in shown))
-    return [(), *(_cause_line(place, cells, width) for place in shown)]
+    said: set[str] = set()
+    lines: list[Line] = [()]
+    for place in shown:
+        lines += [_cause_line(place, cells, width), *_fact_lines(place, said, width)]
+    return lines
+
+
+def _fact_lines(place: Place, said: set[str], width: int) -> list[Line]:
+    """What speaks for a cause and against it, but for what stands above already; nothing for one of little weight."""
+    if place.probability < LEAST_EXPLAINED:
+        return []
+    lines = []
+    for word, facts in (("for", place.speaks_for), ("against", place.speaks_against)):
+        for fact in facts:
+            if fact not in said:
+                said.add(fact)
+                lines += wrapped(fact, width - 1, _FACT_INDENT, "quiet", f"     {word}")
+                word = ""
+    return lines
 
 
 def probability_bar(probability: float, cells: int) -> str:

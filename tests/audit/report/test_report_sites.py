@@ -35,7 +35,7 @@ every_site = pytest.mark.parametrize("sample", SAMPLE_SITES, ids=lambda sample: 
 @cache
 def judged(sample: SampleSite) -> tuple[Site, Assessment]:
     site = read_folder(Path(str(sample.folder)))
-    return site, judge_site(site)
+    return site, judge_site(site, explain=True)
 
 
 @cache
@@ -74,6 +74,23 @@ def test_json_is_valid_with_and_without_a_report(sample: SampleSite, audience: s
     report = json.loads(FORMS[".json"](content_of(site, assessment, audience)))
     validator.validate(report)
     assert {key: value for key, value in report.items() if key != "report"} == output_of(sample)
+
+
+@every_site
+def test_what_speaks_for_causes_and_against_them_stands_in_reports(sample: SampleSite) -> None:
+    site, assessment = judged(sample)
+    facts = {
+        fact for result in assessment.circuits for place in result.causes
+        for fact in (*place.speaks_for, *place.speaks_against)
+    }  # fmt: skip
+    assert len(facts) > 10
+    told = {fact for circuit in output_of(sample)["circuits"] for row in circuit["causes"]
+            for fact in (*row.get("for", ()), *row.get("against", ()))}  # fmt: skip
+    assert told == facts
+    for audience in ("electrician", "inspector"):
+        content = content_of(site, assessment, audience)
+        words = " ".join(html.unescape(re.sub(r"<[^>]*>", " ", FORMS[".html"](content))).split())
+        assert not [fact for fact in facts if fact not in words]
 
 
 @every_site

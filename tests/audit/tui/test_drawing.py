@@ -268,6 +268,28 @@ def test_causes_are_bars_with_their_place_and_resistance() -> None:
     assert text_of(reason_line(stop, survey, 80)).strip().startswith("bad connection in run 1 (0.93) · ")
 
 
+def test_facts_stand_under_their_cause_once() -> None:
+    """What speaks for two causes alike is not said twice, nor anything of a cause of little weight."""
+    survey = survey_of(HUT)
+    shared = "run 1 loses 1.22 V at 12 A against 0.41 V computed, 0.81 ± 0.02 V more"
+    causes = (
+        Place("smaller conductor", "", 0.6, speaks_for=(shared,), speaks_against=("no reading tells it",)),
+        Place("other metal", "", 0.36, speaks_for=(shared, "a second fact")),
+        Place("longer route", "", 0.04, speaks_for=("a third fact",)),
+    )
+    lines = texts(cause_lines(replace(survey.results["c1"], causes=causes), 80))
+    said = " ".join(" ".join(lines).split())
+    assert said.count(shared) == 1
+    assert said.count("a second fact") == 1
+    assert "a third fact" not in said
+    assert [line.split()[0] for line in lines if line.startswith("     ") and line[5] != " "] == [
+        "for",
+        "against",
+        "for",
+    ]
+    assert max(len(line) for line in lines) <= 80
+
+
 # --- what is next
 
 
