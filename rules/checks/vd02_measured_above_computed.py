@@ -71,6 +71,10 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     if case.unused:
         yield measured_above_computed.gap(case, "readings", f"read, but of no use here: {', '.join(case.unused)}")
+    for round_, lacks in case.drop.unfinished if case.drop is not None else ():
+        yield measured_above_computed.gap(
+            case, f"round {round_}", f"unfinished, so that one of less current stands for it: {lacks}"
+        )
     causes = case.diagnosis.causes if case.diagnosis is not None else ()
     claim = claimed(causes, case.limits)
     if case.drop is None and claim is None:
