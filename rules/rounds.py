@@ -275,8 +275,9 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     """
     Measured against computed drop, in the round with the highest current at the circuit's first run that has a comparison.
 
-    A round of a higher current without one, half typed, is named in ``unfinished``. From the first point read (``bus`` before ``way``, where the device between them has a figure) to the
-    read point with the largest computed drop from it; by two voltages or, where given, by direct drops.
+    A round of a higher current without one, half typed, is named in ``unfinished``. From the first point read (``bus``
+    before ``way``, where the device between them has a figure) to the read point with the largest computed drop from
+    it; by two voltages or, where given, by direct drops.
 
     Raises
     ------
