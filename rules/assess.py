@@ -7,6 +7,7 @@ for each keystroke; ``assess`` is ``prepare``, every circuit, and the rules abou
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 from dataclasses import replace
 from importlib.metadata import version
@@ -21,6 +22,7 @@ from rules.diagnosis.next_reading import next_readings
 from rules.explain import with_facts
 from rules.heat import similar_joints
 from rules.index import Index
+from rules.joints import heats_of
 from rules.limits import Limits
 from rules.margins import margins_of
 from rules.network import network_of
@@ -172,6 +174,7 @@ def _judged(
         nominal_voltage_v=case.nominal_v,
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
         causes=case.diagnosis.causes if case.diagnosis is not None else (),
+        joints=heats_of(case),
         points=_points(case),
         margins=_margins(case),
         service=service_of(case),
@@ -210,7 +213,7 @@ def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
         return None if value is None else Figure(value, "V")
 
     rows = []
-    for margin in margins_of(case):
+    for margin, point in zip(margins_of(case), case.loads, strict=True):
         load = margin.load
         worst, lowest = case.worst.get(load.point), load.lowest_voltage_v
         rows.append(
@@ -219,6 +222,8 @@ def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
                 point=load.point,
                 design=volts(margin.design_v),
                 worst=worst,
+                worst_recorded=None if point.lowest_gap else Figure(point.lowest_v, "V", point.lowest_u),
+                source_lowest=None if math.isnan(point.source_lowest_v) else volts(point.source_lowest_v),
                 lowest=volts(lowest),
                 margin=None if worst is None or lowest is None else Figure(worst.value - lowest, "V", worst.u),
                 below_highest=volts(margin.below_highest_v),

@@ -18,6 +18,7 @@ from audit.report.phrases import (
 )
 from audit.report.records import READING_DIGITS, circuit_line
 from audit.tui.drawing.causes import cause_lines
+from audit.tui.drawing.doubts import doubt_lines
 from audit.tui.drawing.findings import finding_lines, gap_lines
 from audit.tui.drawing.margins import margin_lines
 from audit.tui.drawing.pieces import Line, Piece, apart, cut, piece, wrapped
@@ -119,6 +120,8 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
         lines += [(), *finding_lines(finding, width, place=False)]
     if loads := margin_lines(result, width):
         lines += _section("loads", loads)
+    if doubts := doubt_lines(result, width):
+        lines += _section("doubt", doubts)
     rounds = round_lines(survey.index, circuit.id, width)
     lines += _section("rounds", rounds or [(piece("   nothing was read", "measure"),)])
     if survey.context is not None:
