@@ -119,6 +119,8 @@ class CircuitCase:
     runs: tuple[Run, ...]
     loads: tuple[LoadPoint, ...]
     visit: str
+    readings: tuple[Reading, ...]
+    """Of the visit, those with the loads off too."""
     rounds: tuple[Round, ...]
     tree: Tree
     drop: Drop | None
@@ -138,6 +140,13 @@ class CircuitCase:
     @property
     def tag(self) -> str:
         return self.circuit.tag
+
+    @property
+    def drawn(self) -> frozenset[str]:
+        """Points at which a load, a board or a converter takes current."""
+        index = self.context.index
+        fed = {_fed_at(fed, self.circuit, index) for fed in index.fed_by_circuit(self.circuit.id)}
+        return frozenset(fed | {point.load.point for point in self.loads})
 
     def is_vital(self, point: str) -> bool:
         """Whether a life-safety or trip-or-close load hangs on a point or behind it."""
@@ -200,6 +209,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
         visit=measured.visit,
+        readings=measured.readings,
         rounds=rounds,
         tree=tree,
         drop=drop,
