@@ -51,7 +51,8 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         enough = _enough(case, worst)
         own = case.circuit.allowed_drop_percent is not None
         total_percent = case.limits["drop.allowed_total_percent"]
-        past_total = worst.total_drop_v / nominal > total_percent / 100
+        total_v = total_percent / 100 * nominal
+        past_total = against_limit(worst.total_drop_v, total_v, worst.total_drop_u, case.limits) is Verdict.FAILS
         yield drop_above_allowed.finding(
             case,
             worst.load.point,
