@@ -22,7 +22,7 @@ MEASURE_FIRST = "Measure the drop of each run at a known current;"
     remedy=f"{MEASURE_FIRST} then choose a larger size, a shorter way or a nearer board.",
     caution="Isolate and prove dead before touching a termination; local code and a licensed person decide. "
     "Computed for steady current and healthy joints; says nothing about inrush.",
-    source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation"),
+    source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation", "verified"),
     limits=("drop", "decision", *DOUBTS_OF_COMPUTED),
 )
 def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
