@@ -51,7 +51,7 @@ ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it a
     caution="Millivolt readings across a closed joint become the full system voltage if it opens: start on auto volts. "
     "Do not tighten or open anything live; cut back and remake heated conductors when isolated. "
     "A cause is named by probability: look before replacing anything.",
-    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
+    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
     limits=("decision", "heat", "prior", "bad_connection", "joint_scaling", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
