@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from rules.diagnosis.block import Block, Model, model_of
-from rules.diagnosis.gaussian import LOG_2PI, cholesky, forward, log_density, log_determinant
+from rules.diagnosis.gaussian import LOG_2PI, Whitener, log_density, whitener
 from rules.diagnosis.hypotheses import DOUBTFUL, Hypotheses, Hypothesis
 from rules.diagnosis.shape import Floats
 
@@ -45,7 +45,7 @@ class Slips:
     """(b, readings): what was meant less what was entered; observations first, then current readings."""
 
 
-def slips(block: Block, recorded: Model) -> Slips:
+def slips(block: Block, recorded: Model, white: Whitener) -> Slips:
     """
     Evidence of every slip.
 
@@ -53,20 +53,20 @@ def slips(block: Block, recorded: Model) -> Slips:
     ----------
     recorded : Model
         With everything as recorded: (b, 1, …).
+    white : Whitener
+        Of its covariance: (b, …).
     """
     shape, limits = block.shape, block.limits
     covariance, own = recorded.covariance[:, 0], shape.signature.current_readings
     residual, observations, currents, swapped, turned = rows_of_slips(block, recorded)
     right = [residual[..., None], observations, currents, swapped + residual[..., None], turned[..., None]]
-    lower = cholesky(covariance)
-    white = forward(lower, np.concatenate(right, axis=-1))
-    scale = -0.5 * (log_determinant(lower) + shape.rows * LOG_2PI)
-    base, readings = white[:, :, 0], observations.shape[-1] + currents.shape[-1]
+    whitened, scale = white.inverse @ np.concatenate(right, axis=-1), white.log_scale
+    base, readings = whitened[:, :, 0], observations.shape[-1] + currents.shape[-1]
     entered = np.concatenate([block.value[:, shape.read], block.reading_a], axis=1)
     given = np.array([0.0] * len(shape.read) + [1.0] * len(own))
-    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, typed_off(block), given)
+    evidence, off = _off(base, whitened[:, :, 1 : 1 + readings], scale, entered, typed_off(block), given)
     evidence, off = _looked_at_again(block, recorded, currents, evidence, off)
-    others = scale[:, None] - 0.5 * (white[:, :, 1 + readings :] ** 2).sum(axis=1)
+    others = scale[:, None] - 0.5 * (whitened[:, :, 1 + readings :] ** 2).sum(axis=1)
     several = covariance + np.eye(shape.rows) * several_off(block)[:, :, None] ** 2
     found = np.concatenate([evidence, others, log_density(residual, several)[:, None]], axis=1)
     names = [Hypothesis(DOUBTFUL, ONE_READING, (int(number),)) for number in shape.read]
@@ -192,16 +192,19 @@ def _looked_at_again(
     carried[:, 0] += moved[:, None, None] * one
     carried[rows, 1 + reads[:, 1]] += (moved * block.reading_gain_u[rows, best])[:, None, None] * one
     again = model_of(block, block.conductor[:, None], block.conductor_slope[:, None], carried)
-    lower = cholesky(again.covariance[:, 0])
-    right = np.stack([block.shown - again.whole_mean[:, 0], currents[rows, :, best]], axis=-1)
-    white = forward(lower, right)
-    scale = -0.5 * (log_determinant(lower) + block.shape.rows * LOG_2PI)
+    of_again = whitener(again.covariance[:, 0])
+    white = of_again.inverse @ np.stack([block.shown - again.whole_mean[:, 0], currents[rows, :, best]], axis=-1)
     typed = typed_off(block)[rows, start + best]
     within = (white[:, :, 0] * white[:, :, 1]).sum(axis=1)
     square = np.maximum((white[:, :, 1] ** 2).sum(axis=1), 1e-300)
     further = within / square
     total = moved + further
-    new = scale - 0.5 * (white[:, :, 0] ** 2).sum(axis=1) + 0.5 * within * further + 0.5 * (LOG_2PI - np.log(square))
+    new = (
+        of_again.log_scale
+        - 0.5 * (white[:, :, 0] ** 2).sum(axis=1)
+        + 0.5 * within * further
+        + 0.5 * (LOG_2PI - np.log(square))
+    )
     new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed, np.ones(len(block))))
     evidence, off = evidence.copy(), off.copy()
     evidence[rows, start + best], off[rows, start + best] = new, total

@@ -75,6 +75,11 @@ class Density:
         low, width, evidence = (array.reshape(shape) for array in (self.low, self.width, self.log_evidence))
         return Density(low, width, evidence, self.share.reshape(*shape, NODES))
 
+    def transposed(self) -> Density:
+        """The same densities, their first two axes in the other order."""
+        low, width, evidence = (array.T for array in (self.low, self.width, self.log_evidence))
+        return Density(low, width, evidence, np.swapaxes(self.share, 0, 1))
+
     def cumulative(self) -> Cumulative:
         """The probability below each of some fine steps over what matters."""
         density = self.share / UNIT_WEIGHTS
