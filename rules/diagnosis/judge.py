@@ -87,11 +87,8 @@ def judge_block(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Ju
     white = whitener(recorded.covariance[:, 0])
     evidence = white.log_density(block.shown - recorded.whole_mean[:, 0])[:, None]
     density = extras(block, recorded, white)
-    conductors, found, two = (
-        conductor_causes(block, recorded),
-        slips(block, recorded, white),
-        pairs(block, recorded, white),
-    )
+    conductors = conductor_causes(block, recorded)
+    found, two = slips(block, recorded, white), pairs(block, recorded, white)
     places = [Hypothesis(BAD_CONNECTION, which=(number,)) for number in range(len(shape.places))]
     offsets = [Hypothesis(SEMICONDUCTOR, which=(number,)) for number in range(len(shape.offsets))]
     shares = [place.share for place in shape.places] + [1 / len(offsets)] * len(offsets)

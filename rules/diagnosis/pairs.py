@@ -169,7 +169,7 @@ def summed(found: Pairs, some: Integers) -> tuple[Floats, Pairs]:
     evidence = part.log_density + densities[0].log_evidence + found.log_weight[some]
     ohm, u, bounds = found.ohm.copy(), found.ohm_u.copy(), found.bounds.copy()
     for number, density in enumerate(densities):
-        mean, square = density.mean(np.exp), density.mean(lambda coordinate: np.exp(2 * coordinate))
+        mean, square = density.moments(np.exp)
         low, middle, high = (np.exp(edge) for edge in density.cumulative().quantiles(0.025, 0.5, 0.975))
         ohm[some, number] = middle
         u[some, number] = np.sqrt(np.maximum(square - mean**2, 0.0))

@@ -13,9 +13,12 @@ from dataclasses import dataclass
 from typing import TypeAlias
 
 import numpy as np
+from numpy.typing import NDArray
 
 from rules.diagnosis.shape import Floats, Integers
 
+Chosen: TypeAlias = NDArray[np.bool_] | tuple[slice, ...]
+"""Which of several densities."""
 LogDensity: TypeAlias = Callable[[Floats, Integers], Floats]
 """From coordinates (k, nodes) of some densities, and which they are (k,), to log densities (k, nodes)."""
 
@@ -70,6 +73,10 @@ class Density:
     def nodes(self) -> Floats:
         return self.low[..., None] + self.width[..., None] * UNIT_NODES
 
+    def __getitem__(self, some: Chosen) -> Density:
+        """Some of the densities."""
+        return Density(self.low[some], self.width[some], self.log_evidence[some], self.share[some])
+
     def shaped(self, *shape: int) -> Density:
         """The same densities in an array of another shape."""
         low, width, evidence = (array.reshape(shape) for array in (self.low, self.width, self.log_evidence))
@@ -86,10 +93,12 @@ class Density:
         below = np.maximum.accumulate(np.clip(density @ BELOW_STEPS, 0.0, 1.0), axis=-1)
         return Cumulative(self.low, self.width, below, density @ AT_STEPS / FINE)
 
-    def mean(self, of: Callable[[Floats], Floats]) -> Floats:
-        """Mean (...) of a function of the coordinate."""
-        total: Floats = (self.share * of(self.nodes)).sum(axis=-1)
-        return total
+    def moments(self, of: Callable[[Floats], Floats]) -> tuple[Floats, Floats]:
+        """Mean (...) of a function of the coordinate, and of its square."""
+        values = of(self.nodes)
+        mean = np.einsum("...n,...n->...", self.share, values)
+        values *= values
+        return mean, np.einsum("...n,...n->...", self.share, values)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
