@@ -136,8 +136,9 @@ def along(size: Floats, matrix: Sequence[Floats], vector: Sequence[Floats]) -> t
     n = vector[0].shape[-1]
     if not n:
         return np.zeros(size.shape), np.zeros(size.shape)
-    matrix = [np.moveaxis(entry, (-2, -1), (0, 1))[..., None] for entry in matrix]
-    vector = [np.moveaxis(entry, -1, 0)[..., None] for entry in vector]
+    stack = range(vector[0].ndim - 1)
+    matrix = [entry.transpose(-2, -1, *stack)[..., None] for entry in matrix]
+    vector = [entry.transpose(-1, *stack)[..., None] for entry in vector]
     columns, pivots = np.empty((n, n + 1, size.size)), np.empty((n, size.size))
     for j in range(n):
         column = columns[j, j:]

@@ -28,9 +28,9 @@ STEPS = 9
 """More than any density needs that floats can hold."""
 ENOUGH = 5
 """Kept nodes with which the search has found the density: it then spans at most 14 standard deviations."""
-KEPT = 18.0
+KEPT = 16.0
 """Natural logarithms below the best within which a node is kept, with one neighbour on each side."""
-NODES = 32
+NODES = 28
 """Gauss-Legendre nodes of the sum."""
 FINE = 64
 """Steps in which the cumulative density is laid out."""
@@ -91,6 +91,7 @@ class Density:
         """The probability below each of some fine steps over what matters."""
         density = self.share / UNIT_WEIGHTS
         below = np.maximum.accumulate(np.clip(density @ BELOW_STEPS, 0.0, 1.0), axis=-1)
+        below[..., -1] = 1.0
         return Cumulative(self.low, self.width, below, density @ AT_STEPS / FINE)
 
     def moments(self, of: Callable[[Floats], Floats]) -> tuple[Floats, Floats]:
