@@ -17,6 +17,11 @@ from rules.record import Board, Figure, Source
 
 About: TypeAlias = Literal["circuit", "board", "source", "site"]
 
+DOUBTS_OF_COMPUTED = ("length_doubt", "temperature_doubt", "resistance_doubt", "termination", "device_doubt")
+"""Groups of the limits profile that the doubt of a computed drop is made of."""
+DOUBTS_OF_READINGS = ("poor_meter",)
+"""Groups of the limits profile that the doubt of a reading may be made of, beside its meter's own figures."""
+
 
 @dataclass(frozen=True, slots=True)
 class BoardCase:

@@ -8,7 +8,7 @@ from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.impossible import dead_points
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
 
 
@@ -21,6 +21,7 @@ from rules.units import show, show_against
     caution="A load that drops out when the battery is low fails when it is needed: treat door release, alarm, trip and life "
     "safety first, with the duty holder's permission. Computed with healthy joints: what readings show may be worse.",
     source=Citation("the load maker's lowest voltage", status="common practice, no source"),
+    limits=("decision", "readings", "temperature", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """

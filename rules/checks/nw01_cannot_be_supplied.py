@@ -2,8 +2,9 @@
 
 from collections.abc import Iterator, Sequence
 
-from rules.assessment import Citation, Finding, Severity
+from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase, LoadPoint
+from rules.loads import kind_of
 from rules.record import Figure
 from rules.rule import rule
 from rules.units import show
@@ -19,21 +20,30 @@ from rules.units import show
     "Isolate and prove dead before touching a termination; local code and a licensed person decide. Computed with healthy "
     "joints; what could be had is an upper bound, not a rating.",
     source=Citation("largest power through a resistance, Vs² / 4R", status="computed"),
+    limits=("temperature",),
 )
-def cannot_be_supplied(case: CircuitCase) -> Iterator[Finding]:
+def cannot_be_supplied(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     No current gives the loads what they ask for: the more they draw, the less arrives.
 
     **Finds**: 24 V, 1.5 Ω and a load of 60 W with the battery at 18.9 V: at most 18.9² / (4 × 1.5) = 59.5 W could be had.
 
     **Leaves alone**: the same at 19.0 V, where 10.0 V arrive (LV01 judges that). Loads on other paths are computed
-    as if what cannot be supplied were off.
+    as if what cannot be supplied were off. A path, a load or a lowest voltage of the source that is not known is not judged.
     """
     for lowest in (False, True):
         lost = [point for point in case.loads if (point.collapsed_lowest if lowest else point.collapsed)]
         if lost and not (lowest and _source_gap(case)):
             yield from _tell(case, lost, lowest)
             return
+    unknown = next((point for point in case.loads if _may_collapse(point) and (point.gap or point.lowest_gap)), None)
+    if unknown is not None:
+        yield cannot_be_supplied.gap(case, unknown.load.point, unknown.gap or unknown.lowest_gap)
+
+
+def _may_collapse(point: LoadPoint) -> bool:
+    """A constant resistance draws less where less arrives: it can always be supplied."""
+    return kind_of(point.load) != "constant resistance"
 
 
 def _tell(case: CircuitCase, lost: Sequence[LoadPoint], lowest: bool) -> Iterator[Finding]:

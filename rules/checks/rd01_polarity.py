@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, Severity
 from rules.case import CircuitCase
 from rules.impossible import reversed_points
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
 
 
@@ -18,6 +18,7 @@ from rules.units import show
     caution="Live work: one probe clipped, one hand. Electronic loads can be destroyed by reversed polarity, and a "
     "diode in a load may then be the only thing that holds. A typing slip in the sign looks the same.",
     source=Citation("closure tests on readings", status="common practice, no source"),
+    limits=("decision", *DOUBTS_OF_READINGS),
 )
 def polarity_reversed(case: CircuitCase) -> Iterator[Finding]:
     """

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, Severity
 from rules.case import CircuitCase
 from rules.impossible import rises
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
 
 
@@ -18,6 +18,7 @@ from rules.units import show
     caution="Live readings: mind the meter's category and keep the leads in the voltage jacks. A second supply that feeds back "
     "into the circuit reads the same way: do not take the circuit for dead when its device is open.",
     source=Citation("closure tests on readings", status="common practice, no source"),
+    limits=("decision", *DOUBTS_OF_READINGS),
 )
 def load_end_above_source_end(case: CircuitCase) -> Iterator[Finding]:
     """

@@ -7,7 +7,7 @@ from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
 from rules.errors import MissingData
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
 
 
@@ -20,6 +20,7 @@ from rules.units import show, show_against
     caution="An overloaded device and its terminals can be hot enough to burn. Do not reset or replace a device until the cause is "
     "known; rating and load are decided under local code by a licensed person.",
     source=Citation("IEC 60364-4-43", "2008", "433.1: design current not above rated current", "from-memory"),
+    limits=("decision", *DOUBTS_OF_READINGS),
 )
 def current_above_rating(case: CircuitCase) -> Iterator[Finding]:
     """

@@ -7,7 +7,7 @@ from rules.case import CircuitCase
 from rules.errors import MissingData
 from rules.impossible import dead_points
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
 
 
@@ -20,6 +20,7 @@ from rules.units import show
     caution="Never bridge a gap with a meter on millivolts or amperes: across an open joint or fuse stands the full system voltage. "
     "No voltage on a meter does not prove a circuit dead.",
     source=Citation("closure tests on readings", status="common practice, no source"),
+    limits=("decision", "readings", *DOUBTS_OF_READINGS),
 )
 def no_voltage(case: CircuitCase) -> Iterator[Finding]:
     """

@@ -2,11 +2,11 @@
 
 from collections.abc import Iterator
 
-from rules.assessment import Citation, Finding, Severity
+from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
 
 
@@ -19,26 +19,31 @@ from rules.units import show, show_against
     caution="Design drop, lowest voltage and device are judged with the recorded loads and come out too good. More current than the "
     "loads explain can be a fault current: mind what it flows through.",
     source=Citation("closure tests on readings", status="common practice, no source"),
+    limits=("decision", "readings", *DOUBTS_OF_READINGS),
 )
-def current_above_recorded(case: CircuitCase) -> Iterator[Finding]:
+def current_above_recorded(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     A clamp showed more than the loads behind it are recorded to draw, beyond doubt and the profile's margin.
 
     **Finds**: 2.38 A behind which 0.8 A of loads are recorded.
 
     **Leaves alone**: 8.3 A where 8 A are recorded, which the profile's margin covers; less than recorded, since loads may be off.
+    A current behind which a load has no figure is not judged.
     """
     margin = 1 + case.limits["readings.load_margin"]
+    unknown: dict[str, None] = {}
     for this in case.rounds:
         for point, terms in this.amps.items():
             design, run = case.tree.design_current_a.get(point), case.tree.ends.get(point)
+            where = run.name if run else point
+            if design is None:
+                unknown.setdefault(where)
             if not design or (run is not None and run.id in case.tree.meshed):
                 continue  # in a mesh no loads are those behind a run
             value, u = total(terms)
             if probability_above(value, margin * design, u) < case.limits["decision.beyond_doubt"]:
                 continue
             shown, recorded = show_against(value, design, "A")
-            where = run.name if run else point
             yield current_above_recorded.finding(
                 case,
                 f"{where}, round {this.name}",
@@ -47,3 +52,5 @@ def current_above_recorded(case: CircuitCase) -> Iterator[Finding]:
                 source=case.limits.citation("readings"),
             )
             break
+    for where in unknown:
+        yield current_above_recorded.gap(case, where, f"what hangs on {where} draws is not known")

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, Severity
 from rules.case import CircuitCase
 from rules.impossible import against_the_drop
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
 
 
@@ -18,6 +18,7 @@ from rules.units import show
     caution="A clamp goes around one live conductor: keep fingers behind its guard. Current that truly flows towards the source means "
     "a second supply: the circuit stays live when its device is open.",
     source=Citation("closure tests on readings", status="common practice, no source"),
+    limits=("decision", *DOUBTS_OF_READINGS),
 )
 def current_against_drop(case: CircuitCase) -> Iterator[Finding]:
     """

@@ -7,7 +7,7 @@ from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_COMPUTED, rule
 from rules.sufficient import sufficient_of
 from rules.units import show, show_against, show_size
 
@@ -23,6 +23,7 @@ MEASURE_FIRST = "Measure the drop of each run at a known current;"
     caution="Isolate and prove dead before touching a termination; local code and a licensed person decide. "
     "Computed for steady current and healthy joints; says nothing about inrush.",
     source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation"),
+    limits=("drop", "decision", *DOUBTS_OF_COMPUTED),
 )
 def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """

@@ -10,7 +10,7 @@ from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHE
 from rules.errors import MissingData
 from rules.limits import Limits
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show
 from rules.verdict import (
     MOST_SAID,
@@ -51,6 +51,7 @@ ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it a
     "Do not tighten or open anything live; cut back and remake heated conductors when isolated. "
     "A cause is named by probability: look before replacing anything.",
     source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
+    limits=("decision", "heat", "prior", "bad_connection", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """

@@ -7,7 +7,7 @@ from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_COMPUTED, rule
 from rules.units import show, show_against
 
 
@@ -20,6 +20,7 @@ from rules.units import show, show_against
     caution="Isolate and prove dead before touching a termination; a battery cannot be switched off. Local code and a licensed "
     "person decide. Computed for all loads at their design value at once.",
     source=Citation("NFPA 70", "2023", "informational notes to 210.19 and 215.2: a recommendation"),
+    limits=("drop", "decision", *DOUBTS_OF_COMPUTED),
 )
 def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """

@@ -7,7 +7,7 @@ from rules.case import CircuitCase
 from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
 
 
@@ -20,6 +20,7 @@ from rules.units import show, show_against
     caution="Isolate and prove dead before touching a termination; local code and a licensed person decide. "
     "Holds for the current that was read: at another load the drop is another.",
     source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation"),
+    limits=("drop", "decision", *DOUBTS_OF_READINGS),
 )
 def measured_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, Severity
 from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show
 from rules.verdict import beyond_common, cause_words, common_words, doubtful
 
@@ -19,6 +19,7 @@ from rules.verdict import beyond_common, cause_words, common_words, doubtful
     caution="A second path for the current reads the same way: another supply, a parallel cable or the building's metal may keep a "
     "circuit live, or carry its current, when its device is open.",
     source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
+    limits=("decision", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
     """

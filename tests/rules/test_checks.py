@@ -14,8 +14,11 @@ from rules import limits
 from rules.assess import assess
 from rules.record import Site
 from rules.rule import Rule, catalogue
+from tests.rules.limits_read import groups_read
 
 CASES = Path(__file__).parent / "cases"
+FINDS, ALONE, LIMIT, OPEN = "finds", "leaves alone", "at the limit", "not judged"
+KINDS = {FINDS, ALONE, LIMIT, OPEN}
 CHECKS = Path(__file__).parent.parent.parent / "rules" / "checks"
 
 
@@ -46,6 +49,12 @@ def test_case(
     rule: str, case: dict[str, Any], tables: dict[str, list[dict[str, str]]], settings: dict[str, Any], own: str | None
 ) -> None:
     assert case["worked"].strip(), "the hand calculation is missing"
+    kind, finds, gaps = case["kind"], bool(case.get("finds")), bool(case.get("not_judged"))
+    assert kind in KINDS
+    assert {FINDS: finds, ALONE: not finds and not gaps, LIMIT: True, OPEN: gaps and not finds}[kind], (
+        "kind and outcome"
+    )
+    assert kind != LIMIT or "the limit is" in case["worked"], "what the limit is"
     site = build(tables, settings, own, case.get("check", True))
     assessment = assess(site, limits.of(site))
     found = [finding for finding in assessment.findings if finding.rule == rule]
@@ -75,10 +84,20 @@ class TestEachRule:
     def test_lies_in_a_file_named_for_it(self, rule: Rule) -> None:
         assert len(list(CHECKS.glob(f"{rule.id.lower()}_*.py"))) == 1
 
-    def test_has_cases_of_both_outcomes(self, rule: Rule) -> None:
+    def test_names_the_limits_that_it_decides_by(self, rule: Rule) -> None:
+        (path,) = CHECKS.glob(f"{rule.id.lower()}_*.py")
+        assert groups_read(path) <= set(rule.limits), f"{rule.id} reads groups that it does not name"
+        assert set(rule.limits) <= set(limits.of(Site(name="case")).groups), "a group that no profile has"
+        assert len(set(rule.limits)) == len(rule.limits)
+
+    def test_has_cases_of_all_four_kinds_or_says_why_not(self, rule: Rule) -> None:
         content = tomllib.loads((CASES / f"{rule.id}.toml").read_text(encoding="utf-8"))
-        assert any(case.get("finds") for case in content["case"])
-        assert any(not case.get("finds") for case in content["case"])
+        not_applicable = content.get("not_applicable", {})
+        kinds = {case["kind"] for case in content["case"]}
+        assert set(not_applicable) <= {LIMIT, OPEN}, "every rule finds something and leaves something alone"
+        assert all(len(reason.split()) > 3 for reason in not_applicable.values())
+        assert kinds.isdisjoint(not_applicable), "a kind that has a case cannot be said not to occur"
+        assert kinds | set(not_applicable) == KINDS
 
 
 def test_no_case_is_without_a_rule() -> None:
