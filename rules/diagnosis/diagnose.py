@@ -123,7 +123,8 @@ def results(judged: Judged, problems: list[Problem]) -> list[Diagnosis]:
             p = probabilities[number][column]
             if column < offsets:
                 end = problem.ends[shape.places[column].branch]
-                rows.append(Place(BAD_CONNECTION, said.places[column], p, *singles[number][column], "", end))
+                low, middle, high, heat = singles[number][column]
+                rows.append(Place(BAD_CONNECTION, said.places[column], p, low, middle, high, heat, "", end))
             elif column < others:
                 end = problem.ends[shape.offset_branch(column - offsets)]
                 rows.append(Place(SEMICONDUCTOR, said.offsets[column - offsets], p, point=end))

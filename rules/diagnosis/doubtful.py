@@ -137,9 +137,10 @@ def _off(
     off = within / square
     recorded = scale - 0.5 * (base**2).sum(axis=1)
     gained = 0.5 * within * off + 0.5 * (LOG_2PI - np.log(square))
-    figures = (entered, off, 1 / square, typed)
-    kinds = ((slice(None, observations), False), (slice(observations, None), True))
-    density = [slip_density(*(figure[:, some] for figure in figures), given=given) for some, given in kinds]
+    density = [
+        slip_density(entered[:, some], off[:, some], 1 / square[:, some], typed[:, some], given)
+        for some, given in ((slice(None, observations), False), (slice(observations, None), True))
+    ]
     return recorded[:, None] + gained + np.log(np.concatenate(density, axis=1)), off
 
 
