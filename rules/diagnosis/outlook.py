@@ -143,7 +143,8 @@ def _rows(block: Block, atoms: Atoms, posed: Sequence[Posed]) -> _Rows:
     shape = block.shape
     number = np.arange(len(block))[:, None]
     model = model_of(block, block.conductor[:, None] * atoms.ratios, block.conductor_slope[:, None] * atoms.ratios)
-    direction, moving = moved(block)
+    everywhere = np.broadcast_to(np.arange(shape.rows), (len(shape.places) + len(shape.offsets), shape.rows))
+    direction, moving = moved(block, everywhere)
     of_extra, size = direction[number, atoms.extra], atoms.size[..., None]
     shared = model.whole_shared[number, atoms.conductor]
     shared = shared + size[..., None] * np.swapaxes(moving[number, atoms.extra], -1, -2)
