@@ -23,7 +23,7 @@ from rules.diagnosis.diagnose import TOLD, where_words
 from rules.diagnosis.diagnose import offset_words as semiconductor_words
 from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, REVERSED, SEVERAL, SWAPPED, several_off
 from rules.diagnosis.extra import moved
-from rules.diagnosis.fact_words import Fact, against_words, conductor_words, group_words
+from rules.diagnosis.fact_words import Fact, against_words, conductor_words, group_words, line_words
 from rules.diagnosis.gaussian import log_density
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, SEMICONDUCTOR, Hypothesis
 from rules.diagnosis.judge import Judged, grouped, judge_block
@@ -267,6 +267,8 @@ def _told(
         agree = [n for n in range(len(groups)) if facts[n].agrees]
         speaking = sorted(agree, key=lambda n: -facts[n].most)[:1]
     for_ = [group_words(facts[n]) for n in speaking]
+    if row.cause in (BAD_CONNECTION, SEMICONDUCTOR) and speaking:
+        for_[1:1] = [said for said in [line_words(facts[speaking[0]])] if said]
     if name in judged.conductors.hypotheses.names:
         for_ = [*_of_conductors(problem, name, groups, pictures, number, own), *for_]
     if row.cause == DOUBTFUL and row.what:

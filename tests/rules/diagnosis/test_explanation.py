@@ -141,6 +141,19 @@ def test_two_rounds_show_an_offset_that_stays(chains: ModuleType) -> None:
     assert first.endswith(" more than computed")
 
 
+def test_three_rounds_are_a_line_over_the_current(chains: ModuleType) -> None:
+    """0.5 V whatever the current, and the resistance of the cable: 2 × 9 m × 4.61 mΩ/m + 1.206 mΩ = 84.2 mΩ."""
+    rows = []
+    for number, amps in enumerate((8.0, 4.0, 2.0)):
+        volts = chains.drops(LENGTHS, amps, offset=0.5)
+        rows += chains.read(("way", "p1", "p2", "p3"), volts, amps, str(number + 1))
+    offset = of(told(chains.chain(LENGTHS, rows)), SEMICONDUCTOR)
+    said = offset.speaks_for[1]
+    assert said.startswith("through 3 rounds run 1 loses 0.500")
+    assert said.endswith(" times its current, 84.2 mΩ computed")
+    assert " V and 84." in said
+
+
 def test_a_slip_is_named_with_what_was_meant(chains: ModuleType) -> None:
     volts = chains.drops(LENGTHS, 8.0)
     volts[2] /= 10
