@@ -64,7 +64,7 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml", *
         if visit not in known:
             raise WrongUse(f"--visit: no visit {visit!r}{_meant(visit, known)}")
         site = on_visit(site, visit)
-    return assess(site, limits_in_force(site, place))
+    return assess(site, limits_in_force(site, place), explain)
 
 
 def limits_in_force(site: Site, place: str = "site.toml") -> Limits:
