@@ -24,7 +24,7 @@ FIXED = ("meter counts", "source wander", "current counts")
     remedy="Read again at the current stated, with the circuit's own loads where they can be set; else with a finer meter.",
     caution="No load is added to a life-safety, trip or close circuit without the duty holder's permission, and none above what device, "
     "cable and source are rated for. A bad joint heats with the square of the current.",
-    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
+    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
     limits=(
         "decision",
         "heat",
