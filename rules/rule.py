@@ -63,6 +63,8 @@ class Rule:
     """Further sources, of what the text and the thresholds rest on."""
     limits: tuple[str, ...] = ()
     """Groups of the limits profile that it decides by."""
+    also_about: tuple[About, ...] = ()
+    """Other kinds of thing that it judges in the same way."""
 
     @property
     def text(self) -> str:
@@ -152,11 +154,12 @@ def rule(
     source: Citation,
     also: tuple[Citation, ...] = (),
     limits: tuple[str, ...] = (),
+    also_about: tuple[About, ...] = (),
 ) -> Callable[[Callable[[Any], Iterator[Finding | NotJudged]]], Rule]:
     """Make a rule of a function that yields findings, and what it could not judge, about one case."""
 
     def made(check: Callable[[Any], Iterator[Finding | NotJudged]]) -> Rule:
-        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits)
+        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits, also_about)
 
     return made
 
@@ -184,7 +187,7 @@ def judge(case: Case, about: About) -> tuple[list[Finding], list[NotJudged]]:
     findings: list[Finding] = []
     gaps: list[NotJudged] = []
     for this in catalogue():
-        if this.about != about:
+        if about not in (this.about, *this.also_about):
             continue
         setting = case.context.limits.rules.get(this.id)
         if setting is not None and setting.off:

@@ -44,15 +44,17 @@ def stated(sample: SampleSite) -> dict[str, Any]:
 
 @every_site
 def test_check_gives_exactly_the_stated_findings(sample: SampleSite) -> None:
-    given = Counter((f.rule, f.circuit, f.where, str(f.severity)) for f in assessment_of(sample).findings)
-    expected = Counter((f["rule"], f["circuit"], f["where"], f["severity"]) for f in stated(sample)["finding"])
+    given = Counter((f.rule, f.circuit, f.board, f.where, str(f.severity)) for f in assessment_of(sample).findings)
+    expected = Counter(
+        (f["rule"], f.get("circuit"), f.get("board"), f["where"], f["severity"]) for f in stated(sample)["finding"]
+    )
     assert given == expected
 
 
 @every_site
 def test_every_seeded_fault_is_found_and_nothing_else(sample: SampleSite) -> None:
-    seeded = {fault["circuit"] for fault in stated(sample)["seeded"]}
-    assert {finding.circuit for finding in assessment_of(sample).findings} == seeded
+    seeded = {(fault.get("circuit"), fault.get("board")) for fault in stated(sample)["seeded"]}
+    assert {(finding.circuit, finding.board) for finding in assessment_of(sample).findings} == seeded
 
 
 @every_site
