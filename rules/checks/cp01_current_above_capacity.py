@@ -69,7 +69,9 @@ def _of_run(case: CircuitCase, run: Run, gaps: list[tuple[str, str]]) -> Iterato
         yield _found(
             case, run, bounds, read[1], f"were read in round {read[0]}", Severity.IMMEDIATE if urgent else None
         )
-    elif read is not None and against_limit(read[1].value, bounds.most_a, read[1].u or 0.0, case.limits) is Verdict.OPEN:
+    elif (
+        read is not None and against_limit(read[1].value, bounds.most_a, read[1].u or 0.0, case.limits) is Verdict.OPEN
+    ):
         said = show(read[1].value, "A", read[1].u)
         gaps.append((run.name, f"not settled: {said} read in round {read[0]} against {bounds.words}"))
     elif amps is not None and _above(amps, bounds.least_a):
