@@ -187,6 +187,25 @@ class Place(NamedTuple):
     """Where the branch of the place ends: ``way`` for the device; empty for the whole circuit."""
     joints: tuple[Place, ...] = ()
     """Of bad connections in two places at once: each, with its own figures."""
+    speaks_for: tuple[str, ...] = ()
+    speaks_against: tuple[str, ...] = ()
+    """What was read that speaks for the cause and against it, as sentences; only where an explanation was asked for."""
+
+
+@dataclass(frozen=True, slots=True)
+class JointHeat:
+    """Heat in a bad connection that is suspected at one place; what is not known is ``None``."""
+
+    where: str
+    """As in ``Place``."""
+    read_a: Figure | None
+    """The most that it carried while it was read. [A]"""
+    read: Figure | None
+    """Heat at that current. [W]"""
+    design_a: Figure | None
+    """At design and the voltage that makes it largest. [A]"""
+    design: Figure | None
+    """Heat at that current. [W]"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -247,6 +266,10 @@ class LoadMargin:
     design: Figure | None = None
     worst: Figure | None = None
     """With the source at its lowest, hot conductors and what readings support."""
+    worst_recorded: Figure | None = None
+    """The same with everything as recorded: without a fault."""
+    source_lowest: Figure | None = None
+    """At the source's terminals, at its lowest."""
     lowest: Figure | None = None
     """The load's own."""
     margin: Figure | None = None
@@ -274,6 +297,8 @@ class CircuitResult:
     design_drop: Figure | None = None
     """Largest computed drop from the feeding board to a load at design current. [V]"""
     causes: tuple[Place, ...] = ()
+    joints: tuple[JointHeat, ...] = ()
+    """Heat where a connection may be bad, each place once."""
     points: tuple[PointVoltage, ...] = ()
     margins: tuple[LoadMargin, ...] = ()
     """One for each load, in the order of their rows."""

@@ -77,7 +77,7 @@ def _circuit(result: CircuitResult) -> Json:
             "visit": clean(result.visit),
             "status": str(result.status),
             "drop": _drop(result.drop),
-            "causes": [_cause(place) for place in result.causes if math.isfinite(place.probability)],
+            "causes": [_cause(place, result) for place in result.causes if math.isfinite(place.probability)],
             "points": [_point(point) for point in result.points],
             "next_reading": _next_reading(result.next_reading),
         }
@@ -94,7 +94,8 @@ def _drop(drop: Drop | None) -> Json | None:
     return _without_none({"round": clean(drop.round), **figures, "doubts": _without_none(doubts) or None})
 
 
-def _cause(place: Place) -> Json:
+def _cause(place: Place, result: CircuitResult) -> Json:
+    heat = next((joint for joint in result.joints if joint.where == place.where), None)
     extra = {"value": place.best_ohm, "low": place.low_ohm, "high": place.high_ohm}
     known = {name: value for name, value in extra.items() if value is not None and math.isfinite(value)}
     return _without_none(
@@ -103,7 +104,11 @@ def _cause(place: Place) -> Json:
             "where": clean(place.where),
             "probability": place.probability,
             "extra_resistance": {**known, "unit": "ohm"} if len(known) == len(extra) else None,
+            "heat_read": quantity(heat.read) if heat is not None else None,
+            "heat_design": quantity(heat.design) if heat is not None else None,
             "what": clean(place.what) or None,
+            "for": [clean(fact) for fact in place.speaks_for] or None,
+            "against": [clean(fact) for fact in place.speaks_against] or None,
         }
     )
 

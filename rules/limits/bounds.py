@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+from rules.columns import NEAREST_ZERO, OUTER
 from rules.limits.group import LimitGroup
 
 ABOVE_ZERO = (
     "drop", "termination", "heat", "length_doubt", "bad_connection", "series_semiconductor", "longer_route", "slip",
 )  # fmt: skip
 SHARES = ("decision", "other_metal", "doubtful")
+LARGEST = 1e9
+"""Of a number without a unit or in one of its own; the others have those of the record."""
 
 
 def impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -> None:
@@ -28,6 +31,10 @@ def impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -
                 faults.append(f"{where}; above 1")
             elif value > 1 and group.name in SHARES:
                 faults.append(f"{where}; a share from 0 to 1")
+            elif value > (most := OUTER.get(group.unit, (0, LARGEST))[1]):
+                faults.append(f"{where}; at most {most:.12g}")
+            elif 0 < value < NEAREST_ZERO:
+                faults.append(f"{where}; 0, or at least {NEAREST_ZERO:g}")
     for group_name, low, high in (
         ("bad_connection", "low_ohm", "high_ohm"),
         ("series_semiconductor", "low_v", "high_v"),

@@ -180,6 +180,9 @@ def _rules(name: str, given: object, parent: Limits | None, faults: list[str]) -
         faults.append(f"{name}: [rules] holds groups such as [rules.VD01]")
         return settings
     for rule, content in given.items():
+        if rule not in rule_ids():
+            faults.append(f"{name}: there is no rule {quoted(rule)}{_nearest(rule, rule_ids())}")
+            continue
         if not isinstance(content, dict) or (unknown := sorted(set(content) - {"severity", "off", "reason"})):
             what = (
                 f"there is no rules.{rule}.{unknown[0]}" if isinstance(content, dict) else f"rules.{rule} is no group"
@@ -198,6 +201,13 @@ def _rules(name: str, given: object, parent: Limits | None, faults: list[str]) -
                 off, Severity(severity) if severity is not None else None, reason.strip(), name
             )
     return settings
+
+
+@cache
+def rule_ids() -> tuple[str, ...]:
+    """Ids of all rules, by the names of their files: a profile is read without loading them."""
+    found = (entry.name.partition("_") for entry in files("rules.checks").iterdir() if entry.name.endswith(".py"))
+    return tuple(sorted(id_.upper() for id_, _, _ in found if id_))
 
 
 def _with_prior(limits: Limits, prior: Iterable[tuple[str, float]]) -> Limits:

@@ -248,6 +248,11 @@ def test_a_table_that_is_no_file_is_a_line(kind: str, plant: Path, capsys: Captu
     assert refused(["check", str(plant)], capsys) == [f"decisions.csv: {what}"]
 
 
+def test_a_pipe_is_no_site_and_is_not_waited_for(capsys: Captured) -> None:
+    os.mkfifo("pipe.ohmwalk")
+    assert refused(["check", "pipe.ohmwalk"], capsys) == ["pipe.ohmwalk is a pipe or a device; accepted: a site file"]
+
+
 def test_a_circuit_is_named_once(plant: Path, capsys: Captured) -> None:
     (line,) = refused(["check", str(plant), "--circuit", "F2", "--circuit", "F3"], capsys)
     assert line == "ohmwalk check: --circuit stands there twice; accepted: one circuit"

@@ -12,7 +12,9 @@ from rules.assess import assess
 from rules.assessment import Severity
 from rules.errors import ProfileError
 from rules.limits import profile
+from rules.limits.profile import rule_ids
 from rules.record import Site
+from rules.rule import catalogue
 
 STATUSES = ("verified", "computed", "from-memory", "our own default", "common practice, no source")
 
@@ -113,7 +115,13 @@ def test_a_rule_may_be_lowered_or_switched_off_with_a_reason() -> None:
         ('[capacity]\nsource="s"\ntable = { word = "iec", accepted = ["iec"] }', "capacity.table is {'word': 'iec'"),
         ('[capacity]\nsource="s"\ntabel = "iec"', "there is no capacity.tabel; did you mean 'table'?"),
         ('[capacity]\ntable = "iec"', "[capacity] changes values without naming its source"),
+        ('[drop]\nsource="s"\nallowed_percent = 1e308', "drop.allowed_percent is 1e+308; at most 1000000000"),
+        ('[drop]\nsource="s"\nallowed_percent = 1e-300', "drop.allowed_percent is 1e-300; 0, or at least 1e-12"),
+        ('[series_semiconductor]\nsource="s"\nhigh_v = 1e12', "series_semiconductor.high_v is 1e+12; at most 10000"),
+        ('[heat]\nsource="s"\nsoon_w = 1e12', "heat.soon_w is 1e+12; at most 10000000"),
+        ('[prior]\nsource="s"\nas_recorded = 1e308', "prior.as_recorded is 1e+308; at most 1000000000"),
         ("[rules.VD01]\noff = true", "rules.VD01 has no reason"),
+        ('[rules.VD91]\noff = true\nreason="r"', "there is no rule 'VD91'; did you mean 'VD01'?"),
         ('[rules.VD01]\noff = "yes"\nreason="r"', "rules.VD01.off is 'yes'; true or false"),
         ('[rules.VD01]\nseverity = "later"\nreason="r"', "rules.VD01.severity is 'later'; one of immediate, soon, watch, note"),
         ('[rules.VD01]\nlevel = 1\nreason="r"', "there is no rules.VD01.level; a rule may have severity, off, reason"),
@@ -261,3 +269,7 @@ def test_what_a_profile_changes_shows_in_the_findings_that_it_changes(name: str)
     assert finding.numbers["allowed"].value == pytest.approx(in_force["drop.allowed_percent"] / 100)
     assert in_force.citation("drop", "allowed_percent") in finding.source
     assert [profile for profile in (name, *in_force.inherited[:-1]) if f"limits profile {profile}" in finding.source]
+
+
+def test_a_profile_knows_every_rule_by_its_file() -> None:
+    assert rule_ids() == tuple(rule.id for rule in catalogue())

@@ -77,7 +77,16 @@ def test_a_claimed_fault_of_little_heat_is_watch_and_of_more_is_soon() -> None:
     large = result(site(read(extra=(0.0, 0.15))))
     assert (large.status, large.findings[0].cause, large.findings[0].where) == (Status.ACT, BAD_CONNECTION, "run 2")
     assert large.findings[0].numbers["extra resistance"].value == pytest.approx(0.15, rel=0.02)
-    assert "at design current 3.75 ± 0.02 W turn into heat in one place" in large.findings[0].consequences
+    # 0.15 Ω × (5 A)² = 3.75 W, read at 5 A and designed for 5 A; with the source at its lowest 0.15 Ω × 5 A = 0.75 V less
+    heat, at_worst = large.findings[0].consequences
+    assert heat == ("at design current 3.75 ± 0.02 W turn into heat in one place, 3.75 ± 0.02 W while it was read")
+    assert " gets 17.92 ± 0.06 V; of the source's 21 V 3.08 ± 0.06 V are lost, as recorded 2.33 ± 0.04 V" in at_worst
+    (joint,) = (each for each in large.joints if each.where == "run 2")
+    assert joint.read is not None
+    assert joint.design is not None
+    assert (joint.read.value, joint.design.value) == pytest.approx((3.75, 3.75), rel=0.02)
+    numbers = large.findings[0].numbers
+    assert numbers["at worst as recorded"].value - numbers["at worst"].value == pytest.approx(0.75, abs=0.01)
 
 
 def test_a_doubtful_reading_settles_nothing() -> None:
