@@ -169,12 +169,12 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         common = context.common.get(circuit.id)
         unused = context.unused.get(circuit.id, ())
     tree, rounds, nominal = measured.tree, measured.rounds, nominal_v(circuit, index)
-    drop, gap = None, "nothing was read" if not measured.readings else ""
-    if measured.readings:
+    drop, gap = None, "nothing was read under load" if measured.readings else "nothing was read"
+    if rounds:
         against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
         possible = [this for this in rounds if not against[this.name]]
         try:
-            if rounds and not possible:
+            if not possible:
                 raise MissingData(against[rounds[0].name])
             drop = drop_of(possible, tree, limits)
         except MissingData as error:
@@ -271,6 +271,8 @@ def _return_leg(circuit: Circuit, index: Index) -> str:
 
 def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
     """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
+    if reading.is_unloaded:
+        return reading.quantity in ("current", "residual")  # what a clamp shows without a current
     this = next(round_ for round_ in rounds if round_.name == reading.round)
     if reading.quantity == "voltage":
         return reading.at in this.volts

@@ -35,6 +35,8 @@ UNIT_OF_QUANTITY = {
 LEGS = ("positive", "negative", "both")
 METALS = ("copper", "tinned copper", "aluminium", "copper-clad aluminium")
 STRANDINGS = ("solid", "stranded", "flexible")
+CATEGORIES = ("CAT II", "CAT III", "CAT IV")
+"""Measurement categories that a place may ask of a meter, the least first."""
 RESERVED_POINTS = ("bus", "way", "device", "ambient")
 
 
@@ -98,6 +100,8 @@ class Source(Row):
     cells: int | None = col.column(None, "cells", "whole", least=1)
     fed_from: Feed | None = col.column(None, "fed_from", "reference", tables=("circuits",))
     efficiency_percent: float | None = col.number("efficiency", "%", above=0, most=100)
+    category: str = col.column("", "category", "choice", choices=CATEGORIES)
+    """The least measurement category that a meter needs at its terminals."""
     notes: str = col.notes()
 
     @property
@@ -116,6 +120,8 @@ class Board(Row):
     )
     nominal_voltage_v: float | None = col.number("nominal", "V", above=0)
     location: str = col.column("", "location")
+    category: str = col.column("", "category", "choice", choices=CATEGORIES)
+    """The least measurement category that a meter needs on it and on its circuits."""
     walk_order: float | None = col.order()
     notes: str = col.notes()
 
@@ -256,6 +262,9 @@ class Instrument(Row):
     zero: float | None = col.number("zero", "*")
     input_resistance_ohm: float | None = col.number("input_resistance", "ohm", above=0)
     category: str = col.column("", "category")
+    """As printed on it: ``CAT III 600 V``, or several."""
+    rated_voltage_v: float | None = col.number("rated_voltage", "V", above=0)
+    """The highest d.c. voltage that it may be connected to."""
     calibrated_until: str = col.column("", "calibrated_until", "date")
     notes: str = col.notes()
 
@@ -292,6 +301,8 @@ class Reading(Row):
     full_scale: float | None = col.number("range", "*", above=0)
     test_resistor_ohm: float | None = col.number("test_resistor", "ohm", above=0)
     test_resistor_leg: str = col.column("", "test_resistor_leg", "choice", choices=LEGS[:2])
+    loads_off: str = col.column("", "loads_off", "choice", choices=("yes",))
+    """Taken with every load of its circuit or board off: it belongs to no load state."""
     by: str = col.column("", "by")
     tag: str = col.column("", "reading", "tag")
     replaces_id: str = col.column("", "replaces", "reference", tables=("readings",))
@@ -305,6 +316,11 @@ class Reading(Row):
     @property
     def unit(self) -> str:
         return UNIT_OF_QUANTITY[self.quantity]
+
+    @property
+    def is_unloaded(self) -> bool:
+        """Whether it was taken with the loads off, so that it belongs to no load state."""
+        return self.loads_off == "yes"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
