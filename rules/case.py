@@ -4,13 +4,12 @@ from __future__ import annotations
 
 import math
 import re
-from collections import Counter, defaultdict
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 from rules.assessment import Drop
 from rules.calc.doubt import total
-from rules.calc.network import Solved
 from rules.consistency import Problem
 from rules.diagnosis.budget import Current
 from rules.diagnosis.common_error import Taught
@@ -19,6 +18,7 @@ from rules.diagnosis.habits import Tie, ties_of
 from rules.diagnosis.learning import diagnose_told
 from rules.diagnosis.problem import Problem as Posed
 from rules.diagnosis.rows import problem_of
+from rules.doubts import drop_u
 from rules.errors import MissingData
 from rules.impossible import impossible
 from rules.index import Index
@@ -28,7 +28,7 @@ from rules.nominal import nominal_v
 from rules.record import Board, Circuit, Figure, Load, Reading, Run, Site, Source
 from rules.rounds import Round, Tree, current_at, drop_of, judged, rounds_of, temperature_read, visit_of
 from rules.routes import Shared, first_ends
-from rules.runs import SHARED, Carrying, Figures, record_variance
+from rules.runs import SHARED, Figures
 from rules.worst import largest_current_a, worst_of
 
 RUN = re.compile(r"run \d+")
@@ -252,7 +252,7 @@ def _worst(context: Context, circuit: Circuit, diagnosis: Diagnosis | None) -> d
         network,
         context.figures,
         lambda id_: diagnosis if id_ == circuit.id else context.diagnoses.get(id_),
-        lambda node: _computed_u(context, list(network.way_up(node))[:-1], network.lowest),
+        lambda node: drop_u(context, list(network.way_up(node))[:-1], "lowest"),
     )
 
 
@@ -376,14 +376,14 @@ def _load_point(context: Context, circuit: Circuit, load: Load, rounds: Sequence
     return LoadPoint(
         load=load,
         drop_v=float(design.voltage_v[bus] - design.voltage_v[node]),
-        drop_u=_computed_u(context, inside, design),
+        drop_u=drop_u(context, inside, "design"),
         gap=gap,
         total_drop_v=float(design.voltage_v[source] - design.voltage_v[node]),
-        total_drop_u=_computed_u(context, branches[:-1], design),
+        total_drop_u=drop_u(context, branches[:-1], "design"),
         total_gap=network.gap_of(node) or gap,
         design_v=float(design.voltage_v[node]),
         lowest_v=float(lowest.voltage_v[node]),
-        lowest_u=_computed_u(context, branches[:-1], lowest),
+        lowest_u=drop_u(context, branches[:-1], "lowest"),
         lowest_gap=lowest_gap,
         source_lowest_v=float(network.held_lowest_v[source]),
         collapsed=collapsed,
@@ -400,23 +400,3 @@ def _volts(this: Round, point: str) -> tuple[float, str, float]:
 def _collapse(network: Network, node: int, lowest: bool) -> str:
     found = network.collapse_of(node, lowest)
     return GAP_COLLAPSE.format(network.place_of(found.node)) if found is not None else ""
-
-
-def _computed_u(context: Context, branches: Sequence[int], solved: Solved) -> float:
-    """Standard uncertainty of the computed drop over branches, at currents that are exact. [V]"""
-    network, limits = context.network, context.limits
-    parts: dict[str, list[Carrying]] = defaultdict(list)
-    variance = 0.0
-    for branch in branches:
-        amps = float(solved.current_a[branch])
-        if math.isnan(amps):  # a tree that cannot be supplied
-            return math.nan
-        run_id = network.run_at[branch]
-        if run_id:
-            path = parts[network.circuit_at[branch]]
-            path.append(Carrying(context.figures[run_id], amps))
-            if branch in network.return_at:
-                path.append(Carrying(network.return_at[branch].figures, float(solved.back_a[branch])))
-        else:
-            variance += (limits["device_doubt.relative"] * float(network.cold_ohm[branch]) * amps) ** 2
-    return math.sqrt(variance + sum(record_variance(path, limits) for path in parts.values()))

@@ -263,7 +263,7 @@ def _impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) 
     for group in groups.values():
         for key, value in group.values.items():
             where = f"{name}: {group.name}.{key} is {value:g}"
-            if group.name in ("temperature", "ambient"):
+            if group.name in ("temperature", "cold", "ambient"):
                 if not -90 <= value <= 400:
                     faults.append(f"{where}; a temperature from -90 to 400 degC")
             elif value < 0:
