@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import io
 import subprocess
 import sys
 import tomllib
@@ -181,11 +182,31 @@ def test_unknown_name_is_refused_with_the_nearest() -> None:
         sample_site("plan")
 
 
-def test_the_readings_of_the_station_are_those_of_its_simulation() -> None:
-    """Byte for byte, as ``python tests/sample_sites/simulate.py station`` prints them."""
+def simulated(name: str) -> str:
+    """What ``python tests/sample_sites/simulate.py NAME`` prints."""
     script = Path(__file__).parent / "sample_sites" / "simulate.py"
-    printed = subprocess.run([sys.executable, script, "station"], check=True, capture_output=True, text=True).stdout
-    assert printed == sample_site("station").files()["readings.csv"].decode("utf-8")
+    return subprocess.run([sys.executable, script, name], check=True, capture_output=True, encoding="utf-8").stdout
+
+
+def test_the_readings_of_the_station_are_those_of_its_simulation() -> None:
+    """Byte for byte."""
+    assert simulated("station") == sample_site("station").files()["readings.csv"].decode("utf-8")
+
+
+@pytest.mark.parametrize("name", ["plant", "doors"])
+def test_readings_that_were_added_later_are_those_of_their_simulation(name: str) -> None:
+    """The last rows of the table, value by value."""
+    added = list(csv.DictReader(io.StringIO(simulated(name))))
+    table = sample_site(name).files()["readings.csv"].decode("utf-8")
+    last = list(csv.DictReader(io.StringIO(table)))[-len(added) :]
+    assert len(added) > 10
+    assert [{column: cell for column, cell in row.items() if cell} for row in last] == [
+        {column: cell for column, cell in row.items() if cell} for row in added
+    ]
+
+
+def test_the_sample_sites_show_at_least_twenty_rules_at_work() -> None:
+    assert len({row["rule"] for sample in SAMPLE_SITES for row in stated(sample)["finding"]}) >= 20
 
 
 def test_the_station_shows_two_visits_peaks_and_a_repair() -> None:
