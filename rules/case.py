@@ -127,6 +127,13 @@ class CircuitCase:
     def tag(self) -> str:
         return self.circuit.tag
 
+    @property
+    def drawn(self) -> frozenset[str]:
+        """Points at which a load, a board or a converter takes current."""
+        index = self.context.index
+        fed = {_fed_at(fed, self.circuit, index) for fed in index.fed_by_circuit(self.circuit.id)}
+        return frozenset(fed | {point.load.point for point in self.loads})
+
     def is_vital(self, point: str) -> bool:
         """Whether a life-safety or trip-or-close load hangs on a point or behind it."""
         behind = {end for end in self.tree.ends if point in ("bus", "way") or self._passes(end, point)} | {point}

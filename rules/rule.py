@@ -80,14 +80,15 @@ class Rule:
         cause: str | None = None,
         consequences: tuple[str, ...] = (),
         as_circuit: str | None = None,
+        as_board: str | None = None,
     ) -> Finding:
         """
         A finding of this rule; its ``id`` is built from rule, place and ``where``.
 
-        ``as_circuit`` is for rules about the site that report on a circuit.
+        ``as_circuit`` and ``as_board`` are for rules about the site that report on a circuit, or on a board or source.
         """
         circuit = case.tag if isinstance(case, CircuitCase) else as_circuit
-        board = case.tag if isinstance(case, BoardCase) else None
+        board = case.tag if isinstance(case, BoardCase) else as_board
         place = circuit if circuit is not None else f"board {board}" if board is not None else "site"
         setting = case.context.limits.rules.get(self.id)
         if setting is not None and setting.severity is not None:
