@@ -18,6 +18,7 @@ from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
 from rules.diagnosis.learning import diagnose_told, learn
 from rules.diagnosis.next_reading import next_readings
+from rules.heat import similar_joints
 from rules.index import Index
 from rules.limits import Limits
 from rules.margins import margins_of
@@ -98,9 +99,10 @@ def prepare(site: Site, limits: Limits) -> Context:
     tied = {id_: (problem, ties_by(context, measured[id_], problem)) for id_, problem in some.items()}
     taught = learn(tied, diagnoses, limits)
     told = {id_: taught.told(id_, *both) for id_, both in tied.items() if taught.touches(both[1])}
+    context = replace(context, measured=measured)
     return replace(
         context,
-        measured=measured,
+        joints=similar_joints(context),
         diagnoses=diagnoses | dict(zip(told, diagnose_told(list(told.values()), limits), strict=True)),
         taught=taught,
         common={id_: problem.common.relative for id_, problem in told.items() if problem.common is not None},

@@ -142,6 +142,8 @@ class Drop:
 
     budget: tuple[Doubt, ...] = ()
     """What its doubt is made of, largest first: the squares add to that of the excess's ``u``."""
+    unfinished: tuple[tuple[str, str], ...] = ()
+    """Rounds of a higher current that give no comparison, each with what it lacks."""
 
 
 class Place(NamedTuple):

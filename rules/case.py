@@ -58,6 +58,18 @@ class Context:
     """By circuit id: error that a circuit shares with others, relative to its computed drops; none where none was found."""
     unused: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     """By circuit id: readings that nothing makes use of."""
+    joints: Mapping[tuple[str, ...], Sequence[SimilarJoint]] = field(default_factory=dict)
+    """Joints that were read across themselves, by what makes them similar."""
+
+
+@dataclass(frozen=True, slots=True)
+class SimilarJoint:
+    """A termination or pole of some circuit, to compare others with."""
+
+    circuit: str
+    """Its tag."""
+    place: str
+    ohm: Figure
 
 
 @dataclass(frozen=True, slots=True)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
 from rules.calc.ampacity import Capacity
@@ -103,6 +104,21 @@ def read_in(run: Run, case: CircuitCase) -> tuple[str, Figure] | None:
         return None
     name, value, u = max(read, key=lambda item: abs(item[1]))
     return name, Figure(abs(value), "A", u)
+
+
+def together(gaps: Sequence[tuple[str, str]]) -> Iterator[tuple[str, str]]:
+    """
+    Places with what could not be judged of them, those of one reason told once.
+
+    >>> list(together([("run 1", "no table"), ("run 2", "no table"), ("run 3", "no size")]))
+    [('runs 1, 2', 'no table'), ('run 3', 'no size')]
+    """
+    by_reason: dict[str, list[str]] = {}
+    for where, why in gaps:
+        by_reason.setdefault(why, []).append(where)
+    for why, places in by_reason.items():
+        names = ", ".join(place.removeprefix("run ") for place in places)
+        yield (places[0] if len(places) == 1 else f"runs {names}"), why
 
 
 def as_run(shared: SharedReturn) -> Run:

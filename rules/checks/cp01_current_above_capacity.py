@@ -6,9 +6,9 @@ from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
 from rules.errors import RulesError
-from rules.loading import Bounds, bounds_of, current_of, read_in
+from rules.loading import Bounds, bounds_of, current_of, read_in, together
 from rules.record import Figure, Run
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
 
 ROUNDING = 1e-9
@@ -25,7 +25,7 @@ ROUNDING = 1e-9
     "cable live. The table is for steady current in the ambient stated; local code and a licensed person decide.",
     source=Citation("IEC 60364-5-52", "2009", "523.1: current not above the corrected capacity", "from-memory"),
     also=(Citation("IEC 60364-4-43", "2008", "433.1: design current not above capacity", "from-memory"),),
-    limits=("capacity", "decision", "overload"),
+    limits=("capacity", "decision", "overload", "temperature", "cold", *DOUBTS_OF_READINGS),
 )
 def current_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
@@ -40,20 +40,23 @@ def current_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
     **Leaves alone**: 19.5 A in the same, which is its capacity; a short peak; the temperature that a run settles at.
     """
+    gaps: list[tuple[str, str]] = []
     for run in case.runs:
-        if run.size:
-            yield from _of_run(case, run)
+        if run.size:  # else RC01 says so
+            yield from _of_run(case, run, gaps)
+    for where, why in together(gaps):
+        yield current_above_capacity.gap(case, where, why)
 
 
-def _of_run(case: CircuitCase, run: Run) -> Iterator[Finding | NotJudged]:
+def _of_run(case: CircuitCase, run: Run, gaps: list[tuple[str, str]]) -> Iterator[Finding]:
     amps, read = current_of(run, case), read_in(run, case)
     if amps is None and read is None:
-        yield current_above_capacity.gap(case, run.name, "what flows in it at design is not known")
+        gaps.append((run.name, "what flows in it at design is not known"))
         return
     try:
         bounds = bounds_of(run, case)
     except RulesError as error:
-        yield current_above_capacity.gap(case, run.name, str(error))
+        gaps.append((run.name, str(error)))
         return
     shown, factor = (
         read is not None and _is_past(read[1], bounds.most_a, case),
@@ -67,9 +70,7 @@ def _of_run(case: CircuitCase, run: Run) -> Iterator[Finding | NotJudged]:
             case, run, bounds, read[1], f"were read in round {read[0]}", Severity.IMMEDIATE if urgent else None
         )
     elif amps is not None and _above(amps, bounds.least_a):
-        yield current_above_capacity.gap(
-            case, run.name, f"{show(amps, 'A', digits=3)} with every load on against {bounds.words}"
-        )
+        gaps.append((run.name, f"{show(amps, 'A', digits=3)} with every load on against {bounds.words}"))
 
 
 def _found(case: CircuitCase, run: Run, bounds: Bounds, amps: Figure, how: str, severity: Severity | None) -> Finding:

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase
 from rules.errors import MissingData, RulesError
-from rules.loading import Bounds, bounds_of
+from rules.loading import Bounds, bounds_of, together
 from rules.record import Figure, Run
 from rules.rule import rule
 from rules.tables.ampacity import nec_largest_device_a, nec_next_device_a
@@ -49,6 +49,7 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         return
     if circuit.rated_current_a is None:
         raise MissingData("the rating of the device is not recorded")
+    gaps: list[tuple[str, str]] = []
     found: list[tuple[float, Run, Bounds, str]] = []
     for run in case.runs:
         if not run.size:
@@ -56,7 +57,7 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         try:
             bounds = bounds_of(run, case)
         except RulesError as error:
-            yield device_above_capacity.gap(case, run.name, str(error))
+            gaps.append((run.name, str(error)))
             continue
         least_a, rule_words = _largest_a(run, bounds, bounds.least_a)
         most_a, _ = _largest_a(run, bounds, bounds.most_a)
@@ -64,9 +65,11 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             continue
         if circuit.rated_current_a <= most_a:
             rated, _ = show_against(circuit.rated_current_a, least_a, "A")
-            yield device_above_capacity.gap(case, run.name, f"a device of {rated} before {bounds.words}")
+            gaps.append((run.name, f"a device of {rated} before {bounds.words}"))
             continue
         found.append((most_a, run, bounds, rule_words))
+    for where, why in together(gaps):
+        yield device_above_capacity.gap(case, where, why)
     if found:
         most_a, run, bounds, rule_words = min(found, key=lambda item: item[0])
         rated, limit = show_against(circuit.rated_current_a, most_a, "A")

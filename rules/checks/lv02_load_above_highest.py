@@ -9,7 +9,7 @@ from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.doubts import drop_u
 from rules.record import Figure
-from rules.rule import rule
+from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
 
 
@@ -23,7 +23,7 @@ from rules.units import show, show_against
     caution="Electronics, lamps and coils run hot or fail from it, door magnets and trip coils among them, often weeks later. Setting a "
     "charger changes what the battery needs: its maker's figures decide. Do not switch a load off to protect it where people rely on it.",
     source=Citation("the load maker's highest voltage", status="common practice, no source"),
-    limits=("decision", "cold"),
+    limits=("decision", "cold", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def load_above_highest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
