@@ -207,6 +207,10 @@ def test_readings_that_were_added_later_are_those_of_their_simulation(name: str)
     ]
 
 
+def test_the_sample_sites_show_at_least_twenty_rules_at_work() -> None:
+    assert len({row["rule"] for sample in SAMPLE_SITES for row in stated(sample)["finding"]}) >= 20
+
+
 def test_the_station_shows_two_visits_peaks_and_a_repair() -> None:
     record = record_of(sample_site("station"))
     assert [visit.kind for visit in record.visits] == ["as found", "as left"]

@@ -121,15 +121,13 @@ class Building:
         celsius += TEMPERATURE_DOUBT[run["temperature_by"] or "assumed"] * self.normal("temperature", circuit)
         number, unit = words(size)
         metric = unit == "mm2"
-        r20 = OHM_PER_KM[float(number)] / 1e3 * 58 * RHO[metal] if metric else RHO[metal] * LAY / awg_mm2(number)
+        r20 = OHM_PER_KM[float(number)] / 1e3 * 58 * RHO[metal] if metric else RHO[metal] * LAY / area_mm2(size)
         r20 *= 1 + 0.02 * self.normal("resistance", circuit)
         return metres * r20 * (1 + ALPHA[metal] * (celsius - 20))
 
     def joint_ohm(self, size: str, *name: str) -> float:
         """One healthy termination."""
-        number, unit = words(size)
-        mm2 = float(number) if unit == "mm2" else awg_mm2(number)
-        return 0.15e-3 * math.sqrt(10 / mm2) * math.exp(math.log(2) * self.normal("joint", *name))
+        return 0.15e-3 * math.sqrt(10 / area_mm2(size)) * math.exp(math.log(2) * self.normal("joint", *name))
 
     def device_ohm(self, circuit: Row) -> float:
         """One pole of a circuit's device."""
@@ -173,7 +171,8 @@ class Building:
             faults = list(self.faults(tag, visit))
             for leg in poles(circuit):
                 ends = (self.point_node(leg, tag, "bus"), self.point_node(leg, tag, "way"))
-                yield Branch(tag, "device", leg, *ends, self.device_ohm(circuit))
+                worn = sum(fault.get("ohm", 0.0) for fault in faults if fault.get("at") == f"device {leg}")
+                yield Branch(tag, "device", leg, *ends, self.device_ohm(circuit) + worn)
             for run in (run for run in self.runs if run["circuit"] == tag):
                 for leg in ("positive", "negative"):
                     common = run.get("return", "") if leg == return_leg(circuit) else ""
@@ -227,8 +226,11 @@ def words(text: str) -> tuple[str, str]:
     return number, unit
 
 
-def awg_mm2(number: str) -> float:
-    """Area of an AWG size."""
+def area_mm2(size: str) -> float:
+    """Of a conductor; of AWG by its diameter."""
+    number, unit = words(size)
+    if unit in ("mm2", "kcmil"):
+        return float(number) * (1.0 if unit == "mm2" else 0.5067)
     gauge = 1 - int(number.split("/")[0]) if "/" in number else int(number)
     return math.pi / 4 * (0.127 * math.pow(92, (36 - gauge) / 39)) ** 2
 
