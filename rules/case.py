@@ -163,6 +163,11 @@ class CircuitCase:
         return False
 
     @property
+    def return_leg(self) -> str:
+        """The leg without the device."""
+        return _return_leg(self.circuit, self.context.index)
+
+    @property
     def limits(self) -> Limits:
         return self.context.limits
 
