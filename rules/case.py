@@ -119,6 +119,8 @@ class CircuitCase:
     runs: tuple[Run, ...]
     loads: tuple[LoadPoint, ...]
     visit: str
+    readings: tuple[Reading, ...]
+    """Of the visit, those with the loads off too."""
     rounds: tuple[Round, ...]
     tree: Tree
     drop: Drop | None
@@ -212,6 +214,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
         visit=measured.visit,
+        readings=measured.readings,
         rounds=rounds,
         tree=tree,
         drop=drop,

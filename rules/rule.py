@@ -61,6 +61,8 @@ class Rule:
     """Further sources, of what the text and the thresholds rest on."""
     limits: tuple[str, ...] = ()
     """Groups of the limits profile that it decides by."""
+    also_about: tuple[About, ...] = ()
+    """Other kinds of thing that it judges in the same way."""
 
     @property
     def text(self) -> str:
@@ -80,15 +82,14 @@ class Rule:
         cause: str | None = None,
         consequences: tuple[str, ...] = (),
         as_circuit: str | None = None,
-        as_board: str | None = None,
     ) -> Finding:
         """
         A finding of this rule; its ``id`` is built from rule, place and ``where``.
 
-        ``as_circuit`` and ``as_board`` are for rules about the site that report on a circuit, or on a board or source.
+        ``as_circuit`` is for rules about the site that report on a circuit.
         """
         circuit = case.tag if isinstance(case, CircuitCase) else as_circuit
-        board = case.tag if isinstance(case, BoardCase) else as_board
+        board = case.tag if isinstance(case, BoardCase) else None
         place = circuit if circuit is not None else f"board {board}" if board is not None else "site"
         setting = case.context.limits.rules.get(self.id)
         if setting is not None and setting.severity is not None:
@@ -131,11 +132,12 @@ def rule(
     source: Citation,
     also: tuple[Citation, ...] = (),
     limits: tuple[str, ...] = (),
+    also_about: tuple[About, ...] = (),
 ) -> Callable[[Callable[[Any], Iterator[Finding | NotJudged]]], Rule]:
     """Make a rule of a function that yields findings, and what it could not judge, about one case."""
 
     def made(check: Callable[[Any], Iterator[Finding | NotJudged]]) -> Rule:
-        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits)
+        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits, also_about)
 
     return made
 
@@ -163,7 +165,7 @@ def judge(case: Case, about: About) -> tuple[list[Finding], list[NotJudged]]:
     findings: list[Finding] = []
     gaps: list[NotJudged] = []
     for this in catalogue():
-        if this.about != about:
+        if about not in (this.about, *this.also_about):
             continue
         setting = case.context.limits.rules.get(this.id)
         if setting is not None and setting.off:

@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 
-from rules.case import Context
+from rules.case import CircuitCase, Context
 from rules.record import Board, Circuit, Reading, Source
 from rules.rounds import judged, visit_of
+from rules.rule import BoardCase
 
 MOST_SAID = 4
 """Tags that a sentence names."""
@@ -20,15 +21,10 @@ class Taken:
     place: Circuit | Board | Source
     readings: tuple[Reading, ...]
 
-    @property
-    def circuit(self) -> str | None:
-        """Tag of the circuit; ``None`` for a busbar."""
-        return self.place.tag if isinstance(self.place, Circuit) else None
 
-    @property
-    def board(self) -> str | None:
-        """Tag of the board or source; ``None`` for a circuit."""
-        return None if isinstance(self.place, Circuit) else self.place.tag
+def taken_on(case: CircuitCase | BoardCase) -> tuple[Reading, ...]:
+    """What was read on a circuit or busbar."""
+    return case.readings if isinstance(case, CircuitCase) else _on_busbar(case.row, case.context)
 
 
 def taken(context: Context) -> Iterator[Taken]:
@@ -36,14 +32,18 @@ def taken(context: Context) -> Iterator[Taken]:
     index = context.index
     busbars: tuple[Board | Source, ...] = (*index.walked_sources, *index.walked_boards)
     for place in busbars:
-        visit = visit_of(place.id, index, context.visit_ranks)
-        rows = [row for row in judged(index.readings_of(place.id), index) if row.visit_or_default == visit]
-        if rows:
-            yield Taken(place, tuple(rows))
+        if rows := _on_busbar(place, context):
+            yield Taken(place, rows)
     for circuit in index.walked_circuits:
         side = context.measured.get(circuit.id)
         if side is not None and side.readings:
             yield Taken(circuit, side.readings)
+
+
+def _on_busbar(place: Board | Source, context: Context) -> tuple[Reading, ...]:
+    visit = visit_of(place.id, context.index, context.visit_ranks)
+    rows = judged(context.index.readings_of(place.id), context.index)
+    return tuple(row for row in rows if row.visit_or_default == visit)
 
 
 def day_of(reading: Reading, context: Context) -> str:

@@ -6,26 +6,27 @@ from itertools import combinations
 from rules.assessment import Citation, Finding, Severity
 from rules.calc.agreement import en_ratio
 from rules.calc.doubt import Weighted, total
-from rules.case import Context
+from rules.case import CircuitCase, Context
 from rules.meters import worth
 from rules.record import Figure, Reading
-from rules.rule import DOUBTS_OF_READINGS, SiteCase, rule
-from rules.taken import Taken, taken
+from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
+from rules.taken import taken_on
 from rules.units import show
 
 
 @rule(
     id="IN04",
     title="Two meters disagree",
-    about="site",
+    about="circuit",
     severity=Severity.WATCH,
     remedy="Prove both on a known source; set the one that fails aside, and read again what it read. Keep both readings.",
     caution="Neither is right because it suits: until both were proved, nothing that rests on one of them alone is settled. "
     "Two meters on one pair of clips are two pairs of leads on live parts.",
     source=Citation("ISO 13528", "2022", "9.7: E_n score", "from-memory"),
     limits=DOUBTS_OF_READINGS,
+    also_about=("board", "source"),
 )
-def meters_disagree(case: SiteCase) -> Iterator[Finding]:
+def meters_disagree(case: CircuitCase | BoardCase) -> Iterator[Finding]:
     """
     Two meters read one quantity at one place and leg in one round, and the E_n ratio of their means is above 1: they are
     further apart than twice the standard uncertainty of the distance, by both meters' own figures.
@@ -35,20 +36,19 @@ def meters_disagree(case: SiteCase) -> Iterator[Finding]:
     **Leaves alone**: 24.12 V and 24.00 V by the same: E_n 0.60. They agree, which makes neither right. Two thermometers,
     whose contact differs more than they do.
     """
-    for place in taken(case.context):
-        by_thing: dict[tuple[str, ...], dict[str, list[Reading]]] = {}
-        for row in place.readings:
-            if row.instrument and row.quantity != "temperature":
-                leg = "" if row.leg == "both" else row.leg
-                thing = (row.round, row.quantity, row.at, row.to, leg, row.loads_off)
-                by_thing.setdefault(thing, {}).setdefault(row.instrument, []).append(row)
-        for meters in by_thing.values():
-            for one, other in combinations(meters.items(), 2):
-                yield from _compared(case, place, one, other)
+    by_thing: dict[tuple[str, ...], dict[str, list[Reading]]] = {}
+    for row in taken_on(case):
+        if row.instrument and row.quantity != "temperature":
+            leg = "" if row.leg == "both" else row.leg
+            thing = (row.round, row.quantity, row.at, row.to, leg, row.loads_off)
+            by_thing.setdefault(thing, {}).setdefault(row.instrument, []).append(row)
+    for meters in by_thing.values():
+        for one, other in combinations(meters.items(), 2):
+            yield from _compared(case, one, other)
 
 
 def _compared(
-    case: SiteCase, place: Taken, one: tuple[str, list[Reading]], other: tuple[str, list[Reading]]
+    case: CircuitCase | BoardCase, one: tuple[str, list[Reading]], other: tuple[str, list[Reading]]
 ) -> Iterator[Finding]:
     (first, first_rows), (second, second_rows) = one, other
     (a, a_u), (b, b_u) = (_mean(rows, case.context) for rows in (first_rows, second_rows))
@@ -66,8 +66,6 @@ def _compared(
             "second": Figure(b, unit, b_u),
             "en_ratio": Figure(ratio, ""),
         },
-        as_circuit=place.circuit,
-        as_board=place.board,
     )
 
 

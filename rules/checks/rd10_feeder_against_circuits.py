@@ -10,21 +10,21 @@ from rules.errors import MissingData
 from rules.meters import worth
 from rules.record import Board, Circuit
 from rules.rounds import Round, current_at, judged
-from rules.rule import DOUBTS_OF_READINGS, SiteCase, rule
+from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
 from rules.taken import some
 
 
 @rule(
     id="RD10",
     title="Board's feed against the sum of its circuits",
-    about="site",
+    about="board",
     severity=Severity.WATCH,
     remedy="Read feed and circuits again as one round, the clamp zeroed; then look for what is on the board and not in the record.",
     caution="A circuit that is not recorded stays live when the recorded ones are off. Prove dead at the place of work, not by the list.",
     source=Citation("Kirchhoff's first law; JCGM 100, 5.2 for the doubt of the sum", status="textbook, no edition"),
     limits=("decision", "closure", "load_share", *DOUBTS_OF_READINGS),
 )
-def feeder_against_circuits(case: SiteCase) -> Iterator[Finding]:
+def feeder_against_circuits(case: BoardCase) -> Iterator[Finding]:
     """
     In rounds of one name and visit, the current into a board (read on its busbar, else in the circuits that feed it) differs
     from the sum of its circuits' currents, beyond doubt and the share that a load may move meanwhile. With circuits that were
@@ -35,33 +35,34 @@ def feeder_against_circuits(case: SiteCase) -> Iterator[Finding]:
     **Leaves alone**: 12.0 A into a board of three circuits of which two were read, 5.0 A and 4.0 A.
     """
     context = case.context
-    for board in context.index.walked_boards:
-        circuits = context.index.circuits_of(board.id)
-        for (visit, name), leaving in _rounds(circuits, context).items():
-            feed = _into(board, visit, name, context)
-            if feed is None:
-                continue
-            arriving, alone = feed
-            whole = alone and len(leaving) == len(circuits)
-            missing = [circuit.tag for circuit in circuits if circuit.tag not in leaving]
-            unclosed = added_up(
-                board.tag,
-                f"into {board.tag} by {some(arriving)}",
-                arriving,
-                f"out of it by {some(leaving)}{f', {some(missing)} not read' if missing else ''}",
-                leaving,
-                whole,
-                context.limits,
+    board = case.row
+    if not isinstance(board, Board):
+        return
+    circuits = context.index.circuits_of(board.id)
+    for (visit, name), leaving in _rounds(circuits, context).items():
+        feed = _into(board, visit, name, context)
+        if feed is None:
+            continue
+        arriving, alone = feed
+        whole = alone and len(leaving) == len(circuits)
+        missing = [circuit.tag for circuit in circuits if circuit.tag not in leaving]
+        unclosed = added_up(
+            board.tag,
+            f"into {board.tag} by {some(arriving)}",
+            arriving,
+            f"out of it by {some(leaving)}{f', {some(missing)} not read' if missing else ''}",
+            leaving,
+            whole,
+            context.limits,
+        )
+        if unclosed is not None:
+            yield feeder_against_circuits.finding(
+                case,
+                f"round {name}",
+                unclosed.words,
+                numbers={"arriving": unclosed.first_sum, "leaving": unclosed.second_sum, "gap": unclosed.gap},
+                source=f"{feeder_against_circuits.source}; {context.limits.citation('closure')}",
             )
-            if unclosed is not None:
-                yield feeder_against_circuits.finding(
-                    case,
-                    f"round {name}",
-                    unclosed.words,
-                    numbers={"arriving": unclosed.first_sum, "leaving": unclosed.second_sum, "gap": unclosed.gap},
-                    source=f"{feeder_against_circuits.source}; {context.limits.citation('closure')}",
-                    as_board=board.tag,
-                )
 
 
 def _rounds(circuits: tuple[Circuit, ...], context: Context) -> dict[tuple[str, str], dict[str, Terms]]:

@@ -5,17 +5,18 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.agreement import probability_apart
 from rules.calc.doubt import Weighted, total
+from rules.case import CircuitCase
 from rules.meters import worth
-from rules.record import Circuit, Figure, Reading
-from rules.rule import DOUBTS_OF_READINGS, SiteCase, rule
-from rules.taken import Taken, taken
+from rules.record import Figure, Reading
+from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
+from rules.taken import taken_on
 from rules.units import show
 
 
 @rule(
     id="RD13",
     title="Residual current",
-    about="site",
+    about="circuit",
     severity=Severity.WATCH,
     remedy="Zero the clamp away from any conductor and read again; then find the other path, one circuit off at a time: a return by "
     "another cable or the building's metal, or a leak to earth.",
@@ -24,8 +25,9 @@ from rules.units import show
     source=Citation("IEC 60364-6", "2016", "6.4.3: leakage of circuits in service", "from-memory"),
     also=(Citation("Kirchhoff's first law", status="textbook, no edition"),),
     limits=("decision", *DOUBTS_OF_READINGS),
+    also_about=("board", "source"),
 )
-def residual_current(case: SiteCase) -> Iterator[Finding | NotJudged]:
+def residual_current(case: CircuitCase | BoardCase) -> Iterator[Finding | NotJudged]:
     """
     The clamp around both conductors of a run, or of a circuit at its way, shows a current beyond its doubt: the two do not
     carry the same.
@@ -36,39 +38,28 @@ def residual_current(case: SiteCase) -> Iterator[Finding | NotJudged]:
     belongs there and is not judged.
     """
     context = case.context
-    for place in taken(context):
-        for (name, at), rows in _residuals(place).items():
-            returns = _returns(place, at, case)
-            if returns - {"own"}:
-                other = sorted(returns - {"own"})[0]
-                yield residual_current.gap(
-                    case, f"{place.place.tag}, {at}", f"the return is {other}: its current is in no pair"
-                )
-                continue
-            value, u = total(Weighted(1 / len(rows), worth(row, context.index, context.limits).shown) for row in rows)
-            if probability_apart(value, u) < context.limits["decision.beyond_doubt"]:
-                continue
-            yield residual_current.finding(
-                case,
-                f"{at}, round {name}",
-                f"{show(value, 'A', u)} more flows in one conductor than in the other at {at}",
-                numbers={"residual": Figure(value, "A", u)},
-                as_circuit=place.circuit,
-                as_board=place.board,
-            )
-
-
-def _residuals(place: Taken) -> dict[tuple[str, str], list[Reading]]:
-    found: dict[tuple[str, str], list[Reading]] = {}
-    for row in place.readings:
+    alike: dict[tuple[str, str], list[Reading]] = {}
+    for row in taken_on(case):
         if row.quantity == "residual" and not row.is_unloaded:
-            found.setdefault((row.round, row.at), []).append(row)
-    return found
+            alike.setdefault((row.round, row.at), []).append(row)
+    for (name, at), rows in alike.items():
+        others = _other_returns(case, at)
+        if others:
+            why = f"the return is {others[0]}: its current is in no pair"
+            yield residual_current.gap(case, f"{case.tag}, {at}", why)
+            continue
+        value, u = total(Weighted(1 / len(rows), worth(row, context.index, context.limits).shown) for row in rows)
+        if probability_apart(value, u) < context.limits["decision.beyond_doubt"]:
+            continue
+        yield residual_current.finding(
+            case,
+            f"{at}, round {name}",
+            f"{show(value, 'A', u)} more flows in one conductor than in the other at {at}",
+            numbers={"residual": Figure(value, "A", u)},
+        )
 
 
-def _returns(place: Taken, at: str, case: SiteCase) -> set[str]:
-    """By what way the current behind a place returns."""
-    if not isinstance(place.place, Circuit):
-        return {"own"}
-    runs = case.context.index.runs_of(place.place.id)
-    return {run.return_or_default for run in runs if at in ("way", run.name)} or {"own"}
+def _other_returns(case: CircuitCase | BoardCase, at: str) -> list[str]:
+    """The returns behind a place that are not the runs' own."""
+    runs = case.runs if isinstance(case, CircuitCase) else ()
+    return [run.return_or_default for run in runs if at in ("way", run.name) and run.return_or_default != "own"]
