@@ -259,6 +259,7 @@ class State:
         self.fixed = self._fixed(survey["volts"])
         self.loads = [row for row in building.loads if f"{row['circuit']}.{row['load']}" not in off]
         self.share = {**building.truth.get("draws", {}), **survey.get("draws", {})}
+        self.ohms: dict[str, float] = survey.get("ohms", {})
         nodes = {node for part in self.parts for node in (part.start, part.end)} | set(self.fixed)
         self.place = {node: n for n, node in enumerate(sorted(nodes))}
         self.volts: NDArray[np.float64] = np.zeros(len(self.place))
@@ -302,9 +303,8 @@ class State:
         if row.get("power"):
             return share * watts(row["power"]) / volts if volts > 5 else 0.0
         if row.get("resistance"):
-            return volts / (
-                float(row["resistance"]) * (1 + 0.02 * self.building.normal("load", row["circuit"], row["load"]))
-            )
+            ohm = self.ohms.get(row["circuit"], float(row["resistance"]))
+            return volts / (ohm * (1 + 0.02 * self.building.normal("load", row["circuit"], row["load"])))
         return share * float(row["current"]) if volts > 5 else 0.0
 
     def _converters(self) -> Iterator[tuple[Node, Node, float]]:
