@@ -499,7 +499,7 @@ def test_another_ending_makes_no_site_file(plant: Path, monkeypatch: pytest.Monk
 
 
 def test_a_damaged_file_is_named_by_verify(site: Path, capsys: Captured) -> None:
-    assert done(["verify", str(site)], capsys)[0] == f"{site}: whole; 32 circuits, 155 readings\n"
+    assert done(["verify", str(site)], capsys)[0] == f"{site}: whole; 32 circuits, 161 readings\n"
     with closing(sqlite3.connect(site)) as other:
         other.execute("UPDATE readings SET value = value + 1 WHERE at = 'lugs'")
         other.commit()
