@@ -119,6 +119,8 @@ class CircuitCase:
     runs: tuple[Run, ...]
     loads: tuple[LoadPoint, ...]
     visit: str
+    readings: tuple[Reading, ...]
+    """Of the visit, those with the loads off too."""
     rounds: tuple[Round, ...]
     tree: Tree
     drop: Drop | None
@@ -138,6 +140,13 @@ class CircuitCase:
     @property
     def tag(self) -> str:
         return self.circuit.tag
+
+    @property
+    def drawn(self) -> frozenset[str]:
+        """Points at which a load, a board or a converter takes current."""
+        index = self.context.index
+        fed = {_fed_at(fed, self.circuit, index) for fed in index.fed_by_circuit(self.circuit.id)}
+        return frozenset(fed | {point.load.point for point in self.loads})
 
     def is_vital(self, point: str) -> bool:
         """Whether a life-safety or trip-or-close load hangs on a point or behind it."""
@@ -186,12 +195,12 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         common = context.common.get(circuit.id)
         unused = context.unused.get(circuit.id, ())
     tree, rounds, nominal = measured.tree, measured.rounds, nominal_v(circuit, index)
-    drop, gap = None, "nothing was read" if not measured.readings else ""
-    if measured.readings:
+    drop, gap = None, "nothing was read under load" if measured.readings else "nothing was read"
+    if rounds:
         against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
         possible = [this for this in rounds if not against[this.name]]
         try:
-            if rounds and not possible:
+            if not possible:
                 raise MissingData(against[rounds[0].name])
             drop = drop_of(possible, tree, limits)
         except MissingData as error:
@@ -205,6 +214,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
         visit=measured.visit,
+        readings=measured.readings,
         rounds=rounds,
         tree=tree,
         drop=drop,
@@ -288,6 +298,8 @@ def _return_leg(circuit: Circuit, index: Index) -> str:
 
 def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
     """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
+    if reading.is_unloaded:
+        return reading.quantity in ("current", "residual")  # what a clamp shows without a current
     this = next(round_ for round_ in rounds if round_.name == reading.round)
     if reading.quantity == "voltage":
         return reading.at in this.volts

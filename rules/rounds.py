@@ -128,10 +128,11 @@ def _moment(taken_at: str) -> str:
 
 
 def rounds_of(readings: Sequence[Reading], tree: Tree, index: Index, limits: Limits) -> tuple[Round, ...]:
-    """The rounds of one visit in the order of their first readings."""
+    """The rounds of one visit in the order of their first readings; a reading with the loads off is in none."""
     by_name: dict[str, list[Reading]] = defaultdict(list)
     for reading in readings:
-        by_name[reading.round].append(reading)
+        if not reading.is_unloaded:
+            by_name[reading.round].append(reading)
     return tuple(_round(name, rows, tree, index, limits) for name, rows in by_name.items())
 
 
@@ -404,6 +405,10 @@ def _measured(start: str, end: str, path: list[str], this: Round) -> tuple[list[
 
 
 def temperature_read(readings: Iterable[Reading], number: int) -> float | None:
-    """Mean of the temperatures read on a run's conductor in a visit. [degC]"""
-    values = [row.value for row in readings if row.quantity == "temperature" and row.at == f"run {number}"]
+    """Mean of the temperatures read on a run's conductor in a visit, under load. [degC]"""
+    values = [
+        row.value
+        for row in readings
+        if row.quantity == "temperature" and row.at == f"run {number}" and not row.is_unloaded
+    ]
     return mean(values) if values else None
