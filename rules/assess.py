@@ -20,6 +20,7 @@ from rules.consistency import problems
 from rules.diagnosis.learning import diagnose_told, learn
 from rules.diagnosis.next_reading import next_readings
 from rules.explain import with_facts
+from rules.heat import similar_joints
 from rules.index import Index
 from rules.joints import heats_of
 from rules.limits import Limits
@@ -27,7 +28,7 @@ from rules.margins import margins_of
 from rules.network import network_of
 from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
-from rules.rule import BoardCase, SiteCase, judge, switched_off
+from rules.rule import BoardCase, SiteCase, changes_of, judge, switched_off
 from rules.runs import figures
 from rules.service import service_of
 from rules.verdict import agrees, unsettled, unsound
@@ -83,6 +84,7 @@ def assess_prepared(
         findings=tuple(findings),
         not_judged=tuple(gaps),
         cautions=tuple(caution.text for caution in cautions_of(site)),
+        rule_changes=changes_of(limits),
     )
 
 
@@ -106,9 +108,10 @@ def prepare(site: Site, limits: Limits) -> Context:
     tied = {id_: (problem, ties_by(context, measured[id_], problem)) for id_, problem in some.items()}
     taught = learn(tied, diagnoses, limits)
     told = {id_: taught.told(id_, *both) for id_, both in tied.items() if taught.touches(both[1])}
+    context = replace(context, measured=measured)
     return replace(
         context,
-        measured=measured,
+        joints=similar_joints(context),
         diagnoses=diagnoses | dict(zip(told, diagnose_told(list(told.values()), limits), strict=True)),
         taught=taught,
         common={id_: problem.common.relative for id_, problem in told.items() if problem.common is not None},

@@ -98,6 +98,29 @@ class NotJudged:
     why: str
 
 
+PROGRAM_FAULT = "fault of the program in this rule"
+"""How the reason of a rule begins that failed by a fault of its own."""
+
+
+@dataclass(frozen=True, slots=True)
+class RuleChange:
+    """A rule that the limits profile switches off, or gives another severity, with the profile's reason."""
+
+    rule: str
+    title: str
+    usual: Severity
+    severity: Severity | None
+    """``None`` where it is switched off."""
+    reason: str
+    profile: str
+
+    @property
+    def words(self) -> str:
+        """What the profile does, and why."""
+        does = "is switched off" if self.severity is None else f"reports {self.severity}, usually {self.usual}"
+        return f"{self.rule} ({self.title}) {does}, by limits profile {self.profile}: {self.reason}"
+
+
 @dataclass(frozen=True, slots=True)
 class Doubt:
     """What one doubt adds to the standard uncertainty of a drop's excess."""
@@ -142,6 +165,8 @@ class Drop:
 
     budget: tuple[Doubt, ...] = ()
     """What its doubt is made of, largest first: the squares add to that of the excess's ``u``."""
+    unfinished: tuple[tuple[str, str], ...] = ()
+    """Rounds of a higher current that give no comparison, each with what it lacks."""
 
 
 class Place(NamedTuple):
@@ -298,6 +323,8 @@ class Assessment:
     not_judged: tuple[NotJudged, ...]
     cautions: tuple[str, ...] = field(default=())
     """Cautions of the site's voltages, to be read before anyone takes a reading."""
+    rule_changes: tuple[RuleChange, ...] = ()
+    """What the limits profile switches off, raises or lowers."""
 
     @property
     def summary(self) -> dict[str, int]:
@@ -306,3 +333,12 @@ class Assessment:
         for status in Status:
             counts[str(status)] = sum(result.status is status for result in self.circuits)
         return counts
+
+    @property
+    def rule_faults(self) -> dict[str, str]:
+        """Reason by rule, of those that failed by a fault of the program: the first of each."""
+        found: dict[str, str] = {}
+        for gap in self.not_judged:
+            if gap.why.startswith(PROGRAM_FAULT):
+                found.setdefault(gap.rule, gap.why)
+        return found

@@ -22,6 +22,7 @@ from rules.assessment import (
     NotJudged,
     Place,
     PointVoltage,
+    RuleChange,
 )
 from rules.record import Figure
 from rules.text import clean
@@ -42,6 +43,7 @@ def as_json(assessment: Assessment) -> Json:
         "circuits": [_circuit(result) for result in assessment.circuits],
         "findings": [_finding(finding) for finding in assessment.findings],
         "not_judged": [_not_judged(gap) for gap in assessment.not_judged],
+        "rule_changes": [_rule_change(change) for change in assessment.rule_changes],
     }
 
 
@@ -158,6 +160,19 @@ def _finding(finding: Finding) -> Json:
 
 def _numbers(numbers: Iterable[tuple[str, Figure]]) -> Json:
     return _without_none({clean(name): quantity(figure) for name, figure in numbers})
+
+
+def _rule_change(change: RuleChange) -> Json:
+    return _without_none(
+        {
+            "rule": change.rule,
+            "off": change.severity is None,
+            "severity": str(change.severity) if change.severity is not None else None,
+            "usual": str(change.usual),
+            "reason": clean(change.reason),
+            "profile": clean(change.profile),
+        }
+    )
 
 
 def _not_judged(gap: NotJudged) -> Json:

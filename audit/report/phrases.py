@@ -57,6 +57,10 @@ def limits_defer(limits: str) -> str:
     )
 
 
+PROBABILITY = "probability"
+"""Name of the number of a finding that says how sure its cause is."""
+LEAST_SURE = 0.999
+"""Probability above which a finding says no more than that it is above it."""
 CAUSES_NOT_JUDGED = (
     "Causes are not yet judged: a drop that agrees within its doubt is “measure”, and no circuit is called sound."
 )
@@ -82,10 +86,24 @@ def figure_words(figure: Figure) -> str:
 def number_words(finding: Finding) -> tuple[str, ...]:
     """Each number of a finding with its name: ``measured drop 8.10 V ± 0.03 V``."""
     return tuple(
-        f"{name.replace('_', ' ')} {figure_words(figure)}"
+        f"{name.replace('_', ' ')} {certainty_words(figure.value) if name == PROBABILITY else figure_words(figure)}"
         for name, figure in finding.numbers.items()
         if math.isfinite(figure.value)
     )
+
+
+def certainty_words(probability: float) -> str:
+    """
+    A probability as a percentage that is never certain.
+
+    >>> certainty_words(0.834), certainty_words(0.99996), certainty_words(1e-9)
+    ('83.4 %', 'above 99.9 %', 'below 0.1 %')
+    """
+    if probability > LEAST_SURE:
+        return f"above {show(LEAST_SURE, '1')}"
+    if probability < 1 - LEAST_SURE:
+        return f"below {show(1 - LEAST_SURE, '1', digits=3)}"
+    return show(probability, "1", digits=3)
 
 
 @dataclass(frozen=True, slots=True)

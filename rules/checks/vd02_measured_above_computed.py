@@ -8,9 +8,11 @@ from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase, LoadPoint
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHER_METAL, SEMICONDUCTOR, SMALLER
 from rules.errors import MissingData
+from rules.heat import DEVICE, accounted_v, joints_read
 from rules.joints import heat_at, most_read_a
 from rules.limits import Limits
 from rules.record import Figure
+from rules.rise import rises_of
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show
 from rules.verdict import (
@@ -49,8 +51,8 @@ ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it a
     caution="Millivolt readings across a closed joint become the full system voltage if it opens: start on auto volts. "
     "Do not tighten or open anything live; cut back and remake heated conductors when isolated. "
     "A cause is named by probability: look before replacing anything.",
-    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
-    limits=("decision", "heat", "prior", "bad_connection", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
+    limits=("decision", "heat", "prior", "bad_connection", "joint_scaling", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
@@ -70,6 +72,10 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     if case.unused:
         yield measured_above_computed.gap(case, "readings", f"read, but of no use here: {', '.join(case.unused)}")
+    for round_, lacks in case.drop.unfinished if case.drop is not None else ():
+        yield measured_above_computed.gap(
+            case, f"round {round_}", f"unfinished, so that one of less current stands for it: {lacks}"
+        )
     causes = case.diagnosis.causes if case.diagnosis is not None else ()
     claim = claimed(causes, case.limits)
     if case.drop is None and claim is None:
@@ -77,7 +83,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             raise MissingData(case.drop_gap)
         return
     if claim is None and not _beyond_doubt(case):
-        return
+        return  # also where a joint that HT01 finds by its reading alone accounts for it
     drop = case.drop
     along = f"{drop.start} to {drop.end}" if drop else "all runs"
     if claim is None and (slip := doubtful(causes)) is not None:
@@ -96,7 +102,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     read = _heat_as_read(case, claim) if claim is not None and claim.cause == BAD_CONNECTION else None
     heats = {name: figure for name, figure in (("heat", heat), ("heat as read", read)) if figure is not None}
     citation = f"{measured_above_computed.source}; {case.limits.citation('decision')}"
-    parts = [*_drop_words(drop), *([_claim_words(claim)] if claim else _open_words(causes)), *_remarks(case)]
+    parts = [*_drop_words(drop), *([_claim_words(case, claim)] if claim else _open_words(causes)), *_remarks(case)]
     yield measured_above_computed.finding(
         case,
         claim.where if claim and claim.where else along,
@@ -114,8 +120,8 @@ def _beyond_doubt(case: CircuitCase) -> bool:
     """The excess is real, whatever it comes from; without a diagnosis by its doubt alone."""
     if case.drop is None:
         return False
-    excess = case.drop.too_much
-    if probability_above(excess.value, 0.0, excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
+    excess, joints_v = case.drop.too_much, accounted_v(case)
+    if probability_above(excess.value, joints_v, excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return False
     return case.diagnosis is None or case.diagnosis.probability(AS_RECORDED) < 0.5
 
@@ -172,14 +178,25 @@ def _open_words(causes: tuple[Place, ...]) -> Iterator[str]:
         yield "its cause is not settled: " + ", ".join(cause_words(row) for row in rows)
 
 
-def _claim_words(claim: Claim) -> str:
+def _claim_words(case: CircuitCase, claim: Claim) -> str:
     against = "".join(f", else {cause_words(row)}" for row in claim.against)
     if claim.cause in (SMALLER, OTHER_METAL, LONGER):
         rows = sorted([*claim.places, *claim.others], key=lambda place: -place.probability)
         return "the conductors are probably not as recorded: " + ", ".join(cause_words(row) for row in rows) + against
     said = f"probably a {claim.cause} in {claim.where} ({probability_words(claim.probability)})"
+    if claim.cause == SEMICONDUCTOR:
+        return f"{said}{_offset_words(case, claim)}{against}"
     ohms = " and ".join(filter(None, (_ohm_words(joint) for joint in claim.place.joints or (claim.place,))))
     return f"{said}: {ohms} extra{against}" if ohms else said + against
+
+
+def _offset_words(case: CircuitCase, claim: Claim) -> str:
+    """What a semiconductor loses whatever the current; empty where it is not known."""
+    branch = case.tree.ends.get(claim.place.point)
+    learned = case.diagnosis.of_branch(branch.id if branch else "") if case.diagnosis is not None else None
+    # a mean over all causes: of this one alone it is what is left when the others give none
+    volts = learned.offset_v / claim.probability if learned is not None else 0.0
+    return f": about {show(volts, 'V', digits=2)} whatever the current" if volts > 0 else ""
 
 
 def _ohm_words(joint: Place) -> str:
@@ -225,18 +242,22 @@ def _numbers(drop: Drop | None, claim: Claim | None) -> dict[str, Figure]:
 def _remedy(claim: Claim | None) -> str | None:
     if claim is None:
         return None
-    separated = claim.cause == BAD_CONNECTION and all(joint.where.count(" ") == 3 for joint in claim.joints)
+    separated = claim.cause == BAD_CONNECTION and all(_is_end(joint.where) for joint in claim.joints)
     several = len(claim.places) > 1
     return (ENDS_KNOWN if separated and not several else REMEDIES[claim.cause]).format(claim.where)
 
 
 def _consequences(case: CircuitCase, claim: Claim | None, heat: Figure | None) -> Iterator[str]:
     if heat is not None and claim is not None and claim.cause == BAD_CONNECTION:
-        read = _heat_as_read(case, claim)
+        told = list(_as_read(case, claim))
+        read = None if told else _heat_as_read(case, claim)
         as_read = "" if read is None else f", {show(read.value, 'W', read.u)} while it was read"
         yield f"at design current {show(heat.value, 'W', heat.u)} turn into heat in one place{as_read}"
+        yield from told
     elif heat is not None:
         yield f"at this current {show(heat.value, 'W', heat.u)} turn into heat that the record does not explain"
+    if claim is not None and claim.cause == SEMICONDUCTOR:
+        yield "it passes current in one direction only: a battery behind it is not charged through it"
     most = _most_affected(case) if claim is not None else None
     for point in case.loads:
         lowest, worst = point.load.lowest_voltage_v, case.worst.get(point.load.point)
@@ -276,3 +297,27 @@ def _at_worst(case: CircuitCase, claim: Claim | None) -> dict[str, Figure]:
     if most is None:
         return {}
     return {"at worst": case.worst[most.load.point], "at worst as recorded": Figure(most.lowest_v, "V", most.lowest_u)}
+
+
+def _as_read(case: CircuitCase, claim: Claim) -> Iterator[str]:
+    """What the joints of a claim show now: their watts as read, and their temperature."""
+    places = {place for joint in claim.joints for place in _places(joint.where)}
+    for joint in joints_read(case):
+        now = joint.now
+        if joint.place in places and now is not None and joint.current is not None:
+            amps = show(joint.current.value, "A", joint.current.u)
+            yield f"{show(now.value, 'W', now.u)} at the {amps} of round {joint.round}, read across {joint.place}"
+    for place, rise in rises_of(case).items():
+        if any(set(place.split()) <= set(where.split()) for where in places) and rise.rise.value > 0:
+            yield rise.words
+
+
+def _places(where: str) -> Iterator[str]:
+    """A place of the diagnosis as readings name it; its leg alone, or a whole run, is none."""
+    if _is_end(where) or where.startswith(DEVICE):
+        yield where
+
+
+def _is_end(where: str) -> bool:
+    """Whether a place is one termination, ``run 1 end positive``."""
+    return where.count(" ") == 3

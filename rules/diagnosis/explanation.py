@@ -22,7 +22,7 @@ from rules.diagnosis.conductors import ALTERNATIVES
 from rules.diagnosis.diagnose import TOLD, where_words
 from rules.diagnosis.diagnose import offset_words as semiconductor_words
 from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, REVERSED, SEVERAL, SWAPPED, several_off
-from rules.diagnosis.extra import moved
+from rules.diagnosis.extra import moved_everywhere
 from rules.diagnosis.fact_words import Fact, against_words, conductor_words, group_words, line_words
 from rules.diagnosis.gaussian import log_density
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, SEMICONDUCTOR, Hypothesis
@@ -148,7 +148,7 @@ def pictured(judged: Judged, which: Integers) -> Pictures:
     rows: NDArray[Any] = np.repeat(np.arange(size), count)
     block, chosen, shape = taken(judged.block, rows), which.ravel(), judged.block.shape
     ratio, others, carried = np.ones_like(block.conductor), block.others.copy(), block.carried.copy()
-    direction, moving = moved(block)
+    direction, moving = moved_everywhere(block)
     medians = judged.density.cumulative().quantiles(0.5)[0]
     added, columns = np.zeros_like(block.shown), np.zeros((len(rows), *moving.shape[2:]))
     read, wide = np.zeros_like(block.shown), np.zeros_like(block.shown)

@@ -57,7 +57,8 @@ def view_of(survey: Survey, circuit_id: str) -> CircuitView | None:
     if circuit is None:
         return None
     result = survey.results.get(circuit_id)
-    readings = [r for r in survey.index.readings_of(circuit_id) if r.id not in survey.index.replaced]
+    replaced = survey.index.replaced
+    readings = [r for r in survey.index.readings_of(circuit_id) if r.id not in replaced and not r.is_unloaded]
     name = ""
     if result is not None and result.visit:
         of_visit = [reading for reading in readings if reading.visit_or_default == result.visit]
