@@ -57,10 +57,9 @@ def rule_page(rule: Rule, limits: Limits) -> RulePage:
     """The page of a rule, with its limits as a profile holds them."""
     paragraphs = _paragraphs(rule.text)
     usual = f"{rule.about}, usually {rule.severity}"
-    if rule.also_about:
-        usual += f"; {' and '.join(rule.also_about)} too"
     here = next((_change_words(change) for change in changes_of(limits) if change.rule == rule.id), "")
-    about = [Row("about", usual), *([Row("here", here, "strong")] if here else [])]
+    also = [Row("also about", " and ".join(rule.also_about))] if rule.also_about else []
+    about = [Row("about", usual), *also, *([Row("here", here, "strong")] if here else [])]
     text = [Row(label, words) for label, words in paragraphs]
     acts = [Row("do", rule.remedy, "strong"), Row("caution", rule.caution, "caution")]
     in_force: list[Row] = []
