@@ -99,7 +99,8 @@ def results(judged: Judged, problems: list[Problem]) -> list[Diagnosis]:
     shape = judged.block.shape
     others = [cause for cause in CAUSES if cause not in (BAD_CONNECTION, SEMICONDUCTOR)]
     members = [judged.of_cause(cause) for cause in others]
-    sums = np.stack([judged.posterior[:, numbers].sum(axis=1) for numbers in members], axis=-1).tolist()
+    # a sum of shares may exceed 1 in its last digit
+    sums = np.stack([judged.posterior[:, ns].sum(axis=1).clip(max=1.0) for ns in members], axis=-1).tolist()
     best = np.stack([np.array(ns)[judged.posterior[:, ns].argmax(axis=1)] for ns in members], axis=-1).tolist()
     offsets = judged.posterior[:, judged.of_cause(SEMICONDUCTOR)].tolist()
     evidence, singles, doubles = judged.log_evidence.tolist(), _single(judged), _double(judged)
