@@ -319,6 +319,15 @@ def test_what_cannot_be_taken_in_is_told(sources: list[str], line: str, site: Pa
     assert site.read_bytes() == before
 
 
+def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plant: Path, capsys: Captured) -> None:
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "ours.toml"')
+    (plant / "site.toml").write_text(text, encoding="utf-8")
+    (plant / "ours.toml").write_text('[rules.VD91]\noff = true\nreason = "of no use here"\n', encoding="utf-8")
+    line = "site.toml:limits: ours.toml: there is no rule 'VD91'; did you mean 'VD01'?"
+    assert refused(["intake", "new.ohmwalk", str(plant)], capsys) == [line]
+    assert refused(["check", str(plant)], capsys) == [line]
+
+
 def test_a_profile_that_is_not_there_is_refused_before_it_stops_every_check(plant: Path, capsys: Captured) -> None:
     text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "genral"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
