@@ -200,7 +200,7 @@ def test_dry_run_writes_nothing(site: Path, plant: Path, home: Path, capsys: Cap
     edit(plant / "circuits.csv", "circuit", "F99")
     edit(plant / "runs.csv", "circuit", "F99")
     out, _ = done(["intake", str(site), str(plant), "--dry-run"], capsys)
-    assert "circuits      1 added, 29 left as they are" in out
+    assert "circuits      1 added, 31 left as they are" in out
     (plant / "visits.csv").write_text("visit,kind\n2026-09 as left,as left\n", encoding="utf-8")
     out, _ = done(["intake", str(site), str(plant / "visits.csv"), "--dry-run"], capsys)
     assert "visits        1 added" in out
@@ -235,7 +235,7 @@ def test_single_tables_make_a_file_named_like_the_site(plant: Path, capsys: Capt
     assert out.startswith("hut.ohmwalk: made\n")
     assert "Next: ohmwalk check hut.ohmwalk" in err
     assert record(Path("hut.ohmwalk")).name == "hut"
-    assert len(record(Path("hut.ohmwalk")).readings) == 137
+    assert len(record(Path("hut.ohmwalk")).readings) == 161
 
 
 def test_an_empty_file_takes_the_settings_of_the_folder(plant: Path, capsys: Captured) -> None:
