@@ -48,7 +48,7 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
         return
     read = at_terminals(context, node)
     if not read:
-        below = context.network.circuits_below.get(node, ())
+        below = context.network.hanging.circuits_below.get(node, ())
         if any(context.measured[id_].readings for id_ in below if id_ in context.measured):
             yield supply_sags.gap(case, "terminals", f"the terminals of {source.tag} were not read")
         return
@@ -154,7 +154,7 @@ def _consequences(case: BoardCase, node: int) -> Iterator[str]:
     yield "drops of its circuits are judged by their own currents and stay; what arrives at their ends is the source's doing"
     low = [
         f"{load.tag} on {case.context.index.circuits[circuit_id].tag}"
-        for circuit_id in case.context.network.circuits_below.get(node, ())
+        for circuit_id in case.context.network.hanging.circuits_below.get(node, ())
         for load in case.context.index.loads_of(circuit_id)
         if load.lowest_voltage_v is not None and _read_below(case, circuit_id, load.point, load.lowest_voltage_v)
     ]
