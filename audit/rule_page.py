@@ -57,6 +57,8 @@ def rule_page(rule: Rule, limits: Limits) -> RulePage:
     """The page of a rule, with its limits as a profile holds them."""
     paragraphs = _paragraphs(rule.text)
     usual = f"{rule.about}, usually {rule.severity}"
+    if rule.also_about:
+        usual += f"; {' and '.join(rule.also_about)} too"
     here = next((_change_words(change) for change in changes_of(limits) if change.rule == rule.id), "")
     about = [Row("about", usual), *([Row("here", here, "strong")] if here else [])]
     text = [Row(label, words) for label, words in paragraphs]

@@ -80,6 +80,7 @@ def _rule(rule: Rule, page: RulePage, limits: Limits) -> dict[str, Any]:
         "rule": rule.id,
         "title": rule.title,
         "about": rule.about,
+        "also_about": list(rule.also_about),
         "severity": str(rule.severity),
         "in_force": {
             "off": setting is not None and setting.off,
