@@ -24,7 +24,7 @@ FIXED = ("meter counts", "source wander", "current counts")
     remedy="Read again at the current stated, with the circuit's own loads where they can be set; else with a finer meter.",
     caution="No load is added to a life-safety, trip or close circuit without the duty holder's permission, and none above what device, "
     "cable and source are rated for. A bad joint heats with the square of the current.",
-    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
+    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
     limits=(
         "decision",
         "heat",
@@ -38,9 +38,9 @@ FIXED = ("meter counts", "source wander", "current counts")
 )
 def load_too_light(case: CircuitCase) -> Iterator[Finding]:
     """
-    The readings do not settle a circuit, and a bad connection that would give the profile's heat at design current would
-    lose less at the current that was read than the profile's number of standard uncertainties, because of what does not
-    grow with the current: counts, display, source wander. The current is stated at which it would stand out, and whether
+    The current that was read is too small for the readings to settle the circuit. A bad connection that would give the
+    profile's heat at design current would lose less at it than the profile's number of standard uncertainties, because of
+    what does not grow with the current: counts, display, source wander. The current is stated at which it would stand out, and whether
     device, cable and source allow it.
 
     **Finds**: 0.5 A read on a circuit of 8 A: 2 W at 8 A are 31 mΩ, which lose 16 mV at 0.5 A, against 19 mV of doubt.
