@@ -10,9 +10,10 @@ from __future__ import annotations
 import math
 import re
 from collections import defaultdict
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from datetime import UTC, datetime
+from functools import cache
 from statistics import mean, stdev
 
 from rules.assessment import Drop
@@ -305,10 +306,10 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
             raise MissingData("the device between bus and way is not recorded, and way was not read")
     if len(read) < 2:
         raise MissingData(f"round {this.name} has no voltages at two points, nor a drop over both legs")
-    reached = []
+    reached, currents = [], cache(lambda point: current_at(point, this, tree, limits))
     for end in read[1:]:
         try:
-            reached.append(compare(read[0], end, this, tree, limits))
+            reached.append(_compared(read[0], end, this, tree, limits, currents))
         except MissingData as error:
             reason = error
     if not reached:
@@ -330,20 +331,35 @@ def compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Dr
     """
     Measured against computed drop between two points of a round; ``MissingData`` says what is missing for it.
     """
+    return _compared(start, end, this, tree, limits, lambda point: current_at(point, this, tree, limits))
+
+
+def _compared(
+    start: str, end: str, this: Round, tree: Tree, limits: Limits, currents: Callable[[str], Current]
+) -> Drop:
+    """The same with the currents at points."""
     reason: MissingData | None = None
     for way in ways(start, end, tree.ends, tree.meshed, frozenset(this.amps)):
         try:
-            return _on_way(way, start, end, this, tree, limits)
+            return _on_way(way, start, end, this, tree, limits, currents)
         except MissingData as error:
             reason = reason or error
     raise reason or MissingData(f"no way leads from {start} to {end}")
 
 
-def _on_way(way: Sequence[Hop], start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
+def _on_way(
+    way: Sequence[Hop],
+    start: str,
+    end: str,
+    this: Round,
+    tree: Tree,
+    limits: Limits,
+    currents: Callable[[str], Current],
+) -> Drop:
     measured, by = _measured(start, end, [hop.branch for hop in way], this)
     carried: list[Carried] = []
     for hop in way:
-        current = along(current_at(hop.branch, this, tree, limits), hop.sign)
+        current = along(currents(hop.branch), hop.sign)
         if hop.branch == "way":
             carried.append(Carried(tree.device_ohm or 0.0, current, None))
             continue
@@ -357,7 +373,7 @@ def _on_way(way: Sequence[Hop], start: str, end: str, this: Round, tree: Tree, l
                 raise MissingData(figures.gap)
             carried.append(Carried(figures.loop_ohm, amps, figures))
     found = difference(measured, carried, limits)
-    first, first_u = total(along(current_at(way[0].branch, this, tree, limits), way[0].sign).terms)
+    first, first_u = total(along(currents(way[0].branch), way[0].sign).terms)
     return Drop(
         round=this.name,
         start=start,

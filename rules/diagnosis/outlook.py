@@ -20,7 +20,7 @@ import numpy as np
 from rules.diagnosis.atoms import Atoms
 from rules.diagnosis.block import Block, model_of
 from rules.diagnosis.candidates import AGAIN, SINGLE, Posed
-from rules.diagnosis.doubtful import rows_of_slips, several_off, typed_off
+from rules.diagnosis.doubtful import rows_of_slips, several_off, swapped_by, typed_off
 from rules.diagnosis.extra import moved
 from rules.diagnosis.gaussian import whitener
 from rules.diagnosis.judge import Judged
@@ -200,15 +200,20 @@ def _bordered(matrix: Floats, diagonal: Floats) -> Floats:
 def _slipped(judged: Judged, atoms: Atoms) -> tuple[Floats, Floats, Floats]:
     """What each atom's slip adds to the rows read, along what it may be off, and the variance that it adds (b, a, n)."""
     block = judged.block
-    residual, observations, currents, swapped, turned = rows_of_slips(block, judged.recorded)
+    residual, observations, currents, turned = rows_of_slips(block, judged.recorded)
     off = np.concatenate([observations, currents], axis=2) * (FAR * typed_off(block))[:, None]
+    pairs, apart = swapped_by(block)
     count, rows = residual.shape
-    readings, pairs = off.shape[2], swapped.shape[2]
-    slips = readings + pairs + 2  # the last two: the clamp the other way round, several things
-    shift, along, doubt = (np.zeros((count, slips + 1, rows)) for _ in range(3))  # the last row: no slip
-    along[:, :readings] = np.swapaxes(off, 1, 2)
-    shift[:, readings : readings + pairs] = np.swapaxes(swapped, 1, 2)
-    shift[:, readings + pairs] = turned - residual
-    doubt[:, readings + pairs + 1] = several_off(block) ** 2
-    number = np.arange(count)[:, None]
-    return shift[number, atoms.slip], along[number, atoms.slip], doubt[number, atoms.slip]
+    number, readings = np.arange(count)[:, None], off.shape[2]
+    # of all slips: the readings, the pairs, the clamp the other way round, several things; and none
+    of_reading = (atoms.slip >= 0) & (atoms.slip < readings)
+    of_pair = (atoms.slip >= readings) & (atoms.slip < readings + len(pairs))
+    reading, pair = np.where(of_reading, atoms.slip, 0), np.where(of_pair, atoms.slip - readings, 0)
+    along = np.where(of_reading[..., None], np.swapaxes(off, 1, 2)[number, reading], 0.0)
+    shift = np.zeros((*atoms.slip.shape, rows))
+    if len(pairs):
+        columns = block.shape.difference.T[pairs[:, 0]] - block.shape.difference.T[pairs[:, 1]]
+        shift = np.where(of_pair[..., None], columns[pair] * apart[number, pair][..., None], 0.0)
+    shift += np.where(atoms.slip == readings + len(pairs), 1.0, 0.0)[..., None] * (turned - residual)[:, None]
+    several = np.where(atoms.slip == readings + len(pairs) + 1, 1.0, 0.0)[..., None]
+    return shift, along, several * several_off(block)[:, None] ** 2
