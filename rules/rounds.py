@@ -221,12 +221,14 @@ def current_at(point: str, this: Round, tree: Tree, limits: Limits) -> Current:
         raise MissingData(f"no current was read in round {this.name}")
     above = _line_up(point, tree)
     near = next((p for p in above[1:] if p in this.amps), "")
-    if not near:
-        behind = [p for p in this.amps if point in _line_up(p, tree)]
-        if not behind:
+    if near:
+        line = above
+    else:
+        lines = {p: line for p in this.amps if point in (line := _line_up(p, tree))}
+        if not lines:
             raise MissingData(f"round {this.name} has no current on the way to {point} or behind it")
-        near = min(behind, key=lambda p: len(_line_up(p, tree)))
-    ratio, taps = _share(point, near, tree)
+        near, line = min(lines.items(), key=lambda each: len(each[1]))
+    ratio, taps = _share(point, near, line, tree)
     terms = tuple(Weighted(term.weight * ratio, term.shown) for term in this.amps[near])
     read_a = abs(sum(term.weight * term.shown.value for term in this.amps[near]))
     relative = limits["load_share.relative"]
@@ -241,15 +243,14 @@ def _line_up(point: str, tree: Tree) -> list[str]:
     return line
 
 
-def _share(point: str, near: str, tree: Tree) -> tuple[float, dict[str, float]]:
+def _share(point: str, near: str, line: Sequence[str], tree: Tree) -> tuple[float, dict[str, float]]:
     """
-    The current to a point over that to another on the same line, and what each tap between them adds to it.
+    The current to a point over that to another on the line of one of them, and what each tap between adds to it.
 
     Signed: what a tap draws between a reading and a point behind it makes the current there less. A tap is named
     with the way on, since of two ways from one fork the one draws more where the other draws less.
     """
-    before = near in _line_up(point, tree)
-    line = _line_up(point if before else near, tree)
+    before = line[0] == point
     far, close = (near, point) if before else (point, near)
     between = line[line.index(close) + 1 : line.index(far) + 1]
     if not any(p in tree.taps for p in between):

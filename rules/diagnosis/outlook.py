@@ -148,10 +148,17 @@ def _rows(block: Block, atoms: Atoms, posed: Sequence[Posed], rows: Integers) ->
     number, atom = np.arange(len(block))[:, None], np.arange(len(block))[:, None, None]
     beyond = rows[0] >= shape.rows  # of one kind in all problems
     at = np.where(beyond, 0, rows)[:, None]
-    model = model_of(block, block.conductor[:, None] * atoms.ratios, block.conductor_slope[:, None] * atoms.ratios)
+    used, which = np.unique(atoms.conductor, return_inverse=True)
+    ratios = atoms.ratios[:, used]
+    model = model_of(block, block.conductor[:, None] * ratios, block.conductor_slope[:, None] * ratios)
+    recorded = model_of(block, block.conductor[:, None], block.conductor_slope[:, None])
     everywhere = np.broadcast_to(np.arange(shape.rows), (len(shape.places) + len(shape.offsets), shape.rows))
     direction, moving = moved(block, everywhere)
-    extra, conductor, size = atoms.extra[..., None], atoms.conductor[..., None], atoms.size[..., None]
+    extra, conductor, size = (
+        atoms.extra[..., None],
+        which.reshape(atoms.conductor.shape)[..., None],
+        atoms.size[..., None],
+    )
     of_extra = direction[atom, extra, at]
     first, branches = moving.shape[2], len(shape.signature.branches)
     columns = np.empty((*of_extra.shape, first + branches + 2))
@@ -161,7 +168,7 @@ def _rows(block: Block, atoms: Atoms, posed: Sequence[Posed], rows: Integers) ->
     columns[..., first:] = model.conductor_columns[atom, conductor, at]
     mean = model.whole_mean[atom, conductor, at] + size * of_extra
     steady = np.where(extra >= len(shape.places), size * of_extra, 0.0)
-    along = np.where(size > 0, of_extra, model.conductor_mean[atom, 0, at])
+    along = np.where(size > 0, of_extra, recorded.conductor_mean[atom, 0, at])
     for array in (columns, mean, steady, along):
         array[:, :, beyond] = 0.0
     # a tape tells by how much a length errs; what it says of a wrong length is reckoned apart (``options``)

@@ -20,6 +20,8 @@ from rules.diagnosis.problem import DEAD, ENDS, LEGS, TERMINATIONS, Signature
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 
+LONG = 48
+"""Branches from which sums over them are taken one by one rather than as a product of matrices."""
 DEVICE_UNITS = 1.0
 """How often a bad connection is expected in the device, beside one for each end of a run."""
 
@@ -180,32 +182,33 @@ def _elements(signature: Signature) -> tuple[list[Element], Floats]:
     array (n, E)
         How often each lies on a row's path, with its sense.
     """
-    passed: list[list[tuple[int, str, int]]] = [[] for _ in signature.branches]
+    passed: list[dict[str, list[tuple[int, int]]]] = [{} for _ in signature.branches]
     for number, row in enumerate(signature.rows):
         senses: dict[int, int] = {}
         for branch, sign in row.path:
             senses[branch] = senses.get(branch, 0) + sign
         for branch, sense in senses.items():
             if sense:
-                passed[branch].append((number, row.part, sense))
-    found: dict[str, dict[Element, tuple[tuple[int, int], ...]]] = {"conductor": {}, "termination": {}, "pole": {}}
+                passed[branch].setdefault(row.part, []).append((number, sense))
+    found: dict[str, dict[Element, list[tuple[int, int]]]] = {"conductor": {}, "termination": {}, "pole": {}}
     for branch, kind in enumerate(signature.branches):
         if kind == "run":
-            parts = [("conductor", LEGS), ("termination", TERMINATIONS)]
+            kinds = [("conductor", LEGS), ("termination", TERMINATIONS)]
         else:
             legs = kind.partition(" ")[2]
-            parts = [("pole", LEGS if legs == "both" else (legs,))]
-        for name, members in parts:
-            alike: dict[tuple[tuple[int, int], ...], list[str]] = {}
+            kinds = [("pole", LEGS if legs == "both" else (legs,))]
+        for name, members in kinds:
+            alike: dict[tuple[str, ...], list[str]] = {}
             for member in members:
-                column = tuple((row, sense) for row, part, sense in passed[branch] if _enters(part, name, member))
-                alike.setdefault(column, []).append(member)
-            found[name] |= {(branch, name, tuple(group)): column for column, group in alike.items()}
+                alike.setdefault(tuple(p for p in passed[branch] if _enters(p, name, member)), []).append(member)
+            for parts, group in alike.items():
+                found[name][branch, name, tuple(group)] = [entry for part in parts for entry in passed[branch][part]]
     groups = {element: column for elements in found.values() for element, column in elements.items()}
     coefficient = np.zeros((len(signature.rows), len(groups)))
     for number, column in enumerate(groups.values()):
-        for row, sense in column:
-            coefficient[row, number] = sense
+        if column:
+            seeing, sense_of = zip(*column, strict=True)
+            coefficient[seeing, number] = sense_of
     return list(groups), coefficient
 
 
@@ -246,10 +249,13 @@ def _moved(
     seen = np.concatenate([of_places, of_offsets]) != 0
     sources = np.zeros((len(seen), signature.sources), dtype=bool)
     states = np.array([row.state for row in signature.rows], dtype=np.int64)
+    of_branch: dict[int, list[int]] = {}
+    for number, (_, place) in enumerate(places):
+        of_branch.setdefault(place.branch, []).append(number)
     for slot, source in signature.errors:
         state, branch = signature.slots[slot]
-        of_branch = [number for number, (_, place) in enumerate(places) if place.branch == branch]
-        sources[of_branch, source] |= seen[of_branch][:, states == state].any(axis=1)
+        its = of_branch.get(branch, [])
+        sources[its, source] |= seen[its][:, states == state].any(axis=1)
     sources[:, signature.sources - signature.common :] = True  # such a column may move any row
     return _first(seen), _first(np.concatenate([seen @ gain_rows.T > 0, sources], axis=1))
 
@@ -288,6 +294,16 @@ def _offsets(
     rows = np.array([[entered for entered, _ in column] for column in alike]).reshape(shape)
     slots = np.array([[slot for _, slot in column] for column in alike], dtype=np.int64).reshape(shape)
     return tuple(tuple(members) for members in alike.values()), rows, slots
+
+
+def of_runs(shape: Shape, per_conductor: Floats) -> Floats:
+    """Sums (..., B) over the conductors (..., E of conductors) of each branch."""
+    if len(shape.run_of) < LONG:
+        return per_conductor @ shape.run_of.T
+    branches, first = np.unique(shape.element_branch[shape.conductors], return_index=True)
+    sums = np.zeros((*per_conductor.shape[:-1], len(shape.run_of)))
+    sums[..., branches] = np.add.reduceat(per_conductor, first, axis=-1)  # they stand branch by branch
+    return sums
 
 
 def place_words(members: Sequence[str]) -> str:
