@@ -17,12 +17,14 @@ def site_file(path: Path, *, read_only: bool = True, laptop: str = "") -> SiteSt
     Raises
     ------
     WrongUse
-        If it is a folder, which may be a site but is no site file.
+        If it is a folder, which may be a site but is no site file, or a pipe or a device.
     SiteError
         If it is not there, no site file, damaged or newer, or may not be written where it is to be.
     """
     if path.is_dir():
         raise WrongUse(f"{path} is a folder; accepted: a site file, which intake makes of a site folder")
+    if path.exists() and not path.is_file():  # opened, a pipe would wait for a writer
+        raise WrongUse(f"{path} is a pipe or a device; accepted: a site file")
     return SiteStore(path, read_only=read_only, laptop=laptop)
 
 

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
+from functools import cache
 from typing import Any, Literal, TypeAlias
 
 ColumnKind: TypeAlias = Literal[
@@ -20,6 +21,20 @@ METER_QUANTITY = {
     "resistance": "resistance",
 }
 """Which rows of an instrument a reading uses: drop and joint readings use the voltage rows."""
+
+OUTER: dict[str, tuple[float, float]] = {
+    "V": (-10_000, 10_000),
+    "A": (-100_000, 100_000),
+    "W": (-10_000_000, 10_000_000),
+    "ohm": (-1e12, 1e12),
+    "degC": (-273.15, 2_000),
+}
+"""
+Smallest and largest number of a unit. They are our own, as are those of each column: far beyond any d.c. distribution
+in a building, so that a slip of many digits is refused, and near enough that no calculation overflows.
+"""
+NEAREST_ZERO = 1e-12
+"""Smallest size of any number but 0, in any unit: nothing that is read or recorded is as small."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,6 +61,20 @@ class Column:
     """Largest accepted number."""
 
 
+@cache
+def within(column: Column, unit: str) -> Column:
+    """
+    A column as it stands in a row whose quantity has the unit: a number that follows the quantity has its outer bounds.
+
+    >>> within(Column("value", "number", unit="*"), "V").most, within(Column("length", "number", unit="m"), "V").most
+    (10000, None)
+    """
+    if column.unit != "*":
+        return column
+    least, most = OUTER[unit]
+    return replace(column, unit=unit, least=least if column.above is None else NEAREST_ZERO, above=None, most=most)
+
+
 def column(default: Any, name: str, kind: ColumnKind = "text", **more: Any) -> Any:
     return field(default=default, metadata={"column": Column(name, kind, **more)})
 
@@ -63,7 +92,7 @@ def notes() -> Any:
 
 
 def order() -> Any:
-    return number("order")
+    return number("order", least=-1e9, most=1e9)
 
 
 def circuit() -> Any:

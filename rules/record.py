@@ -35,6 +35,10 @@ UNIT_OF_QUANTITY = {
 LEGS = ("positive", "negative", "both")
 METALS = ("copper", "tinned copper", "aluminium", "copper-clad aluminium")
 STRANDINGS = ("solid", "stranded", "flexible")
+CATEGORIES = ("CAT II", "CAT III", "CAT IV")
+"""Measurement categories that a place may ask of a meter, the least first."""
+_VOLTAGE = {"least": 1e-3, "most": 10_000}
+"""Bounds here and below are our own, as ``rules.columns.OUTER``."""
 RESERVED_POINTS = ("bus", "way", "device", "ambient")
 
 
@@ -85,19 +89,21 @@ class Source(Row):
         "", "kind", "choice", header=True, filled=True,
         choices=("battery", "rectifier", "power supply", "pv", "converter"),
     )  # fmt: skip
-    nominal_voltage_v: float | None = col.number("nominal", "V", header=True, above=0)
-    working_voltage_v: float | None = col.number("working", "V", above=0)
-    lowest_voltage_v: float | None = col.number("lowest", "V", above=0)
-    highest_voltage_v: float | None = col.number("highest", "V", above=0)
-    resistance_ohm: float | None = col.number("resistance", "ohm", least=0)
-    rated_current_a: float | None = col.number("rating", "A", above=0)
-    current_limit_a: float | None = col.number("current_limit", "A", above=0)
+    nominal_voltage_v: float | None = col.number("nominal", "V", header=True, **_VOLTAGE)
+    working_voltage_v: float | None = col.number("working", "V", **_VOLTAGE)
+    lowest_voltage_v: float | None = col.number("lowest", "V", **_VOLTAGE)
+    highest_voltage_v: float | None = col.number("highest", "V", **_VOLTAGE)
+    resistance_ohm: float | None = col.number("resistance", "ohm", least=0, most=1e12)
+    rated_current_a: float | None = col.number("rating", "A", least=1e-6, most=100_000)
+    current_limit_a: float | None = col.number("current_limit", "A", least=1e-6, most=100_000)
     earthing: str = col.column(
         "", "earthing", "choice", choices=("floating", "negative earthed", "positive earthed", "mid earthed")
     )
-    cells: int | None = col.column(None, "cells", "whole", least=1)
+    cells: int | None = col.column(None, "cells", "whole", least=1, most=10_000)
     fed_from: Feed | None = col.column(None, "fed_from", "reference", tables=("circuits",))
-    efficiency_percent: float | None = col.number("efficiency", "%", above=0, most=100)
+    efficiency_percent: float | None = col.number("efficiency", "%", least=1e-3, most=100)
+    category: str = col.column("", "category", "choice", choices=CATEGORIES)
+    """The least measurement category that a meter needs at its terminals."""
     notes: str = col.notes()
 
     @property
@@ -114,8 +120,10 @@ class Board(Row):
     fed_by: tuple[Feed, ...] = col.column(
         (), "fed_by", "feeds", header=True, filled=True, tables=("sources", "circuits")
     )
-    nominal_voltage_v: float | None = col.number("nominal", "V", above=0)
+    nominal_voltage_v: float | None = col.number("nominal", "V", **_VOLTAGE)
     location: str = col.column("", "location")
+    category: str = col.column("", "category", "choice", choices=CATEGORIES)
+    """The least measurement category that a meter needs on it and on its circuits."""
     walk_order: float | None = col.order()
     notes: str = col.notes()
 
@@ -130,18 +138,18 @@ class Circuit(Row):
     )
     description: str = col.column("", "description")
     location: str = col.column("", "location")
-    nominal_voltage_v: float | None = col.number("nominal", "V", above=0)
+    nominal_voltage_v: float | None = col.number("nominal", "V", **_VOLTAGE)
     device: str = col.column(
         "", "device", "choice",
         choices=("none", "breaker B", "breaker C", "breaker D", "fuse gG", "fuse blade", "electronic"),
     )  # fmt: skip
-    rated_current_a: float | None = col.number("device_rating", "A", above=0)
+    rated_current_a: float | None = col.number("device_rating", "A", least=1e-6, most=100_000)
     device_poles: int | None = col.column(None, "device_poles", "whole", least=1, most=4)
     device_leg: str = col.column("", "device_leg", "choice", choices=LEGS)
-    device_voltage_v: float | None = col.number("device_voltage", "V", above=0)
-    breaking_capacity_a: float | None = col.number("breaking_capacity", "A", above=0)
-    trip_current_a: float | None = col.number("trip_current", "A", above=0)
-    allowed_drop_percent: float | None = col.number("allowed_drop", "%", above=0, most=100)
+    device_voltage_v: float | None = col.number("device_voltage", "V", **_VOLTAGE)
+    breaking_capacity_a: float | None = col.number("breaking_capacity", "A", least=1e-6, most=100_000)
+    trip_current_a: float | None = col.number("trip_current", "A", least=1e-6, most=100_000)
+    allowed_drop_percent: float | None = col.number("allowed_drop", "%", least=1e-3, most=100)
     not_tested: str = col.column("", "not_tested")
     walk_order: float | None = col.order()
     notes: str = col.notes()
@@ -152,23 +160,23 @@ class Run(Row):
     """One length of cable between two points of a circuit, both conductors of it."""
 
     circuit_id: str = col.circuit()
-    number: int = col.column(0, "run", "whole", header=True, filled=True, least=1)
+    number: int = col.column(0, "run", "whole", header=True, filled=True, least=1, most=1_000_000)
     from_point: str = col.column("", "from", "point", header=True, filled=True)
     to_point: str = col.column("", "to", "point", header=True, filled=True, tables=("boards",))
     """A point's name; empty where the run ends on a board."""
     to_board_id: str = ""
     """Id of the board that the run ends on (``board:TAG`` in the folder), closing a mesh."""
-    one_way_length_m: float | None = col.number("length", "m", header=True, least=0)
+    one_way_length_m: float | None = col.number("length", "m", header=True, least=0, most=100_000)
     length_by: str = col.column(
         "", "length_by", "choice", choices=("marks", "tape", "tdr", "paced", "drawing", "guess")
     )
     size: str = col.column("", "size", "size", header=True)
     material: str = col.column("", "material", "choice", choices=METALS)
     stranding: str = col.column("", "stranding", "choice", choices=STRANDINGS)
-    parallel: int | None = col.column(None, "parallel", "whole", least=1)
+    parallel: int | None = col.column(None, "parallel", "whole", least=1, most=1_000)
     insulation: str = col.column("", "insulation", "choice", choices=("PVC", "XLPE", "EPR", "unknown"))
     method: str = col.column("", "method")
-    grouped: int | None = col.column(None, "grouped", "whole", least=1)
+    grouped: int | None = col.column(None, "grouped", "whole", least=1, most=10_000)
     conductor_temperature_c: float | None = col.number("temperature", "degC", least=-90, most=400)
     temperature_by: str = col.column("", "temperature_by", "choice", choices=("probe", "air", "assumed"))
     return_conductor: str = col.column("", "return", "return")
@@ -219,13 +227,13 @@ class Load(Row):
     point: str = col.column("", "point", "point", header=True, filled=True)
     tag: str = col.tag("load")
     kind: str = col.column("", "kind", "choice", choices=("constant current", "constant power", "constant resistance"))
-    current_a: float | None = col.number("current", "A", least=0)
-    power_w: float | None = col.number("power", "W", least=0)
-    resistance_ohm: float | None = col.number("resistance", "ohm", above=0)
-    lowest_voltage_v: float | None = col.number("lowest", "V", above=0)
-    highest_voltage_v: float | None = col.number("highest", "V", above=0)
-    peak_current_a: float | None = col.number("peak", "A", least=0)
-    peak_time_s: float | None = col.number("peak_time", "s", least=0)
+    current_a: float | None = col.number("current", "A", least=0, most=100_000)
+    power_w: float | None = col.number("power", "W", least=0, most=10_000_000)
+    resistance_ohm: float | None = col.number("resistance", "ohm", least=1e-9, most=1e12)
+    lowest_voltage_v: float | None = col.number("lowest", "V", **_VOLTAGE)
+    highest_voltage_v: float | None = col.number("highest", "V", **_VOLTAGE)
+    peak_current_a: float | None = col.number("peak", "A", least=0, most=100_000)
+    peak_time_s: float | None = col.number("peak_time", "s", least=0, most=1e9)
     simultaneous: float | None = col.number("simultaneous", least=0, most=1)
     function: str = col.column("", "function", "choice", choices=("ordinary", "life safety", "trip or close"))
     notes: str = col.notes()
@@ -250,12 +258,15 @@ class Instrument(Row):
     )  # fmt: skip
     full_scale: float | None = col.number("range", "*", above=0)
     """Largest value of the range, in the quantity's unit; ``None`` holds every value."""
-    accuracy_percent: float | None = col.number("accuracy", "%", header=True, least=0)
-    counts: float | None = col.number("counts", header=True, least=0)
+    accuracy_percent: float | None = col.number("accuracy", "%", header=True, least=0, most=100)
+    counts: float | None = col.number("counts", header=True, least=0, most=1_000_000)
     resolution: float | None = col.number("resolution", "*", header=True, above=0)
     zero: float | None = col.number("zero", "*")
-    input_resistance_ohm: float | None = col.number("input_resistance", "ohm", above=0)
+    input_resistance_ohm: float | None = col.number("input_resistance", "ohm", least=1e-9, most=1e12)
     category: str = col.column("", "category")
+    """As printed on it: ``CAT III 600 V``, or several."""
+    rated_voltage_v: float | None = col.number("rated_voltage", "V", **_VOLTAGE)
+    """The highest d.c. voltage that it may be connected to."""
     calibrated_until: str = col.column("", "calibrated_until", "date")
     notes: str = col.notes()
 
@@ -290,8 +301,10 @@ class Reading(Row):
     instrument: str = col.column("", "instrument")
     """Tag of the instrument; its row follows from the range."""
     full_scale: float | None = col.number("range", "*", above=0)
-    test_resistor_ohm: float | None = col.number("test_resistor", "ohm", above=0)
+    test_resistor_ohm: float | None = col.number("test_resistor", "ohm", least=1e-9, most=1e12)
     test_resistor_leg: str = col.column("", "test_resistor_leg", "choice", choices=LEGS[:2])
+    loads_off: str = col.column("", "loads_off", "choice", choices=("yes",))
+    """Taken with every load of its circuit or board off: it belongs to no load state."""
     by: str = col.column("", "by")
     tag: str = col.column("", "reading", "tag")
     replaces_id: str = col.column("", "replaces", "reference", tables=("readings",))
@@ -305,6 +318,11 @@ class Reading(Row):
     @property
     def unit(self) -> str:
         return UNIT_OF_QUANTITY[self.quantity]
+
+    @property
+    def is_unloaded(self) -> bool:
+        """Whether it was taken with the loads off, so that it belongs to no load state."""
+        return self.loads_off == "yes"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

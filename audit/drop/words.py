@@ -8,10 +8,12 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from audit.errors import WrongUse
-from rules.record import METALS, STRANDINGS
+from rules.columns import NEAREST_ZERO, Column
+from rules.problems.settings import SETTINGS
+from rules.record import METALS, STRANDINGS, columns
 from rules.tables.conductors import area_mm2
 from rules.text import quoted
 from rules.unit_words import SAME_SIGNS, column_unit
@@ -20,28 +22,31 @@ from rules.units import parse, parse_size
 
 @dataclass(frozen=True, slots=True)
 class Quantity:
-    """One thing that can be typed, and within which bounds; those below are the record's."""
+    """One thing that can be typed, and within which bounds: those of the record's column, where it has one."""
 
     name: str
     example: str
     unit: str
+    column: Column = field(default_factory=lambda: Column(""))
     above: float | None = None
-    least: float | None = None
-    most: float = 1e9
-    """Beyond it nothing is a building's."""
+    """Where the record takes 0 and a drop does not."""
 
 
-LENGTH = Quantity("length", "29m", "m", least=0.0)
+def _bounds(table: str, name: str) -> Column:
+    return next(column for _, column in columns(table) if column.name == name)
+
+
+LENGTH = Quantity("length", "29m", "m", _bounds("runs", "length"))
 SIZE = Quantity("size", "4mm2 or 12AWG", "")
-NOMINAL = Quantity("nominal voltage", "24V", "V", above=0.0)
-CURRENT = Quantity("current", "8A", "A", above=0.0)
-POWER = Quantity("power", "60W", "W", above=0.0)
-RESISTANCE = Quantity("load resistance", "3ohm", "ohm", above=0.0)
-ALLOWED = Quantity("allowed drop", "5%", "%", above=0.0, most=100.0)
-TEMPERATURE = Quantity("conductor temperature", "70C", "degC", least=-90.0, most=400.0)
-AMBIENT = Quantity("ambient temperature", "35C", "degC", least=-90.0, most=400.0)
-LOWEST = Quantity("lowest voltage", "20.4V", "V", above=0.0)
-DUTY = Quantity("duty", "20%", "%", least=0.0, most=100.0)
+NOMINAL = Quantity("nominal voltage", "24V", "V", _bounds("circuits", "nominal"), above=0.0)
+CURRENT = Quantity("current", "8A", "A", _bounds("loads", "current"), above=0.0)
+POWER = Quantity("power", "60W", "W", _bounds("loads", "power"), above=0.0)
+RESISTANCE = Quantity("load resistance", "3ohm", "ohm", _bounds("loads", "resistance"), above=0.0)
+ALLOWED = Quantity("allowed drop", "5%", "%", _bounds("circuits", "allowed_drop"), above=0.0)
+TEMPERATURE = Quantity("conductor temperature", "70C", "degC", _bounds("runs", "temperature"))
+AMBIENT = Quantity("ambient temperature", "35C", "degC", SETTINGS["ambient"][1])
+LOWEST = Quantity("lowest voltage", "20.4V", "V", _bounds("loads", "lowest"), above=0.0)
+DUTY = Quantity("duty", "20%", "%", Column("duty", "number", "%", least=0, most=100))
 
 BY_UNIT = {each.unit: each for each in (LENGTH, NOMINAL, CURRENT, POWER, RESISTANCE, ALLOWED, TEMPERATURE)}
 """What a unit says of a word; a size has no unit of its own but is told by its look."""
@@ -117,12 +122,15 @@ def number(text: str, quantity: Quantity) -> float:
     Raises ``WrongUse`` outside the quantity's bounds, ``RulesError`` where it cannot be read.
     """
     value = parse(text, quantity.unit)
+    least, most = quantity.column.least, quantity.column.most
     if quantity.above is not None and value <= quantity.above:
         bound = f"must be above {quantity.above:g}"
-    elif quantity.least is not None and value < quantity.least:
-        bound = f"must be {quantity.least:g} or more"
-    elif value > quantity.most:
-        bound = f"must be {quantity.most:g} or less"
+    elif least is not None and value < least:
+        bound = f"must be {least:.12g} or more"
+    elif most is not None and value > most:
+        bound = f"must be {most:.12g} or less"
+    elif 0 < abs(value) < NEAREST_ZERO:
+        bound = f"must be {NEAREST_ZERO:g} or more"
     else:
         return value
     raise WrongUse(f"the {quantity.name} {bound} {quantity.unit}, got {quoted(text)}")

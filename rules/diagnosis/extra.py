@@ -82,6 +82,12 @@ def moved(block: Block, rows: Integers) -> tuple[Floats, Floats]:
     return direction, np.concatenate([gains, sources], axis=2)
 
 
+def moved_everywhere(block: Block) -> tuple[Floats, Floats]:
+    """What a unit of each extra adds to all rows, as ``moved``."""
+    shape = block.shape
+    return moved(block, np.broadcast_to(np.arange(shape.rows), (len(shape.places) + len(shape.offsets), shape.rows)))
+
+
 def line_of(block: Block, recorded: Model, white: Whitener) -> Line:
     """
     The line of each place of a bad connection, then of a semiconductor, of all problems.
@@ -126,7 +132,7 @@ def line_of(block: Block, recorded: Model, white: Whitener) -> Line:
 
     def of_all(array: Floats) -> Floats:
         """Of all problems by place: (k, …)."""
-        return np.swapaxes(array, 0, 1).reshape(-1, *array.shape[2:])
+        return np.swapaxes(array, 0, 1).reshape(array.shape[0] * array.shape[1], *array.shape[2:])
 
     return Line(
         logarithmic=len(block) * len(shape.places),

@@ -21,7 +21,7 @@ from rules.diagnosis.atoms import Atoms
 from rules.diagnosis.block import Block, model_of
 from rules.diagnosis.candidates import AGAIN, SINGLE, Posed
 from rules.diagnosis.doubtful import rows_of_slips, several_off, swapped_by, typed_off
-from rules.diagnosis.extra import moved
+from rules.diagnosis.extra import moved_everywhere
 from rules.diagnosis.gaussian import whitener
 from rules.diagnosis.judge import Judged
 from rules.diagnosis.shape import Floats, Integers
@@ -152,13 +152,9 @@ def _rows(block: Block, atoms: Atoms, posed: Sequence[Posed], rows: Integers) ->
     ratios = atoms.ratios[:, used]
     model = model_of(block, block.conductor[:, None] * ratios, block.conductor_slope[:, None] * ratios)
     recorded = model_of(block, block.conductor[:, None], block.conductor_slope[:, None])
-    everywhere = np.broadcast_to(np.arange(shape.rows), (len(shape.places) + len(shape.offsets), shape.rows))
-    direction, moving = moved(block, everywhere)
-    extra, conductor, size = (
-        atoms.extra[..., None],
-        which.reshape(atoms.conductor.shape)[..., None],
-        atoms.size[..., None],
-    )
+    direction, moving = moved_everywhere(block)
+    extra, size = atoms.extra[..., None], atoms.size[..., None]
+    conductor = which.reshape(atoms.conductor.shape)[..., None]
     of_extra = direction[atom, extra, at]
     first, branches = moving.shape[2], len(shape.signature.branches)
     columns = np.empty((*of_extra.shape, first + branches + 2))

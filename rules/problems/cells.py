@@ -9,9 +9,9 @@ from datetime import date, datetime
 from operator import attrgetter
 from typing import Any, TypeAlias
 
-from rules.columns import Column, ColumnKind
+from rules.columns import NEAREST_ZERO, Column, ColumnKind, within
 from rules.problems.problem import Problem
-from rules.record import TABLES, Row, Run, Site, columns
+from rules.record import TABLES, UNIT_OF_QUANTITY, Row, Run, Site, columns
 from rules.tables.conductors import is_known, neighbours
 from rules.text import MOST_CHARACTERS, either, forbidden_character, nearest, quoted
 
@@ -28,6 +28,8 @@ def cell_problems(site: Site) -> Iterator[Problem]:
         rows = site.table(table)
         for name, column in columns(table):
             yield from _column_problems(table, name, column, rows)
+            if column.unit == "*":
+                yield from _quantity_problems(table, name, column, rows)
         yield from _typed_problems(table, rows)
 
 
@@ -88,6 +90,28 @@ def _may_be_wrong(value: Any, column: Column, check: Callable[[Any, Column], Com
     return column.filled if is_empty else check(value, column) is not None
 
 
+def _quantity_problems(table: str, name: str, column: Column, rows: tuple[Row, ...]) -> Iterator[Problem]:
+    """Numbers in the unit of their row's quantity that are far beyond what can be."""
+    quantity_of, value_of = attrgetter("quantity"), attrgetter(name)
+    wrong = {
+        pair: complaint
+        for pair in set(zip(map(quantity_of, rows), map(value_of, rows), strict=True))
+        if (complaint := _quantity_complaint(*pair, column)) is not None
+    }
+    if not wrong:
+        return
+    for row in rows:
+        if (complaint := wrong.get((quantity_of(row), value_of(row)))) is not None:
+            yield Problem(table, row.id, column.name, *complaint)
+
+
+def _quantity_complaint(quantity: str, value: float | None, column: Column) -> Complaint:
+    unit = UNIT_OF_QUANTITY.get(quantity)
+    if unit is None or value is None or number_complaint(value, column) is not None:
+        return None
+    return number_complaint(value, within(column, unit))
+
+
 def _ends_on_board(row: Row, name: str) -> bool:
     return isinstance(row, Run) and name == "to_point" and bool(row.to_board_id)
 
@@ -107,23 +131,27 @@ def _accepted_number(column: Column, unit: str) -> str:
     if unit:
         words += f" in {unit}"
     if column.least is not None and column.most is not None:
-        return f"{words} from {column.least:g} to {column.most:g}"
+        return f"{words} from {column.least:.12g} to {column.most:.12g}"
     if column.least is not None:
-        words += f", {column.least:g} or more"
+        words += f", {column.least:.12g} or more"
     if column.above is not None:
-        words += f" above {column.above:g}"
-    return words if column.most is None else f"{words} and at most {column.most:g}"
+        words += f" above {column.above:.12g}"
+    return words if column.most is None else f"{words} and at most {column.most:.12g}"
 
 
 def number_complaint(value: float, column: Column) -> Complaint:
-    """What is wrong with a number: not finite, or outside the column's bounds."""
+    """What is wrong with a number: not finite, outside the column's bounds, or too near to 0."""
     fits = (
         math.isfinite(value)
         and (column.least is None or value >= column.least)
         and (column.above is None or value > column.above)
         and (column.most is None or value <= column.most)
     )
-    return None if fits else (f"{value:.12g} is not possible", accepted(column))
+    if not fits:
+        return f"{value:.12g} is not possible", accepted(column)
+    if 0 < abs(value) < NEAREST_ZERO and column.unit != "*":  # there the bounds of the row's unit tell
+        return f"{value:.12g} is too near to 0", f"0, or a number of at least {NEAREST_ZERO:g} in size"
+    return None
 
 
 def _text(value: str, column: Column) -> Complaint:

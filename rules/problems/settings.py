@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 import re
 from collections.abc import Iterator
 from functools import partial
@@ -28,7 +27,7 @@ SETTINGS: dict[str, tuple[str, Column]] = {
     "name": ("name", Column("name", header=True, filled=True)),
     "address": ("address", Column("address")),
     "limits": ("limits", Column("limits", filled=True)),
-    "nominal": ("nominal_voltage_v", Column("nominal", "number", unit="V", above=0)),
+    "nominal": ("nominal_voltage_v", Column("nominal", "number", unit="V", least=1e-3, most=10_000)),
     "ambient": ("ambient_temperature_c", Column("ambient", "number", unit="degC", least=-90, most=400)),
     "surveyed_by": ("surveyed_by", Column("surveyed_by")),
     "extent": ("extent", Column("extent")),
@@ -36,6 +35,9 @@ SETTINGS: dict[str, tuple[str, Column]] = {
     "notes": ("notes", Column("notes", "notes")),
 }
 """Keys of ``site.toml`` beside ``[prior]``: field of the site, and what is accepted."""
+
+SHARE = Column("prior", "number", least=0, most=1e9)
+"""A share of ``[prior]``; shares are normalised where they are used."""
 
 _PROFILE_FILE = re.compile(r"\w[\w .-]*\.toml")
 """No separators and no leading dot: ``unload`` writes a file of that name."""
@@ -90,9 +92,9 @@ def _prior_problems(site: Site) -> Iterator[Problem]:
         elif cause in seen:
             yield _problem("prior", f"{quoted(cause.replace(' ', '_'))} stands there twice", "each cause once")
         seen.add(cause)
-        if not (math.isfinite(share) and share >= 0):
-            what = f"the share of {cause.replace(' ', '_')} is {share:g}"
-            yield _problem("prior", what, "a finite number, 0 or more")
+        if (complaint := number_complaint(share, SHARE)) is not None:
+            what, accepted = complaint
+            yield _problem("prior", f"the share of {cause.replace(' ', '_')}: {what}", accepted)
     if CAUSES[0] not in seen:
         yield _problem("prior", "does not name as_recorded", "the share of as_recorded beside the others")
     if all(share == 0 for _, share in site.prior):

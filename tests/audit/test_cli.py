@@ -14,6 +14,7 @@ import pytest
 
 from audit import cli
 from audit.opening import judge_site, on_visit
+from rules import limits
 from rules.record import Circuit, Feed, Reading, Site, Source
 from sample_sites.catalogue import sample_site
 
@@ -115,7 +116,8 @@ def test_an_unknown_limits_profile_is_a_line(plant: Path, capsys: Captured) -> N
     text = settings.read_text(encoding="utf-8")
     settings.write_text(text.replace('limits = "general"', 'limits = "genral"'), encoding="utf-8")
     assert refused(["check", str(plant)], capsys) == [
-        "site.toml:limits: there is no limits profile 'genral'; did you mean 'general'?; there are: general"
+        "site.toml:limits: there is no limits profile 'genral'; did you mean 'general'?; there are: "
+        + ", ".join(limits.names())
     ]
 
 
@@ -244,6 +246,11 @@ def test_a_table_that_is_no_file_is_a_line(kind: str, plant: Path, capsys: Captu
         table.symlink_to("nowhere" if kind == "link" else os.devnull)
     what = "is not there; accepted: a file that is" if kind == "link" else "is no file; accepted: a file of this name"
     assert refused(["check", str(plant)], capsys) == [f"decisions.csv: {what}"]
+
+
+def test_a_pipe_is_no_site_and_is_not_waited_for(capsys: Captured) -> None:
+    os.mkfifo("pipe.ohmwalk")
+    assert refused(["check", "pipe.ohmwalk"], capsys) == ["pipe.ohmwalk is a pipe or a device; accepted: a site file"]
 
 
 def test_a_circuit_is_named_once(plant: Path, capsys: Captured) -> None:

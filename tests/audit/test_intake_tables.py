@@ -112,7 +112,7 @@ def test_whole_numbers_are_read_as_such(text: str, parallel: int | None) -> None
 
 @pytest.mark.parametrize("text", ["2.5", "two", "1e999", "2 m"])
 def test_other_numbers_are_not_whole(text: str) -> None:
-    line = f"runs.csv:2:parallel: '{text}' is not a whole number; accepted: a whole number, 1 or more"
+    line = f"runs.csv:2:parallel: '{text}' is not a whole number; accepted: a whole number from 1 to 1000"
     assert lines_of({**CIRCUITS, "runs": [RUN | {"parallel": text}]}) == (line,)
 
 
@@ -176,3 +176,55 @@ def test_unknown_tables_and_settings_are_refused() -> None:
 
 def test_tables_without_rows_make_an_empty_site() -> None:
     assert site_of({"circuits": []}) == Site(name="site")
+
+
+HUT: dict[str, list[dict[str, str]]] = {
+    "sources": [{"source": "BATT", "kind": "battery", "nominal": "48"}],
+    "circuits": [{"circuit": "C1", "fed_from": "BATT"}],
+    "runs": [{"circuit": "C1", "run": "1", "from": "way", "to": "p1", "length": "10", "size": "2.5 mm2"}],
+    "loads": [{"circuit": "C1", "point": "p1", "load": "lamp"}],
+    "instruments": [
+        {"instrument": "DMM", "quantity": "voltage", "accuracy": "0.5", "counts": "2", "resolution": "0.01"}
+    ],
+    "readings": [{"circuit": "C1", "round": "1", "quantity": "voltage", "at": "p1", "value": "47"}],
+}
+
+
+@pytest.mark.parametrize(
+    ("table", "column", "text", "accepted"),
+    [
+        ("runs", "length", "1e308", "a number in m from 0 to 100000"),
+        ("sources", "nominal", "1e300", "a number in V from 0.001 to 10000"),
+        ("sources", "nominal", "1e12", "a number in V from 0.001 to 10000"),
+        ("sources", "rating", "1e-30", "a number in A from 1e-06 to 100000"),
+        ("loads", "power", "1e308", "a number in W from 0 to 10000000"),
+        ("loads", "resistance", "1e-30", "a number in ohm from 1e-09 to 1e+12"),
+        ("instruments", "accuracy", "1e308", "a number in % from 0 to 100"),
+        ("instruments", "counts", "1e308", "a number from 0 to 1000000"),
+        ("instruments", "resolution", "1e-30", "a number in V from 1e-12 to 10000"),
+        ("instruments", "zero", "1e308", "a number in V from -10000 to 10000"),
+        ("readings", "value", "-1e308", "a number in V from -10000 to 10000"),
+        ("circuits", "order", "1e308", "a number from -1000000000 to 1000000000"),
+    ],
+)
+def test_numbers_far_beyond_what_can_be_are_refused(table: str, column: str, text: str, accepted: str) -> None:
+    assert site_of(HUT).circuits
+    (line,) = lines_of({**HUT, table: [HUT[table][0] | {column: text}]})
+    assert line.startswith(f"{table}.csv:2:{column}: ")
+    assert line.endswith(f" is not possible; accepted: {accepted}")
+
+
+def test_a_number_too_near_to_zero_is_refused() -> None:
+    loads = [HUT["loads"][0] | {"current": "1e-300"}]
+    assert lines_of({**HUT, "loads": loads}) == (
+        "loads.csv:2:current: 1e-300 is too near to 0; accepted: 0, or a number of at least 1e-12 in size",
+    )
+
+
+def test_names_of_any_length_are_cut_in_lines() -> None:
+    name = "p" * 1_000_000
+    runs = [HUT["runs"][0] | {"to": name}]
+    loads = [{"circuit": "C1", "point": f"q{n}", "load": f"lamp {n}"} for n in range(20)]
+    lines = lines_of({**HUT, "runs": runs, "loads": loads, "readings": []})
+    assert len(lines) > 20
+    assert max(map(len, lines)) < 400

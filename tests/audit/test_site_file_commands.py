@@ -319,6 +319,15 @@ def test_what_cannot_be_taken_in_is_told(sources: list[str], line: str, site: Pa
     assert site.read_bytes() == before
 
 
+def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plant: Path, capsys: Captured) -> None:
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "ours.toml"')
+    (plant / "site.toml").write_text(text, encoding="utf-8")
+    (plant / "ours.toml").write_text('[rules.VD91]\noff = true\nreason = "of no use here"\n', encoding="utf-8")
+    line = "site.toml:limits: ours.toml: there is no rule 'VD91'; did you mean 'VD01'?"
+    assert refused(["intake", "new.ohmwalk", str(plant)], capsys) == [line]
+    assert refused(["check", str(plant)], capsys) == [line]
+
+
 def test_a_profile_that_is_not_there_is_refused_before_it_stops_every_check(plant: Path, capsys: Captured) -> None:
     text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "genral"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
@@ -394,9 +403,9 @@ def test_an_older_file_is_read_in_memory_and_brought_up_to_date_by_whoever_write
     monkeypatch.setattr(migrations, "_migrations", list(migrations._migrations))
 
     @migrations()
-    def m002_index_places(db: Database) -> None:
+    def m003_index_places(db: Database) -> None:
         db.execute("CREATE INDEX boards_location ON boards (location)")
-        db.execute("PRAGMA user_version = 2")
+        db.execute("PRAGMA user_version = 3")
 
     before = site.read_bytes()
     for name in READ:
@@ -406,7 +415,7 @@ def test_an_older_file_is_read_in_memory_and_brought_up_to_date_by_whoever_write
     edit(plant / "circuits.csv", "device_rating", "125")
     done(["intake", str(site), str(plant), "--replace"], capsys)
     with closing(sqlite3.connect(site)) as opened:
-        assert opened.execute("PRAGMA user_version").fetchone() == (2,)
+        assert opened.execute("PRAGMA user_version").fetchone() == (3,)
     assert record(site) == read_folder(plant)
 
 

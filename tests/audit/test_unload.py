@@ -15,11 +15,11 @@ from hypothesis import strategies as st
 from audit.errors import AuditError, TargetExists, WriteFailed
 from audit.intake.folder import read_folder, site_of
 from audit.unload import folder_files, unload
-from rules.columns import Column
+from rules.columns import NEAREST_ZERO, Column, within
 from rules.consistency import problems
 from rules.problems.runs import is_reserved
-from rules.problems.settings import CAUSES
-from rules.record import TABLES, Feed, Site, columns
+from rules.problems.settings import CAUSES, SETTINGS, SHARE
+from rules.record import TABLES, UNIT_OF_QUANTITY, Feed, Site, columns
 from rules.text import forbidden_character
 from rules.units import parse
 
@@ -49,28 +49,44 @@ points = words.filter(lambda text: not is_reserved(text))
 @st.composite
 def numbers(draw: st.DrawFn, column: Column, unit: str) -> tuple[float | None, str | None]:
     """A number that the column accepts, and what it was typed as."""
-    low = column.above if column.above is not None else column.least
     if unit in FOREIGN and draw(st.booleans()):
         text = f"{draw(st.integers(33, 300))} {FOREIGN[unit]}"
         return parse(text, unit), text
-    bounds: dict[str, Any] = {"min_value": low, "max_value": column.most, "exclude_min": column.above is not None}
-    return draw(st.one_of(st.none(), st.floats(**bounds, allow_nan=False, allow_infinity=False))), None
+    return draw(st.one_of(st.none(), plain_numbers(column, unit))), None
+
+
+def plain_numbers(column: Column, unit: str) -> st.SearchStrategy[float]:
+    """Numbers within the bounds by which intake judges the column."""
+    bounds = within(column, unit)
+    low = bounds.least if bounds.above is None else bounds.above
+    found = st.floats(low, bounds.most, exclude_min=bounds.above is not None, allow_nan=False, allow_infinity=False)
+    return found.map(lambda value: value if abs(value) >= NEAREST_ZERO else bounds.least or 0.0)
+
+
+def settings_of(key: str) -> st.SearchStrategy[float]:
+    """Numbers that a setting of the site accepts."""
+    _, column = SETTINGS[key]
+    return plain_numbers(column, column.unit)
+
+
+shares = plain_numbers(SHARE, "").filter(bool)
 
 
 @st.composite
 def cells(draw: st.DrawFn, /, table: str, **fixed: Any) -> dict[str, Any]:
     """Fields of a row: those not fixed hold anything that their column accepts, or nothing."""
+    unit = UNIT_OF_QUANTITY.get(fixed.get("quantity", ""), "")
     values: dict[str, Any] = dict(fixed)
     typed: list[tuple[str, str]] = []
     for name, column in columns(table):
         if name in fixed or (column.kind != "notes" and draw(st.integers(0, 3)) == 0 and not column.filled):
             continue
         if column.kind == "number":
-            value, text = draw(numbers(column, column.unit))
+            value, text = draw(numbers(column, unit if column.unit == "*" else column.unit))
             values[name] = value
             typed += [] if text is None else [(name, text)]
         elif column.kind == "whole":
-            values[name] = draw(st.integers(int(column.least or 0), int(column.most or 10**6)))
+            values[name] = draw(st.integers(int(column.least or 0), int(column.most or 0)))
         else:
             values[name] = draw(
                 {
@@ -113,10 +129,10 @@ def sites(draw: st.DrawFn) -> Site:
     add("circuits", tag=next(tags), fed_from=Feed("sources", source))
     add("loads", circuit_id=feeder, point=ends[1], tag=next(tags), **no_limit)
     meter = next(tags)
-    add("instruments", tag=meter, quantity="voltage", full_scale=None, resolution=None, zero=None)
+    add("instruments", tag=meter, quantity="voltage", full_scale=None)
     add("visits", tag=next(tags))
     reading = {"leg": "", "to": "", "full_scale": None, "replaces_id": "", "quantity": "voltage"}
-    value = draw(st.floats(-1e6, 1e6))
+    value = draw(plain_numbers(dict(columns("readings"))["value"], "V"))
     on_circuit = reading | {"circuit_id": feeder, "board": None, "at": ends[0], "value": value, "instrument": meter}
     first = add("readings", **on_circuit, tag=next(tags))
     add("readings", **on_circuit | {"replaces_id": first, "at": "bus"}, tag="")
@@ -134,9 +150,9 @@ def sites(draw: st.DrawFn) -> Site:
         notes=draw(notes),
         limits="general" if profile is None else "our profile.toml",
         own_limits=profile,
-        nominal_voltage_v=48.0 if typed else draw(st.one_of(st.none(), st.floats(1e-9, 1e9))),
-        ambient_temperature_c=draw(st.one_of(st.none(), st.floats(-90, 400))),
-        prior=tuple((cause, draw(st.floats(1e-9, 1e9))) for cause in draw(st.sampled_from([(), CAUSES[:2], CAUSES]))),
+        nominal_voltage_v=48.0 if typed else draw(st.one_of(st.none(), settings_of("nominal"))),
+        ambient_temperature_c=draw(st.one_of(st.none(), settings_of("ambient"))),
+        prior=tuple((cause, draw(shares)) for cause in draw(st.sampled_from([(), CAUSES[:2], CAUSES]))),
         typed=typed,
         **tables,
     )

@@ -147,7 +147,7 @@ def test_empty_rows_miss_every_required_cell() -> None:
         "circuits 0 circuit: is empty; accepted: a tag",
         "circuits 0 fed_from: is empty; accepted: the tag of a board or source",
         "runs 0 circuit: is empty; accepted: the tag of a circuit",
-        "runs 0 run: 0 is not possible; accepted: a whole number, 1 or more",
+        "runs 0 run: 0 is not possible; accepted: a whole number from 1 to 1000000",
         "runs 0 from: is empty; accepted: the name of a point",
         "runs 0 to: is empty; accepted: the name of a point",
         "instruments 0 instrument: is empty; accepted: a tag",
@@ -161,9 +161,9 @@ def test_numbers_that_are_not_finite_are_found(value: float) -> None:
     sources = (Source(id="s", tag="S", kind="pv", nominal_voltage_v=value, resistance_ohm=value),)
     site = Site(name="hut", nominal_voltage_v=value, sources=sources)
     assert told(site) == [
-        f"site - nominal: {value} is not possible; accepted: a number in V above 0",
-        f"sources 0 nominal: {value} is not possible; accepted: a number in V above 0",
-        f"sources 0 resistance: {value} is not possible; accepted: a number in ohm, 0 or more",
+        f"site - nominal: {value} is not possible; accepted: a number in V from 0.001 to 10000",
+        f"sources 0 nominal: {value} is not possible; accepted: a number in V from 0.001 to 10000",
+        f"sources 0 resistance: {value} is not possible; accepted: a number in ohm from 0 to 1e+12",
     ]
 
 
@@ -220,8 +220,8 @@ def test_a_replaced_reading_without_a_tag_is_found() -> None:
         (
             (("as recorded", -0.1), ("other metal", math.inf)),
             [
-                "the share of as_recorded is -0.1; accepted: a finite number, 0 or more",
-                "the share of other_metal is inf; accepted: a finite number, 0 or more",
+                "the share of as_recorded: -0.1 is not possible; accepted: a number from 0 to 1000000000",
+                "the share of other_metal: inf is not possible; accepted: a number from 0 to 1000000000",
             ],
         ),
         (

@@ -10,7 +10,9 @@ from audit.intake.cell import read_cell, trimmed
 from audit.tui.edits import Add, Change, Edit, Step
 from audit.tui.entry.meters import NO_METER, Meter
 from audit.tui.entry.slots import Place
-from rules.errors import UnreadableText
+from rules.columns import within
+from rules.errors import InvalidQuantity, UnreadableText
+from rules.problems.cells import number_complaint
 from rules.record import UNIT_OF_QUANTITY, Reading, columns
 from rules.units import show
 
@@ -30,6 +32,7 @@ class Where:
     leg: str = ""
     meter: Meter = NO_METER
     by: str = ""
+    loads_off: str = ""
 
 
 def reading_from(text: str, where: Where, now: datetime) -> Reading:
@@ -44,7 +47,11 @@ def reading_from(text: str, where: Where, now: datetime) -> Reading:
     text = without_bare_point(trimmed(text, _VALUE))
     if not text:
         raise UnreadableText("nothing is typed; accepted: what the meter shows")
-    cell = read_cell(text, _VALUE, UNIT_OF_QUANTITY[where.quantity])
+    unit = UNIT_OF_QUANTITY[where.quantity]
+    cell = read_cell(text, _VALUE, unit)
+    if (complaint := number_complaint(float(cell.value), within(_VALUE, unit))) is not None:
+        what, accepted = complaint
+        raise InvalidQuantity(f"{what}; accepted: {accepted}")
     return Reading(
         id="",
         circuit_id=where.place.circuit_id,
@@ -60,6 +67,7 @@ def reading_from(text: str, where: Where, now: datetime) -> Reading:
         instrument=where.meter.tag,
         full_scale=where.meter.full_scale,
         by=where.by,
+        loads_off=where.loads_off,
         typed=(("value", cell.typed),) if cell.typed is not None else (),
     )
 
@@ -96,6 +104,7 @@ def edit_for(reading: Reading, on: str, replaced: Reading | None = None, reason:
         Why it is corrected.
     """
     what = f"{on} round {reading.round}: {reading.quantity} at {reading.at} {value_words(reading)}"
+    what += ", loads off" if reading.is_unloaded else ""
     if replaced is None:
         return Edit(what, (Add("readings", reading),))
     steps: list[Step] = []

@@ -18,7 +18,7 @@ from audit.tui.entry.visits import acknowledgement, is_old, new_visit, unread_ca
 from rules.assess import prepare
 from rules.assessment import Status
 from rules.cautions import cautions_of
-from rules.errors import RulesError
+from rules.errors import InvalidQuantity, RulesError
 from rules.index import Index
 from rules.limits import of
 from rules.record import Acknowledgement, Feed, Instrument, Reading, Run, Visit
@@ -85,6 +85,21 @@ def test_a_typed_value_becomes_a_reading() -> None:
 def test_what_is_no_value_is_refused(text: str) -> None:
     with pytest.raises(RulesError):
         reading_from(text, Where(PUMP, VISIT, "1", "voltage", "way"), NOON)
+
+
+@pytest.mark.parametrize(
+    ("quantity", "text", "said"),
+    [
+        ("voltage", "1e12 V", "1e+12 is not possible; accepted: a number in V from -10000 to 10000"),
+        ("current", "1e308", "1e+308 is not possible; accepted: a number in A from -100000 to 100000"),
+        ("current", "1e-300 A", "1e-300 is too near to 0; accepted: 0, or a number of at least 1e-12 in size"),
+        ("temperature", "-274", "-274 is not possible; accepted: a number in degC from -273.15 to 2000"),
+    ],
+)
+def test_a_value_far_beyond_what_can_be_is_refused(quantity: str, text: str, said: str) -> None:
+    with pytest.raises(InvalidQuantity) as raised:
+        reading_from(text, Where(PUMP, VISIT, "1", quantity, "way"), NOON)
+    assert str(raised.value) == said
 
 
 def test_a_correction_names_what_it_replaces_by_a_tag() -> None:

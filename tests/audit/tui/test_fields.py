@@ -53,7 +53,22 @@ def refusal(table: str, id_: str, name: str, text: str) -> str:
     ("table", "id_", "name", "text", "said"),
     [
         ("runs", "r1", "one_way_length_m", "ten m", "'ten m' is not a number with a unit such as '12.5 m'"),
-        ("runs", "r1", "one_way_length_m", "-4", "-4 is not possible; accepted: a number in m, 0 or more"),
+        ("runs", "r1", "one_way_length_m", "-4", "-4 is not possible; accepted: a number in m from 0 to 100000"),
+        (
+            "runs",
+            "r1",
+            "one_way_length_m",
+            "1e308 m",
+            "1e+308 is not possible; accepted: a number in m from 0 to 100000",
+        ),
+        (
+            "loads",
+            "l1",
+            "current_a",
+            "1e-300",
+            "1e-300 is too near to 0; accepted: 0, or a number of at least 1e-12 in",
+        ),
+        (SITE, "", "nominal_voltage_v", "1e12 V", "1e+12 is not possible; accepted: a number in V from 0.001 to 10000"),
         ("runs", "r1", "length_by", "x", "'x' is none of marks, tape, tdr, paced, drawing or guess"),
         ("runs", "r1", "size", "10", "'10' may be AWG, kcmil or mm2"),
         ("runs", "r1", "size", "3 mm2", "'3 mm2' is in no table of sizes"),
