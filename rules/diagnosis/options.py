@@ -53,6 +53,10 @@ WORTH_SETTING = 1.2
 """From so many times the current of the day on another current is worth setting."""
 
 
+DIGITS = 9
+"""Digits behind the point of a fall. [nat]"""
+
+
 @dataclass(frozen=True, slots=True)
 class Way:
     """A kind of candidate and how it is taken: the same for all circuits of a batch."""
@@ -163,7 +167,9 @@ def options_of(
         reached, counted = np.concatenate([reached, of_rounds], axis=1), np.concatenate([counted, nothing], axis=1)
         fall = np.concatenate([fall, _fall_by_round(atoms, outlook, of_rounds)], axis=1)
     done = np.isfinite(reached)
-    return Options(tuple(ways), column_of, np.nan_to_num(reached), counted, np.where(done, fall, 0.0), done)
+    # the same to the last digit, whatever else goes through the arrays
+    fall = np.where(done, fall, 0.0).round(DIGITS)
+    return Options(tuple(ways), column_of, np.nan_to_num(reached), counted, fall, done)
 
 
 def minutes_of(kind: str, how: str, limits: Limits) -> float:
