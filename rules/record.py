@@ -306,7 +306,7 @@ class Reading(Row):
 
     @property
     def unit(self) -> str:
-        return UNIT_OF_QUANTITY[self.quantity]
+        return UNIT_OF_QUANTITY.get(self.quantity, "")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

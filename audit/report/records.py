@@ -334,7 +334,8 @@ def _length(run: Run) -> str:
     text = quantity(run, "one_way_length_m", run.one_way_length_m, "m")
     if run.one_way_length_m is None:
         return text
-    return f"{text}, {LENGTH_WORDS[run.length_by_or_default]}{'' if run.length_by else ' (assumed)'}"
+    by = run.length_by_or_default
+    return f"{text}, {LENGTH_WORDS.get(by, by)}{'' if run.length_by else ' (assumed)'}"
 
 
 def _size(run: Run) -> str:

@@ -42,7 +42,7 @@ class Survey:
     @property
     def is_judged(self) -> bool:
         """Whether what is in sight was judged in this very record, not in an earlier state of it."""
-        return self.context is not None and self.context.index.site is self.site
+        return self.context is not None and self.context.recorded is self.site
 
     @property
     def read_now(self) -> frozenset[str]:

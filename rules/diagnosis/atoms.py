@@ -240,9 +240,9 @@ def _conductors(judged: Judged, block: Block) -> tuple[Floats, _Part]:
 
 def _slips(judged: Judged) -> _Part:
     """Every slip of a reading, in the order of ``judged.slips``."""
-    count = len(judged.slips.hypotheses.names)
+    count, last = len(judged.slips.hypotheses.names), len(judged.hypotheses.names) - len(judged.pairs.hypotheses.names)
     numbers = np.arange(count, dtype=float)[None]
-    return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, -count:], "slip": numbers})
+    return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, last - count : last], "slip": numbers})
 
 
 def _probability(judged: Judged, causes: tuple[str, ...], doubtful: tuple[str, ...]) -> Floats:
