@@ -18,6 +18,7 @@ from db.connection import made_whole, new_site, open_site
 from db.errors import Damaged, NotASiteFile, SiteReadOnly, translated
 from db.history import Entry, history
 from db.lookup import select
+from db.opened import Opened
 from db.rows import from_columns, settings_from_columns
 from db.save import Save
 from db.saving import new_save, saving, writing
@@ -64,8 +65,10 @@ class SiteStore:
         with translated(self.path):
             self._db = open_site(self.path, read_only=read_only)
             try:
-                with self._reading() as connection:
+                connection = self._db.conn
+                with _one_state(connection):
                     refuse_torn(connection)
+                    self._opened = Opened(self.path, connection)
             except BaseException:
                 self._db.close()
                 raise
@@ -137,6 +140,7 @@ class SiteStore:
         Only versions that one store gave can be compared.
         """
         with translated(self.path):
+            self._opened.refuse_moved(self._db.conn)
             others: int = self._db.conn.execute("PRAGMA data_version").fetchone()[0]
         return others, self._own_saves
 
@@ -177,6 +181,7 @@ class SiteStore:
             made_whole(target, overwrite=overwrite) as part,
             closing(sqlite3.connect(part)) as copy,
         ):
+            self._opened.refuse_other_content(self._db.conn)
             self._db.conn.backup(copy)
 
     # --- writing
@@ -204,7 +209,7 @@ class SiteStore:
             If the record would no longer hold together.
         """
         self._refuse_read_only()
-        with saving(self.path, self._db, who, self.laptop, why) as save:
+        with saving(self.path, self._db, who, self.laptop, why, self._opened) as save:
             yield save
         self._own_saves += save.is_written
 
@@ -244,7 +249,7 @@ class SiteStore:
 
     def _undo(self, who: str, *, redo: bool) -> str | None:
         self._refuse_read_only()
-        with writing(self.path, self._db) as connection:
+        with writing(self.path, self._db, self._opened) as connection:
             with translated(self.path):
                 found = undoing(connection, who, self.laptop, redo=redo)
             if found is None:
@@ -268,9 +273,17 @@ class SiteStore:
         if connection.in_transaction:  # within a save: the state that the save began with
             yield connection
             return
-        connection.execute("BEGIN")
-        try:
+        self._opened.refuse_moved(connection)
+        with _one_state(connection):
+            self._opened.refuse_other_content(connection)
             yield connection
-        finally:
-            with suppress(sqlite3.Error):
-                connection.execute("ROLLBACK")
+
+
+@contextmanager
+def _one_state(connection: sqlite3.Connection) -> Iterator[None]:
+    connection.execute("BEGIN")
+    try:
+        yield
+    finally:
+        with suppress(sqlite3.Error):
+            connection.execute("ROLLBACK")

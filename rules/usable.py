@@ -32,6 +32,9 @@ BELONGS_NOWHERE: Mapping[str, tuple[str, ...]] = {
 CONDUCTORS = ("size", "material", "stranding", "parallel", "return", "return_size", "return_material")
 """Columns of a run; with a problem in one of them, it is not known what the run is made of."""
 
+OF_CAPACITY = ("insulation", "grouped")
+"""Columns of a run that stay as they are: empty, they would stand for something, while so its capacity is not judged."""
+
 
 def usable(site: Site, found: Iterable[Problem]) -> Site:
     """
@@ -87,7 +90,7 @@ def _mended(row: Row, table: str, wrong: set[str], index: Index) -> Row:
     values: dict[str, Any] = {}
     for name, column in columns(table):
         value = getattr(row, name)
-        if column.name not in wrong or value is None or value in ("", ()):
+        if column.name not in wrong or column.name in OF_CAPACITY or value is None or value in ("", ()):
             continue
         if column.kind == "feeds":
             values[name] = tuple(feed for feed in value if _leads_somewhere(feed, column, index))

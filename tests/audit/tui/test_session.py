@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import queue
 import threading
 import time
@@ -27,7 +28,7 @@ from db.store import SiteStore
 from rules.record import Load, Reading, Site, Visit
 from tests.audit.tui.walker import HUT, site_of
 
-PATIENCE_S = 10.0
+PATIENCE_S = 60.0
 
 
 class Told:
@@ -134,6 +135,25 @@ def test_a_file_that_was_spoilt_is_said_once(hut: Path) -> None:
         assert str(hut) not in trouble.line
         with pytest.raises(queue.Empty):
             told.messages.get(timeout=1.2)
+
+
+@pytest.mark.parametrize(
+    ("harm", "line"),
+    [
+        (lambda path: os.truncate(path, 0), "this site file was emptied while it was open"),
+        (lambda path: os.truncate(path, 5_000), "this site file is damaged (database disk image is malformed)"),
+        (Path.unlink, "this file was removed or moved away while it was open"),
+    ],
+)
+def test_a_save_in_a_file_that_is_spoilt_is_refused_with_a_line(
+    hut: Path, harm: Callable[[Path], object], line: str
+) -> None:
+    with session(hut) as (thread, told):
+        told.next()
+        harm(hut)
+        thread.save(Edit("a name", (ChangeSettings({"name": "Shed"}),)), "Ada")
+        refused = next(message for message in iter(told.next, None) if isinstance(message, Refused))
+        assert refused.line == line
 
 
 def test_a_file_that_cannot_be_opened_is_told(tmp_path: Path) -> None:
