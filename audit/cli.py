@@ -23,8 +23,9 @@ COMMANDS = {
     "history": "who changed what in a site file, and when",
     "intake": "take a site folder or single tables into a site file",
     "report": "write the audit report of a site",
+    "rules": "show the rules, or one rule's page with its limits and sources",
     "survey": "open the terminal interface on a site file",
-    "tables": "show the reference data in use, with source and status",
+    "tables": "show the reference data and limits profiles in use, with source and status",
     "unload": "write a site file as a site folder",
     "verify": "look whether a site file is whole",
 }

@@ -12,6 +12,7 @@ from rules import limits
 from rules.assess import assess
 from rules.assessment import Assessment
 from rules.errors import ProfileError
+from rules.limits import Limits
 from rules.record import Site
 from rules.text import nearest
 
@@ -38,7 +39,7 @@ def settings_place(path: Path) -> str:
     return "site.toml" if path.is_dir() else str(path)
 
 
-def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -> Assessment:
+def judge_site(site: Site, visit: str | None = None, place: str = "site.toml", *, explain: bool = False) -> Assessment:
     """
     Assess a site, on one visit if named.
 
@@ -50,6 +51,8 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -
         The visit to judge on; each circuit's latest unless named.
     place : str
         Where the settings stand, for what is wrong with the limits that they name.
+    explain : bool
+        Whether causes say what speaks for and against each.
 
     Raises
     ------
@@ -61,11 +64,23 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml") -
         if visit not in known:
             raise WrongUse(f"--visit: no visit {visit!r}{_meant(visit, known)}")
         site = on_visit(site, visit)
+    return assess(site, limits_in_force(site, place), explain)
+
+
+def limits_in_force(site: Site, place: str = "site.toml") -> Limits:
+    """
+    The limits of a site, whose profile names no rule that is not there.
+
+    Raises
+    ------
+    WrongUse
+        If the limits profile is not there, or does not hold together.
+    """
     try:
         in_force = limits.of(site)
     except ProfileError as error:
         raise WrongUse(*(f"{place}:limits: {line}" for line in str(error).splitlines())) from None
-    return assess(site, in_force)
+    return in_force
 
 
 def only(assessment: Assessment, circuit: str) -> Assessment:

@@ -6,7 +6,11 @@ import sys
 from typing import TextIO
 
 from audit.errors import WrongUse
+from audit.limit_words import limit_words
 from audit.report.text import Page, console_for
+from rules import limits
+from rules.limits import Limits
+from rules.record import Site
 from rules.tables.loader import Cell, Group, groups
 from rules.text import nearest
 
@@ -17,30 +21,41 @@ GAP = 2
 
 
 def print_tables(stream: TextIO | None = None) -> None:
-    """One entry a group: its name, what it holds, and where that comes from."""
+    """One entry a group: its name, what it holds, and where that comes from; then the limits profiles."""
     page = _page(stream)
     widest = max(len(group.name) for group in groups())
     for group in groups():
         page.hang(f"{group.name.ljust(widest)}  ", group.title, "bold")
         page.line(_origin(group), indent=widest + GAP)
     page.line()
-    page.line("ohmwalk tables NAME prints the values of one.")
+    page.line("Limits profiles")
+    widest = max(map(len, limits.names()))
+    for name in limits.names():
+        this = limits.of(Site(name="", limits=name))
+        inherits = f", from {this.inherited[0]}" if this.inherited else ""
+        page.hang(f"{name.ljust(widest)}  ", f"{this.title}{inherits}")
+    page.line()
+    page.line("ohmwalk tables NAME prints the values of one table or profile.")
 
 
 def print_table(name: str, stream: TextIO | None = None) -> None:
     """
-    All values of one group.
+    All values of one group, or of one limits profile.
 
     Raises
     ------
     WrongUse
-        If there is no group of that name.
+        If there is neither of that name.
     """
+    if name in limits.names():
+        _print_profile(limits.of(Site(name="", limits=name)), _page(stream))
+        return
     known = {group.name: group for group in groups()}
     if name not in known:
-        close = nearest(name, list(known))
+        every = [*known, *limits.names()]
+        close = nearest(name, every)
         meant = f"; did you mean {close!r}?" if close else ""
-        raise WrongUse(f"no table {name!r}{meant}; there are: {', '.join(known)}")
+        raise WrongUse(f"no table {name!r}{meant}; there are: {', '.join(every)}")
     group = known[name]
     page = _page(stream)
     page.line(group.title, "bold")
@@ -53,6 +68,18 @@ def print_table(name: str, stream: TextIO | None = None) -> None:
     if group.note:
         page.line()
         page.line(group.note)
+
+
+def _print_profile(profile: Limits, page: Page) -> None:
+    """Every value of a profile, with where it comes from and the profile that states it."""
+    page.line(profile.title, "bold")
+    page.line(f"limits profile {profile.name}" + "".join(f", from {name}" for name in profile.inherited))
+    for group in profile.groups.values():
+        page.line()
+        page.line(group.title, "bold")
+        for stated, keys in group.by_source().items():
+            page.hang(f"{group.name}  ", "; ".join(limit_words(group, key) for key in keys))
+            page.line(str(stated) + ("; status verified" if stated.status == "verified" else ""), indent=GAP)
 
 
 def _page(stream: TextIO | None) -> Page:

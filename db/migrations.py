@@ -32,6 +32,16 @@ def m001_create_site(db: Database) -> None:
     db.execute("PRAGMA user_version = 1")
 
 
+@migrations()
+def m002_categories_and_loads_off(db: Database) -> None:
+    """The category of a place, the rated voltage of a meter, and readings with the loads off."""
+    for table in ("sources", "boards"):
+        db.execute(f"ALTER TABLE {table} ADD COLUMN category TEXT NOT NULL DEFAULT ''")
+    db.execute("ALTER TABLE instruments ADD COLUMN rated_voltage_v REAL")
+    db.execute("ALTER TABLE readings ADD COLUMN loads_off TEXT NOT NULL DEFAULT ''")
+    db.execute("PRAGMA user_version = 2")
+
+
 _M001 = """
 CREATE TABLE saves (
     id TEXT PRIMARY KEY NOT NULL,

@@ -7,6 +7,7 @@ for each keystroke; ``assess`` is ``prepare``, every circuit, and the rules abou
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 from dataclasses import replace
 from importlib.metadata import version
@@ -18,13 +19,16 @@ from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
 from rules.diagnosis.learning import diagnose_told, learn
 from rules.diagnosis.next_reading import next_readings
+from rules.explain import with_facts
+from rules.heat import similar_joints
 from rules.index import Index
+from rules.joints import heats_of
 from rules.limits import Limits
 from rules.margins import margins_of
 from rules.network import network_of
 from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks
-from rules.rule import BoardCase, SiteCase, judge, switched_off
+from rules.rule import BoardCase, SiteCase, changes_of, judge, switched_off
 from rules.runs import figures
 from rules.service import service_of
 from rules.usable import usable
@@ -35,16 +39,19 @@ TOGETHER = 1000
 FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "NW01", "NW02")
 
 
-def assess(site: Site, limits: Limits) -> Assessment:
-    """Everything that can be said of a site under its limits."""
-    return assess_prepared(prepare(site, limits))
+def assess(site: Site, limits: Limits, explain: bool = False) -> Assessment:
+    """Everything that can be said of a site under its limits; ``explain`` adds the facts for and against each cause."""
+    return assess_prepared(prepare(site, limits), explain=explain)
 
 
-def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], object] | None = None) -> Assessment:
+def assess_prepared(
+    context: Context, told: Callable[[Sequence[CircuitResult]], object] | None = None, explain: bool = False
+) -> Assessment:
     """
     Everything that can be said of a prepared site.
 
     ``told``, where given, gets the circuits' results as they come, in walking order; what it raises ends the judging.
+    ``explain`` adds the facts that speak for and against each cause, a millisecond for each circuit that was read.
     """
     site, limits, index = context.site, context.limits, context.index
     findings, gaps = judge(SiteCase(context), "site")
@@ -62,6 +69,8 @@ def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], 
     for start in range(0, len(index.walked_circuits), TOGETHER):
         some = index.walked_circuits[start : start + TOGETHER]
         judged = _followed([_judged(context, circuit, None, of_circuit.get(circuit.tag, ())) for circuit in some])
+        if explain:
+            judged = with_facts(context, judged)
         results += judged
         if told is not None:
             told(judged)
@@ -76,6 +85,7 @@ def assess_prepared(context: Context, told: Callable[[Sequence[CircuitResult]], 
         findings=tuple(findings),
         not_judged=tuple(gaps),
         cautions=tuple(caution.text for caution in cautions_of(site)),
+        rule_changes=changes_of(limits),
     )
 
 
@@ -103,9 +113,10 @@ def prepare(site: Site, limits: Limits) -> Context:
     tied = {id_: (problem, ties_by(context, measured[id_], problem)) for id_, problem in some.items()}
     taught = learn(tied, diagnoses, limits)
     told = {id_: taught.told(id_, *both) for id_, both in tied.items() if taught.touches(both[1])}
+    context = replace(context, measured=measured)
     return replace(
         context,
-        measured=measured,
+        joints=similar_joints(context),
         diagnoses=diagnoses | dict(zip(told, diagnose_told(list(told.values()), limits), strict=True)),
         taught=taught,
         common={id_: problem.common.relative for id_, problem in told.items() if problem.common is not None},
@@ -168,6 +179,7 @@ def _judged(
         nominal_voltage_v=case.nominal_v,
         design_drop=Figure(worst.drop_v, "V", worst.drop_u) if worst else None,
         causes=case.diagnosis.causes if case.diagnosis is not None else (),
+        joints=heats_of(case),
         points=_points(case),
         margins=_margins(case),
         service=service_of(case),
@@ -206,7 +218,7 @@ def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
         return None if value is None else Figure(value, "V")
 
     rows = []
-    for margin in margins_of(case):
+    for margin, point in zip(margins_of(case), case.loads, strict=True):
         load = margin.load
         worst, lowest = case.worst.get(load.point), load.lowest_voltage_v
         rows.append(
@@ -215,6 +227,8 @@ def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
                 point=load.point,
                 design=volts(margin.design_v),
                 worst=worst,
+                worst_recorded=None if point.lowest_gap else Figure(point.lowest_v, "V", point.lowest_u),
+                source_lowest=None if math.isnan(point.source_lowest_v) else volts(point.source_lowest_v),
                 lowest=volts(lowest),
                 margin=None if worst is None or lowest is None else Figure(worst.value - lowest, "V", worst.u),
                 below_highest=volts(margin.below_highest_v),

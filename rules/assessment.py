@@ -98,6 +98,29 @@ class NotJudged:
     why: str
 
 
+PROGRAM_FAULT = "fault of the program in this rule"
+"""How the reason of a rule begins that failed by a fault of its own."""
+
+
+@dataclass(frozen=True, slots=True)
+class RuleChange:
+    """A rule that the limits profile switches off, or gives another severity, with the profile's reason."""
+
+    rule: str
+    title: str
+    usual: Severity
+    severity: Severity | None
+    """``None`` where it is switched off."""
+    reason: str
+    profile: str
+
+    @property
+    def words(self) -> str:
+        """What the profile does, and why."""
+        does = "is switched off" if self.severity is None else f"reports {self.severity}, usually {self.usual}"
+        return f"{self.rule} ({self.title}) {does}, by limits profile {self.profile}: {self.reason}"
+
+
 @dataclass(frozen=True, slots=True)
 class Doubt:
     """What one doubt adds to the standard uncertainty of a drop's excess."""
@@ -142,6 +165,8 @@ class Drop:
 
     budget: tuple[Doubt, ...] = ()
     """What its doubt is made of, largest first: the squares add to that of the excess's ``u``."""
+    unfinished: tuple[tuple[str, str], ...] = ()
+    """Rounds of a higher current that give no comparison, each with what it lacks."""
 
 
 class Place(NamedTuple):
@@ -162,6 +187,25 @@ class Place(NamedTuple):
     """Where the branch of the place ends: ``way`` for the device; empty for the whole circuit."""
     joints: tuple[Place, ...] = ()
     """Of bad connections in two places at once: each, with its own figures."""
+    speaks_for: tuple[str, ...] = ()
+    speaks_against: tuple[str, ...] = ()
+    """What was read that speaks for the cause and against it, as sentences; only where an explanation was asked for."""
+
+
+@dataclass(frozen=True, slots=True)
+class JointHeat:
+    """Heat in a bad connection that is suspected at one place; what is not known is ``None``."""
+
+    where: str
+    """As in ``Place``."""
+    read_a: Figure | None
+    """The most that it carried while it was read. [A]"""
+    read: Figure | None
+    """Heat at that current. [W]"""
+    design_a: Figure | None
+    """At design and the voltage that makes it largest. [A]"""
+    design: Figure | None
+    """Heat at that current. [W]"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -222,6 +266,10 @@ class LoadMargin:
     design: Figure | None = None
     worst: Figure | None = None
     """With the source at its lowest, hot conductors and what readings support."""
+    worst_recorded: Figure | None = None
+    """The same with everything as recorded: without a fault."""
+    source_lowest: Figure | None = None
+    """At the source's terminals, at its lowest."""
     lowest: Figure | None = None
     """The load's own."""
     margin: Figure | None = None
@@ -249,6 +297,8 @@ class CircuitResult:
     design_drop: Figure | None = None
     """Largest computed drop from the feeding board to a load at design current. [V]"""
     causes: tuple[Place, ...] = ()
+    joints: tuple[JointHeat, ...] = ()
+    """Heat where a connection may be bad, each place once."""
     points: tuple[PointVoltage, ...] = ()
     margins: tuple[LoadMargin, ...] = ()
     """One for each load, in the order of their rows."""
@@ -273,6 +323,8 @@ class Assessment:
     not_judged: tuple[NotJudged, ...]
     cautions: tuple[str, ...] = field(default=())
     """Cautions of the site's voltages, to be read before anyone takes a reading."""
+    rule_changes: tuple[RuleChange, ...] = ()
+    """What the limits profile switches off, raises or lowers."""
 
     @property
     def summary(self) -> dict[str, int]:
@@ -281,3 +333,12 @@ class Assessment:
         for status in Status:
             counts[str(status)] = sum(result.status is status for result in self.circuits)
         return counts
+
+    @property
+    def rule_faults(self) -> dict[str, str]:
+        """Reason by rule, of those that failed by a fault of the program: the first of each."""
+        found: dict[str, str] = {}
+        for gap in self.not_judged:
+            if gap.why.startswith(PROGRAM_FAULT):
+                found.setdefault(gap.rule, gap.why)
+        return found

@@ -4,13 +4,12 @@ from __future__ import annotations
 
 import math
 import re
-from collections import Counter, defaultdict
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 from rules.assessment import Drop
 from rules.calc.doubt import total
-from rules.calc.network import Solved
 from rules.consistency import Problem
 from rules.diagnosis.budget import Current
 from rules.diagnosis.common_error import Taught
@@ -19,6 +18,7 @@ from rules.diagnosis.habits import Tie, ties_of
 from rules.diagnosis.learning import diagnose_told
 from rules.diagnosis.problem import Problem as Posed
 from rules.diagnosis.rows import problem_of
+from rules.doubts import drop_u
 from rules.errors import MissingData
 from rules.impossible import impossible
 from rules.index import Index
@@ -28,7 +28,7 @@ from rules.nominal import nominal_v
 from rules.record import Board, Circuit, Figure, Load, Reading, Run, Site, Source
 from rules.rounds import Round, Tree, current_at, drop_of, judged, rounds_of, temperature_read, visit_of
 from rules.routes import Shared, first_ends
-from rules.runs import SHARED, Carrying, Figures, record_variance
+from rules.runs import SHARED, Figures
 from rules.worst import largest_current_a, worst_of
 
 RUN = re.compile(r"run \d+")
@@ -63,6 +63,18 @@ class Context:
     """By circuit id: error that a circuit shares with others, relative to its computed drops; none where none was found."""
     unused: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     """By circuit id: readings that nothing makes use of."""
+    joints: Mapping[tuple[str, ...], Sequence[SimilarJoint]] = field(default_factory=dict)
+    """Joints that were read across themselves, by what makes them similar."""
+
+
+@dataclass(frozen=True, slots=True)
+class SimilarJoint:
+    """A termination or pole of some circuit, to compare others with."""
+
+    circuit: str
+    """Its tag."""
+    place: str
+    ohm: Figure
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,6 +124,8 @@ class CircuitCase:
     runs: tuple[Run, ...]
     loads: tuple[LoadPoint, ...]
     visit: str
+    readings: tuple[Reading, ...]
+    """Of the visit, those with the loads off too."""
     rounds: tuple[Round, ...]
     tree: Tree
     drop: Drop | None
@@ -132,6 +146,13 @@ class CircuitCase:
     def tag(self) -> str:
         return self.circuit.tag
 
+    @property
+    def drawn(self) -> frozenset[str]:
+        """Points at which a load, a board or a converter takes current."""
+        index = self.context.index
+        fed = {_fed_at(fed, self.circuit, index) for fed in index.fed_by_circuit(self.circuit.id)}
+        return frozenset(fed | {point.load.point for point in self.loads})
+
     def is_vital(self, point: str) -> bool:
         """Whether a life-safety or trip-or-close load hangs on a point or behind it."""
         behind = {end for end in self.tree.ends if point in ("bus", "way") or self._passes(end, point)} | {point}
@@ -147,6 +168,11 @@ class CircuitCase:
             if end == point:
                 return True
         return False
+
+    @property
+    def return_leg(self) -> str:
+        """The leg without the device."""
+        return _return_leg(self.circuit, self.context.index)
 
     @property
     def limits(self) -> Limits:
@@ -174,12 +200,12 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         common = context.common.get(circuit.id)
         unused = context.unused.get(circuit.id, ())
     tree, rounds, nominal = measured.tree, measured.rounds, nominal_v(circuit, index)
-    drop, gap = None, "nothing was read" if not measured.readings else ""
-    if measured.readings:
+    drop, gap = None, "nothing was read under load" if measured.readings else "nothing was read"
+    if rounds:
         against = {this.name: impossible(this, tree, nominal, limits) for this in rounds}
         possible = [this for this in rounds if not against[this.name]]
         try:
-            if rounds and not possible:
+            if not possible:
                 raise MissingData(against[rounds[0].name])
             drop = drop_of(possible, tree, limits)
         except MissingData as error:
@@ -193,6 +219,7 @@ def case_of(context: Context, circuit: Circuit, readings: Sequence[Reading] | No
         runs=index.runs_of(circuit.id),
         loads=tuple(_load_point(context, circuit, load, rounds) for load in index.loads_of(circuit.id)),
         visit=measured.visit,
+        readings=measured.readings,
         rounds=rounds,
         tree=tree,
         drop=drop,
@@ -258,7 +285,7 @@ def _worst(context: Context, circuit: Circuit, diagnosis: Diagnosis | None) -> d
         network,
         context.figures,
         lambda id_: diagnosis if id_ == circuit.id else context.diagnoses.get(id_),
-        lambda node: _computed_u(context, list(network.way_up(node))[:-1], network.lowest),
+        lambda node: drop_u(context, list(network.way_up(node))[:-1], "lowest"),
     )
 
 
@@ -277,6 +304,8 @@ def _return_leg(circuit: Circuit, index: Index) -> str:
 
 def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
     """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
+    if reading.is_unloaded:
+        return reading.quantity in ("current", "residual")  # what a clamp shows without a current
     this = next(round_ for round_ in rounds if round_.name == reading.round)
     if reading.quantity == "voltage":
         return reading.at in this.volts
@@ -380,14 +409,14 @@ def _load_point(context: Context, circuit: Circuit, load: Load, rounds: Sequence
     return LoadPoint(
         load=load,
         drop_v=float(design.voltage_v[bus] - design.voltage_v[node]),
-        drop_u=_computed_u(context, inside, design),
+        drop_u=drop_u(context, inside, "design"),
         gap=gap,
         total_drop_v=float(design.voltage_v[source] - design.voltage_v[node]),
-        total_drop_u=_computed_u(context, branches[:-1], design),
+        total_drop_u=drop_u(context, branches[:-1], "design"),
         total_gap=network.gap_of(node) or gap,
         design_v=float(design.voltage_v[node]),
         lowest_v=float(lowest.voltage_v[node]),
-        lowest_u=_computed_u(context, branches[:-1], lowest),
+        lowest_u=drop_u(context, branches[:-1], "lowest"),
         lowest_gap=lowest_gap,
         source_lowest_v=float(network.held_lowest_v[source]),
         collapsed=collapsed,
@@ -404,23 +433,3 @@ def _volts(this: Round, point: str) -> tuple[float, str, float]:
 def _collapse(network: Network, node: int, lowest: bool) -> str:
     found = network.collapse_of(node, lowest)
     return GAP_COLLAPSE.format(network.place_of(found.node)) if found is not None else ""
-
-
-def _computed_u(context: Context, branches: Sequence[int], solved: Solved) -> float:
-    """Standard uncertainty of the computed drop over branches, at currents that are exact. [V]"""
-    network, limits = context.network, context.limits
-    parts: dict[str, list[Carrying]] = defaultdict(list)
-    variance = 0.0
-    for branch in branches:
-        amps = float(solved.current_a[branch])
-        if math.isnan(amps):  # a tree that cannot be supplied
-            return math.nan
-        run_id = network.run_at[branch]
-        if run_id:
-            path = parts[network.circuit_at[branch]]
-            path.append(Carrying(context.figures[run_id], amps))
-            if branch in network.return_at:
-                path.append(Carrying(network.return_at[branch].figures, float(solved.back_a[branch])))
-        else:
-            variance += (limits["device_doubt.relative"] * float(network.cold_ohm[branch]) * amps) ** 2
-    return math.sqrt(variance + sum(record_variance(path, limits) for path in parts.values()))

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from rules.calc.network import Solved
 from rules.calc.peak import energy_kwh_a_year, lowest_at_peak_v
 from rules.case import CircuitCase, LoadPoint
+from rules.held import highest_v
 from rules.loads import drawn
 from rules.network import Network
 from rules.record import Load, Source
@@ -115,7 +116,7 @@ def _margin(case: CircuitCase, point: LoadPoint, worst: Solved) -> Margin:
     design_v = float(network.design.voltage_v[node]) if known else None
     known_worst = not network.gap_of(node, lowest=True) and not worst.collapsed[node]
     worst_v = float(worst.voltage_v[node]) if known_worst else None
-    most_v = _highest_v(network.sources_at(source))
+    most_v = highest_v(network.sources_at(source))
     low, high = load.lowest_voltage_v, load.highest_voltage_v
     return Margin(
         load=load,
@@ -180,13 +181,6 @@ def _peak(case: CircuitCase, node: int, load: Load, design_v: float | None, wors
         lowest_v=None if worst_v is None else at_peak(worst_v, network.path_ohm(node, lowest=True)),
         source_ohm=source_ohm,
     )
-
-
-def _highest_v(sources: tuple[Source, ...]) -> float | None:
-    """The highest that sources in parallel may put out; ``None`` while one of them does not say. [V]"""
-    highest = [source.highest_voltage_v for source in sources]
-    known = [volts for volts in highest if volts is not None]
-    return max(known) if known and len(known) == len(highest) else None
 
 
 def _source_ohm(sources: tuple[Source, ...]) -> float | None:

@@ -1,5 +1,5 @@
 """
-A site as a solved network: which node is what, which branch is which run, its voltages in two states.
+A site as a solved network: which node is what, which branch is which run, its voltages in three states.
 
 What cannot be computed (an unknown length, a load without a figure) is left out of the sums and remembered: a
 voltage below it is then known only to be *at most* what is computed, and ``gap_of`` says why. In a mesh, or where a
@@ -8,8 +8,9 @@ return is shared, what is missing may push current either way: such voltages are
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
+from typing import Literal, TypeAlias
 
 import numpy as np
 
@@ -20,19 +21,26 @@ from rules.calc.loops import Legs
 from rules.calc.network import NO_TIES, Solved
 from rules.calc.network import Network as Shape
 from rules.calc.newton import Loads
+from rules.held import giving_of, highest_v, lowest_v, working_v
 from rules.index import Index
 from rules.limits import Limits
 from rules.record import Circuit, Source
-from rules.runs import Figures, SharedReturn
+from rules.runs import Figures, RunFigures, SharedReturn
 from rules.wiring import wiring_of
 
 GAP_NOTHING_FEEDS = "nothing in the record feeds {}"
 GAP_SOURCE = "the voltage of {} is not known"
 GAP_LOWEST = "the lowest voltage of {} is not known"
+GAP_HIGHEST = "the highest voltage of {} is not known"
 GAP_LOAD = "what {} draws is not known"
 GAP_BACK = "current would flow back into {}, whose voltage under that is not known"
 STAND_IN_OHM = 1e-3
 """Keeps the equations of a mesh solvable in place of a resistance that is not known; what they give is not used. [ohm]"""
+EASED = 1e-4
+"""Share by which every resistance is lessened to see what the drops make of it; lessened, so that nothing collapses."""
+LEAST_DROP_V = 1e-6
+"""A drop so small that what its loads make of it is lost in rounding. [V]"""
+StateName: TypeAlias = Literal["design", "lowest", "highest"]
 MOST_NESTED = 50
 """Converters one behind the other, after which the power that they take is no longer followed."""
 
@@ -81,23 +89,52 @@ class Network:
         )
         """Ids of the runs that are part of a mesh."""
         self._held()
-        self.gap, self.gap_lowest = self._gaps(lowest=False), self._gaps(lowest=True)
+        self.gap, self.gap_lowest, self.gap_highest = (self._gaps(state) for state in ("", "lowest", "highest"))
         self.unknown_load = wiring.unknown
         """By node: a load there whose figure is not known."""
         self._unknown_converters()
         self._below = self._unknown_below()
         self._load = self._loads()
-        cold, hot = (
-            self._state(figures.legs.out, figures.legs.back, 0),
-            self._state(figures.legs.out_hot, figures.legs.back_hot, 1),
-        )
-        self.cold_ohm = cold.legs.out + cold.legs.back
+        legs = figures.legs
+        recorded = self._state(legs.out, legs.back, self.held_v, lambda one: one.loop_ohm)
+        hot = self._state(legs.out_hot, legs.back_hot, self.held_lowest_v, lambda one: one.loop_hot_ohm)
+        cold = self._state(legs.out_cold, legs.back_cold, self.held_highest_v, lambda one: one.loop_cold_ohm)
+        self.cold_ohm = recorded.legs.out + recorded.legs.back
         """Both own legs of the branch to each node at the recorded temperature; of a device, its resistance. [ohm]"""
-        self.design: Solved = self._solve(cold, self.gap)
+        self.design: Solved = self._solve(recorded, self.gap)
         """The source at ``working``, the recorded temperature, healthy joints."""
         self.lowest: Solved = self._solve(hot, self.gap_lowest)
         """The same record with the source at ``lowest`` and hot conductors."""
+        self.highest: Solved = self._solve(cold, self.gap_highest)
+        """The same record with the source at ``highest`` and cold conductors: the least drop with every load on."""
         self._hot_ohm = hot.legs.out + hot.legs.back
+        self._states: dict[StateName, State] = {"design": recorded, "lowest": hot, "highest": cold}
+        self._eased: dict[StateName, Floats] = {}
+
+    def solved(self, state: StateName) -> Solved:
+        """One of the three states."""
+        return {"design": self.design, "lowest": self.lowest, "highest": self.highest}[state]
+
+    def growth(self, state: StateName, node: int, start: int) -> float:
+        """
+        By how many percent the drop between two nodes grows where every resistance grows by one percent.
+
+        1 where loads draw constant currents, less with constant resistances, more with constant power: near collapse
+        without bound. Of one run: ``1 / (1 - P R / V²)``, the derivative of ``V = (Vs + sqrt(Vs² - 4 P R)) / 2``.
+        """
+        volts = self.solved(state).voltage_v
+        drop_v = float(volts[start] - volts[node])
+        bends = self._load.power_w.any() or self._load.conductance_s.any() or self._wiring.takes
+        if not bends or not abs(drop_v) > LEAST_DROP_V:
+            return 1.0
+        if state not in self._eased:
+            full = self._states[state]
+            legs = full.legs
+            parts = (legs.out, legs.back, legs.tie_out, legs.tie_back, legs.shared)
+            less = Legs(*(ohm * (1 - EASED) for ohm in parts))
+            self._eased[state] = self._solve(replace(full, legs=less), [""] * len(self.parent)).voltage_v
+        eased_v = float(self._eased[state][start] - self._eased[state][node])
+        return 1.0 if eased_v != eased_v else abs((drop_v - eased_v) / (EASED * drop_v))
 
     def way_up(self, node: int, until: int = -1) -> Iterator[int]:
         """Branches from a node towards its source, as far as the node ``until`` (itself left out)."""
@@ -105,9 +142,9 @@ class Network:
             yield node
             node = int(self.parent[node])
 
-    def gap_of(self, node: int, until: int = -1, lowest: bool = False) -> str:
+    def gap_of(self, node: int, until: int = -1, lowest: bool = False, highest: bool = False) -> str:
         """Why the voltage between two nodes is not known exactly; empty where it is."""
-        gaps = self.gap_lowest if lowest else self.gap
+        gaps = self.gap_lowest if lowest else self.gap_highest if highest else self.gap
         for branch in self.way_up(node, until):
             if gaps[branch]:
                 return gaps[branch]
@@ -188,7 +225,8 @@ class Network:
         in which leg it lies.
         """
         legs, of_run = self._figures.legs, self._row >= 0
-        state = self._state(legs.out_hot * conductor_factor, legs.back_hot * conductor_factor, 1)
+        out_ohm, back_ohm = legs.out_hot * conductor_factor, legs.back_hot * conductor_factor
+        state = self._state(out_ohm, back_ohm, self.held_lowest_v, lambda one: one.loop_hot_ohm)
         out = state.legs.out.copy()
         out[of_run] += extra_ohm[self._row[of_run]]
         emf = np.zeros(len(out))
@@ -213,13 +251,14 @@ class Network:
 
     def _held(self) -> None:
         size = len(self.parent)
-        self.held_v, self.held_lowest_v = np.full(size, np.nan), np.full(size, np.nan)
+        self.held_v, self.held_lowest_v, self.held_highest_v = (np.full(size, np.nan) for _ in range(3))
         for node, sources in self._wiring.sources.items():
-            working, lowest = working_v(sources), lowest_v(sources)
+            working, lowest, highest = working_v(sources), lowest_v(sources), highest_v(sources)
             self.held_v[node] = np.nan if working is None else working
             self.held_lowest_v[node] = self.held_v[node] if lowest is None else lowest
+            self.held_highest_v[node] = self.held_v[node] if highest is None else highest
 
-    def _gaps(self, lowest: bool) -> list[str]:
+    def _gaps(self, state: str) -> list[str]:
         """Why each branch, or each held node's voltage, is not known; in a mesh the whole mesh shares it."""
         gaps = [""] * len(self.parent)
         for node, row in enumerate(self._row.tolist()):
@@ -231,8 +270,10 @@ class Network:
             names = " + ".join(source.tag for source in sources)
             if working_v(sources) is None:
                 gaps[node] = GAP_SOURCE.format(names)
-            elif lowest and lowest_v(sources) is None:
+            elif state == "lowest" and lowest_v(sources) is None:
                 gaps[node] = GAP_LOWEST.format(names)
+            elif state == "highest" and highest_v(sources) is None:
+                gaps[node] = GAP_HIGHEST.format(names)
         for branches, held in self._meshes():
             gap = next((gaps[node] for node in (*branches, *held) if gaps[node]), "")
             for branch in branches if gap else ():
@@ -284,20 +325,22 @@ class Network:
             loads.conductance_s[node] += draws.conductance_s
         return loads
 
-    def _state(self, out_conductor: Floats, back_conductor: Floats, hot: int) -> State:
+    def _state(
+        self, out_conductor: Floats, back_conductor: Floats, held_v: Floats, of_shared: Callable[[RunFigures], float]
+    ) -> State:
         legs, has = self._figures.legs, self._row >= 0
         rows = self._row[has]
         out, back = self._device_out.copy(), self._device_back.copy()
         out[has] = out_conductor[rows] + legs.out_joints[rows]
         back[has] = back_conductor[rows] + legs.back_joints[rows]
         returns = [self._figures.returns[name].figures for name in self._wiring.shared]
-        shared = np.array([one.loop_hot_ohm if hot else one.loop_ohm for one in returns])
+        shared = np.array([of_shared(one) for one in returns])
         shared[[bool(one.gap) for one in returns]] = STAND_IN_OHM
         open_ = self.coupled & np.array([bool(gap) for gap in self.gap], dtype=bool)
         out[open_] += STAND_IN_OHM
         back[open_] += STAND_IN_OHM
         none = np.zeros(len(self._wiring.ties))
-        return State(self._shape.legs(out, back, none, none, shared), self.held_lowest_v if hot else self.held_v)
+        return State(self._shape.legs(out, back, none, none, shared), held_v)
 
     def _solve(self, state: State, gaps: list[str], emf_v: Floats | None = None) -> Solved:
         """One state; converters take the power of what they feed, over their efficiency."""
@@ -305,7 +348,7 @@ class Network:
         given_by = {
             node: giving
             for node, sources in self._wiring.sources.items()
-            if (giving := _giving(sources, state.held_v[node])) is not None and giving.id in takes
+            if (giving := giving_of(sources, state.held_v[node])) is not None and giving.id in takes
         }
         taken = np.zeros(size)
         for _ in range(MOST_NESTED):
@@ -357,7 +400,7 @@ class Network:
 
 
 def network_of(index: Index, figures: Figures, limits: Limits) -> Network:
-    """Build a site's network and solve it at design and at the lowest source voltage."""
+    """Build a site's network and solve it at design, at the lowest and at the highest source voltage."""
     return Network(index, figures, limits)
 
 
@@ -368,22 +411,3 @@ def device_ohm(circuit: Circuit, limits: Limits) -> float | None:
     return device_resistance_ohm(
         circuit.device, circuit.rated_current_a, circuit.device_poles or 1, limits["device_doubt.typical_share"]
     )
-
-
-def working_v(sources: tuple[Source, ...]) -> float | None:
-    """The voltage of sources in parallel: that of the highest. [V]"""
-    return max((volts for source in sources if (volts := source.working_or_nominal_v) is not None), default=None)
-
-
-def lowest_v(sources: tuple[Source, ...]) -> float | None:
-    """The lowest voltage of sources in parallel: the battery's where there is one, else the lowest of all. [V]"""
-    batteries = [source for source in sources if source.kind == "battery"] or sources
-    return min((source.lowest_voltage_v for source in batteries if source.lowest_voltage_v is not None), default=None)
-
-
-def _giving(sources: tuple[Source, ...], held_v: float) -> Source | None:
-    """Which of several sources in parallel gives the current: the one whose voltage the busbar has."""
-    for source in sources:
-        if held_v in (source.working_or_nominal_v, source.lowest_voltage_v):
-            return source
-    return sources[0] if sources else None

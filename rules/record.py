@@ -35,6 +35,8 @@ UNIT_OF_QUANTITY = {
 LEGS = ("positive", "negative", "both")
 METALS = ("copper", "tinned copper", "aluminium", "copper-clad aluminium")
 STRANDINGS = ("solid", "stranded", "flexible")
+CATEGORIES = ("CAT II", "CAT III", "CAT IV")
+"""Measurement categories that a place may ask of a meter, the least first."""
 _VOLTAGE = {"least": 1e-3, "most": 10_000}
 """Bounds here and below are our own, as ``rules.columns.OUTER``."""
 RESERVED_POINTS = ("bus", "way", "device", "ambient")
@@ -100,6 +102,8 @@ class Source(Row):
     cells: int | None = col.column(None, "cells", "whole", least=1, most=10_000)
     fed_from: Feed | None = col.column(None, "fed_from", "reference", tables=("circuits",))
     efficiency_percent: float | None = col.number("efficiency", "%", least=1e-3, most=100)
+    category: str = col.column("", "category", "choice", choices=CATEGORIES)
+    """The least measurement category that a meter needs at its terminals."""
     notes: str = col.notes()
 
     @property
@@ -118,6 +122,8 @@ class Board(Row):
     )
     nominal_voltage_v: float | None = col.number("nominal", "V", **_VOLTAGE)
     location: str = col.column("", "location")
+    category: str = col.column("", "category", "choice", choices=CATEGORIES)
+    """The least measurement category that a meter needs on it and on its circuits."""
     walk_order: float | None = col.order()
     notes: str = col.notes()
 
@@ -258,6 +264,9 @@ class Instrument(Row):
     zero: float | None = col.number("zero", "*")
     input_resistance_ohm: float | None = col.number("input_resistance", "ohm", least=1e-9, most=1e12)
     category: str = col.column("", "category")
+    """As printed on it: ``CAT III 600 V``, or several."""
+    rated_voltage_v: float | None = col.number("rated_voltage", "V", **_VOLTAGE)
+    """The highest d.c. voltage that it may be connected to."""
     calibrated_until: str = col.column("", "calibrated_until", "date")
     notes: str = col.notes()
 
@@ -294,6 +303,8 @@ class Reading(Row):
     full_scale: float | None = col.number("range", "*", above=0)
     test_resistor_ohm: float | None = col.number("test_resistor", "ohm", least=1e-9, most=1e12)
     test_resistor_leg: str = col.column("", "test_resistor_leg", "choice", choices=LEGS[:2])
+    loads_off: str = col.column("", "loads_off", "choice", choices=("yes",))
+    """Taken with every load of its circuit or board off: it belongs to no load state."""
     by: str = col.column("", "by")
     tag: str = col.column("", "reading", "tag")
     replaces_id: str = col.column("", "replaces", "reference", tables=("readings",))
@@ -307,6 +318,11 @@ class Reading(Row):
     @property
     def unit(self) -> str:
         return UNIT_OF_QUANTITY.get(self.quantity, "")
+
+    @property
+    def is_unloaded(self) -> bool:
+        """Whether it was taken with the loads off, so that it belongs to no load state."""
+        return self.loads_off == "yes"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -11,7 +11,7 @@ import math
 import re
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime
 from statistics import mean, stdev
 
@@ -128,10 +128,11 @@ def _moment(taken_at: str) -> str:
 
 
 def rounds_of(readings: Sequence[Reading], tree: Tree, index: Index, limits: Limits) -> tuple[Round, ...]:
-    """The rounds of one visit in the order of their first readings."""
+    """The rounds of one visit in the order of their first readings; a reading with the loads off is in none."""
     by_name: dict[str, list[Reading]] = defaultdict(list)
     for reading in readings:
-        by_name[reading.round].append(reading)
+        if not reading.is_unloaded:
+            by_name[reading.round].append(reading)
     return tuple(_round(name, rows, tree, index, limits) for name, rows in by_name.items())
 
 
@@ -273,10 +274,11 @@ def _share(point: str, near: str, tree: Tree) -> tuple[float, dict[str, float]]:
 
 def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
     """
-    Measured against computed drop, in the round with the highest current at the circuit's first run.
+    Measured against computed drop, in the round with the highest current at the circuit's first run that has a comparison.
 
-    From the first point read (``bus`` before ``way``, where the device between them has a figure) to the
-    read point with the largest computed drop from it; by two voltages or, where given, by direct drops.
+    A round of a higher current without one, half typed, is named in ``unfinished``. From the first point read (``bus``
+    before ``way``, where the device between them has a figure) to the read point with the largest computed drop from
+    it; by two voltages or, where given, by direct drops.
 
     Raises
     ------
@@ -295,7 +297,17 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
             reason = error
     if not able:
         raise reason
-    this = max(able, key=lambda pair: pair[0])[1]
+    unfinished: list[tuple[str, str]] = []
+    for _, this in sorted(able, key=lambda pair: -pair[0]):
+        try:
+            return replace(_of_round(this, tree, limits), unfinished=tuple(unfinished))
+        except MissingData as error:
+            unfinished.append((this.name, str(error)))
+    raise MissingData(unfinished[0][1])
+
+
+def _of_round(this: Round, tree: Tree, limits: Limits) -> Drop:
+    """The drop of one round."""
     points = set(this.volts) | {point for pair in this.direct for point in pair}
     order = ["bus", "way", *tree.ends]
     read = [point for point in order if point in points]
@@ -305,14 +317,15 @@ def drop_of(rounds: Sequence[Round], tree: Tree, limits: Limits) -> Drop:
             raise MissingData("the device between bus and way is not recorded, and way was not read")
     if len(read) < 2:
         raise MissingData(f"round {this.name} has no voltages at two points, nor a drop over both legs")
-    reached = []
+    reached: list[Drop] = []
+    reason: MissingData | None = None
     for end in read[1:]:
         try:
             reached.append(compare(read[0], end, this, tree, limits))
         except MissingData as error:
             reason = error
     if not reached:
-        raise reason
+        raise reason or MissingData(f"round {this.name} gives no drop")
     return max(reached, key=lambda drop: drop.computed.value)
 
 
@@ -392,6 +405,10 @@ def _measured(start: str, end: str, path: list[str], this: Round) -> tuple[list[
 
 
 def temperature_read(readings: Iterable[Reading], number: int) -> float | None:
-    """Mean of the temperatures read on a run's conductor in a visit. [degC]"""
-    values = [row.value for row in readings if row.quantity == "temperature" and row.at == f"run {number}"]
+    """Mean of the temperatures read on a run's conductor in a visit, under load. [degC]"""
+    values = [
+        row.value
+        for row in readings
+        if row.quantity == "temperature" and row.at == f"run {number}" and not row.is_unloaded
+    ]
     return mean(values) if values else None

@@ -4,15 +4,17 @@ from __future__ import annotations
 
 import importlib
 import pkgutil
+import traceback
 from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 from functools import cache
+from pathlib import PurePath
 from typing import Any, Literal, TypeAlias
 
-from rules.assessment import Citation, Finding, NotJudged, Severity
+from rules.assessment import PROGRAM_FAULT, Citation, Finding, NotJudged, RuleChange, Severity
 from rules.case import CircuitCase, Context
 from rules.errors import RulesError
-from rules.limits import Limits
+from rules.limits import ROOT, Limits
 from rules.record import Board, Figure, Source
 
 About: TypeAlias = Literal["circuit", "board", "source", "site"]
@@ -61,6 +63,8 @@ class Rule:
     """Further sources, of what the text and the thresholds rest on."""
     limits: tuple[str, ...] = ()
     """Groups of the limits profile that it decides by."""
+    also_about: tuple[About, ...] = ()
+    """Other kinds of thing that it judges in the same way."""
 
     @property
     def text(self) -> str:
@@ -80,17 +84,26 @@ class Rule:
         cause: str | None = None,
         consequences: tuple[str, ...] = (),
         as_circuit: str | None = None,
+        without: tuple[str, ...] = (),
     ) -> Finding:
         """
         A finding of this rule; its ``id`` is built from rule, place and ``where``.
 
-        ``as_circuit`` is for rules about the site that report on a circuit.
+        ``as_circuit`` is for rules about the site that report on a circuit; ``without`` are groups of its ``limits`` that
+        had no part in this finding. Values that the site's profile changes are named beside the source.
         """
         circuit = case.tag if isinstance(case, CircuitCase) else as_circuit
         board = case.tag if isinstance(case, BoardCase) else None
         place = circuit if circuit is not None else f"board {board}" if board is not None else "site"
-        setting = case.context.limits.rules.get(self.id)
-        if setting is not None and setting.severity is not None:
+        limits = case.context.limits
+        severity = severity or self.severity
+        sources = [source or str(self.source)]
+        sources += [changed for changed in self._changed_limits(limits, without) if changed not in sources[0]]
+        setting = limits.rules.get(self.id)
+        if setting is not None and setting.severity is not None and setting.severity is not severity:
+            sources.append(
+                f"{setting.severity} in place of {severity} by limits profile {setting.origin}: {setting.reason}"
+            )
             severity = setting.severity
         return Finding(
             id="/".join(_unslashed(part) for part in (self.id, place, where) if part),
@@ -98,16 +111,27 @@ class Rule:
             circuit=circuit,
             board=board,
             where=where,
-            severity=severity or self.severity,
+            severity=severity,
             cause=cause,
             title=self.title,
             why=why,
             numbers=dict(numbers),
             remedy=remedy or self.remedy,
             caution=self.caution,
-            source=source or str(self.source),
+            source="; ".join(sources),
             consequences=consequences,
         )
+
+    def _changed_limits(self, limits: Limits, without: tuple[str, ...]) -> list[str]:
+        """Where the values come from that another profile than the general one states, of those that it decides by."""
+        changed = [
+            str(stated)
+            for name in self.limits
+            if name not in without
+            for stated in limits.groups[name].by_source()
+            if stated.origin != ROOT
+        ]
+        return list(dict.fromkeys(changed))
 
     def gap(self, case: Case, where: str, why: str) -> NotJudged:
         """What this rule could not judge at one place; the rest of the case goes on."""
@@ -130,11 +154,12 @@ def rule(
     source: Citation,
     also: tuple[Citation, ...] = (),
     limits: tuple[str, ...] = (),
+    also_about: tuple[About, ...] = (),
 ) -> Callable[[Callable[[Any], Iterator[Finding | NotJudged]]], Rule]:
     """Make a rule of a function that yields findings, and what it could not judge, about one case."""
 
     def made(check: Callable[[Any], Iterator[Finding | NotJudged]]) -> Rule:
-        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits)
+        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits, also_about)
 
     return made
 
@@ -154,15 +179,15 @@ def judge(case: Case, about: About) -> tuple[list[Finding], list[NotJudged]]:
     """
     What all rules about one kind of thing say of one case.
 
-    A rule that misses something is reported as not judged, and the others go on; rules that the
-    profile switches off are left out (``switched_off`` reports them once).
+    A rule that misses something, or that fails by a fault of its own, is reported as not judged, and the others go on;
+    rules that the profile switches off are left out (``switched_off`` reports them once).
     """
     circuit = case.tag if isinstance(case, CircuitCase) else None
     where = case.tag if isinstance(case, BoardCase) else ""
     findings: list[Finding] = []
     gaps: list[NotJudged] = []
     for this in catalogue():
-        if this.about != about:
+        if about not in (this.about, *this.also_about):
             continue
         setting = case.context.limits.rules.get(this.id)
         if setting is not None and setting.off:
@@ -175,13 +200,40 @@ def judge(case: Case, about: About) -> tuple[list[Finding], list[NotJudged]]:
                     gaps.append(said)
         except RulesError as error:
             gaps.append(NotJudged(this.id, circuit, where, str(error)))
+        except MemoryError:
+            raise
+        except Exception as error:
+            gaps.append(NotJudged(this.id, circuit, where, fault_words(error)))
     return findings, gaps
+
+
+def fault_words(error: Exception) -> str:
+    """What is said of a rule that failed by a fault of the program, with the line that it failed in."""
+    last = traceback.extract_tb(error.__traceback__)[-1]
+    said = f": {error}" if str(error) else ""
+    return f"{PROGRAM_FAULT}: {type(error).__name__}{said} ({PurePath(last.filename).name}, line {last.lineno})"
+
+
+def changes_of(limits: Limits) -> tuple[RuleChange, ...]:
+    """What a profile switches off, raises or lowers, by rule."""
+    return tuple(
+        RuleChange(
+            this.id,
+            this.title,
+            this.severity,
+            None if setting.off else setting.severity,
+            setting.reason,
+            setting.origin,
+        )
+        for this in catalogue()
+        if (setting := limits.rules.get(this.id)) is not None and (setting.off or setting.severity is not None)
+    )
 
 
 def switched_off(limits: Limits) -> list[NotJudged]:
     """The rules that a profile switches off, each with the profile's reason."""
     return [
-        NotJudged(this.id, None, "", f"switched off by the limits profile: {setting.reason}")
-        for this in catalogue()
-        if (setting := limits.rules.get(this.id)) is not None and setting.off
+        NotJudged(change.rule, None, "", f"switched off by limits profile {change.profile}: {change.reason}")
+        for change in changes_of(limits)
+        if change.severity is None
     ]

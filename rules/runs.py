@@ -43,6 +43,8 @@ class RunFigures:
     conductor_ohm: float
     conductor_hot_ohm: float
     """At the profile's hot temperature, or the recorded one if that is higher."""
+    conductor_cold_ohm: float
+    """At the profile's cold temperature, or the recorded one if that is lower."""
     slope_ohm_per_k: float
     """How much the conductors gain with each kelvin."""
     joints_ohm: float
@@ -66,6 +68,10 @@ class RunFigures:
     def loop_hot_ohm(self) -> float:
         return self.conductor_hot_ohm + self.joints_ohm
 
+    @property
+    def loop_cold_ohm(self) -> float:
+        return self.conductor_cold_ohm + self.joints_ohm
+
     def at(self, temperature_c: float, temperature_u_k: float) -> RunFigures:
         """The same run with its conductors at another temperature."""
         warmer = temperature_c - self.temperature_c
@@ -86,9 +92,11 @@ class Legs:
 
     out: Floats
     out_hot: Floats
+    out_cold: Floats
     out_joints: Floats
     back: Floats
     back_hot: Floats
+    back_cold: Floats
     back_joints: Floats
 
 
@@ -145,9 +153,11 @@ class Figures(Mapping[str, RunFigures]):
         return Legs(
             out.conductor_ohm,
             out.hot_ohm,
+            out.cold_ohm,
             TERMINATIONS_A_LEG * out.joint_ohm,
             back.conductor_ohm,
             back.hot_ohm,
+            back.cold_ohm,
             TERMINATIONS_A_LEG * back.joint_ohm,
         )
 
@@ -171,6 +181,7 @@ class Figures(Mapping[str, RunFigures]):
             np.array([run.parallel_or_default for run in runs], dtype=float),
             np.array([recorded_temperature_c(run, self._site, limits) for run in runs]),
             limits["temperature.hot_c"],
+            limits["cold.conductor_c"],
             np.array([resistance_20c_ohm_per_m(*one) for one in kinds])[kind],
             np.array([alpha_20c(material) for _, material, _ in kinds])[kind],
             np.array([area_mm2(size) for size, _, _ in kinds])[kind],
@@ -181,7 +192,7 @@ class Figures(Mapping[str, RunFigures]):
     def _figures(self, run: Run, legs: Sequence[tuple[Leg, int]], gap: str) -> RunFigures:
         degrees = recorded_temperature_c(run, self._site, self._limits)
         if gap:
-            return RunFigures(0.0, 0.0, 0.0, 0.0, 0.0, degrees, 0.0, 0.0, gap)
+            return RunFigures(0.0, 0.0, 0.0, 0.0, 0.0, 0.0, degrees, 0.0, 0.0, gap)
         by = run.temperature_by if run.conductor_temperature_c is not None and run.temperature_by else "assumed"
         own = tuple(
             LegFigures(
@@ -195,6 +206,7 @@ class Figures(Mapping[str, RunFigures]):
         return RunFigures(
             conductor_ohm=sum(leg.conductor_ohm for leg in own),
             conductor_hot_ohm=sum(float(leg.hot_ohm[row]) for leg, row in legs),
+            conductor_cold_ohm=sum(float(leg.cold_ohm[row]) for leg, row in legs),
             slope_ohm_per_k=sum(leg.slope_ohm_per_k for leg in own),
             joints_ohm=TERMINATIONS_A_LEG * sum(leg.joint_ohm for leg in own),
             joints_variance=TERMINATIONS_A_LEG * sum(leg.joint_variance for leg in own),

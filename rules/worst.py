@@ -84,13 +84,14 @@ def largest_current_a(network: Network, node: int) -> float | None:
     """
     Current in the branch to a node at the voltage that makes it largest; ``None`` where it is not known. [A]
 
-    Constant-power loads draw most at the lowest voltage, constant-resistance loads at the working one.
+    Constant-power loads draw most at the lowest voltage behind hot conductors, constant-resistance loads at the highest
+    behind cold ones; where the source's highest or lowest is not known, its working voltage stands in for it.
     """
     design = network.design_current_a(node)
     if design is None:
         return None
-    lowest = abs(float(network.lowest.current_a[node]))
-    return abs(design) if math.isnan(lowest) else max(abs(design), lowest)
+    beside = (abs(float(solved.current_a[node])) for solved in (network.lowest, network.highest))
+    return max([abs(design), *(amps for amps in beside if not math.isnan(amps))])
 
 
 def _taken(

@@ -54,6 +54,12 @@ SAMPLE_SITES = (
         "24 V control and 12 V doors",
         "A community house with 24 V control supplies and 12 V locks, strikes and readers on long thin cables.",
     ),
+    SampleSite(
+        "station",
+        "station_110v",
+        "110 V switchgear building",
+        "A 110 V battery with its charger: tripping and closing coils, relays, emergency lighting, 24 V control; two visits.",
+    ),
 )
 """All of them; the first is the default."""
 

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import csv
+import subprocess
+import sys
 import tomllib
 from collections import Counter
 from functools import cache
@@ -42,17 +44,45 @@ def stated(sample: SampleSite) -> dict[str, Any]:
     return tomllib.loads(sample.folder.joinpath(EXPECTED).read_text(encoding="utf-8"))
 
 
+def key(row: dict[str, Any]) -> tuple[str, str | None, str, str]:
+    """What tells a stated finding: its rule, the circuit, board or source (none for the site), where, and how soon."""
+    return row["rule"], place(row), row["where"], row["severity"]
+
+
+def place(row: dict[str, Any]) -> str | None:
+    """The tag of what a stated finding or fault is about; ``None`` for the site."""
+    return row.get("circuit") or row.get("board")
+
+
+def found(assessment: Assessment) -> Counter[tuple[str, str | None, str, str]]:
+    """The findings of a check, as they are stated."""
+    return Counter((f.rule, f.circuit or f.board, f.where, str(f.severity)) for f in assessment.findings)
+
+
 @every_site
 def test_check_gives_exactly_the_stated_findings(sample: SampleSite) -> None:
-    given = Counter((f.rule, f.circuit, f.where, str(f.severity)) for f in assessment_of(sample).findings)
-    expected = Counter((f["rule"], f["circuit"], f["where"], f["severity"]) for f in stated(sample)["finding"])
-    assert given == expected
+    assert found(assessment_of(sample)) == Counter(key(row) for row in stated(sample)["finding"])
 
 
 @every_site
-def test_every_seeded_fault_is_found_and_nothing_else(sample: SampleSite) -> None:
-    seeded = {fault["circuit"] for fault in stated(sample)["seeded"]}
-    assert {finding.circuit for finding in assessment_of(sample).findings} == seeded
+def test_earlier_visits_give_what_was_repaired_since(sample: SampleSite) -> None:
+    for visit in {row["visit"] for row in stated(sample).get("earlier", [])}:
+        earlier = found(judge_site(record_of(sample), visit)) - found(assessment_of(sample))
+        assert earlier == Counter(key(row) for row in stated(sample)["earlier"] if row["visit"] == visit)
+
+
+@every_site
+def test_every_seeded_fault_is_found_and_every_finding_is_of_a_seeded_fault(sample: SampleSite) -> None:
+    """A fault that no rule can find says why (``not_found``); one that was repaired names the visit that found it."""
+    content = stated(sample)
+    seeded = {
+        (rule, place(fault), fault.get("visit", ""))
+        for fault in content["seeded"]
+        for rule in fault.get("found_by", [])
+    }
+    findings = [*content["finding"], *content.get("earlier", [])]
+    assert {(row["rule"], place(row), row.get("visit", "")) for row in findings} == seeded
+    assert all(bool(fault.get("found_by")) != bool(fault.get("not_found")) for fault in content["seeded"])
 
 
 @every_site
@@ -146,6 +176,24 @@ def test_the_default_is_the_48_v_plant() -> None:
 
 def test_unknown_name_is_refused_with_the_nearest() -> None:
     with pytest.raises(
-        UnknownSampleSite, match="no sample site 'plan'; the nearest is 'plant'; there are: plant, doors"
+        UnknownSampleSite, match="no sample site 'plan'; the nearest is 'plant'; there are: plant, doors, station"
     ):
         sample_site("plan")
+
+
+def test_the_readings_of_the_station_are_those_of_its_simulation() -> None:
+    """Byte for byte, as ``python tests/sample_sites/simulate.py station`` prints them."""
+    script = Path(__file__).parent / "sample_sites" / "simulate.py"
+    printed = subprocess.run([sys.executable, script, "station"], check=True, capture_output=True, text=True).stdout
+    assert printed == sample_site("station").files()["readings.csv"].decode("utf-8")
+
+
+def test_the_station_shows_two_visits_peaks_and_a_repair() -> None:
+    record = record_of(sample_site("station"))
+    assert [visit.kind for visit in record.visits] == ["as found", "as left"]
+    assert any(load.peak_current_a and load.function == "trip or close" for load in record.loads)
+    repaired = {fault["circuit"] for fault in stated(sample_site("station"))["seeded"] if "visit" in fault}
+    left = {record_circuit.tag for record_circuit in record.circuits if record_circuit.tag in repaired}
+    status = {result.circuit: result.status for result in assessment_of(sample_site("station")).circuits}
+    assert left
+    assert {status[tag] for tag in left} == {Status.SOUND}

@@ -28,7 +28,7 @@ def command(site: Path, as_json_: bool, circuits: tuple[str, ...], visit: str | 
     if len(circuits) > 1:
         raise click.UsageError("--circuit stands there twice; accepted: one circuit")
     record = open_site(site)
-    assessment = judge_site(record, visit, settings_place(site))
+    assessment = judge_site(record, visit, settings_place(site), explain=as_json_)
     if circuits:
         assessment = only(assessment, circuits[0])
     if as_json_:

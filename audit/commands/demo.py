@@ -15,7 +15,7 @@ import click
 @click.option("--by", metavar="NAME", help="Who saves.")
 def command(name: str | None, target: Path | None, no_open: bool, overwrite: bool, by: str | None) -> int:
     """
-    Make a site file from a packaged sample site, plant (the default) or doors, and open it; an earlier demo here is
+    Make a site file from a packaged sample site, plant (the default), doors or station, and open it; an earlier demo here is
     opened as it is. Everything in it is invented.
     """
     from audit.demo import make_demo

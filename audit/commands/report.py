@@ -27,6 +27,6 @@ def command(site: Path, target: Path, audience: str, visit: str | None, overwrit
     check_target(target, overwrite)
     record = open_site(site)
     made_at = datetime.now().astimezone().strftime("%Y-%m-%d %H:%M %z")
-    assessment = judge_site(record, visit, settings_place(site))
+    assessment = judge_site(record, visit, settings_place(site), explain=audience != "supervisor")
     write_report(record, assessment, target, audience, overwrite=overwrite, made_at=made_at)
     click.echo(clean(f"wrote {target}"), err=True)

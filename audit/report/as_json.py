@@ -22,6 +22,7 @@ from rules.assessment import (
     NotJudged,
     Place,
     PointVoltage,
+    RuleChange,
 )
 from rules.record import Figure
 from rules.text import clean
@@ -42,6 +43,7 @@ def as_json(assessment: Assessment) -> Json:
         "circuits": [_circuit(result) for result in assessment.circuits],
         "findings": [_finding(finding) for finding in assessment.findings],
         "not_judged": [_not_judged(gap) for gap in assessment.not_judged],
+        "rule_changes": [_rule_change(change) for change in assessment.rule_changes],
     }
 
 
@@ -75,7 +77,7 @@ def _circuit(result: CircuitResult) -> Json:
             "visit": clean(result.visit),
             "status": str(result.status),
             "drop": _drop(result.drop),
-            "causes": [_cause(place) for place in result.causes if math.isfinite(place.probability)],
+            "causes": [_cause(place, result) for place in result.causes if math.isfinite(place.probability)],
             "points": [_point(point) for point in result.points],
             "next_reading": _next_reading(result.next_reading),
         }
@@ -92,7 +94,8 @@ def _drop(drop: Drop | None) -> Json | None:
     return _without_none({"round": clean(drop.round), **figures, "doubts": _without_none(doubts) or None})
 
 
-def _cause(place: Place) -> Json:
+def _cause(place: Place, result: CircuitResult) -> Json:
+    heat = next((joint for joint in result.joints if joint.where == place.where), None)
     extra = {"value": place.best_ohm, "low": place.low_ohm, "high": place.high_ohm}
     known = {name: value for name, value in extra.items() if value is not None and math.isfinite(value)}
     return _without_none(
@@ -101,7 +104,11 @@ def _cause(place: Place) -> Json:
             "where": clean(place.where),
             "probability": place.probability,
             "extra_resistance": {**known, "unit": "ohm"} if len(known) == len(extra) else None,
+            "heat_read": quantity(heat.read) if heat is not None else None,
+            "heat_design": quantity(heat.design) if heat is not None else None,
             "what": clean(place.what) or None,
+            "for": [clean(fact) for fact in place.speaks_for] or None,
+            "against": [clean(fact) for fact in place.speaks_against] or None,
         }
     )
 
@@ -153,6 +160,19 @@ def _finding(finding: Finding) -> Json:
 
 def _numbers(numbers: Iterable[tuple[str, Figure]]) -> Json:
     return _without_none({clean(name): quantity(figure) for name, figure in numbers})
+
+
+def _rule_change(change: RuleChange) -> Json:
+    return _without_none(
+        {
+            "rule": change.rule,
+            "off": change.severity is None,
+            "severity": str(change.severity) if change.severity is not None else None,
+            "usual": str(change.usual),
+            "reason": clean(change.reason),
+            "profile": clean(change.profile),
+        }
+    )
 
 
 def _not_judged(gap: NotJudged) -> Json:

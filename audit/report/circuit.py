@@ -3,12 +3,23 @@
 from __future__ import annotations
 
 from audit.report.blocks import Block, Cell, Column, Facts, Paragraph, Section, Table
-from audit.report.phrases import drop_words, figure_words, next_reading_words, status_words
+from audit.report.phrases import (
+    doubt_rows,
+    drop_words,
+    extra_words,
+    fault_is_likely,
+    figure_words,
+    heat_words,
+    next_reading_words,
+    status_words,
+    with_and_without,
+)
 from audit.report.records import circuit_facts, circuit_line, loads_table, readings_table, runs_table
 from rules.assessment import CircuitResult, Place
 from rules.index import Index
 from rules.limits import Limits
 from rules.record import Figure
+from rules.verdict import probability_words
 
 MOST_BESIDE = 6
 """Points that fit beside each other on a page."""
@@ -30,6 +41,7 @@ def circuit_section(
             loads_table(index, circuit),
             _points(result),
             _margins(result),
+            _doubts(result),
             _service(result),
             readings_table(index, circuit.id, visit),
         )
@@ -45,7 +57,16 @@ def _verdict(result: CircuitResult) -> tuple[tuple[str, str], ...]:
     rows = [("Status", f"{status}: {result.why}" if result.why else status)]
     if result.drop is None and result.visit:
         rows.append(("Judged on", f"visit {result.visit}"))
-    rows += [_cause(place) for place in result.causes]
+    for place in result.causes:
+        rows.append(_cause(place))
+        heat = next((joint for joint in result.joints if joint.where == place.where), None)
+        rows += [
+            ("heat", heat_words(heat) if heat is not None else ""),
+            ("for", "; ".join(place.speaks_for)),
+            ("against", "; ".join(place.speaks_against)),
+        ]
+    if fault_is_likely(result):
+        rows += [("At worst", with_and_without(margin)) for margin in result.margins]
     if (following := result.next_reading) is not None:
         said = next_reading_words(following)
         rows.append(("Read next", f"{said}: {following.why}" if following.why else said))
@@ -86,6 +107,20 @@ def _drop(result: CircuitResult) -> Table:
     return Table(columns, tuple(rows) or (("", words.of_allowed, "not known", "", ""),))
 
 
+def _doubts(result: CircuitResult) -> Table | None:
+    """The doubt budget of the difference; ``None`` where no drop was compared."""
+    if result.drop is None or not result.drop.budget:
+        return None
+    rows: tuple[tuple[Cell, ...], ...] = tuple(
+        (row.name, row.adds, row.share, row.bar or "", row.stated) for row in doubt_rows(result.drop)
+    )
+    columns = (
+        Column("Doubt of the difference", share=3), Column("Adds", "right", share=2), Column("Of u²", "right", share=2),
+        Column("", share=3), Column("Stated by", share=4),
+    )  # fmt: skip
+    return Table(columns, rows)
+
+
 def _lines(*texts: str) -> str:
     """Different texts, one a line."""
     return "\n".join(dict.fromkeys(text for text in texts if text))
@@ -93,12 +128,8 @@ def _lines(*texts: str) -> str:
 
 def _cause(place: Place) -> tuple[str, str]:
     """Its probability, then the cause with its place and extra resistance."""
-    said = f"{place.cause} {place.where}".strip()
-    ohms = (place.best_ohm, place.low_ohm, place.high_ohm)
-    if None not in ohms:
-        best, low, high = (figure_words(Figure(ohm, "ohm")) for ohm in ohms if ohm is not None)
-        said += f", {best} ({low} to {high})"
-    return f"{place.probability:.2f}", said
+    said = ", ".join(part for part in (f"{place.cause} {place.where}".strip(), extra_words(place)) if part)
+    return probability_words(place.probability), said
 
 
 def _service(result: CircuitResult) -> Table | None:

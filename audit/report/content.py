@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
+from audit.limit_words import limit_words
 from audit.report.blocks import Block, Cell, Column, Content, Paragraph, Section, Table, cleaned
 from audit.report.circuit import circuit_section
 from audit.report.records import board_title, boards_table, instruments_table, readings_table, sources_table
@@ -33,7 +34,6 @@ from rules.index import Index
 from rules.limits import Limits, of
 from rules.record import Site
 from rules.text import clean
-from rules.units import show
 
 AUDIENCES = ("electrician", "inspector", "supervisor")
 """Who a report can be for; the inspector's is the whole."""
@@ -121,31 +121,15 @@ def _plant(site: Site, index: Index) -> Section:
     return Section("Sources, boards and meters", blocks or (Paragraph("None is recorded."),))
 
 
-_SUFFIXES = {"%": "_percent", "degC": "_c", "W": "_w", "V": "_v", "ohm": "_ohm"}
-"""How the names of a group's numbers end in its unit; a name without the ending is a pure number."""
-
-
-def _limit_words(name: str, value: float, unit: str) -> str:
-    """One number of a profile: ``median 150 µΩ``, ``tape 0.01``."""
-    suffix = _SUFFIXES.get(unit, "")
-    has_unit = unit == "K" or (suffix and name.endswith(suffix))
-    number = show(value, unit) if has_unit else f"{value:g}"
-    return f"{name.removesuffix(suffix).replace('_', ' ')} {number}"
-
-
 def _limits(limits: Limits) -> Section:
     """Every limit and doubt in force, with its source."""
     rows: list[tuple[Cell, ...]] = []
     for group in limits.groups.values():
-        said = [_limit_words(name, value, group.unit) for name, value in group.values.items()]
-        said += [f"{name.replace('_', ' ')}: {word}" for name, word in group.words.items()]
-        values = "; ".join(said)
-        status = "" if group.status in group.source else group.status
-        source = ", ".join(text for text in (group.source, group.edition, status) if text)
-        rows.append((group.title, values, source))
+        for stated, keys in group.by_source().items():
+            rows.append((group.title, "; ".join(limit_words(group, key) for key in keys), str(stated)))
     for rule, setting in limits.rules.items():
         changed = "switched off" if setting.off else f"severity {setting.severity}"
-        rows.append((f"Rule {rule}", changed, setting.reason))
+        rows.append((f"Rule {rule}", changed, f"{setting.reason}; limits profile {setting.origin}"))
     settled = (
         f"A limit counts as kept where the probability of being past it is {limits['decision.passes_at']:g} or less, "
         f"as not kept where it is {limits['decision.fails_at']:g} or more, and as not settled between. A measured "

@@ -13,7 +13,7 @@ import io
 
 from audit.report.blocks import Content
 from audit.report.phrases import finding_place, number_words, status_words
-from audit.report.sections import by_severity, decisions_of
+from audit.report.sections import by_severity, decisions_of, rules_set_aside
 from rules.text import clean
 
 BYTE_ORDER_MARK = "\ufeff"
@@ -21,6 +21,7 @@ BYTE_ORDER_MARK = "\ufeff"
 COLUMNS = (
     "site", "finding", "severity", "rule", "place", "circuit", "board", "where", "visit", "status", "title", "why",
     "cause", "numbers", "consequences", "remedy", "caution", "source", "decided",
+    "rules_set_aside",
 )  # fmt: skip
 
 _STARTS_A_FORMULA = ("=", "+", "-", "@", "\t", "\r", "＝", "＋", "－", "＠")
@@ -28,10 +29,14 @@ _STARTS_A_FORMULA = ("=", "+", "-", "@", "\t", "\r", "＝", "＋", "－", "＠")
 
 
 def csv_report(content: Content) -> str:
-    """The findings, the most urgent first, with their numbers in people's units."""
+    """
+    The findings, the most urgent first, with their numbers in people's units.
+
+    What the limits profile switches off or lowers, and what failed, has no row of its own: it stands in each row.
+    """
     assessment = content.assessment
     results = {result.circuit: result for result in assessment.circuits}
-    decided = decisions_of(content.site)
+    decided, set_aside = decisions_of(content.site), " ".join(rules_set_aside(assessment))
     text = io.StringIO(newline="")
     writer = csv.writer(text, quoting=csv.QUOTE_ALL, lineterminator="\r\n")
     writer.writerow(COLUMNS)
@@ -57,6 +62,7 @@ def csv_report(content: Content) -> str:
             finding.caution,
             finding.source,
             decided.get(finding.id, ""),
+            set_aside,
         )
         writer.writerow([safe_cell(cell) for cell in cells])
     return BYTE_ORDER_MARK + text.getvalue()

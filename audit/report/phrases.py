@@ -6,7 +6,18 @@ import math
 from dataclasses import dataclass
 
 from audit.report.bar import Bar, drop_bar
-from rules.assessment import STATUS_SIGNS, CircuitResult, Finding, NextReading, Severity, Status
+from rules.assessment import (
+    STATUS_SIGNS,
+    CircuitResult,
+    Drop,
+    Finding,
+    JointHeat,
+    LoadMargin,
+    NextReading,
+    Place,
+    Severity,
+    Status,
+)
 from rules.record import Figure, Reading, Visit
 from rules.units import show, show_against
 
@@ -46,6 +57,10 @@ def limits_defer(limits: str) -> str:
     )
 
 
+PROBABILITY = "probability"
+"""Name of the number of a finding that says how sure its cause is."""
+LEAST_SURE = 0.999
+"""Probability above which a finding says no more than that it is above it."""
 CAUSES_NOT_JUDGED = (
     "Causes are not yet judged: a drop that agrees within its doubt is “measure”, and no circuit is called sound."
 )
@@ -71,10 +86,24 @@ def figure_words(figure: Figure) -> str:
 def number_words(finding: Finding) -> tuple[str, ...]:
     """Each number of a finding with its name: ``measured drop 8.10 V ± 0.03 V``."""
     return tuple(
-        f"{name.replace('_', ' ')} {figure_words(figure)}"
+        f"{name.replace('_', ' ')} {certainty_words(figure.value) if name == PROBABILITY else figure_words(figure)}"
         for name, figure in finding.numbers.items()
         if math.isfinite(figure.value)
     )
+
+
+def certainty_words(probability: float) -> str:
+    """
+    A probability as a percentage that is never certain.
+
+    >>> certainty_words(0.834), certainty_words(0.99996), certainty_words(1e-9)
+    ('83.4 %', 'above 99.9 %', 'below 0.1 %')
+    """
+    if probability > LEAST_SURE:
+        return f"above {show(LEAST_SURE, '1')}"
+    if probability < 1 - LEAST_SURE:
+        return f"below {show(1 - LEAST_SURE, '1', digits=3)}"
+    return show(probability, "1", digits=3)
 
 
 @dataclass(frozen=True, slots=True)
@@ -111,6 +140,108 @@ def drop_words(result: CircuitResult) -> DropWords:
     computed_words = "" if tick is None else f"{percent_words(tick, allowed)} %"
     words = said + (f", computed {computed_words}" if computed_words else "")
     return DropWords(drop_bar(percent, doubt, tick, allowed, words), said, computed_words)
+
+
+def heat_words(heat: JointHeat) -> str:
+    """
+    Heat in a suspected bad connection: ``4.24 ± 0.04 W in it at 9.61 A as read, 4.23 ± 0.04 W at design 9.6 A``.
+
+    >>> heat_words(JointHeat("run 2", Figure(6.0, "A"), Figure(5.58, "W", 0.08), None, None))
+    '5.58 ± 0.08 W in it at 6 A as read'
+    """
+    parts = []
+    if heat.read is not None and heat.read_a is not None:
+        parts.append(f"{figure_words(heat.read)} in it at {show(heat.read_a.value, 'A', digits=3)} as read")
+    if heat.design is not None and heat.design_a is not None:
+        words = "" if parts else " in it"
+        parts.append(f"{figure_words(heat.design)}{words} at design {show(heat.design_a.value, 'A', digits=3)}")
+    return ", ".join(parts)
+
+
+def extra_words(place: Place) -> str:
+    """
+    Extra resistance with the bounds of its central 95 %; empty where there is none.
+
+    >>> extra_words(Place("bad connection", "run 2", 0.93, 0.151, 0.155, 0.159))
+    '155 mΩ (151 mΩ to 159 mΩ)'
+    """
+    if place.best_ohm is None or place.low_ohm is None or place.high_ohm is None:
+        return ""
+    best, low, high = (show(ohm, "ohm", digits=3) for ohm in (place.best_ohm, place.low_ohm, place.high_ohm))
+    return f"{best} ({low} to {high})"
+
+
+def with_and_without(margin: LoadMargin) -> str:
+    """
+    What a load gets with the source at its lowest, by the readings and as recorded; empty where one is not known.
+
+    >>> volts = [Figure(v, "V", u) for v, u in ((38.1, 0.2), (39.7, 0.1))]
+    >>> with_and_without(LoadMargin("fan", "p1", worst=volts[0], worst_recorded=volts[1], source_lowest=Figure(40.5, "V")))
+    'fan, source at its lowest 40.5 V: 38.1 ± 0.2 V, 2.4 ± 0.2 V lost; without the fault 39.70 ± 0.10 V, 0.80 ± 0.10 V lost'
+    """
+    worst, recorded, source = margin.worst, margin.worst_recorded, margin.source_lowest
+    if worst is None or recorded is None or source is None:
+        return ""
+    lost = [Figure(source.value - figure.value, "V", figure.u) for figure in (worst, recorded)]
+    return (
+        f"{margin.load}, source at its lowest {figure_words(source)}: {figure_words(worst)}, {figure_words(lost[0])} lost; "
+        f"without the fault {figure_words(recorded)}, {figure_words(lost[1])} lost"
+    )
+
+
+def fault_is_likely(result: CircuitResult) -> bool:
+    """Whether a fault is more probable than none."""
+    return sum(place.probability for place in result.causes if place.cause not in NO_FAULT) > 0.5
+
+
+NO_FAULT = ("as recorded", "reading or record doubtful")
+
+
+@dataclass(frozen=True, slots=True)
+class DoubtRow:
+    """One part of the doubt of a drop's difference."""
+
+    name: str
+    adds: str
+    """What it adds: its standard uncertainty."""
+    part: float
+    """Of the variance, 0 to 1."""
+    share: str
+    """The same in words."""
+    bar: Bar | None
+    """The same share, drawn; the right edge is all of it."""
+    stated: str
+    """Who states it: a group of the limits profile, or the instruments' record."""
+
+
+def doubt_rows(drop: Drop) -> tuple[DoubtRow, ...]:
+    """
+    What the doubt of a drop's difference is made of, largest first; the squares add up.
+
+    >>> from rules.assessment import Doubt
+    >>> drop = Drop("1", "way", "p1", *[Figure(1.0, "V", 0.05)] * 3, Figure(8.0, "A"), "two voltages",
+    ...     budget=(Doubt("length", 0.04, "length_doubt"), Doubt("meter counts", 0.03)))
+    >>> [(row.name, row.adds, row.share, row.stated) for row in doubt_rows(drop)]
+    [('length', '40 mV', '64 %', 'profile, length_doubt'), ('meter counts', '30 mV', '36 %', 'record of instruments')]
+    """
+    whole = sum(doubt.u_v**2 for doubt in drop.budget)
+    rows = []
+    for doubt in drop.budget:
+        share = doubt.u_v**2 / whole if whole > 0 else 0.0
+        words = f"{100 * share:.0f} %" if share >= LEAST_SHARE else f"< {100 * LEAST_SHARE:.0f} %"
+        bar = drop_bar(share, None, None, 1.0, f"{doubt.name}: {words}")
+        stated = f"profile, {doubt.group}" if doubt.group else "record of instruments"
+        rows.append(DoubtRow(doubt.name, show(doubt.u_v, "V", digits=2), share, words, bar, stated))
+    return tuple(rows)
+
+
+LEAST_SHARE = 0.01
+"""Shares below it are said to be."""
+
+
+def doubt_summary(drop: Drop) -> str:
+    """The difference with its doubt: ``measured less computed 0.39 ± 0.03 V; its doubt, squared, is made of``."""
+    return f"measured less computed {figure_words(drop.excess)}; its doubt, squared, is made of"
 
 
 def percent_words(percent: float, limit: float | None) -> str:

@@ -217,7 +217,7 @@ def _load_state(readings: list[Reading], index: Index) -> str:
     said = [
         f"{show(reading.value, 'A', digits=READING_DIGITS)} at {reading.at}"
         for reading in readings
-        if reading.quantity == "current" and reading.id not in index.replaced
+        if reading.quantity == "current" and reading.id not in index.replaced and not reading.is_unloaded
     ]
     if not said:
         return "no load current recorded"
@@ -233,7 +233,7 @@ def circuit_line(index: Index, circuit: Circuit, result: CircuitResult) -> Line 
             result.drop.round,
         )
         whole = reading.quantity == "voltage" and reading.leg in ("", "both") and reading.id not in index.replaced
-        if of_round and whole:
+        if of_round and whole and not reading.is_unloaded:
             read.setdefault(reading.at, []).append(show(reading.value, "V", digits=READING_DIGITS))
     shown = {
         point: ", ".join(texts[:MOST_READ]) + (" …" if len(texts) > MOST_READ else "") for point, texts in read.items()
@@ -248,7 +248,11 @@ def sources_table(site: Site, index: Index) -> Table | None:
     rows: list[tuple[Cell, ...]] = [
         (
             source.tag,
-            joined(source.kind, f"fed from {feed_words(index, source.fed_from)}" if source.fed_from else ""),
+            joined(
+                source.kind,
+                f"fed from {feed_words(index, source.fed_from)}" if source.fed_from else "",
+                source.category,
+            ),
             quantity(source, "nominal_voltage_v", source.nominal_voltage_v, "V"),
             show(source.working_voltage_v, "V")
             if source.working_voltage_v is not None
@@ -275,7 +279,7 @@ def boards_table(index: Index) -> Table | None:
             board.tag,
             " + ".join(feed_words(index, feed) for feed in board.fed_by) or NOT_KNOWN,
             quantity(board, "nominal_voltage_v", board.nominal_voltage_v, "V"),
-            board.location or NOT_RECORDED,
+            joined(board.location, board.category) or NOT_RECORDED,
             board.notes,
         )
         for board in index.walked_boards
@@ -296,7 +300,8 @@ def instruments_table(site: Site) -> Table | None:
             NOT_KNOWN if row.accuracy_percent is None else f"{row.accuracy_percent:g} %",
             NOT_KNOWN if row.counts is None else f"{row.counts:g}",
             NOT_KNOWN if row.resolution is None else show(row.resolution, unit),
-            row.category or NOT_RECORDED,
+            joined(row.category, f"rated {show(row.rated_voltage_v, 'V')}" if row.rated_voltage_v is not None else "")
+            or NOT_RECORDED,
             row.calibrated_until or NOT_RECORDED,
             joined(f"zero {show(row.zero, unit)}" if row.zero else "", row.notes),
         )
@@ -407,6 +412,7 @@ def _remarks(reading: Reading, successors: dict[str, Reading]) -> str:
     return joined(
         f"tag {reading.tag}" if reading.tag else "",
         replaced,
+        "loads off" if reading.is_unloaded else "",
         "" if resistor is None else f"test resistor {show(resistor, 'ohm')}{leg}",
         reading.notes,
         by="; ",

@@ -71,7 +71,19 @@ def _known(rows: Iterable[tuple[str, str]], side_by_side: bool = False) -> Facts
 def statements(assessment: Assessment) -> tuple[str, ...]:
     """What the report says, and what nobody may read into it."""
     causes = () if causes_are_judged(assessment.circuits) else (CAUSES_NOT_JUDGED,)
-    return (*SAYS_AND_DOES_NOT_SAY, NOT_DESIGN_SPARE, limits_defer(assessment.limits), *causes)
+    return (
+        *SAYS_AND_DOES_NOT_SAY,
+        NOT_DESIGN_SPARE,
+        limits_defer(assessment.limits),
+        *causes,
+        *rules_set_aside(assessment),
+    )
+
+
+def rules_set_aside(assessment: Assessment) -> tuple[str, ...]:
+    """Rules that the limits profile changes, with its reason, and those that failed."""
+    faults = [f"{rule} could not judge: {why}" for rule, why in assessment.rule_faults.items()]
+    return tuple(f"{words}." for words in (*(change.words for change in assessment.rule_changes), *faults))
 
 
 def read_first(assessment: Assessment) -> Section:

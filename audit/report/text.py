@@ -142,6 +142,7 @@ def print_check(site: Site, assessment: Assessment, stream: TextIO | None = None
     _findings(page, assessment)
     _unsettled(page, assessment.circuits)
     _next_readings(page, assessment.circuits)
+    _changed_severities(page, assessment)
     _gaps(page, assessment)
     page.line()
     if not causes_are_judged(assessment.circuits):
@@ -281,6 +282,16 @@ def _next_readings(page: Page, circuits: Iterable[CircuitResult]) -> None:
             page.line(f"{tag}  {next_reading_words(reading)}", indent=2)
             page.line(reading.why, indent=4)
         page.pairs([("caution", caution)], indent=2)
+
+
+def _changed_severities(page: Page, assessment: Assessment) -> None:
+    """Rules that the limits profile raises or lowers, with its reason; those switched off are not judged."""
+    changes = [change for change in assessment.rule_changes if change.severity is not None]
+    if changes:
+        page.line()
+        page.line("Changed by the limits profile", "bold")
+    for change in changes:
+        page.line(f"{change.words}.", indent=2)
 
 
 def _gaps(page: Page, assessment: Assessment) -> None:

@@ -21,6 +21,8 @@ class Leg:
     """At its temperature."""
     hot_ohm: Floats
     """The same conductor at the hot temperature."""
+    cold_ohm: Floats
+    """The same conductor at the cold temperature."""
     slope_ohm_per_k: Floats
     """What the conductor gains with each kelvin."""
     joint_ohm: Floats
@@ -33,7 +35,8 @@ class Leg:
         if len(rows) == size:
             return self
         columns = []
-        for column in (self.conductor_ohm, self.hot_ohm, self.slope_ohm_per_k, self.joint_ohm, self.joint_variance):
+        parts = (self.conductor_ohm, self.hot_ohm, self.cold_ohm, self.slope_ohm_per_k)
+        for column in (*parts, self.joint_ohm, self.joint_variance):
             whole = np.zeros(size)
             whole[list(rows)] = column
             columns.append(whole)
@@ -45,6 +48,7 @@ def leg_of(
     parallel: Floats,
     temperature_c: Floats,
     hot_c: float,
+    cold_c: float,
     resistance_20c_ohm_per_m: Floats,
     alpha_20c_per_k: Floats,
     area_mm2: Floats,
@@ -64,6 +68,8 @@ def leg_of(
         Of the metal. [°C]
     hot_c : float
         The hot temperature; a run that is hotter keeps its own. [°C]
+    cold_c : float
+        The cold temperature; a run that is colder keeps its own. [°C]
     resistance_20c_ohm_per_m, alpha_20c_per_k, area_mm2 : array (n,)
         Of a single conductor. [Ω/m], [1/K], [mm²]
     median_ohm, gsd : float
@@ -83,7 +89,7 @@ def leg_of(
     29 m of 4 mm² copper at 20 °C and at 70 °C:
 
     >>> one = np.ones(1)
-    >>> leg = leg_of(29 * one, one, 20 * one, 70.0, 4.61e-3 * one, 0.00393 * one, 4 * one, 0.15e-3, 2.0)
+    >>> leg = leg_of(29 * one, one, 20 * one, 70.0, 20.0, 4.61e-3 * one, 0.00393 * one, 4 * one, 0.15e-3, 2.0)
     >>> round(float(leg.conductor_ohm[0]), 4), round(float(leg.hot_ohm[0]), 4), round(1e3 * float(leg.joint_ohm[0]), 3)
     (0.1337, 0.16, 0.302)
     """
@@ -92,5 +98,6 @@ def leg_of(
     )
     slope = one_way_length_m * resistance_20c_ohm_per_m * alpha_20c_per_k / parallel
     mean, variance = termination_ohm(area_mm2, median_ohm, gsd)
-    hotter = np.maximum(hot_c - temperature_c, 0.0)
-    return Leg(conductor, conductor + slope * hotter, slope, np.asarray(mean), np.asarray(variance))
+    hot = conductor + slope * np.maximum(hot_c - temperature_c, 0.0)
+    cold = conductor - slope * np.maximum(temperature_c - cold_c, 0.0)
+    return Leg(conductor, hot, cold, slope, np.asarray(mean), np.asarray(variance))

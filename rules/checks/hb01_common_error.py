@@ -31,7 +31,7 @@ METER = ("reads {} high", "reads {} low")
     remedy="Make the check that tells most before any of these circuits is opened, and correct the record by what it shows.",
     caution="The circuits are judged with this common error and its doubt. What all of them really have in common, the same cable too "
     "thin everywhere, looks the same from here: make the check. A second meter on a live circuit needs the same care as the first.",
-    source=Citation("JCGM 100", "2008", "3.2.4: correction for recognised systematic effects"),
+    source=Citation("JCGM 100", "2008", "3.2.4: correction for recognised systematic effects", "from-memory"),
     limits=("habit",),
 )
 def common_error(case: SiteCase) -> Iterator[Finding | NotJudged]:

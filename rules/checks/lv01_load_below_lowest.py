@@ -7,6 +7,7 @@ from rules.calc.doubt import probability_above
 from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.impossible import dead_points
+from rules.margins import margins_of
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
@@ -68,6 +69,7 @@ def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Findi
                 f"{name} was read at {shown} in round {round_}, below its lowest {limit}",
                 numbers={"voltage": volts, "lowest": Figure(lowest, "V")},
                 severity=Severity.IMMEDIATE if vital else Severity.SOON,
+                consequences=tuple(_dip(case, point)),
             )
             return
     volts = Figure(point.lowest_v, "V", point.lowest_u)
@@ -84,12 +86,22 @@ def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Findi
             f"{name} gets {'at most ' if point.lowest_gap else ''}{shown} with the source at "
             f"{show(point.source_lowest_v, 'V')} and hot conductors, as recorded; its lowest is {limit}",
             numbers={"voltage": volts, "lowest": Figure(lowest, "V"), "source": Figure(point.source_lowest_v, "V")},
+            consequences=tuple(_dip(case, point)),
         )
     elif point.lowest_gap:
         yield load_below_lowest.gap(case, point.load.point, point.lowest_gap)
     elif verdict is Verdict.OPEN:
         why = f"not settled: {name} gets {show(volts.value, 'V', volts.u)} against its lowest {show(lowest, 'V')}"
         yield load_below_lowest.gap(case, point.load.point, why)
+
+
+def _dip(case: CircuitCase, point: LoadPoint) -> Iterator[str]:
+    """What is left at the load's peak current, by the record."""
+    peak = next((margin.peak for margin in margins_of(case) if margin.load is point.load), None)
+    if peak is not None:
+        lowest = peak.design_v if peak.lowest_v is None else peak.lowest_v
+        dips = f"it dips to {show(lowest, 'V', digits=3)}" if lowest > 0 else "the path cannot carry it"
+        yield f"at its peak of {show(peak.current_a, 'A')} {dips}, as recorded"
 
 
 def _where(case: CircuitCase, point: LoadPoint) -> str:

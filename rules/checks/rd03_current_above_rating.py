@@ -2,9 +2,10 @@
 
 from collections.abc import Iterator
 
-from rules.assessment import Citation, Finding, Severity
+from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
+from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
@@ -22,13 +23,13 @@ from rules.units import show, show_against
     source=Citation("IEC 60364-4-43", "2008", "433.1: design current not above rated current", "from-memory"),
     limits=("decision", *DOUBTS_OF_READINGS),
 )
-def current_above_rating(case: CircuitCase) -> Iterator[Finding]:
+def current_above_rating(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    A clamp showed more than the device is rated for, beyond doubt.
+    A clamp showed more than the device is rated for.
 
     **Finds**: 12.4 A by a 1.5 % clamp behind a 10 A fuse.
 
-    **Leaves alone**: 10.1 A by the same clamp, which is within its doubt; a device of 0 A is refused earlier.
+    **Leaves alone**: 9.8 A by the same clamp. 10.1 A, whose doubt reaches over the rating, is not judged.
     """
     read = [
         (this, point, Figure(value, "A", u))
@@ -49,13 +50,19 @@ def current_above_rating(case: CircuitCase) -> Iterator[Finding]:
 
     # the reading that says most, not the largest: a poor meter's may be larger and say nothing
     this, point, amps = max(read, key=lambda item: (past(item[2]), abs(item[2].value)))
-    if past(amps) < case.limits["decision.beyond_doubt"]:
+    verdict = against_limit(abs(amps.value), rating, amps.u or 0.0, case.limits)
+    if verdict is Verdict.CONFORMS:
         return
     shown, limit = show_against(abs(amps.value), rating, "A")
     run = case.tree.ends.get(point)
+    where = f"{run.name if run else point}, round {this.name}"
+    if verdict is Verdict.OPEN:
+        why = f"not settled: {show(abs(amps.value), 'A', amps.u)} was read against the device's {limit}"
+        yield current_above_rating.gap(case, where, why)
+        return
     yield current_above_rating.finding(
         case,
-        f"{run.name if run else point}, round {this.name}",
+        where,
         f"{shown} was read ({show(abs(amps.value), 'A', amps.u)}), above the device's {limit}",
         numbers={"current": amps, "rating": Figure(rating, "A")},
     )

@@ -22,7 +22,7 @@ MEASURE_FIRST = "Measure the drop of each run at a known current;"
     remedy=f"{MEASURE_FIRST} then choose a larger size, a shorter way or a nearer board.",
     caution="Isolate and prove dead before touching a termination; local code and a licensed person decide. "
     "Computed for steady current and healthy joints; says nothing about inrush.",
-    source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation"),
+    source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation", "verified"),
     limits=("drop", "decision", *DOUBTS_OF_COMPUTED),
 )
 def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
@@ -51,7 +51,8 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         enough = _enough(case, worst)
         own = case.circuit.allowed_drop_percent is not None
         total_percent = case.limits["drop.allowed_total_percent"]
-        past_total = worst.total_drop_v / nominal > total_percent / 100
+        total_v = total_percent / 100 * nominal
+        past_total = against_limit(worst.total_drop_v, total_v, worst.total_drop_u, case.limits) is Verdict.FAILS
         yield drop_above_allowed.finding(
             case,
             worst.load.point,
@@ -66,7 +67,7 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             remedy=f"{MEASURE_FIRST} then {_would_do(enough, nominal)}, or choose a shorter way or a nearer board."
             if enough
             else None,
-            source="the circuit's own allowed drop" if own else case.limits.citation("drop"),
+            source="the circuit's own allowed drop" if own else case.limits.citation("drop", "allowed_percent"),
             consequences=(f"from the source it loses more than the {total_percent:g} % allowed in all",)
             if past_total and not worst.total_gap
             else (),

@@ -5,11 +5,14 @@ from collections.abc import Iterator
 
 from rules.assessment import Citation, Drop, Finding, NotJudged, Place, Severity
 from rules.calc.doubt import probability_above, total
-from rules.case import CircuitCase
+from rules.case import CircuitCase, LoadPoint
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHER_METAL, SEMICONDUCTOR, SMALLER
 from rules.errors import MissingData
+from rules.heat import DEVICE, accounted_v, joints_read
+from rules.joints import heat_at, most_read_a
 from rules.limits import Limits
 from rules.record import Figure
+from rules.rise import rises_of
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show
 from rules.verdict import (
@@ -36,8 +39,6 @@ REMEDIES = {
     SEMICONDUCTOR: "Look for a diode or an electronic switch at the start of {} and read the drop across it at two currents.",
 }
 """What to do next, by cause; the place goes into the braces."""
-NORMAL_95 = 1.96
-"""Standard deviations from the middle of a Gaussian to the bounds of its central 95 %."""
 ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it again at the same current."
 
 
@@ -50,8 +51,8 @@ ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it a
     caution="Millivolt readings across a closed joint become the full system voltage if it opens: start on auto volts. "
     "Do not tighten or open anything live; cut back and remake heated conductors when isolated. "
     "A cause is named by probability: look before replacing anything.",
-    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
-    limits=("decision", "heat", "prior", "bad_connection", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
+    limits=("decision", "heat", "prior", "bad_connection", "joint_scaling", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
@@ -71,6 +72,10 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     if case.unused:
         yield measured_above_computed.gap(case, "readings", f"read, but of no use here: {', '.join(case.unused)}")
+    for round_, lacks in case.drop.unfinished if case.drop is not None else ():
+        yield measured_above_computed.gap(
+            case, f"round {round_}", f"unfinished, so that one of less current stands for it: {lacks}"
+        )
     causes = case.diagnosis.causes if case.diagnosis is not None else ()
     claim = claimed(causes, case.limits)
     if case.drop is None and claim is None:
@@ -78,7 +83,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             raise MissingData(case.drop_gap)
         return
     if claim is None and not _beyond_doubt(case):
-        return
+        return  # also where a joint that HT01 finds by its reading alone accounts for it
     drop = case.drop
     along = f"{drop.start} to {drop.end}" if drop else "all runs"
     if claim is None and (slip := doubtful(causes)) is not None:
@@ -94,13 +99,15 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         )
         return
     heat = _heat(case, claim)
+    read = _heat_as_read(case, claim) if claim is not None and claim.cause == BAD_CONNECTION else None
+    heats = {name: figure for name, figure in (("heat", heat), ("heat as read", read)) if figure is not None}
     citation = f"{measured_above_computed.source}; {case.limits.citation('decision')}"
-    parts = [*_drop_words(drop), *([_claim_words(claim)] if claim else _open_words(causes)), *_remarks(case)]
+    parts = [*_drop_words(drop), *([_claim_words(case, claim)] if claim else _open_words(causes)), *_remarks(case)]
     yield measured_above_computed.finding(
         case,
         claim.where if claim and claim.where else along,
         "; ".join(parts),
-        numbers=_numbers(drop, claim) | ({"heat": heat} if heat is not None else {}),
+        numbers=_numbers(drop, claim) | heats | _at_worst(case, claim),
         severity=_severity(heat, case.limits),
         remedy=_remedy(claim),
         cause=claim.cause if claim else None,
@@ -113,8 +120,8 @@ def _beyond_doubt(case: CircuitCase) -> bool:
     """The excess is real, whatever it comes from; without a diagnosis by its doubt alone."""
     if case.drop is None:
         return False
-    excess = case.drop.too_much
-    if probability_above(excess.value, 0.0, excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
+    excess, joints_v = case.drop.too_much, accounted_v(case)
+    if probability_above(excess.value, joints_v, excess.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return False
     return case.diagnosis is None or case.diagnosis.probability(AS_RECORDED) < 0.5
 
@@ -126,7 +133,7 @@ def _heat(case: CircuitCase, claim: Claim | None) -> Figure | None:
         # at design, or at what was read where that is more: a load is not always recorded as it is
         read_a = abs(drop.current.value) if drop is not None else 0.0
         return max(
-            (_joint_heat(joint, _most_a(case, joint.point, read_a)) for joint in claim.joints),
+            (heat_at(joint, _most_a(case, joint.point, read_a)) for joint in claim.joints),
             key=lambda heat: heat.value,
         )
     if drop is None:
@@ -145,12 +152,6 @@ def _of_doubtful(case: CircuitCase) -> Severity:
     """That a slip explains it best does not make the heat less urgent, should it be there: it is to be read again soon."""
     heat = _heat(case, None)
     return Severity.SOON if heat is not None and heat.value >= case.limits["heat.soon_w"] else Severity.WATCH
-
-
-def _joint_heat(place: Place, current_a: float) -> Figure:
-    """Of a bad connection at a current; its doubt from the bounds of the resistance."""
-    low, best, high = place.low_ohm or 0.0, place.best_ohm or 0.0, place.high_ohm or 0.0
-    return Figure(best * current_a**2, "W", (high - low) / (2 * NORMAL_95) * current_a**2)
 
 
 def _severity(heat: Figure | None, limits: Limits) -> Severity:
@@ -177,14 +178,25 @@ def _open_words(causes: tuple[Place, ...]) -> Iterator[str]:
         yield "its cause is not settled: " + ", ".join(cause_words(row) for row in rows)
 
 
-def _claim_words(claim: Claim) -> str:
+def _claim_words(case: CircuitCase, claim: Claim) -> str:
     against = "".join(f", else {cause_words(row)}" for row in claim.against)
     if claim.cause in (SMALLER, OTHER_METAL, LONGER):
         rows = sorted([*claim.places, *claim.others], key=lambda place: -place.probability)
         return "the conductors are probably not as recorded: " + ", ".join(cause_words(row) for row in rows) + against
     said = f"probably a {claim.cause} in {claim.where} ({probability_words(claim.probability)})"
+    if claim.cause == SEMICONDUCTOR:
+        return f"{said}{_offset_words(case, claim)}{against}"
     ohms = " and ".join(filter(None, (_ohm_words(joint) for joint in claim.place.joints or (claim.place,))))
     return f"{said}: {ohms} extra{against}" if ohms else said + against
+
+
+def _offset_words(case: CircuitCase, claim: Claim) -> str:
+    """What a semiconductor loses whatever the current; empty where it is not known."""
+    branch = case.tree.ends.get(claim.place.point)
+    learned = case.diagnosis.of_branch(branch.id if branch else "") if case.diagnosis is not None else None
+    # a mean over all causes: of this one alone it is what is left when the others give none
+    volts = learned.offset_v / claim.probability if learned is not None else 0.0
+    return f": about {show(volts, 'V', digits=2)} whatever the current" if volts > 0 else ""
 
 
 def _ohm_words(joint: Place) -> str:
@@ -230,20 +242,82 @@ def _numbers(drop: Drop | None, claim: Claim | None) -> dict[str, Figure]:
 def _remedy(claim: Claim | None) -> str | None:
     if claim is None:
         return None
-    separated = claim.cause == BAD_CONNECTION and all(joint.where.count(" ") == 3 for joint in claim.joints)
+    separated = claim.cause == BAD_CONNECTION and all(_is_end(joint.where) for joint in claim.joints)
     several = len(claim.places) > 1
     return (ENDS_KNOWN if separated and not several else REMEDIES[claim.cause]).format(claim.where)
 
 
 def _consequences(case: CircuitCase, claim: Claim | None, heat: Figure | None) -> Iterator[str]:
     if heat is not None and claim is not None and claim.cause == BAD_CONNECTION:
-        yield f"at design current {show(heat.value, 'W', heat.u)} turn into heat in one place"
+        told = list(_as_read(case, claim))
+        read = None if told else _heat_as_read(case, claim)
+        as_read = "" if read is None else f", {show(read.value, 'W', read.u)} while it was read"
+        yield f"at design current {show(heat.value, 'W', heat.u)} turn into heat in one place{as_read}"
+        yield from told
     elif heat is not None:
         yield f"at this current {show(heat.value, 'W', heat.u)} turn into heat that the record does not explain"
+    if claim is not None and claim.cause == SEMICONDUCTOR:
+        yield "it passes current in one direction only: a battery behind it is not charged through it"
+    most = _most_affected(case) if claim is not None else None
     for point in case.loads:
         lowest, worst = point.load.lowest_voltage_v, case.worst.get(point.load.point)
-        if lowest is not None and worst is not None and worst.value < lowest <= point.lowest_v:
-            yield (
-                f"with the source at its lowest {point.load.tag} gets {show(worst.value, 'V', worst.u)}, below its "
-                f"lowest {show(lowest, 'V')}"
-            )
+        below = lowest is not None and worst is not None and worst.value < lowest <= point.lowest_v
+        if worst is None or not (below or point is most):
+            continue
+        gets = f"with the source at its lowest {point.load.tag} gets {show(worst.value, 'V', worst.u)}"
+        if below and lowest is not None:
+            gets += f", below its lowest {show(lowest, 'V')}"
+        if point.lowest_gap or math.isnan(point.source_lowest_v):
+            yield gets
+            continue
+        source_v = point.source_lowest_v
+        yield (
+            f"{gets}; of the source's {show(source_v, 'V')} {show(source_v - worst.value, 'V', worst.u)} are lost, as recorded "
+            f"{show(source_v - point.lowest_v, 'V', point.lowest_u)}, which leaves {show(point.lowest_v, 'V', point.lowest_u)}"
+        )
+
+
+def _heat_as_read(case: CircuitCase, claim: Claim) -> Figure | None:
+    """Of the bad connection with the most of it, at the most that it carried while it was read."""
+    heats = [
+        heat_at(joint, current_a) for joint in claim.joints if (current_a := most_read_a(case, joint.point)) is not None
+    ]
+    return max(heats, key=lambda heat: heat.value, default=None)
+
+
+def _most_affected(case: CircuitCase) -> LoadPoint | None:
+    """The load that gets so much less than recorded as no other; ``None`` where that is not known."""
+    known = [point for point in case.loads if point.load.point in case.worst and not point.lowest_gap]
+    return max(known, key=lambda point: point.lowest_v - case.worst[point.load.point].value, default=None)
+
+
+def _at_worst(case: CircuitCase, claim: Claim | None) -> dict[str, Figure]:
+    """Voltage at the load that is most affected with the source at its lowest, with and without the fault."""
+    most = _most_affected(case) if claim is not None else None
+    if most is None:
+        return {}
+    return {"at worst": case.worst[most.load.point], "at worst as recorded": Figure(most.lowest_v, "V", most.lowest_u)}
+
+
+def _as_read(case: CircuitCase, claim: Claim) -> Iterator[str]:
+    """What the joints of a claim show now: their watts as read, and their temperature."""
+    places = {place for joint in claim.joints for place in _places(joint.where)}
+    for joint in joints_read(case):
+        now = joint.now
+        if joint.place in places and now is not None and joint.current is not None:
+            amps = show(joint.current.value, "A", joint.current.u)
+            yield f"{show(now.value, 'W', now.u)} at the {amps} of round {joint.round}, read across {joint.place}"
+    for place, rise in rises_of(case).items():
+        if any(set(place.split()) <= set(where.split()) for where in places) and rise.rise.value > 0:
+            yield rise.words
+
+
+def _places(where: str) -> Iterator[str]:
+    """A place of the diagnosis as readings name it; its leg alone, or a whole run, is none."""
+    if _is_end(where) or where.startswith(DEVICE):
+        yield where
+
+
+def _is_end(where: str) -> bool:
+    """Whether a place is one termination, ``run 1 end positive``."""
+    return where.count(" ") == 3

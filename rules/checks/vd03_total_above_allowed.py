@@ -19,7 +19,7 @@ from rules.units import show, show_against
     remedy="See which feeder loses most; enlarge it, or move load to a nearer board.",
     caution="Isolate and prove dead before touching a termination; a battery cannot be switched off. Local code and a licensed "
     "person decide. Computed for all loads at their design value at once.",
-    source=Citation("NFPA 70", "2023", "informational notes to 210.19 and 215.2: a recommendation"),
+    source=Citation("NFPA 70", "2023", "informational notes to 210.19 and 215.2: a recommendation", "verified"),
     limits=("drop", "decision", *DOUBTS_OF_COMPUTED),
 )
 def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
@@ -58,7 +58,7 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "allowed": Figure(allowed, "1"),
                 "nominal": Figure(nominal, "V"),
             },
-            source=case.limits.citation("drop"),
+            source=case.limits.citation("drop", "allowed_total_percent"),
         )
     elif worst.total_gap:
         yield total_above_allowed.gap(case, worst.load.point, worst.total_gap)

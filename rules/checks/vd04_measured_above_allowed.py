@@ -19,7 +19,7 @@ from rules.units import show, show_against
     remedy="See what draws the current that was read; then compare with what the record computes, and enlarge or repair the path.",
     caution="Isolate and prove dead before touching a termination; local code and a licensed person decide. "
     "Holds for the current that was read: at another load the drop is another.",
-    source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation"),
+    source=Citation("NFPA 70", "2023", "informational note to 210.19: a recommendation", "verified"),
     limits=("drop", "decision", *DOUBTS_OF_READINGS),
 )
 def measured_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
@@ -56,7 +56,8 @@ def measured_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "current": drop.current,
                 "nominal": Figure(nominal, "V"),
             },
-            source="the circuit's own allowed drop" if own else case.limits.citation("drop"),
+            source="the circuit's own allowed drop" if own else case.limits.citation("drop", "allowed_percent"),
+            without=("drop",) if own else (),
         )
     elif verdict is Verdict.OPEN:
         yield measured_above_allowed.gap(case, where, f"not settled: {read}")

@@ -18,7 +18,7 @@ from rules.verdict import beyond_common, cause_words, common_words, doubtful
     remedy="Check the length (out and back entered as one way, feet as metres), the size, and the clamp's place; then read again.",
     caution="A second path for the current reads the same way: another supply, a parallel cable or the building's metal may keep a "
     "circuit live, or carry its current, when its device is open.",
-    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
+    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
     limits=("decision", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:

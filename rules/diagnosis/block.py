@@ -10,6 +10,8 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, fields, replace
+from itertools import chain
+from operator import attrgetter
 
 import numpy as np
 
@@ -84,12 +86,9 @@ class Block:
 def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
     """Stack problems of one shape."""
 
-    def column(name: str) -> Floats:
-        return np.array([getattr(problem, name) for problem in problems], dtype=float)
-
     size, branches = len(problems), len(shape.signature.branches)
-    value, variance, gain_u = column("value"), column("variance"), column("gain_u")
-    amps, error = column("amps"), column("error_a")
+    value, variance, gain_u, amps, error, *of_currents = _flat(problems)
+    reading_a, reading_u, reading_gain_u = of_currents
     columns = shape.signature.common
     common = [problem.common for problem in problems if problem.common is not None]
 
@@ -111,7 +110,7 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
     amps_u = np.zeros_like(amps)
     for entry, slot in enumerate(shape.error_slot):
         amps_u[:, slot] += error[:, entry] ** 2
-    numbers = np.array([problem.branches for problem in problems], dtype=float)
+    numbers, alternatives = _of_branches(problems)
     at = {name: place for place, name in enumerate(Branch._fields)}
 
     def of_branches(name: str) -> Floats:
@@ -127,7 +126,7 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
     if columns:
         factor = np.repeat(1 + of_common("ohm"), 2, axis=1)
         ohm, slope = ohm * factor, slope * factor
-    other = column("alternatives").reshape(size, branches, -1, 2).transpose(0, 2, 1, 3).reshape(size, -1, 2 * branches)
+    other = alternatives.reshape(size, branches, -1, 2).transpose(0, 2, 1, 3).reshape(size, -1, 2 * branches)
     poles = ohm @ shape.pole_of.T
     terminations_u = np.sqrt(of_legs("joint_variance") @ shape.termination_of.T)
     others_u = np.concatenate([terminations_u, limits["device_doubt.relative"] * poles], axis=1)
@@ -166,16 +165,39 @@ def stacked(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Block:
         possible=np.where(runs.any(), (other.reshape(size, -1, branches, 2)[:, :, runs] > 0).all(axis=(2, 3)), 0.0),
         extra_scale=of_branches("extra_scale"),
         hot_ohm=of_branches("hot_ohm"),
-        nominal_v=column("nominal_v"),
-        reading_a=column("reading_a"),
-        reading_u=column("reading_u"),
-        reading_gain_u=column("reading_gain_u"),
+        nominal_v=np.array([problem.nominal_v for problem in problems], dtype=float),
+        reading_a=reading_a,
+        reading_u=reading_u,
+        reading_gain_u=reading_gain_u,
         counts=counts,
         own=own,
         common_rows=common_rows,
         common_fixed=common_fixed,
         common_ohm=common_ohm,
     )
+
+
+_FLAT = attrgetter("value", "variance", "gain_u", "amps", "error_a", "reading_a", "reading_u", "reading_gain_u")
+_BY_BRANCH = attrgetter("branches", "alternatives")
+
+
+def _flat(problems: Sequence[Problem]) -> list[Floats]:
+    """The fields of ``_FLAT``, each (b, …): read one by one, which is quicker than tuple by tuple."""
+    every = np.fromiter(chain.from_iterable(chain.from_iterable(map(_FLAT, problems))), dtype=float)
+    widths = [len(field) for field in _FLAT(problems[0])]
+    return np.split(every.reshape(len(problems), -1), np.cumsum(widths)[:-1], axis=1)
+
+
+def _of_branches(problems: Sequence[Problem]) -> list[Floats]:
+    """The fields of ``_BY_BRANCH``, each (b, branches, …)."""
+    by_branch = chain.from_iterable(chain.from_iterable(map(_BY_BRANCH, problems)))
+    every = np.fromiter(chain.from_iterable(by_branch), dtype=float).reshape(len(problems), -1)
+    first, second = _BY_BRANCH(problems[0])
+    split = len(first) * len(first[0])
+    return [
+        every[:, :split].reshape(len(problems), len(first), -1),
+        every[:, split:].reshape(len(problems), len(second), -1),
+    ]
 
 
 def _others_covariance(shape: Shape, carried: Floats, others_u: Floats) -> Floats:

@@ -129,7 +129,7 @@ def _along_factor(block: Block, recorded: Model, factors: Floats) -> Floats:
         recorded.conductor_own[:, 0] + conductor_shared @ np.swapaxes(conductor_shared, 1, 2),
     )
     residual = block.shown - recorded.mean[:, 0]
-    vector = (residual, -recorded.conductor_mean[:, 0], np.zeros_like(residual))
+    vector = (residual, -recorded.conductor_mean[:, 0])
     log_scale, quadratic = along(factors, matrix, vector)
     return -0.5 * (quadratic + log_scale + block.shape.rows * LOG_2PI)
 

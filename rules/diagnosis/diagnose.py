@@ -10,7 +10,6 @@ import gc
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
-from operator import attrgetter
 from typing import NamedTuple
 
 import numpy as np
@@ -25,7 +24,8 @@ from rules.diagnosis.shape import Shape, place_words, shape_of
 from rules.diagnosis.words import what_words
 from rules.limits import Limits
 
-PROBABILITY = attrgetter("probability")
+OTHERS = tuple(cause for cause in CAUSES if cause not in (BAD_CONNECTION, SEMICONDUCTOR))
+"""Causes that have no place."""
 LEAST = 1e-12
 """Probability that the sum of all would not feel: such a row is left out."""
 TOLD = 0.01
@@ -97,38 +97,44 @@ def _collector_paused() -> Iterator[None]:
 def results(judged: Judged, problems: list[Problem]) -> list[Diagnosis]:
     """One diagnosis for each problem of a judged batch."""
     shape = judged.block.shape
-    others = [cause for cause in CAUSES if cause not in (BAD_CONNECTION, SEMICONDUCTOR)]
-    members = [judged.of_cause(cause) for cause in others]
-    sums = np.stack([judged.posterior[:, numbers].sum(axis=1) for numbers in members], axis=-1).tolist()
+    members = [judged.of_cause(cause) for cause in OTHERS]
     best = np.stack([np.array(ns)[judged.posterior[:, ns].argmax(axis=1)] for ns in members], axis=-1).tolist()
-    offsets = judged.posterior[:, judged.of_cause(SEMICONDUCTOR)].tolist()
+    posterior = np.concatenate(
+        [
+            judged.of_places,
+            judged.posterior[:, judged.of_cause(SEMICONDUCTOR)],
+            *(judged.posterior[:, numbers].sum(axis=1, keepdims=True) for numbers in members),
+            judged.of_pair[:, None],
+        ],
+        axis=1,
+    )
+    order = np.argsort(-posterior, axis=1, kind="stable").tolist()
+    shown, probabilities = (posterior > LEAST).sum(axis=1).tolist(), posterior.tolist()
+    offsets = len(shape.places)
+    others, both = offsets + len(shape.offsets), posterior.shape[1] - 1
     evidence, singles, doubles = judged.log_evidence.tolist(), _single(judged), _double(judged)
     figures, pairs_learned = learned(judged), together(judged, problems)
     words: dict[tuple[str, ...], Words] = {}
     found = []
     for number, problem in enumerate(problems):
         said = words.get(problem.names) or words.setdefault(problem.names, Words.of(shape, problem.names))
-        ends = [problem.ends[place.branch] for place in shape.places]
-        rows = [
-            Place(BAD_CONNECTION, said.places[n], p, low, middle, high, heat=heat, point=ends[n])
-            for n, (p, low, middle, high, heat) in enumerate(singles[number])
-            if p > LEAST
-        ]
-        rows += [
-            Place(SEMICONDUCTOR, said.offsets[n], p, point=problem.ends[shape.offset_branch(n)])
-            for n, p in enumerate(offsets[number])
-            if p > LEAST
-        ]
-        rows += [
-            Place(cause, "", p, what=what_words(judged, number, which, problem) if p >= TOLD else "")
-            for cause, p, which in zip(others, sums[number], best[number], strict=True)
-            if p > LEAST
-        ]
-        if doubles and doubles[number].probability > LEAST:
-            rows.append(_both(doubles[number], said, ends))
-        rows.sort(key=PROBABILITY, reverse=True)
-        branches = tuple(map(tuple, figures[number]))
-        found.append(Diagnosis(tuple(rows), problem.run_ids, branches, pairs_learned[number], evidence[number]))
+        rows = []
+        for column in order[number][: shown[number]]:
+            p = probabilities[number][column]
+            if column < offsets:
+                end = problem.ends[shape.places[column].branch]
+                low, middle, high, heat = singles[number][column]
+                rows.append(Place(BAD_CONNECTION, said.places[column], p, low, middle, high, heat, "", end))
+            elif column < others:
+                end = problem.ends[shape.offset_branch(column - offsets)]
+                rows.append(Place(SEMICONDUCTOR, said.offsets[column - offsets], p, point=end))
+            elif column < both:
+                which = best[number][column - others]
+                what = what_words(judged, number, which, problem) if p >= TOLD else ""
+                rows.append(Place(OTHERS[column - others], "", p, what=what))
+            else:
+                rows.append(_both(doubles[number], said, [problem.ends[place.branch] for place in shape.places]))
+        found.append(Diagnosis(tuple(rows), problem.run_ids, figures[number], pairs_learned[number], evidence[number]))
     return found
 
 
@@ -148,17 +154,17 @@ class Words:
 
 
 def _single(judged: Judged) -> list[list[list[float]]]:
-    """For each problem and place: probability, bounds and median of the extra resistance, probability of it being hot."""
-    shape, count = judged.block.shape, len(judged.block.shape.places)
-    cumulative = judged.density.cumulative()
-    edges = cumulative.quantiles((1 - COVERED) / 2, 0.5, (1 + COVERED) / 2)
-    sizes = [np.exp(edge[:, :count]) for edge in edges]
+    """For each problem and place that is shown: bounds and median of the extra resistance, probability of it being hot."""
+    shape, of_places = judged.block.shape, judged.of_places
+    shown = of_places > LEAST
+    cumulative = judged.density[:, : len(shape.places)][shown].cumulative()
     with np.errstate(divide="ignore"):
-        hot = np.log(judged.block.hot_ohm[:, [place.branch for place in shape.places]])
-    edge = np.concatenate([hot, np.full((len(hot), len(shape.offsets)), np.inf)], axis=1)
-    heat = judged.of_places * cumulative.above(edge)[:, :count]
-    said: list[list[list[float]]] = np.stack([judged.of_places, *sizes, heat], axis=-1).tolist()
-    return said
+        hot = np.log(judged.block.hot_ohm[:, [place.branch for place in shape.places]][shown])
+    edges = cumulative.quantiles((1 - COVERED) / 2, 0.5, (1 + COVERED) / 2)
+    said = np.zeros((*shown.shape, 4))
+    said[shown] = np.stack([*np.exp(edges), of_places[shown] * cumulative.above(hot)], axis=-1)
+    figures: list[list[list[float]]] = said.tolist()
+    return figures
 
 
 class Double(NamedTuple):

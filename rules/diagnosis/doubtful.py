@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from rules.diagnosis.block import Block, Model, model_of
-from rules.diagnosis.gaussian import LOG_2PI, cholesky, forward, log_density, log_determinant
+from rules.diagnosis.gaussian import LOG_2PI, Whitener, log_density, whitener
 from rules.diagnosis.hypotheses import DOUBTFUL, Hypotheses, Hypothesis
 from rules.diagnosis.shape import Floats
 
@@ -31,6 +31,7 @@ RATIOS = {
 """What was meant over what was entered, and how it comes about."""
 NEAR = 0.02
 """How closely, relative, such a slip is taken to give the value."""
+_RATIOS = np.array(list(RATIOS))
 
 ONE_READING, CURRENT_READING = "one_reading", "one_current"
 SWAPPED, REVERSED, SEVERAL = "swapped_points", "clamp_reversed", "several_things"
@@ -45,7 +46,7 @@ class Slips:
     """(b, readings): what was meant less what was entered; observations first, then current readings."""
 
 
-def slips(block: Block, recorded: Model) -> Slips:
+def slips(block: Block, recorded: Model, white: Whitener) -> Slips:
     """
     Evidence of every slip.
 
@@ -53,20 +54,19 @@ def slips(block: Block, recorded: Model) -> Slips:
     ----------
     recorded : Model
         With everything as recorded: (b, 1, …).
+    white : Whitener
+        Of its covariance: (b, …).
     """
     shape, limits = block.shape, block.limits
     covariance, own = recorded.covariance[:, 0], shape.signature.current_readings
     residual, observations, currents, swapped, turned = rows_of_slips(block, recorded)
     right = [residual[..., None], observations, currents, swapped + residual[..., None], turned[..., None]]
-    lower = cholesky(covariance)
-    white = forward(lower, np.concatenate(right, axis=-1))
-    scale = -0.5 * (log_determinant(lower) + shape.rows * LOG_2PI)
-    base, readings = white[:, :, 0], observations.shape[-1] + currents.shape[-1]
+    whitened, scale = white.inverse @ np.concatenate(right, axis=-1), white.log_scale
+    base, readings = whitened[:, :, 0], observations.shape[-1] + currents.shape[-1]
     entered = np.concatenate([block.value[:, shape.read], block.reading_a], axis=1)
-    given = np.array([0.0] * len(shape.read) + [1.0] * len(own))
-    evidence, off = _off(base, white[:, :, 1 : 1 + readings], scale, entered, typed_off(block), given)
+    evidence, off = _off(base, whitened[:, :, 1 : 1 + readings], scale, entered, typed_off(block), len(shape.read))
     evidence, off = _looked_at_again(block, recorded, currents, evidence, off)
-    others = scale[:, None] - 0.5 * (white[:, :, 1 + readings :] ** 2).sum(axis=1)
+    others = scale[:, None] - 0.5 * (whitened[:, :, 1 + readings :] ** 2).sum(axis=1)
     several = covariance + np.eye(shape.rows) * several_off(block)[:, :, None] ** 2
     found = np.concatenate([evidence, others, log_density(residual, several)[:, None]], axis=1)
     names = [Hypothesis(DOUBTFUL, ONE_READING, (int(number),)) for number in shape.read]
@@ -124,23 +124,27 @@ def several_off(block: Block) -> Floats:
 
 
 def _off(
-    base: Floats, directions: Floats, scale: Floats, entered: Floats, typed: Floats, given: Floats
+    base: Floats, directions: Floats, scale: Floats, entered: Floats, typed: Floats, observations: int
 ) -> tuple[Floats, Floats]:
     """
     Log evidence of a shift along each direction, and its best size.
 
     The Gaussian's integral over the shift is exact; the Cauchy density is taken at the best size, since a
-    meter's counts are far narrower.
+    meter's counts are far narrower. The observations come first, the current readings behind them.
     """
-    within = (base[..., None] * directions).sum(axis=1)
-    square = np.maximum((directions**2).sum(axis=1), 1e-300)
+    within = np.einsum("bn,bnr->br", base, directions)
+    square = np.maximum(np.einsum("bnr,bnr->br", directions, directions), 1e-300)
     off = within / square
     recorded = scale - 0.5 * (base**2).sum(axis=1)
     gained = 0.5 * within * off + 0.5 * (LOG_2PI - np.log(square))
-    return recorded[:, None] + gained + np.log(slip_density(entered, off, 1 / square, typed, given)), off
+    density = [
+        slip_density(entered[:, some], off[:, some], 1 / square[:, some], typed[:, some], given)
+        for some, given in ((slice(None, observations), False), (slice(observations, None), True))
+    ]
+    return recorded[:, None] + gained + np.log(np.concatenate(density, axis=1)), off
 
 
-def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats, given: Floats) -> Floats:
+def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats, given: bool) -> Floats:
     """
     Density of a mistake that takes one value for another.
 
@@ -154,24 +158,27 @@ def slip_density(entered: Floats, off: Floats, variance: Floats, typed: Floats, 
         Of ``off``.
     typed : array
         Within how much half of all mistyped readings are.
-    given : array
-        0 for a voltage or resistance, which the record predicts: the density is over what might have been entered.
-        1 for a current, which the record does not predict: it is over what might have been meant.
+    given : bool
+        False for a voltage or resistance, which the record predicts: the density is over what might have been entered.
+        True for a current, which the record does not predict: it is over what might have been meant.
 
     Returns
     -------
     array
         Half of it over any distance, half about the slips of ``RATIOS``; it integrates to one.
     """
+    if given:
+        centre = entered[..., None] * _RATIOS
+        width = np.sqrt((NEAR * centre) ** 2 + variance[..., None])
+        about = (np.exp(-0.5 * (((entered + off)[..., None] - centre) / width) ** 2) / width).mean(axis=-1)
+    else:
+        # both value and width over the ratio: the exponent is the same times the ratio, with one width for all
+        meant = entered + off
+        width = np.sqrt((NEAR * meant) ** 2 + variance)
+        apart = (entered / width)[..., None] * _RATIOS - (meant / width)[..., None]
+        about = np.exp(-0.5 * apart**2) @ np.abs(_RATIOS) / (len(RATIOS) * width)
     anything = 1 / (math.pi * typed * (1 + (off / typed) ** 2))
-    ratios = np.array(list(RATIOS))
-    meant, entered, given = (entered + off)[..., None], entered[..., None], given[..., None]
-    centre = np.where(given > 0, entered * ratios, meant / ratios)
-    spread = np.where(given > 0, variance[..., None], variance[..., None] / ratios**2)
-    width = np.sqrt((NEAR * centre) ** 2 + spread)
-    apart = (np.where(given > 0, meant, entered) - centre) / width
-    about = (np.exp(-0.5 * apart**2) / (width * math.sqrt(2 * math.pi))).mean(axis=-1)
-    density: Floats = (anything + about) / 2
+    density: Floats = (anything + about / math.sqrt(2 * math.pi)) / 2
     return density
 
 
@@ -192,17 +199,20 @@ def _looked_at_again(
     carried[:, 0] += moved[:, None, None] * one
     carried[rows, 1 + reads[:, 1]] += (moved * block.reading_gain_u[rows, best])[:, None, None] * one
     again = model_of(block, block.conductor[:, None], block.conductor_slope[:, None], carried)
-    lower = cholesky(again.covariance[:, 0])
-    right = np.stack([block.shown - again.whole_mean[:, 0], currents[rows, :, best]], axis=-1)
-    white = forward(lower, right)
-    scale = -0.5 * (log_determinant(lower) + block.shape.rows * LOG_2PI)
+    of_again = whitener(again.covariance[:, 0])
+    white = of_again.inverse @ np.stack([block.shown - again.whole_mean[:, 0], currents[rows, :, best]], axis=-1)
     typed = typed_off(block)[rows, start + best]
     within = (white[:, :, 0] * white[:, :, 1]).sum(axis=1)
     square = np.maximum((white[:, :, 1] ** 2).sum(axis=1), 1e-300)
     further = within / square
     total = moved + further
-    new = scale - 0.5 * (white[:, :, 0] ** 2).sum(axis=1) + 0.5 * within * further + 0.5 * (LOG_2PI - np.log(square))
-    new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed, np.ones(len(block))))
+    new = (
+        of_again.log_scale
+        - 0.5 * (white[:, :, 0] ** 2).sum(axis=1)
+        + 0.5 * within * further
+        + 0.5 * (LOG_2PI - np.log(square))
+    )
+    new += np.log(slip_density(block.reading_a[rows, best], total, 1 / square, typed, given=True))
     evidence, off = evidence.copy(), off.copy()
     evidence[rows, start + best], off[rows, start + best] = new, total
     return evidence, off

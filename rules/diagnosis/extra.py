@@ -1,9 +1,16 @@
 """
 Causes that add to the rows in one place: a bad connection (a resistance) and a semiconductor (a voltage).
 
-Along its size the mean moves in a straight line, and the covariance through a few columns alone: the gains of
-the rows that it touches, and the doubts of the currents through it. What does not change is factored once a
-place; then each size costs a handful of scalars (Woodbury's identity on those columns).
+Along its size only the rows that its path holds move: their mean in a straight line, their covariance through the
+gains and sources of current that act on them. The Gaussian of all other rows never changes, so that the evidence at
+each size is that of the few rows t that move, given the others u. With everything as recorded let ``r`` be the
+residual, ``A`` the columns that move and ``Q`` the inverse of the covariance; a size ``x`` moves the mean by ``x w``
+and the columns by ``x B``. With ``V = Q_tt⁻¹``, ``c = V (Q r)_t`` and ``J = (Q A)_t Bᵀ``
+
+    given u, row t is a Gaussian of mean ``x (w + B (AᵀQ r - (Q A)_tᵀ c)) - c`` about what was read and of covariance
+    ``V + x (V J + JᵀV) + x² (B (I - AᵀQ A) Bᵀ + JᵀV J)``:
+
+one factorisation serves all places. Where a place moves more rows than it has columns, a few sums of rows stand for them.
 """
 
 from __future__ import annotations
@@ -14,140 +21,132 @@ from dataclasses import dataclass
 import numpy as np
 
 from rules.diagnosis.block import Block, Model
-from rules.diagnosis.gaussian import LOG_2PI, along, cholesky, forward, log_determinant
+from rules.diagnosis.gaussian import Whitener, along
 from rules.diagnosis.quadrature import Density, integrated
-from rules.diagnosis.shape import Floats, Integers, Shape
+from rules.diagnosis.shape import Floats, Integers
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Line:
-    """
-    Rows along the size of an extra, in scalars: arrays (k, …) of inner products under the inverse of the covariance
-    that does not change, with p columns that do. There are k = b times places.
-    """
+    """What was read along the sizes of extras, places of a bad connection before those of a semiconductor: k in all."""
 
-    logarithmic: Floats
-    """(k,): 1 where the coordinate is the logarithm of the size, 0 where it is the size."""
+    logarithmic: int
+    """How many of them have the logarithm of the size as their coordinate: the first; the others the size."""
     constant: Floats
-    """(k,): log density but for what follows."""
-    rr: Floats
-    rw: Floats
-    ww: Floats
-    """(k,): of residual and direction."""
-    aa: Floats
-    ab: Floats
-    bb: Floats
-    """(k, p, p): of the columns, ``a + size b``; ``ab`` is symmetric already."""
-    ar: Floats
-    aw: Floats
-    br: Floats
-    bw: Floats
-    """(k, p)"""
+    """(k,): log density but for the rows that move."""
+    matrix: tuple[Floats, Floats, Floats]
+    """(k, m, m): covariance of the rows that move; what stands before 1, size and size²."""
+    vector: tuple[Floats, Floats]
+    """(k, m): their residual; what stands before 1 and size."""
 
     def log_density(self, coordinate: Floats, which: Integers) -> Floats:
-        """Log density of the rows (…, nodes) at coordinates of the size of some of the extras."""
-        logarithmic = self.logarithmic[which, None] > 0
-        size = np.where(logarithmic, np.exp(np.where(logarithmic, coordinate, 0.0)), coordinate)
-        identity = np.eye(self.ar.shape[-1])
-        matrix = (self.aa[which] + identity, self.ab[which], self.bb[which])
-        vector = (self.ar[which], self.br[which] - self.aw[which], -self.bw[which])
-        log_scale, taken_up = along(size, matrix, vector)
-        quadratic = self.rr[which, None] + size * (size * self.ww[which, None] - 2 * self.rw[which, None])
-        return self.constant[which, None] - 0.5 * (quadratic - taken_up + log_scale)
+        """Log density of the rows (…, nodes) at coordinates of the size of some of the extras, given in order."""
+        logarithmic = int(np.searchsorted(which, self.logarithmic))
+        size = np.concatenate([np.exp(coordinate[:logarithmic]), coordinate[logarithmic:]])
+        log_scale, quadratic = along(size, [m[which] for m in self.matrix], [v[which] for v in self.vector])
+        log_scale += quadratic
+        log_scale *= -0.5
+        log_scale += self.constant[which, None]
+        return log_scale
 
 
-def moved(block: Block) -> tuple[Floats, Floats]:
+def moved(block: Block, rows: Integers) -> tuple[Floats, Floats]:
     """
     What a unit of each extra adds: the places of a bad connection, then those of a semiconductor.
+
+    Parameters
+    ----------
+    rows : array (places and offsets, m)
+        The rows that are asked for.
 
     Returns
     -------
     tuple of arrays
-        To the rows' means (b, places, n), and to the columns of their shared doubts (b, places, gains + s, n).
+        To the rows' means (b, places and offsets, m), and to the columns of their shared doubts (b, places and
+        offsets, gains + s, m).
     """
-    shape = block.shape
+    shape, count = block.shape, len(block.shape.places)
     sense = np.where(np.abs(block.amps) > 2 * block.amps_u, np.sign(block.amps), 0.0)
     sense = np.concatenate([sense, np.zeros((len(block), 1))], axis=1)  # slot -1: it does not enter
-    offsets = shape.offset_rows * sense[:, shape.offset_slot]
-    through = block.carried[..., shape.place_element]
-    direction = np.concatenate([through[:, 0].transpose(0, 2, 1), offsets], axis=1)
-    gains = block.gain_u[:, None, :, None] * shape.gain_rows * direction[:, :, None]
-    sources = np.zeros((*direction.shape[:2], shape.signature.sources, shape.rows))
-    sources[:, : len(shape.places)] = through[:, 1:].transpose(0, 3, 1, 2)
+    of_offsets = rows[count:]
+    offsets = np.take_along_axis(shape.offset_rows, of_offsets, axis=1)
+    offsets = offsets * sense[:, np.take_along_axis(shape.offset_slot, of_offsets, axis=1)]
+    through = block.carried[:, :, rows[:count], shape.place_element[:, None]].transpose(0, 2, 1, 3)
+    direction = np.concatenate([through[:, :, 0], offsets], axis=1)
+    gains = block.gain_u[:, None, :, None] * shape.gain_rows[:, rows].transpose(1, 0, 2) * direction[:, :, None]
+    sources = np.zeros((*direction.shape[:2], shape.signature.sources, rows.shape[1]))
+    sources[:, :count] = through[:, :, 1:]
     if shape.signature.common:
-        sources[:, :, -shape.signature.common :] += block.common_rows[:, None] * direction[:, :, None]
+        common = block.common_rows[:, :, rows].transpose(0, 2, 1, 3)
+        sources[:, :, -shape.signature.common :] += common * direction[:, :, None]
     return direction, np.concatenate([gains, sources], axis=2)
 
 
-def line_of(block: Block, recorded: Model) -> Line:
+def moved_everywhere(block: Block) -> tuple[Floats, Floats]:
+    """What a unit of each extra adds to all rows, as ``moved``."""
+    shape = block.shape
+    return moved(block, np.broadcast_to(np.arange(shape.rows), (len(shape.places) + len(shape.offsets), shape.rows)))
+
+
+def line_of(block: Block, recorded: Model, white: Whitener) -> Line:
     """
-    The places of a bad connection, then those of a semiconductor.
+    The line of each place of a bad connection, then of a semiconductor, of all problems.
 
     Parameters
     ----------
     recorded : Model
         With everything as recorded: (b, 1, …).
+    white : Whitener
+        Of its covariance: (b, …).
     """
     shape = block.shape
-    direction, moving = moved(block)
-    touched = _touched(shape)
-    shared = recorded.whole_shared[:, 0]
-    fixed = shared[:, None] * (1 - touched)[:, None]
-    covariance = recorded.whole_own + fixed @ np.swapaxes(fixed, -1, -2)
-    chosen, used = _columns(shape, touched)
-    most = chosen.shape[1]
-    places = np.arange(len(touched))[:, None]
-    a = np.swapaxes(shared[:, :, chosen], 1, 2) * used[:, None, :]
-    b = np.swapaxes(moving[:, places, chosen], -1, -2) * used[:, None, :]
-    if shape.one_gain >= 0:
-        # the gains of the one voltmeter and the one clamp act alike: one column, the first, stands for both
-        count = len(shape.places)
-        both = np.hypot(block.gain_u, block.reading_gain_u[:, :1])[:, :, None] * used[:count, :1]
-        a[:, :count, :, 0] = recorded.whole_mean * both
-        b[:, :count, :, 0] = direction[:, :count] * both
-    residual = np.broadcast_to((block.shown - recorded.whole_mean[:, 0])[:, None], direction.shape)
-    right = np.concatenate([residual[..., None], direction[..., None], a, b], axis=-1)
-    lower = cholesky(covariance)
-    white = forward(lower, right)
-    gram = np.swapaxes(white, -1, -2) @ white
-    first, second = slice(2, 2 + most), slice(2 + most, 2 + 2 * most)
-    gram = gram.reshape(-1, *gram.shape[2:])
-    mixed = gram[..., first, second]
+    rows, columns = shape.moved_rows, shape.moving_columns
+    places = np.arange(len(rows))[:, None]
+    direction, moving = moved(block, rows)
+    moving = np.swapaxes(moving[:, places, columns], -1, -2)
+    shared, precision = recorded.whole_shared[:, 0], white.precision
+    residual = block.shown - recorded.whole_mean[:, 0]
+    pull, held = precision @ residual[..., None], precision @ shared
+    square = (np.swapaxes(shared, -1, -2) @ held)[:, columns[:, :, None], columns[:, None, :]]
+    pulled = (np.swapaxes(shared, -1, -2) @ pull)[:, columns, 0]
+    held = held[:, :, columns].transpose(0, 2, 1, 3)
+    if rows.shape[1] > 1 + columns.shape[1]:
+        # the rows move only within the span of the direction and the columns
+        whole = _whole(np.concatenate([direction[..., None], moving], axis=-1), rows, shape.rows)
+        basis = np.swapaxes(np.linalg.qr(whole).Q, -1, -2)
+        of_rows = np.take_along_axis(basis, rows[None, :, None, :], axis=-1)
+        direction, moving = (of_rows @ direction[..., None])[..., 0], of_rows @ moving
+        pull_t, held_t = basis @ pull[:, None], basis @ held
+        inner = basis @ precision[:, None] @ np.swapaxes(basis, -1, -2)
+    else:
+        pull_t, held_t = pull[:, rows], held[:, places, rows]
+        inner = precision[:, rows[:, :, None], rows[:, None, :]]
+    spread = np.linalg.inv(inner) if inner.shape[-1] > 1 else 1 / inner
+    centre = spread @ pull_t
+    slope = moving @ (pulled[..., None] - np.swapaxes(held_t, -1, -2) @ centre)
+    crossed = held_t @ np.swapaxes(moving, -1, -2)
+    linear = spread @ crossed
+    square = (moving - moving @ square) @ np.swapaxes(moving, -1, -2) + np.swapaxes(crossed, -1, -2) @ linear
+    of_moved = (centre * pull_t).sum(axis=(-2, -1)) - np.linalg.slogdet(inner)[1]
+    constant = white.log_density(residual)[:, None] + 0.5 * of_moved
+
+    def of_all(array: Floats) -> Floats:
+        """Of all problems by place: (k, …)."""
+        return np.swapaxes(array, 0, 1).reshape(array.shape[0] * array.shape[1], *array.shape[2:])
+
     return Line(
-        logarithmic=np.tile([1.0] * len(shape.places) + [0.0] * len(shape.offsets), len(block)),
-        constant=-0.5 * (log_determinant(lower).ravel() + shape.rows * LOG_2PI),
-        rr=gram[..., 0, 0],
-        rw=gram[..., 0, 1],
-        ww=gram[..., 1, 1],
-        aa=gram[..., first, first],
-        ab=mixed + np.swapaxes(mixed, -1, -2),
-        bb=gram[..., second, second],
-        ar=gram[..., first, 0],
-        aw=gram[..., first, 1],
-        br=gram[..., second, 0],
-        bw=gram[..., second, 1],
+        logarithmic=len(block) * len(shape.places),
+        constant=of_all(constant),
+        matrix=(of_all(spread), of_all(linear + np.swapaxes(linear, -1, -2)), of_all(square)),
+        vector=(of_all(centre[..., 0]), of_all(-direction - slope[..., 0])),
     )
 
 
-def _touched(shape: Shape) -> Floats:
-    """(places, gains + s): 1 where a place moves the column of a gain or source."""
-    of_places = np.concatenate([shape.place_gains, shape.place_sources], axis=1)
-    of_offsets = np.concatenate(
-        [shape.offset_gains, np.zeros((len(shape.offsets), shape.signature.sources), dtype=bool)], axis=1
-    )
-    touched = np.concatenate([of_places, of_offsets])
-    touched[:, touched.shape[1] - shape.signature.common :] = True  # a column may move any row
-    return touched.astype(float)
-
-
-def _columns(shape: Shape, touched: Floats) -> tuple[Integers, Floats]:
-    """Of each place: which columns move along its size, and 1 where one does (places, p)."""
-    kept = touched.copy()
-    if shape.one_gain >= 0:
-        kept[: len(shape.places), shape.signature.gains + shape.one_gain] = 0.0
-    order = np.argsort(-kept, axis=1, kind="stable")
-    most = int(kept.sum(axis=1).max(initial=0))
-    return order[:, :most], np.take_along_axis(kept, order, axis=1)[:, :most]
+def _whole(moving: Floats, rows: Integers, count: int) -> Floats:
+    """Columns of the rows that move (b, places, m, q) as columns of all rows (b, places, n, q)."""
+    whole = np.zeros((*moving.shape[:2], count, moving.shape[-1]))
+    whole[:, np.arange(len(rows))[:, None], rows] = moving
+    return whole
 
 
 def ranges(block: Block) -> tuple[Floats, Floats]:
@@ -160,8 +159,9 @@ def ranges(block: Block) -> tuple[Floats, Floats]:
     return np.concatenate(low, axis=1), np.concatenate(high, axis=1)
 
 
-def extras(block: Block, recorded: Model) -> tuple[Line, Density]:
-    """Lines and densities of all places of a bad connection, then of a semiconductor."""
-    line = line_of(block, recorded)
-    low, high = ranges(block)
-    return line, integrated(line.log_density, low.ravel(), high.ravel()).shaped(*low.shape)
+def extras(block: Block, recorded: Model, white: Whitener) -> Density:
+    """Densities (b, places and offsets) of the sizes of a bad connection, then of a semiconductor."""
+    line = line_of(block, recorded, white)
+    low, high = (edge.T for edge in ranges(block))
+    found = integrated(line.log_density, low.ravel(), high.ravel())
+    return found.shaped(*low.shape).transposed()

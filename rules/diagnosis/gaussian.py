@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -51,6 +53,35 @@ def log_determinant(lower: Floats) -> Floats:
     return found
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Whitener:
+    """Stacked covariances, factored once for all that is asked of them."""
+
+    inverse: Floats
+    """(..., n, n): of the lower Cholesky factors; what it multiplies becomes white."""
+    log_scale: Floats
+    """(...): log of the Gaussian's density at its mean."""
+
+    def log_density(self, residual: Floats) -> Floats:
+        """Log density (...) of what lies so far from the mean (..., n)."""
+        found: Floats = self.log_scale - 0.5 * ((self.inverse @ residual[..., None]) ** 2).sum(axis=(-2, -1))
+        return found
+
+    @property
+    def precision(self) -> Floats:
+        """(..., n, n): inverses of the covariances."""
+        found: Floats = np.swapaxes(self.inverse, -1, -2) @ self.inverse
+        return found
+
+
+def whitener(covariance: Floats) -> Whitener:
+    """Covariances (..., n, n), positive definite, as what makes their Gaussians white."""
+    lower = cholesky(covariance)
+    rows = lower.shape[-1]
+    scale = -0.5 * (log_determinant(lower) + rows * LOG_2PI)
+    return Whitener(forward(lower, np.broadcast_to(np.eye(rows), lower.shape)), scale)
+
+
 def log_density(residual: Floats, covariance: Floats) -> Floats:
     """
     Log density of Gaussians with mean zero.
@@ -70,25 +101,19 @@ def log_density(residual: Floats, covariance: Floats) -> Floats:
     >>> round(float(log_density(np.array([0.0]), np.array([[1.0]]))), 6)
     -0.918939
     """
-    lower = cholesky(covariance)
-    white = forward(lower, residual[..., None])[..., 0]
-    squares = (white**2).sum(axis=-1) + residual.shape[-1] * LOG_2PI
-    found: Floats = -0.5 * (squares + log_determinant(lower))
-    return found
+    return whitener(covariance).log_density(residual)
 
 
-def along(
-    size: Floats, matrix: tuple[Floats, Floats, Floats], vector: tuple[Floats, Floats, Floats]
-) -> tuple[Floats, Floats]:
+def along(size: Floats, matrix: Sequence[Floats], vector: Sequence[Floats]) -> tuple[Floats, Floats]:
     """
     Log determinant and quadratic form along a size on which matrix and vector depend as polynomials.
 
     Parameters
     ----------
     size : array (..., nodes)
-    matrix : three arrays (..., n, n)
-        Symmetric; what stands before 1, size and size². Their sum is positive definite at every node.
-    vector : three arrays (..., n)
+    matrix : arrays (..., n, n)
+        Symmetric; what stands before 1, size, size² and so on. Their sum is positive definite at every node.
+    vector : arrays (..., n)
         The same of the vector.
 
     Returns
@@ -98,36 +123,40 @@ def along(
 
     Notes
     -----
-    A Cholesky factor by columns, each entry of which is an array over all problems and nodes: for the few rows
-    of a circuit this is several times quicker than one call of LAPACK a matrix. The vector stands as a further row.
+    Elimination by columns, each entry of which is an array over all problems and nodes: for the few rows of a circuit
+    this is several times quicker than one call of LAPACK a matrix. The vector stands as a further row.
 
     Examples
     --------
     >>> zero, one = np.zeros((1, 1)), np.ones((1, 1))
-    >>> log_determinant_, quadratic = along(np.array([2.0]), (one, zero, one), (one[0], one[0], zero[0]))
+    >>> log_determinant_, quadratic = along(np.array([2.0]), (one, zero, one), (one[0], one[0]))
     >>> round(float(np.exp(log_determinant_[0])), 6), round(float(quadratic[0]), 6)
     (5.0, 1.8)
     """
     n = vector[0].shape[-1]
     if not n:
         return np.zeros(size.shape), np.zeros(size.shape)
-    log_determinant_, quadratic = np.zeros(size.size), np.zeros(size.size)
-    bordered = [
-        np.moveaxis(np.concatenate([m, v[..., None, :]], axis=-2), (-2, -1), (0, 1))[..., None]
-        for m, v in zip(matrix, vector, strict=True)
-    ]
-    constant, linear, square = bordered
-    lower = np.empty((n + 1, n, size.size))
+    stack = range(vector[0].ndim - 1)
+    matrix = [entry.transpose(-2, -1, *stack)[..., None] for entry in matrix]
+    vector = [entry.transpose(-1, *stack)[..., None] for entry in vector]
+    columns, pivots = np.empty((n, n + 1, size.size)), np.empty((n, size.size))
     for j in range(n):
-        column = square[j:, j] * size
-        column += linear[j:, j]
-        column *= size
-        column += constant[j:, j]
-        column = column.reshape(n + 1 - j, -1)
+        column = columns[j, j:]
+        shaped = column.reshape(n + 1 - j, *size.shape)
+        _polynomial(size, [entry[j:, j] for entry in matrix], shaped[:-1])
+        _polynomial(size, [entry[j] for entry in vector], shaped[-1])
         if j:
-            column -= np.einsum("ikm,km->im", lower[j:, :j], lower[j, :j])
-        log_determinant_ += np.log(column[0])
-        column /= np.sqrt(column[0])
-        lower[j:, j] = column
-        quadratic += column[-1] ** 2
-    return log_determinant_.reshape(size.shape), quadratic.reshape(size.shape)
+            column -= np.einsum("kim,km->im", columns[:j, j:], columns[:j, j] / pivots[:j])
+        pivots[j] = column[0]
+    quadratic = (columns[:, -1] ** 2 / pivots).sum(axis=0)
+    return np.log(pivots, out=pivots).sum(axis=0).reshape(size.shape), quadratic.reshape(size.shape)
+
+
+def _polynomial(size: Floats, coefficients: Sequence[Floats], out: Floats) -> None:
+    """A polynomial in the size by Horner's rule, lowest order first."""
+    *lower, first, highest = coefficients
+    np.multiply(size, highest, out=out)
+    out += first
+    for coefficient in reversed(lower):
+        out *= size
+        out += coefficient

@@ -132,7 +132,7 @@ def ties_of(problem: Problem, runs: Mapping[str, Run], readings: Iterable[Readin
         if _is_recorded(reading.instrument, "current", index):
             ties.append(Tie("current", number, Habit(CURRENT, reading.instrument, reading.visit_or_default), amps))
             ties.append(Tie("current", number, Habit(ZERO, reading.instrument, reading.visit_or_default), 1.0))
-    probed = {row.at for row in readings if row.quantity == "temperature"}
+    probed = {row.at for row in readings if row.quantity == "temperature" and not row.is_unloaded}
     for branch, run_id in enumerate(problem.run_ids):
         if run_id and branch in reached:
             run = runs[run_id]

@@ -16,8 +16,8 @@ import numpy as np
 from rules.diagnosis.block import Block, Model, model_of, stacked
 from rules.diagnosis.conductor_causes import ConductorCauses, conductor_causes
 from rules.diagnosis.doubtful import Slips, slips
-from rules.diagnosis.extra import Line, extras
-from rules.diagnosis.gaussian import log_density
+from rules.diagnosis.extra import extras
+from rules.diagnosis.gaussian import whitener
 from rules.diagnosis.healthy import corrected
 from rules.diagnosis.hypotheses import (
     AS_RECORDED,
@@ -53,7 +53,6 @@ class Judged:
     """(b, h): sums to one."""
     log_evidence: Floats
     """(b,): of everything that was read."""
-    line: Line
     density: Density
     """Of the sizes of bad connections, then of semiconductors: (b, places and offsets)."""
     conductors: ConductorCauses
@@ -85,9 +84,11 @@ def judge_block(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Ju
     """Judge problems of one shape; all arrays of the batch are kept for whoever asks why."""
     block = stacked(shape, problems, limits)
     recorded = model_of(block, block.conductor[:, None], block.conductor_slope[:, None])
-    evidence = log_density(block.shown[:, None] - recorded.whole_mean, recorded.covariance)
-    line, density = extras(block, recorded)
-    conductors, found, two = conductor_causes(block, recorded), slips(block, recorded), pairs(block, recorded)
+    white = whitener(recorded.covariance[:, 0])
+    evidence = white.log_density(block.shown - recorded.whole_mean[:, 0])[:, None]
+    density = extras(block, recorded, white)
+    conductors = conductor_causes(block, recorded)
+    found, two = slips(block, recorded, white), pairs(block, recorded, white)
     places = [Hypothesis(BAD_CONNECTION, which=(number,)) for number in range(len(shape.places))]
     offsets = [Hypothesis(SEMICONDUCTOR, which=(number,)) for number in range(len(shape.offsets))]
     shares = [place.share for place in shape.places] + [1 / len(offsets)] * len(offsets)
@@ -115,7 +116,6 @@ def judge_block(shape: Shape, problems: Sequence[Problem], limits: Limits) -> Ju
         hypotheses=hypotheses,
         posterior=posterior / total,
         log_evidence=(best + np.log(total))[:, 0],
-        line=line,
         density=density,
         conductors=conductors,
         slips=found,

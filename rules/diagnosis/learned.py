@@ -39,10 +39,10 @@ class Together:
     """Probability times the product of both. [ohm²]"""
 
 
-def learned(judged: Judged) -> list[list[list[float]]]:
+def learned(judged: Judged) -> list[tuple[tuple[float, ...], ...]]:
     """By problem and branch: the fields of ``Learned``."""
-    figures: list[list[list[float]]] = np.stack([*_extra(judged), *_factor(judged), *_offset(judged)], axis=-1).tolist()
-    return figures
+    figures = np.stack([*_extra(judged), *_factor(judged), *_offset(judged)], axis=-1)
+    return [tuple(map(tuple, of_branches)) for of_branches in figures.tolist()]
 
 
 def _extra(judged: Judged) -> tuple[Floats, Floats]:
@@ -51,8 +51,7 @@ def _extra(judged: Judged) -> tuple[Floats, Floats]:
     count = len(shape.places)
     at = np.zeros((count, len(shape.signature.branches)))
     at[np.arange(count), [place.branch for place in shape.places]] = 1.0
-    mean = (judged.of_places * judged.density.mean(np.exp)[:, :count]) @ at
-    square = (judged.of_places * judged.density.mean(lambda u: np.exp(2 * u))[:, :count]) @ at
+    mean, square = ((judged.of_places * moment) @ at for moment in judged.density[:, :count].moments(np.exp))
     if judged.pairs.hypotheses.names:
         rows = np.arange(size)[:, None]
         branches = np.array([place.branch for place in shape.places])[judged.pairs.places]
@@ -80,8 +79,7 @@ def _offset(judged: Judged) -> tuple[Floats, Floats]:
     start[offsets, [shape.offset_branch(number) for number in offsets]] = 1.0
     of_offsets = judged.posterior[:, judged.of_cause(SEMICONDUCTOR)]
     # the coordinate of an offset is the voltage itself
-    mean = (of_offsets * judged.density.mean(lambda u: u)[:, count:]) @ start
-    square = (of_offsets * judged.density.mean(lambda u: u**2)[:, count:]) @ start
+    mean, square = ((of_offsets * moment) @ start for moment in judged.density[:, count:].moments(lambda u: u))
     return mean, _spread(square, mean)
 
 

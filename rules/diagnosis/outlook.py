@@ -21,7 +21,7 @@ from rules.diagnosis.atoms import Atoms
 from rules.diagnosis.block import Block, model_of
 from rules.diagnosis.candidates import AGAIN, SINGLE, Posed
 from rules.diagnosis.doubtful import rows_of_slips, several_off, typed_off
-from rules.diagnosis.extra import moved
+from rules.diagnosis.extra import moved_everywhere
 from rules.diagnosis.gaussian import cholesky, forward
 from rules.diagnosis.judge import Judged
 from rules.diagnosis.shape import Floats
@@ -143,7 +143,7 @@ def _rows(block: Block, atoms: Atoms, posed: Sequence[Posed]) -> _Rows:
     shape = block.shape
     number = np.arange(len(block))[:, None]
     model = model_of(block, block.conductor[:, None] * atoms.ratios, block.conductor_slope[:, None] * atoms.ratios)
-    direction, moving = moved(block)
+    direction, moving = moved_everywhere(block)
     of_extra, size = direction[number, atoms.extra], atoms.size[..., None]
     shared = model.whole_shared[number, atoms.conductor]
     shared = shared + size[..., None] * np.swapaxes(moving[number, atoms.extra], -1, -2)

@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 
 from rules.diagnosis.block import Block, Model, model_of
 from rules.diagnosis.extra import ranges
-from rules.diagnosis.gaussian import LOG_2PI, cholesky, forward, log_determinant
+from rules.diagnosis.gaussian import Whitener, whitener
 from rules.diagnosis.hypotheses import BAD_CONNECTION, Hypotheses, Hypothesis
 from rules.diagnosis.quadrature import KEPT, UNIT_NODES, UNIT_WEIGHTS, Density, integrated
 from rules.diagnosis.shape import Floats, Integers
@@ -94,7 +94,7 @@ class Pairs:
     """(b, 2, 2): of each, the central 95 %. [ohm]"""
 
 
-def pairs(block: Block, recorded: Model) -> Pairs:
+def pairs(block: Block, recorded: Model, white: Whitener) -> Pairs:
     """
     Evidence of bad connections at two places, by Laplace's approximation.
 
@@ -102,6 +102,8 @@ def pairs(block: Block, recorded: Model) -> Pairs:
     ----------
     recorded : Model
         With everything as recorded: (b, 1, …).
+    white : Whitener
+        Of its covariance: (b, …).
     """
     shape, size = block.shape, len(block)
     count = len(shape.places)
@@ -115,8 +117,7 @@ def pairs(block: Block, recorded: Model) -> Pairs:
     weight = share[first] * share[second] / (share[first] * share[second]).sum()
     through = block.carried[:, 0][..., shape.place_element]
     residual = block.shown - recorded.whole_mean[:, 0]
-    white = forward(cholesky(recorded.covariance[:, 0]), np.concatenate([residual[..., None], through], axis=-1))
-    gram = np.swapaxes(white, 1, 2) @ white
+    gram = _gram(white, residual, through)
     curve, pull = gram[:, 1:, 1:], gram[:, 0, 1:]
     ohm, gain = _best(
         curve[:, first, first], curve[:, first, second], curve[:, second, second], pull[:, first], pull[:, second]
@@ -168,7 +169,7 @@ def summed(found: Pairs, some: Integers) -> tuple[Floats, Pairs]:
     evidence = part.log_density + densities[0].log_evidence + found.log_weight[some]
     ohm, u, bounds = found.ohm.copy(), found.ohm_u.copy(), found.bounds.copy()
     for number, density in enumerate(densities):
-        mean, square = density.mean(np.exp), density.mean(lambda coordinate: np.exp(2 * coordinate))
+        mean, square = density.moments(np.exp)
         low, middle, high = (np.exp(edge) for edge in density.cumulative().quantiles(0.025, 0.5, 0.975))
         ohm[some, number] = middle
         u[some, number] = np.sqrt(np.maximum(square - mean**2, 0.0))
@@ -195,8 +196,14 @@ def _plane(block: Block, chosen: Integers, ohm: Floats, low: Floats, high: Float
     model = model_of(replace(block, others=others), block.conductor[:, None], block.conductor_slope[:, None])
     through = np.take_along_axis(block.carried[:, 0], elements[:, None, :], axis=2)
     residual = block.shown - model.whole_mean[:, 0]
-    lower = cholesky(model.covariance[:, 0])
-    white = forward(lower, np.concatenate([residual[..., None], through], axis=-1))
-    gram = np.swapaxes(white, 1, 2) @ white
-    density = -0.5 * (gram[:, 0, 0] + log_determinant(lower) + shape.rows * LOG_2PI)
+    white = whitener(model.covariance[:, 0])
+    gram = _gram(white, residual, through)
+    density = white.log_scale - 0.5 * gram[:, 0, 0]
     return Plane(ohm, gram[:, 0, 1:], gram[:, 1:, 1:], density, low, high)
+
+
+def _gram(white: Whitener, residual: Floats, through: Floats) -> Floats:
+    """Inner products (b, 1 + k, 1 + k) of the residual (b, n) and some directions (b, n, k)."""
+    whitened = white.inverse @ np.concatenate([residual[..., None], through], axis=-1)
+    found: Floats = np.swapaxes(whitened, 1, 2) @ whitened
+    return found

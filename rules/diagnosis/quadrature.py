@@ -13,9 +13,12 @@ from dataclasses import dataclass
 from typing import TypeAlias
 
 import numpy as np
+from numpy.typing import NDArray
 
 from rules.diagnosis.shape import Floats, Integers
 
+Chosen: TypeAlias = NDArray[np.bool_] | tuple[slice, ...]
+"""Which of several densities."""
 LogDensity: TypeAlias = Callable[[Floats, Integers], Floats]
 """From coordinates (k, nodes) of some densities, and which they are (k,), to log densities (k, nodes)."""
 
@@ -25,9 +28,9 @@ STEPS = 9
 """More than any density needs that floats can hold."""
 ENOUGH = 5
 """Kept nodes with which the search has found the density: it then spans at most 14 standard deviations."""
-KEPT = 18.0
+KEPT = 16.0
 """Natural logarithms below the best within which a node is kept, with one neighbour on each side."""
-NODES = 32
+NODES = 28
 """Gauss-Legendre nodes of the sum."""
 FINE = 64
 """Steps in which the cumulative density is laid out."""
@@ -70,21 +73,33 @@ class Density:
     def nodes(self) -> Floats:
         return self.low[..., None] + self.width[..., None] * UNIT_NODES
 
+    def __getitem__(self, some: Chosen) -> Density:
+        """Some of the densities."""
+        return Density(self.low[some], self.width[some], self.log_evidence[some], self.share[some])
+
     def shaped(self, *shape: int) -> Density:
         """The same densities in an array of another shape."""
         low, width, evidence = (array.reshape(shape) for array in (self.low, self.width, self.log_evidence))
         return Density(low, width, evidence, self.share.reshape(*shape, NODES))
 
+    def transposed(self) -> Density:
+        """The same densities, their first two axes in the other order."""
+        low, width, evidence = (array.T for array in (self.low, self.width, self.log_evidence))
+        return Density(low, width, evidence, np.swapaxes(self.share, 0, 1))
+
     def cumulative(self) -> Cumulative:
         """The probability below each of some fine steps over what matters."""
         density = self.share / UNIT_WEIGHTS
         below = np.maximum.accumulate(np.clip(density @ BELOW_STEPS, 0.0, 1.0), axis=-1)
+        below[..., -1] = 1.0
         return Cumulative(self.low, self.width, below, density @ AT_STEPS / FINE)
 
-    def mean(self, of: Callable[[Floats], Floats]) -> Floats:
-        """Mean (...) of a function of the coordinate."""
-        total: Floats = (self.share * of(self.nodes)).sum(axis=-1)
-        return total
+    def moments(self, of: Callable[[Floats], Floats]) -> tuple[Floats, Floats]:
+        """Mean (...) of a function of the coordinate, and of its square."""
+        values = of(self.nodes)
+        mean = np.einsum("...n,...n->...", self.share, values)
+        values *= values
+        return mean, np.einsum("...n,...n->...", self.share, values)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

@@ -75,21 +75,16 @@ class Shape:
     places: tuple[Place, ...]
     place_element: Integers
     """(places,): the element that each stands in."""
-    place_sources: NDArray[np.bool_]
-    """(places, sources)"""
-    place_gains: NDArray[np.bool_]
-    """(places, gains)"""
-    one_gain: int
-    """The source that is the gain of the only clamp, where one voltmeter reads all rows; else -1. Both then act on
-    every drop alike."""
     offsets: tuple[tuple[tuple[int, str], ...], ...]
     """Where a semiconductor may be, as far as the readings separate it: branches with a leg."""
     offset_rows: Floats
     """(offsets, n): with its sense, where the current is positive."""
     offset_slot: Integers
     """(offsets, n): the slot whose current gives the sense; -1 where it does not enter."""
-    offset_gains: NDArray[np.bool_]
-    """(offsets, gains)"""
+    moved_rows: Integers
+    """(places and offsets, m): the rows that each moves, before others where it moves fewer than the most."""
+    moving_columns: Integers
+    """(places and offsets, q): the gains and sources through which each moves them, before others as above."""
     read: Integers
     """Observations that a row uses."""
     swap_columns: Floats
@@ -132,18 +127,9 @@ def shape_of(signature: Signature) -> Shape:
     row_state = np.array([signature.states if row.state == DEAD else row.state for row in rows], dtype=np.int64)
     gain_rows, gain_parts = _gains(signature, difference)
     places = _places(signature, groups, looked_at)
-    place_column = np.array([coefficient[:, element] for element, _ in places]).reshape(len(places), len(rows))
-    sources = np.zeros((branches, signature.states + 1, signature.sources), dtype=bool)
-    for slot, source in signature.errors:
-        state, branch = signature.slots[slot]
-        sources[branch, state, source] = True
-    place_sources = np.array(
-        [
-            (sources[place.branch, row_state] & (column != 0)[:, None]).any(axis=0)
-            for (_, place), column in zip(places, place_column, strict=True)
-        ]
-    ).reshape(len(places), signature.sources)
     offsets, offset_rows, offset_slot = _offsets(signature, looked_at)
+    place_element = np.array([element for element, _ in places], dtype=np.int64)
+    moved_rows, moving_columns = _moved(signature, coefficient[:, place_element].T, offset_rows, places, gain_rows)
     swap_columns = [difference[:, a] - difference[:, b] for a, b in signature.swaps]
     conductors = slice(0, edges[1])
     return Shape(
@@ -167,14 +153,12 @@ def shape_of(signature: Signature) -> Shape:
         error_slot=np.array([slot for slot, _ in signature.errors], dtype=np.int64),
         error_source=np.array([source for _, source in signature.errors], dtype=np.int64),
         places=tuple(place for _, place in places),
-        place_element=np.array([element for element, _ in places], dtype=np.int64),
-        place_sources=place_sources,
-        place_gains=(place_column != 0) @ gain_rows.T > 0,
-        one_gain=_one_gain(signature, gain_rows),
+        place_element=place_element,
         offsets=offsets,
         offset_rows=offset_rows,
         offset_slot=offset_slot,
-        offset_gains=np.abs(offset_rows) @ gain_rows.T > 0,
+        moved_rows=moved_rows,
+        moving_columns=moving_columns,
         read=np.flatnonzero(np.any(difference != 0, axis=0)),
         swap_columns=np.array(swap_columns).reshape(len(swap_columns), len(rows)),
     )
@@ -244,17 +228,25 @@ def _gains(signature: Signature, difference: Floats) -> tuple[Floats, Floats | N
     return one, several if several.any() else None
 
 
-def _one_gain(signature: Signature, gain_rows: Floats) -> int:
-    """The gain of the only clamp, where one voltmeter reads all rows and no test is dead; else -1."""
-    clamps = {read.gain for read in signature.current_readings}
-    if (
-        len(clamps) != 1
-        or len(gain_rows) != 1
-        or not gain_rows.all()
-        or any(row.state == DEAD for row in signature.rows)
-    ):
-        return -1
-    return clamps.pop()
+def _moved(
+    signature: Signature, of_places: Floats, of_offsets: Floats, places: Sequence[tuple[int, Place]], gain_rows: Floats
+) -> tuple[Integers, Integers]:
+    """Rows that each place of a bad connection, then of a semiconductor, moves, and the columns of shared doubt."""
+    seen = np.concatenate([of_places, of_offsets]) != 0
+    sources = np.zeros((len(seen), signature.sources), dtype=bool)
+    states = np.array([row.state for row in signature.rows], dtype=np.int64)
+    for slot, source in signature.errors:
+        state, branch = signature.slots[slot]
+        of_branch = [number for number, (_, place) in enumerate(places) if place.branch == branch]
+        sources[of_branch, source] |= seen[of_branch][:, states == state].any(axis=1)
+    sources[:, signature.sources - signature.common :] = True  # such a column may move any row
+    return _first(seen), _first(np.concatenate([seen @ gain_rows.T > 0, sources], axis=1))
+
+
+def _first(chosen: NDArray[np.bool_]) -> Integers:
+    """Of each row where it is true, before others where it is so less often than the most."""
+    order = np.argsort(~chosen, axis=1, kind="stable")
+    return order[:, : int(chosen.sum(axis=1).max(initial=0))]
 
 
 def _offsets(

@@ -1,5 +1,6 @@
 """Limits profiles: ``limits.of(site)`` is the one place where a site's limits are resolved."""
 
-from rules.limits.profile import LimitGroup, Limits, RuleSetting, names, of
+from rules.limits.group import LimitGroup, Limits, RuleSetting, Stated
+from rules.limits.profile import ROOT, names, of
 
-__all__ = ["LimitGroup", "Limits", "RuleSetting", "names", "of"]
+__all__ = ["ROOT", "LimitGroup", "Limits", "RuleSetting", "Stated", "names", "of"]

@@ -3,7 +3,9 @@ Limits profiles as data: packaged profile, then the site's own, then the site's 
 
 A profile is TOML: groups of plain numbers, each group with ``title``, ``unit``, ``source``, ``edition`` and
 ``status``; ``inherits`` names the profile that it starts from (``general`` where it names none). The keys
-of ``general.toml`` are the keys there are: any other is an error that names the nearest.
+of ``general.toml`` are the keys there are: any other is an error that names the nearest. A number that comes
+from elsewhere than the rest of its group says so itself:
+``allowed_percent = { value = 4, source = "…", edition = "…", status = "…" }``.
 
 A key may hold a word instead of a number where ``general.toml`` says which words there are:
 ``table = { word = "by size", accepted = ["by size", "iec"] }``. Any other profile writes the word alone,
@@ -15,99 +17,25 @@ from __future__ import annotations
 import difflib
 import math
 import tomllib
-from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field, replace
+from collections.abc import Iterable
+from dataclasses import replace
 from functools import cache
 from importlib.resources import files
 from typing import Any
 
 from rules.assessment import Severity
-from rules.columns import NEAREST_ZERO, OUTER
 from rules.errors import ProfileError
+from rules.limits.bounds import impossible
+from rules.limits.group import LimitGroup, Limits, RuleSetting, Stated
 from rules.record import Site
 from rules.text import quoted
 
 ROOT = "general"
 _MOST_SHOWN = 60
-TEXT_KEYS = ("title", "unit", "source", "edition", "status")
+WHERE_FROM = ("source", "edition", "status")
+TEXT_KEYS = ("title", "unit", *WHERE_FROM)
 DOUBTFUL = "reading or record doubtful"
 """The cause that keeps the profile's share where a site's ``[prior]`` does not name it."""
-
-
-@dataclass(frozen=True, slots=True)
-class LimitGroup:
-    """Some numbers of one subject and where they come from."""
-
-    name: str
-    title: str
-    unit: str
-    source: str
-    edition: str
-    status: str
-    origin: str
-    """Name of the profile that stated it last."""
-    values: Mapping[str, float]
-    words: Mapping[str, str] = field(default_factory=dict)
-    """What is chosen by a word; no key has both a word and a number."""
-    accepted: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
-    """The words that each key of ``words`` may hold."""
-
-
-@dataclass(frozen=True, slots=True)
-class RuleSetting:
-    """What a profile says of one rule."""
-
-    off: bool
-    severity: Severity | None
-    reason: str
-
-
-@dataclass(frozen=True, slots=True)
-class Limits:
-    """All limits, doubts and priors in force for a site."""
-
-    name: str
-    title: str
-    groups: Mapping[str, LimitGroup]
-    rules: Mapping[str, RuleSetting]
-
-    def __getitem__(self, key: str) -> float:
-        """
-        One number by group and key.
-
-        >>> of(Site(name="x"))["drop.allowed_percent"]
-        3.0
-        """
-        group, _, name = key.partition(".")
-        return self.groups[group].values[name]
-
-    def word(self, key: str) -> str:
-        """
-        One word by group and key.
-
-        >>> of(Site(name="x")).word("capacity.table")
-        'by size'
-        """
-        group, _, name = key.partition(".")
-        return self.groups[group].words[name]
-
-    def values(self, group: str) -> Mapping[str, float]:
-        """All numbers of one group."""
-        return self.groups[group].values
-
-    def citation(self, group: str) -> str:
-        """Where the numbers of a group come from, for a finding."""
-        chosen = self.groups[group]
-        edition = f", edition {chosen.edition}" if chosen.edition else ""
-        status = "" if chosen.status in ("verified", chosen.source) else f" ({chosen.status})"
-        return f"{chosen.source}{edition}{status}; limits profile {chosen.origin}"
-
-    @property
-    def prior(self) -> Mapping[str, float]:
-        """Share of circuits under each cause (with spaces), summing to one."""
-        shares = self.values("prior")
-        total = sum(shares.values())
-        return {cause.replace("_", " "): share / total for cause, share in shares.items()}
 
 
 def of(site: Site) -> Limits:
@@ -133,16 +61,20 @@ def names() -> tuple[str, ...]:
 
 @cache
 def _packaged(name: str, above: tuple[str, ...] = ()) -> Limits:
+    if name in above:
+        raise ProfileError(f"profile {name!r} inherits itself: {' > '.join([*above, name])}")
     if name not in names():
         raise ProfileError(
-            f"there is no limits profile {name!r}{_nearest(name, names())}; there are: {', '.join(names())}"
+            f"there is no limits profile {quoted(name)}{_nearest(name, names())}; there are: {', '.join(names())}"
         )
-    return _parsed(name, files("rules.limits").joinpath(f"{name}.toml").read_text(encoding="utf-8"), above)
+    return _parsed(name, _text_of(name), above)
+
+
+def _text_of(name: str) -> str:
+    return files("rules.limits").joinpath(f"{name}.toml").read_text(encoding="utf-8")
 
 
 def _parsed(name: str, text: str, above: tuple[str, ...]) -> Limits:
-    if name in above:
-        raise ProfileError(f"profile {name!r} inherits itself: {' > '.join([*above, name])}")
     try:
         data = tomllib.loads(text)
     except ValueError as error:  # tomllib's own, and Python's where a number has thousands of digits
@@ -162,53 +94,66 @@ def _parsed(name: str, text: str, above: tuple[str, ...]) -> Limits:
             faults.append(f"{name}: {group} is not a group of numbers, [{group}]")
         else:
             groups[group] = _group(name, group, content, parent.groups[group] if parent else None, faults)
-    _impossible(name, groups, faults)
+    impossible(name, groups, faults)
     if faults:
         raise ProfileError("\n".join(faults))
-    return Limits(name, title, groups, rules)
+    return Limits(name, title, groups, rules, (parent.name, *parent.inherited) if parent else ())
 
 
 def _group(name: str, group: str, content: dict[str, Any], parent: LimitGroup | None, faults: list[str]) -> LimitGroup:
-    texts = {key: content.pop(key) for key in TEXT_KEYS if key in content}
-    for key, text in texts.items():
-        if not isinstance(text, str):
-            faults.append(f"{name}: {group}.{key} is not a text")
-    if parent:
-        if content and not texts.get("source"):
-            faults.append(f"{name}: [{group}] changes values without naming its source")
-        if texts.get("unit", parent.unit) != parent.unit:
-            faults.append(f"{name}: {group}.unit is {texts['unit']!r}, its numbers are in {parent.unit!r}")
+    texts = _texts(f"{name}: {group}", content, TEXT_KEYS, faults)
+    if parent and texts.get("unit", parent.unit) != parent.unit:
+        faults.append(f"{name}: {group}.unit is {texts['unit']!r}, its numbers are in {parent.unit!r}")
+    unit = parent.unit if parent else texts.get("unit", "")
     values = dict(parent.values) if parent else {}
     words = dict(parent.words) if parent else {}
     accepted = dict(parent.accepted) if parent else {}
-    for key, value in content.items():
-        where = f"{name}: {group}.{key}"
-        if parent is None and isinstance(value, dict):  # the root alone says which words there are
-            words[key], accepted[key] = value["word"], tuple(value["accepted"])
-        elif key in words:
-            if value in accepted[key]:
-                words[key] = value
-            else:
-                one_of = ", ".join(accepted[key])
-                faults.append(f"{where} is {value!r}; one of {one_of}{_nearest(str(value), accepted[key])}")
-        elif parent and key not in parent.values:
+    stated = dict(parent.stated) if parent else {}
+    unsourced = False
+    for key, given in content.items():
+        where, value, own = f"{name}: {group}.{key}", given, texts
+        if (
+            parent is None and isinstance(given, dict) and "accepted" in given
+        ):  # the root alone says which words there are
+            words[key], accepted[key] = given["word"], tuple(given["accepted"])
+            value = given["word"]
+        elif isinstance(given, dict) and "value" in given:
+            value = given.pop("value")
+            own = _texts(where, given, WHERE_FROM, faults)
+            faults += [
+                f"{where}: there is no {more!r}{_nearest(more, WHERE_FROM)}; value, {', '.join(WHERE_FROM)}"
+                for more in given
+            ]
+        unsourced |= parent is not None and not own.get("source")
+        if parent and key not in parent.values and key not in words:
             faults.append(f"{name}: there is no {group}.{key}{_nearest(key, [*parent.values, *parent.words])}")
+            continue
+        if key in words and value in accepted[key]:
+            words[key] = value
+        elif key in words:
+            one_of = ", ".join(accepted[key])
+            faults.append(f"{where} is {value!r}; one of {one_of}{_nearest(str(value), accepted[key])}")
         elif not _is_finite(value):
-            faults.append(f"{where} is {_shown(value)}, not a finite number")
+            faults.append(f"{where} is {_shown(value)}, not a finite number{_in_unit(unit)}")
         else:
             values[key] = float(value)
-    return LimitGroup(
-        name=group,
-        title=texts.get("title", parent.title if parent else ""),
-        unit=parent.unit if parent else texts.get("unit", ""),
-        source=texts.get("source", parent.source if parent else ""),
-        edition=texts.get("edition", "" if "source" in texts or not parent else parent.edition),
-        status=texts.get("status", "not stated" if "source" in texts or not parent else parent.status),
-        origin=name if content or not parent else parent.origin,
-        values=values,
-        words=words,
-        accepted=accepted,
-    )
+        stated[key] = Stated(own.get("source", ""), own.get("edition", ""), own.get("status", "not stated"), name)
+    if unsourced:
+        faults.append(f"{name}: [{group}] changes values without naming its source")
+    title = texts.get("title", parent.title if parent else "")
+    return LimitGroup(group, title, unit, values, words, accepted, stated)
+
+
+def _texts(where: str, content: dict[str, Any], keys: tuple[str, ...], faults: list[str]) -> dict[str, str]:
+    """The texts among some keys, taken out of what a profile gives."""
+    texts = {key: content.pop(key) for key in keys if key in content}
+    faults += [f"{where}.{key} is not a text" for key, text in texts.items() if not isinstance(text, str)]
+    return {key: text for key, text in texts.items() if isinstance(text, str)}
+
+
+def _in_unit(unit: str) -> str:
+    """In which unit a group's numbers are, for whoever wrote another."""
+    return "" if unit in ("", "1", "mixed", "words") else f" in {unit}"
 
 
 def _is_finite(value: object) -> bool:
@@ -252,7 +197,9 @@ def _rules(name: str, given: object, parent: Limits | None, faults: list[str]) -
         elif severity is not None and severity not in list(Severity):
             faults.append(f"{name}: rules.{rule}.severity is {severity!r}; one of {', '.join(Severity)}")
         else:
-            settings[rule] = RuleSetting(off, Severity(severity) if severity is not None else None, reason.strip())
+            settings[rule] = RuleSetting(
+                off, Severity(severity) if severity is not None else None, reason.strip(), name
+            )
     return settings
 
 
@@ -261,48 +208,6 @@ def rule_ids() -> tuple[str, ...]:
     """Ids of all rules, by the names of their files: a profile is read without loading them."""
     found = (entry.name.partition("_") for entry in files("rules.checks").iterdir() if entry.name.endswith(".py"))
     return tuple(sorted(id_.upper() for id_, _, _ in found if id_))
-
-
-ABOVE_ZERO = (
-    "drop", "termination", "heat", "length_doubt", "bad_connection", "series_semiconductor", "longer_route", "slip",
-)  # fmt: skip
-SHARES = ("decision", "other_metal", "doubtful")
-LARGEST = 1e9
-"""Of a number without a unit or in one of its own; the others have those of the record."""
-
-
-def _impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -> None:
-    """Numbers that make no sense whatever their source."""
-    for group in groups.values():
-        for key, value in group.values.items():
-            where = f"{name}: {group.name}.{key} is {value:g}"
-            if group.name in ("temperature", "ambient"):
-                if not -90 <= value <= 400:
-                    faults.append(f"{where}; a temperature from -90 to 400 degC")
-            elif value < 0:
-                faults.append(f"{where}; not below 0")
-            elif value == 0 and key != "geometric_sd" and group.name in ABOVE_ZERO:
-                faults.append(f"{where}; above 0")
-            elif value <= 1 and key == "geometric_sd":
-                faults.append(f"{where}; above 1")
-            elif value > 1 and group.name in SHARES:
-                faults.append(f"{where}; a share from 0 to 1")
-            elif value > (most := OUTER.get(group.unit, (0, LARGEST))[1]):
-                faults.append(f"{where}; at most {most:.12g}")
-            elif 0 < value < NEAREST_ZERO:
-                faults.append(f"{where}; 0, or at least {NEAREST_ZERO:g}")
-    for group_name, low, high in (
-        ("bad_connection", "low_ohm", "high_ohm"),
-        ("series_semiconductor", "low_v", "high_v"),
-        ("longer_route", "low_factor", "high_factor"),
-        ("slip", "parallel_low", "parallel_high"),
-        ("decision", "passes_at", "fails_at"),
-    ):
-        values = groups[group_name].values if group_name in groups else {}
-        if low in values and high in values and values[low] >= values[high]:
-            faults.append(f"{name}: {group_name}.{low} is not below {group_name}.{high}")
-    if "prior" in groups and not sum(groups["prior"].values.values()) > 0:
-        faults.append(f"{name}: the shares of [prior] sum to nothing")
 
 
 def _with_prior(limits: Limits, prior: Iterable[tuple[str, float]]) -> Limits:
@@ -325,10 +230,9 @@ def _with_prior(limits: Limits, prior: Iterable[tuple[str, float]]) -> Limits:
     kept = {} if DOUBTFUL in own else {DOUBTFUL: doubtful}
     shares = {cause: own.get(cause, 0.0) / total for cause in known} | kept
     values = {cause.replace(" ", "_"): share for cause, share in shares.items()}
-    stated = replace(
-        group, source="the site's own [prior]", status="the auditor's expectation", origin="site", values=values
-    )
-    return replace(limits, groups={**limits.groups, "prior": stated})
+    stated = Stated("the site's own [prior]", "", "the auditor's expectation", "site")
+    own_group = replace(group, values=values, stated=dict.fromkeys(values, stated))
+    return replace(limits, groups={**limits.groups, "prior": own_group})
 
 
 def _nearest(word: str, known: Iterable[str]) -> str:

@@ -231,6 +231,17 @@ def nec_largest_device_a(size: str, material: str) -> Printed | None:
     return None
 
 
+def nec_next_device_a(ampacity_a: float) -> float:
+    """
+    The smallest standard rating that is not below an ampacity; the ampacity itself above 800 A. [A]
+
+    >>> nec_next_device_a(55.0), nec_next_device_a(60.0), nec_next_device_a(850.0)
+    (60.0, 60.0, 850.0)
+    """
+    ratings = [rating for rating in group("nec_240_6").column("rating_a") if isinstance(rating, float)]
+    return min((rating for rating in ratings if rating >= ampacity_a), default=ampacity_a)
+
+
 def nec_terminal_column_c(size: str, rated_current_a: float | None) -> int:
     """
     Column by which an unmarked termination limits the ampacity; by the size where no rating is known. [degC]

@@ -14,6 +14,7 @@ import pytest
 
 from audit import cli
 from audit.opening import judge_site, on_visit
+from rules import limits
 from rules.record import Circuit, Feed, Reading, Site, Source
 from sample_sites.catalogue import sample_site
 
@@ -115,7 +116,8 @@ def test_an_unknown_limits_profile_is_a_line(plant: Path, capsys: Captured) -> N
     text = settings.read_text(encoding="utf-8")
     settings.write_text(text.replace('limits = "general"', 'limits = "genral"'), encoding="utf-8")
     assert refused(["check", str(plant)], capsys) == [
-        "site.toml:limits: there is no limits profile 'genral'; did you mean 'general'?; there are: general"
+        "site.toml:limits: there is no limits profile 'genral'; did you mean 'general'?; there are: "
+        + ", ".join(limits.names())
     ]
 
 

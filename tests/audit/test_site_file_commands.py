@@ -403,9 +403,9 @@ def test_an_older_file_is_read_in_memory_and_brought_up_to_date_by_whoever_write
     monkeypatch.setattr(migrations, "_migrations", list(migrations._migrations))
 
     @migrations()
-    def m002_index_places(db: Database) -> None:
+    def m003_index_places(db: Database) -> None:
         db.execute("CREATE INDEX boards_location ON boards (location)")
-        db.execute("PRAGMA user_version = 2")
+        db.execute("PRAGMA user_version = 3")
 
     before = site.read_bytes()
     for name in READ:
@@ -415,7 +415,7 @@ def test_an_older_file_is_read_in_memory_and_brought_up_to_date_by_whoever_write
     edit(plant / "circuits.csv", "device_rating", "125")
     done(["intake", str(site), str(plant), "--replace"], capsys)
     with closing(sqlite3.connect(site)) as opened:
-        assert opened.execute("PRAGMA user_version").fetchone() == (2,)
+        assert opened.execute("PRAGMA user_version").fetchone() == (3,)
     assert record(site) == read_folder(plant)
 
 

@@ -7,10 +7,14 @@ import io
 import pytest
 
 from audit import cli
+from audit.limit_words import limit_words
 from audit.tables_text import print_table, print_tables
+from rules import limits
+from rules.record import Site
 from rules.tables.loader import groups
 
 NAMES = [group.name for group in groups()]
+PROFILES = list(limits.names())
 
 
 def printed(name: str = "", encoding: str = "utf-8") -> list[str]:
@@ -24,7 +28,7 @@ def printed(name: str = "", encoding: str = "utf-8") -> list[str]:
     return pipe.read().splitlines()
 
 
-@pytest.mark.parametrize("name", ["", *NAMES])
+@pytest.mark.parametrize("name", ["", *NAMES, *PROFILES])
 def test_every_table_fits_80_columns_without_trailing_blanks_or_colour(name: str) -> None:
     for line in printed(name):
         assert len(line) <= 80
@@ -32,7 +36,7 @@ def test_every_table_fits_80_columns_without_trailing_blanks_or_colour(name: str
         assert "\x1b" not in line
 
 
-@pytest.mark.parametrize("name", ["", *NAMES])
+@pytest.mark.parametrize("name", ["", *NAMES, *PROFILES])
 def test_every_table_can_be_printed_in_ascii(name: str) -> None:
     assert "\n".join(printed(name, "ascii")).isascii()
 
@@ -77,3 +81,22 @@ def test_numbers_stand_under_each_other() -> None:
 def test_an_unknown_table_names_the_nearest(capsys: pytest.CaptureFixture[str]) -> None:
     assert cli.run(["tables", "iec_groping"]) == 2
     assert "did you mean 'iec_grouping'?" in capsys.readouterr().err
+
+
+def test_the_list_names_every_profile_and_what_it_starts_from() -> None:
+    words = " ".join(" ".join(printed()).split())
+    assert "general General d.c. distribution in buildings" in words
+    assert "battery-125 Station battery, 125 V, from battery-110" in words
+
+
+@pytest.mark.parametrize("name", PROFILES)
+def test_a_profile_is_printed_with_every_value_and_where_it_comes_from(name: str) -> None:
+    profile = limits.of(Site(name="x", limits=name))
+    words = " ".join(" ".join(printed(name)).split())
+    assert profile.title in words
+    for group in profile.groups.values():
+        assert " ".join(group.title.split()) in words
+        for stated, keys in group.by_source().items():
+            assert " ".join(str(stated).split()) in words
+            for key in keys:
+                assert " ".join(limit_words(group, key).split()) in words

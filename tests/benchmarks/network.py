@@ -124,7 +124,7 @@ class Columns:
     def ours(self) -> Floats:
         """The same as ``rules.runs`` has it: checked, with slopes, variances and hot conductors; both legs are alike."""
         leg = leg_of(
-            self.length_m, self.parallel, self.temperature_c, 70.0, self.r20, self.alpha, self.area, 0.15e-3, 2.0
+            self.length_m, self.parallel, self.temperature_c, 70.0, 20.0, self.r20, self.alpha, self.area, 0.15e-3, 2.0
         )
         return 2 * leg.conductor_ohm + 4 * leg.joint_ohm
 

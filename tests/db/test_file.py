@@ -254,13 +254,13 @@ def test_reading_leaves_the_bytes_alone(store: SiteStore, path: Path) -> None:
 
 @pytest.fixture
 def later_step(monkeypatch: pytest.MonkeyPatch) -> None:
-    """A second step, as a later version of this program may have it."""
+    """A further step, as a later version of this program may have it."""
     monkeypatch.setattr(migrations, "_migrations", list(migrations._migrations))
 
     @migrations()
-    def m002_index_places(db: Database) -> None:
+    def m003_index_places(db: Database) -> None:
         db.execute("CREATE INDEX boards_location ON boards (location)")
-        db.execute("PRAGMA user_version = 2")
+        db.execute("PRAGMA user_version = 3")
 
 
 @pytest.mark.usefixtures("later_step")
@@ -271,11 +271,11 @@ def test_an_older_file_is_brought_up_to_date_in_memory_to_be_read_and_for_good_t
     before = path.read_bytes()
     with SiteStore(path, read_only=True) as reader:
         assert reader.site() == site
-        assert reader._db.conn.execute("PRAGMA user_version").fetchone() == (2,)
+        assert reader._db.conn.execute("PRAGMA user_version").fetchone() == (3,)
         assert reader.verify() == ()
     assert path.read_bytes() == before
     with SiteStore(path) as writer:
-        assert writer._db.conn.execute("PRAGMA user_version").fetchone() == (2,)
+        assert writer._db.conn.execute("PRAGMA user_version").fetchone() == (3,)
         with writer.save("ann", "on") as save:
             save.settings(name="on")
         assert writer.verify() == ()

@@ -6,6 +6,7 @@ import runpy
 import shutil
 import sqlite3
 from contextlib import closing
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -48,3 +49,26 @@ def test_the_first_step_was_not_edited_since() -> None:
     with closing(sqlite3.connect(f"{FIRST.as_uri()}?mode=ro", uri=True)) as connection:
         assert connection.execute("PRAGMA user_version").fetchone() == (1,)
         assert schema_of(connection) == expected(1)
+
+
+def test_the_first_file_takes_what_the_second_step_added(path: Path) -> None:
+    shutil.copy(FIRST, path)
+    with SiteStore(path, laptop="laptop-b") as store:
+        assert [row.category for row in store.site().sources] == ["", ""]
+        assert [row.category for row in store.site().boards] == ["", ""]
+        with store.save("Bob", "categories, and a clamp with the loads off") as save:
+            save.change("sources", "rect", category="CAT II")
+            save.change("boards", "db1", category="CAT III")
+            save.change("instruments", "m1", rated_voltage_v=600.0)
+            save.change("readings", "x2", loads_off="yes")
+    with SiteStore(path, read_only=True) as store:
+        site = store.site()
+        assert store.verify() == ()
+    start = MADE["EXPECTED"]
+    assert site == replace(
+        start,
+        sources=(replace(start.sources[0], category="CAT II"), start.sources[1]),
+        boards=(replace(start.boards[0], category="CAT III"), start.boards[1]),
+        instruments=(replace(start.instruments[0], rated_voltage_v=600.0),),
+        readings=(start.readings[0], replace(start.readings[1], loads_off="yes"), start.readings[2]),
+    )

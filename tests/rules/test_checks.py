@@ -18,6 +18,7 @@ from tests.rules.limits_read import groups_read
 
 CASES = Path(__file__).parent / "cases"
 FINDS, ALONE, LIMIT, OPEN = "finds", "leaves alone", "at the limit", "not judged"
+STATUSES = ("verified", "computed", "from-memory", "common practice, no source", "our own rule", "our own default")
 KINDS = {FINDS, ALONE, LIMIT, OPEN}
 CHECKS = Path(__file__).parent.parent.parent / "rules" / "checks"
 
@@ -74,8 +75,9 @@ class TestEachRule:
         assert not rule.title.endswith(".")
         assert rule.remedy.endswith(".")
         assert rule.caution.endswith(".")
-        assert rule.source.document
-        assert rule.source.status or rule.source.clause
+        for citation in (rule.source, *rule.also):
+            assert citation.document
+            assert citation.status in STATUSES, "whether it was read, computed, remembered or is our own"
 
     def test_has_both_examples_in_its_text(self, rule: Rule) -> None:
         assert "**Finds**:" in rule.text

@@ -2,14 +2,21 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import pytest
 
+from audit.intake.folder import site_of
 from rules import limits
+from rules.assess import assess
 from rules.assessment import Severity
 from rules.errors import ProfileError
+from rules.limits import profile
 from rules.limits.profile import rule_ids
 from rules.record import Site
 from rules.rule import catalogue
+
+STATUSES = ("verified", "computed", "from-memory", "our own default", "common practice, no source")
 
 
 def own(text: str, **more: object) -> Site:
@@ -20,16 +27,13 @@ def test_every_group_of_every_packaged_profile_says_where_it_comes_from() -> Non
     for name in limits.names():
         for group in limits.of(Site(name="x", limits=name)).groups.values():
             assert group.title
-            assert group.source
-            assert group.status in (
-                "verified",
-                "computed",
-                "from-memory",
-                "our own default",
-                "common practice, no source",
-            )
             assert group.unit
             assert group.values or group.words
+            assert set(group.stated) == {*group.values, *group.words}
+            for stated in group.by_source():
+                assert stated.source
+                assert stated.status in STATUSES
+                assert stated.origin in limits.names()
 
 
 def test_what_general_chooses_by_a_word_is_among_the_words_it_accepts() -> None:
@@ -77,6 +81,21 @@ def test_a_rule_may_be_lowered_or_switched_off_with_a_reason() -> None:
         ("drop = 2", "drop is not a group of numbers"),
         ('[drop]\nsource="s"\nallowed_precent = 2', "there is no drop.allowed_precent; did you mean 'allowed_percent'?"),
         ('[drop]\nsource="s"\nallowed_percent = "2"', "drop.allowed_percent is '2', not a finite number"),
+        (
+            '[heat]\nsource="s"\nsoon_w = "2 mV"', "heat.soon_w is '2 mV', not a finite number in W",
+        ),
+        (
+            '[drop]\nallowed_percent = { value = 2, source = "s", unit = "V" }',
+            "drop.allowed_percent: there is no 'unit'; value, source, edition, status",
+        ),
+        (
+            '[drop]\nallowed_percent = { value = 2, sorce = "s" }',
+            "drop.allowed_percent: there is no 'sorce'; did you mean 'source'?",
+        ),
+        ('[drop]\nallowed_percent = { value = 2 }', "[drop] changes values without naming its source"),
+        ('[drop]\nallowed_percent = { source = "s" }', "drop.allowed_percent is {'source': 's'}, not a finite number in %"),
+        ('[drop]\nallowed_percent = { value = 2, source = 3 }', "drop.allowed_percent.source is not a text"),
+        ('inherits = "ours.toml"', "profile 'ours.toml' inherits itself: ours.toml > ours.toml"),
         ('[drop]\nsource="s"\nallowed_percent = true', "drop.allowed_percent is True, not a finite number"),
         ('[drop]\nsource="s"\nallowed_percent = nan', "drop.allowed_percent is nan, not a finite number"),
         ('[drop]\nsource="s"\nallowed_percent = -1', "drop.allowed_percent is -1; not below 0"),
@@ -165,6 +184,87 @@ def test_a_mistake_in_a_prior_is_named(prior: tuple[tuple[str, float], ...], lin
 
 def test_without_a_prior_the_profiles_holds() -> None:
     assert limits.of(Site(name="x")).prior["as recorded"] == pytest.approx(0.80 / 1.005)
+
+
+def test_a_value_may_come_from_elsewhere_than_the_rest_of_its_group() -> None:
+    text = """
+        [drop]
+        source = "our contract"
+        allowed_percent = 2
+        allowed_total_percent = { value = 4, source = "the owner's letter", edition = "3 May", status = "from-memory" }
+    """
+    ours = limits.of(own(text))
+    assert ours["drop.allowed_total_percent"] == 4
+    assert ours.citation("drop", "allowed_percent") == "our contract (not stated); limits profile ours.toml"
+    letter = "the owner's letter, edition 3 May (from-memory); limits profile ours.toml"
+    assert ours.citation("drop", "allowed_total_percent") == letter
+    assert ours.citation("drop") == f"our contract (not stated); limits profile ours.toml; {letter}"
+
+
+def test_a_value_that_a_profile_leaves_alone_keeps_its_source() -> None:
+    ours = limits.of(own('[drop]\nsource = "our contract"\nallowed_percent = 2\n'))
+    assert "NFPA 70" in ours.citation("drop", "allowed_total_percent")
+    assert "limits profile general" in ours.citation("drop", "allowed_total_percent")
+
+
+def test_a_profile_of_ones_own_inherits_a_packaged_one_and_what_that_inherits() -> None:
+    ours = limits.of(own('inherits = "battery-125"\n[heat]\nsource = "us"\nsoon_w = 1\n'))
+    assert ours.inherited == ("battery-125", "battery-110", "general")
+    assert (ours["drop.allowed_total_percent"], ours["drop.allowed_percent"], ours["heat.soon_w"]) == (4, 3, 1)
+    assert ours.citation("drop", "allowed_total_percent").endswith("limits profile battery-125")
+    assert ours.citation("bad_connection", "low_ohm").endswith("limits profile battery-110")
+    assert ours.citation("heat", "immediate_w").endswith("limits profile general")
+
+
+def test_a_rule_that_an_inherited_profile_changes_may_be_put_back(monkeypatch: pytest.MonkeyPatch) -> None:
+    parent = 'inherits = "general"\n[rules.VD01]\noff = true\nreason = "theirs"\n'
+    packaged(monkeypatch, {"strict": parent})
+    theirs = limits.of(own('inherits = "strict"')).rules["VD01"]
+    assert (theirs.off, theirs.origin) == (True, "strict")
+    ours = limits.of(own('inherits = "strict"\n[rules.VD01]\noff = false\nreason = "ours"')).rules["VD01"]
+    assert (ours.off, ours.origin) == (False, "ours.toml")
+
+
+def test_profiles_that_inherit_each_other_are_an_error(monkeypatch: pytest.MonkeyPatch) -> None:
+    packaged(monkeypatch, {"egg": 'inherits = "hen"', "hen": 'inherits = "egg"'})
+    with pytest.raises(ProfileError, match="profile 'egg' inherits itself: egg > hen > egg"):
+        limits.of(Site(name="x", limits="egg"))
+    with pytest.raises(ProfileError, match=r"profile 'hen' inherits itself: ours\.toml > hen > egg > hen"):
+        limits.of(own('inherits = "hen"'))
+
+
+def packaged(monkeypatch: pytest.MonkeyPatch, texts: dict[str, str]) -> None:
+    """Further packaged profiles, for one test."""
+    known, text_of = limits.names(), profile._text_of
+    monkeypatch.setattr(profile, "names", lambda: (*known, *texts))
+    monkeypatch.setattr(profile, "_text_of", lambda name: texts.get(name) or text_of(name))
+
+
+def test_the_trades_have_their_profiles() -> None:
+    """The list of issue 6."""
+    assert set(limits.names()) == {
+        "general", "telecom-48", "control-24", "security-12-24", "emergency-lighting", "battery-110", "battery-125",
+        "battery-220", "dc-lighting", "pv-strings",
+    }  # fmt: skip
+    for name in limits.names():
+        assert limits.of(Site(name="x", limits=name)).title
+
+
+@pytest.mark.parametrize("name", [name for name in limits.names() if name != "general"])
+def test_what_a_profile_changes_shows_in_the_findings_that_it_changes(name: str) -> None:
+    """100 m of 1.5 mm² at 5 A lose 12 V: too much for every profile, by the profile's own figure."""
+    tables = {
+        "sources": [{"source": "S", "kind": "battery", "nominal": "24"}],
+        "circuits": [{"circuit": "C1", "fed_from": "S", "device": "none"}],
+        "runs": [{"circuit": "C1", "run": "1", "from": "way", "to": "p1", "length": "100", "size": "1.5 mm2"}],
+        "loads": [{"circuit": "C1", "point": "p1", "load": "lamp", "current": "5"}],
+    }
+    site = replace(site_of(tables, {"name": "x", "nominal": "24 V"}), limits=name)
+    in_force = limits.of(site)
+    (finding,) = [finding for finding in assess(site, in_force).findings if finding.rule == "VD01"]
+    assert finding.numbers["allowed"].value == pytest.approx(in_force["drop.allowed_percent"] / 100)
+    assert in_force.citation("drop", "allowed_percent") in finding.source
+    assert [profile for profile in (name, *in_force.inherited[:-1]) if f"limits profile {profile}" in finding.source]
 
 
 def test_a_profile_knows_every_rule_by_its_file() -> None:

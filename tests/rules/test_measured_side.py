@@ -84,6 +84,22 @@ def gap(record: Site) -> str:
     return case.drop_gap
 
 
+def test_a_reading_with_the_loads_off_is_in_no_round() -> None:
+    """2 × 30 m × 4.61 mΩ/m carry 4 A and 1 A; what the clamp shows with nothing flowing is not a third current."""
+    loaded = [volts("way", 24.0), volts("p2", 23.2), amps("run 1", 4.0)]
+    off = [amps("run 1", 0.3, loads_off="yes"), volts("way", 24.6, loads_off="yes")]
+    found = result(site(*loaded, *off))
+    assert found.drop == drop(site(*loaded))
+    assert found.causes == result(site(*loaded)).causes
+    unused = [gap.why for gap in found.not_judged if gap.where == "readings"]
+    assert unused == ["read, but of no use here: voltage at way"]
+
+
+def test_with_the_loads_off_alone_nothing_was_read_under_load() -> None:
+    found = result(site(amps("run 1", 0.3, loads_off="yes"), amps("run 1", 0.02, loads_off="yes")))
+    assert (found.status, found.why, found.drop) == (Status.MEASURE, "nothing was read under load", None)
+
+
 def test_the_far_point_is_the_one_with_the_largest_computed_drop() -> None:
     found = drop(site(volts("way", 24), volts("p1", 23), volts("p2", 22.9), amps("run 1", 4), amps("run 2", 1)))
     assert (found.start, found.end) == ("way", "p2")

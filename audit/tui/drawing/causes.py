@@ -4,24 +4,51 @@ from __future__ import annotations
 
 from rich.cells import cell_len
 
-from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece
+from audit.report.phrases import extra_words, heat_words
+from audit.tui.drawing.pieces import Line, Piece, cut, fit, piece, wrapped
 from rules.assessment import CircuitResult, Place
-from rules.units import show
 
 LEAST_SHOWN = 0.01
 """Causes less probable than this are left out; the report has all of them."""
+LEAST_EXPLAINED = 0.05
+"""Causes less probable than this stand without what speaks for and against them."""
 _NAME_CELLS = 36
+_FACT_INDENT = 14
 _PROBABILITY_CELLS = 11
 _EIGHTHS = " ▏▎▍▌▋▊▉█"
 
 
 def cause_lines(result: CircuitResult, width: int) -> list[Line]:
-    """One bar a cause, the likeliest first; nothing where readings say nothing of causes."""
+    """One bar a cause with its facts, the likeliest first; nothing where readings say nothing of causes."""
     shown = [place for place in result.causes if place.probability >= LEAST_SHOWN]
     if not shown:
         return []
     cells = min(_NAME_CELLS, max(cell_len(_name(place)) for place in shown))
-    return [(), *(_cause_line(place, cells, width) for place in shown)]
+    said: set[str] = set()
+    lines: list[Line] = [()]
+    heats = {joint.where: joint for joint in result.joints}
+    for place in shown:
+        told = place.where in heats and place.probability >= LEAST_EXPLAINED
+        lines.append(_cause_line(place, cells, width, "" if told else extra_words(place)))
+        if told:
+            words = f"{extra_words(place)}: {heat_words(heats[place.where])}"
+            lines += wrapped(words, width - 1, _FACT_INDENT, "", "     extra")
+        lines += _fact_lines(place, said, width)
+    return lines
+
+
+def _fact_lines(place: Place, said: set[str], width: int) -> list[Line]:
+    """What speaks for a cause and against it, but for what stands above already; nothing for one of little weight."""
+    if place.probability < LEAST_EXPLAINED:
+        return []
+    lines = []
+    for word, facts in (("for", place.speaks_for), ("against", place.speaks_against)):
+        for fact in facts:
+            if fact not in said:
+                said.add(fact)
+                lines += wrapped(fact, width - 1, _FACT_INDENT, "quiet", f"     {word}")
+                word = ""
+    return lines
 
 
 def probability_bar(probability: float, cells: int) -> str:
@@ -41,14 +68,10 @@ def _name(place: Place) -> str:
     return ", ".join(part for part in (place.cause, place.where, place.what) if part)
 
 
-def _cause_line(place: Place, cells: int, width: int) -> Line:
+def _cause_line(place: Place, cells: int, width: int, extra: str) -> Line:
     from rules.verdict import probability_words  # who judged has it loaded; the first screen does not wait for it
 
-    ohms = ""
-    if place.best_ohm is not None and place.low_ohm is not None and place.high_ohm is not None:
-        best, low, high = (show(ohm, "ohm", digits=3) for ohm in (place.best_ohm, place.low_ohm, place.high_ohm))
-        ohms = f"{best} ({low} to {high})"
     role = "strong" if place.probability >= 0.5 else ""
     bar = Piece(probability_bar(place.probability, 20 if width > 100 else 12), "bar")
-    words = piece(f" {fit(probability_words(place.probability), _PROBABILITY_CELLS)} {ohms}", role)
+    words = piece(f" {fit(probability_words(place.probability), _PROBABILITY_CELLS)} {extra}", role)
     return cut((piece(f"   {fit(_name(place), cells)} ", role), bar, words), width)

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from audit.report.phrases import figure_words
-from audit.tui.drawing.pieces import Line, fit, piece
+from audit.report.phrases import fault_is_likely, figure_words, with_and_without
+from audit.tui.drawing.pieces import Line, fit, piece, wrapped
 from rules.assessment import CircuitResult, LoadMargin
 from rules.record import Figure
 from rules.text import clean
@@ -18,7 +18,11 @@ def margin_lines(result: CircuitResult, width: int) -> list[Line]:
         return []
     name = max(10, width - 4 - _CELLS * len(_HEADS))
     head: Line = (piece(" " * (3 + name), "quiet"), *(piece(fit(text, _CELLS, "right"), "quiet") for text in _HEADS))
-    return [head, *(_line(margin, name) for margin in result.margins)]
+    lines = [head, *(_line(margin, name) for margin in result.margins)]
+    if fault_is_likely(result):
+        for margin in result.margins:
+            lines += wrapped(with_and_without(margin), width - 1, 3) if with_and_without(margin) else []
+    return lines
 
 
 def _line(margin: LoadMargin, name: int) -> Line:

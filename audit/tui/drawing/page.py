@@ -6,7 +6,7 @@ findings, rounds and record.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from audit.report.bar import text_bar
 from audit.report.phrases import (
@@ -18,6 +18,7 @@ from audit.report.phrases import (
 )
 from audit.report.records import READING_DIGITS, circuit_line
 from audit.tui.drawing.causes import cause_lines
+from audit.tui.drawing.doubts import doubt_lines
 from audit.tui.drawing.findings import finding_lines, gap_lines
 from audit.tui.drawing.margins import margin_lines
 from audit.tui.drawing.pieces import Line, Piece, apart, cut, piece, wrapped
@@ -56,13 +57,27 @@ def view_of(survey: Survey, circuit_id: str) -> CircuitView | None:
     if circuit is None:
         return None
     result = survey.results.get(circuit_id)
-    readings = [r for r in survey.index.readings_of(circuit_id) if r.id not in survey.index.replaced]
+    replaced = survey.index.replaced
+    readings = [r for r in survey.index.readings_of(circuit_id) if r.id not in replaced and not r.is_unloaded]
     name = ""
     if result is not None and result.visit:
         of_visit = [reading for reading in readings if reading.visit_or_default == result.visit]
         name = result.drop.round if result.drop is not None else _last_round(of_visit)
         readings = [reading for reading in of_visit if reading.round == name]
-    return CircuitView(circuit, result, name, readings if name else (), _expected(survey, circuit_id, name))
+    expected = _expected(survey, circuit_id, name)
+    return CircuitView(circuit, _explained(survey, circuit, result), name, readings if name else (), expected)
+
+
+def _explained(survey: Survey, circuit: Circuit, result: CircuitResult | None) -> CircuitResult | None:
+    """A result whose causes say what speaks for and against each: only of what is looked at."""
+    if survey.context is None or result is None or not result.causes:
+        return result
+    from rules.explain import causes_with_facts  # it brings numpy, for which the first screen does not wait
+
+    known = survey.context.index.circuits.get(circuit.id)
+    if known is None:
+        return result
+    return replace(result, causes=causes_with_facts(survey.context, known, result.causes))
 
 
 def _last_round(readings: Sequence[Reading]) -> str:
@@ -105,6 +120,8 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
         lines += [(), *finding_lines(finding, width, place=False)]
     if loads := margin_lines(result, width):
         lines += _section("loads", loads)
+    if doubts := doubt_lines(result, width):
+        lines += _section("doubt", doubts)
     rounds = round_lines(survey.index, circuit.id, width)
     lines += _section("rounds", rounds or [(piece("   nothing was read", "measure"),)])
     if survey.context is not None:

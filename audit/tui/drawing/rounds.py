@@ -51,6 +51,7 @@ def reading_line(
         time_words(reading.taken_at).removeprefix(day).strip(),
         reading.instrument or "no meter recorded",
         reading.by if reading.by != by else "",
+        "loads off" if reading.is_unloaded else "",
         f"replaces an earlier one: {reading.reason}" if reading.replaces_id else "",
         reading.notes,
     )

@@ -32,6 +32,7 @@ class Where:
     leg: str = ""
     meter: Meter = NO_METER
     by: str = ""
+    loads_off: str = ""
 
 
 def reading_from(text: str, where: Where, now: datetime) -> Reading:
@@ -66,6 +67,7 @@ def reading_from(text: str, where: Where, now: datetime) -> Reading:
         instrument=where.meter.tag,
         full_scale=where.meter.full_scale,
         by=where.by,
+        loads_off=where.loads_off,
         typed=(("value", cell.typed),) if cell.typed is not None else (),
     )
 
@@ -102,6 +104,7 @@ def edit_for(reading: Reading, on: str, replaced: Reading | None = None, reason:
         Why it is corrected.
     """
     what = f"{on} round {reading.round}: {reading.quantity} at {reading.at} {value_words(reading)}"
+    what += ", loads off" if reading.is_unloaded else ""
     if replaced is None:
         return Edit(what, (Add("readings", reading),))
     steps: list[Step] = []

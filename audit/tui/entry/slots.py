@@ -55,8 +55,9 @@ def slots_of(index: Index, place: Place, visit: str, round_name: str) -> tuple[S
 
 
 def readings_of_round(index: Index, place: Place, visit: str, round_name: str) -> list[Reading]:
-    """The readings of a round that are not replaced."""
-    return [reading for reading in readings_of_visit(index, place, visit) if reading.round == round_name]
+    """The readings of a round that are not replaced, but for those with the loads off."""
+    there = readings_of_visit(index, place, visit)
+    return [reading for reading in there if reading.round == round_name and not reading.is_unloaded]
 
 
 def readings_of_visit(index: Index, place: Place, visit: str) -> list[Reading]:

@@ -11,6 +11,7 @@ from textual.binding import Binding, BindingType
 from audit.tui.drawing.findings import SEVERITY_ROLES
 from audit.tui.drawing.pieces import Line, apart, piece
 from audit.tui.screens.base import OurScreen
+from audit.tui.screens.rule import RULE_KEY, open_rule
 from audit.tui.state import Survey
 from audit.tui.widgets.few_lines import FewLines
 from audit.tui.widgets.finding_list import FindingList
@@ -25,6 +26,7 @@ class FindingsScreen(OurScreen[str]):
     CSS_PATH = "findings.tcss"
     AUTO_FOCUS: ClassVar[str | None] = "#findings"
     BINDINGS: ClassVar[list[BindingType]] = [
+        RULE_KEY,
         Binding("r", "app.report", "report", tooltip="write the audit report to a file"),
         Binding("question_mark", "help", "help", key_display="?", tooltip="what the keys do, and the cautions"),
         Binding("escape,left,f", "leave", "the walk", key_display="Esc", tooltip="back to the walk"),
@@ -71,6 +73,11 @@ class FindingsScreen(OurScreen[str]):
             self.say("this finding is about the whole site")
         else:
             self.dismiss(row_id)
+
+    def action_show_rule(self) -> None:
+        """The page of the rule behind the finding at the cursor."""
+        finding = self.query_one(FindingList).chosen
+        self.ohmwalk.flow(open_rule(self, [] if finding is None else [finding]))
 
     def action_leave(self) -> None:
         """Back to the walk."""

@@ -23,6 +23,9 @@ if TYPE_CHECKING:
     from audit.tui.screens.survey import SurveyScreen
 
 NOT_RECORDED = "not recorded"
+LOADS = ("on", "off")
+OF_A_CLAMP = ("current", "residual")
+"""What is read with the loads off too: what a clamp shows then is its own."""
 _SIGNS = {"degC": "°C", "ohm": "Ω"}
 _UNIT_WORDS = dict.fromkeys(SMALL, "mV or V")
 """The unit expected, where it is not that of the record alone."""
@@ -45,7 +48,7 @@ async def take(screen: SurveyScreen, place: Place) -> None:
     last = rounds[-1].round if rounds else "1"
     hint = f"round {last}, with {meter.words(meter_quantity(where.quantity))}; a reading belongs to a load state"
     await _ask_value(screen, _words(where), hint, Where(
-        place, of.visit, last, where.quantity, where.at, where.to, where.leg, meter, of.by
+        place, of.visit, last, where.quantity, where.at, where.to, where.leg, meter, of.by, where.loads_off
     ))  # fmt: skip
 
 
@@ -68,7 +71,7 @@ async def correct(screen: SurveyScreen, place: Place) -> None:
     if not who:
         return
     meter = Meter(old.instrument, old.full_scale)
-    where = Where(place, old.visit, old.round, old.quantity, old.at, old.to, old.leg, meter, who)
+    where = Where(place, old.visit, old.round, old.quantity, old.at, old.to, old.leg, meter, who, old.loads_off)
     await _ask_value(
         screen, reading_words(old), f"in place of {value_words(old)}, which stays in the record", where, old
     )
@@ -114,12 +117,17 @@ async def _where(screen: SurveyScreen, index: Index, where: Where, wanted: NextR
     leg = await one_of(f"{quantity} at {at}: which leg?", legs_for(quantity, at), wanted.leg)
     if leg is None:
         return None
-    return Where(place, where.visit, "", quantity, at, to, "" if leg == NOT_RECORDED else leg)
+    loads = await one_of(f"{quantity} at {at}: the loads are", LOADS if quantity in OF_A_CLAMP else LOADS[:1], "on")
+    if loads is None:
+        return None
+    off = "yes" if loads == "off" else ""
+    return Where(place, where.visit, "", quantity, at, to, "" if leg == NOT_RECORDED else leg, loads_off=off)
 
 
 def _words(where: Where) -> str:
     path = f"from {where.at} to {where.to}" if where.to else f"at {where.at}"
-    return f"{where.quantity} {path}" + (f", {leg_words(where.leg)}" if where.leg else "")
+    of_leg = f", {leg_words(where.leg)}" if where.leg else ""
+    return f"{where.quantity} {path}{of_leg}{', loads off' if where.loads_off else ''}"
 
 
 async def _ask_value(

@@ -22,6 +22,7 @@ AUDIENCES = (
 async def write(app: OhmwalkApp) -> None:
     """Ask for the file and the reader, and write the report of what is judged now."""
     from audit.report.write import FORMS, check_target, write_report  # jinja2 takes longer than the first screen
+    from rules.explain import assessment_with_facts
 
     survey = app.survey
     if survey is None or survey.assessment is None:
@@ -49,11 +50,17 @@ async def write(app: OhmwalkApp) -> None:
     audience = await app.ask(Ask("For the", choices=AUDIENCES, instant=True))
     if audience is None:
         return
+    context, assessment = survey.context, survey.assessment
+    if context is None:
+        return
     made_at = app.now().strftime("%Y-%m-%d %H:%M %z")
+
+    def written() -> None:
+        told = assessment if audience == "supervisor" else assessment_with_facts(context, assessment)
+        write_report(survey.site, told, target, audience, overwrite=overwrite, made_at=made_at)
+
     try:
-        await asyncio.to_thread(
-            write_report, survey.site, survey.assessment, target, audience, overwrite=overwrite, made_at=made_at
-        )
+        await asyncio.to_thread(written)
     except AuditError as error:
         app.say(error.lines[0], "wrong")
     else:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import ClassVar
 
 from textual import on
@@ -20,12 +21,14 @@ from audit.tui.screens.find import Find
 from audit.tui.screens.findings import FindingsScreen
 from audit.tui.screens.form import FormScreen
 from audit.tui.screens.rows import RowsScreen
+from audit.tui.screens.rule import RULE_KEY, open_rule
 from audit.tui.state import Survey
 from audit.tui.widgets.entry_strip import EntryStrip
 from audit.tui.widgets.few_lines import FewLines
 from audit.tui.widgets.keys_line import KeysLine
 from audit.tui.widgets.place_page import PlacePage
 from audit.tui.widgets.walk_list import WalkList
+from rules.assessment import Finding
 from rules.record import Feed
 
 
@@ -41,6 +44,7 @@ class SurveyScreen(OurScreen[None]):
         Binding("m", "measure", "measure", tooltip="a round: the current, then the voltage at each point"),
         Binding("a", "add", "add", tooltip="add a circuit, run, load, board, source, meter or visit"),
         Binding("e", "edit", "record", tooltip="what is installed: circuit, runs, loads; of a board, its own form"),
+        RULE_KEY,
         Binding("slash", "find", "find", key_display="/", tooltip="find a tag, description or location"),
         Binding("f", "show_findings", "findings", tooltip="all findings, the most urgent first"),
         Binding("question_mark", "help", "help", key_display="?", tooltip="what the keys do, and the cautions"),
@@ -132,6 +136,8 @@ class SurveyScreen(OurScreen[None]):
             return action in ("help", "quit")
         if action == "turn_back":
             return self.turned
+        if action == "show_rule":  # where findings are in sight
+            return self.turned or self.has_class("-wide")
         return True
 
     @on(WalkList.Opened)
@@ -169,6 +175,19 @@ class SurveyScreen(OurScreen[None]):
         if row_id:
             self.walk.choose(row_id)
             self.turned = True
+
+    def action_show_rule(self) -> None:
+        """The page of the rule behind a finding of the circuit or board at the cursor."""
+        self.ohmwalk.flow(open_rule(self, self._findings_here()))
+
+    def _findings_here(self) -> Sequence[Finding]:
+        """Those of the circuit or board at the cursor."""
+        survey, place_id, tag = self.survey, self.page.place_id, self.place_words()
+        if survey is None or place_id in survey.index.circuits:
+            result = survey.results.get(place_id) if survey is not None else None
+            return result.findings if result is not None else ()
+        findings = survey.assessment.findings if survey.assessment is not None else ()
+        return [finding for finding in findings if finding.circuit is None and finding.board == tag]
 
     # --- the record
 

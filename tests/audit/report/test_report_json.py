@@ -72,7 +72,16 @@ def test_hostile_report_is_valid_and_free_of_control_codes(
 
 def test_keys_keep_the_formats_order(with_causes: Assessment) -> None:
     output = as_json(with_causes)
-    assert list(output) == ["schema", "program", "site", "summary", "circuits", "findings", "not_judged"]
+    assert list(output) == [
+        "schema",
+        "program",
+        "site",
+        "summary",
+        "circuits",
+        "findings",
+        "not_judged",
+        "rule_changes",
+    ]
     assert list(output["summary"]) == ["circuits", "sound", "watch", "act", "measure", "incomplete"]
     assert list(output["circuits"][0]) == [
         "circuit", "visit", "status", "drop", "causes", "points", "next_reading",

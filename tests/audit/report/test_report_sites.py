@@ -20,6 +20,7 @@ from audit.intake.folder import read_folder
 from audit.opening import judge_site
 from audit.report.as_json import as_json, schema
 from audit.report.content import content_of
+from audit.report.phrases import doubt_rows
 from audit.report.records import as_shown
 from audit.report.text import print_check
 from audit.report.write import FORMS
@@ -35,7 +36,7 @@ every_site = pytest.mark.parametrize("sample", SAMPLE_SITES, ids=lambda sample: 
 @cache
 def judged(sample: SampleSite) -> tuple[Site, Assessment]:
     site = read_folder(Path(str(sample.folder)))
-    return site, judge_site(site)
+    return site, judge_site(site, explain=True)
 
 
 @cache
@@ -61,6 +62,13 @@ def output_of(sample: SampleSite) -> Any:
     return json.loads(json.dumps(as_json(judged(sample)[1])))
 
 
+def sure(probability: float) -> str:
+    """How a probability is written: never as certain."""
+    if probability > 0.999:
+        return "above 99.9 %"
+    return "below 0.1 %" if probability < 0.001 else show(probability, "1", digits=3)
+
+
 def shown(quantity: dict[str, Any]) -> str:
     return show(quantity["value"], quantity["unit"], quantity.get("u"))
 
@@ -77,12 +85,49 @@ def test_json_is_valid_with_and_without_a_report(sample: SampleSite, audience: s
 
 
 @every_site
+def test_what_speaks_for_causes_and_against_them_stands_in_reports(sample: SampleSite) -> None:
+    site, assessment = judged(sample)
+    facts = {
+        fact for result in assessment.circuits for place in result.causes
+        for fact in (*place.speaks_for, *place.speaks_against)
+    }  # fmt: skip
+    assert len(facts) > 10
+    told = {fact for circuit in output_of(sample)["circuits"] for row in circuit["causes"]
+            for fact in (*row.get("for", ()), *row.get("against", ()))}  # fmt: skip
+    assert told == facts
+    for audience in ("electrician", "inspector"):
+        content = content_of(site, assessment, audience)
+        words = " ".join(html.unescape(re.sub(r"<[^>]*>", " ", FORMS[".html"](content))).split())
+        assert not [fact for fact in facts if fact not in words]
+
+
+@every_site
+def test_heat_and_doubts_stand_in_json_and_in_reports(sample: SampleSite) -> None:
+    site, assessment = judged(sample)
+    content = content_of(site, assessment, "electrician")
+    words = " ".join(html.unescape(re.sub(r"<[^>]*>", " ", FORMS[".html"](content))).split())
+    heats = 0
+    for circuit, result in zip(output_of(sample)["circuits"], assessment.circuits, strict=True):
+        for row in circuit["causes"]:
+            if "heat_read" in row and row["probability"] > 0.9:
+                heats += 1
+                assert f"{shown(row['heat_read'])} in it at " in words
+        if "drop" in circuit:
+            squares = sum(doubt["value"] ** 2 for doubt in circuit["drop"]["doubts"].values())
+            assert squares == pytest.approx(circuit["drop"]["excess"]["u"] ** 2)
+            assert result.drop is not None
+            assert all(row.stated in words for row in doubt_rows(result.drop))
+    claimed = [finding for finding in assessment.findings if finding.cause == "bad connection"]
+    assert bool(heats) == bool(claimed)
+
+
+@every_site
 def test_every_number_of_a_finding_is_the_same_in_every_form(sample: SampleSite) -> None:
     findings = output_of(sample)["findings"]
     assert findings
     for finding in findings:
         for name, quantity in finding["numbers"].items():
-            words = f"{name.replace('_', ' ')} {shown(quantity)}"
+            words = f"{name.replace('_', ' ')} {sure(quantity['value']) if name == 'probability' else shown(quantity)}"
             assert not [form for form, text in forms_of(sample).items() if words not in text]
 
 

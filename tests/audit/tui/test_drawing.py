@@ -16,6 +16,8 @@ from audit.report.blocks import Path as CircuitPath
 from audit.report.blocks import Stop as PathStop
 from audit.tui.drawing.board import board_lines
 from audit.tui.drawing.causes import cause_lines
+from audit.tui.drawing.doubts import doubt_lines
+from audit.tui.drawing.margins import margin_lines
 from audit.tui.drawing.next_act import next_act
 from audit.tui.drawing.page import page_lines, view_of
 from audit.tui.drawing.pieces import Line, Piece, apart, cut, fit, line, text_of, width_of, wrapped
@@ -26,7 +28,7 @@ from audit.tui.drawing.walk import head_line, reason_line, stop_line, tag_cells,
 from audit.tui.entry.fields import row_of
 from audit.tui.state import Survey, latest_visit, read_by_visit
 from rules.assess import assess, prepare
-from rules.assessment import NextReading, Place, Status
+from rules.assessment import Doubt, Drop, JointHeat, LoadMargin, NextReading, Place, Status
 from rules.index import Index
 from rules.limits import of
 from rules.record import Circuit, Figure, Load, Run, Site, Source
@@ -266,6 +268,65 @@ def test_causes_are_bars_with_their_place_and_resistance() -> None:
     assert any("━╳━●" in text for text in texts(page_lines(survey, view, 80, 24)))
     stop = next(stop for stop in walk_stops(survey.index) if stop.id == "c1")
     assert text_of(reason_line(stop, survey, 80)).strip().startswith("bad connection in run 1 (0.93) · ")
+
+
+def test_facts_stand_under_their_cause_once() -> None:
+    """What speaks for two causes alike is not said twice, nor anything of a cause of little weight."""
+    survey = survey_of(HUT)
+    shared = "run 1 loses 1.22 V at 12 A against 0.41 V computed, 0.81 ± 0.02 V more"
+    causes = (
+        Place("smaller conductor", "", 0.6, speaks_for=(shared,), speaks_against=("no reading tells it",)),
+        Place("other metal", "", 0.36, speaks_for=(shared, "a second fact")),
+        Place("longer route", "", 0.04, speaks_for=("a third fact",)),
+    )
+    lines = texts(cause_lines(replace(survey.results["c1"], causes=causes), 80))
+    said = " ".join(" ".join(lines).split())
+    assert said.count(shared) == 1
+    assert said.count("a second fact") == 1
+    assert "a third fact" not in said
+    assert [line.split()[0] for line in lines if line.startswith("     ") and line[5] != " "] == [
+        "for",
+        "against",
+        "for",
+    ]
+    assert max(len(line) for line in lines) <= 80
+
+
+def test_a_bad_connection_says_its_resistance_and_its_heat_now_and_at_design() -> None:
+    survey = survey_of(HUT)
+    place = Place("bad connection", "run 1", 0.93, 0.151, 0.155, 0.159)
+    heat = JointHeat("run 1", Figure(6.0, "A"), Figure(5.58, "W", 0.08), Figure(12.0, "A"), Figure(22.3, "W", 0.3))
+    result = replace(survey.results["c1"], causes=(place,), joints=(heat,))
+    _, bar, *extra = texts(cause_lines(result, 80))
+    assert "mΩ" not in bar
+    assert " ".join(" ".join(extra).split()) == (
+        "extra 155 mΩ (151 mΩ to 159 mΩ): 5.58 ± 0.08 W in it at 6 A as read, 22.3 ± 0.3 W at design 12 A"
+    )
+
+
+def test_a_load_gets_with_and_without_the_fault_what_the_lowest_source_leaves() -> None:
+    survey = survey_of(HUT)
+    volts = [Figure(v, "V", u) for v, u in ((38.1, 0.2), (39.7, 0.1))]
+    load = LoadMargin("fan", "p1", worst=volts[0], worst_recorded=volts[1], source_lowest=Figure(40.5, "V"))
+    faulty = replace(survey.results["c1"], margins=(load,), causes=(Place("bad connection", "run 1", 0.93),))
+    said = "fan, source at its lowest 40.5 V: 38.1 ± 0.2 V, 2.4 ± 0.2 V lost; without the fault 39.70 ± 0.10 V"
+    assert said in " ".join(" ".join(texts(margin_lines(faulty, 80))).split())
+    sound = replace(faulty, causes=(Place("as recorded", "", 0.97),))
+    assert len(margin_lines(sound, 80)) == 2
+
+
+def test_the_doubt_budget_is_bars_with_numbers_and_who_states_them() -> None:
+    """30 mV and 40 mV make 50 mV: 36 and 64 % of its square."""
+    survey = survey_of(HUT)
+    figure = Figure(1.0, "V", 0.05)
+    budget = (Doubt("length", 0.04, "length_doubt"), Doubt("meter counts", 0.03))
+    drop = Drop("1", "way", "p1", figure, figure, figure, Figure(8.0, "A"), "two voltages", budget)
+    result = replace(survey.results["c1"], drop=drop)
+    head, first, second = texts(doubt_lines(result, 80))
+    assert head.strip().startswith("measured less computed 1.00 ± 0.05 V")
+    assert first.split() == ["length", "█████▏", "40", "mV", "64", "%", "profile,", "length_doubt"]
+    assert second.split() == ["meter", "counts", "██▉", "30", "mV", "36", "%", "record", "of", "instruments"]
+    assert doubt_lines(replace(result, drop=None), 80) == []
 
 
 # --- what is next

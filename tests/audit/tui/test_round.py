@@ -10,10 +10,12 @@ from pathlib import Path
 import pytest
 from sqlite_utils import Database
 
+from audit.tui.entry.slots import Place, slots_of
 from audit.tui.screens.cautions import CautionScreen
 from audit.tui.screens.survey import SurveyScreen
 from db import connection
 from db.store import SiteStore
+from rules.index import Index
 from rules.record import Acknowledgement, Reading
 from tests.audit.tui.walker import NOON, Walk, cautions_read, site_of, walking
 
@@ -183,6 +185,30 @@ async def test_another_reading_asks_quantity_place_leg_and_value(plant: Path) ->
             0.0009,
         )
         assert reading.instrument == "DMM-1"
+
+
+async def test_a_clamp_is_read_with_the_loads_off(plant: Path) -> None:
+    async with walking(plant) as walk:
+        await walk.at("F2")
+        await walk.keys("o")
+        await walk.shows("Before the first live reading")
+        await walk.keys("y")
+        await walk.enter("cur", "run 1", "pos")
+        await walk.shows("current at run 1: the loads are")
+        await walk.enter("off")
+        await walk.shows("current at run 1, positive leg, loads off")
+        await walk.enter("0.31")
+        await walk.shows("saved: F2 round 1: current at run 1 0.31 A, loads off")
+        reading = walk.record.readings[-1]
+        assert (reading.quantity, reading.at, reading.leg, reading.value, reading.loads_off) == (
+            "current",
+            "run 1",
+            "positive",
+            0.31,
+            "yes",
+        )
+        shown = slots_of(Index(walk.record), Place(reading.circuit_id), reading.visit, "1")
+        assert reading.id not in {slot.saved.id for slot in shown if slot.saved}
 
 
 async def test_a_reading_on_a_busbar(hut: Path) -> None:

@@ -13,7 +13,7 @@ from rules.case import CircuitCase, ties_by
 from rules.diagnosis.block import Block, Model, model_of, stacked
 from rules.diagnosis.carry import with_common
 from rules.diagnosis.extra import line_of
-from rules.diagnosis.gaussian import log_density
+from rules.diagnosis.gaussian import log_density, whitener
 from rules.diagnosis.habits import Habit, Tie
 from rules.diagnosis.problem import Problem
 from rules.diagnosis.shape import shape_of
@@ -147,7 +147,8 @@ def test_an_extra_resistance_carries_the_columns_too(told: Told) -> None:
     block, model = modelled(carried, limits)
     shape = block.shape
     which = np.arange(len(shape.places))
-    along = line_of(block, model).log_density(np.log(np.full((len(which), 1), 0.02)), which)
+    line = line_of(block, model, whitener(model.covariance[:, 0]))
+    along = line.log_density(np.log(np.full((len(which), 1), 0.02)), which)
     for number in range(len(shape.places)):
         others = block.others.copy()
         others[:, shape.place_element[number] - shape.conductors.stop] += 0.02

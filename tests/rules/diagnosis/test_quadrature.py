@@ -55,7 +55,7 @@ def test_a_peak_anywhere_also_past_the_edge(centre: float, log_sd: float) -> Non
     assert float(density.log_evidence[0]) == pytest.approx(expected, abs=1e-6)
     for share in (0.025, 0.5, 0.975):
         assert inside.cdf(float(density.cumulative().quantiles(share)[0][0])) == pytest.approx(share, abs=1e-4)
-    assert float(density.mean(lambda u: u)[0]) == pytest.approx(float(inside.mean()), abs=1e-5)
+    assert float(density.moments(lambda u: u)[0][0]) == pytest.approx(float(inside.mean()), abs=1e-5)
 
 
 @pytest.mark.parametrize(("excess", "u"), [(0.05, 0.01), (0.002, 0.01), (0.4, 0.02), (0.0, 0.05), (0.2, 0.0005)])

@@ -1,0 +1,87 @@
+"""NW04: the building's or rack's metal is the way back."""
+
+from collections.abc import Iterator
+from dataclasses import replace
+
+from rules.assessment import Citation, Finding, NotJudged, Severity
+from rules.calc.doubt import Weighted, total
+from rules.case import CircuitCase
+from rules.errors import MissingData
+from rules.record import Figure, Run
+from rules.rounds import current_at
+from rules.rule import DOUBTS_OF_READINGS, rule
+from rules.runs import TERMINATIONS_A_LEG, figures
+from rules.units import show
+
+
+@rule(
+    id="NW04",
+    title="Structure used as the return",
+    about="circuit",
+    severity=Severity.NOTE,
+    remedy="Read voltages at both ends and the current of the run, so that its way back has a figure; or pull a return conductor.",
+    caution="Current in metalwork takes every way at once: through pipes, screens and earth conductors, where it corrodes and disturbs. "
+    "Do not part bonded metal while it flows: it can spark. Whether it may be a return is for local code and a licensed person.",
+    source=Citation("ohmwalk, format of the site folder", clause="return: structure has no figure of its own", status="our own rule"),
+    also=(Citation("MIL-HDBK-419A", "1987", "bonds of 1 mohm, brackets up to 5 mohm", "from-memory"),),
+    limits=("load_share", "resistance_doubt", "length_doubt", "temperature_doubt", "termination", *DOUBTS_OF_READINGS),
+)  # fmt: skip
+def structure_return(case: CircuitCase) -> Iterator[Finding | NotJudged]:
+    """
+    A run returns through the structure. Its resistance stands in no record; from voltages at both ends and the current it
+    follows: what the loop has beyond the outgoing conductor. What is not known is said with it.
+
+    **Finds**: ``structure`` as the return of run 1: a note; with 24.00 V and 23.60 V at its ends and 8 A, 50 mΩ in the
+    loop, of which the outgoing conductor has 46 mΩ: 4 mΩ come back through the structure.
+
+    **Leaves alone**: a run with a return of its own, and one that shares a return conductor (NW03).
+    """
+    for run in case.runs:
+        if run.return_or_default != "structure":
+            continue
+        found = _resistance(case, run)
+        if isinstance(found, str):
+            yield structure_return.gap(case, run.name, f"the resistance of the structure: {found}")
+        known = (
+            f"it has {show(found.value, 'ohm', found.u)} by what was read"
+            if isinstance(found, Figure)
+            else "its resistance is not known"
+        )
+        yield structure_return.finding(
+            case,
+            run.name,
+            f"{run.name} returns through the structure: {known}; which ways the current takes, whether they stay as they are, and what "
+            "other circuits put into them is not known",
+            numbers={"resistance of the structure": found} if isinstance(found, Figure) else {},
+        )
+
+
+def _resistance(case: CircuitCase, run: Run) -> Figure | str:
+    """What comes back through the structure, in the round of the highest current, or why that is not known."""
+    own = figures([replace(run, return_conductor="", return_size="")], case.context.site, case.limits)[run.id]
+    if own.gap:
+        return own.gap
+    leg = own.legs[0]
+    out_ohm = leg.conductor_ohm + TERMINATIONS_A_LEG * leg.joint_ohm
+    branch = next((branch for branch, other in case.tree.ends.items() if other.id == run.id), "")
+    best: tuple[float, Figure] | None = None
+    reason = f"no voltages at both ends of {run.name} and its current were read"
+    for this in case.rounds:
+        if run.from_point not in this.volts or branch not in this.volts:
+            continue
+        try:
+            amps, amps_u = total(current_at(branch, this, case.tree, case.limits).terms)
+        except MissingData as error:
+            reason = str(error)
+            continue
+        less = [Weighted(-term.weight, term.shown) for term in this.volts[branch]]
+        volts, volts_u = total([*this.volts[run.from_point], *less])
+        if amps and (best is None or abs(amps) > best[0]):
+            loop = volts / amps
+            relative = (own.length_u**2 + case.limits["resistance_doubt.relative"] ** 2) ** 0.5
+            warm = leg.slope_ohm_per_k * own.temperature_u_k
+            u = (
+                (volts_u / amps) ** 2 + (loop * amps_u / amps) ** 2 + (relative * leg.conductor_ohm) ** 2 + warm**2
+            ) ** 0.5
+            best = abs(amps), Figure(loop - out_ohm, "ohm", u)
+    return best[1] if best is not None else reason

@@ -1,0 +1,107 @@
+"""What a meter may be connected to, and what a place asks of it: measurement categories and voltages."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from rules.index import Index
+from rules.record import CATEGORIES, Board, Circuit, Instrument, Source
+
+_PRINTED = re.compile(r"\bCAT\s*(IV|III|II|I)\b(?:\s*[:/,]?\s*(\d+(?:\.\d+)?)\s*V)?", re.IGNORECASE)
+
+
+@dataclass(frozen=True, slots=True)
+class Rating:
+    """One of the ratings printed on a meter."""
+
+    category: str
+    """``CAT III``; empty where a voltage alone is known."""
+    voltage_v: float | None
+    """[V]"""
+
+    @property
+    def rank(self) -> int:
+        """0 for a meter of no category that a place may ask for."""
+        return rank(self.category)
+
+
+def rank(category: str) -> int:
+    """
+    Place of a category among those that a place may ask for, 0 for none of them.
+
+    >>> rank("CAT I"), rank("CAT II"), rank("CAT IV")
+    (0, 1, 3)
+    """
+    return CATEGORIES.index(category) + 1 if category in CATEGORIES else 0
+
+
+def ratings_of(row: Instrument) -> tuple[Rating, ...]:
+    """
+    The ratings of a range of a meter; none where nothing is recorded that can be read.
+
+    The recorded voltage holds for every category that is printed without one, and bounds the others.
+
+    >>> [str(each) for each in ratings_of(Instrument(id="m", category="CAT III 600 V, CAT IV 300 V"))]
+    ["Rating(category='CAT III', voltage_v=600.0)", "Rating(category='CAT IV', voltage_v=300.0)"]
+    >>> ratings_of(Instrument(id="m", rated_voltage_v=600.0))
+    (Rating(category='', voltage_v=600.0),)
+    """
+    most = row.rated_voltage_v
+    printed = [
+        Rating(f"CAT {match[1].upper()}", _least(float(match[2]) if match[2] else None, most))
+        for match in _PRINTED.finditer(row.category)
+    ]
+    return tuple(printed) or ((Rating("", most),) if most is not None else ())
+
+
+def _least(one: float | None, other: float | None) -> float | None:
+    known = [value for value in (one, other) if value is not None]
+    return min(known) if known else None
+
+
+def highest_v(place: Circuit | Board | Source, index: Index) -> float | None:
+    """The highest voltage of the sources that feed a place: recorded, else working, else nominal. [V]"""
+    known = [
+        volts
+        for source in sources_of(place, index)
+        if (volts := source.highest_voltage_v or source.working_or_nominal_v) is not None
+    ]
+    return max(known, default=None)
+
+
+def sources_of(place: Circuit | Board | Source, index: Index) -> tuple[Source, ...]:
+    """The sources that feed a place, over all boards and circuits between."""
+    waiting: list[Circuit | Board | Source] = [place]
+    seen: dict[str, Circuit | Board | Source] = {}
+    while waiting:
+        here = waiting.pop()
+        if here.id in seen:
+            continue
+        seen[here.id] = here
+        if not isinstance(here, Source):
+            feeds = here.fed_by if isinstance(here, Board) else (here.fed_from,)
+            waiting += [row for feed in feeds if feed is not None and (row := index.named(feed)) is not None]
+    return tuple(row for row in seen.values() if isinstance(row, Source))
+
+
+def asked_of(place: Circuit | Board | Source, index: Index) -> tuple[Board | Source | None, str]:
+    """Whose measurement category holds at a place, the board or source that a circuit is on, and which it is."""
+    on = index.named(place.fed_from) if isinstance(place, Circuit) and place.fed_from is not None else place
+    return (None, "") if on is None or isinstance(on, Circuit) else (on, on.category)
+
+
+def words(ratings: Sequence[Rating]) -> str:
+    """
+    Ratings as they are said.
+
+    >>> words([Rating("CAT III", 600.0), Rating("CAT IV", None)]), words([Rating("", 600.0)])
+    ('CAT III 600 V, CAT IV', '600 V')
+    """
+    return ", ".join(
+        " ".join(
+            part for part in (each.category, f"{each.voltage_v:g} V" if each.voltage_v is not None else "") if part
+        )
+        for each in ratings
+    )

@@ -1,0 +1,176 @@
+"""Rise of terminations and devices over similar ones and over the ambient, by temperature readings."""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+from rules.assessment import Severity
+from rules.calc.doubt import Weighted, total
+from rules.case import CircuitCase
+from rules.decision import Verdict, against_limit
+from rules.errors import MissingData
+from rules.heat import full_a
+from rules.meters import worth
+from rules.record import Figure, Reading
+from rules.rounds import Round, current_at
+from rules.units import show
+
+PLACE = re.compile(r"device|run (\d+) (start|end)")
+ALIKE = 0.1
+"""Relative: two terminations whose currents differ by no more are similar. Our own default."""
+
+
+@dataclass(frozen=True, slots=True)
+class Rise:
+    """One termination above one reference, in one round."""
+
+    place: str
+    round: str
+    read: Figure
+    """Its temperature. [degC]"""
+    rise: Figure
+    """[K]"""
+    above: str
+    """``run 1 start, the coolest similar one``, ``the ambient``."""
+    scaled: Figure
+    """At the largest current; the rise as read where it is not scaled. [K]"""
+    how: str
+    """At which currents, and whether it was scaled."""
+    full: bool
+    """Whether ``scaled`` is at full load."""
+    severity: Severity | None
+    """``None`` where it conforms or is not settled."""
+    open: bool
+    """Not settled."""
+
+    @property
+    def words(self) -> str:
+        """As a sentence of a finding."""
+        return (
+            f"{show(self.read.value, 'degC', self.read.u)} was read at {self.place} in round {self.round}, "
+            f"{show(self.rise.value, 'K', self.rise.u)} above {self.above}{self.how}"
+        )
+
+
+def rises_of(case: CircuitCase) -> dict[str, Rise]:
+    """By place: the rise that says most."""
+    found: dict[str, Rise] = {}
+    for this in case.rounds:
+        for rise in _of_round(case, this):
+            known = found.get(rise.place)
+            if known is None or _weight(rise) > _weight(known):
+                found[rise.place] = rise
+    return found
+
+
+def _weight(rise: Rise) -> tuple[int, bool, float]:
+    return -(rise.severity.rank if rise.severity is not None else len(Severity)), rise.open, rise.scaled.value
+
+
+def _of_round(case: CircuitCase, this: Round) -> Iterator[Rise]:
+    read: dict[str, list[Reading]] = {}
+    for row in this.readings:
+        if row.quantity == "temperature":
+            read.setdefault(row.at, []).append(row)
+    places = {place: _mean(case, rows) for place, rows in read.items() if PLACE.fullmatch(place)}
+    amps = {place: _current(case, place, this) for place in places}
+    ambient = _ambient(case, read.get("ambient", []))
+    for place, temperature in places.items():
+        similar = {
+            other: value
+            for other, value in places.items()
+            if other != place and (other == "device") == (place == "device") and _are_alike(amps[place], amps[other])
+        }
+        if similar:
+            coolest = min(similar, key=lambda other: similar[other].value)
+            words = f"{coolest}, the coolest similar one"
+            yield _rise(case, this, place, temperature, similar[coolest], words, amps[place], "similar")
+        if ambient is not None:
+            yield _rise(case, this, place, temperature, *ambient, amps[place], "ambient")
+
+
+def _rise(
+    case: CircuitCase,
+    this: Round,
+    place: str,
+    read: Figure,
+    reference: Figure,
+    above: str,
+    amps: Figure | None,
+    against: str,
+) -> Rise:
+    limits = case.limits
+    rise = Figure(read.value - reference.value, "K", math.hypot(read.u or 0.0, reference.u or 0.0))
+    factor, factor_u, how, full = _scale(case, place, amps)
+    scaled = Figure(
+        factor * rise.value, "K", math.hypot(factor * (rise.u or 0.0), factor_u * rise.value)
+    )  # of a rise below zero nothing follows
+    watch_k, soon_k = limits[f"joint_rise.{against}_watch_k"], limits[f"joint_rise.{against}_soon_k"]
+    watch = against_limit(scaled.value, watch_k, scaled.u or 0.0, limits)
+    severity = Severity.WATCH if watch is Verdict.FAILS else None
+    if against_limit(scaled.value, soon_k, scaled.u or 0.0, limits) is Verdict.FAILS:
+        severity = Severity.SOON
+    told = how.format(show(scaled.value, "K", scaled.u))
+    return Rise(place, this.name, read, rise, above, scaled, told, full, severity, watch is Verdict.OPEN)
+
+
+def _scale(case: CircuitCase, place: str, amps: Figure | None) -> tuple[float, float, str, bool]:
+    """By what a rise grows up to the largest current, its doubt, its words, and whether it is known at all."""
+    limits, most = case.limits, full_a(case, _branch(case, place))
+    if amps is None or not amps.value:
+        return 1.0, 0.0, "; no current was read, so that it is not scaled to full load", False
+    at = f" at {show(amps.value, 'A', amps.u)}"
+    if most is None or most <= amps.value:
+        return 1.0, 0.0, at, True
+    ratio, power = most / amps.value, limits["joint_scaling.power"]
+    if amps.value < limits["joint_scaling.least_share"] * most:
+        return 1.0, 0.0, f"{at}; too little of the {show(most, 'A', digits=3)} of full load to scale it", False
+    factor = ratio**power
+    words = f"{at}; at {show(most, 'A', digits=3)} of full load {{}}, by the square of the current (practice)"
+    if power != 2:
+        words = words.replace("by the square of the current", f"by the current to the power of {power:g}")
+    return factor, power * factor * (amps.u or 0.0) / amps.value, words, True
+
+
+def _current(case: CircuitCase, place: str, this: Round) -> Figure | None:
+    try:
+        current = current_at(_branch(case, place), this, case.tree, case.limits)
+    except MissingData:
+        return None
+    value, u = total(current.terms)
+    return Figure(abs(value), "A", math.hypot(u, *(share for _, share in current.shares)))
+
+
+def _are_alike(one: Figure | None, other: Figure | None) -> bool:
+    if one is None or other is None:
+        return False
+    return abs(one.value - other.value) <= ALIKE * max(one.value, other.value)
+
+
+def _branch(case: CircuitCase, place: str) -> str:
+    matched = PLACE.fullmatch(place)
+    number = int(matched[1]) if matched and matched[1] else 0
+    return next((point for point, run in case.tree.ends.items() if run.number == number), "way")
+
+
+def _ambient(case: CircuitCase, rows: list[Reading]) -> tuple[Figure, str] | None:
+    if rows:
+        return _mean(case, rows), "the ambient"
+    recorded = case.context.site.ambient_temperature_c
+    if recorded is None:
+        return None
+    return Figure(
+        recorded, "degC", case.limits["temperature_doubt.air"]
+    ), f"the site's ambient of {show(recorded, 'degC')}"
+
+
+def _mean(case: CircuitCase, rows: list[Reading]) -> Figure:
+    shown = [worth(row, case.context.index, case.limits).shown for row in rows]
+    return Figure(*_with_unit(total([Weighted(1 / len(shown), one) for one in shown])))
+
+
+def _with_unit(found: tuple[float, float]) -> tuple[float, str, float]:
+    return found[0], "degC", found[1]
