@@ -8,7 +8,7 @@ opened it.
 from __future__ import annotations
 
 import sqlite3
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from contextlib import closing, contextmanager, suppress
 from pathlib import Path
 from types import TracebackType
@@ -17,7 +17,7 @@ from typing import Any
 from db.connection import made_whole, new_site, open_site
 from db.errors import Damaged, NotASiteFile, SiteReadOnly, translated
 from db.history import Entry, history
-from db.lookup import select
+from db.lookup import find, select
 from db.opened import Opened
 from db.rows import from_columns, settings_from_columns
 from db.save import Save
@@ -26,7 +26,7 @@ from db.schema import SITE
 from db.tables import no_collection
 from db.undo import undoing
 from db.verify import problems, refuse_torn
-from rules.record import TABLES, Site
+from rules.record import TABLES, Row, Site
 
 
 class SiteStore:
@@ -118,19 +118,26 @@ class SiteStore:
 
     # --- reading
 
-    def site(self) -> Site:
-        """The whole record, its rows in their order; equal to what was saved."""
+    def site(self, tables: Collection[str] = tuple(TABLES)) -> Site:
+        """The record, its rows in their order; whole, equal to what was saved, unless only some tables are asked for."""
         with translated(self.path), no_collection():
             with self._reading() as connection:
                 # Everything is fetched first: while this reads, no one else can finish a save.
                 settings = connection.execute(select(SITE)).fetchone()
-                found = {table: connection.execute(select(table)).fetchall() for table in TABLES}
+                found = {table: connection.execute(select(table)).fetchall() for table in tables}
             if settings is None:
                 raise Damaged("it has no settings")
-            tables: dict[str, Any] = {}
-            for table in TABLES:
-                tables[table] = tuple(from_columns(table, found.pop(table)))
-            return Site(**settings_from_columns(settings), **tables)
+            rows: dict[str, Any] = {}
+            for table in tables:
+                rows[table] = tuple(from_columns(table, found.pop(table)))
+            return Site(**settings_from_columns(settings), **rows)
+
+    def rows(self, table: str, ids: Collection[str]) -> tuple[Row, ...]:
+        """Some rows of a table, in their order; those that are not there are left out."""
+        with translated(self.path):
+            with self._reading() as connection:
+                found = [row for id_ in ids if (row := find(connection, table, id_)) is not None]
+            return tuple(from_columns(table, found))
 
     @property
     def version(self) -> tuple[int, int]:

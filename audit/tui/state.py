@@ -27,6 +27,8 @@ class Survey:
     """By visit: ids of the circuits on which something was read."""
     read_only: bool = False
     """The file may not be written."""
+    is_outline: bool = False
+    """Runs, loads and readings are not read yet."""
     context: Context | None = None
     """What circuits are judged in; of an earlier state of the record until this one is judged."""
     results: Mapping[str, CircuitResult] = field(default_factory=dict)

@@ -141,14 +141,14 @@ def head_line(survey: Survey, width: int, *, read_only: bool) -> Line:
     """What site and visit are at hand, and how the walk stands."""
     circuits = survey.index.circuits
     read = len(survey.read_now & circuits.keys())
-    said = [piece(f"{read} of {len(circuits)} read")] if circuits else []
+    said = [piece(f"{read} of {len(circuits)} read")] if circuits and not survey.is_outline else []
     for status in (Status.ACT, Status.WATCH):
         count = survey.count_of(status)
         said += [piece("   "), piece(f"{count} {status}", str(status))] if count else []
     if survey.assessment is None and circuits:
-        said += [piece("   "), piece("judging …", "quiet")]
+        said += [piece("   "), piece("reading …" if survey.is_outline else "judging …", "quiet")]
     left = [piece(" "), piece(survey.site.name, "strong"), piece("   ")]
-    left.append(piece(survey.visit or "not visited yet", "quiet"))
+    left.append(piece(survey.visit or ("" if survey.is_outline else "not visited yet"), "quiet"))
     if read_only:
         left += [piece("   "), piece("read only", "act")]
     return apart(tuple(left), (*said, piece(" ")), width)
