@@ -320,7 +320,7 @@ def test_what_cannot_be_taken_in_is_told(sources: list[str], line: str, site: Pa
 
 
 def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plant: Path, capsys: Captured) -> None:
-    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "ours.toml"')
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "telecom-48"', 'limits = "ours.toml"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
     (plant / "ours.toml").write_text('[rules.VD91]\noff = true\nreason = "of no use here"\n', encoding="utf-8")
     line = "site.toml:limits: ours.toml: there is no rule 'VD91'; did you mean 'VD01'?"
@@ -329,7 +329,7 @@ def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plan
 
 
 def test_a_profile_that_is_not_there_is_refused_before_it_stops_every_check(plant: Path, capsys: Captured) -> None:
-    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "genral"')
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "telecom-48"', 'limits = "genral"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
     (line,) = refused(["intake", "a.ohmwalk", str(plant)], capsys)
     assert line.startswith("site.toml:limits: there is no limits profile 'genral'")
