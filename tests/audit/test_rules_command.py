@@ -182,7 +182,7 @@ def test_json_of_all_and_of_one(plant: Path, capsys: pytest.CaptureFixture[str])
     assert list(told) == ["schema", "program", "limits", "rules"]
     assert (told["schema"], told["limits"]) == ("ohmwalk.rules/1", "ours.toml")
     by_id = {rule["rule"]: rule for rule in told["rules"]}
-    assert by_id["RD11"]["about"] == ["circuit", "board", "source"]
+    assert (by_id["RD11"]["about"], by_id["RD11"]["also_about"]) == ("circuit", ["board", "source"])
     assert list(by_id) == [rule.id for rule in catalogue()]
     assert by_id["VD01"]["in_force"] == {"off": False, "severity": "note", "reason": "agreed in writing"}
     assert by_id["RD06"]["in_force"]["off"] is True
