@@ -62,7 +62,7 @@ def plant(tmp_path: Path) -> Path:
     shutil.copytree(Path(str(sample_site("plant").folder)), folder)
     settings = folder / "site.toml"
     text = settings.read_text(encoding="utf-8")
-    settings.write_text(text.replace('limits = "general"', 'limits = "ours.toml"'), encoding="utf-8")
+    settings.write_text(text.replace('limits = "telecom-48"', 'limits = "ours.toml"'), encoding="utf-8")
     (folder / "ours.toml").write_text(OURS, encoding="utf-8")
     return folder
 
