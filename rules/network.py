@@ -93,6 +93,8 @@ class Network:
         self.unknown_load = wiring.unknown
         """By node: a load there whose figure is not known."""
         self._unknown_converters()
+        self.unknown_loads = frozenset(self.unknown_load.values())
+        """What each of them is called: a load on its circuit, or a converter."""
         self._below = self._unknown_below()
         self._load = self._loads()
         legs = figures.legs
@@ -290,17 +292,23 @@ class Network:
     def _unknown_converters(self) -> None:
         """A converter draws what is not known where its efficiency, or a load behind it, is not."""
         takes = self._wiring.takes
+        converters = [source for source in self._index.site.sources if source.id in takes]
+        behind = {source.id for node in self.unknown_load for source in self._above(node)} if converters else set()
         for _ in range(len(takes)):
-            behind = {list(self.way_up(node))[-1]: name for node, name in self.unknown_load.items()}
-            for source in self._index.site.sources:
-                if source.id not in takes or takes[source.id] in self.unknown_load:
+            for source in converters:
+                if takes[source.id] in self.unknown_load:
                     continue
-                held = [node for node in behind if source.id in {one.id for one in self.sources_at(node)}]
-                if source.efficiency_percent is None or source.working_or_nominal_v is None or held:
+                if source.efficiency_percent is None or source.working_or_nominal_v is None or source.id in behind:
                     self.unknown_load[takes[source.id]] = source.tag
+                    behind |= {one.id for one in self._above(takes[source.id])}
                     break
             else:
                 return
+
+    def _above(self, node: int) -> tuple[Source, ...]:
+        """The sources that hold the busbar which a node hangs on."""
+        *_, held = self.way_up(node)
+        return self.sources_at(held)
 
     def _unknown_below(self) -> dict[int, str]:
         """By branch: one load beneath it whose figure is not known; in a mesh, beneath any of its branches."""
