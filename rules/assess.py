@@ -35,7 +35,7 @@ from rules.verdict import agrees, unsettled, unsound
 
 TOGETHER = 1000
 """Circuits whose cases are kept until it is clear what to read next on them."""
-FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "NW01", "NW02")
+FROM_THE_RECORD = ("RC01", "VD01", "VD03", "LV01", "LV02", "LV03", "NW01", "NW02", "NW03", "CP01", "CP02")
 
 
 def assess(site: Site, limits: Limits, explain: bool = False) -> Assessment:

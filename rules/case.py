@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-import re
 from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
@@ -30,8 +29,6 @@ from rules.rounds import Round, Tree, current_at, drop_of, judged, rounds_of, te
 from rules.routes import Shared, first_ends
 from rules.runs import SHARED, Figures
 from rules.worst import largest_current_a, worst_of
-
-RUN = re.compile(r"run \d+")
 
 GAP_COLLAPSE = "the voltage collapses behind {}: the path there cannot carry what hangs on it"
 
@@ -297,7 +294,7 @@ def _return_leg(circuit: Circuit, index: Index) -> str:
 
 
 def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
-    """Whether a reading enters a voltage, a current, a drop over both legs or a conductor's temperature."""
+    """Whether a reading enters a voltage, a current, a drop over both legs or a temperature."""
     if reading.is_unloaded:
         return reading.quantity in ("current", "residual")  # what a clamp shows without a current
     this = next(round_ for round_ in rounds if round_.name == reading.round)
@@ -305,9 +302,8 @@ def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
         return reading.at in this.volts
     if reading.quantity == "drop":
         return (reading.at, reading.to) in this.direct
-    if reading.quantity == "temperature":
-        return bool(RUN.fullmatch(reading.at))
-    return reading.quantity == "current"
+    # a temperature enters the computed drop, or HT02; a joint HT01 or HT03, which say what they miss
+    return reading.quantity in ("current", "temperature", "joint")
 
 
 def _name(reading: Reading) -> str:

@@ -5,10 +5,11 @@ from __future__ import annotations
 import math
 from collections import defaultdict
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 from rules.network import StateName
-from rules.runs import Carrying, record_variance
+from rules.runs import Carrying, RunFigures, record_variance
 
 if TYPE_CHECKING:
     from rules.case import Context
@@ -44,12 +45,20 @@ def drop_u(context: Context, branches: Sequence[int], state: StateName) -> float
         run_id = network.run_at[branch]
         if run_id:
             path = parts[network.circuit_at[branch]]
-            path.append(Carrying(context.figures[run_id], amps))
+            path.append(Carrying(_in_state(context.figures[run_id], state), amps))
             if branch in network.return_at:
-                path.append(Carrying(network.return_at[branch].figures, float(solved.back_a[branch])))
+                back = _in_state(network.return_at[branch].figures, state)
+                path.append(Carrying(back, float(solved.back_a[branch])))
         else:
             variance += (limits["device_doubt.relative"] * float(network.cold_ohm[branch]) * amps) ** 2
     at_exact_currents = math.sqrt(variance + sum(record_variance(path, limits) for path in parts.values()))
     growth = network.growth(state, branches[0], int(network.parent[branches[-1]]))
     source_v = abs(float(solved.voltage_v[list(network.way_up(branches[0]))[-1]]))
     return min(growth * at_exact_currents, source_v)
+
+
+def _in_state(known: RunFigures, state: StateName) -> RunFigures:
+    """A run with its conductors as warm as a state has them."""
+    if state == "design":
+        return known
+    return replace(known, conductor_ohm=known.conductor_hot_ohm if state == "lowest" else known.conductor_cold_ohm)

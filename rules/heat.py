@@ -11,6 +11,7 @@ from typing import TypeAlias
 
 from rules.calc.conductor import REFERENCE_AREA_MM2
 from rules.calc.doubt import Weighted, total
+from rules.calc.joint_heat import joint_heat_w
 from rules.case import CircuitCase, Context, SimilarJoint
 from rules.decision import Verdict, against_limit
 from rules.diagnosis.hypotheses import BAD_CONNECTION
@@ -64,7 +65,8 @@ class Joint:
         """Heat at the largest current. [W]"""
         if self.full_a is None:
             return None
-        return Figure(self.ohm.value * self.full_a**2, "W", (self.ohm.u or 0.0) * self.full_a**2)
+        per_ohm = float(joint_heat_w(1.0, self.full_a))  # an ohm that was read may be below zero by its doubt
+        return Figure(self.ohm.value * per_ohm, "W", (self.ohm.u or 0.0) * per_ohm)
 
 
 def joints_read(case: CircuitCase) -> tuple[Joint, ...]:

@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import Literal, TypeAlias
 
 import numpy as np
@@ -198,6 +199,31 @@ class Network:
         if self._row[node] >= 0:
             return f"{self._figures.runs[int(self._row[node])].name} of {circuit.tag}"
         return f"the {'way' if circuit.device == 'none' else 'device'} of {circuit.tag}"
+
+    @cached_property
+    def circuits_at(self) -> dict[int, list[str]]:
+        """Ids of the circuits whose ``bus`` each node is, by node."""
+        found: dict[int, list[str]] = {}
+        for circuit_id, nodes in self.nodes_of.items():
+            found.setdefault(nodes["bus"], []).append(circuit_id)
+        return found
+
+    @cached_property
+    def rows_at(self) -> dict[int, list[tuple[str, str]]]:
+        """Table and id of the sources and boards whose busbar each node is, by node."""
+        found: dict[int, list[tuple[str, str]]] = {}
+        for row, node in self.node_of.items():
+            found.setdefault(node, []).append(row)
+        return found
+
+    @cached_property
+    def circuits_below(self) -> dict[int, list[str]]:
+        """Ids of the circuits that hang on each held node, whatever lies between, by node."""
+        root = self._shape.forest.climb(self._shape.forest.is_root)
+        found: dict[int, list[str]] = {}
+        for circuit_id, nodes in self.nodes_of.items():
+            found.setdefault(int(root[nodes["bus"]]), []).append(circuit_id)
+        return found
 
     def sources_at(self, held: int) -> tuple[Source, ...]:
         """The sources that hold a node without a parent."""

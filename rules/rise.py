@@ -9,6 +9,7 @@ from dataclasses import dataclass
 
 from rules.assessment import Severity
 from rules.calc.doubt import Weighted, total
+from rules.calc.joint_heat import rise_at
 from rules.case import CircuitCase
 from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
@@ -125,10 +126,10 @@ def _scale(case: CircuitCase, place: str, amps: Figure | None) -> tuple[float, f
     at = f" at {show(amps.value, 'A', amps.u)}"
     if most is None or most <= amps.value:
         return 1.0, 0.0, at, True
-    ratio, power = most / amps.value, limits["joint_scaling.power"]
+    power = limits["joint_scaling.power"]
     if amps.value < limits["joint_scaling.least_share"] * most:
         return 1.0, 0.0, f"{at}; too little of the {show(most, 'A', digits=3)} of full load to scale it", False
-    factor = ratio**power
+    factor = float(rise_at(1.0, amps.value, most, power))
     words = f"{at}; at {show(most, 'A', digits=3)} of full load {{}}, by the square of the current (practice)"
     if power != 2:
         words = words.replace("by the square of the current", f"by the current to the power of {power:g}")

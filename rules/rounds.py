@@ -134,10 +134,13 @@ def rounds_of(readings: Sequence[Reading], tree: Tree, index: Index, limits: Lim
     for reading in readings:
         if not reading.is_unloaded:
             by_name[reading.round].append(reading)
-    return tuple(_round(name, rows, tree, index, limits) for name, rows in by_name.items())
+    wander = _wander(by_name, limits)
+    return tuple(_round(name, rows, tree, index, limits, *wander[name]) for name, rows in by_name.items())
 
 
-def _round(name: str, readings: list[Reading], tree: Tree, index: Index, limits: Limits) -> Round:
+def _round(
+    name: str, readings: list[Reading], tree: Tree, index: Index, limits: Limits, wander: float, freedom: int
+) -> Round:
     pairs: dict[str, list[Reading]] = defaultdict(list)
     poles: dict[tuple[str, str], list[Reading]] = defaultdict(list)
     drops: dict[tuple[str, str, str], list[Reading]] = defaultdict(list)
@@ -151,7 +154,6 @@ def _round(name: str, readings: list[Reading], tree: Tree, index: Index, limits:
             drops[reading.at, reading.to, reading.leg or "both"].append(reading)
         elif reading.quantity == "current" and (point := _branch(reading.at, tree)):
             amps[point].append(reading)
-    wander, freedom = _wander(pairs.values(), limits)
     poor: list[str] = []
     shown: dict[str, Shown] = {}
     for row in readings:
@@ -189,22 +191,28 @@ def _branch(at: str, tree: Tree) -> str:
     return next((point for point, run in tree.ends.items() if run.number == number), "")
 
 
-def _wander(pairs: Iterable[list[Reading]], limits: Limits) -> tuple[float, int]:
+def _wander(by_name: Mapping[str, Sequence[Reading]], limits: Limits) -> dict[str, tuple[float, int]]:
     """
-    Standard deviation of repeated readings of one point in the round with its freedom, else the profile's. [V]
+    By round: standard deviation of repeated readings of one point with its freedom, else the profile's. [V]
 
+    Rounds with repeats count together: of three readings one in a hundred shows a tenth of what the source wanders.
     By one meter: two meters at one point differ by their gains, which is no wander.
     """
-    by_meter: dict[tuple[int, str, float | None], list[Reading]] = defaultdict(list)
-    for number, rows in enumerate(pairs):
-        for row in rows:
-            by_meter[number, row.instrument, row.full_scale].append(row)
-    repeated = [rows for rows in by_meter.values() if len(rows) > 1]
-    if not repeated:
-        return limits["source.wander_v"], 0
-    freedom = sum(len(rows) - 1 for rows in repeated)
-    squares = sum(stdev(row.value for row in rows) ** 2 * (len(rows) - 1) for rows in repeated)
-    return math.sqrt(squares / freedom), freedom
+    squares, freedom = dict.fromkeys(by_name, 0.0), dict.fromkeys(by_name, 0)
+    for name, readings in by_name.items():
+        by_meter: dict[tuple[str, str, float | None], list[float]] = defaultdict(list)
+        for row in readings:
+            if row.quantity == "voltage" and row.leg in ("", "both"):
+                by_meter[row.at, row.instrument, row.full_scale].append(row.value)
+        for values in by_meter.values():
+            if len(values) > 1:
+                freedom[name] += len(values) - 1
+                squares[name] += stdev(values) ** 2 * (len(values) - 1)
+    together = sum(freedom.values())
+    if not together:
+        return dict.fromkeys(by_name, (limits["source.wander_v"], 0))
+    repeated = math.sqrt(sum(squares.values()) / together), together
+    return {name: repeated if freedom[name] else (limits["source.wander_v"], 0) for name in by_name}
 
 
 def current_at(point: str, this: Round, tree: Tree, limits: Limits) -> Current:

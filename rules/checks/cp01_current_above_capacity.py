@@ -3,8 +3,8 @@
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
-from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
+from rules.decision import Verdict, against_limit
 from rules.errors import RulesError
 from rules.loading import Bounds, bounds_of, current_of, read_in, together
 from rules.record import Figure, Run
@@ -29,8 +29,8 @@ ROUNDING = 1e-9
 )
 def current_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    What flows in a run with every load on, at the source voltage that makes it largest, or what a clamp showed beyond
-    doubt, is more than its conductors may carry as installed: the printed figure times the factors for ambient and
+    More flows in a run than its conductors may carry as installed. It flows with every load on, at the source voltage that
+    makes it largest, or a clamp showed it; they may carry the printed figure times the factors for ambient and
     grouping, and no more than the terminations allow.
 
     What the record does not say counts as the lowest (method A2, PVC). A current between that and the most favourable case
@@ -69,6 +69,11 @@ def _of_run(case: CircuitCase, run: Run, gaps: list[tuple[str, str]]) -> Iterato
         yield _found(
             case, run, bounds, read[1], f"were read in round {read[0]}", Severity.IMMEDIATE if urgent else None
         )
+    elif (
+        read is not None and against_limit(read[1].value, bounds.most_a, read[1].u or 0.0, case.limits) is Verdict.OPEN
+    ):
+        said = show(read[1].value, "A", read[1].u)
+        gaps.append((run.name, f"not settled: {said} read in round {read[0]} against {bounds.words}"))
     elif amps is not None and _above(amps, bounds.least_a):
         gaps.append((run.name, f"{show(amps, 'A', digits=3)} with every load on against {bounds.words}"))
 
@@ -92,4 +97,4 @@ def _above(amps: float, limit_a: float) -> bool:
 
 
 def _is_past(read: Figure, limit_a: float, case: CircuitCase) -> bool:
-    return probability_above(read.value, limit_a, read.u or 0.0) >= case.limits["decision.beyond_doubt"]
+    return against_limit(read.value, limit_a, read.u or 0.0, case.limits) is Verdict.FAILS

@@ -24,7 +24,7 @@ from rules.units import show_against
     source=Citation("IEC 60364-4-43", "2008", "433.1: rated current not above capacity", "from-memory"),
     also=(
         Citation("NFPA 70", "2023", "240.4(B): the next standard rating up to 800 A", "from-memory"),
-        Citation("NFPA 70", "2023", "240.4(D): small conductors"),
+        Citation("NFPA 70", "2023", "240.4(D): small conductors", "from-memory"),
     ),
     limits=("capacity",),
 )

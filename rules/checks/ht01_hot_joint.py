@@ -21,16 +21,19 @@ from rules.units import show
     caution="Such a joint may glow for hours without tripping anything, and burn who touches it. Do not tighten it live: it can open under "
     "load and draw an arc, and the meter on millivolts then has the full system voltage. Start on auto volts.",
     source=Citation(
-        "NBSIR 76-1011", "1976", "glowing joints of 5 W at 0.8 A and 35 W at 15 A; the classes are our own"
+        "NBSIR 76-1011",
+        "1976",
+        "glowing joints of 5 W at 0.8 A and 35 W at 15 A; the classes are our own",
+        "from-memory",
     ),
-    also=(Citation("JCGM 106", "2012", "8.3"),),
+    also=(Citation("JCGM 106", "2012", "8.3", "from-memory"),),
     limits=("heat", "termination", "decision", "load_share", *DOUBTS_OF_READINGS),
 )
 def heat_in_a_joint(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    Millivolts across a termination times its current, or its resistance times the square of the design current, pass the
-    profile's watts beyond doubt, and it has more resistance than a healthy termination of its size. Severity follows the
-    watts: soon from 2 W, immediate from 10 W on, whatever the percentage of nominal.
+    A termination turns more watts into heat than the profile allows. Its millivolts times its current, or its resistance
+    times the square of the design current, pass them beyond doubt, and it has more resistance than a healthy termination of
+    its size. Severity follows the watts: soon from 2 W, immediate from 10 W on, whatever the percentage of nominal.
 
     It stands by the reading alone, also where the diagnosis takes the reading for a slip or holds such a resistance for
     out of its range. A joint that VD02 claims is told there, with its heat.

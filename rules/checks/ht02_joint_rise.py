@@ -19,10 +19,10 @@ from rules.units import show
     "Then isolate, cut back and remake it.",
     caution="A probe on a live terminal needs insulation for the full system voltage. Bare metal shows cooler in an infrared picture than "
     "it is. Do not tighten a hot joint live.",
-    source=Citation("ANSI/NETA MTS", "", "Table 100.18, seen second-hand"),
+    source=Citation("ANSI/NETA MTS", "", "Table 100.18, seen second-hand", "verified"),
     also=(
         Citation("rise of a joint by the square of its current", status="common practice, no source"),
-        Citation("NFPA 70B", "", "7.4.5: at 40 % of normal load or more, seen second-hand"),
+        Citation("NFPA 70B", "", "7.4.5: at 40 % of normal load or more, seen second-hand", "from-memory"),
     ),
     limits=(
         "joint_rise",
@@ -37,10 +37,11 @@ from rules.units import show
 )
 def joint_rise(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    A termination or device was read hotter than the coolest similar one of the same round and current, or than the
-    ambient, beyond doubt, when its rise is scaled to full load by the square of the current: practice, since a rise follows
-    the current to the power of 1.5 to 2. Over similar ones it is for watch from 4 K and soon from 15 K on; over the ambient
-    from 21 K and 40 K on. Below 40 % of full load nothing is scaled: the rise as read stands.
+    A termination or device is much hotter than a similar one, or than the ambient. It was read beyond doubt above the
+    coolest similar one of the same round and current, or above the ambient, and its rise is scaled to full load by the
+    square of the current: practice, since a rise follows the current to the power of 1.5 to 2. Over similar ones it is for
+    watch from 4 K and soon from 15 K on; over the ambient from 21 K and 40 K on. Below 40 % of full load nothing is scaled:
+    the rise as read stands.
 
     **Finds**: 62 °C at one end of a run and 38 °C at the other, at half load: 24 K, 96 K at full load.
 

@@ -27,16 +27,17 @@ WITH_A_CEILING = ("breaker B", "breaker C", "breaker D", "fuse gG")
     "millivolts opens without warning and then has the full system voltage across it. Pull no fuse under load.",
     source=Citation("IEC 60898-1", "2015", "largest power loss of a pole", "from-memory"),
     also=(
-        Citation("ANSI/NETA MTS", "", "50 % above the lowest similar: investigate; seen second-hand"),
+        Citation("ANSI/NETA MTS", "", "50 % above the lowest similar: investigate; seen second-hand", "verified"),
         Citation("IEC 60269-2", "", "largest power loss of gG fuse-links", "from-memory"),
     ),
     limits=("joint_compare", "heat", "decision", "load_share", "termination", *DOUBTS_OF_READINGS),
 )
 def above_its_kind(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    The drop across one pole of a device is above what its product standard allows, or that of a pole or termination more
-    than 50 % above the lowest similar one that was read on the same visit; and, either way, it turns at least 0.5 W more
-    into heat at full load than that. A comparison alone is never a finding, nor are watts alone.
+    A pole or a termination loses much more than others of its kind. The drop across one pole of a device is above what its
+    product standard allows, or that of a pole or termination more than 50 % above the lowest similar one that was read on
+    the same visit; and, either way, it turns at least 0.5 W more into heat at full load than that. A comparison alone is
+    never a finding, nor are watts alone.
 
     Similar are poles of the same kind and rating, terminations of the same size and metal. Severity by the heat beyond it:
     soon from 2 W, immediate from 10 W on, else watch.

@@ -25,8 +25,9 @@ from rules.units import show_against
 )
 def meter_category_too_low(case: SiteCase) -> Iterator[Finding | NotJudged]:
     """
-    A meter was used on a board or source, or on a circuit of it, that asks for a higher category than the meter has, or
-    whose sources reach more volts than the meter is rated for: as recorded, else at work, else nominal.
+    A meter was used where its category or its voltage is too low. The board or source, or a circuit of it, asks for a higher
+    category than the meter has, or its sources reach more volts than the meter is rated for: as recorded, else at work, else
+    nominal.
 
     **Finds**: CAT II 600 V on a board of CAT III; CAT III 30 V on a source that reaches 56.4 V.
 

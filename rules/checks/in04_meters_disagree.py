@@ -64,7 +64,7 @@ def _compared(
         numbers={
             "first": Figure(a, unit, a_u),
             "second": Figure(b, unit, b_u),
-            "en_ratio": Figure(ratio, "1"),
+            "en_ratio": Figure(ratio, ""),
         },
     )
 

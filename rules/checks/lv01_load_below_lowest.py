@@ -7,6 +7,7 @@ from rules.calc.doubt import probability_above
 from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.impossible import dead_points
+from rules.load_window import Bound, lowest_of, source_of, unused
 from rules.margins import margins_of
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
@@ -22,29 +23,33 @@ from rules.units import show, show_against
     caution="A load that drops out when the battery is low fails when it is needed: treat door release, alarm, trip and life "
     "safety first, with the duty holder's permission. Computed with healthy joints: what readings show may be worse.",
     source=Citation("the load maker's lowest voltage", status="common practice, no source"),
-    limits=("decision", "readings", "temperature", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    limits=("decision", "load_window", "readings", "temperature", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     A load was read below its lowest voltage, or by the record falls below it at the lowest source voltage.
 
     **Finds**: 48 V battery down to 43.2 V, 0.20 Ω of path, a 600 W constant-power load with a lowest of 40.5 V: 40.2 V.
-    Severity is immediate where a life-safety or trip-or-close load was read below its lowest.
+    Severity is immediate where a life-safety or trip-or-close load was read below its lowest. A load that records none is
+    held against the lowest of its trade's profile, where that states one: for watch, or soon where such a load was read
+    below it.
 
     **Leaves alone**: the same load of 500 W: 40.7 V. A voltage within its doubt of the limit is not judged, nor a load
     that cannot be supplied at all (NW01).
     """
-    unknown = [point.load.tag for point in case.loads if point.load.lowest_voltage_v is None]
+    bounds = [(point, lowest_of(case, point.load)) for point in case.loads]
+    unknown = [point.load.tag for point, bound in bounds if bound is None]
     if unknown:
         more = f" and of {len(unknown) - 1} more" if len(unknown) > 1 else ""
         yield load_below_lowest.gap(case, "", f"the lowest voltage of “{unknown[0]}”{more} is not known")
-    for point in case.loads:
-        if point.load.lowest_voltage_v is not None:
-            yield from _judge(case, point, point.load.lowest_voltage_v)
+    for point, bound in bounds:
+        if bound is not None:
+            yield from _judge(case, point, bound)
 
 
-def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Finding | NotJudged]:
-    name = point.load.tag
+def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Finding | NotJudged]:
+    name, lowest = point.load.tag, bound.volts
+    source, without_groups = source_of(case, bound), unused(bound)
     without = {
         (this.name, dead) for this in case.rounds for dead, _ in dead_points(this, case.nominal_v or 0.0, case.limits)
     }
@@ -66,9 +71,11 @@ def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Findi
             yield load_below_lowest.finding(
                 case,
                 _where(case, point),
-                f"{name} was read at {shown} in round {round_}, below its lowest {limit}",
+                f"{name} was read at {shown} in round {round_}, below {bound.whose} lowest {limit}",
                 numbers={"voltage": volts, "lowest": Figure(lowest, "V")},
-                severity=Severity.IMMEDIATE if vital else Severity.SOON,
+                severity=_severity(bound, read=True, vital=vital),
+                source=source,
+                without=without_groups,
                 consequences=tuple(_dip(case, point)),
             )
             return
@@ -84,15 +91,25 @@ def _judge(case: CircuitCase, point: LoadPoint, lowest: float) -> Iterator[Findi
             case,
             _where(case, point),
             f"{name} gets {'at most ' if point.lowest_gap else ''}{shown} with the source at "
-            f"{show(point.source_lowest_v, 'V')} and hot conductors, as recorded; its lowest is {limit}",
+            f"{show(point.source_lowest_v, 'V')} and hot conductors, as recorded; {bound.whose} lowest is {limit}",
             numbers={"voltage": volts, "lowest": Figure(lowest, "V"), "source": Figure(point.source_lowest_v, "V")},
+            severity=_severity(bound, read=False, vital=False),
+            source=source,
+            without=without_groups,
             consequences=tuple(_dip(case, point)),
         )
     elif point.lowest_gap:
         yield load_below_lowest.gap(case, point.load.point, point.lowest_gap)
     elif verdict is Verdict.OPEN:
-        why = f"not settled: {name} gets {show(volts.value, 'V', volts.u)} against its lowest {show(lowest, 'V')}"
+        why = f"not settled: {name} gets {show(volts.value, 'V', volts.u)} against {bound.whose} lowest {show(lowest, 'V')}"
         yield load_below_lowest.gap(case, point.load.point, why)
+
+
+def _severity(bound: Bound, *, read: bool, vital: bool) -> Severity:
+    """What a profile says of equipment in general is milder than what this load's maker says."""
+    if not bound.is_own:
+        return Severity.SOON if vital else Severity.WATCH
+    return Severity.IMMEDIATE if read and vital else Severity.SOON
 
 
 def _dip(case: CircuitCase, point: LoadPoint) -> Iterator[str]:

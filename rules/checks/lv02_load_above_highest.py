@@ -8,6 +8,7 @@ from rules.calc.doubt import probability_above
 from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.doubts import drop_u
+from rules.load_window import Bound, highest_of, source_of, unused
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
@@ -23,28 +24,31 @@ from rules.units import show, show_against
     caution="Electronics, lamps and coils run hot or fail from it, door magnets and trip coils among them, often weeks later. Setting a "
     "charger changes what the battery needs: its maker's figures decide. Do not switch a load off to protect it where people rely on it.",
     source=Citation("the load maker's highest voltage", status="common practice, no source"),
-    limits=("decision", "cold", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    limits=("decision", "load_window", "cold", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
 )
 def load_above_highest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
     A load was read above its highest voltage, or by the record rises above it while the source is at its highest: soon
     where that is so with every load on and cold conductors, which is the least drop; for watch where only loads that are
-    off leave it more than its highest.
+    off leave it more than its highest. A load that records none is held against the highest of its trade's profile, where
+    that states one: for watch.
 
     **Finds**: a 24 V charger up to 29.6 V, 0.278 Ω of path, a load of 2 A with a highest of 28.8 V: 29.04 V.
 
     **Leaves alone**: the same with 30 V as its highest. A voltage within its doubt of the limit is not judged.
     """
-    unknown = [point.load.tag for point in case.loads if point.load.highest_voltage_v is None]
+    bounds = [(point, highest_of(case, point.load)) for point in case.loads]
+    unknown = [point.load.tag for point, bound in bounds if bound is None]
     if unknown and len(unknown) < len(case.loads):  # where no load of the circuit states one, it is no omission
         yield load_above_highest.gap(case, "", f"the highest voltage of “{unknown[0]}” is not known")
-    for point in case.loads:
-        if point.load.highest_voltage_v is not None:
-            yield from _judge(case, point, point.load.highest_voltage_v)
+    for point, bound in bounds:
+        if bound is not None:
+            yield from _judge(case, point, bound)
 
 
-def _judge(case: CircuitCase, point: LoadPoint, highest: float) -> Iterator[Finding | NotJudged]:
-    name, where = point.load.tag, _where(case, point)
+def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Finding | NotJudged]:
+    name, where, highest = point.load.tag, _where(case, point), bound.volts
+    from_source, without, severity = source_of(case, bound), unused(bound), None if bound.is_own else Severity.WATCH
     read = [(round_, volts) for round_, volts in point.read if volts.value > 0]  # RD01 says the others
     if read:
         # the reading that says most, not the highest: a poor meter's may be higher and say nothing
@@ -54,8 +58,11 @@ def _judge(case: CircuitCase, point: LoadPoint, highest: float) -> Iterator[Find
             yield load_above_highest.finding(
                 case,
                 where,
-                f"{name} was read at {shown} in round {round_}, above its highest {limit}",
+                f"{name} was read at {shown} in round {round_}, above {bound.whose} highest {limit}",
                 numbers={"voltage": volts, "highest": Figure(highest, "V")},
+                severity=severity,
+                source=from_source,
+                without=without,
             )
             return
     at = _at_highest(case, point)
@@ -67,17 +74,21 @@ def _judge(case: CircuitCase, point: LoadPoint, highest: float) -> Iterator[Find
     source = show(at.source_v, "V")
     if loaded is Verdict.FAILS and not at.gap:
         shown, limit = show_against(at.loaded.value, highest, "V")
-        why = f"{name} gets {shown} with the source at {source}, every load on and cold conductors; its highest is {limit}"
-        yield load_above_highest.finding(case, where, why, numbers=numbers)
+        why = f"{name} gets {shown} with the source at {source}, every load on and cold conductors; {bound.whose} highest is {limit}"
+        yield load_above_highest.finding(
+            case, where, why, numbers=numbers, severity=severity, source=from_source, without=without
+        )
     elif at.source_v > highest:
         with_loads = "" if at.gap else f"; with every load on {show(at.loaded.value, 'V', at.loaded.u)}"
         shown, limit = show_against(at.source_v, highest, "V")
         yield load_above_highest.finding(
             case,
             where,
-            f"{name} gets up to {shown} with the source at its highest and the loads off{with_loads}; its highest is {limit}",
+            f"{name} gets up to {shown} with the source at its highest and the loads off{with_loads}; {bound.whose} highest is {limit}",
             numbers=numbers if not at.gap else {name_: numbers[name_] for name_ in ("highest", "source")},
             severity=Severity.WATCH,
+            source=from_source,
+            without=without,
         )
 
 

@@ -1,16 +1,12 @@
 """NW04: the building's or rack's metal is the way back."""
 
 from collections.abc import Iterator
-from dataclasses import replace
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
-from rules.calc.doubt import Weighted, total
 from rules.case import CircuitCase
-from rules.errors import MissingData
-from rules.record import Figure, Run
-from rules.rounds import current_at
+from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
-from rules.runs import TERMINATIONS_A_LEG, figures
+from rules.structure import structure_ohm
 from rules.units import show
 
 
@@ -39,7 +35,7 @@ def structure_return(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     for run in case.runs:
         if run.return_or_default != "structure":
             continue
-        found = _resistance(case, run)
+        found = structure_ohm(case, run)
         if isinstance(found, str):
             yield structure_return.gap(case, run.name, f"the resistance of the structure: {found}")
         known = (
@@ -54,34 +50,3 @@ def structure_return(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             "other circuits put into them is not known",
             numbers={"resistance of the structure": found} if isinstance(found, Figure) else {},
         )
-
-
-def _resistance(case: CircuitCase, run: Run) -> Figure | str:
-    """What comes back through the structure, in the round of the highest current, or why that is not known."""
-    own = figures([replace(run, return_conductor="", return_size="")], case.context.site, case.limits)[run.id]
-    if own.gap:
-        return own.gap
-    leg = own.legs[0]
-    out_ohm = leg.conductor_ohm + TERMINATIONS_A_LEG * leg.joint_ohm
-    branch = next((branch for branch, other in case.tree.ends.items() if other.id == run.id), "")
-    best: tuple[float, Figure] | None = None
-    reason = f"no voltages at both ends of {run.name} and its current were read"
-    for this in case.rounds:
-        if run.from_point not in this.volts or branch not in this.volts:
-            continue
-        try:
-            amps, amps_u = total(current_at(branch, this, case.tree, case.limits).terms)
-        except MissingData as error:
-            reason = str(error)
-            continue
-        less = [Weighted(-term.weight, term.shown) for term in this.volts[branch]]
-        volts, volts_u = total([*this.volts[run.from_point], *less])
-        if amps and (best is None or abs(amps) > best[0]):
-            loop = volts / amps
-            relative = (own.length_u**2 + case.limits["resistance_doubt.relative"] ** 2) ** 0.5
-            warm = leg.slope_ohm_per_k * own.temperature_u_k
-            u = (
-                (volts_u / amps) ** 2 + (loop * amps_u / amps) ** 2 + (relative * leg.conductor_ohm) ** 2 + warm**2
-            ) ** 0.5
-            best = abs(amps), Figure(loop - out_ohm, "ohm", u)
-    return best[1] if best is not None else reason

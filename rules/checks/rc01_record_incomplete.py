@@ -6,6 +6,8 @@ from rules.assessment import Citation, Finding, Severity
 from rules.case import CircuitCase
 from rules.network import GAP_NOTHING_FEEDS, GAP_SOURCE
 from rules.rule import rule
+from rules.runs import GAP_STRUCTURE
+from rules.structure import structure_ohm
 
 GAP_NO_RUN = "no run is recorded"
 GAP_NO_LOAD = "no load is recorded"
@@ -29,6 +31,8 @@ def gaps_of(case: CircuitCase) -> list[tuple[str, str]]:
             gaps.append((run.name, f"the length of {run.name} is not known"))
         if not run.size:
             gaps.append((run.name, f"the size of {run.name} is not known"))
+        if run.return_or_default == "structure" and isinstance(structure_ohm(case, run), str):
+            gaps.append((run.name, GAP_STRUCTURE.format(run.name)))
     if not case.loads and not index.fed_by_circuit(case.circuit.id):
         gaps.append(("loads", GAP_NO_LOAD))
     for point in case.loads:
@@ -54,10 +58,14 @@ def record_incomplete(case: CircuitCase) -> Iterator[Finding]:
     **Finds**: a run whose length cell is empty: "the length of run 1 is not known".
 
     **Leaves alone**: an empty material (copper is taken), temperature (the site's ambient) or device (it has no
-    figure of its own).
+    figure of its own). A return through the structure whose resistance no
+    reading gives leaves a circuit incomplete too, which NW04 says.
     """
     by_place: dict[str, list[str]] = {}
+    structure = {GAP_STRUCTURE.format(run.name) for run in case.runs}  # NW04 says so
     for where, why in gaps_of(case):
+        if why in structure:
+            continue
         by_place.setdefault(where, []).append(why)
     for where, whys in by_place.items():
         yield record_incomplete.finding(case, where, "; ".join(whys), numbers={})

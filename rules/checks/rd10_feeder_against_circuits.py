@@ -26,8 +26,9 @@ from rules.taken import some
 )
 def feeder_against_circuits(case: BoardCase) -> Iterator[Finding]:
     """
-    In rounds of one name and visit, the current into a board (read on its busbar, else in the circuits that feed it) differs
-    from the sum of its circuits' currents, beyond doubt and the share that a load may move meanwhile. With circuits that were
+    The current into a board differs from the sum of its circuits' currents. Those of rounds of one name and visit are
+    compared, into the board read on its busbar, else in the circuits that feed it; the difference lies beyond doubt and the
+    share that a load may move meanwhile. With circuits that were
     not read, or more than the board on its feed, the sum may be less, not more.
 
     **Finds**: 12.0 A into a board whose two circuits draw 5.0 A and 4.0 A.

@@ -29,8 +29,8 @@ from rules.units import show
 )
 def clamp_with_loads_off(case: CircuitCase | BoardCase) -> Iterator[Finding]:
     """
-    A reading of current, or of residual current, that was taken with the loads off (``loads_off``) is not zero, beyond the
-    clamp's counts and display, once the recorded zero of its range is taken off.
+    A clamp shows current while the loads are off (``loads_off``). The reading of current, or of residual current, lies beyond
+    the clamp's counts and display, once the recorded zero of its range is taken off.
 
     **Finds**: 0.31 A by a 1.5 % + 5 counts clamp of 0.01 A: every current read with it is off by about as much.
 

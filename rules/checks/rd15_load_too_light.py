@@ -24,19 +24,29 @@ FIXED = ("meter counts", "source wander", "current counts")
     remedy="Read again at the current stated, with the circuit's own loads where they can be set; else with a finer meter.",
     caution="No load is added to a life-safety, trip or close circuit without the duty holder's permission, and none above what device, "
     "cable and source are rated for. A bad joint heats with the square of the current.",
-    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),
-    limits=("decision", "heat", "next_reading", "source", "load_share", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
+    limits=(
+        "decision",
+        "heat",
+        "next_reading",
+        "readings",
+        "source",
+        "load_share",
+        *DOUBTS_OF_COMPUTED,
+        *DOUBTS_OF_READINGS,
+    ),
 )
 def load_too_light(case: CircuitCase) -> Iterator[Finding]:
     """
-    The readings do not settle a circuit, and a bad connection that would give the profile's heat at design current would
-    lose less at the current that was read than the profile's number of standard uncertainties, because of what does not
-    grow with the current: counts, display, source wander. The current is stated at which it would stand out, and whether
+    The current that was read is too small for the readings to settle the circuit. A bad connection that would give the
+    profile's heat at design current would lose less at it than the profile's number of standard uncertainties, because of
+    what does not grow with the current: counts, display, source wander. The current is stated at which it would stand out, and whether
     device, cable and source allow it.
 
     **Finds**: 0.5 A read on a circuit of 8 A: 2 W at 8 A are 31 mΩ, which lose 16 mV at 0.5 A, against 19 mV of doubt.
 
-    **Leaves alone**: a circuit that is settled; one on which the doubt of the length hides the same joint at any current.
+    **Leaves alone**: a circuit that is settled; one on which the doubt of the length hides the same joint at any current; one
+    read at its full load.
     """
     drop = case.drop
     if drop is None or case.diagnosis is None or not (unsettled(case) or unsound(case)):
@@ -48,6 +58,8 @@ def load_too_light(case: CircuitCase) -> Iterator[Finding]:
     heat, apart = case.limits["heat.limit_w"], case.limits["next_reading.apart"]
     extra_ohm, read_a = heat / design_a**2, abs(drop.current.value)
     fixed, growing = _doubts(drop)
+    if read_a * (1 + case.limits["readings.load_margin"]) >= design_a:
+        return  # the load is all that there is: a finer meter is what it takes
     if not read_a or extra_ohm * read_a >= apart * math.hypot(fixed, growing):
         return
     rest = extra_ohm**2 - (apart * growing / read_a) ** 2
@@ -55,7 +67,9 @@ def load_too_light(case: CircuitCase) -> Iterator[Finding]:
         return  # no current makes it stand out
     needed = apart * fixed / math.sqrt(rest)
     most = read_a * largest_level(case, dict.fromkeys(("device", *(run.name for run in case.runs)), read_a))
-    beyond = f", more than the {show(most, 'A', digits=2)} that is allowed here: a finer meter" if needed > most else ""
+    beyond = f", more than the {show(design_a, 'A', digits=3)} of its own loads" if needed > design_a else ""
+    if needed > most:
+        beyond = f", more than the {show(most, 'A', digits=2)} that is allowed here: a finer meter"
     yield load_too_light.finding(
         case,
         f"{drop.start} to {drop.end}, round {drop.round}",

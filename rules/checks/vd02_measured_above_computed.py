@@ -14,9 +14,11 @@ from rules.limits import Limits
 from rules.record import Figure
 from rules.rise import rises_of
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
+from rules.thinner import of_conductors
 from rules.units import show
 from rules.verdict import (
     MOST_SAID,
+    NOT_RULED_OUT,
     TOLD,
     Claim,
     cause_words,
@@ -52,7 +54,16 @@ ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it a
     "Do not tighten or open anything live; cut back and remake heated conductors when isolated. "
     "A cause is named by probability: look before replacing anything.",
     source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
-    limits=("decision", "heat", "prior", "bad_connection", "joint_scaling", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    limits=(
+        "decision",
+        "heat",
+        "prior",
+        "bad_connection",
+        "joint_scaling",
+        "capacity",
+        *DOUBTS_OF_COMPUTED,
+        *DOUBTS_OF_READINGS,
+    ),
 )
 def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
@@ -256,6 +267,10 @@ def _consequences(case: CircuitCase, claim: Claim | None, heat: Figure | None) -
         yield from told
     elif heat is not None:
         yield f"at this current {show(heat.value, 'W', heat.u)} turn into heat that the record does not explain"
+    if claim is not None:
+        yield from of_conductors(
+            case, [row for row in (*claim.places, *claim.others) if row.probability >= NOT_RULED_OUT]
+        )
     if claim is not None and claim.cause == SEMICONDUCTOR:
         yield "it passes current in one direction only: a battery behind it is not charged through it"
     most = _most_affected(case) if claim is not None else None

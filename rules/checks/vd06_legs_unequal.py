@@ -24,7 +24,7 @@ from rules.verdict import claimed
     caution="A long lead along a live leg is live at both ends: clip it first, one hand, fused. Millivolts across a joint become the full "
     "system voltage if it opens: start on auto volts.",
     source=Citation("excess in one leg only is a joint, excess in both is the conductor", status="common practice, no source"),
-    also=(Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings"),),
+    also=(Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),),
     limits=(
         "decision", "joint_compare", "heat", "resistance_doubt", "length_doubt", "termination", "load_share", *DOUBTS_OF_READINGS
     ),

@@ -64,7 +64,8 @@ def spoken(batch: Batch, number: int, choice: Choice) -> NextReading:
         caution=caution_words(batch.posed[number].case, choice.way),
         current_at_most=Figure(choice.most_a, "A") if bounded else None,
         minutes=choice.way.minutes,
-        fall_nats=float(batch.options.fall[number, choice.option]) if choice.option >= 0 else None,
+        # the last digits depend on what else was computed in the same batch
+        fall_nats=round(float(batch.options.fall[number, choice.option]), 9) if choice.option >= 0 else None,
     )
 
 

@@ -45,5 +45,8 @@ def impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -
         values = groups[group_name].values if group_name in groups else {}
         if low in values and high in values and values[low] >= values[high]:
             faults.append(f"{name}: {group_name}.{low} is not below {group_name}.{high}")
+    window = groups["load_window"].values if "load_window" in groups else {}
+    if window and 0 < window["highest_percent"] <= window["lowest_percent"]:
+        faults.append(f"{name}: load_window.lowest_percent is not below load_window.highest_percent")
     if "prior" in groups and not sum(groups["prior"].values.values()) > 0:
         faults.append(f"{name}: the shares of [prior] sum to nothing")

@@ -53,7 +53,7 @@ def refused(args: list[str], capsys: Captured, status: int = 2) -> list[str]:
 def test_json_is_one_object_on_standard_output(plant: Path, capsys: Captured) -> None:
     told = checked(plant, capsys)
     assert told["schema"] == "ohmwalk.check/1"
-    assert told["summary"]["circuits"] == len(told["circuits"]) == 30
+    assert told["summary"]["circuits"] == len(told["circuits"]) == 32
 
 
 def test_one_circuit(plant: Path, capsys: Captured) -> None:

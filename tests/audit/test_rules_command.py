@@ -131,7 +131,7 @@ def test_an_id_in_capitals_or_not(id_: str, capsys: pytest.CaptureFixture[str]) 
 
 @pytest.mark.parametrize(
     ("id_", "line"),
-    [("VD10", "no rule 'VD10'; did you mean VD0"), ("qqq", "no rule 'qqq'; there are: HB01, "), ("", "no rule ''; there are")],
+    [("VD10", "no rule 'VD10'; did you mean VD0"), ("qqq", "no rule 'qqq'; there are: CP01, "), ("", "no rule ''; there are")],
 )  # fmt: skip
 def test_an_unknown_id_is_one_line_with_the_nearest(id_: str, line: str, capsys: pytest.CaptureFixture[str]) -> None:
     assert cli.run(["rules", id_]) == 2

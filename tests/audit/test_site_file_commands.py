@@ -141,7 +141,7 @@ def test_check_says_the_same_of_folder_and_file(name: str, tmp_path: Path, capsy
 
 def test_a_site_file_is_known_by_what_it_holds_and_not_by_its_name(site: Path, capsys: Captured) -> None:
     renamed = site.rename(site.with_name("plant.bin"))
-    assert json.loads(done(["check", str(renamed), "--json"], capsys)[0])["summary"]["circuits"] == 30
+    assert json.loads(done(["check", str(renamed), "--json"], capsys)[0])["summary"]["circuits"] == 32
     done(["report", str(renamed), "--to", "audit.md"], capsys)
     assert "F1" in Path("audit.md").read_text(encoding="utf-8")
 
@@ -508,7 +508,7 @@ def test_another_ending_makes_no_site_file(plant: Path, monkeypatch: pytest.Monk
 
 
 def test_a_damaged_file_is_named_by_verify(site: Path, capsys: Captured) -> None:
-    assert done(["verify", str(site)], capsys)[0] == f"{site}: whole; 30 circuits, 137 readings\n"
+    assert done(["verify", str(site)], capsys)[0] == f"{site}: whole; 32 circuits, 161 readings\n"
     with closing(sqlite3.connect(site)) as other:
         other.execute("UPDATE readings SET value = value + 1 WHERE at = 'lugs'")
         other.commit()
@@ -727,7 +727,7 @@ def test_a_wrong_name_is_refused_before_anything_is_written(plant: Path, opened:
 def test_the_demo_is_made_once_and_then_opened_as_it_is(opened: Opened, capsys: Captured) -> None:
     done(["demo"], capsys)
     assert [path for path, _ in opened] == [Path("demo.ohmwalk")]
-    assert len(record(Path("demo.ohmwalk")).circuits) == 30
+    assert len(record(Path("demo.ohmwalk")).circuits) == 32
     with SiteStore("demo.ohmwalk", laptop="lap") as store, store.save("Ann", "mine") as save:
         save.settings(notes="mine")
     before = Path("demo.ohmwalk").read_bytes()
@@ -739,7 +739,7 @@ def test_the_demo_is_made_once_and_then_opened_as_it_is(opened: Opened, capsys: 
         assert refused(args, capsys) == ["demo.ohmwalk exists already; accepted: another name, or --overwrite"]
     done(["demo", "doors", "--overwrite"], capsys)
     assert record(Path("demo.ohmwalk")).name != "mine"
-    assert len(record(Path("demo.ohmwalk")).circuits) == 22
+    assert len(record(Path("demo.ohmwalk")).circuits) == 32
     done(["demo"], capsys)
     assert os.listdir() == ["demo.ohmwalk"]
 
@@ -798,4 +798,4 @@ def test_damaged_settings_are_a_line_and_the_site_is_made(plant: Path, home: Pat
     (home / "settings.json").write_text("{")
     _, err = done(["intake", "a.ohmwalk", str(plant)], capsys)
     assert f"{home / 'settings.json'}: is damaged; it is passed over\n" in err
-    assert len(record(Path("a.ohmwalk")).circuits) == 30
+    assert len(record(Path("a.ohmwalk")).circuits) == 32

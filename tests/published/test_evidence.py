@@ -50,6 +50,11 @@ BAD = (math.log(3e-3 * math.sqrt(10 / AREA_MM2)), math.log(300e-3 * math.sqrt(10
 """Logarithms of the least and the largest extra resistance."""
 
 
+BREAKER = {"device": "breaker B", "device_rating": "16", "device_poles": "1"}
+DEVICE_OHM = 0.6 * 3.5 / 16**2
+"""One of its poles: typically 0.6 of the 3.5 W that its standard allows. [ohm]"""
+
+
 def gain_u(meter: dict[str, float]) -> float:
     return meter["accuracy"] / 100 / math.sqrt(3)
 
@@ -58,11 +63,17 @@ def counts_u(meter: dict[str, float]) -> float:
     return meter["resolution"] * math.sqrt(meter["counts"] ** 2 / 3 + 1 / 12)
 
 
-def log_density(factor: float = 1.0, extra_ohm: float = 0.0, offset_v: float = 0.0, volts: Volts = VOLTS) -> float:
-    """Of both drops, with the conductors at a factor, an extra resistance in a joint, a voltage in a semiconductor."""
+def log_density(
+    factor: float = 1.0, extra_ohm: float = 0.0, offset_v: float = 0.0, volts: Volts = VOLTS, device_ohm: float = 0.0
+) -> float:
+    """
+    Of both drops, with the conductors at a factor, an extra resistance in a joint, a voltage in a semiconductor.
+
+    ``device_ohm`` lies before the run, its doubt 30 %.
+    """
     amps = np.array(AMPS)
     conductor = 2 * LENGTH_M * OHM_PER_M * factor
-    whole = conductor + JOINTS * JOINT_OHM + extra_ohm
+    whole = device_ohm + conductor + JOINTS * JOINT_OHM + extra_ohm
     mean = amps * whole + offset_v
     covariance = 2 * counts_u(METER) ** 2 * np.eye(2)  # two voltages each, by counts of their own
     covariance += np.diag((counts_u(CLAMP) * whole) ** 2 * np.ones(2))
@@ -72,6 +83,7 @@ def log_density(factor: float = 1.0, extra_ohm: float = 0.0, offset_v: float = 0
         0.005 * amps * conductor,  # a length by the cable's marks
         2.0 * ALPHA * amps * conductor,  # a temperature by probe, 20 °C
         0.02 * amps * conductor,  # resistance per metre
+        0.3 * amps * device_ohm,
     ]
     shared += JOINTS * [amps * JOINT_OHM * math.sqrt(math.exp(LOG_SD**2) - 1)]
     for column in shared:
@@ -92,16 +104,16 @@ def log_mean(of: Callable[[float], float], low: float, high: float) -> float:
 
 
 @cache
-def posed(volts_read: Volts) -> tuple[Problem, limits.Limits]:
+def posed(volts_read: Volts, device: bool = False) -> tuple[Problem, limits.Limits]:
     """What the diagnosis is given."""
     rows = []
     for number, (pair, ampere) in enumerate(zip(volts_read, AMPS, strict=True), 1):
-        for at, volts in zip(("way", "p1"), pair, strict=True):
+        for at, volts in zip(("bus" if device else "way", "p1"), pair, strict=True):
             rows.append(("voltage", at, f"{volts:.3f}", "M1", number))
         rows.append(("current", "run 1", f"{ampere:.2f}", "K1", number))
     tables = {
         "sources": [{"source": "PSU", "kind": "power supply", "nominal": "24"}],
-        "circuits": [{"circuit": "C1", "fed_from": "PSU", "device": "none"}],
+        "circuits": [{"circuit": "C1", "fed_from": "PSU"} | (BREAKER if device else {"device": "none"})],
         "runs": [{"circuit": "C1", "run": "1", "from": "way", "to": "p1", "length": str(LENGTH_M), "size": "4 mm2",
                   "length_by": "marks", "temperature": "20", "temperature_by": "probe"}],
         "loads": [{"circuit": "C1", "point": "p1", "load": "far", "current": "8"}],
@@ -157,6 +169,15 @@ def test_a_semiconductor_is_scipys_integral_over_its_voltage() -> None:
 def test_a_longer_route_is_scipys_integral_over_its_factor() -> None:
     expected = log_mean(lambda f: log_density(factor=f), 1.3, 2.5)
     assert found()["longer route", "a longer way"] == pytest.approx(expected, abs=1e-4)
+
+
+def test_the_doubt_of_a_device_is_in_the_density() -> None:
+    """The same voltages read across the breaker as well."""
+    problem, in_force = posed(NEARLY, device=True)
+    judged = judge_block(shape_of(problem.signature), [problem], in_force)
+    expected = log_density(volts=NEARLY, device_ohm=DEVICE_OHM)
+    assert judged.hypotheses.log_evidence[0, 0] == pytest.approx(expected, abs=1e-6)
+    assert expected != pytest.approx(log_density(volts=NEARLY), abs=1e-3)
 
 
 def test_the_posterior_is_prior_times_evidence() -> None:

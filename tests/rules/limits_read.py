@@ -7,7 +7,7 @@ from functools import cache
 from pathlib import Path
 
 ROOT = Path(__file__).parent.parent.parent
-FOLLOWED = ("rules.decision", "rules.impossible", "rules.verdict")
+FOLLOWED = ("rules.decision", "rules.impossible", "rules.load_window", "rules.verdict")
 """Modules whose functions decide for the rules that call them."""
 
 

@@ -18,7 +18,15 @@ from tests.rules.limits_read import groups_read
 
 CASES = Path(__file__).parent / "cases"
 FINDS, ALONE, LIMIT, OPEN = "finds", "leaves alone", "at the limit", "not judged"
-STATUSES = ("verified", "computed", "from-memory", "common practice, no source", "our own rule", "our own default")
+STATUSES = (
+    "verified",
+    "computed",
+    "from-memory",
+    "common practice, no source",
+    "our own rule",
+    "our own default",
+    "textbook, no edition",
+)
 KINDS = {FINDS, ALONE, LIMIT, OPEN}
 CHECKS = Path(__file__).parent.parent.parent / "rules" / "checks"
 

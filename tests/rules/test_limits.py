@@ -106,6 +106,10 @@ def test_a_rule_may_be_lowered_or_switched_off_with_a_reason() -> None:
         ('[temperature]\nsource="s"\nhot_c = 900', "temperature.hot_c is 900; a temperature from -90 to 400 degC"),
         ('[decision]\nsource="s"\nsound_at = 1.5', "decision.sound_at is 1.5; a share from 0 to 1"),
         ('[decision]\nsource="s"\npasses_at = 0.99', "decision.passes_at is not below decision.fails_at"),
+        (
+            '[load_window]\nsource="s"\nlowest_percent = 90\nhighest_percent = 85',
+            "load_window.lowest_percent is not below load_window.highest_percent",
+        ),
         ('[capacity]\nsource="s"\ntable = "ice"', "table is 'ice'; one of by size, iec, nec, nec before 2011; did you mean 'iec'?"),
         ('[capacity]\nsource="s"\ntable = 3', "capacity.table is 3; one of by size, iec, nec, nec before 2011"),
         ('[capacity]\nsource="s"\ntable = { word = "iec", accepted = ["iec"] }', "capacity.table is {'word': 'iec'"),

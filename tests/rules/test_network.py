@@ -335,6 +335,88 @@ def test_converters_behind_converters() -> None:
     assert design(assessment, "F1", "end") == pytest.approx((54 + (54**2 - 4 * 600 * F1_OHM) ** 0.5) / 2, rel=1e-3)
 
 
+def test_a_converter_holds_its_lowest_voltage_while_the_plant_is_at_its_lowest() -> None:
+    """22 V × 20 A / 0.8 = 550 W out of the battery's 42 V, through conductors of 70 °C."""
+    sources = [*CONVERTER["sources"][:2], CONVERTER["sources"][2] | {"lowest": "22"}]
+    site = plant(**CONVERTER | {"sources": sources})
+    network = prepare(site, limits.of(site)).network
+    nodes = {circuit.tag: network.nodes_of[circuit.id] for circuit in site.circuits}
+    hot_ohm = (F1_OHM - joints(16)) * (1 + 0.00393 * 50) + joints(16)
+    expected = (42 + (42**2 - 4 * 550 * hot_ohm) ** 0.5) / 2
+    assert network.lowest.voltage_v[nodes["F1"]["end"]] == pytest.approx(expected, rel=1e-9)
+    assert network.lowest.voltage_v[nodes["K1"]["way"]] == pytest.approx(22)
+
+
+def test_a_converter_below_the_voltage_of_a_battery_beside_it_gives_nothing() -> None:
+    """The busbar has the battery's 26 V, so that the converter draws nothing at the end of F1."""
+    beside = {"source": "BAT2", "kind": "battery", "nominal": "24", "working": "26", "lowest": "21"}
+    circuits = [*PLANT["circuits"], {"circuit": "K1", "fed_from": "KB", "device": "none"}]
+    boards = [*PLANT["boards"], {"board": "KB", "fed_by": "CONV + BAT2"}]
+    tables = CONVERTER | {"sources": [*CONVERTER["sources"], beside], "circuits": circuits, "boards": boards}
+    assessment = judged(plant(**tables))
+    assert design(assessment, "K1", "way") == pytest.approx(26)
+    assert design(assessment, "F1", "end") == pytest.approx(54)
+
+
+def nested(current: str, efficiency: str = "80") -> Site:
+    """INNER takes its power from K0, which OUTER feeds at the end of F1."""
+    return plant(
+        sources=[
+            *PLANT["sources"],
+            {"source": "INNER", "kind": "converter", "nominal": "24", "fed_from": "K0:far", "efficiency": efficiency},
+            {"source": "OUTER", "kind": "converter", "nominal": "36", "fed_from": "F1:end", "efficiency": "50"},
+        ],
+        circuits=[
+            *PLANT["circuits"],
+            {"circuit": "K0", "fed_from": "OUTER", "device": "none"},
+            {"circuit": "K1", "fed_from": "INNER", "device": "none"},
+        ],
+        runs=[
+            *PLANT["runs"],
+            {"circuit": "K0", "run": "1", "from": "way", "to": "far", "length": "1", "size": "300 mm2"},
+            {"circuit": "K1", "run": "1", "from": "way", "to": "p1", "length": "1", "size": "10 mm2"},
+        ],
+        loads=[
+            {"circuit": "K1", "point": "p1", "load": "drive", "current": current},
+            {"circuit": "C1", "point": "p1", "load": "shelf", "current": "1"},
+        ],
+    )
+
+
+def test_an_inner_converter_goes_with_the_outer_one() -> None:
+    """24 V × 200 A / 0.8 / 0.5 = 12 kW where 10.2 kW could be had: both converters and all that hangs on them."""
+    assessment = judged(nested("200"))
+    for circuit, point in (("K0", "far"), ("K1", "way"), ("K1", "p1")):
+        assert design(assessment, circuit, point) is None
+    assert design(judged(nested("10")), "K1", "way") == pytest.approx(24)
+
+
+def test_what_an_inner_converter_draws_leaves_the_outer_one_open() -> None:
+    assessment = judged(nested("10", efficiency=""))
+    for circuit, point in (("K0", "far"), ("F1", "end")):
+        assert design(assessment, circuit, point) is None
+    assert design(assessment, "F1", "way") == pytest.approx(54)
+
+
+def test_a_converter_of_no_voltage_draws_what_is_not_known() -> None:
+    sources = [*CONVERTER["sources"][:2], CONVERTER["sources"][2] | {"nominal": ""}]
+    assessment = judged(site_of(PLANT | CONVERTER | {"sources": sources}, {"name": "x"}, check=False))
+    assert design(assessment, "F1", "end") is None
+    assert design(assessment, "F1", "way") == pytest.approx(54)
+
+
+def test_the_doubt_of_a_device_is_in_the_computed_drop() -> None:
+    """A 16 A breaker B of two poles, 30 % of 2 × 0.6 × 3.5 W / (16 A)² at 10 A, squared, is what it adds."""
+    ohm = 2 * 0.6 * 3.5 / 16**2
+    squares = []
+    for device in ({"device": "none"}, {"device": "breaker B", "device_rating": "16", "device_poles": "2"}):
+        circuits = [PLANT["circuits"][0], PLANT["circuits"][1] | device]
+        result = next(r for r in judged(plant(circuits=circuits)).circuits if r.circuit == "C1")
+        assert result.design_drop is not None
+        squares.append((result.design_drop.u or 0.0) ** 2)
+    assert squares[1] - squares[0] == pytest.approx((0.3 * ohm * 10) ** 2, rel=1e-6)
+
+
 @pytest.mark.parametrize(
     "change",
     [

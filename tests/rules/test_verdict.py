@@ -80,7 +80,8 @@ def test_a_claimed_fault_of_little_heat_is_watch_and_of_more_is_soon() -> None:
     # 0.15 Ω × (5 A)² = 3.75 W, read at 5 A and designed for 5 A; with the source at its lowest 0.15 Ω × 5 A = 0.75 V less
     heat, at_worst = large.findings[0].consequences
     assert heat == ("at design current 3.75 ± 0.02 W turn into heat in one place, 3.75 ± 0.02 W while it was read")
-    assert " gets 17.92 ± 0.06 V; of the source's 21 V 3.08 ± 0.06 V are lost, as recorded 2.33 ± 0.04 V" in at_worst
+    # as recorded: 2.1 % of 2.33 V, by 2 % of resistance and 2 K of the conductors at 70 °C
+    assert " gets 17.92 ± 0.07 V; of the source's 21 V 3.08 ± 0.07 V are lost, as recorded 2.33 ± 0.05 V" in at_worst
     (joint,) = (each for each in large.joints if each.where == "run 2")
     assert joint.read is not None
     assert joint.design is not None

@@ -4,11 +4,12 @@ Readings of a sample site from a simulation of its true network.
 
     python tests/sample_sites/simulate.py station
 
-prints ``readings.csv``. The record is the folder's own; what is true of the building but not in the record (faults,
-source voltages, what was switched off) and the order of the survey stand in ``station.toml`` beside this file. What the
-record leaves open is drawn within what it states: lengths, temperatures, terminations, devices, loads, meter gains and
-counts. Every quantity has a generator of its own, so that another reading moves no other figure. Needs numpy alone and
-none of the project's code, so that the two can disagree; it serves such words of the format as these sites use.
+prints ``readings.csv``; for ``plant`` and ``doors`` the readings of the circuits that were added later, at the end of
+theirs. The record is the folder's own; what is true of the building but not in the record (faults, source voltages, what
+was switched off) and the order of the survey stand in ``NAME.toml`` beside this file. What the record leaves open is drawn
+within what it states: lengths, temperatures, terminations, devices, loads, meter gains and counts. Every quantity has a
+generator of its own, so that another reading moves no other figure. Needs numpy alone and none of the project's code, so
+that the two can disagree; it serves such words of the format as these sites use.
 """
 
 from __future__ import annotations
@@ -86,6 +87,9 @@ class Building:
             with (folder / f"{table}.csv").open(newline="", encoding="utf-8") as file:
                 rows = [{key.split(" [")[0]: cell for key, cell in row.items()} for row in csv.DictReader(file)]
             setattr(self, table, rows)
+        only = set(self.truth.get("only", [row["circuit"] for row in self.circuits]))
+        for table in ("circuits", "runs", "loads"):
+            setattr(self, table, [row for row in getattr(self, table) if row["circuit"] in only])
 
     sources: list[Row]
     boards: list[Row]
@@ -115,17 +119,15 @@ class Building:
         circuit = run["circuit"]
         celsius = read(run["temperature"] or str(self.truth["ambient"]))
         celsius += TEMPERATURE_DOUBT[run["temperature_by"] or "assumed"] * self.normal("temperature", circuit)
-        number, unit = size.split()
+        number, unit = words(size)
         metric = unit == "mm2"
-        r20 = OHM_PER_KM[float(number)] / 1e3 * 58 * RHO[metal] if metric else RHO[metal] * LAY / awg_mm2(number)
+        r20 = OHM_PER_KM[float(number)] / 1e3 * 58 * RHO[metal] if metric else RHO[metal] * LAY / area_mm2(size)
         r20 *= 1 + 0.02 * self.normal("resistance", circuit)
         return metres * r20 * (1 + ALPHA[metal] * (celsius - 20))
 
     def joint_ohm(self, size: str, *name: str) -> float:
         """One healthy termination."""
-        number, unit = size.split()
-        mm2 = float(number) if unit == "mm2" else awg_mm2(number)
-        return 0.15e-3 * math.sqrt(10 / mm2) * math.exp(math.log(2) * self.normal("joint", *name))
+        return 0.15e-3 * math.sqrt(10 / area_mm2(size)) * math.exp(math.log(2) * self.normal("joint", *name))
 
     def device_ohm(self, circuit: Row) -> float:
         """One pole of a circuit's device."""
@@ -157,7 +159,7 @@ class Building:
         if point == "way" and leg not in poles(row):
             return self.board_node(leg, row["fed_from"])
         arriving = next((run for run in self.runs if run["circuit"] == circuit and run["to"] == point), None)
-        if leg == "negative" and arriving and arriving["return"].startswith("shared:"):
+        if arriving and leg == return_leg(row) and arriving.get("return", "").startswith("shared:"):
             return (leg, arriving["return"], point)
         return (leg, circuit, point)
 
@@ -169,17 +171,18 @@ class Building:
             faults = list(self.faults(tag, visit))
             for leg in poles(circuit):
                 ends = (self.point_node(leg, tag, "bus"), self.point_node(leg, tag, "way"))
-                yield Branch(tag, "device", leg, *ends, self.device_ohm(circuit))
+                worn = sum(fault.get("ohm", 0.0) for fault in faults if fault.get("at") == f"device {leg}")
+                yield Branch(tag, "device", leg, *ends, self.device_ohm(circuit) + worn)
             for run in (run for run in self.runs if run["circuit"] == tag):
                 for leg in ("positive", "negative"):
-                    common = run["return"] if leg == "negative" else ""
+                    common = run.get("return", "") if leg == return_leg(circuit) else ""
                     if common in shared:
                         continue
-                    if common:
+                    if common.startswith("shared:"):
                         shared.add(common)
-                    yield from self.leg_of(run, leg, faults)
+                    yield from self.leg_of(run, leg, faults, is_return=leg == return_leg(circuit))
 
-    def leg_of(self, run: Row, leg: str, faults: list[dict[str, Any]]) -> Iterator[Branch]:
+    def leg_of(self, run: Row, leg: str, faults: list[dict[str, Any]], is_return: bool) -> Iterator[Branch]:
         """Start termination, conductor and end termination of one leg of a run, with what is wrong in them."""
         tag, name = run["circuit"], f"run {run['run']}"
         true = {
@@ -188,16 +191,18 @@ class Building:
             if fault.get("run", int(run["run"])) == int(run["run"])
             for key, value in fault.items()
         }
-        metres = read(run["length"]) * true.get("times_length", 1.0)
+        metres = true.get("length", read(run["length"]) * true.get("times_length", 1.0))
         metres *= 1 + LENGTH_DOUBT[run["length_by"] or "drawing"] * self.normal("length", tag, name)
         size, metal = true.get("size", run["size"]), true.get("material", run["material"] or "copper")
-        if leg == "negative" and run["return_size"]:
+        if is_return and run.get("return_size"):
             size = run["return_size"]
         start, end = self.point_node(leg, tag, run["from"]), self.point_node(leg, tag, run["to"])
         inner: tuple[Node, Node] = ((leg, tag, f"{name} first"), (leg, tag, f"{name} last"))
+        structure = true.get("structure_ohm") if is_return else None
+        conductor = self.conductor_ohm(run, size, metal, metres) if structure is None else structure
         parts = (
             ("start", start, inner[0], self.joint_ohm(size, tag, name, leg, "start")),
-            ("", inner[0], inner[1], self.conductor_ohm(run, size, metal, metres)),
+            ("", inner[0], inner[1], conductor),
             ("end", inner[1], end, self.joint_ohm(size, tag, name, leg, "end")),
         )
         for part, one, other, ohm in parts:
@@ -211,12 +216,21 @@ class Building:
 
 def read(text: str) -> float:
     """Metres or degrees Celsius from a cell."""
-    number, _, unit = text.partition(" ")
+    number, unit = words(text)
     return {"": 1.0, "m": 1.0, "ft": 0.3048}[unit] * float(number)
 
 
-def awg_mm2(number: str) -> float:
-    """Area of an AWG size."""
+def words(text: str) -> tuple[str, str]:
+    """A number and its unit, in one spelling."""
+    number, _, unit = text.replace(",", ".").replace("²", "2").partition(" ")
+    return number, unit
+
+
+def area_mm2(size: str) -> float:
+    """Of a conductor; of AWG by its diameter."""
+    number, unit = words(size)
+    if unit in ("mm2", "kcmil"):
+        return float(number) * (1.0 if unit == "mm2" else 0.5067)
     gauge = 1 - int(number.split("/")[0]) if "/" in number else int(number)
     return math.pi / 4 * (0.127 * math.pow(92, (36 - gauge) / 39)) ** 2
 
@@ -225,6 +239,11 @@ def poles(circuit: Row) -> tuple[str, ...]:
     """The legs that a circuit's device lies in."""
     leg = circuit["device_leg"]
     return () if circuit["device"] == "none" else ("positive", "negative") if leg == "both" else (leg,)
+
+
+def return_leg(circuit: Row) -> str:
+    """The leg that a shared return or the structure stands for: the one without the device."""
+    return "positive" if circuit["device_leg"] == "negative" else "negative"
 
 
 class State:
@@ -240,6 +259,7 @@ class State:
         self.fixed = self._fixed(survey["volts"])
         self.loads = [row for row in building.loads if f"{row['circuit']}.{row['load']}" not in off]
         self.share = {**building.truth.get("draws", {}), **survey.get("draws", {})}
+        self.ohms: dict[str, float] = survey.get("ohms", {})
         nodes = {node for part in self.parts for node in (part.start, part.end)} | set(self.fixed)
         self.place = {node: n for n, node in enumerate(sorted(nodes))}
         self.volts: NDArray[np.float64] = np.zeros(len(self.place))
@@ -249,7 +269,7 @@ class State:
         """The poles of each source, against earth."""
         fixed = {}
         for tag, value in volts.items():
-            above = value * self.building.truth["positive_share"].get(tag, 1.0)
+            above = value * self.building.truth.get("positive_share", {}).get(tag, 1.0)
             fixed[self.building.board_node("positive", tag)] = above
             fixed[self.building.board_node("negative", tag)] = above - value
         return fixed
@@ -283,15 +303,14 @@ class State:
         if row.get("power"):
             return share * watts(row["power"]) / volts if volts > 5 else 0.0
         if row.get("resistance"):
-            return volts / (
-                float(row["resistance"]) * (1 + 0.02 * self.building.normal("load", row["circuit"], row["load"]))
-            )
+            ohm = self.ohms.get(row["circuit"], float(row["resistance"]))
+            return volts / (ohm * (1 + 0.02 * self.building.normal("load", row["circuit"], row["load"])))
         return share * float(row["current"]) if volts > 5 else 0.0
 
     def _converters(self) -> Iterator[tuple[Node, Node, float]]:
         """Where each converter takes its current, and how much."""
         for row in self.building.sources:
-            if not row["fed_from"] or self.building.board_node("positive", row["source"]) not in self.fixed:
+            if not row.get("fed_from") or self.building.board_node("positive", row["source"]) not in self.fixed:
                 continue
             own = self.building.board_node("positive", row["source"])
             amps = sum(self.current(part) for part in self.parts if part.start == own)

@@ -70,3 +70,34 @@ def test_the_table_stands_beside_the_exact_observer() -> None:
     lines = measure().table({"1": measure().score(*survey(1))})
     assert [line.split("  ")[0].strip() for line in lines[1:]] == ["seed 1", ""]
     assert "exact observer" in lines[2]
+
+
+def claims_keep_their_bounds(seed: int, circuits: int) -> None:
+    for found in measure().claims_of(seed, circuits).values():
+        assert measure().claims_short(found) == []
+
+
+def test_findings_claim_faults_where_there_are_some() -> None:
+    """A fixed share of the first survey: 150 of its circuits, with the site's ``[prior]`` and without."""
+    claims_keep_their_bounds(1, 150)
+
+
+@pytest.mark.long
+@pytest.mark.parametrize("seed", [1, 2, 3])
+def test_findings_claim_faults_where_there_are_some_on_every_stated_seed(seed: int) -> None:
+    claims_keep_their_bounds(seed, CIRCUITS)
+
+
+def test_false_claims_and_missed_faults_are_said() -> None:
+    """The count itself: notes, findings that claim nothing, and a doubtful finding on a sound circuit."""
+    truth = [{"circuit": "A", "cause": "as recorded"}, {"circuit": "B", "cause": "other metal"}]
+
+    def finding(circuit: str, cause: str | None, severity: str = "watch") -> dict[str, Any]:
+        return {"circuit": circuit, "cause": cause, "severity": severity}
+
+    nothing = measure().claims(truth, [finding("A", None), finding("A", "bad connection", "note"), finding("B", None)])
+    assert (nothing.falsely, nothing.rightly) == (0.0, 0.0)
+    wrong = measure().claims(truth, [finding("A", "reading or record doubtful"), finding("B", "longer route", "soon")])
+    assert (wrong.falsely, wrong.rightly, wrong.alarms) == (1.0, 1.0, ("A",))
+    assert measure().claims_short(wrong) == ["1.0000 of the circuits as recorded get a claim: A"]
+    assert measure().claims_short(nothing) == ["only 0.0000 of the others get one"]

@@ -1,0 +1,172 @@
+"""SR01: a source is below what it should have at its terminals, so that what arrives is its doing and not the line's."""
+
+from collections.abc import Iterator, Sequence
+
+from rules.assessment import Citation, Finding, NotJudged, Severity
+from rules.calc.doubt import Weighted, probability_above, total
+from rules.limits import Limits
+from rules.record import Figure, Source
+from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
+from rules.terminals import AtTerminals, at_terminals
+from rules.units import show
+
+REGULATED = ("rectifier", "power supply", "converter")
+MOST_NAMED = 3
+"""Loads that a consequence names."""
+
+
+@rule(
+    id="SR01",
+    title="Source sags or folds back",
+    about="source",
+    severity=Severity.WATCH,
+    remedy="Read its terminals with little and with much load, and its current; compare with its plate, its setting and its input. Then "
+    "take load off, or have it set or exchanged.",
+    caution="A supply that folds back or restarts switches everything behind it, locks and alarms among it: ask before it is loaded or "
+    "switched. A battery behind a rectifier that has failed discharges unseen: its voltage is the only sign.",
+    source=Citation("source or line: no-load and loaded voltage at the source's terminals", status="common practice, no source"),
+    limits=("supply", "decision", "readings", *DOUBTS_OF_READINGS),
+)  # fmt: skip
+def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
+    """
+    The voltage at a source's terminals, on its busbar or at the ``bus`` of a circuit, is beyond doubt below the lowest that
+    is recorded of it: soon. Or a rectifier, power supply or converter is more than 2 % below its working voltage, or falls by
+    more than 2 % of it between two rounds of one circuit while the current rises: watch. Drops of its circuits are judged by
+    their own currents and stay; what their loads have is the source's doing.
+
+    **Finds**: a power supply of 24 V with 22.10 V at its terminals at 9.8 A, of 10 A rating: it folds back. 24.1 V at 2 A
+    and 22.9 V at 8 A at the bus of one circuit.
+
+    **Leaves alone**: 23.9 V of 24.3 V, which is 1.6 %; a battery between its working voltage and its lowest, which
+    discharges; sources in parallel are told once, at the first of them.
+    """
+    source, context = case.row, case.context
+    if not isinstance(source, Source):
+        return
+    node = context.network.node_of.get(("sources", source.id))
+    if node is None or context.network.sources_at(node)[:1] != (source,):
+        return
+    read = at_terminals(context, node)
+    if not read:
+        below = context.network.circuits_below.get(node, ())
+        if any(context.measured[id_].readings for id_ in below if id_ in context.measured):
+            yield supply_sags.gap(case, "terminals", f"the terminals of {source.tag} were not read")
+        return
+    sources, limits = context.network.sources_at(node), context.limits
+    lowest = float(context.network.held_lowest_v[node]) if not context.network.gap_lowest[node] else None
+    if lowest is not None and (worst := _below(read, lowest, limits)) is not None:
+        yield _found(case, node, worst, f"below its lowest {show(lowest, 'V')}", Figure(lowest, "V"), Severity.SOON)
+        return
+    regulated = [one for one in sources if one.kind in REGULATED]
+    if not regulated:
+        return
+    if all(one.working_voltage_v is None for one in sources):
+        yield supply_sags.gap(case, "terminals", f"the working voltage of {source.tag} is not recorded")
+        return
+    working, share = float(context.network.held_v[node]), limits["supply.regulation_share"]
+    if (worst := _below(read, (1 - share) * working, limits)) is not None:
+        words = f"{show(1 - worst.voltage.value / working, '1', digits=2)} below its working {show(working, 'V')}"
+        yield _found(case, node, worst, words, Figure(working, "V"), Severity.WATCH)
+    elif (pair := _falls(read, share * working, limits)) is not None:
+        yield _fallen(case, node, *pair)
+
+
+def _below(read: Sequence[AtTerminals], limit_v: float, limits: Limits) -> AtTerminals | None:
+    """The reading that lies most surely below a voltage; ``None`` where none does beyond doubt. A dead one is not a sag."""
+
+    def sure(one: AtTerminals) -> float:
+        return probability_above(limit_v, one.voltage.value, one.voltage.u or 0.0)
+
+    living = [one for one in read if one.voltage.value > limits["readings.no_voltage_share"] * limit_v]
+    if not living:
+        return None
+    worst = max(living, key=lambda one: (sure(one), -one.voltage.value))
+    return worst if sure(worst) >= limits["decision.beyond_doubt"] else None
+
+
+def _falls(
+    read: Sequence[AtTerminals], least_v: float, limits: Limits
+) -> tuple[AtTerminals, AtTerminals, Figure] | None:
+    """Two rounds at one place of which the one with more current has less voltage, by more than is allowed."""
+    best: tuple[AtTerminals, AtTerminals, Figure] | None = None
+    sure = limits["decision.beyond_doubt"]
+    for light in read:
+        for heavy in read:
+            if light.place != heavy.place or not light.amps or not heavy.amps:
+                continue
+            volts, volts_u = total([*light.volts, *_less(heavy.volts)])
+            amps, amps_u = total([*heavy.amps, *_less(light.amps)])
+            if probability_above(volts, least_v, volts_u) < sure or probability_above(amps, 0.0, amps_u) < sure:
+                continue
+            if best is None or volts > best[2].value:
+                best = light, heavy, Figure(volts, "V", volts_u)
+    return best
+
+
+def _less(terms: Sequence[Weighted]) -> list[Weighted]:
+    return [Weighted(-term.weight, term.shown) for term in terms]
+
+
+def _found(case: BoardCase, node: int, worst: AtTerminals, against: str, limit: Figure, severity: Severity) -> Finding:
+    current = worst.current
+    at = f" at {show(current.value, 'A', current.u)}" if current is not None and worst.whole else ""
+    return supply_sags.finding(
+        case,
+        "terminals",
+        f"{show(worst.voltage.value, 'V', worst.voltage.u)} at the {worst.place} in round {worst.round}{at}, {against}"
+        f"{_overloaded(case, node, worst)}",
+        numbers={"voltage": worst.voltage, "limit": limit} | ({"current": current} if current is not None else {}),
+        severity=severity,
+        source=f"{supply_sags.source}; {case.context.limits.citation('supply')}",
+        consequences=tuple(_consequences(case, node)),
+    )
+
+
+def _fallen(case: BoardCase, node: int, light: AtTerminals, heavy: AtTerminals, fall: Figure) -> Finding:
+    low, high = light.current, heavy.current
+    assert low is not None
+    assert high is not None
+    source_ohm = fall.value / (high.value - low.value)
+    return supply_sags.finding(
+        case,
+        "terminals",
+        f"the {light.place} falls by {show(fall.value, 'V', fall.u)}, from {show(light.voltage.value, 'V')} in round {light.round} to "
+        f"{show(heavy.voltage.value, 'V')} in round {heavy.round}, while the current rises from {show(low.value, 'A', low.u)} to "
+        f"{show(high.value, 'A', high.u)}: as {show(source_ohm, 'ohm', digits=2)} in the source would, if nothing else changed",
+        numbers={"fall": fall, "current": high, "lighter current": low},
+        source=f"{supply_sags.source}; {case.context.limits.citation('supply')}",
+        consequences=tuple(_consequences(case, node)),
+    )
+
+
+def _overloaded(case: BoardCase, node: int, worst: AtTerminals) -> str:
+    """That it is loaded to its rating or beyond, where its whole current was read."""
+    current = worst.current
+    ratings = [source.rated_current_a for source in case.context.network.sources_at(node)]
+    known = [amps for amps in ratings if amps is not None]
+    if current is None or not worst.whole or not known or len(known) < len(ratings):
+        return ""
+    near = current.value >= (1 - case.context.limits["supply.rating_margin"]) * sum(known)
+    return f": it is loaded to its rating of {show(sum(known), 'A')}, and folds back" if near else ""
+
+
+def _consequences(case: BoardCase, node: int) -> Iterator[str]:
+    yield "drops of its circuits are judged by their own currents and stay; what arrives at their ends is the source's doing"
+    low = [
+        f"{load.tag} on {case.context.index.circuits[circuit_id].tag}"
+        for circuit_id in case.context.network.circuits_below.get(node, ())
+        for load in case.context.index.loads_of(circuit_id)
+        if load.lowest_voltage_v is not None and _read_below(case, circuit_id, load.point, load.lowest_voltage_v)
+    ]
+    if low:
+        more = f" and {len(low) - MOST_NAMED} more" if len(low) > MOST_NAMED else ""
+        yield f"read below their lowest behind it: {', '.join(low[:MOST_NAMED])}{more}"
+
+
+def _read_below(case: BoardCase, circuit_id: str, point: str, lowest: float) -> bool:
+    measured = case.context.measured.get(circuit_id)
+    if measured is None:
+        return False
+    read = [total(this.volts[point]) for this in measured.rounds if point in this.volts]
+    sure = case.context.limits["decision.fails_at"]
+    return any(volts > 0 and probability_above(lowest, volts, u) >= sure for volts, u in read)

@@ -1,0 +1,86 @@
+"""What was read at the terminals of a source, and on the busbars and circuits that hang on it without a cable between."""
+
+from __future__ import annotations
+
+from collections import defaultdict
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+from rules.calc.doubt import Weighted, total
+from rules.case import Context
+from rules.meters import worth
+from rules.record import Board, Figure, Reading, Source
+from rules.rounds import Round, judged
+
+
+@dataclass(frozen=True, slots=True)
+class AtTerminals:
+    """Voltage at a source's terminals in one round."""
+
+    place: str
+    """``busbar of MDB``, ``bus of A-01``."""
+    visit: str
+    round: str
+    volts: tuple[Weighted, ...]
+    amps: tuple[Weighted, ...]
+    """On a busbar what it gives in all; on a circuit, that of its device alone; empty where none was read."""
+    whole: bool
+    """Whether ``amps`` is all that the busbar gives."""
+
+    @property
+    def voltage(self) -> Figure:
+        value, u = total(self.volts)
+        return Figure(value, "V", u)
+
+    @property
+    def current(self) -> Figure | None:
+        if not self.amps:
+            return None
+        value, u = total(self.amps)
+        return Figure(value, "A", u)
+
+
+def at_terminals(context: Context, node: int) -> list[AtTerminals]:
+    """Everything that was read at one held node on the latest visit, in the order of its boards, then circuits."""
+    found = [*_busbars(context, node), *_circuits(context, node)]
+    if not found:
+        return []
+    latest = max((one.visit for one in found), key=lambda visit: context.visit_ranks[visit])
+    return [one for one in found if one.visit == latest]
+
+
+def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
+    index = context.index
+    for table, row_id in context.network.rows_at.get(node, ()):
+        row: Source | Board = index.sources[row_id] if table == "sources" else index.boards[row_id]
+        rounds: dict[tuple[str, str], list[Reading]] = defaultdict(list)
+        for reading in judged(index.readings_of(row.id), index):
+            rounds[reading.visit_or_default, reading.round].append(reading)
+        for (visit, round_), readings in rounds.items():
+            volts = [one for one in readings if one.quantity == "voltage" and one.leg in ("", "both")]
+            amps = [one for one in readings if one.quantity == "current"]
+            if volts:
+                yield AtTerminals(
+                    f"busbar of {row.tag}", visit, round_, _mean(context, volts), _mean(context, amps), whole=True
+                )
+
+
+def _circuits(context: Context, node: int) -> Iterator[AtTerminals]:
+    for circuit_id in context.network.circuits_at.get(node, ()):
+        circuit, measured = context.index.circuits[circuit_id], context.measured.get(circuit_id)
+        if measured is None:
+            continue
+        for this in measured.rounds:
+            if "bus" in this.volts:
+                first = _first_current(this, tuple(measured.tree.ends))
+                yield AtTerminals(
+                    f"bus of {circuit.tag}", measured.visit, this.name, this.volts["bus"], first, whole=False
+                )
+
+
+def _first_current(this: Round, ends: tuple[str, ...]) -> tuple[Weighted, ...]:
+    return this.amps.get("way") or (this.amps.get(ends[0], ()) if ends else ())
+
+
+def _mean(context: Context, rows: list[Reading]) -> tuple[Weighted, ...]:
+    return tuple(Weighted(1 / len(rows), worth(row, context.index, context.limits).shown) for row in rows)
