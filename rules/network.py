@@ -97,6 +97,8 @@ class Network:
         self.unknown_load = wiring.unknown
         """By node: a load there whose figure is not known."""
         unknown_converters(wiring, index)
+        self.unknown_loads = frozenset(self.unknown_load.values())
+        """What each of them is called: a load on its circuit, or a converter."""
         self._below = unknown_below(wiring, self._meshes())
         self._load = self._loads()
         legs = figures.legs

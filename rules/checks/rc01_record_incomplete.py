@@ -35,9 +35,8 @@ def gaps_of(case: CircuitCase) -> list[tuple[str, str]]:
             gaps.append((run.name, GAP_STRUCTURE.format(run.name)))
     if not case.loads and not index.fed_by_circuit(case.circuit.id):
         gaps.append(("loads", GAP_NO_LOAD))
-    unknown = {name for name in network.unknown_load.values() if name.endswith(f" on {case.tag}")}
     for point in case.loads:
-        if f"{point.load.tag} on {case.tag}" in unknown:
+        if f"{point.load.tag} on {case.tag}" in network.unknown_loads:
             gaps.append((point.load.point, f"what {point.load.tag} draws is not known"))
     return gaps
 

@@ -13,11 +13,12 @@ from collections.abc import Sequence
 
 from rules.assessment import NextReading
 from rules.case import CircuitCase
-from rules.diagnosis.atoms import ATOMS
-from rules.diagnosis.candidates import Meters, Posed, posed
+from rules.diagnosis.atoms import ATOMS, FEWEST_SIZES
+from rules.diagnosis.candidates import AGAIN, Meters, Posed, posed
 from rules.diagnosis.choice import chosen, looked_at
 from rules.diagnosis.first_reading import first_round, missing_record
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, SEMICONDUCTOR
+from rules.diagnosis.options import TRIED
 from rules.diagnosis.problem import Signature
 from rules.diagnosis.spoken import spoken
 
@@ -75,6 +76,8 @@ def _is_settled(case: CircuitCase) -> bool:
 
 
 def _numbers(this: Posed) -> int:
-    """Numbers in the largest array that one circuit of this structure needs: atoms times rows times doubts."""
-    signature, places = this.imagined.signature, 4 * len(this.imagined.names)
-    return max(ATOMS, 4 * places) * len(signature.rows) * (signature.sources + signature.gains + places)
+    """Numbers in the largest array that one circuit of this structure needs: atoms or elements, times rows times doubts."""
+    signature, branches, places = this.imagined.signature, len(this.imagined.names), 4 * len(this.imagined.names)
+    looked_at = len(this.read.signature.rows) + sum(TRIED.values()) + len(this.rows_of(AGAIN))
+    of_atoms = max(ATOMS, FEWEST_SIZES * places) * looked_at * (signature.sources + signature.gains + branches + 2)
+    return max(of_atoms, 2 * places * len(signature.rows) * (signature.sources + 1))

@@ -114,9 +114,9 @@ def benchmark(circuits: int, looped: int, runs: int, say: Callable[[str], None])
     measured = [context.measured[case.circuit.id] for case in cases]
     posing = seconds(lambda: [posed_by(context, side) for side in measured])
     say(f"    posing the problems from their rounds {1e6 * posing / len(cases):.0f} µs a circuit")
-    small, large = (_memory(many[:size], context.limits) for size in (len(many) // 4, len(many)))
+    once, twice = (_memory(problems, context.limits) for problems in (many, many * 2))
     say(
-        f"    memory beside the results: {small / 1e6:.1f} MB for {len(many) // 4:,}, {large / 1e6:.1f} MB for {len(many):,}"
+        f"    memory beside the results: {once / 1e6:.1f} MB for {len(many):,}, {twice / 1e6:.1f} MB for {2 * len(many):,}"
     )
     return one, ratio
 

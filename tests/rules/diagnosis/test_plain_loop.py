@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from types import ModuleType
+from typing import Any
 
 import numpy as np
 import pytest
@@ -61,17 +62,22 @@ def doubtful_evidences(judged: Judged) -> list[float]:
     )
 
 
-def agrees(case: CircuitCase, plain: ModuleType, plain_slips: ModuleType, problem_from: ProblemFrom) -> None:
-    """One circuit by both ways."""
-    problem = problem_from(case)
+def same_evidence(case: CircuitCase, loop: Any, problem: Problem) -> tuple[Judged, float]:
+    """One circuit judged, its log evidences those of the loop; the best of them."""
     judged = judge_block(shape_of(problem.signature), [problem], case.limits)
     fast = evidences(judged, problem)
-    loop = plain.Plain(case)
     slow: dict[tuple[str, str], float] = loop.evidences()
     assert fast.keys() == slow.keys()
     best = max(slow.values())
     apart = {key: abs(fast[key] - slow[key]) for key in slow if slow[key] > best - MATTERS}
     assert max(apart.values()) < AGREES, (case.tag, apart)
+    return judged, best
+
+
+def agrees(case: CircuitCase, plain: ModuleType, plain_slips: ModuleType, problem_from: ProblemFrom) -> None:
+    """One circuit by both ways."""
+    problem, loop = problem_from(case), plain.Plain(case)
+    judged, best = same_evidence(case, loop, problem)
     (diagnosis,) = diagnose([problem], case.limits)
     both = sum(row.probability for row in diagnosis.causes if row.joints)
     settled = 1 - both
@@ -104,6 +110,36 @@ def test_every_circuit_agrees(
 ) -> None:
     for case in draw(5, CIRCUITS):
         agrees(case, plain, plain_slips, problem_from)
+
+
+def test_a_long_circuit_agrees(
+    plain: ModuleType, plain_slips: ModuleType, chains: ModuleType, problem_from: ProblemFrom
+) -> None:
+    """Twenty runs, every point read: what a place moves is one row of twenty."""
+    lengths = [6.0] * 20
+    volts = chains.drops(lengths, 8.0, [0.0] * 11 + [0.02])
+    readings = chains.read(["way", *(f"p{n}" for n in range(1, 21))], volts, 8.0)
+    agrees(chains.case_from(chains.chain(lengths, readings)), plain, plain_slips, problem_from)
+
+
+@pytest.mark.parametrize("bad", [0, 3, 8])
+def test_a_place_that_moves_more_rows_than_it_has_columns_agrees(
+    plain: ModuleType, chains: ModuleType, problem_from: ProblemFrom, bad: int
+) -> None:
+    """Drops with a long lead from the way to each of nine points: what is wrong in the first run moves all of them."""
+    lengths = [6.0] * 9
+    volts = chains.drops(lengths, 8.0, [0.0] * bad + [0.02])
+    readings = [
+        {"quantity": "drop", "at": "way", "to": f"p{n}", "leg": "both", "value": f"{volts[0] - volts[n]:.3f}"}
+        | {"instrument": "M1", "circuit": "C1", "round": "1"}
+        for n in range(1, 10)
+    ]
+    readings += chains.read([], volts, 8.0)
+    case = chains.case_from(chains.chain(lengths, readings))
+    problem = problem_from(case)
+    shape = shape_of(problem.signature)
+    assert shape.moved_rows.shape[1] > 1 + shape.moving_columns.shape[1]
+    same_evidence(case, plain.Plain(case), problem)
 
 
 def test_a_batch_gives_what_each_circuit_alone_gives(draw: Draw, problem_from: ProblemFrom) -> None:
