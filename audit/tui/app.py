@@ -28,6 +28,7 @@ from audit.tui.settings import UserSettings
 from audit.tui.state import Survey, latest_visit
 from audit.tui.theme import THEMES
 from audit.tui.type_ahead import TypeAhead
+from rules.assessment import CircuitResult
 from rules.problems.cells import text_complaint
 
 R = TypeVar("R")
@@ -109,6 +110,11 @@ class OhmwalkApp(App[None]):
         else:
             self.survey = self.survey.of(message.site, message.index, visit, message.read)
         self._judge.judge(message.site, self.walk_screen.in_sight)
+
+    def take_provisional(self, result: CircuitResult) -> None:
+        """What is said of a circuit whose readings are saved, until it is judged with all the others."""
+        if self.survey is not None:
+            self.survey = replace(self.survey, results={**self.survey.results, result.circuit_id: result})
 
     @on(Judged)
     def take_some_results(self, message: Judged) -> None:

@@ -24,9 +24,10 @@ if TYPE_CHECKING:
 
 R = TypeVar("R")
 
-LONGEST_HOLD_S = 6.0
-"""For how long keys wait: a save waits five seconds for another program. [s]"""
-_LONGEST_HANDLING_S = 1.0
+LONGEST_HOLD_S = 15.0
+"""For how long keys wait: a save waits five seconds for another program, on a slow or busy machine longer. [s]"""
+_LONGEST_HANDLING_S = 5.0
+"""For how long a key waits for the one before it: on a busy machine a screen may take a second to open. [s]"""
 _LOOK_AGAIN_S = 0.002
 
 

@@ -75,7 +75,8 @@ def _easiest_first(checks: Sequence[Check]) -> list[Check]:
 def _check(explanation: Explanation, limits: Limits) -> Check:
     noise, size = noise_of(explanation, limits), explanation.size
     repeated = min(max(math.ceil((TELLS * noise / max(abs(size.value), 1e-12)) ** 2), 1), MOST_REPEATED)
-    bits = information(explanation.probability, size.value, size.u or 0.0, noise / math.sqrt(repeated))
+    sure = min(explanation.probability, 1.0)  # a sum of shares may come out above one by a rounding
+    bits = information(sure, size.value, size.u or 0.0, noise / math.sqrt(repeated))
     return Check(explanation, repeated, bits)
 
 

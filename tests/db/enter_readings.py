@@ -11,6 +11,7 @@ from __future__ import annotations
 import sys
 from itertools import count, islice
 
+from db.errors import SiteLocked
 from db.store import SiteStore
 from rules.record import Reading
 
@@ -19,12 +20,20 @@ def main(path: str, who: str, most: str = "1000000") -> None:
     """Save readings with the values 0, 1, 2 … until the end comes."""
     with SiteStore(path, laptop=who) as store:
         for value in islice(count(), int(most)):
-            with store.save(who, f"reading {value}") as save:
-                save.add(
-                    "readings",
-                    Reading(id="", circuit_id="c1", round=who, quantity="voltage", at="way", value=float(value)),
-                )
+            while not is_saved(store, who, value):
+                pass
             print(value, flush=True)
+
+
+def is_saved(store: SiteStore, who: str, value: int) -> bool:
+    """Save a reading; false where another program held the file for five seconds, and the value is to be entered again."""
+    reading = Reading(id="", circuit_id="c1", round=who, quantity="voltage", at="way", value=float(value))
+    try:
+        with store.save(who, f"reading {value}") as save:
+            save.add("readings", reading)
+    except SiteLocked:
+        return False
+    return True
 
 
 if __name__ == "__main__":

@@ -121,8 +121,11 @@ class SurveyScreen(OurScreen[None]):
         self._show_walk(survey)
         self.page.survey = survey
         self.strip.survey = survey
-        if survey.is_judged and not self.strip.is_open:
-            self.page.typing = None
+        if not self.strip.is_open:
+            if survey.is_judged:
+                self.page.typing = None
+            elif self.page.typing is not None:
+                self.call_later(self._show_saved)
         self._look_ahead()
 
     @on(WalkList.Moved)
@@ -292,13 +295,21 @@ class SurveyScreen(OurScreen[None]):
     def leave_strip(self, message: EntryStrip.Left) -> None:
         self.strip.close()
         self.remove_class("-entering")
-        if not (message.finished and self.survey is not None and not self.survey.is_judged):
-            self.page.typing = None  # else the old verdict would come back until the new one is there
+        self._show_saved()
         self.set_focus(self.page if self.turned else self.walk)
         if message.finished:
             self.say(
                 f"round {self.strip.round_name} of {self.place_words()} is saved · n next circuit · m another round"
             )
+
+    def _show_saved(self) -> None:
+        """What is saved but not judged yet: else the old verdict would come back until the new one is there."""
+        survey = self.survey
+        view = self.strip.saved_view() if survey is not None and not survey.is_judged else None
+        self.page.typing = view
+        result = view.result if view is not None else None
+        if result is not None and survey is not None and survey.results.get(result.circuit_id) != result:
+            self.ohmwalk.take_provisional(result)
 
     def action_choose_meters(self) -> None:
         """Choose the meters of the visit anew."""

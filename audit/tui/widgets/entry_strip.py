@@ -326,6 +326,16 @@ class EntryStrip(Widget):
         if cell is not None:
             self._echo(cell)
 
+    def saved_view(self) -> CircuitView | None:
+        """What the circuit is said to be with what is saved of it, for as long as that is not judged; ``None`` for nothing."""
+        from audit.tui.entry.verdict import provisional
+
+        context = self.survey.context if self.survey is not None else None
+        if self.survey is None or context is None or not self._of.place.circuit_id:
+            return None
+        readings = readings_of_visit(self.survey.index, self._of.place, self._of.visit)
+        return provisional(context, Typing(self._of.place.circuit_id, self._round, tuple(readings)))
+
     def _typing(self) -> Typing:
         assert self.survey is not None
         place = self._of.place

@@ -287,6 +287,34 @@ async def test_which_meter_is_asked_where_there_is_a_choice_and_kept_for_the_vis
         assert (volts.instrument, volts.full_scale) == ("DMM-2", None)
 
 
+@pytest.mark.parametrize("last", ["escape", "enter"])
+async def test_what_is_saved_is_said_of_the_circuit_before_all_is_judged(
+    hut: Path, last: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Leaving right after a save, the old verdict stood there until the new one came."""
+    async with walking(hut) as walk:
+        before = walk.app.survey.results["c1"] if walk.app.survey is not None else None
+        monkeypatch.setattr(walk.app._judge, "judge", lambda site, first: None)
+        await cautions_read(walk)
+        await walk.enter("4.02", "12.55", "9.1")
+        if last == "escape":
+            await walk.keys("m")
+            await walk.until(lambda: walk.survey.strip.is_open)
+            await walk.type("4")
+            await walk.keys("escape")
+        await walk.until(lambda: not walk.survey.strip.is_open)
+        assert walk.app.survey is not None
+        assert not walk.app.survey.is_judged
+        shown = walk.app.survey.results["c1"]
+        assert shown != before
+        assert shown.drop is not None
+        assert shown.drop.measured.value == pytest.approx(3.45)
+        assert walk.survey.page.typing is not None
+        assert walk.survey.page.typing.result == shown
+        await walk.keys("escape")
+        assert "! act" in next(line for line in walk.screen.split("\n") if "DB1-01" in line)
+
+
 # --- saves that are refused
 
 

@@ -17,7 +17,7 @@ from rules.record import Feed
 from tests.audit.tui.walker import site_of
 
 ROOT = Path(__file__).parents[3]
-PATIENCE_S = 30.0
+PATIENCE_S = 120.0
 
 
 @dataclass

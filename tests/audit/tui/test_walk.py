@@ -157,7 +157,7 @@ async def test_ten_thousand_circuits_paint_like_ten(tmp_path: Path) -> None:
     SiteStore.create(path, replace(HUT, circuits=tuple(circuits), runs=(), loads=()), "t", "l", "made").close()
     app = OhmwalkApp(path, PassingSettings("l", "Ada"))
     async with app.run_test(size=(80, 24)) as pilot:
-        last = time.monotonic() + 20
+        last = time.monotonic() + PATIENCE_S
         while app.survey is None:
             assert time.monotonic() < last
             await pilot.pause(0.01)
