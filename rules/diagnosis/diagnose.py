@@ -106,7 +106,8 @@ def results(judged: Judged, problems: list[Problem]) -> list[Diagnosis]:
         [
             judged.of_places,
             judged.posterior[:, judged.of_cause(SEMICONDUCTOR)],
-            *(judged.posterior[:, numbers].sum(axis=1, keepdims=True) for numbers in members),
+            # a sum of shares may exceed 1 in its last digit
+            *(judged.posterior[:, numbers].sum(axis=1, keepdims=True).clip(max=1.0) for numbers in members),
             judged.of_pair[:, None],
         ],
         axis=1,
