@@ -80,7 +80,7 @@ def mixed(diagnoses: Sequence[Diagnosis]) -> Diagnosis:
 
 def _row(parts: Sequence[tuple[float, Place]]) -> Place:
     most = max(parts, key=lambda part: part[0] * part[1].probability)[1]
-    probability = math.fsum(weight * row.probability for weight, row in parts)
+    probability = min(math.fsum(weight * row.probability for weight, row in parts), 1.0)
     heats = [weight * row.heat for weight, row in parts if row.heat is not None]
     share = probability / most.probability if most.probability > 0 else 0.0
     return most._replace(

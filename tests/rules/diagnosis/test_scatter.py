@@ -81,6 +81,15 @@ def test_repeats_that_agree_by_chance_accuse_nobody(chains: ModuleType) -> None:
     assert sum(row.probability for row in found.causes) == pytest.approx(1.0)
     probabilities = [row.probability for row in found.causes]
     assert probabilities == sorted(probabilities, reverse=True)
+    assert max(probabilities) <= 1.0
+
+
+def test_a_certainty_stays_at_most_one(chains: ModuleType) -> None:
+    """0.4 V more: every scale says a fault, and their sum is not to end above one by rounding."""
+    for off_v in np.linspace(0.4, 0.8, 9).tolist():
+        problem, in_force = posed(chains, ("24.000", "24.004", "24.001"), off_v=off_v)
+        (found,) = diagnose([problem], in_force)
+        assert max(row.probability for row in found.causes) <= 1.0
 
 
 def test_a_batch_gives_what_each_alone_gives(chains: ModuleType) -> None:
