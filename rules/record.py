@@ -48,7 +48,7 @@ class Figure:
 
     value: float
     unit: str
-    """SI, or ``1`` for a share, ``degC`` for a temperature; empty for a count or a ratio, which is no percentage."""
+    """SI, or ``1`` for a share, ``degC`` for a temperature."""
     u: float | None = None
     """Standard uncertainty in the same unit; ``None`` where it has none."""
 

@@ -201,7 +201,7 @@ def test_dry_run_writes_nothing(site: Path, plant: Path, home: Path, capsys: Cap
     edit(plant / "circuits.csv", "circuit", "F99")
     edit(plant / "runs.csv", "circuit", "F99")
     out, _ = done(["intake", str(site), str(plant), "--dry-run"], capsys)
-    assert "circuits      1 added, 29 left as they are" in out
+    assert "circuits      1 added, 31 left as they are" in out
     (plant / "visits.csv").write_text("visit,kind\n2026-09 as left,as left\n", encoding="utf-8")
     out, _ = done(["intake", str(site), str(plant / "visits.csv"), "--dry-run"], capsys)
     assert "visits        1 added" in out
@@ -236,7 +236,7 @@ def test_single_tables_make_a_file_named_like_the_site(plant: Path, capsys: Capt
     assert out.startswith("hut.ohmwalk: made\n")
     assert "Next: ohmwalk check hut.ohmwalk" in err
     assert record(Path("hut.ohmwalk")).name == "hut"
-    assert len(record(Path("hut.ohmwalk")).readings) == 137
+    assert len(record(Path("hut.ohmwalk")).readings) == 161
 
 
 def test_an_empty_file_takes_the_settings_of_the_folder(plant: Path, capsys: Captured) -> None:
@@ -321,7 +321,7 @@ def test_what_cannot_be_taken_in_is_told(sources: list[str], line: str, site: Pa
 
 
 def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plant: Path, capsys: Captured) -> None:
-    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "ours.toml"')
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "telecom-48"', 'limits = "ours.toml"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
     (plant / "ours.toml").write_text('[rules.VD91]\noff = true\nreason = "of no use here"\n', encoding="utf-8")
     line = "site.toml:limits: ours.toml: there is no rule 'VD91'; did you mean 'VD01'?"
@@ -330,7 +330,7 @@ def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plan
 
 
 def test_a_profile_that_is_not_there_is_refused_before_it_stops_every_check(plant: Path, capsys: Captured) -> None:
-    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "genral"')
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "telecom-48"', 'limits = "genral"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
     (line,) = refused(["intake", "a.ohmwalk", str(plant)], capsys)
     assert line.startswith("site.toml:limits: there is no limits profile 'genral'")

@@ -30,9 +30,10 @@ def looked_at(case: CircuitCase) -> tuple[Posed, Judged, Block, Atoms, Outlook]:
     assert this is not None
     judged = judge_block(shape_of(this.read.signature), [this.read], case.limits)
     block = stacked(shape_of(this.imagined.signature), [this.imagined], case.limits)
-    atoms = atoms_of(judged, block)
+    atoms = atoms_of(judged, block, negligible=0.0)
     atoms = replace(atoms, smoothed=np.zeros_like(atoms.smoothed))
-    return this, judged, block, atoms, outlook_of(judged, block, atoms, [this])
+    every = np.arange(len(this.rows_of(SINGLE)) + len(this.imagined.names) + 1)
+    return this, judged, block, atoms, outlook_of(judged, block, atoms, [this], every[None])
 
 
 def conditioned(mean: Floats, covariance: Floats, shown: Floats) -> tuple[Floats, Floats]:
