@@ -35,10 +35,6 @@ class Bar:
     words: str
     """The bar in words, for those who cannot see it."""
 
-    @property
-    def is_read(self) -> bool:
-        return self.measured is not None
-
 
 def drop_bar(
     measured: float | None, u: float | None, computed: float | None, allowed: float | None, words: str = ""

@@ -110,6 +110,8 @@ class SurveyScreen(OurScreen[None]):
     def _take_outline(self, outline: Survey | None) -> None:
         if outline is not None and self.survey is None:
             self._show_walk(outline)
+        elif self.survey is None:  # the record could not be read
+            self.query_one("#head", FewLines).say(None)
 
     def _show_walk(self, survey: Survey) -> None:
         self.query_one("#head", FewLines).say(lambda width: [head_line(survey, width, read_only=survey.read_only)])
