@@ -5,7 +5,7 @@ from __future__ import annotations
 from rules.limits import LimitGroup
 from rules.units import show
 
-_SUFFIXES = {"%": "_percent", "degC": "_c", "W": "_w", "V": "_v", "ohm": "_ohm"}
+_SUFFIXES = {"%": "_percent", "degC": "_c", "W": "_w", "V": "_v", "ohm": "_ohm", "K": "_k"}
 """How the names of a group's numbers end in its unit; a name without the ending is a pure number."""
 
 

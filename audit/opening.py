@@ -69,7 +69,7 @@ def judge_site(site: Site, visit: str | None = None, place: str = "site.toml", *
 
 def limits_in_force(site: Site, place: str = "site.toml") -> Limits:
     """
-    The limits of a site, whose profile names no rule that is not there.
+    The limits in force for a site; what is wrong with them stands where they are named.
 
     Raises
     ------
@@ -77,10 +77,9 @@ def limits_in_force(site: Site, place: str = "site.toml") -> Limits:
         If the limits profile is not there, or does not hold together.
     """
     try:
-        in_force = limits.of(site)
+        return limits.of(site)
     except ProfileError as error:
         raise WrongUse(*(f"{place}:limits: {line}" for line in str(error).splitlines())) from None
-    return in_force
 
 
 def only(assessment: Assessment, circuit: str) -> Assessment:

@@ -56,7 +56,7 @@ class RulePage:
 def rule_page(rule: Rule, limits: Limits) -> RulePage:
     """The page of a rule, with its limits as a profile holds them."""
     paragraphs = _paragraphs(rule.text)
-    usual = f"{rule.about}, usually {rule.severity}"
+    usual = f"{_listed((rule.about, *rule.also_about))}, usually {rule.severity}"
     here = next((_change_words(change) for change in changes_of(limits) if change.rule == rule.id), "")
     about = [Row("about", usual), *([Row("here", here, "strong")] if here else [])]
     text = [Row(label, words) for label, words in paragraphs]
@@ -81,6 +81,16 @@ def rule_page(rule: Rule, limits: Limits) -> RulePage:
             Part("Sources", tuple(Row(citation.status, _place(citation)) for citation in cited)),
         ),
     )
+
+
+def _listed(words: tuple[str, ...]) -> str:
+    """
+    Words of a list.
+
+    >>> _listed(("circuit",)), _listed(("circuit", "board", "source"))
+    ('circuit', 'circuit, board and source')
+    """
+    return " and ".join(filter(None, (", ".join(words[:-1]), words[-1])))
 
 
 def _paragraphs(text: str) -> list[tuple[str, str]]:

@@ -79,7 +79,7 @@ def _rule(rule: Rule, page: RulePage, limits: Limits) -> dict[str, Any]:
     return {
         "rule": rule.id,
         "title": rule.title,
-        "about": rule.about,
+        "about": [rule.about, *rule.also_about],
         "severity": str(rule.severity),
         "in_force": {
             "off": setting is not None and setting.off,

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from rules.calc.agreement import probability_apart
 from rules.calc.doubt import Shown, Weighted, probability_above, total
 from rules.limits import Limits
-from rules.record import Figure, Reading
+from rules.record import Figure, Reading, Run
 from rules.rounds import Round, Tree
 from rules.units import show
 
@@ -66,12 +66,11 @@ def voltages_around(this: Round, limits: Limits) -> list[Unclosed]:
 
 def _drops(this: Round) -> dict[tuple[str, str], list[tuple[str, Terms]]]:
     """Every way in which the drop over both legs between two points is known, a direct one among them."""
-    legs: dict[tuple[str, str], dict[str, Terms]] = {}
+    rows: dict[tuple[str, str], dict[str, list[Reading]]] = {}
     for row in this.readings:
         if row.quantity == "drop":
-            of_pair = legs.setdefault((row.at, row.to), {})
-            leg = row.leg or "both"
-            of_pair.setdefault(leg, _mean([r for r in this.readings if _is_alike(r, row)], this))
+            rows.setdefault((row.at, row.to), {}).setdefault(row.leg or "both", []).append(row)
+    legs = {pair: {leg: _mean(alike, this) for leg, alike in of_pair.items()} for pair, of_pair in rows.items()}
     both: dict[tuple[str, str], list[tuple[str, Terms]]] = {}
     for pair, of_pair in legs.items():
         known: list[tuple[str, Terms]] = []
@@ -90,15 +89,6 @@ def _drops(this: Round) -> dict[tuple[str, str], list[tuple[str, Terms]]]:
             if first == start and (middle, end) in both and middle != end
         ]
     return both
-
-
-def _is_alike(one: Reading, other: Reading) -> bool:
-    return (one.quantity, one.at, one.to, one.leg or "both") == (
-        other.quantity,
-        other.at,
-        other.to,
-        other.leg or "both",
-    )
 
 
 def poles_of(readings: Sequence[Reading], shown: Mapping[str, Shown], limits: Limits) -> Iterator[Unclosed]:
@@ -140,8 +130,11 @@ def currents_at_points(this: Round, tree: Tree, drawn: frozenset[str], limits: L
         Points at which a load, a board or a converter takes current.
     """
     found = []
+    starting: dict[str, dict[str, Run]] = {}
+    for end, run in tree.ends.items():
+        starting.setdefault(run.from_point, {})[end] = run
     for point, arriving in this.amps.items():
-        leaving = {end: run for end, run in tree.ends.items() if run.from_point == point}
+        leaving = starting.get(point, {})
         of_point = [*leaving.values(), *([tree.ends[point]] if point in tree.ends else [])]
         if not leaving or any(run.id in tree.meshed or run.id in tree.shared for run in of_point):
             continue

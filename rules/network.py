@@ -10,7 +10,6 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
-from functools import cached_property
 from typing import Literal, TypeAlias
 
 import numpy as np
@@ -22,6 +21,7 @@ from rules.calc.loops import Legs
 from rules.calc.network import NO_TIES, Solved
 from rules.calc.network import Network as Shape
 from rules.calc.newton import Loads
+from rules.hanging import Hanging, unknown_below, unknown_converters
 from rules.held import giving_of, highest_v, lowest_v, working_v
 from rules.index import Index
 from rules.limits import Limits
@@ -89,14 +89,17 @@ class Network:
             if wiring.run[node]
         )
         """Ids of the runs that are part of a mesh."""
+        root = self._shape.forest.climb(self._shape.forest.is_root)
+        self.hanging = Hanging(wiring, root)
+        """What hangs on each node."""
         self._held()
         self.gap, self.gap_lowest, self.gap_highest = (self._gaps(state) for state in ("", "lowest", "highest"))
         self.unknown_load = wiring.unknown
         """By node: a load there whose figure is not known."""
-        self._unknown_converters()
+        unknown_converters(wiring, index)
         self.unknown_loads = frozenset(self.unknown_load.values())
         """What each of them is called: a load on its circuit, or a converter."""
-        self._below = self._unknown_below()
+        self._below = unknown_below(wiring, self._meshes())
         self._load = self._loads()
         legs = figures.legs
         recorded = self._state(legs.out, legs.back, self.held_v, lambda one: one.loop_ohm)
@@ -200,31 +203,6 @@ class Network:
             return f"{self._figures.runs[int(self._row[node])].name} of {circuit.tag}"
         return f"the {'way' if circuit.device == 'none' else 'device'} of {circuit.tag}"
 
-    @cached_property
-    def circuits_at(self) -> dict[int, list[str]]:
-        """Ids of the circuits whose ``bus`` each node is, by node."""
-        found: dict[int, list[str]] = {}
-        for circuit_id, nodes in self.nodes_of.items():
-            found.setdefault(nodes["bus"], []).append(circuit_id)
-        return found
-
-    @cached_property
-    def rows_at(self) -> dict[int, list[tuple[str, str]]]:
-        """Table and id of the sources and boards whose busbar each node is, by node."""
-        found: dict[int, list[tuple[str, str]]] = {}
-        for row, node in self.node_of.items():
-            found.setdefault(node, []).append(row)
-        return found
-
-    @cached_property
-    def circuits_below(self) -> dict[int, list[str]]:
-        """Ids of the circuits that hang on each held node, whatever lies between, by node."""
-        root = self._shape.forest.climb(self._shape.forest.is_root)
-        found: dict[int, list[str]] = {}
-        for circuit_id, nodes in self.nodes_of.items():
-            found.setdefault(int(root[nodes["bus"]]), []).append(circuit_id)
-        return found
-
     def sources_at(self, held: int) -> tuple[Source, ...]:
         """The sources that hold a node without a parent."""
         return self._wiring.sources.get(held, ())
@@ -314,41 +292,6 @@ class Network:
             if part.loops is not None:
                 roots = part.nodes[part.forest.is_root].tolist()
                 yield part.nodes[part.loops.coupled].tolist(), roots if len(roots) > 1 else []
-
-    def _unknown_converters(self) -> None:
-        """A converter draws what is not known where its efficiency, or a load behind it, is not."""
-        takes = self._wiring.takes
-        converters = [source for source in self._index.site.sources if source.id in takes]
-        behind = {source.id for node in self.unknown_load for source in self._above(node)} if converters else set()
-        for _ in range(len(takes)):
-            for source in converters:
-                if takes[source.id] in self.unknown_load:
-                    continue
-                if source.efficiency_percent is None or source.working_or_nominal_v is None or source.id in behind:
-                    self.unknown_load[takes[source.id]] = source.tag
-                    behind |= {one.id for one in self._above(takes[source.id])}
-                    break
-            else:
-                return
-
-    def _above(self, node: int) -> tuple[Source, ...]:
-        """The sources that hold the busbar which a node hangs on."""
-        *_, held = self.way_up(node)
-        return self.sources_at(held)
-
-    def _unknown_below(self) -> dict[int, str]:
-        """By branch: one load beneath it whose figure is not known; in a mesh, beneath any of its branches."""
-        below: dict[int, str] = {}
-        for node, name in self.unknown_load.items():
-            for branch in self.way_up(node):
-                if branch in below:
-                    break
-                below[branch] = name
-        for branches, _ in self._meshes():
-            name = next((below[branch] for branch in branches if branch in below), "")
-            for branch in branches if name else ():
-                below.setdefault(branch, name)
-        return below
 
     def _loads(self) -> Loads:
         size = len(self.parent)

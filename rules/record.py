@@ -48,7 +48,7 @@ class Figure:
 
     value: float
     unit: str
-    """SI, or ``1`` for a share, ``degC`` for a temperature; empty for a count or a ratio, which is no percentage."""
+    """SI, or ``1`` for a share, ``degC`` for a temperature."""
     u: float | None = None
     """Standard uncertainty in the same unit; ``None`` where it has none."""
 
@@ -317,7 +317,7 @@ class Reading(Row):
 
     @property
     def unit(self) -> str:
-        return UNIT_OF_QUANTITY[self.quantity]
+        return UNIT_OF_QUANTITY.get(self.quantity, "")
 
     @property
     def is_unloaded(self) -> bool:

@@ -12,9 +12,10 @@ from rules.calc.newton import Loads
 from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.loads import drawn
-from rules.record import Run
+from rules.record import Figure, Run
 from rules.runs import figures
 from rules.tables.conductors import area_mm2, ladder
+from rules.units import show, show_size
 
 MOST_PARALLEL = 20
 """Conductors side by side up to which a sufficient number is looked for. Our own default."""
@@ -34,7 +35,9 @@ class Sufficient:
     """From the board to the load, then. [V]"""
 
 
-def sufficient_of(case: CircuitCase, point: LoadPoint) -> tuple[Sufficient | None, Sufficient | None]:
+def sufficient_of(
+    case: CircuitCase, point: LoadPoint, allowed_v: float | None = None
+) -> tuple[Sufficient | None, Sufficient | None]:
     """
     The smallest size of the ladder, and the fewest conductors in parallel, with which a load's drop conforms.
 
@@ -44,6 +47,8 @@ def sufficient_of(case: CircuitCase, point: LoadPoint) -> tuple[Sufficient | Non
         Of one circuit.
     point : LoadPoint
         One of its loads.
+    allowed_v : float, optional
+        From the feeding board to the load; else what the circuit is allowed to lose. [V]
 
     Returns
     -------
@@ -59,7 +64,8 @@ def sufficient_of(case: CircuitCase, point: LoadPoint) -> tuple[Sufficient | Non
     path = _path(case, point)
     if not path or point.gap or case.nominal_v is None or point.drop_v <= 0:
         return None, None
-    allowed_v = case.allowed_drop_percent / 100 * case.nominal_v
+    if allowed_v is None:
+        allowed_v = case.allowed_drop_percent / 100 * case.nominal_v
     doubt = point.drop_u / point.drop_v
     drop_with = _Circuit(case, point).drop_v
 
@@ -153,3 +159,22 @@ class _Circuit:
         own = loads.current_a + loads.power_w / volts + loads.conductance_s * volts
         loads.current_a[1:] += np.maximum(0.0, amps - on - own)[1:]
         return loads
+
+
+def sufficient_words(
+    by_size: Sufficient | None, by_number: Sufficient | None, nominal_v: float
+) -> tuple[str, dict[str, Figure]]:
+    """What would do, as ``16 mm² in run 1 (0.61 V, 2.5 %) or 2 times the conductors in run 1 (…)``, and the drops then."""
+    told, numbers = [], {}
+    if by_size is not None:
+        told.append((f"{show_size(by_size.size)} in {_names(by_size.runs)}", by_size.drop_v))
+        numbers["drop at sufficient size"] = Figure(by_size.drop_v, "V")
+    if by_number is not None:
+        told.append((f"{by_number.parallel} times the conductors in {_names(by_number.runs)}", by_number.drop_v))
+        numbers["drop at sufficient number"] = Figure(by_number.drop_v, "V")
+    words = [f"{what} ({show(v, 'V', digits=3)}, {show(v / nominal_v, '1', digits=3)})" for what, v in told]
+    return " or ".join(words), numbers
+
+
+def _names(runs: tuple[str, ...]) -> str:
+    return runs[0] if len(runs) == 1 else f"runs {', '.join(name.removeprefix('run ') for name in runs)}"

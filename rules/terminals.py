@@ -51,7 +51,7 @@ def at_terminals(context: Context, node: int) -> list[AtTerminals]:
 
 def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
     index = context.index
-    for table, row_id in context.network.rows_at.get(node, ()):
+    for table, row_id in context.network.hanging.rows_at.get(node, ()):
         row: Source | Board = index.sources[row_id] if table == "sources" else index.boards[row_id]
         rounds: dict[tuple[str, str], list[Reading]] = defaultdict(list)
         for reading in judged(index.readings_of(row.id), index):
@@ -66,7 +66,7 @@ def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
 
 
 def _circuits(context: Context, node: int) -> Iterator[AtTerminals]:
-    for circuit_id in context.network.circuits_at.get(node, ()):
+    for circuit_id in context.network.hanging.circuits_at.get(node, ()):
         circuit, measured = context.index.circuits[circuit_id], context.measured.get(circuit_id)
         if measured is None:
             continue

@@ -66,7 +66,7 @@ def quantity(figure: Figure | None) -> Json | None:
     out: Json = {"value": figure.value}
     if figure.u is not None and math.isfinite(figure.u):
         out["u"] = figure.u
-    out["unit"] = figure.unit or "1"  # a count or a ratio has no unit of its own
+    out["unit"] = figure.unit
     return out
 
 

@@ -31,7 +31,7 @@ class Bar:
     past: bool
     """The reading is beyond the right edge; where nothing was read, the computed drop is."""
     below: bool
-    """The reading is less than nothing: the far end read higher than the near one."""
+    """The reading is less than nothing by more than its doubt: the far end read higher than the near one."""
     words: str
     """The bar in words, for those who cannot see it."""
 
@@ -77,7 +77,7 @@ def drop_bar(
         soft_to=_cut((read + doubt) / scale) if has_doubt and read is not None and doubt is not None else None,
         computed=None if tick is None else _cut(tick / scale),
         past=leading is not None and leading > scale,
-        below=read is not None and read < 0,
+        below=read is not None and read + (doubt or 0.0) < 0,
         words=words,
     )
 

@@ -250,8 +250,10 @@ def percent_words(percent: float, limit: float | None) -> str:
 
     >>> percent_words(5.04, 5), percent_words(1.44, 5)
     ('5.04', '1.4')
+    >>> percent_words(-0.02, 5)
+    '0.0'
     """
-    text = f"{percent:.1f}"
+    text = f"{percent:z.1f}"
     shown = float(text)
     if limit is None or (shown > limit, shown < limit) == (percent > limit, percent < limit):
         return text

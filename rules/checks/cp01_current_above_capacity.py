@@ -7,12 +7,10 @@ from rules.case import CircuitCase
 from rules.decision import Verdict, against_limit
 from rules.errors import RulesError
 from rules.loading import Bounds, bounds_of, current_of, read_in, together
-from rules.record import Figure, Run
+from rules.protection import Overload, is_above, is_past, is_unprotected, overload_of
+from rules.record import Run
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
-
-ROUNDING = 1e-9
-"""Relative: a current that differs from the capacity by less is the capacity."""
 
 
 @rule(
@@ -58,43 +56,35 @@ def _of_run(case: CircuitCase, run: Run, gaps: list[tuple[str, str]]) -> Iterato
     except RulesError as error:
         gaps.append((run.name, str(error)))
         return
-    shown, factor = (
-        read is not None and _is_past(read[1], bounds.most_a, case),
-        case.limits["overload.immediate_factor"],
-    )
-    if amps is not None and _above(amps, bounds.most_a) and not (shown and read is not None and read[1].value > amps):
-        yield _found(case, run, bounds, Figure(amps, "A"), "with every load on", None)
-    elif read is not None and shown:
-        urgent = _is_past(read[1], factor * bounds.most_a, case)
-        yield _found(
-            case, run, bounds, read[1], f"were read in round {read[0]}", Severity.IMMEDIATE if urgent else None
-        )
+    found = overload_of(case, run, bounds)
+    if found is not None:
+        yield _found(case, run, bounds, found)
     elif (
         read is not None and against_limit(read[1].value, bounds.most_a, read[1].u or 0.0, case.limits) is Verdict.OPEN
     ):
         said = show(read[1].value, "A", read[1].u)
         gaps.append((run.name, f"not settled: {said} read in round {read[0]} against {bounds.words}"))
-    elif amps is not None and _above(amps, bounds.least_a):
+    elif amps is not None and is_above(amps, bounds.least_a):
         gaps.append((run.name, f"{show(amps, 'A', digits=3)} with every load on against {bounds.words}"))
 
 
-def _found(case: CircuitCase, run: Run, bounds: Bounds, amps: Figure, how: str, severity: Severity | None) -> Finding:
-    said, _ = show_against(amps.value, bounds.most_a, "A")
-    limit_c = bounds.capacity.limit_c
+def _found(case: CircuitCase, run: Run, bounds: Bounds, found: Overload) -> Finding:
+    said, _ = show_against(found.current.value, bounds.most_a, "A")
+    how = f"were read in round {found.round}" if found.round else "with every load on"
+    urgent = found.round and is_past(found.current, case.limits["overload.immediate_factor"] * bounds.most_a, case)
     return current_above_capacity.finding(
         case,
         run.name,
         f"{said} {how} in {run.name}; as installed it may carry {bounds.words}",
-        numbers={"current": amps} | bounds.numbers,
-        severity=severity,
+        numbers={"current": found.current} | bounds.numbers,
+        severity=Severity.IMMEDIATE if urgent else None,
         source=f"{current_above_capacity.source}; {bounds.source}",
-        consequences=(f"its conductors are held above the {limit_c:g} °C that their insulation or terminals stand",),
+        consequences=tuple(_consequences(case, run, bounds)),
     )
 
 
-def _above(amps: float, limit_a: float) -> bool:
-    return amps > limit_a * (1 + ROUNDING)
-
-
-def _is_past(read: Figure, limit_a: float, case: CircuitCase) -> bool:
-    return against_limit(read.value, limit_a, read.u or 0.0, case.limits) is Verdict.FAILS
+def _consequences(case: CircuitCase, run: Run, bounds: Bounds) -> Iterator[str]:
+    limit_c, rated = bounds.capacity.limit_c, case.circuit.rated_current_a
+    yield f"its conductors are held above the {limit_c:g} °C that their insulation or terminals stand"
+    if rated is not None and is_unprotected(case, run, bounds):
+        yield f"nor does the device of {show(rated, 'A')} protect it: its rating is above that too"

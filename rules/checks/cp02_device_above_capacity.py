@@ -6,9 +6,9 @@ from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase
 from rules.errors import MissingData, RulesError
 from rules.loading import Bounds, bounds_of, together
+from rules.protection import largest_device_a, overload_of, sources_give_a
 from rules.record import Figure, Run
 from rules.rule import rule
-from rules.tables.ampacity import nec_largest_device_a, nec_next_device_a
 from rules.units import show_against
 
 
@@ -37,8 +37,9 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     **Finds**: a 20 A breaker before 1.5 mm² copper, PVC, method C, 30 °C: 19.5 A. A 20 A fuse before 14 AWG copper.
 
     **Leaves alone**: a 16 A breaker before the same; a 60 A fuse before 6 AWG of 55 A; a circuit whose sources cannot
-    give more than the capacity. Where the rating lies between the capacity with what is not recorded at its lowest and at
-    its most favourable it is not judged. That a gG fuse of the rating may need 1.6 times it to open is left to the standard.
+    give more than the capacity; a run that is loaded above its capacity, where CP01 tells of the device too. Where the
+    rating lies between the capacity with what is not recorded at its lowest and at its most favourable it is not judged.
+    That a gG fuse of the rating may need 1.6 times it to open is left to the standard.
     """
     circuit = case.circuit
     if circuit.device == "none":
@@ -59,9 +60,11 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         except RulesError as error:
             gaps.append((run.name, str(error)))
             continue
-        least_a, rule_words = _largest_a(run, bounds, bounds.least_a)
-        most_a, _ = _largest_a(run, bounds, bounds.most_a)
-        if circuit.rated_current_a <= least_a or _sources_give_a(case) <= bounds.least_a:
+        least_a, rule_words = largest_device_a(run, bounds, bounds.least_a)
+        most_a, _ = largest_device_a(run, bounds, bounds.most_a)
+        if overload_of(case, run, bounds) is not None:
+            continue  # one conductor too small for its load is one finding: CP01 tells of the device too
+        if circuit.rated_current_a <= least_a or sources_give_a(case) <= bounds.least_a:
             continue
         if circuit.rated_current_a <= most_a:
             rated, _ = show_against(circuit.rated_current_a, least_a, "A")
@@ -82,25 +85,3 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             | bounds.numbers,
             source=f"{device_above_capacity.source}; {bounds.source}",
         )
-
-
-def _largest_a(run: Run, bounds: Bounds, ampacity_a: float) -> tuple[float, str]:
-    """The largest device for a capacity, and the words for a rule that says more than the capacity. [A]"""
-    if not bounds.capacity.table.startswith("nec"):
-        return ampacity_a, ""
-    small, standard_a = nec_largest_device_a(run.size, run.material_or_default), nec_next_device_a(ampacity_a)
-    if small is not None and small.value <= standard_a:
-        return small.value, "; the small-conductor rule allows a device of {}"
-    return standard_a, "; the next standard rating is {}"
-
-
-def _sources_give_a(case: CircuitCase) -> float:
-    """The most that the sources together can give for good; infinite where one does not say. [A]"""
-    network = case.context.network
-    nodes = network.nodes_of.get(case.circuit.id)
-    if nodes is None:
-        return float("inf")
-    sources = network.sources_at(list(network.way_up(nodes["bus"]))[-1])
-    limits = [source.current_limit_a for source in sources]
-    known = [amps for amps in limits if amps is not None]
-    return sum(known) if known and len(known) == len(limits) else float("inf")

@@ -1,5 +1,6 @@
 """HT03: a pole or joint has more resistance than its kind, by what is published or by the lowest similar one."""
 
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 
@@ -7,13 +8,17 @@ from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.device import device_resistance_ohm
 from rules.case import CircuitCase, SimilarJoint
 from rules.decision import Verdict, against_limit
-from rules.heat import DEVICE, Hot, Joint, claims, hot_joints, joints_read, kind_of
+from rules.heat import DEVICE, Hot, Joint, claims, healthy_ohm, hot_joints, joints_read, kind_of
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
 
 WITH_A_CEILING = ("breaker B", "breaker C", "breaker D", "fuse gG")
 """Devices whose product standard states the largest loss of a pole."""
+BLADE_SPREAD = 1.15
+"""Times a maker's cold resistance that a blade fuse may have: makers vary by 10 to 15 %, practice."""
+ELECTRONIC_MOST_V = 0.2
+"""Across an electronic protector at its rating, the most of makers' figures of 0.1 to 0.2 V, practice. [V]"""
 
 
 @rule(
@@ -34,10 +39,12 @@ WITH_A_CEILING = ("breaker B", "breaker C", "breaker D", "fuse gG")
 )
 def above_its_kind(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    A pole or a termination loses much more than others of its kind. The drop across one pole of a device is above what its
-    product standard allows, or that of a pole or termination more than 50 % above the lowest similar one that was read on
-    the same visit; and, either way, it turns at least 0.5 W more into heat at full load than that. A comparison alone is
-    never a finding, nor are watts alone.
+    A pole or a termination loses much more than its kind should. A pole has more resistance than is published of it: what
+    its product standard allows a breaker or gG fuse to lose, what makers state of blade fuses and electronic protectors.
+    A termination has more than half as much again as the lowest similar one of the visit, and more than a healthy one of
+    its size can have; a pole of which nothing is published half as much again as a similar one. Either way it must turn
+    0.5 W more into heat at full load than what it is compared with, such a pole 2 W: a comparison alone is never a
+    finding, nor are watts alone.
 
     Similar are poles of the same kind and rating, terminations of the same size and metal. Severity by the heat beyond it:
     soon from 2 W, immediate from 10 W on, else watch.
@@ -45,7 +52,8 @@ def above_its_kind(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     **Finds**: 0.35 V at 16 A across a pole of a 16 A breaker, 22 mΩ: the standard allows 3.5 W, 13.7 mΩ.
 
     **Leaves alone**: 0.13 V at 16 A there; three poles of 50, 60 and 76 µΩ at 100 A, where the highest is 52 % above the
-    lowest but has 0.26 W more. A termination that VD02 claims or HT01 finds is told there.
+    lowest but has 0.26 W more; lugs of 0.05 and 0.15 mΩ on 120 mm², both healthy though one has 9 W more at 300 A. A
+    termination that VD02 claims or HT01 finds is told there.
     """
     found_hot = {hot.joint.place for hot in hot_joints(case) if isinstance(hot, Hot)}
     for joint in joints_read(case):
@@ -60,37 +68,44 @@ def above_its_kind(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
 @dataclass(frozen=True, slots=True)
 class _Reference:
+    """What a joint is compared with."""
+
     ohm: Figure
-    """What it is compared with, and by how much it may be above."""
     factor: float
+    """By which it may be above."""
+    least_ohm: float
+    """Below it nothing is said, whatever it is compared with. [ohm]"""
+    least_w: float
+    """Heat beyond it that is asked for. [W]"""
     words: str
 
 
 def _of_joint(case: CircuitCase, joint: Joint) -> Iterator[Finding | NotJudged]:
-    references = list(_references(case, joint))
-    if joint.full_a is None:
-        if references:
-            yield above_its_kind.gap(case, joint.place, "the largest current there is not known")
+    reference = _published(case, joint) or _compared(case, joint)
+    if reference is None:
+        if joint.run is None:
+            why = "nothing is published of such a device, and no similar one was read"
+            yield above_its_kind.gap(case, joint.place, why)
         return
-    square, least_w = joint.full_a**2, case.limits["joint_compare.least_w"]
-    open_ = ""
-    for reference in references:
-        limit = reference.factor * reference.ohm.value
-        u = ((joint.ohm.u or 0.0) ** 2 + (reference.factor * (reference.ohm.u or 0.0)) ** 2) ** 0.5
-        more_w = (joint.ohm.value - reference.ohm.value) * square
-        more_u = ((joint.ohm.u or 0.0) ** 2 + (reference.ohm.u or 0.0) ** 2) ** 0.5 * square
-        by_ohm = against_limit(joint.ohm.value, limit, u, case.limits)
-        by_heat = against_limit(more_w, least_w, more_u, case.limits)
-        if by_ohm is Verdict.FAILS and by_heat is Verdict.FAILS:
-            yield _found(case, joint, reference, Figure(more_w, "W", more_u))
-            return
-        if Verdict.CONFORMS not in (by_ohm, by_heat):
-            open_ = f"not settled: {show(joint.ohm.value, 'ohm', joint.ohm.u)} against {reference.words}"
-    if open_:
-        yield above_its_kind.gap(case, joint.place, open_)
-    elif not references and joint.run is None:
+    if joint.full_a is None:
+        yield above_its_kind.gap(case, joint.place, "the largest current there is not known")
+        return
+    own_u, its_u = joint.ohm.u or 0.0, reference.ohm.u or 0.0
+    square = joint.full_a**2
+    more = Figure((joint.ohm.value - reference.ohm.value) * square, "W", math.hypot(own_u, its_u) * square)
+    allowed = reference.factor * reference.ohm.value
+    verdicts = (
+        against_limit(joint.ohm.value, allowed, math.hypot(own_u, reference.factor * its_u), case.limits),
+        against_limit(joint.ohm.value, reference.least_ohm, own_u, case.limits),
+        against_limit(more.value, reference.least_w, more.u or 0.0, case.limits),
+    )
+    if all(verdict is Verdict.FAILS for verdict in verdicts):
+        yield _found(case, joint, reference, more)
+    elif Verdict.CONFORMS not in verdicts:
         yield above_its_kind.gap(
-            case, joint.place, "nothing is published of such a device, and no similar one was read"
+            case,
+            joint.place,
+            f"not settled: {show(joint.ohm.value, 'ohm', joint.ohm.u)}, {reference.words}",
         )
 
 
@@ -115,31 +130,44 @@ def _found(case: CircuitCase, joint: Joint, reference: _Reference, more: Figure)
     )
 
 
-def _references(case: CircuitCase, joint: Joint) -> Iterator[_Reference]:
-    circuit, poles = case.circuit, 1
-    if joint.run is None:
-        if joint.place == DEVICE and circuit.device_leg == "both":
-            poles = circuit.device_poles or 1
-        ceiling = (
-            device_resistance_ohm(circuit.device, circuit.rated_current_a, poles, 1.0)
-            if circuit.device in WITH_A_CEILING
-            else None
-        )
-        if ceiling:
-            words = f"where the standard allows {show(ceiling, 'ohm', digits=3)}"
-            yield _Reference(Figure(ceiling, "ohm"), 1.0, words)
+def _published(case: CircuitCase, joint: Joint) -> _Reference | None:
+    """What is published of a pole as the most that it may have; ``None`` of a termination and of other devices."""
+    circuit, rated = case.circuit, case.circuit.rated_current_a
+    if joint.run is not None or rated is None:
+        return None
+    poles = circuit.device_poles or 1 if joint.place == DEVICE and circuit.device_leg == "both" else 1
+    if circuit.device in WITH_A_CEILING:
+        most, whose = device_resistance_ohm(circuit.device, rated, poles, 1.0), "the standard allows"
+    elif circuit.device == "fuse blade":
+        typical = device_resistance_ohm(circuit.device, rated, poles)
+        most, whose = typical and BLADE_SPREAD * typical, "makers state at most"
+    elif circuit.device == "electronic":
+        most, whose = poles * ELECTRONIC_MOST_V / rated, "makers state at most"
+    else:
+        return None
+    if not most:
+        return None
+    words = f"where {whose} {show(most, 'ohm', digits=3)}"
+    return _Reference(Figure(most, "ohm"), 1.0, 0.0, case.limits["joint_compare.least_w"], words)
+
+
+def _compared(case: CircuitCase, joint: Joint) -> _Reference | None:
+    """The lowest similar joint of the visit; ``None`` where no other was read."""
     own = [SimilarJoint("", other.place, other.ohm) for other in joints_read(case) if _alike(case, joint, other)]
-    elsewhere = case.context.joints.get(kind_of(joint, circuit, case.visit), ())
+    elsewhere = case.context.joints.get(kind_of(joint, case.circuit, case.visit), ())
     similar = [*own, *(other for other in elsewhere if other.circuit != case.tag)]
-    if similar:
-        lowest = min(similar, key=lambda other: other.ohm.value)
-        place = f"{lowest.place} of {lowest.circuit}" if lowest.circuit else lowest.place
-        yield _Reference(
-            lowest.ohm,
-            1 + case.limits["joint_compare.above_similar"],
-            f"{joint.ohm.value / lowest.ohm.value:.1f} times the {show(lowest.ohm.value, 'ohm', digits=3)} of {place}, the "
-            + (f"lowest of {len(similar)} similar" if len(similar) > 1 else "only similar one that was read"),
-        )
+    if not similar:
+        return None
+    limits = case.limits
+    lowest = min(similar, key=lambda other: other.ohm.value)
+    place = f"{lowest.place} of {lowest.circuit}" if lowest.circuit else lowest.place
+    words = (
+        f"{joint.ohm.value / lowest.ohm.value:.1f} times the {show(lowest.ohm.value, 'ohm', digits=3)} of {place}, the "
+        + (f"lowest of {len(similar)} similar" if len(similar) > 1 else "only similar one that was read")
+    )
+    _, healthy = healthy_ohm(case, joint.run) if joint.run is not None else (0.0, 0.0)
+    least_w = limits["joint_compare.least_w"] if joint.run is not None else limits["heat.limit_w"]
+    return _Reference(lowest.ohm, 1 + limits["joint_compare.above_similar"], healthy, least_w, words)
 
 
 def _alike(case: CircuitCase, joint: Joint, other: Joint) -> bool:

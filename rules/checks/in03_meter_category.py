@@ -35,6 +35,7 @@ def meter_category_too_low(case: SiteCase) -> Iterator[Finding | NotJudged]:
     """
     index = case.context.index
     wrong: dict[tuple[str, str], tuple[str, dict[str, Figure], list[str]]] = {}
+    ratings: dict[str, tuple[Rating, ...]] = {}
     unrated: list[str] = []
     unasked: list[str] = []
     for place in taken(case.context):
@@ -43,8 +44,11 @@ def meter_category_too_low(case: SiteCase) -> Iterator[Finding | NotJudged]:
             continue
         if not category:
             unasked.append(on.tag)
+        highest = highest_v(place.place, index)
         for meter in _meters(place, index):
-            found = _judged(_ratings(meter, index), category, highest_v(place.place, index))
+            if meter not in ratings:
+                ratings[meter] = _ratings(meter, index)
+            found = _judged(ratings[meter], category, highest)
             if found is None:
                 unrated.append(meter)
             elif found[0]:

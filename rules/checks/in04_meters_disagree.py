@@ -64,7 +64,6 @@ def _compared(
         numbers={
             "first": Figure(a, unit, a_u),
             "second": Figure(b, unit, b_u),
-            "en_ratio": Figure(ratio, ""),
         },
     )
 

@@ -26,9 +26,9 @@ from rules.units import show, show_against
 )
 def dip_at_peak(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    While a load draws its peak, every other load steady, what arrives is below its lowest: soon where that is so from the
-    working voltage, or for a life-safety or trip-or-close load from the source's lowest; else for watch, since it shows only
-    when the source is at its lowest. The source's own resistance counts where it is recorded; else the dip is at least this.
+    A load falls below its lowest voltage while it draws its peak, every other load steady. It is for soon where that is so
+    from the working voltage, or for a life-safety or trip-or-close load from the source's lowest; else for watch, since it
+    shows only when the source is at its lowest. The source's own resistance counts where it is recorded; else the dip is at least this.
 
     **Finds**: a lock of 1 A that starts with 5 A, on 24 V through 1.9 Ω: 14.5 V, below its 20.4 V, though it has 22.1 V
     when it holds.

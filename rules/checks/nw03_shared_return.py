@@ -34,7 +34,7 @@ PART = 0.5
 )
 def shared_return(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    What circuits together put into a return that they share. Told once, at the circuit that stands first: soon where it is
+    A return that circuits share carries more than one of them lets one think. Told once, at the circuit that stands first: soon where it is
     more at design than the return may carry as installed; for watch where the ratings of their devices together are, so
     that nothing protects it. Told of each circuit, as a note: a drop along the return that its own current does not
     explain and the neighbours' do, which is no bad joint; and a reading taken while the neighbours drew less than half of

@@ -53,7 +53,7 @@ def current_above_rating(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     verdict = against_limit(abs(amps.value), rating, amps.u or 0.0, case.limits)
     if verdict is Verdict.CONFORMS:
         return
-    shown, limit = show_against(abs(amps.value), rating, "A")
+    _, limit = show_against(abs(amps.value), rating, "A")
     run = case.tree.ends.get(point)
     where = f"{run.name if run else point}, round {this.name}"
     if verdict is Verdict.OPEN:
@@ -63,6 +63,6 @@ def current_above_rating(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     yield current_above_rating.finding(
         case,
         where,
-        f"{shown} was read ({show(abs(amps.value), 'A', amps.u)}), above the device's {limit}",
+        f"{show(abs(amps.value), 'A', amps.u)} was read, above the device's {limit}",
         numbers={"current": amps, "rating": Figure(rating, "A")},
     )

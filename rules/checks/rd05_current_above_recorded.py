@@ -7,7 +7,7 @@ from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
-from rules.units import show, show_against
+from rules.units import show
 
 
 @rule(
@@ -43,11 +43,10 @@ def current_above_recorded(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             value, u = total(terms)
             if probability_above(value, margin * design, u) < case.limits["decision.beyond_doubt"]:
                 continue
-            shown, recorded = show_against(value, design, "A")
             yield current_above_recorded.finding(
                 case,
                 f"{where}, round {this.name}",
-                f"{shown} was read ({show(value, 'A', u)}) where the loads are recorded to draw {recorded}",
+                f"{show(value, 'A', u)} was read where the loads are recorded to draw {show(design, 'A')}",
                 numbers={"current": Figure(value, "A", u), "recorded": Figure(design, "A")},
                 source=case.limits.citation("readings"),
             )

@@ -39,9 +39,10 @@ def poles_against_voltage(case: CircuitCase | BoardCase) -> Iterator[Finding | N
         if row.quantity == "voltage" and not row.is_unloaded:
             rounds.setdefault(row.round, []).append(row)
     place = case.circuit if isinstance(case, CircuitCase) else case.row
-    floating = any(source.earthing in ("", "floating") for source in sources_of(place, context.index))
     for name, rows in rounds.items():
-        if floating and _has_all_three(rows):
+        if not _has_all_three(rows):
+            continue
+        if any(source.earthing in ("", "floating") for source in sources_of(place, context.index)):
             why = (
                 "the source is not recorded as earthed: a meter's own resistance shifts the poles of a floating system"
             )

@@ -1,13 +1,13 @@
 """RD14: readings of one round lie far apart in time."""
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from datetime import UTC, datetime
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase
 from rules.record import Figure, Reading
 from rules.rule import BoardCase, SiteCase, rule
-from rules.taken import taken_on
+from rules.taken import some, taken, taken_on
 from rules.units import show_against
 
 
@@ -31,21 +31,20 @@ def round_apart_in_time(case: CircuitCase | BoardCase | SiteCase) -> Iterator[Fi
     **Leaves alone**: 08:16 and 08:31; readings of different rounds; a dead test, and what was read with the loads off.
     """
     context = case.context
-    some_timed = any(row.taken_at for row in context.site.readings)
     if isinstance(case, SiteCase):
-        if context.site.readings and not some_timed:
-            yield round_apart_in_time.gap(case, "readings", "none says when it was taken")
+        untimed = [
+            place.place.tag
+            for place in taken(context)
+            if any(len(rows) > 1 and len(_times(rows)) < 2 for rows in _rounds(place.readings).values())
+        ]
+        if untimed:
+            why = f"fewer than two readings of a round say when they were taken: {some(untimed)}"
+            yield round_apart_in_time.gap(case, "readings", why)
         return
     most = context.limits["closure.round_minutes"]
-    rounds: dict[str, list[Reading]] = {}
-    for row in taken_on(case):
-        if row.quantity != "resistance" and not row.is_unloaded:
-            rounds.setdefault(row.round, []).append(row)
-    for name, rows in rounds.items():
-        times = sorted(moment for row in rows if (moment := _moment(row.taken_at)) is not None)
+    for name, rows in _rounds(taken_on(case)).items():
+        times = _times(rows)
         if len(times) < 2:
-            if some_timed and len(rows) > 1:
-                yield round_apart_in_time.gap(case, f"round {name}", "fewer than two readings say when they were taken")
             continue
         seconds = (times[-1] - times[0]).total_seconds()
         if seconds <= most * 60:
@@ -58,6 +57,20 @@ def round_apart_in_time(case: CircuitCase | BoardCase | SiteCase) -> Iterator[Fi
             numbers={"between": Figure(seconds, "s")},
             source=context.limits.citation("closure"),
         )
+
+
+def _rounds(readings: Iterable[Reading]) -> dict[str, list[Reading]]:
+    """Readings under load by round; dead tests and what was read with the loads off left out."""
+    rounds: dict[str, list[Reading]] = {}
+    for row in readings:
+        if row.quantity != "resistance" and not row.is_unloaded:
+            rounds.setdefault(row.round, []).append(row)
+    return rounds
+
+
+def _times(rows: Iterable[Reading]) -> list[datetime]:
+    """When they were taken, as far as they say, in order."""
+    return sorted(moment for row in rows if (moment := _moment(row.taken_at)) is not None)
 
 
 def _moment(taken_at: str) -> datetime | None:

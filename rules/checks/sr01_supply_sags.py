@@ -29,10 +29,10 @@ MOST_NAMED = 3
 )  # fmt: skip
 def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
     """
-    The voltage at a source's terminals, on its busbar or at the ``bus`` of a circuit, is beyond doubt below the lowest that
-    is recorded of it: soon. Or a rectifier, power supply or converter is more than 2 % below its working voltage, or falls by
-    more than 2 % of it between two rounds of one circuit while the current rises: watch. Drops of its circuits are judged by
-    their own currents and stay; what their loads have is the source's doing.
+    A source has less at its terminals than it should. On its busbar, or at the ``bus`` of a circuit, it was read beyond
+    doubt below the lowest that is recorded of it: soon. Or a rectifier, power supply or converter is more than 2 % below
+    its working voltage, or falls by more than 2 % of it between two rounds of one circuit while the current rises: watch.
+    Drops of its circuits are judged by their own currents and stay; what their loads have is the source's doing.
 
     **Finds**: a power supply of 24 V with 22.10 V at its terminals at 9.8 A, of 10 A rating: it folds back. 24.1 V at 2 A
     and 22.9 V at 8 A at the bus of one circuit.
@@ -48,7 +48,7 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
         return
     read = at_terminals(context, node)
     if not read:
-        below = context.network.circuits_below.get(node, ())
+        below = context.network.hanging.circuits_below.get(node, ())
         if any(context.measured[id_].readings for id_ in below if id_ in context.measured):
             yield supply_sags.gap(case, "terminals", f"the terminals of {source.tag} were not read")
         return
@@ -154,7 +154,7 @@ def _consequences(case: BoardCase, node: int) -> Iterator[str]:
     yield "drops of its circuits are judged by their own currents and stay; what arrives at their ends is the source's doing"
     low = [
         f"{load.tag} on {case.context.index.circuits[circuit_id].tag}"
-        for circuit_id in case.context.network.circuits_below.get(node, ())
+        for circuit_id in case.context.network.hanging.circuits_below.get(node, ())
         for load in case.context.index.loads_of(circuit_id)
         if load.lowest_voltage_v is not None and _read_below(case, circuit_id, load.point, load.lowest_voltage_v)
     ]

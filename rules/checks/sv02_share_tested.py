@@ -53,10 +53,8 @@ def share_tested(case: SiteCase) -> Iterator[Finding | NotJudged]:
         f"{found.circuits} circuits); {_found_words(bad)}; of the other {left} up to {more} may be bad, at {show(confidence, '1')} "
         "confidence and if those read were drawn at random",
         numbers={
-            "terminations": Figure(total, ""),
-            "read": Figure(read, ""),
-            "found_bad": Figure(bad, ""),
-            "others_bad_at_most": Figure(more, ""),
+            "share_read": Figure(share, "1"),
+            "others_bad_at_most": Figure(more / left, "1"),
             "confidence": Figure(confidence, "1"),
         },
         source=f"{share_tested.source}; {case.context.limits.citation('sampling')}",

@@ -3,13 +3,13 @@
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
-from rules.case import CircuitCase, LoadPoint
+from rules.case import CircuitCase
 from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, rule
-from rules.sufficient import sufficient_of
-from rules.units import show, show_against, show_size
+from rules.sufficient import sufficient_of, sufficient_words
+from rules.units import show, show_against
 
 MEASURE_FIRST = "Measure the drop of each run at a known current;"
 
@@ -48,7 +48,7 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     share, limit = show_against(worst.drop_v / nominal, case.allowed_drop_percent / 100, "1")
     drop = show(worst.drop_v, "V", worst.drop_u)
     if verdict is Verdict.FAILS:
-        enough = _enough(case, worst)
+        enough, drops = sufficient_words(*sufficient_of(case, worst), nominal)
         own = case.circuit.allowed_drop_percent is not None
         total_percent = case.limits["drop.allowed_total_percent"]
         total_v = total_percent / 100 * nominal
@@ -63,8 +63,8 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "allowed": Figure(case.allowed_drop_percent / 100, "1"),
                 "nominal": Figure(nominal, "V"),
             }
-            | {name: Figure(drop_v, "V") for name, _, drop_v in enough},
-            remedy=f"{MEASURE_FIRST} then {_would_do(enough, nominal)}, or choose a shorter way or a nearer board."
+            | drops,
+            remedy=f"{MEASURE_FIRST} then {enough} would do by the drop alone, or choose a shorter way or a nearer board."
             if enough
             else None,
             source="the circuit's own allowed drop" if own else case.limits.citation("drop", "allowed_percent"),
@@ -77,27 +77,3 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     elif verdict is Verdict.OPEN:
         why = f"not settled: {drop} ({share}) to {worst.load.tag} against {limit} allowed"
         yield drop_above_allowed.gap(case, worst.load.point, why)
-
-
-def _enough(case: CircuitCase, worst: LoadPoint) -> list[tuple[str, str, float]]:
-    """What would do by the drop alone, a size for the thinner runs of the path or a number of conductors; the drop then."""
-    by_size, by_number = sufficient_of(case, worst)
-    enough = []
-    if by_size is not None:
-        what = f"{show_size(by_size.size)} in {_names(by_size.runs)}"
-        enough.append(("drop at sufficient size", what, by_size.drop_v))
-    if by_number is not None:
-        what = f"{by_number.parallel} times the conductors in {_names(by_number.runs)}"
-        enough.append(("drop at sufficient number", what, by_number.drop_v))
-    return enough
-
-
-def _names(runs: tuple[str, ...]) -> str:
-    return runs[0] if len(runs) == 1 else f"runs {', '.join(name.removeprefix('run ') for name in runs)}"
-
-
-def _would_do(enough: list[tuple[str, str, float]], nominal_v: float) -> str:
-    told = []
-    for _, what, drop_v in enough:
-        told.append(f"{what} ({show(drop_v, 'V', digits=3)}, {show(drop_v / nominal_v, '1', digits=3)})")
-    return f"{' or '.join(told)} would do by the drop alone"

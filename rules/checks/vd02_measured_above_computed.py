@@ -41,6 +41,10 @@ REMEDIES = {
     SEMICONDUCTOR: "Look for a diode or an electronic switch at the start of {} and read the drop across it at two currents.",
 }
 """What to do next, by cause; the place goes into the braces."""
+OF_A_DEVICE = (
+    "Read millivolts across each pole of the device once more at the same current; isolate, look at its terminals and work it some times; "
+    "where it stays high, have it exchanged."
+)
 ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it again at the same current."
 
 
@@ -114,6 +118,13 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     heats = {name: figure for name, figure in (("heat", heat), ("heat as read", read)) if figure is not None}
     citation = f"{measured_above_computed.source}; {case.limits.citation('decision')}"
     parts = [*_drop_words(drop), *([_claim_words(case, claim)] if claim else _open_words(causes)), *_remarks(case)]
+    if drop is not None and claim is not None and not _shows(drop, case.limits):
+        hidden = (
+            f"the drop from {drop.start} to {drop.end} in round {drop.round}, "
+            f"{show(drop.measured.value, 'V', drop.measured.u)} measured against "
+            f"{show(drop.computed.value, 'V', drop.computed.u)} computed, does not show it"
+        )
+        parts = [_claim_words(case, claim), hidden, *_remarks(case)]
     yield measured_above_computed.finding(
         case,
         claim.where if claim and claim.where else along,
@@ -125,6 +136,11 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         source=citation,
         consequences=tuple(_consequences(case, claim, heat)),
     )
+
+
+def _shows(drop: Drop, limits: Limits) -> bool:
+    """Whether the drop itself is above the computed one beyond doubt; a joint or one leg may tell what it hides."""
+    return probability_above(drop.too_much.value, 0.0, drop.excess.u or 0.0) >= limits["decision.beyond_doubt"]
 
 
 def _beyond_doubt(case: CircuitCase) -> bool:
@@ -253,6 +269,8 @@ def _numbers(drop: Drop | None, claim: Claim | None) -> dict[str, Figure]:
 def _remedy(claim: Claim | None) -> str | None:
     if claim is None:
         return None
+    if claim.cause == BAD_CONNECTION and claim.where.split()[0] == DEVICE:
+        return OF_A_DEVICE
     separated = claim.cause == BAD_CONNECTION and all(_is_end(joint.where) for joint in claim.joints)
     several = len(claim.places) > 1
     return (ENDS_KNOWN if separated and not several else REMEDIES[claim.cause]).format(claim.where)

@@ -8,7 +8,10 @@ from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, rule
+from rules.sufficient import sufficient_of, sufficient_words
 from rules.units import show, show_against
+
+FEEDER_FIRST = "See which feeder loses most; enlarge it,"
 
 
 @rule(
@@ -16,7 +19,7 @@ from rules.units import show, show_against
     title="Computed drop from the source above the allowed total",
     about="circuit",
     severity=Severity.SOON,
-    remedy="See which feeder loses most; enlarge it, or move load to a nearer board.",
+    remedy=f"{FEEDER_FIRST} or move load to a nearer board.",
     caution="Isolate and prove dead before touching a termination; a battery cannot be switched off. Local code and a licensed "
     "person decide. Computed for all loads at their design value at once.",
     source=Citation("NFPA 70", "2023", "informational notes to 210.19 and 215.2: a recommendation", "verified"),
@@ -46,6 +49,10 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     share, limit = show_against(worst.total_drop_v / nominal, allowed, "1")
     drop = show(worst.total_drop_v, "V", worst.total_drop_u)
     if verdict is Verdict.FAILS:
+        # what is left for the circuit when its feeders lose what they do
+        left_v = allowed * nominal - (worst.total_drop_v - worst.drop_v)
+        found = (None, None) if worst.total_gap or left_v <= 0 else sufficient_of(case, worst, left_v)
+        enough, drops = sufficient_words(*found, nominal)
         yield total_above_allowed.finding(
             case,
             worst.load.point,
@@ -57,7 +64,11 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "behind the board": Figure(worst.drop_v, "V", worst.drop_u),
                 "allowed": Figure(allowed, "1"),
                 "nominal": Figure(nominal, "V"),
-            },
+            }
+            | drops,
+            remedy=f"{FEEDER_FIRST} or move load to a nearer board; in this circuit alone {enough} would do by the drop alone."
+            if enough
+            else None,
             source=case.limits.citation("drop", "allowed_total_percent"),
         )
     elif worst.total_gap:

@@ -31,7 +31,7 @@ from rules.verdict import claimed
 )  # fmt: skip
 def legs_unequal(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
-    Both legs of a path were read with a long lead, and one loses more than the other beyond doubt: length, temperature
+    One leg of a path loses more than the other. Both were read with a long lead and differ beyond doubt: length, temperature
     and current are the same in both, so that even a path of unknown length tells. The excess turns at least 0.5 W into
     heat at full load. Severity by that heat: soon from 2 W, immediate from 10 W on, else watch.
 

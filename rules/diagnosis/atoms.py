@@ -174,7 +174,9 @@ def _extras(judged: Judged, shape: Shape) -> _Part:
     split = [len(p.members) / len(before.places[n].members) for p, n in zip(shape.places, old_places, strict=True)]
     split += [len(o) / len(before.offsets[n]) for o, n in zip(shape.offsets, old_offsets, strict=True)]
     old = [*old_places, *(len(before.places) + n for n in old_offsets)]
-    posterior = judged.posterior[:, [*judged.of_cause(BAD_CONNECTION), *judged.of_cause(SEMICONDUCTOR)]]
+    posterior = np.concatenate([judged.of_places, judged.posterior[:, judged.of_cause(SEMICONDUCTOR)]], axis=1)
+    if judged.pairs.hypotheses.names:  # two bad places: half of them is at either
+        np.add.at(posterior, (np.arange(len(posterior))[:, None], judged.pairs.places), judged.of_pair[:, None] / 2)
     weight = posterior[:, old] * np.array(split)
     sizes = max(FEWEST_SIZES, min(MOST_SIZES, ATOMS // max(1, len(shape.places))))
     coordinate, distance = _strata(judged, sizes)
@@ -245,9 +247,9 @@ def _conductors(judged: Judged, block: Block) -> tuple[Floats, _Part]:
 
 def _slips(judged: Judged) -> _Part:
     """Every slip of a reading, in the order of ``judged.slips``."""
-    count = len(judged.slips.hypotheses.names)
+    count, last = len(judged.slips.hypotheses.names), len(judged.hypotheses.names) - len(judged.pairs.hypotheses.names)
     numbers = np.arange(count, dtype=float)[None]
-    return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, -count:], "slip": numbers})
+    return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, last - count : last], "slip": numbers})
 
 
 def _probability(judged: Judged, causes: tuple[str, ...], doubtful: tuple[str, ...]) -> Floats:

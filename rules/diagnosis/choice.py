@@ -180,7 +180,7 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
         covariance = outlook.again_fixed[number] + level**2 * outlook.again_covariance[number]
         pair = groups_apart(weight, group, mean, covariance)
         ampere = max(abs(a) for a in amps.values())
-        most_a = rounded_down(batch.most_level[number] * ampere)
+        most_a = rounded_down(batch.most_level[number] * ampere) if ampere else math.inf
         asked_a = min(rounded_down(level * ampere), most_a)
         return Choice(option, way, -1, pair, asked_a, most_a=most_a)
     candidate = int(outlook.candidate[number, column])

@@ -114,7 +114,7 @@ def test_every_problem_of_a_folder_has_its_line_and_nothing_is_written(plant: Pa
 def test_an_unknown_limits_profile_is_a_line(plant: Path, capsys: Captured) -> None:
     settings = plant / "site.toml"
     text = settings.read_text(encoding="utf-8")
-    settings.write_text(text.replace('limits = "general"', 'limits = "genral"'), encoding="utf-8")
+    settings.write_text(text.replace('limits = "telecom-48"', 'limits = "genral"'), encoding="utf-8")
     assert refused(["check", str(plant)], capsys) == [
         "site.toml:limits: there is no limits profile 'genral'; did you mean 'general'?; there are: "
         + ", ".join(limits.names())
@@ -262,7 +262,7 @@ def own_profile(plant: Path, text: str) -> None:
     """Give the plant a limits profile of its own."""
     settings = plant / "site.toml"
     old = settings.read_text(encoding="utf-8")
-    settings.write_text(old.replace('limits = "general"', 'limits = "ours.toml"'), encoding="utf-8")
+    settings.write_text(old.replace('limits = "telecom-48"', 'limits = "ours.toml"'), encoding="utf-8")
     (plant / "ours.toml").write_text(text, encoding="utf-8")
 
 

@@ -62,7 +62,7 @@ def plant(tmp_path: Path) -> Path:
     shutil.copytree(Path(str(sample_site("plant").folder)), folder)
     settings = folder / "site.toml"
     text = settings.read_text(encoding="utf-8")
-    settings.write_text(text.replace('limits = "general"', 'limits = "ours.toml"'), encoding="utf-8")
+    settings.write_text(text.replace('limits = "telecom-48"', 'limits = "ours.toml"'), encoding="utf-8")
     (folder / "ours.toml").write_text(OURS, encoding="utf-8")
     return folder
 
@@ -70,7 +70,7 @@ def plant(tmp_path: Path) -> Path:
 @every_rule
 def test_the_page_says_everything_that_the_rule_says(rule: Rule) -> None:
     words = squeezed(" ".join(printed(rule)))
-    for text in (rule.id, rule.title, rule.remedy, rule.caution, f"{rule.about}, usually {rule.severity}"):
+    for text in (rule.id, rule.title, rule.remedy, rule.caution, rule_page(rule, GENERAL).usual):
         assert squeezed(text) in words
     for paragraph in inspect.cleandoc(rule.text).split("\n\n"):
         said = squeezed(paragraph.replace("``", "").replace("**Finds**: ", "").replace("**Leaves alone**: ", ""))
@@ -103,11 +103,19 @@ def test_fit_for_a_pipe_in_any_encoding(rule: Rule | None) -> None:
     assert "\n".join(printed(rule, encoding="ascii")).isascii()
 
 
+@every_rule
+def test_the_page_says_what_the_rule_is_about_and_its_severity(rule: Rule) -> None:
+    usual = rule_page(rule, GENERAL).usual
+    assert usual.startswith(rule.about)
+    assert all(about in usual for about in rule.also_about)
+    assert usual.endswith(f", usually {rule.severity}")
+
+
 def test_the_catalogue_has_every_rule_with_its_line() -> None:
     words = squeezed(" ".join(printed()))
     for rule in catalogue():
         page = rule_page(rule, GENERAL)
-        assert squeezed(f"{rule.id} {rule.title} {rule.about}, usually {rule.severity} {page.brief}") in words
+        assert squeezed(f"{rule.id} {rule.title} {page.usual} {page.brief}") in words
         assert page.brief.count(".") >= 1
         assert len(page.brief) < 160
 
@@ -174,6 +182,7 @@ def test_json_of_all_and_of_one(plant: Path, capsys: pytest.CaptureFixture[str])
     assert list(told) == ["schema", "program", "limits", "rules"]
     assert (told["schema"], told["limits"]) == ("ohmwalk.rules/1", "ours.toml")
     by_id = {rule["rule"]: rule for rule in told["rules"]}
+    assert by_id["RD11"]["about"] == ["circuit", "board", "source"]
     assert list(by_id) == [rule.id for rule in catalogue()]
     assert by_id["VD01"]["in_force"] == {"off": False, "severity": "note", "reason": "agreed in writing"}
     assert by_id["RD06"]["in_force"]["off"] is True

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import io
 import json
 import os
 import re
@@ -200,7 +201,7 @@ def test_dry_run_writes_nothing(site: Path, plant: Path, home: Path, capsys: Cap
     edit(plant / "circuits.csv", "circuit", "F99")
     edit(plant / "runs.csv", "circuit", "F99")
     out, _ = done(["intake", str(site), str(plant), "--dry-run"], capsys)
-    assert "circuits      1 added, 29 left as they are" in out
+    assert "circuits      1 added, 31 left as they are" in out
     (plant / "visits.csv").write_text("visit,kind\n2026-09 as left,as left\n", encoding="utf-8")
     out, _ = done(["intake", str(site), str(plant / "visits.csv"), "--dry-run"], capsys)
     assert "visits        1 added" in out
@@ -235,7 +236,7 @@ def test_single_tables_make_a_file_named_like_the_site(plant: Path, capsys: Capt
     assert out.startswith("hut.ohmwalk: made\n")
     assert "Next: ohmwalk check hut.ohmwalk" in err
     assert record(Path("hut.ohmwalk")).name == "hut"
-    assert len(record(Path("hut.ohmwalk")).readings) == 137
+    assert len(record(Path("hut.ohmwalk")).readings) == 161
 
 
 def test_an_empty_file_takes_the_settings_of_the_folder(plant: Path, capsys: Captured) -> None:
@@ -320,7 +321,7 @@ def test_what_cannot_be_taken_in_is_told(sources: list[str], line: str, site: Pa
 
 
 def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plant: Path, capsys: Captured) -> None:
-    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "ours.toml"')
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "telecom-48"', 'limits = "ours.toml"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
     (plant / "ours.toml").write_text('[rules.VD91]\noff = true\nreason = "of no use here"\n', encoding="utf-8")
     line = "site.toml:limits: ours.toml: there is no rule 'VD91'; did you mean 'VD01'?"
@@ -329,7 +330,7 @@ def test_a_rule_that_is_not_there_is_refused_with_the_profile_that_names_it(plan
 
 
 def test_a_profile_that_is_not_there_is_refused_before_it_stops_every_check(plant: Path, capsys: Captured) -> None:
-    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "general"', 'limits = "genral"')
+    text = (plant / "site.toml").read_text(encoding="utf-8").replace('limits = "telecom-48"', 'limits = "genral"')
     (plant / "site.toml").write_text(text, encoding="utf-8")
     (line,) = refused(["intake", "a.ohmwalk", str(plant)], capsys)
     assert line.startswith("site.toml:limits: there is no limits profile 'genral'")
@@ -637,6 +638,10 @@ def test_history_tells_who_changed_what(site: Path, capsys: Captured) -> None:
     assert any(re.fullmatch(r"    and [\d,]+ more rows", line) for line in lines)
     assert "    changed F1 run 1: length 24 m → 80 ft" in lines
     assert any(re.fullmatch("    changed settings: extent .* → one two", line) for line in lines)
+    with SiteStore(site, laptop="lap") as store, store.save("Bob", "a correction names what it replaces") as save:
+        save.change("readings", store.site().readings[0].id, tag="r-1")
+    (tagged,) = [line for line in done(["history", str(site)], capsys)[0].splitlines() if "r-1" in line]
+    assert tagged.endswith(" reading r-1: added reading r-1")
     of_circuit = done(["history", str(site), "--circuit", "F1"], capsys)[0].splitlines()
     assert [line for line in of_circuit if not line.startswith(" ")][1].endswith("Bob  paced out again")
     assert any(line.startswith("    added circuit F1: fed_from MDB, ") for line in of_circuit)
@@ -791,6 +796,21 @@ def test_alone_in_a_terminal_it_opens_the_one_chosen(
         assert cli.run([]) == 2
         (line,) = capsys.readouterr().err.splitlines()
         assert line.endswith("is none of them; accepted: a number from 1 to 2")
+
+
+def test_alone_in_a_terminal_enter_opens_the_only_one(
+    site: Path, opened: Opened, monkeypatch: pytest.MonkeyPatch, capsys: Captured
+) -> None:
+    for typed, is_opened in (("\n", True), ("1\n", True), ("0\n", False)):
+        opened.clear()
+        monkeypatch.setattr("sys.stdin", io.StringIO(typed))
+        out, _ = done([], capsys)
+        assert "Enter to open it, or 0 for none" in out
+        assert [path for path, _ in opened] == ([site] if is_opened else [])
+    monkeypatch.setattr("sys.stdin", io.StringIO("2\n"))
+    assert cli.run([]) == 2
+    (line,) = capsys.readouterr().err.splitlines()
+    assert line == "'2' is none of them; accepted: a number from 1 to 1"
 
 
 def test_damaged_settings_are_a_line_and_the_site_is_made(plant: Path, home: Path, capsys: Captured) -> None:

@@ -262,3 +262,13 @@ class TestSufficient:
         assert found.numbers["drop at sufficient size"].value == pytest.approx(
             4 * (2 * 15 * R["6"] + joints("6")) + 2 * 10 * R["6"] + joints("6"), rel=1e-6
         )
+
+    def test_vd03_says_what_would_do_in_the_circuit_alone(self) -> None:
+        """Of 5 % of 24 V, 1.2 V, its feeder leaves the circuit what it does not lose itself."""
+        runs = [run("F", 1, "way", "db", 70, "10"), *TABLES["runs"][1:]]
+        site = site_of(TABLES | {"runs": runs}, {"name": "x", "nominal": "24 V", "ambient": "20 degC"})
+        (found,) = [f for f in assess(site, limits.of(site)).findings if f.rule == "VD03" and f.circuit == "C"]
+        assert "in this circuit alone" in found.remedy
+        numbers = found.numbers
+        feeder_v = numbers["drop"].value - numbers["behind the board"].value
+        assert numbers["drop"].value > 0.05 * 24 > feeder_v + numbers["drop at sufficient size"].value

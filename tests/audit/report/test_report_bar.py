@@ -41,6 +41,7 @@ def test_a_doubt_shows_even_where_it_is_narrow() -> None:
 
 def test_less_than_nothing_points_left() -> None:
     assert text_bar(made(-0.2, 0.01, 1.0, 3.0)).startswith(BLOCKS.below)
+    assert text_bar(made(-0.01, 0.02, 0.0, 3.0)).startswith(BLOCKS.left), "within its doubt of nothing"
 
 
 def test_nothing_to_scale_by_or_to_draw_is_no_bar() -> None:

@@ -22,7 +22,7 @@ async def test_w_opens_the_rule_of_the_finding_at_the_cursor(plant: Path) -> Non
         assert walk.screen.splitlines()[0].strip() == f"{finding.rule}  {finding.title}"
         assert "finds" in walk.screen
         await walk.keys("end")
-        assert "Sources" in walk.screen
+        await walk.shows("Sources")
         await walk.keys("escape")
         assert isinstance(walk.app.screen, FindingsScreen)
 
