@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from functools import cached_property
 
 from rules.calc.forest import Integers
 from rules.index import Index
+from rules.record import Source
 from rules.wiring import Wiring
 
 
@@ -45,17 +46,24 @@ class Hanging:
 def unknown_converters(wiring: Wiring, index: Index) -> None:
     """Mark as unknown what a converter draws where its efficiency, or a load behind it, is not known."""
     takes, unknown = wiring.takes, wiring.unknown
+    converters = [source for source in index.site.sources if source.id in takes]
+    behind = {source.id for node in unknown for source in _above(wiring, node)} if converters else set()
     for _ in range(len(takes)):
-        behind = {list(_up(wiring, node))[-1] for node in unknown}
-        for source in index.site.sources:
-            if source.id not in takes or takes[source.id] in unknown:
+        for source in converters:
+            if takes[source.id] in unknown:
                 continue
-            held = [node for node in behind if source.id in {one.id for one in wiring.sources.get(node, ())}]
-            if source.efficiency_percent is None or source.working_or_nominal_v is None or held:
+            if source.efficiency_percent is None or source.working_or_nominal_v is None or source.id in behind:
                 unknown[takes[source.id]] = source.tag
+                behind |= {one.id for one in _above(wiring, takes[source.id])}
                 break
         else:
             return
+
+
+def _above(wiring: Wiring, node: int) -> Sequence[Source]:
+    """The sources that hold the busbar which a node hangs on."""
+    *_, held = _up(wiring, node)
+    return wiring.sources.get(held, ())
 
 
 def unknown_below(wiring: Wiring, meshes: Iterable[tuple[list[int], list[int]]]) -> dict[int, str]:
