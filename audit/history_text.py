@@ -21,6 +21,8 @@ from rules.units import plain
 _LISTED = 10
 """How many rows of one save are listed where no circuit is named; an intake may have a million."""
 _LISTED_OF_CIRCUIT = 1_000
+_NOTHING = "nothing"
+"""How an empty cell is called."""
 _LONGEST = 60
 """How much of a text is shown. [characters]"""
 
@@ -94,6 +96,8 @@ def _field_text(field: FieldChange, known: Mapping[str, Column], change: RowChan
     if change.what != "changed":
         return f"{column.name} {after}"
     before = names.value(change.table, field.field, field.before, field.typed_before, unit)
+    if before == _NOTHING:
+        return f"added {column.name} {after}"
     return f"{column.name} {before} → {after}"
 
 
@@ -137,7 +141,7 @@ class _Names:
         if typed is not None:
             return clean(typed)
         if value is None or value in ("", "[]"):
-            return "nothing"
+            return _NOTHING
         references = list(_references(table, field, value))
         if references:
             points = _points(table, field, value)

@@ -32,8 +32,10 @@ def choose_recent() -> int:
     for number, site in enumerate(sites, 1):
         click.echo(f"{number:>3}  {clean(str(site.path))}{'' if site.is_there else '  (not there now)'}")
     if is_terminal():
-        answer = click.prompt("Number to open, or Enter for none", default="", show_default=False).strip()
-        if answer:
+        only = len(sites) == 1
+        asked = "Enter to open it, or 0 for none" if only else "Number to open, or Enter for none"
+        answer = click.prompt(asked, default="1" if only else "", show_default=False).strip()
+        if answer and not (only and answer == "0"):
             from audit.interface import open_interface
 
             return open_interface(_chosen(answer, sites).path, settings)

@@ -5,7 +5,8 @@ SiteError                  base; ``exit_status`` is what a command ends with
 ├── FileFault              the file, not the record; the text begins with its path
 │   ├── NotASiteFile       no SQLite file, another program's, or damaged
 │   ├── NewerSiteFile      written by a newer program
-│   ├── NoSuchSite         there is no file of that name
+│   ├── NoSuchSite         there is no file of that name (any more)
+│   ├── AnotherFile        no longer the file that was opened
 │   ├── SiteExists         something of that name is there already
 │   ├── BadFileName        does not end in ``.ohmwalk``
 │   ├── SiteReadOnly       may be read but not written
@@ -59,6 +60,10 @@ class NewerSiteFile(FileFault):
 
 class NoSuchSite(FileFault):
     """There is no file of that name."""
+
+
+class AnotherFile(FileFault):
+    """Another file, or another site, stands where the one was that was opened; nothing was saved in it."""
 
 
 class SiteExists(FileFault):
@@ -164,6 +169,8 @@ def _fault(path: Path, error: sqlite3.Error) -> Exception:
         return SiteLocked(path, "another program has been saving in this file for five seconds; try again")
     if codes & _NO_SPACE:
         return NoSpace(path, "no space left to save in (the disk is full, or files may not grow so large)")
+    if code == sqlite3.SQLITE_READONLY_DBMOVED:
+        return AnotherFile(path, "this file was moved or replaced while it was open; open it again")
     if codes & _READ_ONLY:
         return SiteReadOnly(path, f"this file or its folder may not be written ({one_line(error)})")
     if sqlite3.SQLITE_IOERR in codes:

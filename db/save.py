@@ -52,6 +52,15 @@ class Save:
         """The save's id."""
         return self._row.id
 
+    @property
+    def touched(self) -> dict[str, frozenset[str]]:
+        """Ids of the rows that were added, changed or removed, once it is written, by table; ``site`` for the settings."""
+        return {
+            table: frozenset((*self._added[table], *self._touched[table]))
+            for table in SCHEMA
+            if self._added[table] or self._touched[table]
+        }
+
     # --- what a user of the store asks for
 
     def add(self, table: str, row: Row, /) -> str:

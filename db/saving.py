@@ -13,21 +13,22 @@ from sqlite_utils import Database
 from db.digest import SaveRow
 from db.errors import InvalidValue, translated
 from db.journal import next_stamp
+from db.opened import Opened
 from db.rows import is_text
 from db.save import Save
 
 
 @contextmanager
-def saving(path: Path, db: Database, who: str, laptop: str, why: str) -> Iterator[Save]:
-    """Collect a save, then write it, all or nothing."""
-    with writing(path, db) as connection:
+def saving(path: Path, db: Database, who: str, laptop: str, why: str, opened: Opened | None = None) -> Iterator[Save]:
+    """Collect a save, then write it, all or nothing; ``opened`` is the file that it must still be, unless it is new."""
+    with writing(path, db, opened) as connection:
         save = Save(path, connection, new_save(path, connection, who, laptop, why))
         yield save
         save.finish()
 
 
 @contextmanager
-def writing(path: Path, db: Database) -> Iterator[sqlite3.Connection]:
+def writing(path: Path, db: Database, opened: Opened | None) -> Iterator[sqlite3.Connection]:
     """
     Hold the write lock from the first look to the last write.
 
@@ -35,14 +36,21 @@ def writing(path: Path, db: Database) -> Iterator[sqlite3.Connection]:
     whatever the busy timeout.
     """
     with translated(path):
+        if opened is not None:
+            opened.refuse_moved(db.conn)
         db.conn.execute("BEGIN IMMEDIATE")
     try:
+        if opened is not None:
+            with translated(path):
+                opened.refuse_other_content(db.conn)
         with db.atomic():
             # Rows may come in any order; what holds is asked at the end.
             db.conn.execute("PRAGMA defer_foreign_keys = ON")
             yield db.conn
         with translated(path):
             db.conn.execute("COMMIT")
+        if opened is not None:
+            opened.saved()
     except BaseException:
         with suppress(sqlite3.Error):  # a full disk has rolled back already
             db.rollback()

@@ -8,7 +8,7 @@ opened it.
 from __future__ import annotations
 
 import sqlite3
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 from contextlib import closing, contextmanager, suppress
 from pathlib import Path
 from types import TracebackType
@@ -17,7 +17,8 @@ from typing import Any
 from db.connection import made_whole, new_site, open_site
 from db.errors import Damaged, NotASiteFile, SiteReadOnly, translated
 from db.history import Entry, history
-from db.lookup import select
+from db.lookup import find, select
+from db.opened import Opened
 from db.rows import from_columns, settings_from_columns
 from db.save import Save
 from db.saving import new_save, saving, writing
@@ -25,7 +26,7 @@ from db.schema import SITE
 from db.tables import no_collection
 from db.undo import undoing
 from db.verify import problems, refuse_torn
-from rules.record import TABLES, Site
+from rules.record import TABLES, Row, Site
 
 
 class SiteStore:
@@ -64,8 +65,10 @@ class SiteStore:
         with translated(self.path):
             self._db = open_site(self.path, read_only=read_only)
             try:
-                with self._reading() as connection:
+                connection = self._db.conn
+                with _one_state(connection):
                     refuse_torn(connection)
+                    self._opened = Opened(self.path, connection)
             except BaseException:
                 self._db.close()
                 raise
@@ -115,19 +118,26 @@ class SiteStore:
 
     # --- reading
 
-    def site(self) -> Site:
-        """The whole record, its rows in their order; equal to what was saved."""
+    def site(self, tables: Collection[str] = tuple(TABLES)) -> Site:
+        """The record, its rows in their order; whole, equal to what was saved, unless only some tables are asked for."""
         with translated(self.path), no_collection():
             with self._reading() as connection:
                 # Everything is fetched first: while this reads, no one else can finish a save.
                 settings = connection.execute(select(SITE)).fetchone()
-                found = {table: connection.execute(select(table)).fetchall() for table in TABLES}
+                found = {table: connection.execute(select(table)).fetchall() for table in tables}
             if settings is None:
                 raise Damaged("it has no settings")
-            tables: dict[str, Any] = {}
-            for table in TABLES:
-                tables[table] = tuple(from_columns(table, found.pop(table)))
-            return Site(**settings_from_columns(settings), **tables)
+            rows: dict[str, Any] = {}
+            for table in tables:
+                rows[table] = tuple(from_columns(table, found.pop(table)))
+            return Site(**settings_from_columns(settings), **rows)
+
+    def rows(self, table: str, ids: Collection[str]) -> tuple[Row, ...]:
+        """Some rows of a table, in their order; those that are not there are left out."""
+        with translated(self.path):
+            with self._reading() as connection:
+                found = [row for id_ in ids if (row := find(connection, table, id_)) is not None]
+            return tuple(from_columns(table, found))
 
     @property
     def version(self) -> tuple[int, int]:
@@ -137,6 +147,7 @@ class SiteStore:
         Only versions that one store gave can be compared.
         """
         with translated(self.path):
+            self._opened.refuse_moved(self._db.conn)
             others: int = self._db.conn.execute("PRAGMA data_version").fetchone()[0]
         return others, self._own_saves
 
@@ -177,6 +188,7 @@ class SiteStore:
             made_whole(target, overwrite=overwrite) as part,
             closing(sqlite3.connect(part)) as copy,
         ):
+            self._opened.refuse_other_content(self._db.conn)
             self._db.conn.backup(copy)
 
     # --- writing
@@ -204,7 +216,7 @@ class SiteStore:
             If the record would no longer hold together.
         """
         self._refuse_read_only()
-        with saving(self.path, self._db, who, self.laptop, why) as save:
+        with saving(self.path, self._db, who, self.laptop, why, self._opened) as save:
             yield save
         self._own_saves += save.is_written
 
@@ -244,7 +256,7 @@ class SiteStore:
 
     def _undo(self, who: str, *, redo: bool) -> str | None:
         self._refuse_read_only()
-        with writing(self.path, self._db) as connection:
+        with writing(self.path, self._db, self._opened) as connection:
             with translated(self.path):
                 found = undoing(connection, who, self.laptop, redo=redo)
             if found is None:
@@ -268,9 +280,17 @@ class SiteStore:
         if connection.in_transaction:  # within a save: the state that the save began with
             yield connection
             return
-        connection.execute("BEGIN")
-        try:
+        self._opened.refuse_moved(connection)
+        with _one_state(connection):
+            self._opened.refuse_other_content(connection)
             yield connection
-        finally:
-            with suppress(sqlite3.Error):
-                connection.execute("ROLLBACK")
+
+
+@contextmanager
+def _one_state(connection: sqlite3.Connection) -> Iterator[None]:
+    connection.execute("BEGIN")
+    try:
+        yield
+    finally:
+        with suppress(sqlite3.Error):
+            connection.execute("ROLLBACK")

@@ -31,6 +31,7 @@ from rules.rounds import visit_ranks
 from rules.rule import BoardCase, SiteCase, changes_of, judge, switched_off
 from rules.runs import figures
 from rules.service import service_of
+from rules.usable import usable
 from rules.verdict import agrees, unsettled, unsound
 
 TOGETHER = 1000
@@ -90,16 +91,20 @@ def assess_prepared(
 
 def prepare(site: Site, limits: Limits) -> Context:
     """Index, resistances, network, readings, what they teach, and diagnoses of a site: what circuits are judged in."""
+    recorded, found = site, problems(site)
+    site = usable(recorded, found)
     index = Index(site)
     known = figures(site.runs, site, limits)
     context = Context(
+        recorded=recorded,
         site=site,
         limits=limits,
         index=index,
         figures=known,
         network=network_of(index, known, limits),
         visit_ranks=visit_ranks(index),
-        problems=problems(site),
+        problems=found,
+        left_out=frozenset({row.id for row in recorded.readings}.difference(index.readings)) if found else frozenset(),
     )
     measured = {circuit.id: measured_of(context, circuit) for circuit in site.circuits}
     posed = {id_: posed_by(context, side) for id_, side in measured.items()}

@@ -37,7 +37,10 @@ GAP_COLLAPSE = "the voltage collapses behind {}: the path there cannot carry wha
 class Context:
     """A site prepared for judging: solved, indexed, its limits resolved."""
 
+    recorded: Site
+    """As it stands in the record, whatever is wrong with it."""
     site: Site
+    """What of it holds together, by which all is judged; mostly all of it."""
     limits: Limits
     index: Index
     figures: Figures
@@ -45,6 +48,8 @@ class Context:
     network: Network
     visit_ranks: Mapping[str, tuple[float, str, int]]
     problems: tuple[Problem, ...]
+    left_out: frozenset[str] = frozenset()
+    """Ids of recorded readings that are no part of ``site``."""
     measured: Mapping[str, Measured] = field(default_factory=dict)
     """By circuit id: what was read on the visit that it is judged on."""
     diagnoses: Mapping[str, Diagnosis] = field(default_factory=dict)
@@ -232,6 +237,7 @@ def measured_of(context: Context, circuit: Circuit, readings: Sequence[Reading] 
         readings = [r for r in judged(index.readings_of(circuit.id), index) if r.visit_or_default == visit]
     else:
         visit = readings[-1].visit_or_default if readings else ""
+        readings = [row for row in readings if row.id not in context.left_out]
     tree = _tree(context, circuit, readings)
     return Measured(visit, tuple(readings), rounds_of(readings, tree, index, context.limits), tree)
 

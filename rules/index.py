@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Collection, Iterable, Mapping
+from copy import copy
 from typing import TypeVar
 
 from rules.record import Board, Circuit, Feed, Instrument, Load, Reading, Row, Run, Site, Source
@@ -78,6 +79,26 @@ class Index:
             sorted(site.circuits, key=_order), lambda row: row.fed_from.id if row.fed_from is not None else ""
         )
         self.walked_circuits = self._walked_circuits()
+
+    def with_readings(self, site: Site, changed: Collection[str]) -> Index:
+        """
+        The index of a site that differs from this one's in some readings alone: as ``Index(site)``, and quick.
+
+        Parameters
+        ----------
+        site : Site
+            The site as it is now.
+        changed : collection of str
+            Ids of the readings that were added, changed or removed.
+        """
+        index = copy(self)
+        index.site = site
+        index.readings = {row.id: row for row in site.readings}
+        index.replaced = frozenset(row.replaces_id for row in site.readings if row.replaces_id)
+        places = {_place_of(known[id_]) for id_ in changed for known in (self.readings, index.readings) if id_ in known}
+        there = _grouped((row for row in site.readings if _place_of(row) in places), _place_of)
+        index._readings = {place: rows for place, rows in self._readings.items() if place not in places} | there
+        return index
 
     def named(self, feed: Feed) -> Source | Board | Circuit | None:
         """What a reference names; ``None`` where it names nothing."""

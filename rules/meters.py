@@ -22,7 +22,7 @@ class Worth:
 
 def instrument_row(reading: Reading, index: Index) -> Instrument | None:
     """The row of the range that the reading was taken on: as recorded, else the smallest that holds it."""
-    quantity = METER_QUANTITY[reading.quantity]
+    quantity = METER_QUANTITY.get(reading.quantity, "")
     rows = [row for row in index.ranges_of(reading.instrument) if row.quantity == quantity]
     if reading.full_scale is not None:
         rows = [row for row in rows if row.full_scale is None or row.full_scale == reading.full_scale] or rows

@@ -317,7 +317,7 @@ class Reading(Row):
 
     @property
     def unit(self) -> str:
-        return UNIT_OF_QUANTITY[self.quantity]
+        return UNIT_OF_QUANTITY.get(self.quantity, "")
 
     @property
     def is_unloaded(self) -> bool:

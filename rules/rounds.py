@@ -10,9 +10,10 @@ from __future__ import annotations
 import math
 import re
 from collections import defaultdict
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime
+from functools import cache
 from statistics import mean, stdev
 
 from rules.assessment import Drop
@@ -229,12 +230,14 @@ def current_at(point: str, this: Round, tree: Tree, limits: Limits) -> Current:
         raise MissingData(f"no current was read in round {this.name}")
     above = _line_up(point, tree)
     near = next((p for p in above[1:] if p in this.amps), "")
-    if not near:
-        behind = [p for p in this.amps if point in _line_up(p, tree)]
-        if not behind:
+    if near:
+        line = above
+    else:
+        lines = {p: line for p in this.amps if point in (line := _line_up(p, tree))}
+        if not lines:
             raise MissingData(f"round {this.name} has no current on the way to {point} or behind it")
-        near = min(behind, key=lambda p: len(_line_up(p, tree)))
-    ratio, taps = _share(point, near, tree)
+        near, line = min(lines.items(), key=lambda each: len(each[1]))
+    ratio, taps = _share(point, near, line, tree)
     terms = tuple(Weighted(term.weight * ratio, term.shown) for term in this.amps[near])
     read_a = abs(sum(term.weight * term.shown.value for term in this.amps[near]))
     relative = limits["load_share.relative"]
@@ -249,15 +252,14 @@ def _line_up(point: str, tree: Tree) -> list[str]:
     return line
 
 
-def _share(point: str, near: str, tree: Tree) -> tuple[float, dict[str, float]]:
+def _share(point: str, near: str, line: Sequence[str], tree: Tree) -> tuple[float, dict[str, float]]:
     """
-    The current to a point over that to another on the same line, and what each tap between them adds to it.
+    The current to a point over that to another on the line of one of them, and what each tap between adds to it.
 
     Signed: what a tap draws between a reading and a point behind it makes the current there less. A tap is named
     with the way on, since of two ways from one fork the one draws more where the other draws less.
     """
-    before = near in _line_up(point, tree)
-    line = _line_up(point if before else near, tree)
+    before = line[0] == point
     far, close = (near, point) if before else (point, near)
     between = line[line.index(close) + 1 : line.index(far) + 1]
     if not any(p in tree.taps for p in between):
@@ -325,11 +327,12 @@ def _of_round(this: Round, tree: Tree, limits: Limits) -> Drop:
             raise MissingData("the device between bus and way is not recorded, and way was not read")
     if len(read) < 2:
         raise MissingData(f"round {this.name} has no voltages at two points, nor a drop over both legs")
+    currents = cache(lambda point: current_at(point, this, tree, limits))
     reached: list[Drop] = []
     reason: MissingData | None = None
     for end in read[1:]:
         try:
-            reached.append(compare(read[0], end, this, tree, limits))
+            reached.append(_compared(read[0], end, this, tree, limits, currents))
         except MissingData as error:
             reason = error
     if not reached:
@@ -351,20 +354,35 @@ def compare(start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Dr
     """
     Measured against computed drop between two points of a round; ``MissingData`` says what is missing for it.
     """
+    return _compared(start, end, this, tree, limits, lambda point: current_at(point, this, tree, limits))
+
+
+def _compared(
+    start: str, end: str, this: Round, tree: Tree, limits: Limits, currents: Callable[[str], Current]
+) -> Drop:
+    """The same with the currents at points."""
     reason: MissingData | None = None
     for way in ways(start, end, tree.ends, tree.meshed, frozenset(this.amps)):
         try:
-            return _on_way(way, start, end, this, tree, limits)
+            return _on_way(way, start, end, this, tree, limits, currents)
         except MissingData as error:
             reason = reason or error
     raise reason or MissingData(f"no way leads from {start} to {end}")
 
 
-def _on_way(way: Sequence[Hop], start: str, end: str, this: Round, tree: Tree, limits: Limits) -> Drop:
+def _on_way(
+    way: Sequence[Hop],
+    start: str,
+    end: str,
+    this: Round,
+    tree: Tree,
+    limits: Limits,
+    currents: Callable[[str], Current],
+) -> Drop:
     measured, by = _measured(start, end, [hop.branch for hop in way], this)
     carried: list[Carried] = []
     for hop in way:
-        current = along(current_at(hop.branch, this, tree, limits), hop.sign)
+        current = along(currents(hop.branch), hop.sign)
         if hop.branch == "way":
             carried.append(Carried(tree.device_ohm or 0.0, current, None))
             continue
@@ -378,7 +396,7 @@ def _on_way(way: Sequence[Hop], start: str, end: str, this: Round, tree: Tree, l
                 raise MissingData(figures.gap)
             carried.append(Carried(figures.loop_ohm, amps, figures))
     found = difference(measured, carried, limits)
-    first, first_u = total(along(current_at(way[0].branch, this, tree, limits), way[0].sign).terms)
+    first, first_u = total(along(currents(way[0].branch), way[0].sign).terms)
     return Drop(
         round=this.name,
         start=start,

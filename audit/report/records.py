@@ -203,8 +203,9 @@ def as_shown(reading: Reading, index: Index) -> str:
     """A reading with the decimals of the meter's display: 53.500 V where it shows thousandths."""
     row = instrument_row(reading, index)
     large = abs(reading.value) >= 0.1  # smaller ones are shown in thousandths
-    if large and row is not None and row.resolution and reading.as_typed("value") is None:
-        decimals = max(0, math.ceil(-math.log10(row.resolution) - 1e-9))
+    step = row.resolution or 0.0 if row is not None else 0.0
+    if large and step > 0 and reading.as_typed("value") is None:
+        decimals = max(0, math.ceil(-math.log10(step) - 1e-9))
         if math.isclose(round(reading.value, decimals), reading.value, rel_tol=1e-12):
             # the sign between number and unit comes from the one formatter
             unit = show(1.0, reading.unit).partition(" ")[2]
@@ -339,7 +340,8 @@ def _length(run: Run) -> str:
     text = quantity(run, "one_way_length_m", run.one_way_length_m, "m")
     if run.one_way_length_m is None:
         return text
-    return f"{text}, {LENGTH_WORDS[run.length_by_or_default]}{'' if run.length_by else ' (assumed)'}"
+    by = run.length_by_or_default
+    return f"{text}, {LENGTH_WORDS.get(by, by)}{'' if run.length_by else ' (assumed)'}"
 
 
 def _size(run: Run) -> str:

@@ -18,7 +18,7 @@ from textual.screen import Screen
 from audit.tui.edits import Edit
 from audit.tui.entry.habits import Habits
 from audit.tui.judge import Judge
-from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Refused, Saved, Troubled, Undone
+from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Outlined, Refused, Saved, Troubled, Undone
 from audit.tui.screens import reporting
 from audit.tui.screens.ask import Ask
 from audit.tui.screens.base import OurScreen
@@ -42,6 +42,8 @@ class OhmwalkApp(App[None]):
     DEFAULT_MODE = "survey"
     survey: reactive[Survey | None] = reactive(None, init=False)
     """What the screens show; ``None`` until the file is read."""
+    outline: reactive[Survey | None] = reactive(None, init=False)
+    """What the walk shows until then."""
 
     def __init__(
         self,
@@ -58,7 +60,7 @@ class OhmwalkApp(App[None]):
         self._judge = Judge(self.post_message)
         self._answers: dict[Edit, asyncio.Future[Saved | Refused]] = {}
         self._saving = asyncio.Lock()
-        self.type_ahead = TypeAhead(self, super().on_event)
+        self.type_ahead = TypeAhead(self, super().on_event, lambda: self.is_reading)
         self.habits = Habits()
         """What was chosen once and is not asked again."""
         for theme in THEMES:
@@ -90,6 +92,15 @@ class OhmwalkApp(App[None]):
 
     # --- what the threads tell
 
+    @on(Outlined)
+    def show_outline(self, message: Outlined) -> None:
+        """Show the walk; what the keys do waits for the record."""
+        if self.survey is None:
+            visit = latest_visit(message.site)
+            outline = Survey(message.site, message.index, visit, {}, read_only=message.read_only, is_outline=True)
+            self.outline = outline
+            self.call_after_refresh(self._session.look)
+
     @on(Loaded)
     def take_record(self, message: Loaded) -> None:
         visit = self.habits.visit or latest_visit(message.site)
@@ -111,6 +122,11 @@ class OhmwalkApp(App[None]):
             results = {result.circuit_id: result for result in message.assessment.circuits}
             self.survey = replace(self.survey, context=message.context, results=results, assessment=message.assessment)
 
+    @property
+    def is_reading(self) -> bool:
+        """The walk is on the screen, and what the keys would act on is being read."""
+        return self.outline is not None and self.survey is None
+
     @on(Saved)
     @on(Refused)
     def answer(self, message: Saved | Refused) -> None:
@@ -127,6 +143,7 @@ class OhmwalkApp(App[None]):
 
     @on(Troubled)
     def tell_trouble(self, message: Troubled) -> None:
+        self.outline = None
         self.say(message.line, "wrong")
 
     @on(Crashed)

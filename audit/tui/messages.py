@@ -18,6 +18,15 @@ if TYPE_CHECKING:  # it brings numpy, and the first screen does not wait for tha
 
 
 @dataclass
+class Outlined(Message):
+    """What the walk shows was read, without runs, loads and readings: these follow with ``Loaded``."""
+
+    site: Site
+    index: Index
+    read_only: bool
+
+
+@dataclass
 class Loaded(Message):
     """The record was read from the file: at the start, after a save, and when someone else saved."""
 

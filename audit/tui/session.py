@@ -10,8 +10,8 @@ from __future__ import annotations
 import gc
 import queue
 import threading
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from collections.abc import Callable, Collection, Iterator, Mapping
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TypeAlias
@@ -19,11 +19,13 @@ from typing import TypeAlias
 from textual.message import Message
 
 from audit.tui.edits import Edit
-from audit.tui.messages import Crashed, Loaded, Refused, Saved, Troubled, Undone
+from audit.tui.messages import Crashed, Loaded, Outlined, Refused, Saved, Troubled, Undone
 from audit.tui.state import read_by_visit
 from db.errors import SiteError, SiteReadOnly, shown
+from db.schema import SITE
 from db.store import SiteStore
 from rules.index import Index
+from rules.record import Row, Site
 
 POLL_S = 0.5
 """How often to ask whether someone else saved; what they saved is to be seen within two seconds. [s]"""
@@ -41,7 +43,15 @@ class _Undo:
     again: bool
 
 
-_Request: TypeAlias = _Write | _Undo | None
+@dataclass(frozen=True, slots=True)
+class _Look:
+    """Have the record read, if it is not."""
+
+
+_Request: TypeAlias = _Write | _Undo | _Look | None
+
+OUTLINE = ("sources", "boards", "circuits", "visits")
+"""Tables that the walk is drawn from: few rows beside the readings, for which the first screenful does not wait."""
 
 
 @contextmanager
@@ -70,6 +80,10 @@ class Session(threading.Thread):
         self._post = post
         self._requests: queue.Queue[_Request] = queue.Queue()
         self._seen: tuple[int, int] | None = None
+        self._known: tuple[Site, Index] | None = None
+        """The record as it was read last."""
+        self._written: dict[str, set[str]] | None = {}
+        """Ids of the rows written since then, by table; ``None`` where only reading all of it anew will do."""
         self._trouble = ""
 
     # --- asked for by the event loop
@@ -82,6 +96,10 @@ class Session(threading.Thread):
         """Have one's last save written back (or done again): ``Undone`` comes back."""
         self._requests.put(_Undo(who, again))
 
+    def look(self) -> None:
+        """Have the record read now, rather than at the next look at the file: ``Loaded`` comes back."""
+        self._requests.put(_Look())
+
     def stop(self) -> None:
         """End once everything asked for so far is done, and wait for it."""
         self._requests.put(None)
@@ -92,7 +110,7 @@ class Session(threading.Thread):
     def run(self) -> None:
         try:
             with self._opened() as store:
-                self._look(store)
+                self._outline(store)
                 while self._serve(store):
                     pass
         except SiteError as error:
@@ -112,7 +130,8 @@ class Session(threading.Thread):
         try:
             request = self._requests.get(timeout=POLL_S)
             while request is not None:
-                answers.append(self._do(store, request))
+                if not isinstance(request, _Look):
+                    answers.append(self._do(store, request))
                 request = self._requests.get_nowait()
         except queue.Empty:
             self._look(store)
@@ -124,18 +143,46 @@ class Session(threading.Thread):
     def _do(self, store: SiteStore, request: _Write | _Undo) -> Message:
         try:
             if isinstance(request, _Undo):
+                self._written = None  # a row that comes back stands where it stood
                 what = store.redo(request.who) if request.again else store.undo(request.who)
                 return Undone(what, request.again)
             with store.save(request.who, request.edit.why) as save:
                 ids = tuple(step.write(save) for step in request.edit.steps)
+            self._note(save.touched)
             return Saved(request.edit, ids)
         except SiteError as error:
             line = self._line(error)
             return Refused(request.edit, line) if isinstance(request, _Write) else Troubled(line)
 
+    def _note(self, touched: Mapping[str, Collection[str]]) -> None:
+        """Keep what was written, for the next look."""
+        if SITE in touched:
+            self._written = None
+        if self._written is not None:
+            for table, ids in touched.items():
+                self._written.setdefault(table, set()).update(ids)
+
+    def _read(self, store: SiteStore, version: tuple[int, int]) -> tuple[Site, Index]:
+        """The record as it stands: where no one else saved, what was written is all that is read."""
+        if self._known is None or self._written is None or self._seen is None or version[0] != self._seen[0]:
+            site = store.site()
+            return site, Index(site)
+        site, index = self._known
+        for table, ids in self._written.items():
+            site = site.with_rows(table, _rows_now(site.table(table), ids, store.rows(table, ids)))
+        if self._written.keys() <= {"readings"}:
+            return site, index.with_readings(site, self._written.get("readings", ()))
+        return site, Index(site)
+
     def _line(self, error: SiteError) -> str:
         """What went wrong; the file, which is the one on the screen, need not be named."""
         return str(error).removeprefix(f"{shown(self._path)}: ")
+
+    def _outline(self, store: SiteStore) -> None:
+        """Read what the walk shows; all the rest is read once that is on the screen, or soon after."""
+        with suppress(SiteError), _uncollected():  # the look at the whole tells what is wrong
+            site = store.site(OUTLINE)
+            self._post(Outlined(site, Index(site), store.read_only))
 
     def _look(self, store: SiteStore) -> None:
         """Load the record if anyone saved since the last look."""
@@ -144,8 +191,9 @@ class Session(threading.Thread):
             if version == self._seen:
                 return
             with _uncollected():
-                site = store.site()
-                loaded = Loaded(site, Index(site), read_by_visit(site), store.read_only)
+                site, index = self._known = self._read(store, version)
+                loaded = Loaded(site, index, read_by_visit(site), store.read_only)
+            self._written = {}
             self._seen = version
             self._trouble = ""
             self._post(loaded)
@@ -153,3 +201,10 @@ class Session(threading.Thread):
             if self._line(error) != self._trouble:  # said once, not twice a second
                 self._trouble = self._line(error)
                 self._post(Troubled(self._trouble))
+
+
+def _rows_now(before: tuple[Row, ...], ids: Collection[str], found: tuple[Row, ...]) -> tuple[Row, ...]:
+    """Rows with those of some ids as they were found: in their place, new ones behind all, others gone."""
+    now = {row.id: row for row in found}
+    kept = tuple(now.pop(row.id) if row.id in now else row for row in before if row.id in now or row.id not in ids)
+    return (*kept, *now.values())

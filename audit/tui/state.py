@@ -27,6 +27,8 @@ class Survey:
     """By visit: ids of the circuits on which something was read."""
     read_only: bool = False
     """The file may not be written."""
+    is_outline: bool = False
+    """Runs, loads and readings are not read yet."""
     context: Context | None = None
     """What circuits are judged in; of an earlier state of the record until this one is judged."""
     results: Mapping[str, CircuitResult] = field(default_factory=dict)
@@ -42,7 +44,7 @@ class Survey:
     @property
     def is_judged(self) -> bool:
         """Whether what is in sight was judged in this very record, not in an earlier state of it."""
-        return self.context is not None and self.context.index.site is self.site
+        return self.context is not None and self.context.recorded is self.site
 
     @property
     def read_now(self) -> frozenset[str]:

@@ -48,9 +48,13 @@ _flow: ContextVar[_Flow | None] = ContextVar("flow", default=None)
 class TypeAhead:
     """Holds an app's keys and runs its flows."""
 
-    def __init__(self, app: App[Any], deliver: Callable[[Key | Paste], Awaitable[None]]) -> None:
+    def __init__(
+        self, app: App[Any], deliver: Callable[[Key | Paste], Awaitable[None]], must_wait: Callable[[], bool]
+    ) -> None:
         self._app = app
         self._deliver = deliver
+        self._must_wait = must_wait
+        """Whether there is nothing yet that keys could act on."""
         self._keys: asyncio.Queue[Key | Paste] = asyncio.Queue()
         self._flows: list[_Flow] = []
         self.is_idle = True
@@ -103,7 +107,7 @@ class TypeAhead:
                 flow.answer = None
 
     async def _ready(self) -> None:
-        while any(flow.is_between for flow in self._flows):
+        while self._must_wait() or any(flow.is_between for flow in self._flows):
             await asyncio.sleep(_LOOK_AGAIN_S)
 
     async def _dealt_with(self, target: MessagePump) -> None:

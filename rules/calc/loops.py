@@ -216,7 +216,9 @@ class _Graph:
             edges.append((start, end, ("tie_out", index)))
         for index, (start, end) in enumerate(ties.tolist()):
             edges.append((size + end, size + start, ("tie_back", index)))
-        self._edges = [(self._find(a), self._find(b), part) for a, b, part in edges]
+        found = [(self._find(a), self._find(b), part) for a, b, part in edges]
+        # nothing drives a current round a tie that begins and ends at one terminal, and the forest sends none through it
+        self._edges = [(a, b, part) for a, b, part in found if a != b or part[0] not in ("tie_out", "tie_back")]
 
     def loops(self) -> list[dict[Element, float]]:
         """A set of independent loops: how often each runs through each leg, and which way."""

@@ -23,17 +23,14 @@ def record_contradicts(case: SiteCase) -> Iterator[Finding]:
 
     **Leaves alone**: empty cells, which are not known (RC01 says so where it matters).
     """
-    index = case.context.index
+    context = case.context
+    circuits = {row.id: row for row in context.recorded.circuits}
+    tables = {problem.table for problem in context.problems} - {"site"}
+    rows = {(table, row.id): row for table in tables for row in context.recorded.table(table)}
     seen: dict[str, int] = {}
-    for problem in case.context.problems:
-        row = (
-            next((r for r in case.context.site.table(problem.table) if r.id == problem.row), None)
-            if problem.table != "site"
-            else None
-        )
-        circuit = index.circuits.get(
-            getattr(row, "circuit_id", "") or (problem.row if problem.table == "circuits" else "")
-        )
+    for problem in context.problems:
+        row = rows.get((problem.table, problem.row))
+        circuit = circuits.get(getattr(row, "circuit_id", "") or (problem.row if problem.table == "circuits" else ""))
         tag = getattr(row, "tag", "") or (getattr(row, "name", "") if problem.table == "runs" else "")
         where = " ".join(part for part in (problem.table, str(tag), problem.column) if part)
         count = seen[where] = seen.get(where, 0) + 1

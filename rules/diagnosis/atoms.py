@@ -37,6 +37,8 @@ MOST_SIZES, FEWEST_SIZES = 6, 2
 """Sizes of a bad connection that stand for its posterior, each for an equal share of it: fewer where places are many."""
 ATOMS = 128
 """About so many atoms are aimed at; a long circuit has more."""
+NEGLIGIBLE = 1e-7
+"""Weight of an atom below which it is left out."""
 TAIL = 0.01
 """Share of a posterior's ends that bounds the outermost of them."""
 FACTORS = np.array([NormalDist().inv_cdf(share) for share in (1 / 8, 3 / 8, 5 / 8, 7 / 8)])
@@ -92,7 +94,7 @@ class Atoms:
         return found
 
 
-def atoms_of(judged: Judged, block: Block) -> Atoms:
+def atoms_of(judged: Judged, block: Block, negligible: float = NEGLIGIBLE) -> Atoms:
     """
     The atoms of a judged batch.
 
@@ -102,6 +104,8 @@ def atoms_of(judged: Judged, block: Block) -> Atoms:
         By what was read.
     block : Block
         The same problems with the imagined readings.
+    negligible : float
+        Weight of an atom below which it is left out.
     """
     groups = _groups(block.shape)
     ratios, conductors = _conductors(judged, block)
@@ -117,7 +121,8 @@ def atoms_of(judged: Judged, block: Block) -> Atoms:
 
     weight = column("weight")
     most = max(ATOMS, 2 * FEWEST_SIZES * len(block.shape.places))
-    kept = np.argsort(-weight.round(12), axis=1, kind="stable")[:, :most]
+    matters = int((weight > negligible).sum(axis=1).max(initial=1))
+    kept = np.argsort(-weight.round(12), axis=1, kind="stable")[:, : min(most, matters)]
     heaviest = {name: np.take_along_axis(column(name), kept, axis=1) for name in _PLAIN}
     chosen = heaviest["weight"]
     whole = {name: heaviest[name].astype(np.int64) for name in ("conductor", "extra", "slip")}
@@ -169,7 +174,9 @@ def _extras(judged: Judged, shape: Shape) -> _Part:
     split = [len(p.members) / len(before.places[n].members) for p, n in zip(shape.places, old_places, strict=True)]
     split += [len(o) / len(before.offsets[n]) for o, n in zip(shape.offsets, old_offsets, strict=True)]
     old = [*old_places, *(len(before.places) + n for n in old_offsets)]
-    posterior = judged.posterior[:, [*judged.of_cause(BAD_CONNECTION), *judged.of_cause(SEMICONDUCTOR)]]
+    posterior = np.concatenate([judged.of_places, judged.posterior[:, judged.of_cause(SEMICONDUCTOR)]], axis=1)
+    if judged.pairs.hypotheses.names:  # two bad places: half of them is at either
+        np.add.at(posterior, (np.arange(len(posterior))[:, None], judged.pairs.places), judged.of_pair[:, None] / 2)
     weight = posterior[:, old] * np.array(split)
     sizes = max(FEWEST_SIZES, min(MOST_SIZES, ATOMS // max(1, len(shape.places))))
     coordinate, distance = _strata(judged, sizes)
@@ -240,9 +247,9 @@ def _conductors(judged: Judged, block: Block) -> tuple[Floats, _Part]:
 
 def _slips(judged: Judged) -> _Part:
     """Every slip of a reading, in the order of ``judged.slips``."""
-    count = len(judged.slips.hypotheses.names)
+    count, last = len(judged.slips.hypotheses.names), len(judged.hypotheses.names) - len(judged.pairs.hypotheses.names)
     numbers = np.arange(count, dtype=float)[None]
-    return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, -count:], "slip": numbers})
+    return _Part((Group(DOUBTFUL),) * count, {"weight": judged.posterior[:, last - count : last], "slip": numbers})
 
 
 def _probability(judged: Judged, causes: tuple[str, ...], doubtful: tuple[str, ...]) -> Floats:

@@ -16,7 +16,7 @@ from operator import attrgetter
 import numpy as np
 
 from rules.diagnosis.problem import Branch, Problem
-from rules.diagnosis.shape import Floats, Shape
+from rules.diagnosis.shape import Floats, Shape, of_runs
 from rules.limits import Limits
 
 
@@ -281,7 +281,7 @@ def model_of(block: Block, conductor: Floats, slope: Floats, carried: Floats | N
     if shape.signature.common:
         of_others, of_conductors = _with_common(block, of_others, of_conductors, conductor, amps)
     of_elements = amps * conductor[:, :, None]
-    lengths = (of_elements @ shape.run_of.T) * block.length_u[:, None, None]
+    lengths = of_runs(shape, of_elements) * block.length_u[:, None, None]
     alike = [(amps @ slope[..., None])[..., 0], block.limits["resistance_doubt.relative"] * of_conductors[:, :, 0]]
     columns = np.concatenate([lengths, np.stack(alike, axis=-1)], axis=-1)
     gain = block.gain_u[:, None, :, None] * shape.gain_rows

@@ -25,6 +25,8 @@ from rules.rounds import Round
 
 SINGLE, AGAIN = "\x00single", "\x00again"
 """Names of the two imagined rounds: no cell holds a control code."""
+LONG, SUSPECTED = 24, 12
+"""Of a circuit with more runs than the first, joints and legs are imagined in the second number of runs."""
 ABOUT_MOST = 0.9
 """Rounds with this share of the most current count as rounds with the most."""
 JOINT, LEG, POINT = "joint", "leg", "point"
@@ -200,11 +202,12 @@ def _single(
         legs = read.signature.branches[0].partition(" ")[2]
         for leg in LEGS if legs == "both" else (legs,):
             add("joint", DEVICE, "", leg, across)
+    suspected = _suspected(case, read)
     for run in case.tree.runs:
-        for end in ENDS:
+        for end in ENDS if run.name in suspected else ():
             for leg in LEGS:
                 add("joint", f"{run.name} {end}", "", leg, across)
-    for start, end, ohm in _stretches(case):
+    for start, end, ohm in _stretches(case, suspected):
         along = shown_by(case, "drop", ohm * amperes, meter)
         for leg in LEGS:
             add("drop", start, end, leg, along)
@@ -221,18 +224,34 @@ def _largest_ohm(case: CircuitCase) -> float:
     return max((place.high_ohm or 0.0 for place in causes if place.probability >= least), default=0.0)
 
 
-def _stretches(case: CircuitCase) -> list[tuple[str, str, float]]:
-    """What a long lead along one leg may span, with its loop resistance: each run, and all the way to each end."""
+def _suspected(case: CircuitCase, read: Problem) -> frozenset[str]:
+    """
+    Runs in which single joints and legs are imagined: all of a circuit that is not long, else those in which something
+    is most probably wrong; no more than a few of them are tried (``options.TRIED``).
+    """
+    names = [name for name in read.names if name != DEVICE]
+    if len(names) <= LONG or case.diagnosis is None:
+        return frozenset(names)
+    share = dict.fromkeys(read.ends, 0.0)
+    for place in case.diagnosis.causes:
+        if place.point and not place.joints:
+            share[place.point] = share.get(place.point, 0.0) + place.probability
+    of_name = {name: share[end] for name, end in zip(read.names, read.ends, strict=True) if name != DEVICE}
+    return frozenset(sorted(of_name, key=of_name.__getitem__, reverse=True)[:SUSPECTED])
+
+
+def _stretches(case: CircuitCase, suspected: frozenset[str]) -> list[tuple[str, str, float]]:
+    """What a long lead along one leg may span, with its loop resistance: suspected runs, and all the way to ends."""
     ends, figures = case.tree.ends, case.tree.figures
     starts = {run.from_point for run in ends.values()}
-    found = {(run.from_point, point): figures[run.id].loop_ohm for point, run in ends.items()}
-    for point in ends:
-        if point not in starts:
-            try:
-                path = case.tree.path("way", point)
-            except MissingData:  # a record whose runs do not hang together
-                continue
-            found["way", point] = sum(figures[ends[passed].id].loop_ohm for passed in path)
+    found = {(run.from_point, point): figures[run.id].loop_ohm for point, run in ends.items() if run.name in suspected}
+    last = [point for point in ends if point not in starts]
+    for point in last[:SUSPECTED] if len(ends) > LONG else last:
+        try:
+            path = case.tree.path("way", point)
+        except MissingData:  # a record whose runs do not hang together
+            continue
+        found["way", point] = sum(figures[ends[passed].id].loop_ohm for passed in path)
     return [(start, end, ohm) for (start, end), ohm in found.items()]
 
 

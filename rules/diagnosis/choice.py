@@ -33,6 +33,7 @@ from rules.diagnosis.options import (
     Way,
     minutes_of,
     options_of,
+    tried_of,
 )
 from rules.diagnosis.outlook import Outlook, outlook_of
 from rules.diagnosis.shape import Floats, Shape, shape_of
@@ -71,10 +72,11 @@ def looked_at(posed: Sequence[Posed], limits: Limits) -> Batch:
     shape = shape_of(posed[0].imagined.signature)
     block = stacked(shape, [each.imagined for each in posed], limits)
     atoms = atoms_of(judged, block)
-    outlook = outlook_of(judged, block, atoms, posed)
+    tried = tried_of(posed, block, atoms)
+    outlook = outlook_of(judged, block, atoms, posed, tried.candidate)
     high = np.exp(judged.density.cumulative().quantiles(COVERED)[0][:, : len(judged.block.shape.places)])
     most = np.array([_most_level(each, judged, number, high[number], limits) for number, each in enumerate(posed)])
-    options = options_of(posed, block, atoms, outlook, most, limits)
+    options = options_of(posed, tried, atoms, outlook, most, limits)
     return Batch(posed, limits, shape, judged, atoms, outlook, options, high, most)
 
 
@@ -170,7 +172,7 @@ def _is_settled(batch: Batch, number: int) -> bool:
 def _choice(batch: Batch, number: int, option: int) -> Choice:
     """What an option tells apart, and the current that it takes."""
     options, outlook, atoms = batch.options, batch.outlook, batch.atoms
-    way, level, row = options.ways[option], float(options.level[number, option]), int(options.row[number, option])
+    way, level, column = options.ways[option], float(options.level[number, option]), int(options.column[number, option])
     posed, amps = batch.posed[number], batch.posed[number].amps
     weight, group = atoms.weight[number], atoms.group[number]
     if way.kind == ROUND:
@@ -178,19 +180,20 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
         covariance = outlook.again_fixed[number] + level**2 * outlook.again_covariance[number]
         pair = groups_apart(weight, group, mean, covariance)
         ampere = max(abs(a) for a in amps.values())
-        most_a = rounded_down(batch.most_level[number] * ampere)
+        most_a = rounded_down(batch.most_level[number] * ampere) if ampere else math.inf
         asked_a = min(rounded_down(level * ampere), most_a)
         return Choice(option, way, -1, pair, asked_a, most_a=most_a)
-    counts = options.counts[number, option] + outlook.clamp[number, row]
-    mean = outlook.steady[number, row] + level * outlook.mean[number, row]
-    variance = counts + level**2 * outlook.variance[number, row]
+    candidate = int(outlook.candidate[number, column])
+    counts = options.counts[number, option] + outlook.clamp[number, column]
+    mean = outlook.steady[number, column] + level * outlook.mean[number, column]
+    variance = counts + level**2 * outlook.variance[number, column]
     pair = groups_apart(weight, group, mean[:, None], variance[:, None, None])
     if way.kind == TEMPERATURE:
-        return Choice(option, way, row, pair)
+        return Choice(option, way, candidate, pair)
     if way.kind == LENGTH:
-        return Choice(option, way, row, _lengths_apart(batch, number))
-    at = posed.rows_of(SINGLE)[row]
-    needed = _conclusive(batch, number, row, counts, pair)
+        return Choice(option, way, candidate, _lengths_apart(batch, number))
+    at = posed.rows_of(SINGLE)[candidate]
+    needed = _conclusive(batch, number, column, counts, pair)
     if way.how == DEAD_TEST:
         return Choice(option, way, at, pair, 0.0 if needed <= level else math.inf)
     ampere = abs(amps[posed.imagined.signature.rows[at].path[0][0]])
@@ -213,7 +216,7 @@ def _lengths_apart(batch: Batch, number: int) -> tuple[int, int] | None:
     )
 
 
-def _conclusive(batch: Batch, number: int, row: int, counts: Floats, pair: tuple[int, int] | None) -> float:
+def _conclusive(batch: Batch, number: int, column: int, counts: Floats, pair: tuple[int, int] | None) -> float:
     """Level of current at which a single reading puts two groups far enough apart."""
     if pair is None:
         return math.inf
@@ -222,10 +225,10 @@ def _conclusive(batch: Batch, number: int, row: int, counts: Floats, pair: tuple
     for name in pair:
         inside = np.flatnonzero(group == name)
         share = weight[inside] / weight[inside].sum()
-        mean, steady = (float(part[number, row, inside] @ share) for part in (outlook.mean, outlook.steady))
+        mean, steady = (float(part[number, column, inside] @ share) for part in (outlook.mean, outlook.steady))
         # what two sizes of one cause say differently is no doubt of the reading
         figures.append(
-            (mean, steady, float(outlook.variance[number, row, inside].min()), float(counts[inside] @ share))
+            (mean, steady, float(outlook.variance[number, column, inside].min()), float(counts[inside] @ share))
         )
     (mean, steady, variance, fixed), (mean_2, steady_2, variance_2, fixed_2) = figures
     apart = batch.limits["next_reading.apart"]

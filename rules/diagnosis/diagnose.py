@@ -20,6 +20,7 @@ from rules.diagnosis.hypotheses import BAD_CONNECTION, CAUSES, SEMICONDUCTOR
 from rules.diagnosis.judge import Judged, grouped, judge_block
 from rules.diagnosis.learned import Learned, Together, learned, together
 from rules.diagnosis.problem import Problem
+from rules.diagnosis.scatter import scales, whole
 from rules.diagnosis.shape import Shape, place_words, shape_of
 from rules.diagnosis.words import what_words
 from rules.limits import Limits
@@ -74,12 +75,14 @@ def diagnose(problems: Sequence[Problem], limits: Limits) -> list[Diagnosis]:
         In the order of the problems.
     """
     found: dict[int, Diagnosis] = {}
+    of_each = [scales(problem) for problem in problems]
+    every = [problem for several in of_each for problem in several]
     with _collector_paused():
-        for batch in grouped(problems):
-            some = [problems[number] for number in batch]
+        for batch in grouped(every):
+            some = [every[number] for number in batch]
             judged = judge_block(shape_of(some[0].signature), some, limits)
             found |= dict(zip(batch, results(judged, some), strict=True))
-    return [found[number] for number in range(len(problems))]
+    return whole(found, [len(several) for several in of_each])
 
 
 @contextmanager

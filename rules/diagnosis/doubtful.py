@@ -17,7 +17,7 @@ import numpy as np
 from rules.diagnosis.block import Block, Model, model_of
 from rules.diagnosis.gaussian import LOG_2PI, Whitener, log_density, whitener
 from rules.diagnosis.hypotheses import DOUBTFUL, Hypotheses, Hypothesis
-from rules.diagnosis.shape import Floats
+from rules.diagnosis.shape import Floats, Integers
 
 RATIOS = {
     10.0: "a decimal place",
@@ -59,14 +59,15 @@ def slips(block: Block, recorded: Model, white: Whitener) -> Slips:
     """
     shape, limits = block.shape, block.limits
     covariance, own = recorded.covariance[:, 0], shape.signature.current_readings
-    residual, observations, currents, swapped, turned = rows_of_slips(block, recorded)
-    right = [residual[..., None], observations, currents, swapped + residual[..., None], turned[..., None]]
+    residual, observations, currents, turned = rows_of_slips(block, recorded)
+    right = [residual[..., None], turned[..., None], observations, currents]
     whitened, scale = white.inverse @ np.concatenate(right, axis=-1), white.log_scale
     base, readings = whitened[:, :, 0], observations.shape[-1] + currents.shape[-1]
     entered = np.concatenate([block.value[:, shape.read], block.reading_a], axis=1)
-    evidence, off = _off(base, whitened[:, :, 1 : 1 + readings], scale, entered, typed_off(block), len(shape.read))
+    evidence, off = _off(base, whitened[:, :, 2:], scale, entered, typed_off(block), len(shape.read))
     evidence, off = _looked_at_again(block, recorded, currents, evidence, off)
-    others = scale[:, None] - 0.5 * (whitened[:, :, 1 + readings :] ** 2).sum(axis=1)
+    both = np.concatenate([_swapped(block, whitened), (whitened[:, :, 1:2] ** 2).sum(axis=1)], axis=1)
+    others = scale[:, None] - 0.5 * both
     several = covariance + np.eye(shape.rows) * several_off(block)[:, :, None] ** 2
     found = np.concatenate([evidence, others, log_density(residual, several)[:, None]], axis=1)
     names = [Hypothesis(DOUBTFUL, ONE_READING, (int(number),)) for number in shape.read]
@@ -82,7 +83,7 @@ def slips(block: Block, recorded: Model, white: Whitener) -> Slips:
     return Slips(Hypotheses(tuple(names), weights[None], found), off)
 
 
-def rows_of_slips(block: Block, recorded: Model) -> tuple[Floats, Floats, Floats, Floats, Floats]:
+def rows_of_slips(block: Block, recorded: Model) -> tuple[Floats, Floats, Floats, Floats]:
     """
     What a slip does to the rows, measured less computed.
 
@@ -90,19 +91,39 @@ def rows_of_slips(block: Block, recorded: Model) -> tuple[Floats, Floats, Floats
     -------
     tuple of arrays
         The residual as it stands (b, n); what one volt or ampere more, meant than entered, takes off it, for each
-        observation (b, n, observations) and each current reading (b, n, currents); what two voltages at each other's
-        points add to it (b, n, pairs); the residual if the clamp was held the other way round (b, n).
+        observation (b, n, observations) and each current reading (b, n, currents); the residual if the clamp was held
+        the other way round (b, n).
     """
     shape = block.shape
     mean = recorded.whole_mean[:, 0]
     observations = np.broadcast_to(-shape.difference[:, shape.read], (len(block), shape.rows, len(shape.read)))
     gains, own = shape.signature.gains, [read.own for read in shape.signature.current_readings]
     currents = recorded.whole_shared[:, 0][:, :, [gains + source for source in own]] / block.reading_u[:, None]
-    pairs = np.array(shape.signature.swaps, dtype=np.int64).reshape(-1, 2)
-    apart = block.value[:, pairs[:, 1]] - block.value[:, pairs[:, 0]]
     live = np.where(shape.row_state == shape.signature.states, 1.0, -1.0)
-    swapped = shape.swap_columns.T * apart[:, None, :]
-    return block.shown - mean, observations, currents, swapped, live * block.shown - mean
+    return block.shown - mean, observations, currents, live * block.shown - mean
+
+
+def swapped_by(block: Block) -> tuple[Integers, Floats]:
+    """The observations of two voltages that may stand at each other's points (pairs, 2), and what lies between (b, pairs)."""
+    pairs = np.array(block.shape.signature.swaps, dtype=np.int64).reshape(-1, 2)
+    return pairs, block.value[:, pairs[:, 1]] - block.value[:, pairs[:, 0]]
+
+
+def _swapped(block: Block, whitened: Floats) -> Floats:
+    """
+    (b, pairs): square of the white residual if two voltages stood at each other's points.
+
+    A volt more at an observation moves the white residual by ``-g`` of that observation; with ``G`` the inner
+    products of residual and ``g`` the square follows from four of them for each pair.
+    """
+    pairs, apart = swapped_by(block)
+    columns = whitened[:, :, [0, *range(2, 2 + len(block.shape.read))]]
+    gram = np.swapaxes(columns, 1, 2) @ columns
+    first, second = (1 + np.searchsorted(block.shape.read, pairs)).T
+    across = gram[:, 0, first] - gram[:, 0, second]
+    square = gram[:, first, first] + gram[:, second, second] - 2 * gram[:, first, second]
+    found: Floats = gram[:, :1, 0] + apart * (apart * square - 2 * across)
+    return found
 
 
 def typed_off(block: Block) -> Floats:

@@ -183,7 +183,7 @@ def pictured(judged: Judged, which: Integers) -> Pictures:
         elif name.what == SWAPPED:
             first, second = name.which
             apart = block.value[here, second] - block.value[here, first]
-            read[here] = apart[:, None] * shape.swap_columns[shape.signature.swaps.index((first, second))]
+            read[here] = apart[:, None] * (shape.difference[:, first] - shape.difference[:, second])
         elif name.what == REVERSED:
             live = shape.row_state != shape.signature.states
             read[here] = np.where(live, -2 * block.shown[here], 0.0)

@@ -4,7 +4,7 @@ How much an outcome that is not known yet will tell: the expected fall in entrop
 Each *atom* is one way in which things may be, with a weight and a Gaussian for the outcome; atoms of one *group* are
 not told apart in what is said afterwards. The fall is the mean, over outcomes, of the divergence of the groups'
 probabilities after the outcome from those before it (their mutual information), in nats. Outcomes are laid out the
-same way each time: the same question has the same answer. Written throughout: b problems, c candidates, a atoms, g groups.
+same way each time: the same question has the same answer. Written throughout: c candidates, a atoms, g groups.
 
 References
 ----------
@@ -19,7 +19,8 @@ from statistics import NormalDist
 
 import numpy as np
 
-from rules.diagnosis.gaussian import cholesky, forward, log_determinant
+from rules.diagnosis.atoms import NEGLIGIBLE
+from rules.diagnosis.gaussian import cholesky, whitener
 from rules.diagnosis.shape import Floats
 
 OUTCOMES = 64
@@ -31,8 +32,6 @@ TRIED = 512
 TEMPERED = 0.5
 """Power of the weights by which outcomes are laid out: those of improbable atoms are looked at more often than they
 come, and count less for it."""
-NEGLIGIBLE = 1e-7
-"""Weight of an atom below which it is left out of the outcomes of one row."""
 LEAST = 1e-300
 
 
@@ -53,38 +52,28 @@ def fall_by_one(weight: Floats, member: Floats, mean: Floats, variance: Floats) 
 
     Parameters
     ----------
-    weight : array (b, a)
+    weight : array (a,)
         Probabilities of the atoms; they sum to one.
-    member : array (b, a, g)
+    member : array (a, g)
         1 where an atom belongs to a group.
-    mean, variance : array (b, c, a)
+    mean, variance : array (c, a)
         Of the outcome under each atom.
 
     Returns
     -------
-    array (b, c)
+    array (c,)
         [nat]
 
     Examples
     --------
     Two equal causes whose outcomes never overlap, and two that say the same:
 
-    >>> weight, member = np.array([[0.5, 0.5]]), np.eye(2)[None]
-    >>> falls = fall_by_one(weight, member, np.array([[[0.0, 9.0], [0.0, 0.0]]]), np.full((1, 2, 2), 0.25))
-    >>> falls.round(4).tolist()
-    [[0.6931, 0.0]]
+    >>> weight, member = np.array([0.5, 0.5]), np.eye(2)
+    >>> fall_by_one(weight, member, np.array([[0.0, 9.0], [0.0, 0.0]]), np.full((2, 2), 0.25)).round(4).tolist()
+    [0.6931, 0.0]
     """
-    found = np.empty(mean.shape[:2])
-    for number, shares in enumerate(weight):  # one after another: the arrays then stay in the processor's cache
-        kept = shares > NEGLIGIBLE
-        found[number] = _by_one(
-            shares[kept], member[number, kept], mean[number, :, kept].T, variance[number, :, kept].T
-        )
-    return found
-
-
-def _by_one(weight: Floats, member: Floats, mean: Floats, variance: Floats) -> Floats:
-    """Expected fall (c,) of one problem; arrays as above, without their first axis."""
+    kept = weight > NEGLIGIBLE
+    weight, member, mean, variance = weight[kept], member[kept], mean[:, kept], variance[:, kept]
     often = weight**TEMPERED
     often /= often.sum()
     spread = np.sqrt(variance)
@@ -98,63 +87,68 @@ def _by_one(weight: Floats, member: Floats, mean: Floats, variance: Floats) -> F
     at = np.searchsorted((below + number).ravel(), (steps + number).ravel()).reshape(-1, OUTCOMES)
     at = np.minimum(at - number * tried.shape[1], tried.shape[1] - 1)
     outcome = np.take_along_axis(tried, np.take_along_axis(order, at, axis=-1), axis=-1)
-    density = outcome[..., None] - mean[:, None]
-    density /= spread[:, None]
-    density *= density
-    density *= -0.5
-    np.exp(density, out=density)
-    density /= spread[:, None]
-    return _fall(weight, often, member, density)
+    # the exponent is quadratic in the outcome: three columns of it times three rows of the atoms
+    middle = mean.mean(axis=1, keepdims=True)
+    apart, from_there = outcome - middle, mean - middle
+    columns = np.stack([np.ones_like(apart), apart, apart**2], axis=-1)
+    rows = np.stack([-0.5 * from_there**2 / variance - np.log(spread), from_there / variance, -0.5 / variance], axis=1)
+    density = columns @ rows
+    return _fall(weight, often, member, np.exp(density, out=density))
 
 
-def fall_by_several(weight: Floats, member: Floats, mean: Floats, covariance: Floats) -> Floats:
+def fall_by_several(weight: Floats, member: Floats, mean: Floats, covariance: Floats) -> float:
     """
     Expected fall in entropy by one candidate of several rows.
 
     Parameters
     ----------
-    weight, member : arrays (b, a), (b, a, g)
+    weight, member : arrays (a,), (a, g)
         As for one row.
-    mean : array (b, a, k)
-    covariance : array (b, a, k, k)
+    mean : array (a, k)
+    covariance : array (a, k, k)
 
     Returns
     -------
-    array (b,)
+    float
         [nat]
     """
+    kept = weight > NEGLIGIBLE
+    weight, member, mean, covariance = weight[kept], member[kept], mean[kept], covariance[kept]
     often = weight**TEMPERED
-    often /= often.sum(axis=1, keepdims=True)
+    often /= often.sum()
     steps = (np.arange(SAMPLES) + 0.5) / SAMPLES
-    atom = (often.cumsum(axis=1)[:, None] < steps[:, None]).sum(axis=-1).clip(max=weight.shape[1] - 1)
-    lower = cholesky(covariance)
-    rows = np.arange(len(weight))[:, None]
+    atom = np.searchsorted(often.cumsum(), steps).clip(max=len(weight) - 1)
+    white = whitener(covariance)
     points = normal_points(SAMPLES, mean.shape[-1])
-    outcome = mean[rows, atom] + (lower[rows, atom] @ points[..., None])[..., 0]
-    white = forward(lower, np.swapaxes(outcome[:, None] - mean[:, :, None], -1, -2))
-    log_density = -0.5 * ((white**2).sum(axis=-2) + log_determinant(lower)[..., None])
-    density = np.exp(log_density - log_density.max(axis=1, keepdims=True))
-    return _fall(weight[:, None], often[:, None], member[:, None], np.swapaxes(density, -1, -2)[:, None])[:, 0]
+    drawn, of_point = np.unique(atom, return_inverse=True)
+    outcome = mean[atom] + (cholesky(covariance[drawn])[of_point] @ points[..., None])[..., 0]
+    # whitened, all outcomes less all means: one product for all atoms
+    whitened = (white.inverse.reshape(-1, mean.shape[-1]) @ outcome.T).reshape(len(weight), -1, SAMPLES)
+    whitened -= white.inverse @ mean[..., None]
+    log_density = white.log_scale[:, None] - 0.5 * np.einsum("aks,aks->as", whitened, whitened)
+    density = np.exp(log_density - log_density.max(axis=0))
+    return float(_fall(weight, often, member, density.T[None])[0])
 
 
 def _fall(weight: Floats, often: Floats, member: Floats, density: Floats) -> Floats:
     """
-    Expected fall (..., c) by outcomes that were laid out by ``often``.
+    Expected fall (c,) by outcomes that were laid out by ``often``.
 
     Parameters
     ----------
-    weight, often : arrays (..., a)
-    member : array (..., a, g)
-    density : array (..., c, outcomes, a)
+    weight, often : arrays (a,)
+    member : array (a, g)
+    density : array (c, outcomes, a)
         Of the outcomes under each atom, but for a factor that all atoms of an outcome share.
     """
-    joint = density @ (weight[..., None] * member)
-    total = joint.sum(axis=-1)
-    counts = total / (density @ often[..., None])[..., 0]
-    before = (weight[..., None] * member).sum(axis=-2)[..., None, :]
-    after = joint / total[..., None]
-    told = (after * np.log(np.maximum(after, LEAST) / np.maximum(before, LEAST))).sum(axis=-1)
-    fall: Floats = (counts * told).sum(axis=-1) / counts.sum(axis=-1)
+    of_groups = member[:, member.any(axis=0)] * weight[:, None]
+    before = of_groups.sum(axis=0)
+    columns = np.concatenate([of_groups, weight[:, None], often[:, None]], axis=1)
+    found = (density.reshape(-1, len(weight)) @ columns).reshape(*density.shape[:-1], -1)
+    joint, total, laid_out = found[..., :-2], found[..., -2], found[..., -1]
+    counts = total / laid_out
+    told = np.einsum("...g,...g->...", joint, np.log(np.maximum(joint, LEAST)) - np.log(before)) / total - np.log(total)
+    fall: Floats = np.maximum((counts * told).sum(axis=-1) / counts.sum(axis=-1), 0.0)
     return fall
 
 

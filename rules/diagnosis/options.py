@@ -53,6 +53,10 @@ WORTH_SETTING = 1.2
 """From so many times the current of the day on another current is worth setting."""
 
 
+DIGITS = 9
+"""Digits behind the point of a fall. [nat]"""
+
+
 @dataclass(frozen=True, slots=True)
 class Way:
     """A kind of candidate and how it is taken: the same for all circuits of a batch."""
@@ -72,8 +76,8 @@ class Options:
     """What could be done next."""
 
     ways: tuple[Way, ...]
-    row: Integers
-    """(b, o): candidate of one row, -1 for a round."""
+    column: Integers
+    """(b, o): place in the outlook's candidates of one row, -1 for a round."""
     level: Floats
     """(b, o): currents over those of the round with the most."""
     counts: Floats
@@ -90,43 +94,67 @@ class Options:
         return worth
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Tried:
+    """The candidates of one row that are looked at, the most promising of each kind."""
+
+    kinds: tuple[str, ...]
+    """(c,)"""
+    candidate: Integers
+    """(b, c): which of all: the single readings, then lengths, then the temperature."""
+    amps: Floats
+    """(b, c): current at which each is imagined; 0 for lengths and the temperature. [A]"""
+    is_open: NDArray[np.bool_]
+    """(b, c): it is not done already."""
+
+
+def tried_of(posed: Sequence[Posed], block: Block, atoms: Atoms) -> Tried:
+    """What is looked at, by what it might tell."""
+    kinds = [kind_of(posed[0].observation(row)) for row in posed[0].rows_of(SINGLE)]
+    kinds += [LENGTH] * len(posed[0].imagined.names) + [TEMPERATURE]
+    promise = _promise(posed, block, atoms, kinds).round(9)
+    chosen: list[Integers] = []
+    names: list[str] = []
+    for kind, most in TRIED.items():
+        of_kind = np.flatnonzero([name == kind for name in kinds])
+        order = of_kind[np.argsort(-promise[:, of_kind], axis=1, kind="stable")][:, :most]
+        chosen.append(order)
+        names += [kind] * order.shape[1]
+    candidate, number = np.concatenate(chosen, axis=1), np.arange(len(posed))[:, None]
+    amps = _currents(posed, block.shape)
+    return Tried(tuple(names), candidate, amps[number, candidate], promise[number, candidate] >= 0)
+
+
 def options_of(
-    posed: Sequence[Posed], block: Block, atoms: Atoms, outlook: Outlook, most_level: Floats, limits: Limits
+    posed: Sequence[Posed], tried: Tried, atoms: Atoms, outlook: Outlook, most_level: Floats, limits: Limits
 ) -> Options:
     """
     Everything that could be done next, for a batch.
 
     Parameters
     ----------
-    block : Block
-        The imagined problems.
+    tried : Tried
+        The candidates of one row, in the order of the outlook.
     most_level : array (b,)
         By how much the currents of the round with the most current may be multiplied.
     """
-    kinds = [kind_of(posed[0].observation(row)) for row in posed[0].rows_of(SINGLE)]
-    current = _currents(posed, block.shape)
-    kinds += [LENGTH] * len(posed[0].imagined.names) + [TEMPERATURE]
-    promise = _promise(posed, block, atoms, kinds).round(9)
     finer = each_u(limits["finer_meter.voltage_counts"], limits["finer_meter.voltage_resolution"]) ** 2
     dead = each_u(limits["finer_meter.resistance_counts"], limits["finer_meter.resistance_resolution"]) ** 2
     level = _levels(posed, most_level, limits)
-    number = np.arange(len(posed))
     ways: list[Way] = []
-    rows, levels, counts = [], [], []
-    for kind, most in TRIED.items():
-        of_kind = np.flatnonzero([name == kind for name in kinds])
-        order = of_kind[np.argsort(-promise[:, of_kind], axis=1, kind="stable")][:, :most]
-        for row in order.T:
-            own, done = outlook.counts[number, row], promise[number, row] >= 0
-            for how in HOWS.get(kind, (AS_IT_IS,)):
-                reached = level.get(how, level[AS_IT_IS])
-                variance = {FINER: np.minimum(finer, own), DEAD_TEST: dead * (reached * current[number, row]) ** 2}
-                ways.append(Way(kind, how, minutes_of(kind, how, limits)))
-                rows.append(row)
-                levels.append(np.where(done, reached, np.nan))
-                counts.append(variance.get(how, own))
-    row, reached, counted = np.array(rows).T, np.array(levels).T, np.array(counts).T
-    fall = _fall_by_one(atoms, outlook, row, np.nan_to_num(reached), counted)
+    columns, levels, counts = [], [], []
+    for column, kind in enumerate(tried.kinds):
+        own = outlook.counts[:, column]
+        for how in HOWS.get(kind, (AS_IT_IS,)):
+            reached = level.get(how, level[AS_IT_IS])
+            variance = {FINER: np.minimum(finer, own), DEAD_TEST: dead * (reached * tried.amps[:, column]) ** 2}
+            ways.append(Way(kind, how, minutes_of(kind, how, limits)))
+            columns.append(column)
+            levels.append(np.where(tried.is_open[:, column], reached, np.nan))
+            counts.append(variance.get(how, own))
+    column_of = np.broadcast_to(np.array(columns), (len(posed), len(columns)))
+    reached, counted = np.array(levels).T, np.array(counts).T
+    fall = _fall_by_one(atoms, outlook, np.array(columns), reached, counted)
     # a length that proves wrong is put right in the record, and all is settled; else the tape leaves a smaller doubt
     lengths = np.array([way.kind == LENGTH for way in ways])
     wrong = atoms.wrong_length[:, None]
@@ -135,11 +163,13 @@ def options_of(
         ways += [Way(ROUND, how, minutes_of(ROUND, how, limits)) for how in HOWS[ROUND]]
         of_rounds = np.stack([level[how] for how in HOWS[ROUND]], axis=1)
         nothing = np.zeros(of_rounds.shape)
-        row = np.concatenate([row, nothing.astype(np.int64) - 1], axis=1)
+        column_of = np.concatenate([column_of, nothing.astype(np.int64) - 1], axis=1)
         reached, counted = np.concatenate([reached, of_rounds], axis=1), np.concatenate([counted, nothing], axis=1)
-        fall = np.concatenate([fall, _fall_by_round(atoms, outlook, np.nan_to_num(of_rounds))], axis=1)
+        fall = np.concatenate([fall, _fall_by_round(atoms, outlook, of_rounds)], axis=1)
     done = np.isfinite(reached)
-    return Options(tuple(ways), row, np.nan_to_num(reached), counted, np.where(done, fall, 0.0), done)
+    # the same to the last digit, whatever else goes through the arrays
+    fall = np.where(done, fall, 0.0).round(DIGITS)
+    return Options(tuple(ways), column_of, np.nan_to_num(reached), counted, fall, done)
 
 
 def minutes_of(kind: str, how: str, limits: Limits) -> float:
@@ -193,20 +223,26 @@ def _currents(posed: Sequence[Posed], shape: Shape) -> Floats:
     return np.concatenate([np.abs(amps), np.zeros((len(posed), len(posed[0].imagined.names) + 1))], axis=1)
 
 
-def _fall_by_one(atoms: Atoms, outlook: Outlook, row: Integers, level: Floats, counts: Floats) -> Floats:
-    mean, steady, variance, clamp = (
-        np.take_along_axis(array, row[..., None], axis=1)
-        for array in (outlook.mean, outlook.steady, outlook.variance, outlook.clamp)
-    )
-    grown = level[..., None]
-    spread = counts[..., None] + clamp + grown**2 * variance
-    return fall_by_one(atoms.weight, atoms.member, steady + grown * mean, spread)
+def _fall_by_one(atoms: Atoms, outlook: Outlook, column: Integers, level: Floats, counts: Floats) -> Floats:
+    """(b, o): expected falls by single readings, 0 where the level is not a number."""
+    fall, member = np.zeros(level.shape), atoms.member
+    for number, levels in enumerate(level):
+        done = np.isfinite(levels)
+        grown, which = levels[done, None], column[done]
+        mean, steady, variance, clamp = (
+            array[number, which] for array in (outlook.mean, outlook.steady, outlook.variance, outlook.clamp)
+        )
+        spread = counts[number, done, None] + clamp + grown**2 * variance
+        fall[number, done] = fall_by_one(atoms.weight[number], member[number], steady + grown * mean, spread)
+    return fall
 
 
 def _fall_by_round(atoms: Atoms, outlook: Outlook, level: Floats) -> Floats:
-    falls = []
-    for each in level.T:
-        mean = outlook.again_steady + each[:, None, None] * outlook.again_mean
-        covariance = outlook.again_fixed + (each**2)[:, None, None, None] * outlook.again_covariance
-        falls.append(fall_by_several(atoms.weight, atoms.member, mean, covariance))
-    return np.stack(falls, axis=1)
+    """(b, o): expected falls by the round once more, 0 where the level is not a number."""
+    fall, member = np.zeros(level.shape), atoms.member
+    for number, option in np.argwhere(np.isfinite(level)).tolist():
+        grown = level[number, option]
+        mean = outlook.again_steady[number] + grown * outlook.again_mean[number]
+        covariance = outlook.again_fixed[number] + grown**2 * outlook.again_covariance[number]
+        fall[number, option] = fall_by_several(atoms.weight[number], member[number], mean, covariance)
+    return fall

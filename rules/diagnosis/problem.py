@@ -177,6 +177,10 @@ class Problem:
     current_readings: tuple[Observation, ...]
     rounds: tuple[str, ...]
     """Name of each state."""
+    wander: tuple[float, ...] = ()
+    """Of each observation: the part of ``variance`` that repeated readings show, widened for their number."""
+    wander_freedom: int = 0
+    """Degrees of freedom of what they show; 0 where nothing was repeated."""
     common: Common | None = None
     """``None`` where nothing was learned: all other figures are as read and recorded either way."""
 

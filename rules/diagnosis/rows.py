@@ -81,6 +81,7 @@ class _Gather:
         self.observations: list[Observation] = []
         self.shown: list[Shown] = []
         self.variances: list[float] = []
+        self.wander: list[float] = []
         self.gains: dict[str, int] = {}
         self.gain_u: list[float] = []
         self.gain_of: list[int] = []
@@ -125,9 +126,9 @@ class _Gather:
             value = sum(worth.value for worth in worths) / len(rows)
             self.observations.append(Observation(quantity, at, to, leg, this.name, tuple(rows)))
             self.shown.append(Shown(value, key, worths[0].gain_u, 0.0))
-            self.variances.append(
-                sum(worth.each_u**2 + (few * worth.wander_u) ** 2 for worth in worths) / len(rows) ** 2
-            )
+            wander = sum((few * worth.wander_u) ** 2 for worth in worths) / len(rows) ** 2
+            self.variances.append(sum(worth.each_u**2 for worth in worths) / len(rows) ** 2 + wander)
+            self.wander.append(wander if this.wander_freedom else 0.0)
             self.gain_of.append(self.gains.setdefault(key, len(self.gains)))
             if len(self.gain_u) < len(self.gains):
                 self.gain_u.append(worths[0].gain_u)
@@ -267,6 +268,8 @@ class _Gather:
             alternatives=tuple(self._alternatives(place) for place in range(len(self.names))),
             value=tuple(shown.value for shown in self.shown),
             variance=tuple(self.variances),
+            wander=tuple(self.wander),
+            wander_freedom=max((this.wander_freedom for this in rounds), default=0),
             gain_u=tuple(self.gain_u),
             amps=tuple(self.amps),
             error_a=tuple(self.errors.values()),

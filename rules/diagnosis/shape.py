@@ -15,11 +15,13 @@ from functools import lru_cache
 import numpy as np
 from numpy.typing import NDArray
 
-from rules.diagnosis.problem import DEAD, ENDS, LEGS, TERMINATIONS, Row, Signature
+from rules.diagnosis.problem import DEAD, ENDS, LEGS, TERMINATIONS, Signature
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
 
+LONG = 48
+"""Branches from which sums over them are taken one by one rather than as a product of matrices."""
 DEVICE_UNITS = 1.0
 """How often a bad connection is expected in the device, beside one for each end of a run."""
 
@@ -87,8 +89,6 @@ class Shape:
     """(places and offsets, q): the gains and sources through which each moves them, before others as above."""
     read: Integers
     """Observations that a row uses."""
-    swap_columns: Floats
-    """(swaps, n): what one volt entered at the other of two points changes."""
 
     @property
     def rows(self) -> int:
@@ -109,10 +109,9 @@ def shape_of(signature: Signature) -> Shape:
         reached[[branch for branch, _ in row.path]] = True
     # a device that lies between no readings is no place of this diagnosis
     looked_at = [kind == "run" or bool(reached[branch]) for branch, kind in enumerate(signature.branches)]
-    groups = _elements(signature)
+    groups, coefficient = _elements(signature)
     element_branch = np.array([branch for branch, _, _ in groups], dtype=np.int64)
     kinds = [kind for _, kind, _ in groups]
-    coefficient = np.array([[_enters(row, group) for group in groups] for row in rows]).reshape(len(rows), len(groups))
     difference = np.zeros((len(rows), len(signature.gain_of)))
     for number, row in enumerate(rows):
         for observation, sign in row.shown:
@@ -130,7 +129,6 @@ def shape_of(signature: Signature) -> Shape:
     offsets, offset_rows, offset_slot = _offsets(signature, looked_at)
     place_element = np.array([element for element, _ in places], dtype=np.int64)
     moved_rows, moving_columns = _moved(signature, coefficient[:, place_element].T, offset_rows, places, gain_rows)
-    swap_columns = [difference[:, a] - difference[:, b] for a, b in signature.swaps]
     conductors = slice(0, edges[1])
     return Shape(
         signature=signature,
@@ -160,7 +158,6 @@ def shape_of(signature: Signature) -> Shape:
         moved_rows=moved_rows,
         moving_columns=moving_columns,
         read=np.flatnonzero(np.any(difference != 0, axis=0)),
-        swap_columns=np.array(swap_columns).reshape(len(swap_columns), len(rows)),
     )
 
 
@@ -168,34 +165,51 @@ Element = tuple[int, str, tuple[str, ...]]
 """Branch, kind (conductor, termination, pole) and members."""
 
 
-def _enters(row: Row, element: Element) -> float:
-    """How often an element lies on a row's path, with its sense."""
-    branch, kind, members = element
-    first = members[0]  # members of one element enter alike
-    if row.part in TERMINATIONS:
-        if kind != "termination" or first != row.part:
-            return 0.0
-    elif row.part not in ("both", first.split()[-1]):
-        return 0.0
-    return float(sum(sign for passed, sign in row.path if passed == branch))
+def _enters(part: str, kind: str, member: str) -> bool:
+    """Whether a row of some part sees a member of the branches on its path."""
+    if part in TERMINATIONS:
+        return kind == "termination" and member == part
+    return part in ("both", member.split()[-1])
 
 
-def _elements(signature: Signature) -> list[Element]:
-    """All elements, conductors first; members that enter every row alike are one element."""
-    found: dict[str, list[Element]] = {"conductor": [], "termination": [], "pole": []}
+def _elements(signature: Signature) -> tuple[list[Element], Floats]:
+    """
+    All elements, conductors first; members that enter every row alike are one element.
+
+    Returns
+    -------
+    list of Element
+    array (n, E)
+        How often each lies on a row's path, with its sense.
+    """
+    passed: list[dict[str, list[tuple[int, int]]]] = [{} for _ in signature.branches]
+    for number, row in enumerate(signature.rows):
+        senses: dict[int, int] = {}
+        for branch, sign in row.path:
+            senses[branch] = senses.get(branch, 0) + sign
+        for branch, sense in senses.items():
+            if sense:
+                passed[branch].setdefault(row.part, []).append((number, sense))
+    found: dict[str, dict[Element, list[tuple[int, int]]]] = {"conductor": {}, "termination": {}, "pole": {}}
     for branch, kind in enumerate(signature.branches):
         if kind == "run":
-            parts = [("conductor", LEGS), ("termination", TERMINATIONS)]
+            kinds = [("conductor", LEGS), ("termination", TERMINATIONS)]
         else:
             legs = kind.partition(" ")[2]
-            parts = [("pole", LEGS if legs == "both" else (legs,))]
-        for name, members in parts:
-            alike: dict[tuple[float, ...], list[str]] = {}
+            kinds = [("pole", LEGS if legs == "both" else (legs,))]
+        for name, members in kinds:
+            alike: dict[tuple[str, ...], list[str]] = {}
             for member in members:
-                column = tuple(_enters(row, (branch, name, (member,))) for row in signature.rows)
-                alike.setdefault(column, []).append(member)
-            found[name] += [(branch, name, tuple(group)) for group in alike.values()]
-    return [element for elements in found.values() for element in elements]
+                alike.setdefault(tuple(p for p in passed[branch] if _enters(p, name, member)), []).append(member)
+            for parts, group in alike.items():
+                found[name][branch, name, tuple(group)] = [entry for part in parts for entry in passed[branch][part]]
+    groups = {element: column for elements in found.values() for element, column in elements.items()}
+    coefficient = np.zeros((len(signature.rows), len(groups)))
+    for number, column in enumerate(groups.values()):
+        if column:
+            seeing, sense_of = zip(*column, strict=True)
+            coefficient[seeing, number] = sense_of
+    return list(groups), coefficient
 
 
 def _places(signature: Signature, groups: Sequence[Element], looked_at: Sequence[bool]) -> list[tuple[int, Place]]:
@@ -235,10 +249,13 @@ def _moved(
     seen = np.concatenate([of_places, of_offsets]) != 0
     sources = np.zeros((len(seen), signature.sources), dtype=bool)
     states = np.array([row.state for row in signature.rows], dtype=np.int64)
+    of_branch: dict[int, list[int]] = {}
+    for number, (_, place) in enumerate(places):
+        of_branch.setdefault(place.branch, []).append(number)
     for slot, source in signature.errors:
         state, branch = signature.slots[slot]
-        of_branch = [number for number, (_, place) in enumerate(places) if place.branch == branch]
-        sources[of_branch, source] |= seen[of_branch][:, states == state].any(axis=1)
+        its = of_branch.get(branch, [])
+        sources[its, source] |= seen[its][:, states == state].any(axis=1)
     sources[:, signature.sources - signature.common :] = True  # such a column may move any row
     return _first(seen), _first(np.concatenate([seen @ gain_rows.T > 0, sources], axis=1))
 
@@ -277,6 +294,16 @@ def _offsets(
     rows = np.array([[entered for entered, _ in column] for column in alike]).reshape(shape)
     slots = np.array([[slot for _, slot in column] for column in alike], dtype=np.int64).reshape(shape)
     return tuple(tuple(members) for members in alike.values()), rows, slots
+
+
+def of_runs(shape: Shape, per_conductor: Floats) -> Floats:
+    """Sums (..., B) over the conductors (..., E of conductors) of each branch."""
+    if len(shape.run_of) < LONG:
+        return per_conductor @ shape.run_of.T
+    branches, first = np.unique(shape.element_branch[shape.conductors], return_index=True)
+    sums = np.zeros((*per_conductor.shape[:-1], len(shape.run_of)))
+    sums[..., branches] = np.add.reduceat(per_conductor, first, axis=-1)  # they stand branch by branch
+    return sums
 
 
 def place_words(members: Sequence[str]) -> str:

@@ -71,6 +71,11 @@ def text_complaint(text: str, *, lines: bool = False) -> Complaint:
     return f"{quoted(text)} holds the control character U+{ord(character):04X}", allowed
 
 
+def cell_complaint(value: Any, column: Column) -> Complaint:
+    """What is wrong with a value by itself, in a cell that is not empty."""
+    return _CHECKS[column.kind](value, column)
+
+
 def _column_problems(table: str, name: str, column: Column, rows: tuple[Row, ...]) -> Iterator[Problem]:
     check, value_of = _CHECKS[column.kind], attrgetter(name)
     # Most columns hold few distinct values, and hardly any holds one that is wrong.

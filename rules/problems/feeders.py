@@ -125,18 +125,18 @@ def _loops(index: Index) -> Iterator[Problem]:
             elif key not in done:
                 on_way[key] = len(way)
                 way.append(row)
-                branches.append(_above(row, index))
+                branches.append(feeding(row, index))
 
 
 def _key(row: Fed) -> tuple[str, str]:
     return type(row).__name__, row.id
 
 
-def _above(row: Fed, index: Index) -> Iterator[Fed]:
-    """What feeds a row, as far as it is there."""
+def feeding(row: Fed, index: Index) -> Iterator[Fed]:
+    """What feeds a row, as far as it is there; a circuit that another circuit feeds is told by itself."""
     for feed in _feeds(row):
         above = index.named(feed)
-        if above is not None:
+        if above is not None and not (isinstance(row, Circuit) and isinstance(above, Circuit)):
             yield above
 
 

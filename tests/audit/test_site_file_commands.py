@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import io
 import json
 import os
 import re
@@ -637,6 +638,10 @@ def test_history_tells_who_changed_what(site: Path, capsys: Captured) -> None:
     assert any(re.fullmatch(r"    and [\d,]+ more rows", line) for line in lines)
     assert "    changed F1 run 1: length 24 m → 80 ft" in lines
     assert any(re.fullmatch("    changed settings: extent .* → one two", line) for line in lines)
+    with SiteStore(site, laptop="lap") as store, store.save("Bob", "a correction names what it replaces") as save:
+        save.change("readings", store.site().readings[0].id, tag="r-1")
+    (tagged,) = [line for line in done(["history", str(site)], capsys)[0].splitlines() if "r-1" in line]
+    assert tagged.endswith(" reading r-1: added reading r-1")
     of_circuit = done(["history", str(site), "--circuit", "F1"], capsys)[0].splitlines()
     assert [line for line in of_circuit if not line.startswith(" ")][1].endswith("Bob  paced out again")
     assert any(line.startswith("    added circuit F1: fed_from MDB, ") for line in of_circuit)
@@ -791,6 +796,21 @@ def test_alone_in_a_terminal_it_opens_the_one_chosen(
         assert cli.run([]) == 2
         (line,) = capsys.readouterr().err.splitlines()
         assert line.endswith("is none of them; accepted: a number from 1 to 2")
+
+
+def test_alone_in_a_terminal_enter_opens_the_only_one(
+    site: Path, opened: Opened, monkeypatch: pytest.MonkeyPatch, capsys: Captured
+) -> None:
+    for typed, is_opened in (("\n", True), ("1\n", True), ("0\n", False)):
+        opened.clear()
+        monkeypatch.setattr("sys.stdin", io.StringIO(typed))
+        out, _ = done([], capsys)
+        assert "Enter to open it, or 0 for none" in out
+        assert [path for path, _ in opened] == ([site] if is_opened else [])
+    monkeypatch.setattr("sys.stdin", io.StringIO("2\n"))
+    assert cli.run([]) == 2
+    (line,) = capsys.readouterr().err.splitlines()
+    assert line == "'2' is none of them; accepted: a number from 1 to 1"
 
 
 def test_damaged_settings_are_a_line_and_the_site_is_made(plant: Path, home: Path, capsys: Captured) -> None:

@@ -25,6 +25,12 @@ ALL_READ, SOME_READ, NONE_READ = "●", "◐", "○"
 CHOSEN = "▸"
 
 _BAR_CELLS = 13
+_EDGES = 2
+"""Of a bar."""
+_LEAST_BAR_CELLS = 6
+"""A shorter bar says nothing."""
+_LEFT_OF_TAG, _BESIDE_TAG = 5, 3
+"""Cells of the trail and the cursor, and those that part the tag from the status."""
 _PERCENT_CELLS = 13
 _STATUS_CELLS = 12
 _LONGEST_TAG = 16
@@ -103,10 +109,13 @@ def stop_line(stop: Stop, survey: Survey, width: int, tags: int, *, chosen: bool
         return cut((sign, Piece(f"{mark} ", "cursor"), piece(stop.words, "title" if chosen else "quiet")), width)
     circuit = survey.index.circuits[stop.id]
     trail = Piece(f" {READ if circuit.id in survey.read_now else NOT_READ} ", "trail")
+    # where there is little room, the bar gives way first, then the tag: the word of the status stays
+    tags = max(1, min(tags, width - _LEFT_OF_TAG - _BESIDE_TAG - _STATUS_CELLS))
     head = (trail, Piece(f"{mark} ", "cursor"), piece(fit(circuit.tag, tags), "strong"), piece("  "))
-    tail = _tail(survey.results.get(circuit.id), with_percent=width >= 70)
+    bar_cells = min(_BAR_CELLS, width - width_of(head) - _STATUS_CELLS - 2)
+    tail = _tail(survey.results.get(circuit.id), bar_cells, with_percent=width >= 70)
     used = width_of((*head, *tail))
-    return (*head, piece(fit(circuit.description, max(0, width - used))), *tail)
+    return cut((*head, piece(fit(circuit.description, max(0, width - used))), *tail), width)
 
 
 def reason_line(stop: Stop, survey: Survey, width: int) -> Line:
@@ -132,14 +141,14 @@ def head_line(survey: Survey, width: int, *, read_only: bool) -> Line:
     """What site and visit are at hand, and how the walk stands."""
     circuits = survey.index.circuits
     read = len(survey.read_now & circuits.keys())
-    said = [piece(f"{read} of {len(circuits)} read")] if circuits else []
+    said = [piece(f"{read} of {len(circuits)} read")] if circuits and not survey.is_outline else []
     for status in (Status.ACT, Status.WATCH):
         count = survey.count_of(status)
         said += [piece("   "), piece(f"{count} {status}", str(status))] if count else []
     if survey.assessment is None and circuits:
-        said += [piece("   "), piece("judging …", "quiet")]
+        said += [piece("   "), piece("reading …" if survey.is_outline else "judging …", "quiet")]
     left = [piece(" "), piece(survey.site.name, "strong"), piece("   ")]
-    left.append(piece(survey.visit or "not visited yet", "quiet"))
+    left.append(piece(survey.visit or ("" if survey.is_outline else "not visited yet"), "quiet"))
     if read_only:
         left += [piece("   "), piece("read only", "act")]
     return apart(tuple(left), (*said, piece(" ")), width)
@@ -151,12 +160,16 @@ def _board_sign(stop: Stop, survey: Survey) -> str:
     return NONE_READ if not read else ALL_READ if read == len(circuits) else SOME_READ
 
 
-def _tail(result: CircuitResult | None, *, with_percent: bool) -> Line:
+def _tail(result: CircuitResult | None, bar_cells: int, *, with_percent: bool) -> Line:
+    has_bar = bar_cells >= _LEAST_BAR_CELLS
     if result is None:
-        blank = _BAR_CELLS + (_PERCENT_CELLS + 2 if with_percent else 0) + 1
+        blank = (bar_cells + 1 if has_bar else 0) + (_PERCENT_CELLS + 2 if with_percent else 0)
         return line(" " * (blank + 1), Piece(fit("…", _STATUS_CELLS), "quiet"))
     words = drop_words(result)
-    bar = Piece(text_bar(words.bar), "act" if words.bar is not None and words.bar.past else "bar")
-    percent = (piece("  "), piece(fit(words.of_allowed, _PERCENT_CELLS))) if with_percent else ()
     status = Piece(fit(status_words(result.status), _STATUS_CELLS), str(result.status))
+    if not has_bar:
+        return (piece(" "), status)
+    is_past = words.bar is not None and words.bar.past
+    bar = Piece(text_bar(words.bar, bar_cells - _EDGES), "act" if is_past else "bar")
+    percent = (piece("  "), piece(fit(words.of_allowed, _PERCENT_CELLS))) if with_percent else ()
     return (piece(" "), bar, *percent, piece(" "), status)

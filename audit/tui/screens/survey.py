@@ -99,15 +99,26 @@ class SurveyScreen(OurScreen[None]):
 
     def on_mount(self) -> None:
         self.watch(self.app, "survey", self._take)
+        self.watch(self.app, "outline", self._take_outline)
 
     def _take(self, survey: Survey | None) -> None:
+        is_first = self.survey is None
         self.survey = survey
+        if is_first:
+            self.refresh_bindings()
+
+    def _take_outline(self, outline: Survey | None) -> None:
+        if outline is not None and self.survey is None:
+            self._show_walk(outline)
+
+    def _show_walk(self, survey: Survey) -> None:
+        self.query_one("#head", FewLines).say(lambda width: [head_line(survey, width, read_only=survey.read_only)])
+        self.walk.survey = survey
 
     def watch_survey(self, survey: Survey | None) -> None:
         if survey is None:
             return
-        self.query_one("#head", FewLines).say(lambda width: [head_line(survey, width, read_only=survey.read_only)])
-        self.walk.survey = survey
+        self._show_walk(survey)
         self.page.survey = survey
         self.strip.survey = survey
         if survey.is_judged and not self.strip.is_open:
@@ -134,6 +145,8 @@ class SurveyScreen(OurScreen[None]):
         """While the strip is open its letters are typed, not pressed."""
         if self.is_mounted and self.strip.has_focus_within:
             return action in ("help", "quit")
+        if self.survey is None:
+            return action == "help"
         if action == "turn_back":
             return self.turned
         if action == "show_rule":  # where findings are in sight

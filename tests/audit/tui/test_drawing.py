@@ -14,6 +14,7 @@ from rich.cells import cell_len
 from audit.intake.folder import read_folder
 from audit.report.blocks import Path as CircuitPath
 from audit.report.blocks import Stop as PathStop
+from audit.report.phrases import status_words
 from audit.tui.drawing.board import board_lines
 from audit.tui.drawing.causes import cause_lines
 from audit.tui.drawing.doubts import doubt_lines
@@ -106,6 +107,21 @@ def test_every_line_of_the_walk_fits(sample: Survey) -> None:
                 assert width_of(stop_line(stop, sample, width, tags, chosen=chosen)) <= width
             assert width_of(reason_line(stop, sample, width)) <= width
         assert width_of(head_line(sample, width, read_only=True)) <= width
+
+
+@pytest.mark.parametrize("width", [70, 54, 46, 40, 34, 26, 22])
+def test_the_word_of_a_status_stays_where_there_is_little_room(sample: Survey, width: int) -> None:
+    """The bar gives way first, then the tag."""
+    index = sample.index
+    for stop in walk_stops(index):
+        if stop.kind == "circuit":
+            text = text_of(stop_line(stop, sample, width, tag_cells(index), chosen=True))
+            status = status_words(sample.results[stop.id].status)
+            assert text.rstrip().endswith(status), text
+            assert index.circuits[stop.id].tag[0] in text
+            waiting = text_of(stop_line(stop, replace(sample, results={}), width, tag_cells(index), chosen=False))
+            assert waiting.rstrip().endswith("…")
+            assert len(waiting) == len(text) == width
 
 
 def test_what_nothing_feeds_stands_at_the_end() -> None:

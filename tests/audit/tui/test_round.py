@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import os
 import sqlite3
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
@@ -321,6 +323,26 @@ async def test_a_refused_save_keeps_the_value_and_enter_tries_again(hut: Path, i
         assert first.has_focus_within
         await walk.enter("")
         assert values(hut) == {"voltage way": 12.5, "current run 1": 4.02}
+
+
+@pytest.mark.parametrize(
+    ("harm", "said"),
+    [
+        (lambda path: os.truncate(path, 0), "this site file was emptied while it was open"),
+        (Path.unlink, "this file was removed or moved away while it was open"),
+    ],
+)
+async def test_a_file_that_goes_while_it_is_open_keeps_the_value_on_the_screen(
+    hut: Path, harm: Callable[[Path], object], said: str
+) -> None:
+    async with walking(hut) as walk:
+        await cautions_read(walk)
+        harm(hut)
+        await walk.enter("4.02")
+        await walk.shows(said)
+        first, *_ = walk.survey.strip.cells
+        assert (first.state, first.text) == ("refused", "4.02")
+        assert "4.02" in walk.screen
 
 
 async def test_a_full_disk_keeps_the_value(hut: Path, monkeypatch: pytest.MonkeyPatch) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import queue
 import threading
 import time
@@ -9,14 +10,16 @@ from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 import pytest
 from textual.message import Message
 
 from audit.tui import judge as judging
+from audit.tui.drawing.walk import walk_stops
 from audit.tui.edits import Add, Change, ChangeSettings, Edit, Remove
 from audit.tui.judge import Judge
-from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Refused, Saved, Troubled, Undone
+from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Outlined, Refused, Saved, Troubled, Undone
 from audit.tui.run import run_survey
 from audit.tui.session import Session
 from audit.tui.settings import PassingSettings
@@ -24,10 +27,11 @@ from audit.tui.state import latest_visit
 from db import connection
 from db.errors import NoSuchSite, NotASiteFile
 from db.store import SiteStore
-from rules.record import Load, Reading, Site, Visit
+from rules.index import Index
+from rules.record import Feed, Load, Reading, Site, Visit, rows_of
 from tests.audit.tui.walker import HUT, site_of
 
-PATIENCE_S = 10.0
+PATIENCE_S = 60.0
 
 
 class Told:
@@ -35,9 +39,13 @@ class Told:
 
     def __init__(self) -> None:
         self.messages: queue.Queue[Message] = queue.Queue()
+        self.outlines: list[Outlined] = []
 
     def __call__(self, message: Message) -> None:
-        self.messages.put(message)
+        if isinstance(message, Outlined):
+            self.outlines.append(message)
+        else:
+            self.messages.put(message)
 
     def next(self) -> Message:
         return self.messages.get(timeout=PATIENCE_S)
@@ -71,6 +79,87 @@ def test_a_record_is_loaded_then_each_save_is_answered_with_the_record_up_to_dat
         assert saved.ids[1:] == ("c1", "", "l2")
         assert [row.tag for row in loaded.site.loads] == ["pump", "extra"]
         assert (loaded.site.circuits[0].description, loaded.site.address) == ("Well", "Lane 1")
+
+
+def test_what_the_walk_shows_comes_before_all_the_rest(hut: Path) -> None:
+    with session(hut) as (thread, told):
+        thread.look()
+        first = told.next()
+        assert isinstance(first, Loaded)
+        (outline,) = told.outlines
+        whole, seen = first.site, outline.site
+        assert (seen.sources, seen.boards, seen.circuits, seen.visits) == (
+            whole.sources, whole.boards, whole.circuits, whole.visits,
+        )  # fmt: skip
+        assert (seen.runs, seen.loads, seen.readings) == ((), (), ())
+        assert walk_stops(outline.index) == walk_stops(first.index)
+
+
+def a_reading(value: float, circuit: str = "c1", **more: Any) -> Reading:
+    return Reading(id="", circuit_id=circuit, round="1", quantity="voltage", at="way", value=value, **more)
+
+
+def test_what_was_written_is_all_that_is_read_anew(hut: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """The record and its index are after each save as if all of it had been read."""
+    whole: list[SiteStore] = []
+    read = SiteStore.site
+
+    def site(store: SiteStore, *tables: Any) -> Site:
+        whole.append(store)
+        return read(store, *tables)
+
+    monkeypatch.setattr(SiteStore, "site", site)
+
+    def as_read(loaded: Loaded) -> None:
+        there = site_of(hut)
+        assert list(rows_of(loaded.site)) == list(rows_of(there))
+        assert loaded.site == there
+        fresh, index = Index(there), loaded.index
+        assert (index.readings, index.replaced) == (fresh.readings, fresh.replaced)
+        assert all(index.readings_of(id_) == fresh.readings_of(id_) for id_ in ("c1", "c2", "b", "s"))
+        assert index.site is loaded.site
+        assert walk_stops(index) == walk_stops(fresh)
+        assert all(index.points_of(id_) == fresh.points_of(id_) for id_ in ("c1", "c2"))
+
+    with session(hut) as (thread, told):
+        loaded = told.next()
+        assert isinstance(loaded, Loaded)
+
+        def save(*steps: Any) -> tuple[str, ...]:
+            whole.clear()
+            thread.save(Edit("one", steps), "Ada")
+            loaded, saved = told.next(), told.next()
+            assert isinstance(loaded, Loaded)
+            assert isinstance(saved, Saved)
+            assert whole == []
+            as_read(loaded)
+            return saved.ids
+
+        (first,) = save(Add("readings", a_reading(12.5)))
+        (second,) = save(Add("readings", a_reading(12.3, "c2")))
+        on_busbar = replace(a_reading(12.6, ""), board=Feed("boards", "b"), at="bus")
+        save(Add("readings", on_busbar))
+        save(Change("readings", first, {"tag": "r-1"}), Add("readings", a_reading(12.4, replaces_id=first)))
+        save(Change("readings", second, {"circuit_id": "c1"}))
+        save(Remove("readings", second))
+        (load,) = save(Add("loads", Load(id="", circuit_id="c1", point="p1", tag="fan", current_a=1.0)))
+        save(Remove("loads", load), Add("readings", a_reading(12.1)))
+        save(Change("circuits", "c2", {"walk_order": -1.0}))
+        for settings_too in (False, True):
+            if settings_too:
+                thread.save(Edit("one", (ChangeSettings({"name": "Shed"}),)), "Ada")
+            else:
+                thread.undo("Ada")
+            loaded = told.next()
+            assert isinstance(loaded, Loaded)
+            as_read(loaded)
+            told.next()
+        with SiteStore(hut, laptop="another") as other, other.save("Bob", "one") as save_of_other:
+            save_of_other.add("readings", a_reading(11.9, "c2"))
+        loaded = told.next()
+        assert isinstance(loaded, Loaded)
+        as_read(loaded)
+        save(Add("readings", a_reading(11.8, "c2")))
 
 
 def test_an_edit_is_saved_whole_or_not_at_all(hut: Path) -> None:
@@ -134,6 +223,25 @@ def test_a_file_that_was_spoilt_is_said_once(hut: Path) -> None:
         assert str(hut) not in trouble.line
         with pytest.raises(queue.Empty):
             told.messages.get(timeout=1.2)
+
+
+@pytest.mark.parametrize(
+    ("harm", "line"),
+    [
+        (lambda path: os.truncate(path, 0), "this site file was emptied while it was open"),
+        (lambda path: os.truncate(path, 5_000), "this site file is damaged (database disk image is malformed)"),
+        (Path.unlink, "this file was removed or moved away while it was open"),
+    ],
+)
+def test_a_save_in_a_file_that_is_spoilt_is_refused_with_a_line(
+    hut: Path, harm: Callable[[Path], object], line: str
+) -> None:
+    with session(hut) as (thread, told):
+        told.next()
+        harm(hut)
+        thread.save(Edit("a name", (ChangeSettings({"name": "Shed"}),)), "Ada")
+        refused = next(message for message in iter(told.next, None) if isinstance(message, Refused))
+        assert refused.line == line
 
 
 def test_a_file_that_cannot_be_opened_is_told(tmp_path: Path) -> None:

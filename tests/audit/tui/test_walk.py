@@ -2,19 +2,24 @@
 
 from __future__ import annotations
 
+import threading
 import time
 from dataclasses import replace
 from pathlib import Path
 
+import pytest
 from rich.cells import cell_len
+from textual.events import Key
 
+from audit.tui import type_ahead
 from audit.tui.app import OhmwalkApp
 from audit.tui.screens.survey import SurveyScreen
+from audit.tui.session import Session
 from audit.tui.settings import PassingSettings
 from db.store import SiteStore
 from rules.assessment import Status
 from rules.record import Reading
-from tests.audit.tui.walker import HUT, walking
+from tests.audit.tui.walker import HUT, NOON, PATIENCE_S, Walk, walking
 
 
 async def test_opens_on_the_walk_with_nothing_in_front_of_it(plant: Path) -> None:
@@ -189,3 +194,24 @@ async def test_a_visit_that_only_readings_name_is_the_one_at_hand(tmp_path: Path
     async with walking(path) as walk:
         assert "Hut   1 " in walk.screen
         assert "1 of 2 read" in walk.screen
+
+
+async def test_the_walk_is_there_before_the_record_and_keys_wait_for_it(
+    hut: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    may_read, look = threading.Event(), Session._look
+    monkeypatch.setattr(Session, "_look", lambda self, store: may_read.wait(PATIENCE_S) and look(self, store))
+    monkeypatch.setattr(type_ahead, "LONGEST_HOLD_S", PATIENCE_S)
+    app = OhmwalkApp(hut, PassingSettings("this laptop", "Ada"), now=lambda: NOON)
+    async with app.run_test(size=(80, 24)) as pilot:
+        walk = Walk(app, pilot, hut)
+        await walk.shows("DB1-02  Lamps")
+        assert "reading …" in walk.screen
+        assert "judging" not in walk.screen
+        app.post_message(Key("m", "m"))
+        await pilot.pause()
+        assert app.survey is None
+        assert not app.type_ahead.is_idle
+        may_read.set()
+        await walk.shows("Before the first live reading")
+        assert app.survey is not None

@@ -146,7 +146,7 @@ def test_single_readings_against_drawn_outcomes(plain: ModuleType, chains: Modul
     if kind == POINT:
         assert bool(of_kind) == (name == "two runs")
     for option in of_kind[:1]:
-        row = rows[int(options.row[0, option])]
+        row = rows[int(drawer.batch.outlook.candidate[0, options.column[0, option]])]
         rng = np.random.default_rng(7)
         after = [entropy_of(drawer.with_single(row, drawer.draw(rng))) for _ in range(DRAWN)]
         before = entropy_of(drawer.case)

@@ -16,7 +16,7 @@ from rules.case import CircuitCase
 from rules.diagnosis.atoms import Atoms, atoms_of
 from rules.diagnosis.block import Block, stacked
 from rules.diagnosis.candidates import AGAIN, SINGLE, Meters, Posed, imagined_rounds, posed
-from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, SMALLER
+from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, CAUSES, LONGER, SMALLER
 from rules.diagnosis.judge import Judged, judge_block
 from rules.diagnosis.outlook import Outlook, outlook_of
 from rules.diagnosis.shape import Floats, shape_of
@@ -30,9 +30,10 @@ def looked_at(case: CircuitCase) -> tuple[Posed, Judged, Block, Atoms, Outlook]:
     assert this is not None
     judged = judge_block(shape_of(this.read.signature), [this.read], case.limits)
     block = stacked(shape_of(this.imagined.signature), [this.imagined], case.limits)
-    atoms = atoms_of(judged, block)
+    atoms = atoms_of(judged, block, negligible=0.0)
     atoms = replace(atoms, smoothed=np.zeros_like(atoms.smoothed))
-    return this, judged, block, atoms, outlook_of(judged, block, atoms, [this])
+    every = np.arange(len(this.rows_of(SINGLE)) + len(this.imagined.names) + 1)
+    return this, judged, block, atoms, outlook_of(judged, block, atoms, [this], every[None])
 
 
 def conditioned(mean: Floats, covariance: Floats, shown: Floats) -> tuple[Floats, Floats]:
@@ -90,9 +91,10 @@ def test_weights_are_the_posterior(draw: Callable[[int, int], tuple[CircuitCase,
     """Of each cause together; a place that is told apart has its share of the run's."""
     for case in draw(4, CIRCUITS):
         _, judged, block, atoms, _ = looked_at(case)
-        for cause in (AS_RECORDED, BAD_CONNECTION, SMALLER, LONGER):
+        for cause in CAUSES:
             ours = [group.cause == cause for group in atoms.groups]
             of_cause = judged.posterior[0, judged.of_cause(cause)].sum()
-            assert_allclose(atoms.shares[0, ours].sum(), of_cause, rtol=1e-4, atol=1e-6)  # two bad places are left out
+            of_cause += judged.of_pair[0] if cause == BAD_CONNECTION else 0.0
+            assert_allclose(atoms.shares[0, ours].sum(), of_cause, rtol=1e-9, atol=1e-12)
         assert_allclose(atoms.shares[0].sum(), 1.0, rtol=1e-9)
         assert len(block.shape.places) == 4 * len(case.runs)
