@@ -49,7 +49,8 @@ def most_bad(total: int, read: int, bad: int, confidence: float) -> int:
     low, high = bad, total - (read - bad)
     while low < high:
         middle = (low + high + 1) // 2
-        if at_most(bad, total, middle, read) > 1 - confidence:
+        probability = at_most(bad, total, middle, read)
+        if probability > 1 - confidence and not math.isclose(probability, 1 - confidence, rel_tol=1e-9):
             low = middle
         else:
             high = middle - 1

@@ -109,7 +109,8 @@ def _shares(
             alone[counted[0]] += way.weight
         elif counted:
             several += way.weight
-    return alone, involved, several
+    # shares that sum to one may pass it in the last digit
+    return {one: min(p, 1.0) for one, p in alone.items()}, {one: min(p, 1.0) for one, p in involved.items()}, several
 
 
 def _kept(ways: Sequence[Way]) -> list[Way]:

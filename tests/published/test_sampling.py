@@ -24,7 +24,8 @@ def test_the_bound_is_the_largest_number_that_the_hypergeometric_distribution_do
 ) -> None:
     """Against ``scipy.stats.hypergeom``, every number in all tried."""
     total, read, bad = sample
-    possible = [k for k in range(bad, total - (read - bad) + 1) if hypergeom.cdf(bad, total, k, read) > 1 - confidence]
+    found = {k: hypergeom.cdf(bad, total, k, read) for k in range(bad, total - (read - bad) + 1)}
+    possible = [k for k, probability in found.items() if probability > (1 - confidence) * (1 + 1e-9)]
     assert most_bad(total, read, bad, confidence) == max(possible, default=bad)
 
 
@@ -49,3 +50,9 @@ def test_without_a_bad_one_it_is_near_three_over_those_read(read: int) -> None:
     share = most_bad(10_000_000, read, 0, 0.95) / 10_000_000
     assert share == pytest.approx(3 / read, rel=0.06)
     assert share < 3 / read
+
+
+def test_a_number_found_with_exactly_the_rest_of_the_confidence_is_ruled_out() -> None:
+    """One of five read and not bad: with four bad in all that has the probability 1/5, which is not above 1 − 0.8."""
+    assert most_bad(5, 1, 0, 0.8) == 3
+    assert most_bad(5, 1, 0, 0.81) == 4

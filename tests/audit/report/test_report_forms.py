@@ -6,7 +6,7 @@ import csv
 import io
 import json
 from collections.abc import Iterator
-from dataclasses import fields, is_dataclass
+from dataclasses import fields, is_dataclass, replace
 from html.parser import HTMLParser
 from typing import Any
 
@@ -202,6 +202,25 @@ def test_the_inspector_sees_where_each_value_comes_from(site: Site, assessment: 
     assert "18 °C (the site's ambient, assumed)" in texts
     assert "22 °C, by a probe" in texts
     assert "24 V (taken from what feeds it)" in texts
+    assert "2026-03 as found, round 1, 2026-03-02, load current 6.02 A at way" in texts
+
+
+def test_the_inspector_sees_categories_ratings_and_what_was_read_with_the_loads_off(
+    site: Site, assessment: Assessment
+) -> None:
+    off = replace(site.readings[0], id="m7", value=0.02, loads_off="yes")
+    recorded = replace(
+        site,
+        sources=(replace(site.sources[0], category="CAT II"), *site.sources[1:]),
+        boards=(replace(site.boards[0], category="CAT III"), *site.boards[1:]),
+        instruments=(replace(site.instruments[0], rated_voltage_v=300.0),),
+        readings=(*site.readings, off),
+    )
+    texts = list(texts_of(content_of(recorded, assessment, "inspector").sections))
+    assert f"{site.sources[0].kind}, CAT II" in texts
+    assert "Pump room, CAT III" in texts
+    assert "CAT III 600 V, rated 300 V" in texts
+    assert "loads off" in texts
     assert "2026-03 as found, round 1, 2026-03-02, load current 6.02 A at way" in texts
 
 
