@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
-from rules.calc.doubt import Weighted, total
+from rules.calc.doubt import Weighted, probability_above, total
 from rules.case import Context
+from rules.limits import Limits
 from rules.meters import worth
 from rules.record import Board, Figure, Reading, Source
 from rules.rounds import Round, judged
@@ -42,11 +43,35 @@ class AtTerminals:
 
 def at_terminals(context: Context, node: int) -> list[AtTerminals]:
     """Everything that was read at one held node on the latest visit, in the order of its boards, then circuits."""
-    found = [*_busbars(context, node), *_circuits(context, node)]
+    return _of_latest_visit(context, [*_busbars(context, node), *_circuits(context, node)])
+
+
+def _of_latest_visit(context: Context, found: list[AtTerminals]) -> list[AtTerminals]:
     if not found:
         return []
     latest = max((one.visit for one in found), key=lambda visit: context.visit_ranks[visit])
     return [one for one in found if one.visit == latest]
+
+
+def surely_below(read: Sequence[AtTerminals], limit_v: float, limits: Limits) -> AtTerminals | None:
+    """The reading that lies most surely below a voltage; ``None`` where none does beyond doubt. A dead one is not a sag."""
+
+    def sure(one: AtTerminals) -> float:
+        return probability_above(limit_v, one.voltage.value, one.voltage.u or 0.0)
+
+    living = [one for one in read if one.voltage.value > limits["readings.no_voltage_share"] * limit_v]
+    if not living:
+        return None
+    worst = max(living, key=lambda one: (sure(one), -one.voltage.value))
+    return worst if sure(worst) >= limits["decision.beyond_doubt"] else None
+
+
+def below_its_lowest(context: Context, node: int) -> AtTerminals | None:
+    """The busbar on which a source was read below the lowest that is recorded of it; ``None`` where none was."""
+    if context.network.gap_lowest[node]:
+        return None
+    read = _of_latest_visit(context, list(_busbars(context, node)))
+    return surely_below(read, float(context.network.held_lowest_v[node]), context.limits)
 
 
 def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:

@@ -11,6 +11,7 @@ from rules.load_window import Bound, lowest_of, source_of, unused
 from rules.margins import margins_of
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
+from rules.terminals import below_its_lowest
 from rules.units import show, show_against
 
 
@@ -71,7 +72,8 @@ def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Findin
             yield load_below_lowest.finding(
                 case,
                 _where(case, point),
-                f"{name} was read at {shown} in round {round_}, below {bound.whose} lowest {limit}",
+                f"{name} was read at {shown} in round {round_}, below {bound.whose} lowest {limit}"
+                f"{_source_words(case)}",
                 numbers={"voltage": volts, "lowest": Figure(lowest, "V")},
                 severity=_severity(bound, read=True, vital=vital),
                 source=source,
@@ -103,6 +105,15 @@ def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Findin
     elif verdict is Verdict.OPEN:
         why = f"not settled: {name} gets {show(volts.value, 'V', volts.u)} against {bound.whose} lowest {show(lowest, 'V')}"
         yield load_below_lowest.gap(case, point.load.point, why)
+
+
+def _source_words(case: CircuitCase) -> str:
+    """That the source itself was read below its lowest, which then is the cause."""
+    nodes = case.context.network.nodes_of.get(case.circuit.id)
+    low = below_its_lowest(case.context, _source(case)) if nodes is not None else None
+    if low is None:
+        return ""
+    return f"; its source has {show(low.voltage.value, 'V', low.voltage.u)} at the {low.place}, below its own lowest (SR01)"
 
 
 def _severity(bound: Bound, *, read: bool, vital: bool) -> Severity:

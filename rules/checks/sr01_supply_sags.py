@@ -7,7 +7,7 @@ from rules.calc.doubt import Weighted, probability_above, total
 from rules.limits import Limits
 from rules.record import Figure, Source
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
-from rules.terminals import AtTerminals, at_terminals
+from rules.terminals import AtTerminals, at_terminals, surely_below
 from rules.units import show
 
 REGULATED = ("rectifier", "power supply", "converter")
@@ -54,7 +54,7 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
         return
     sources, limits = context.network.sources_at(node), context.limits
     lowest = float(context.network.held_lowest_v[node]) if not context.network.gap_lowest[node] else None
-    if lowest is not None and (worst := _below(read, lowest, limits)) is not None:
+    if lowest is not None and (worst := surely_below(read, lowest, limits)) is not None:
         yield _found(case, node, worst, f"below its lowest {show(lowest, 'V')}", Figure(lowest, "V"), Severity.SOON)
         return
     regulated = [one for one in sources if one.kind in REGULATED]
@@ -64,24 +64,11 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
         yield supply_sags.gap(case, "terminals", f"the working voltage of {source.tag} is not recorded")
         return
     working, share = float(context.network.held_v[node]), limits["supply.regulation_share"]
-    if (worst := _below(read, (1 - share) * working, limits)) is not None:
+    if (worst := surely_below(read, (1 - share) * working, limits)) is not None:
         words = f"{show(1 - worst.voltage.value / working, '1', digits=2)} below its working {show(working, 'V')}"
         yield _found(case, node, worst, words, Figure(working, "V"), Severity.WATCH)
     elif (pair := _falls(read, share * working, limits)) is not None:
         yield _fallen(case, node, *pair)
-
-
-def _below(read: Sequence[AtTerminals], limit_v: float, limits: Limits) -> AtTerminals | None:
-    """The reading that lies most surely below a voltage; ``None`` where none does beyond doubt. A dead one is not a sag."""
-
-    def sure(one: AtTerminals) -> float:
-        return probability_above(limit_v, one.voltage.value, one.voltage.u or 0.0)
-
-    living = [one for one in read if one.voltage.value > limits["readings.no_voltage_share"] * limit_v]
-    if not living:
-        return None
-    worst = max(living, key=lambda one: (sure(one), -one.voltage.value))
-    return worst if sure(worst) >= limits["decision.beyond_doubt"] else None
 
 
 def _falls(

@@ -122,7 +122,10 @@ def information(probability: float, size: float, size_u: float, noise: float) ->
     --------
     >>> round(information(0.5, 0.06, 0.005, 0.001), 3), round(information(0.5, 0.06, 0.005, 0.6), 3)
     (1.0, 0.002)
+    >>> abs(round(information(1.0000000000000002, 0.1, 0.01, 0.004), 6))
+    0.0
     """
+    probability = min(probability, 1.0)  # a sum of shares may pass it by rounding
     narrow = max(noise, 1e-6 * abs(size), 1e-12)
     wide = math.hypot(size_u, narrow)
     low, high = min(-REACH * narrow, size - REACH * wide), max(REACH * narrow, size + REACH * wide)
