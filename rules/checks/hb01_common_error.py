@@ -87,7 +87,7 @@ def _why(error: CommonError) -> str:
     parts = [f"{_does(one)} ({probability_words(one.probability)})" for one in _told(error)]
     if error.several >= TOLD:
         parts.append(f"more than one of these ({probability_words(error.several)})")
-    parts.append(f"none ({probability_words(error.none)})")
+    parts.append(f"none of these ({probability_words(error.none)})")
     return (
         f"{error.circuits} circuits share {first.words}; alike, they lose {show(abs(share.value), '1', share.u)} "
         f"{'more' if share.value > 0 else 'less'} than computed: {', '.join(parts)}"

@@ -49,4 +49,7 @@ def structure_return(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             f"{run.name} returns through the structure: {known}; which ways the current takes, whether they stay as they are, and what "
             "other circuits put into them is not known",
             numbers={"resistance of the structure": found} if isinstance(found, Figure) else {},
+            remedy="Pull a return conductor; until then read both ends and the current on each visit, since its ways may change."
+            if isinstance(found, Figure)
+            else None,
         )

@@ -31,7 +31,7 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
     **Finds**: a feeder that loses 1.6 V and a circuit that loses 1.3 V of 48 V: 6.0 % against 5 %.
 
-    **Leaves alone**: a circuit straight from the source that VD01 reports already, which names this as a consequence.
+    **Leaves alone**: a circuit that VD01 reports already for what it loses behind its board, which names this as a consequence.
     """
     if not case.loads:
         return
@@ -79,9 +79,6 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
 
 def _said_already(worst: LoadPoint, case: CircuitCase) -> bool:
-    """Whether the circuit's own drop is all of it and above its own limit, which VD01 says."""
-    nominal = case.nominal_v or 0.0
-    if worst.total_drop_v > worst.drop_v:
-        return False
-    own = case.allowed_drop_percent / 100 * nominal
-    return against_limit(worst.drop_v, own, worst.drop_u, case.limits) is Verdict.FAILS
+    """Whether the drop behind the board is above the circuit's own limit, so that VD01 says it."""
+    own = case.allowed_drop_percent / 100 * (case.nominal_v or 0.0)
+    return not worst.gap and against_limit(worst.drop_v, own, worst.drop_u, case.limits) is Verdict.FAILS
