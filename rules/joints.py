@@ -31,8 +31,8 @@ def heat_at(joint: Place, current_a: float) -> Figure:
     Heat in a bad connection at a current, its doubt from the bounds of the resistance.
 
     >>> heat = heat_at(Place("bad connection", "run 2", 0.9, 0.151, 0.155, 0.159), 12.0)
-    >>> round(heat.value, 2), round(heat.u, 3)
-    (22.32, 0.294)
+    >>> round(heat.value, 2), heat.unit, round(heat.u or 0.0, 4)
+    (22.32, 'W', 0.2939)
     """
     low, best, high = joint.low_ohm or 0.0, joint.best_ohm or 0.0, joint.high_ohm or 0.0
     return Figure(best * current_a**2, "W", (high - low) / (2 * NORMAL_95) * current_a**2)
