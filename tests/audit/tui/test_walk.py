@@ -32,7 +32,7 @@ async def test_opens_on_the_walk_with_nothing_in_front_of_it(plant: Path) -> Non
         assert f"{read} of {len(walk.index.circuits)} read   {act} act" in lines[0]
         assert lines[2:4] == [" power room", " ●   MDB, 48 V from RECT-1 + BATT-A"]
         assert "▸ F1" in lines[4]
-        assert "0.9 of 3 %" in lines[4]
+        assert "0.9 of 2.1 %" in lines[4]
         assert "✓ sound" in lines[4]
         assert any("! act" in line for line in lines)
 
