@@ -7,7 +7,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from rules.calc.doubt import Weighted, probability_above, total
-from rules.case import Context
+from rules.context import Context
 from rules.limits import Limits
 from rules.meters import worth
 from rules.record import Board, Figure, Reading, Source
