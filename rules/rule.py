@@ -90,8 +90,9 @@ class Rule:
         """
         A finding of this rule; its ``id`` is built from rule, place and ``where``.
 
-        ``as_circuit`` is for rules about the site that report on a circuit; ``without`` are groups of its ``limits`` that
-        had no part in this finding. Values that the site's profile changes are named beside the source.
+        ``as_circuit`` is for rules about the site that report on a circuit; ``without`` are groups of its ``limits``, or
+        keys of them (``drop.allowed_percent``), that had no part in this finding. Values that the site's profile changes
+        are named beside the source.
         """
         circuit = case.tag if isinstance(case, CircuitCase) else as_circuit
         board = case.tag if isinstance(case, BoardCase) else None
@@ -128,8 +129,8 @@ class Rule:
         changed = [
             str(stated)
             for name in self.limits
-            if name not in without
-            for stated in limits.groups[name].by_source()
+            if (keys := limits.groups[name].deciding(without))
+            for stated in limits.groups[name].by_source(keys)
             if stated.origin != ROOT
         ]
         return list(dict.fromkeys(changed))
