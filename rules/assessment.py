@@ -270,6 +270,8 @@ class LoadMargin:
     """The same with everything as recorded: without a fault."""
     source_lowest: Figure | None = None
     """At the source's terminals, at its lowest."""
+    source_working: Figure | None = None
+    """At the source's terminals, at its working voltage: the source of ``design`` and ``dip``."""
     lowest: Figure | None = None
     """The load's own."""
     margin: Figure | None = None
@@ -278,6 +280,12 @@ class LoadMargin:
     """From the source's highest up to the load's own."""
     dip: Figure | None = None
     """At the load's peak current, from the design voltage."""
+    peak: Figure | None = None
+    """The load's peak current; ``None`` where none is recorded."""
+    dip_worst: Figure | None = None
+    """At its peak with the source at its lowest, hot conductors, everything as recorded."""
+    dip_margin: Figure | None = None
+    """From ``dip_worst`` down to ``lowest``."""
 
 
 @dataclass(frozen=True, slots=True)

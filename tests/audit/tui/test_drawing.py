@@ -328,7 +328,36 @@ def test_a_load_gets_with_and_without_the_fault_what_the_lowest_source_leaves() 
     said = "fan, source at its lowest 40.5 V: 38.1 ± 0.2 V, 2.4 ± 0.2 V lost; without the fault 39.70 ± 0.10 V"
     assert said in " ".join(" ".join(texts(margin_lines(faulty, 80))).split())
     sound = replace(faulty, causes=(Place("as recorded", "", 0.97),))
-    assert len(margin_lines(sound, 80)) == 2
+    assert texts(margin_lines(sound, 80))[2:] == ["   at worst: the source at its lowest, 40.5 V, hot conductors"]
+
+
+def test_a_load_with_a_peak_has_its_voltage_and_margin_at_the_peak_in_whole_numbers() -> None:
+    """85.0 V − 93.5 V = −8.5 V at the peak, though 98.424 V − 93.5 V = 4.924 V are left without it."""
+    coil = LoadMargin(
+        "closing coil Q2",
+        "kiosk",
+        design=Figure(117.41, "V"),
+        worst=Figure(98.424, "V", 0.015),
+        source_lowest=Figure(99.0, "V"),
+        source_working=Figure(118.0, "V"),
+        lowest=Figure(93.5, "V"),
+        margin=Figure(4.924, "V", 0.015),
+        dip=Figure(104.0, "V"),
+        peak=Figure(10.0, "A"),
+        dip_worst=Figure(85.0, "V", 0.4),
+        dip_margin=Figure(-8.5, "V", 0.4),
+    )
+    result = replace(survey_of(HUT).results["c1"], margins=(coil,), causes=())
+    lines = margin_lines(result, 80)
+    assert [" ".join(text.split()) for text in texts(lines)] == [
+        "at design at worst its lowest margin",
+        "closing coil Q2, … 117.4 V 98.424 ± 0.015 V 93.5 V 4.924 ± 0.015 V",
+        "at its peak of 10 A 104 V 85.0 ± 0.4 V 93.5 V -8.5 ± 0.4 V",
+        "at design: the source at 118 V; at worst: the source at its lowest, 99 V,",
+        "hot conductors",
+    ]
+    assert all(len(text) <= 80 for text in texts(lines))
+    assert lines[2][-1].role == "act"
 
 
 def test_the_doubt_budget_is_bars_with_numbers_and_who_states_them() -> None:
