@@ -194,7 +194,7 @@ class Place(NamedTuple):
 
 @dataclass(frozen=True, slots=True)
 class JointHeat:
-    """Heat in a bad connection that is suspected at one place; what is not known is ``None``."""
+    """Heat in a bad connection or a semiconductor suspected at one place; what is not known is ``None``."""
 
     where: str
     """As in ``Place``."""
@@ -206,6 +206,8 @@ class JointHeat:
     """At design and the voltage that makes it largest. [A]"""
     design: Figure | None
     """Heat at that current. [W]"""
+    cause: str = "bad connection"
+    """As in ``Place``: a bad connection grows with the square of the current, a semiconductor with the current."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -306,7 +308,7 @@ class CircuitResult:
     """Largest computed drop from the feeding board to a load at design current. [V]"""
     causes: tuple[Place, ...] = ()
     joints: tuple[JointHeat, ...] = ()
-    """Heat where a connection may be bad, each place once."""
+    """Heat where a connection may be bad or a semiconductor may be, each place once for each."""
     points: tuple[PointVoltage, ...] = ()
     margins: tuple[LoadMargin, ...] = ()
     """One for each load, in the order of their rows."""
@@ -315,6 +317,10 @@ class CircuitResult:
     next_reading: NextReading | None = None
     findings: tuple[Finding, ...] = ()
     not_judged: tuple[NotJudged, ...] = ()
+
+    def heat_of(self, place: Place) -> JointHeat | None:
+        """Heat in what a row of causes supposes; ``None`` where none follows."""
+        return next((heat for heat in self.joints if (heat.cause, heat.where) == (place.cause, place.where)), None)
 
 
 @dataclass(frozen=True, slots=True)

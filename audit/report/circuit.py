@@ -61,7 +61,7 @@ def _verdict(result: CircuitResult) -> tuple[tuple[str, str], ...]:
         rows.append(("Judged on", f"visit {result.visit}"))
     for place in result.causes:
         rows.append(_cause(place))
-        heat = next((joint for joint in result.joints if joint.where == place.where), None)
+        heat = result.heat_of(place)
         rows += [
             ("heat", heat_words(heat) if heat is not None else ""),
             ("for", "; ".join(place.speaks_for)),

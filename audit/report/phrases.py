@@ -194,9 +194,9 @@ def peak_words(margin: LoadMargin) -> str:
     Which state of a load the peak is.
 
     >>> peak_words(LoadMargin("coil", "p1", peak=Figure(10.0, "A")))
-    'at its peak of 10 A'
+    'at peak, 10 A'
     """
-    return "" if margin.peak is None else f"at its peak of {figure_words(margin.peak)}"
+    return "" if margin.peak is None else f"at peak, {figure_words(margin.peak)}"
 
 
 def source_words(margins: tuple[LoadMargin, ...]) -> str:
