@@ -130,6 +130,8 @@ class Doubt:
     """[V]"""
     group: str = ""
     """Group of the limits profile that states it; empty where it is a meter's own figure."""
+    by_instruments: bool = False
+    """Beside that group the record of instruments has part in it: one meter is recorded and another is not."""
 
 
 @dataclass(frozen=True, slots=True)

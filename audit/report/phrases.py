@@ -255,6 +255,7 @@ def doubt_rows(drop: Drop) -> tuple[DoubtRow, ...]:
         words = f"{100 * share:.0f} %" if share >= LEAST_SHARE else f"< {100 * LEAST_SHARE:.0f} %"
         bar = drop_bar(share, None, None, 1.0, f"{doubt.name}: {words}")
         stated = f"profile, {doubt.group}" if doubt.group else "record of instruments"
+        stated += " and record of instruments" if doubt.group and doubt.by_instruments else ""
         rows.append(DoubtRow(doubt.name, show(doubt.u_v, "V", digits=2), share, words, bar, stated))
     return tuple(rows)
 
