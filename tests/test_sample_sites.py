@@ -26,6 +26,7 @@ from rules.record import TABLES, Site
 from sample_sites.catalogue import EXPECTED, SAMPLE_SITES, SampleSite, UnknownSampleSite, sample_site
 
 every_site = pytest.mark.parametrize("sample", SAMPLE_SITES, ids=lambda sample: sample.name)
+Told = tuple[str, str | None, str, str, tuple[str, ...]]
 INVENTED = "Invented building for demonstration; no real place, person or product"
 
 
@@ -45,9 +46,12 @@ def stated(sample: SampleSite) -> dict[str, Any]:
     return tomllib.loads(sample.folder.joinpath(EXPECTED).read_text(encoding="utf-8"))
 
 
-def key(row: dict[str, Any]) -> tuple[str, str | None, str, str]:
-    """What tells a stated finding: its rule, the circuit, board or source (none for the site), where, and how soon."""
-    return row["rule"], place(row), row["where"], row["severity"]
+def key(row: dict[str, Any]) -> Told:
+    """
+    What tells a stated finding: its rule, the circuit, board or source (none for the site), where, how soon, and the rules
+    of the findings that went under it.
+    """
+    return row["rule"], place(row), row["where"], row["severity"], tuple(sorted(row.get("holds", ())))
 
 
 def place(row: dict[str, Any]) -> str | None:
@@ -55,9 +59,12 @@ def place(row: dict[str, Any]) -> str | None:
     return row.get("circuit") or row.get("board")
 
 
-def found(assessment: Assessment) -> Counter[tuple[str, str | None, str, str]]:
+def found(assessment: Assessment) -> Counter[Told]:
     """The findings of a check, as they are stated."""
-    return Counter((f.rule, f.circuit or f.board, f.where, str(f.severity)) for f in assessment.findings)
+    return Counter(
+        (f.rule, f.circuit or f.board, f.where, str(f.severity), tuple(sorted(held.rule for held in f.holds)))
+        for f in assessment.findings
+    )
 
 
 @every_site
