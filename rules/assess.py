@@ -13,10 +13,11 @@ from dataclasses import replace
 from importlib.metadata import version
 
 from rules.assessment import Assessment, CircuitResult, Finding, LoadMargin, NotJudged, PointVoltage, Severity, Status
-from rules.case import CircuitCase, Context, case_of, measured_of, posed_by, ties_by, unused_readings
+from rules.case import CircuitCase, case_of
 from rules.cautions import cautions_of
 from rules.checks.rc01_record_incomplete import gaps_of
 from rules.consistency import problems
+from rules.context import Context
 from rules.diagnosis.learning import diagnose_told, learn
 from rules.diagnosis.next_reading import next_readings
 from rules.explain import with_facts
@@ -26,6 +27,7 @@ from rules.index import Index
 from rules.joints import heats_of
 from rules.limits import Limits
 from rules.margins import margins_of
+from rules.measured import measured_of, posed_by, ties_by, unused_readings
 from rules.network import network_of
 from rules.record import Circuit, Figure, Reading, Site
 from rules.rounds import visit_ranks

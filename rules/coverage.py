@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from rules.case import Context, Measured
+from rules.context import Context, Measured
 from rules.diagnosis.hypotheses import BAD_CONNECTION
 from rules.record import Run
 from rules.rounds import Round, Tree

@@ -12,7 +12,7 @@ from rules.network import StateName
 from rules.runs import Carrying, RunFigures, record_variance
 
 if TYPE_CHECKING:
-    from rules.case import Context
+    from rules.context import Context
 
 
 def drop_u(context: Context, branches: Sequence[int], state: StateName) -> float:

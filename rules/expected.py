@@ -10,9 +10,10 @@ from dataclasses import replace
 
 from rules.calc.doubt import total
 from rules.case import CircuitCase
+from rules.compared import compare
 from rules.errors import MissingData
 from rules.record import Figure
-from rules.rounds import Round, compare
+from rules.rounds import Round
 
 
 def expected_voltages(case: CircuitCase, round_name: str) -> dict[str, Figure]:

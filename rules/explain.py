@@ -10,9 +10,10 @@ from collections.abc import Sequence
 from dataclasses import replace
 
 from rules.assessment import Assessment, CircuitResult, Place
-from rules.case import Context, measured_of, posed_by, ties_by
+from rules.context import Context
 from rules.diagnosis.explanation import explained
 from rules.diagnosis.problem import Problem
+from rules.measured import measured_of, posed_by, ties_by
 from rules.record import Circuit, Reading
 
 

@@ -12,7 +12,8 @@ from typing import TypeAlias
 from rules.calc.conductor import REFERENCE_AREA_MM2
 from rules.calc.doubt import Weighted, total
 from rules.calc.joint_heat import joint_heat_w
-from rules.case import CircuitCase, Context, SimilarJoint
+from rules.case import CircuitCase
+from rules.context import Context, SimilarJoint
 from rules.decision import Verdict, against_limit
 from rules.diagnosis.hypotheses import BAD_CONNECTION
 from rules.errors import MissingData

@@ -20,7 +20,8 @@ from pathlib import PurePath
 from typing import Any, Literal, TypeAlias
 
 from rules.assessment import PROGRAM_FAULT, Citation, Finding, NotJudged, RuleChange, Severity
-from rules.case import CircuitCase, Context
+from rules.case import CircuitCase
+from rules.context import Context
 from rules.errors import RulesError
 from rules.limits import ROOT, Limits
 from rules.record import Board, Figure, Source

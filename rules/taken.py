@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 
-from rules.case import CircuitCase, Context
+from rules.case import CircuitCase
+from rules.context import Context
 from rules.record import Board, Circuit, Reading, Source
 from rules.rounds import judged, visit_of
 from rules.rule import BoardCase

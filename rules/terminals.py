@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from rules.calc.doubt import Weighted, probability_above, total
-from rules.case import Context
+from rules.context import Context
 from rules.limits import Limits
 from rules.meters import worth
 from rules.record import Board, Figure, Reading, Source

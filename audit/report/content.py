@@ -12,7 +12,7 @@ from collections.abc import Callable
 from audit.limit_words import limit_words
 from audit.report.blocks import Block, Cell, Column, Content, Paragraph, Section, Table, cleaned
 from audit.report.circuit import circuit_section
-from audit.report.records import board_title, boards_table, instruments_table, readings_table, sources_table
+from audit.report.records import board_title, readings_table
 from audit.report.sections import (
     BAR_LEGEND,
     LINE_LEGEND,
@@ -28,6 +28,7 @@ from audit.report.sections import (
     sign_off,
     walk,
 )
+from audit.report.site_records import boards_table, instruments_table, sources_table
 from audit.report.supervisor import one_page
 from rules.assessment import Assessment
 from rules.index import Index

@@ -24,7 +24,8 @@ from audit.report.phrases import (
     status_words,
     time_words,
 )
-from audit.report.records import NOT_RECORDED, board_title, location_of, visits_words
+from audit.report.records import NOT_RECORDED, board_title, location_of
+from audit.report.site_records import visits_words
 from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, Severity
 from rules.index import Index
 from rules.record import Decision, Feed, Site

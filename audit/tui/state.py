@@ -12,7 +12,7 @@ from rules.index import Index
 from rules.record import Site
 
 if TYPE_CHECKING:  # it brings numpy, and the first screen does not wait for that
-    from rules.case import Context
+    from rules.context import Context
 
 
 @dataclass(frozen=True, slots=True)

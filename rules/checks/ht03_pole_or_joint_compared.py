@@ -6,7 +6,8 @@ from dataclasses import dataclass
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.device import device_resistance_ohm
-from rules.case import CircuitCase, SimilarJoint
+from rules.case import CircuitCase
+from rules.context import SimilarJoint
 from rules.decision import Verdict, against_limit
 from rules.heat import DEVICE, Hot, Joint, claims, healthy_ohm, hot_joints, joints_read, kind_of
 from rules.record import Figure

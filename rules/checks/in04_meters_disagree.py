@@ -6,7 +6,8 @@ from itertools import combinations
 from rules.assessment import Citation, Finding, Severity
 from rules.calc.agreement import en_ratio
 from rules.calc.doubt import Weighted, total
-from rules.case import CircuitCase, Context
+from rules.case import CircuitCase
+from rules.context import Context
 from rules.meters import worth
 from rules.record import Figure, Reading
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule

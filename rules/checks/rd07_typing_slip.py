@@ -6,13 +6,13 @@ from collections.abc import Iterator, Sequence
 from rules.assessment import Citation, Drop, Finding, Place, Severity
 from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
+from rules.compared import compare
 from rules.diagnosis.conductor_causes import FEET_IN_A_METRE
 from rules.diagnosis.doubtful import RATIOS
 from rules.diagnosis.hypotheses import AS_RECORDED, DOUBTFUL
 from rules.diagnosis.words import RECORD_WORDS
 from rules.errors import MissingData
 from rules.record import Figure, Run
-from rules.rounds import compare
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show
 from rules.verdict import beyond_common, claimed, doubtful, probability_words

@@ -4,8 +4,8 @@ from collections.abc import Iterator, Mapping
 
 from rules.assessment import Citation, Finding, Severity
 from rules.calc.doubt import Weighted
-from rules.case import Context
 from rules.closure import Terms, added_up
+from rules.context import Context
 from rules.errors import MissingData
 from rules.meters import worth
 from rules.record import Board, Circuit

@@ -14,11 +14,13 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from rules.calc.doubt import Shown, Weighted
-from rules.case import CircuitCase, Measured, posed_by
+from rules.case import CircuitCase
 from rules.columns import METER_QUANTITY
+from rules.context import Measured
 from rules.diagnosis.problem import ENDS, LEGS, Observation, Problem
 from rules.diagnosis.rows import DEVICE
 from rules.errors import MissingData
+from rules.measured import posed_by
 from rules.meters import worth
 from rules.record import Reading, Site
 from rules.rounds import Round

@@ -29,10 +29,12 @@ from typing import Any
 from audit.intake.folder import read_folder
 from rules import limits
 from rules.assess import assess_circuit, prepare
-from rules.case import CircuitCase, Context, case_of, posed_by
+from rules.case import CircuitCase, case_of
+from rules.context import Context
 from rules.diagnosis.diagnose import diagnose
 from rules.diagnosis.problem import Problem
 from rules.limits import Limits
+from rules.measured import posed_by
 
 TESTS = Path(__file__).parent.parent
 ONE_AT_MOST = 0.1

@@ -21,11 +21,11 @@ import scipy.stats
 from audit.intake.folder import site_of
 from rules import limits
 from rules.assess import prepare
-from rules.case import posed_by
 from rules.diagnosis.diagnose import diagnose
 from rules.diagnosis.judge import judge_block
 from rules.diagnosis.problem import Problem
 from rules.diagnosis.shape import shape_of
+from rules.measured import posed_by
 
 Volts: TypeAlias = tuple[tuple[float, float], ...]
 

@@ -9,7 +9,7 @@ import pytest
 from audit.intake.folder import site_of
 from rules import limits
 from rules.assess import prepare
-from rules.case import Context
+from rules.context import Context
 from rules.doubts import drop_u
 from rules.loads import Drawn
 from rules.one_run import OneRun, answer

@@ -17,9 +17,10 @@ from audit.intake.folder import site_of
 from rules import limits
 from rules.assess import assess, assess_circuit, prepare
 from rules.assessment import Finding, Severity
-from rules.case import Context, posed_by
+from rules.context import Context
 from rules.diagnosis.habits import Habit
 from rules.diagnosis.hypotheses import AS_RECORDED
+from rules.measured import posed_by
 from rules.record import Site
 
 CIRCUITS = 40

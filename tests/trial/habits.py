@@ -32,11 +32,12 @@ import numpy as np
 from audit.intake.folder import site_of
 from rules import limits
 from rules.assess import prepare
-from rules.case import Context, posed_by
+from rules.context import Context
 from rules.diagnosis.common_error import CommonError
 from rules.diagnosis.diagnose import Diagnosis, diagnose
 from rules.diagnosis.habits import Habit
 from rules.diagnosis.hypotheses import AS_RECORDED
+from rules.measured import posed_by
 
 FLAGGED = 0.9
 """Probability that something is wrong from which a circuit counts as flagged."""

@@ -7,7 +7,8 @@ from dataclasses import replace
 from audit.tui.drawing.page import CircuitView
 from audit.tui.entry.typing import Typing
 from rules.assess import assess_circuit
-from rules.case import Context, case_of
+from rules.case import case_of
+from rules.context import Context
 from rules.expected import expected_voltages
 from rules.explain import causes_with_facts
 

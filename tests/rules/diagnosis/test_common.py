@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from rules.case import CircuitCase, ties_by
+from rules.case import CircuitCase
 from rules.diagnosis.block import Block, Model, model_of, stacked
 from rules.diagnosis.carry import with_common
 from rules.diagnosis.extra import line_of
@@ -18,6 +18,7 @@ from rules.diagnosis.habits import Habit, Tie
 from rules.diagnosis.problem import Problem
 from rules.diagnosis.shape import shape_of
 from rules.limits import Limits
+from rules.measured import ties_by
 
 Floats = NDArray[np.float64]
 Draw = Callable[[int, int], tuple[CircuitCase, ...]]

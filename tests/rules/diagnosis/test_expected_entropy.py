@@ -15,7 +15,8 @@ import numpy as np
 import pytest
 
 from rules.calc.doubt import Weighted
-from rules.case import CircuitCase, Measured, posed_by
+from rules.case import CircuitCase
+from rules.context import Measured
 from rules.diagnosis.candidates import AGAIN, JOINT, LEG, POINT, SINGLE, Meters, imagined_rounds, posed
 from rules.diagnosis.choice import Batch, looked_at
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, SMALLER
@@ -23,6 +24,7 @@ from rules.diagnosis.information import entropy
 from rules.diagnosis.judge import judge_block
 from rules.diagnosis.options import AS_IT_IS, LESS, ROUND
 from rules.diagnosis.shape import Floats, shape_of
+from rules.measured import posed_by
 from rules.record import Site
 from rules.rounds import Round
 

@@ -14,7 +14,6 @@ from numpy.testing import assert_allclose
 from rules import limits
 from rules.assess import assess, prepare
 from rules.assessment import Place
-from rules.case import posed_by
 from rules.diagnosis.explanation import Pictures, explained, groups_of, pictured, spoken
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, LONGER, SEMICONDUCTOR
 from rules.diagnosis.judge import judge_block
@@ -22,6 +21,7 @@ from rules.diagnosis.pairs import TWO_PLACES
 from rules.diagnosis.problem import Problem
 from rules.diagnosis.shape import shape_of
 from rules.explain import causes_with_facts
+from rules.measured import posed_by
 from rules.record import Site
 
 LENGTHS = (9.0, 7.0, 8.0)

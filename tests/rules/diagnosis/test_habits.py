@@ -7,8 +7,8 @@ import pytest
 from audit.intake.folder import site_of
 from rules import limits
 from rules.assess import prepare
-from rules.case import posed_by, ties_by
 from rules.diagnosis.habits import Habit, Tie, expected, order, shared
+from rules.measured import posed_by, ties_by
 from rules.record import Site
 
 RUNS: list[dict[str, str]] = [

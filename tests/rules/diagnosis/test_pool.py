@@ -11,7 +11,7 @@ import pytest
 from numpy.typing import NDArray
 from scipy import integrate, optimize
 
-from rules.case import CircuitCase, ties_by
+from rules.case import CircuitCase
 from rules.diagnosis.block import model_of, stacked
 from rules.diagnosis.diagnose import diagnose
 from rules.diagnosis.gaussian import log_density
@@ -21,6 +21,7 @@ from rules.diagnosis.pool import Member, Pool, pooled
 from rules.diagnosis.pool_fit import fitted, scanned
 from rules.diagnosis.problem import Problem
 from rules.diagnosis.shape import shape_of
+from rules.measured import ties_by
 
 Floats = NDArray[np.float64]
 Draw = Callable[[int, int], tuple[CircuitCase, ...]]

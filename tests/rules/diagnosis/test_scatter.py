@@ -12,11 +12,11 @@ import scipy.stats
 
 from rules import limits
 from rules.assess import prepare
-from rules.case import posed_by
 from rules.diagnosis.diagnose import diagnose
 from rules.diagnosis.hypotheses import AS_RECORDED
 from rules.diagnosis.problem import Problem
 from rules.diagnosis.scatter import QUANTILES, RATIOS, WEIGHTS, scales
+from rules.measured import posed_by
 
 LENGTHS = (9.0, 7.0)
 
