@@ -19,7 +19,8 @@ def folded(findings: Sequence[Finding]) -> list[Finding]:
 
     A finding goes under the first of its ``under`` that is among them: as a consequence, with its numbers, its caution and its
     source; the severity of the whole is the gravest. What claims a cause goes under nothing that does not claim the same, and
-    nothing under what the profile made less grave. Under a finding of its own rule it is a part of what that one says already.
+    nothing under what the profile made less grave. Under a finding of its own rule it is a part of what that one says
+    already, unless it says more (``as_consequence``).
     Where no cause is among them, it stands on its own.
     """
     if not any(finding.under for finding in findings):
@@ -71,7 +72,7 @@ def _uppermost(number: int, above: Mapping[int, int]) -> int:
 
 def _whole(cause: Finding, under: Sequence[Finding]) -> Finding:
     """A cause with all that follows from it."""
-    others = [finding for finding in under if finding.rule != cause.rule]
+    others = [finding for finding in under if finding.rule != cause.rule or finding.as_consequence]
     numbers, caution, source = dict(cause.numbers), cause.caution, cause.source
     for finding in others:
         numbers |= _numbers(finding, numbers, _is_away(finding, cause))

@@ -45,7 +45,7 @@ def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     **Leaves alone**: the same load of 500 W: 40.7 V. A voltage within its doubt of the limit is not judged, nor a load
     that cannot be supplied at all (NW01).
     """
-    bounds = [(point, lowest_of(case, point.load)) for point in case.loads]
+    bounds = [(point, lowest_of(point.load, case.nominal_v, case.limits)) for point in case.loads]
     unknown = [point.load.tag for point, bound in bounds if bound is None]
     if unknown:
         more = f" and of {len(unknown) - 1} more" if len(unknown) > 1 else ""
@@ -76,7 +76,7 @@ def _together(alike: list[tuple[str, Finding]]) -> Finding:
 
 def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Finding | NotJudged]:
     name, lowest = point.load.tag, bound.volts
-    source, without_groups = source_of(case, bound), unused(bound)
+    source, without_groups = source_of(case.limits, bound), unused(bound)
     without = {
         (this.name, dead) for this in case.rounds for dead, _ in dead_points(this, case.nominal_v or 0.0, case.limits)
     }
