@@ -16,6 +16,7 @@ import pytest
 
 from audit.intake.folder import read_folder
 from audit.opening import judge_site
+from audit.report.sections import evidence_words
 from rules import limits
 from rules.assess import prepare
 from rules.assessment import Assessment, Status
@@ -23,6 +24,7 @@ from rules.consistency import problems
 from rules.index import Index
 from rules.meters import instrument_row
 from rules.record import TABLES, Site
+from rules.verdict import probability_words
 from sample_sites.catalogue import EXPECTED, SAMPLE_SITES, SampleSite, UnknownSampleSite, sample_site
 
 every_site = pytest.mark.parametrize("sample", SAMPLE_SITES, ids=lambda sample: sample.name)
@@ -91,6 +93,19 @@ def test_every_seeded_fault_is_found_and_every_finding_is_of_a_seeded_fault(samp
     findings = [*content["finding"], *content.get("earlier", [])]
     assert {(row["rule"], place(row), row.get("visit", "")) for row in findings} == seeded
     assert all(bool(fault.get("found_by")) != bool(fault.get("not_found")) for fault in content["seeded"])
+
+
+@every_site
+def test_a_finding_and_its_line_of_claims_state_one_probability(sample: SampleSite) -> None:
+    assessment = assessment_of(sample)
+    words = evidence_words(assessment)
+    stated = [
+        (f, f.numbers["probability"].value) for f in assessment.findings if f.cause and "probability" in f.numbers
+    ]
+    assert stated
+    for finding, probability in stated:
+        assert words(finding) == f"{finding.cause}, probability {probability_words(probability)}"
+        assert probability_words(probability) in finding.why
 
 
 @every_site

@@ -167,7 +167,7 @@ def walk(index: Index, assessment: Assessment) -> Section:
 
 
 def evidence_words(assessment: Assessment) -> Callable[[Finding], str]:
-    """How sure a finding's cause is, apart from how soon it asks for action; empty where not judged."""
+    """How sure a finding's cause is, apart from how soon it asks for action: as the finding says itself, else as the causes do."""
     causes: dict[tuple[str, str, str], float] = defaultdict(float)
     for result in assessment.circuits:
         for place in result.causes:
@@ -177,8 +177,10 @@ def evidence_words(assessment: Assessment) -> Callable[[Finding], str]:
     def words(finding: Finding) -> str:
         if finding.cause is None or finding.circuit is None:
             return ""
+        stated = finding.numbers.get("probability")
         of_cause = causes.get((finding.circuit, finding.cause, ""))
-        probability = causes.get((finding.circuit, finding.cause, finding.where), of_cause)
+        of_place = causes.get((finding.circuit, finding.cause, finding.where), of_cause)
+        probability = of_place if stated is None else stated.value
         return (
             finding.cause if probability is None else f"{finding.cause}, probability {probability_words(probability)}"
         )
