@@ -15,6 +15,9 @@ from rules.meters import worth
 from rules.record import Board, Figure, Reading, Source
 from rules.rounds import Round, judged
 
+REGULATED = ("rectifier", "power supply", "converter")
+"""Kinds of source that hold their working voltage; a battery's falls while it discharges."""
+
 
 @dataclass(frozen=True, slots=True)
 class AtTerminals:
@@ -80,17 +83,17 @@ def lacking_v(context: Context, node: int, circuit_id: str) -> float:
     """
     What a source lacked at its terminals where it was read least, on a busbar or at the ``bus`` of one circuit. [V]
 
-    Of its lowest where it had less than that, else of its working voltage or the most that was read; 0 where nothing was.
+    Of its working voltage where it is regulated, or of the most that was read; of a battery, which discharges, of its lowest.
+    0 where nothing was read.
     """
     network = context.network
     own = _of_circuit(context, circuit_id) if network.nodes_of[circuit_id]["bus"] == node else ()
     volts = [one.voltage.value for one in _of_latest_visit(context, [*_busbars(context, node), *own])]
     if not volts:
         return 0.0
-    least, lowest = min(volts), float(network.held_lowest_v[node])
-    if not network.gap_lowest[node] and least < lowest:
-        return lowest - least
-    return float(np.nanmax([network.held_v[node], *volts])) - least
+    if any(source.kind in REGULATED for source in network.sources_at(node)):
+        return float(np.nanmax([network.held_v[node], *volts])) - min(volts)
+    return 0.0 if network.gap_lowest[node] else max(float(network.held_lowest_v[node]) - min(volts), 0.0)
 
 
 def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:

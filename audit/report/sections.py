@@ -21,6 +21,7 @@ from audit.report.phrases import (
     number_words,
     place_words,
     share_words,
+    some_of,
     status_words,
     time_words,
 )
@@ -212,8 +213,8 @@ def finding_cards(site: Site, assessment: Assessment, findings: Iterable[Finding
             ("Place", finding_place(finding)),
             ("Why", finding.why),
             ("Claims", evidence(finding)),
-            ("Numbers", "; ".join(number_words(finding)) if full else ""),
-            ("If left", "; ".join(finding.consequences)),
+            ("Numbers", some_of(number_words(finding)) if full else ""),
+            ("If left", some_of(finding.consequences)),
             ("Do", finding.remedy),
             ("Caution", finding.caution),
             ("Source", finding.source if full else ""),

@@ -146,7 +146,7 @@ def _source_words(case: CircuitCase) -> str:
 
 
 def _by_its_source(case: CircuitCase, point: LoadPoint, volts: Figure, lowest: float) -> Iterator[str]:
-    """A source without which fault the load would have had enough, whatever the path loses."""
+    """A source by whose fault it is: the load would have enough if it had what it should, whatever the path loses."""
     network, nodes = case.context.network, case.context.network.nodes_of.get(case.circuit.id)
     if nodes is None or _is_vital(point):
         return

@@ -7,10 +7,9 @@ from rules.calc.doubt import Weighted, probability_above, total
 from rules.limits import Limits
 from rules.record import Figure, Source
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
-from rules.terminals import AtTerminals, at_terminals, surely_below
+from rules.terminals import REGULATED, AtTerminals, at_terminals, surely_below
 from rules.units import show
 
-REGULATED = ("rectifier", "power supply", "converter")
 STAY = (
     "drops of its circuits are judged by their own currents and stay; what arrives at their ends is the source's doing"
 )
