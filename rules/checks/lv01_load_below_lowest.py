@@ -15,6 +15,7 @@ from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, named, rule
 from rules.terminals import below_its_lowest, lacking_v
 from rules.units import show, show_against
 
+SOURCE_FIRST = "See to its source first; then read the load again, and find what the path loses if it is still too low."
 MOST_NAMED = 3
 """Further loads that a finding by the profile names."""
 
@@ -96,16 +97,18 @@ def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Findin
             shown, limit = show_against(volts.value, lowest, "V")
             vital = _is_vital(point)
             why = f"{name} was read at {shown} in round {round_}, below {bound.whose} lowest {limit}"
+            of_source, by_source = _source_words(case), tuple(_by_its_source(case, point, volts, lowest))
             yield load_below_lowest.finding(
                 case,
                 _where(case, point),
-                f"{why}{_source_words(case)}",
+                f"{why}{of_source}",
                 numbers={"voltage": volts, "lowest": Figure(lowest, "V")},
                 severity=_severity(bound, read=True, vital=vital),
                 source=source,
                 without=without_groups,
                 consequences=tuple(_dip(case, point)),
-                under=tuple(_by_its_source(case, point, volts, lowest)),
+                remedy=SOURCE_FIRST if of_source and by_source else None,
+                under=by_source,
                 as_consequence=why,
             )
             return

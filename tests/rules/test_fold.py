@@ -5,9 +5,10 @@ from __future__ import annotations
 from dataclasses import replace
 
 from audit.intake.folder import site_of
+from audit.opening import only
 from rules import limits
 from rules.assess import assess
-from rules.assessment import Finding, Severity
+from rules.assessment import Finding, Severity, Status
 from rules.fold import folded, said
 from rules.record import Figure, Site
 from rules.rule import catalogue
@@ -127,6 +128,41 @@ def test_a_cause_that_is_switched_off_holds_nothing() -> None:
     assert (whole.rule, [held.rule for held in whole.holds]) == ("VD01", ["LV01"])
     off = replace(site, limits="ours.toml", own_limits='[rules.VD01]\noff = true\nreason = "told elsewhere"\n')
     assert [row.rule for row in assess(off, limits.of(off)).findings if row.circuit] == ["LV01"]
+
+
+def test_a_circuit_tells_what_the_site_has_under_its_source() -> None:
+    """24 V of a supply stand at 20.1 V; the lock, read at 19.8 V, would have 23.7 V of the 20.4 V that it needs."""
+    site = site_of(
+        {
+            "sources": [{"source": "PS", "kind": "power supply", "nominal": "24", "working": "24", "lowest": "20"}],
+            "circuits": [{"circuit": "C1", "fed_from": "PS", "device": "none"}],
+            "runs": [{"circuit": "C1", "run": "1", "from": "way", "to": "p1", "length": "5", "size": "4 mm2"}],
+            "loads": [{"circuit": "C1", "point": "p1", "load": "lock", "current": "1", "lowest": "20.4"}],
+            "instruments": [
+                {"instrument": "M1", "quantity": "voltage", "accuracy": "0.5", "counts": "2", "resolution": "0.01"}
+            ],
+            "readings": [
+                {"board": "PS", "round": "1", "quantity": "voltage", "at": "bus", "value": "20.10", "instrument": "M1"},
+                {
+                    "circuit": "C1",
+                    "round": "1",
+                    "quantity": "voltage",
+                    "at": "p1",
+                    "value": "19.80",
+                    "instrument": "M1",
+                },
+            ],
+        },
+        {"name": "x"},
+    )
+    assessment = assess(site, limits.of(site))
+    (circuit,) = assessment.circuits
+    assert circuit.status is Status.ACT
+    assert [row.rule for row in circuit.findings] == ["LV01"]
+    assert [row.rule for row in only(assessment, "C1").findings] == ["LV01"]
+    assert "LV01" not in {row.rule for row in assessment.findings}
+    (sags,) = (row for row in assessment.findings if row.rule == "SR01")
+    assert sags.consequences[-1] == "C1: lock was read at 19.8 V in round 1, below its lowest 20.4 V (LV01)"
 
 
 def undersized() -> Site:
