@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from itertools import groupby
 
 from audit.report.blocks import Blanks, Block, Bullets, Cell, Column, Facts, FindingCard, Paragraph, Section, Table
@@ -200,6 +200,12 @@ def decisions_of(site: Site) -> dict[str, str]:
     }
 
 
+def decided_words(finding: Finding, decided: Mapping[str, str], open_: str = "") -> str:
+    """The decision on a finding (``open_`` where there is none), and those on what went under it, each with its id."""
+    of_others = [f"{held.id}: {decided[held.id]}" for held in finding.holds if held.id in decided]
+    return "; ".join(part for part in (decided.get(finding.id, open_), *of_others) if part)
+
+
 def finding_cards(site: Site, assessment: Assessment, findings: Iterable[Finding], full: bool) -> tuple[Block, ...]:
     """
     Findings as cards.
@@ -218,7 +224,7 @@ def finding_cards(site: Site, assessment: Assessment, findings: Iterable[Finding
             ("Do", finding.remedy),
             ("Caution", finding.caution),
             ("Source", finding.source if full else ""),
-            ("Decided", decided.get(finding.id, "")),
+            ("Decided", decided_words(finding, decided)),
         ]
         cards.append(FindingCard(finding.id, finding.severity, finding.title, tuple((k, v) for k, v in rows if v)))
     return tuple(cards)

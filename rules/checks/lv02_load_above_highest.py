@@ -84,6 +84,8 @@ def _of_source(case: BoardCase) -> Iterator[Finding]:
     node = context.network.node_of.get(("sources", source.id))
     if node is None or not isinstance(source, Source) or context.network.sources_at(node)[:1] != (source,):
         return
+    if context.network.gap_highest[node]:
+        return  # which each circuit says of its loads
     source_v, index = float(context.network.held_highest_v[node]), context.index
     found: dict[Bound, list[_Load]] = defaultdict(list)
     for circuit_id in context.network.hanging.circuits_below.get(node, ()):
