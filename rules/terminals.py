@@ -54,16 +54,27 @@ def _of_latest_visit(context: Context, found: list[AtTerminals]) -> list[AtTermi
 
 
 def surely_below(read: Sequence[AtTerminals], limit_v: float, limits: Limits) -> AtTerminals | None:
-    """The reading that lies most surely below a voltage; ``None`` where none does beyond doubt. A dead one is not a sag."""
+    """
+    The reading that lies most surely below a voltage; ``None`` where none does beyond doubt.
+
+    A dead one is no sag, unless current flows: then the source folds back, or is short-circuited.
+    """
 
     def sure(one: AtTerminals) -> float:
         return probability_above(limit_v, one.voltage.value, one.voltage.u or 0.0)
 
-    living = [one for one in read if one.voltage.value > limits["readings.no_voltage_share"] * limit_v]
+    dead_v = limits["readings.no_voltage_share"] * limit_v
+    living = [one for one in read if one.voltage.value > dead_v or _flows(one.current, limits)]
     if not living:
         return None
     worst = max(living, key=lambda one: (sure(one), -one.voltage.value))
     return worst if sure(worst) >= limits["decision.beyond_doubt"] else None
+
+
+def _flows(current: Figure | None, limits: Limits) -> bool:
+    if current is None:
+        return False
+    return probability_above(abs(current.value), 0.0, current.u or 0.0) >= limits["decision.beyond_doubt"]
 
 
 def below_its_lowest(context: Context, node: int) -> AtTerminals | None:
