@@ -31,7 +31,8 @@ def no_voltage(case: CircuitCase) -> Iterator[Finding]:
 
     **Finds**: way 24.03 V, p1 0.02 V: the circuit is open or switched off, and no drop can be taken from the round.
 
-    **Leaves alone**: 19.6 V of 24 V, which is a drop; 0.24 V at a point that current passes, which is a slip. The profile holds the share of nominal below which it is none.
+    **Leaves alone**: 19.6 V of 24 V, which is a drop; 0.24 V at a point that current passes, which is a slip.
+    The profile holds the share of nominal below which it is none.
     """
     if not case.rounds:
         return
