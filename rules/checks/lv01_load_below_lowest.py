@@ -79,7 +79,9 @@ def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Findin
     name, lowest = point.load.tag, bound.volts
     source, without_groups = source_of(case.limits, bound), unused(bound)
     without = {
-        (this.name, dead) for this in case.rounds for dead, _ in dead_points(this, case.nominal_v or 0.0, case.limits)
+        (this.name, dead)
+        for this in case.rounds
+        for dead, _ in dead_points(this, case.tree, case.nominal_v or 0.0, case.limits)
     }
     read = [
         (name_, volts)

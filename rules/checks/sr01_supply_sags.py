@@ -7,7 +7,7 @@ from rules.calc.doubt import Weighted, probability_above, total
 from rules.limits import Limits
 from rules.record import Figure, Source
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
-from rules.terminals import REGULATED, AtTerminals, at_terminals, surely_below
+from rules.terminals import REGULATED, AtTerminals, at_terminals, low_behind_device, surely_below
 from rules.units import show
 
 STAY = (
@@ -33,6 +33,7 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
     A source has less at its terminals than it should. On its busbar, or at the ``bus`` of a circuit, it was read beyond
     doubt below the lowest that is recorded of it: soon. Or a rectifier, power supply or converter is more than 2 % below
     its working voltage, or falls by more than 2 % of it between two rounds of one circuit while the current rises: watch.
+    Where the terminals were not read, the ``way`` of a circuit with twice what its device loses bounds them from above.
     Drops of its circuits are judged by their own currents and stay; loads behind it that were read below their lowest, and
     would not be if it had what it should, are told here (LV01).
 
@@ -49,6 +50,11 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
     if node is None or context.network.sources_at(node)[:1] != (source,):
         return
     read = at_terminals(context, node)
+    if (worst := low_behind_device(context, node)) is not None:
+        limit = float(context.network.held_lowest_v[node])
+        words = f"what its device may lose added, below its lowest {show(limit, 'V')}: it sags, or the device loses it"
+        yield _found(case, node, worst, words, Figure(limit, "V"), Severity.SOON)
+        return
     if not read:
         below = context.network.hanging.circuits_below.get(node, ())
         if any(context.measured[id_].readings for id_ in below if id_ in context.measured):
