@@ -102,9 +102,10 @@ class Rule:
         """
         A finding of this rule; its ``id`` is built from rule, place and ``where``.
 
-        ``as_circuit`` is for rules about the site that report on a circuit; ``without`` are groups of its ``limits`` that
-        had no part in this finding. Values that the site's profile changes are named beside the source. ``under`` names
-        the findings that explain this one, the first that stands; ``as_consequence`` is what it says there instead of ``why``.
+        ``as_circuit`` is for rules about the site that report on a circuit; ``without`` are groups of its ``limits``, or
+        keys of them (``drop.allowed_percent``), that had no part in this finding. Values that the site's profile changes
+        are named beside the source. ``under`` names the findings that explain this one, the first that stands;
+        ``as_consequence`` is what it says there instead of ``why``.
         """
         strange = [name for name in under if name.partition("/")[0] not in self.under]
         assert not strange, f"{self.id} does not say that it may stand under {strange}"
@@ -145,8 +146,8 @@ class Rule:
         changed = [
             str(stated)
             for name in self.limits
-            if name not in without
-            for stated in limits.groups[name].by_source()
+            if (keys := limits.groups[name].deciding(without))
+            for stated in limits.groups[name].by_source(keys)
             if stated.origin != ROOT
         ]
         return list(dict.fromkeys(changed))

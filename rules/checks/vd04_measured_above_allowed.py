@@ -60,7 +60,7 @@ def measured_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 "nominal": Figure(nominal, "V"),
             },
             source="the circuit's own allowed drop" if own else case.limits.citation("drop", "allowed_percent"),
-            without=("drop",) if own else (),
+            without=("drop",) if own else ("drop.allowed_total_percent",),
             under=tuple(_under(case, drop, allowed * nominal)),
             as_consequence=f"read: {lost} {along}",
         )
