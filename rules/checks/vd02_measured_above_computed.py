@@ -108,12 +108,12 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     drop = case.drop
     along = f"{drop.start} to {drop.end}" if drop else "all runs"
     if slip is not None:
-        heat = {"heat if so": lost.heat} if lost is not None else {}
+        if_so = {"heat if so": lost.heat} if lost is not None else {}
         yield measured_above_computed.finding(
             case,
             along,
             "; ".join([*_drop_words(drop), _slip_words(slip, lost), *_remarks(case)]),
-            numbers=_numbers(drop, None) | heat,
+            numbers=_numbers(drop, None) | if_so,
             remedy=READ_AGAIN,
             severity=_of_doubtful(case, lost),
             cause=slip.cause,
