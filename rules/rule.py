@@ -95,7 +95,9 @@ class Rule:
         """
         circuit = case.tag if isinstance(case, CircuitCase) else as_circuit
         board = case.tag if isinstance(case, BoardCase) else None
-        place = circuit if circuit is not None else f"board {board}" if board is not None else "site"
+        place = _of_circuit(circuit) if circuit is not None else "site"
+        if board is not None:
+            place = _unslashed(f"board {board}")
         limits = case.context.limits
         severity = severity or self.severity
         sources = [source or str(self.source)]
@@ -107,7 +109,7 @@ class Rule:
             )
             severity = setting.severity
         return Finding(
-            id="/".join(_unslashed(part) for part in (self.id, place, where) if part),
+            id="/".join(part for part in (self.id, place, _unslashed(where)) if part),
             rule=self.id,
             circuit=circuit,
             board=board,
@@ -142,6 +144,13 @@ class Rule:
 def _unslashed(part: str) -> str:
     """A part of an id: a slash within it is written so that two places never make one id."""
     return part.replace("%", "%25").replace("/", "%2F")
+
+
+def _of_circuit(tag: str) -> str:
+    """A circuit in an id; one that is called like a board or the site differs by its first letter's code."""
+    if tag == "site" or tag.startswith("board "):
+        return f"%{ord(tag[0]):X}{_unslashed(tag[1:])}"
+    return _unslashed(tag)
 
 
 def rule(

@@ -9,6 +9,7 @@ from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.doubts import drop_u
 from rules.load_window import Bound, highest_of, source_of, unused
+from rules.places import joined
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
@@ -119,4 +120,4 @@ def _at_highest(case: CircuitCase, point: LoadPoint) -> _AtHighest | str:
 def _where(case: CircuitCase, point: LoadPoint) -> str:
     """The load's point; with the load's tag where others are there too, so that each finding has an id of its own."""
     alone = sum(other.load.point == point.load.point for other in case.loads) == 1
-    return point.load.point if alone else f"{point.load.point}, {point.load.tag}"
+    return joined(point.load.point, "" if alone else point.load.tag)

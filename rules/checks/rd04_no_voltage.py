@@ -6,6 +6,7 @@ from rules.assessment import Citation, Finding, Severity
 from rules.case import CircuitCase
 from rules.errors import MissingData
 from rules.impossible import dead_points
+from rules.places import joined
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
@@ -41,7 +42,7 @@ def no_voltage(case: CircuitCase) -> Iterator[Finding]:
         for point, volts in dead_points(this, nominal, case.limits):
             yield no_voltage.finding(
                 case,
-                f"{point}, round {this.name}",
+                joined(point, f"round {this.name}"),
                 f"{point} reads {show(volts.value, 'V', volts.u)} where {show(nominal, 'V')} belongs: open or switched off",
                 numbers={"voltage": volts, "nominal": Figure(nominal, "V")},
                 severity=Severity.IMMEDIATE if case.is_vital(point) else Severity.SOON,
