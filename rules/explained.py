@@ -35,7 +35,7 @@ def most_explained_a(case: CircuitCase, point: str, this: Round) -> float | None
         low, high = float(network.lowest.voltage_v[node]), float(network.highest.voltage_v[node])
     else:
         return None
-    points = {end for end in case.tree.ends if point == "way" or end == point or case.passes(end, point)} | {point}
+    points = {end for end in case.tree.ends if point == "way" or end == point or case.leads_over(end, point)} | {point}
     found = math.fsum(_drawn_a(case.circuit, points, index, low, high, frozenset()))
     return found if math.isfinite(found) else None
 
