@@ -54,7 +54,10 @@ def test_two_joints_that_are_alike_are_told_by_either(chains: ModuleType) -> Non
     asked = asked_of(chains.chain([10.0], readings, own=JOINTS_ONLY))
     assert (asked.what, asked.quantity, asked.at, asked.leg) == ("reading", "joint", "run 1 start", "positive")
     assert asked.fall_nats == pytest.approx(math.log(2), abs=0.01)
-    assert asked.why == "tells a bad connection there from one elsewhere in run 1"
+    assert asked.why == (
+        "tells a bad connection there from one elsewhere in run 1; "
+        "more than 7 A turns more than 5 W into heat in a joint of 101 mΩ; with load taken off"
+    )
 
 
 def test_of_four_joints_one_is_read_since_a_leg_takes_longer(chains: ModuleType) -> None:
@@ -67,7 +70,7 @@ def test_of_four_joints_one_is_read_since_a_leg_takes_longer(chains: ModuleType)
     asked = asked_of(chains.chain([10.0], chains.read(["way", "p1"], volts, 8.0), own=quick))
     assert (asked.quantity, asked.at, asked.to) == ("drop", "way", "p1")
     assert asked.fall_nats == pytest.approx(math.log(2), abs=0.01)
-    assert asked.why.endswith("and halves the suspected joints")
+    assert ", and halves the suspected joints; more than " in asked.why
 
 
 @pytest.mark.parametrize(("runs", "middle"), [(2, {"p1"}), (4, {"p2"}), (5, {"p2", "p3"}), (8, {"p4"})])
@@ -123,7 +126,8 @@ def test_a_semiconductor_is_told_from_a_joint(chains: ModuleType) -> None:
     assert second.current_at_least.value <= 0.4 * 8.0
     assert second.why == (
         "tells a semiconductor in run 1 from a bad connection in run 1; "
-        "a second round at less current, at which a semiconductor loses as much"
+        "a second round at less current, at which a semiconductor loses as much; "
+        "more than 8.4 A turns more than 5 W into heat in a joint of 70 mΩ"
     )
 
 
