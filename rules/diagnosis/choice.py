@@ -16,10 +16,11 @@ import numpy as np
 
 from rules.diagnosis.atoms import OF_LENGTH, Atoms, atoms_of
 from rules.diagnosis.block import stacked
-from rules.diagnosis.bounds import Bound, heat_bound, largest_bound, rounded_down, rounded_up
-from rules.diagnosis.candidates import JOINT, POINT, SINGLE, Posed
+from rules.diagnosis.bounds import Bound, heat_bound, rounded_down, rounded_up
+from rules.diagnosis.candidates import JOINT, LEG, POINT, SINGLE, Posed
 from rules.diagnosis.contrast import conclusive_level, groups_apart
 from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, REVERSED, SEVERAL, SWAPPED
+from rules.diagnosis.excess_bound import most_level
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, LONGER, OTHER_METAL, SMALLER
 from rules.diagnosis.judge import Judged, judge_block
 from rules.diagnosis.options import (
@@ -40,17 +41,15 @@ from rules.diagnosis.options import (
 )
 from rules.diagnosis.outlook import Outlook, outlook_of
 from rules.diagnosis.problem import Observation
-from rules.diagnosis.shape import Floats, Shape, shape_of
+from rules.diagnosis.shape import Floats, Integers, Shape, shape_of
+from rules.errors import MissingData
 from rules.limits import Limits
 
 COVERED = 0.975
 """Upper bound of a suspected extra resistance: that of the central 95 %."""
-COVERED_U = 1.96
-"""Standard uncertainties above a value at which that lies."""
-TRACE = 1e-9
-"""Less probable than this is no suspect, though nothing else is."""
 AS_TELLING = 0.3
 """Share of the largest fall below which an option does not stand in for one that is not conclusive."""
+SINGLES = (JOINT, LEG, POINT)
 LIVE_WAYS = (AS_IT_IS, MORE, ADDED, FINER)
 """How millivolts are read across what a finding names."""
 OF_READINGS = (ONE_READING, CURRENT_READING, SWAPPED, REVERSED, SEVERAL)
@@ -85,46 +84,9 @@ def looked_at(posed: Sequence[Posed], limits: Limits) -> Batch:
     tried = tried_of(posed, block, atoms)
     outlook = outlook_of(judged, block, atoms, posed, tried.candidate)
     high = np.exp(judged.density.cumulative().quantiles(COVERED)[0][:, : len(judged.block.shape.places)])
-    most = [_most_level(each, judged, number, high[number], limits) for number, each in enumerate(posed)]
+    most = [most_level(each, judged, number, high[number], limits) for number, each in enumerate(posed)]
     options = options_of(posed, tried, atoms, outlook, np.array([bound.level for bound in most]), limits)
     return Batch(posed, limits, shape, judged, atoms, outlook, options, high, most)
-
-
-def _most_level(posed: Posed, judged: Judged, number: int, high_ohm: Floats, limits: Limits) -> Bound:
-    """The smallest over the ratings and the heat in what is suspected."""
-    amps, names = posed.amps, posed.imagined.names
-    of_record = largest_bound(posed.case, {names[branch]: ampere for branch, ampere in amps.items()})
-    places = judged.block.shape.places
-    share = judged.posterior[number, judged.of_cause(BAD_CONNECTION)]
-    least = min(limits["next_reading.suspected_at"], float(share.max(initial=0.0)))
-    suspects = [
-        (float(high_ohm[n]), amps.get(places[n].branch, 0.0)) for n in np.flatnonzero(share >= max(least, TRACE))
-    ]
-    suspects += _read_excess(posed, judged, number, limits)
-    return min(of_record, heat_bound(suspects, limits["heat.load_test_w"]), key=lambda bound: bound.level)
-
-
-def _read_excess(posed: Posed, judged: Judged, number: int, limits: Limits) -> list[tuple[float, float]]:
-    """
-    What was read beyond the record as one resistance, with the current of the imagined round through it, once for each
-    branch that it may lie in. The prior holds no connection for worse than its range; what was read may be. [ohm, A]
-    """
-    block, amps = judged.block, posed.amps
-    shape = block.shape
-    excess = block.shown[number] - judged.recorded.whole_mean[number, 0]
-    own_u = np.sqrt(np.diagonal(block.own[number]))
-    slots = {slot: float(ampere) for slot, ampere in zip(shape.signature.slots, block.amps[number], strict=True)}
-    found = []
-    for n, row in enumerate(shape.signature.rows):
-        for branch, sense in row.path:
-            through = sense * (
-                1.0 if shape.row_state[n] == shape.signature.states else slots.get((row.state, branch), 0.0)
-            )
-            if through and excess[n] * through > limits["next_reading.apart"] * own_u[n] * abs(through):
-                found.append(
-                    ((abs(float(excess[n])) + COVERED_U * float(own_u[n])) / abs(through), amps.get(branch, 0.0))
-                )
-    return found
 
 
 @dataclass(frozen=True, slots=True)
@@ -239,7 +201,8 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
     options, outlook, atoms = batch.options, batch.outlook, batch.atoms
     way, level, column = options.ways[option], float(options.level[number, option]), int(options.column[number, option])
     posed, amps = batch.posed[number], batch.posed[number].amps
-    weight, group = atoms.weight[number], atoms.group[number]
+    at = posed.rows_of(SINGLE)[int(outlook.candidate[number, column])] if way.kind in SINGLES else -1
+    weight, group = atoms.weight[number], _alike(batch, number, way, at)[atoms.group[number]]
     if way.kind == ROUND:
         mean = outlook.again_steady[number] + level * outlook.again_mean[number]
         covariance = outlook.again_fixed[number] + level**2 * outlook.again_covariance[number]
@@ -258,8 +221,7 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
         return Choice(option, way, candidate, pair)
     if way.kind == LENGTH:
         return Choice(option, way, candidate, _lengths_apart(batch, number))
-    at = posed.rows_of(SINGLE)[candidate]
-    needed = _conclusive(batch, number, column, counts, pair)
+    needed = _conclusive(batch, number, column, counts, group, pair)
     if way.how == DEAD_TEST:
         return Choice(option, way, at, pair, 0.0 if needed <= level else math.inf)
     path = posed.imagined.signature.rows[at].path
@@ -282,7 +244,12 @@ def _again_there(batch: Batch, number: int, choice: Choice) -> Choice:
     amps, most = posed.amps, batch.most[number]
     if said is None or choice.way.kind != ROUND:
         return choice
-    place = said.to or said.at
+    place = said.at
+    if said.to:
+        try:
+            place = posed.case.tree.path(said.at, said.to)[0]
+        except (MissingData, IndexError):
+            place = said.to
     arriving = zip(posed.imagined.names, posed.imagined.ends, strict=True)
     found = [
         n
@@ -305,6 +272,35 @@ def doubtful_reading(batch: Batch, number: int, choice: Choice) -> Observation |
     return read.observations[name.which[0]] if name.what in (ONE_READING, SWAPPED) else None
 
 
+def touched(batch: Batch, way: Way, row: int) -> list[bool]:
+    """Of each group: whether it lies in what a single reading is taken across."""
+    shape = batch.shape
+    found = []
+    for group in batch.atoms.groups:
+        if way.kind not in SINGLES or group.place < 0:
+            found.append(False)
+        elif group.cause == BAD_CONNECTION:
+            found.append(bool(shape.coefficient[row, shape.place_element[group.place]]))
+        else:
+            found.append(bool(shape.offset_rows[group.place, row]))
+    return found
+
+
+def _alike(batch: Batch, number: int, way: Way, row: int) -> Integers:
+    """Of each group the most probable of those that a reading's words name alike: one cause, in one run, read across or not."""
+    shape, groups, shares = batch.shape, batch.atoms.groups, batch.atoms.shares[number]
+    classes: dict[tuple[str, int, bool], int] = {}
+    names = []
+    for (cause, place), inside in zip(groups, touched(batch, way, row), strict=True):
+        branch = -1
+        if place >= 0:
+            branch = shape.places[place].branch if cause == BAD_CONNECTION else shape.offset_branch(place)
+        names.append((cause, branch, inside))
+    for group in np.argsort(-shares, kind="stable").tolist():
+        classes.setdefault(names[group], group)
+    return np.array([classes[name] for name in names], dtype=np.int64)
+
+
 def _lengths_apart(batch: Batch, number: int) -> tuple[int, int] | None:
     """A longer route and the most probable of the others; ``None`` where it is its doubt that a tape is for."""
     shares, groups = batch.atoms.shares[number], batch.atoms.groups
@@ -316,11 +312,13 @@ def _lengths_apart(batch: Batch, number: int) -> tuple[int, int] | None:
     )
 
 
-def _conclusive(batch: Batch, number: int, column: int, counts: Floats, pair: tuple[int, int] | None) -> float:
+def _conclusive(
+    batch: Batch, number: int, column: int, counts: Floats, group: Integers, pair: tuple[int, int] | None
+) -> float:
     """Level of current at which a single reading puts two groups far enough apart."""
     if pair is None:
         return math.inf
-    outlook, weight, group = batch.outlook, batch.atoms.weight[number], batch.atoms.group[number]
+    outlook, weight = batch.outlook, batch.atoms.weight[number]
     figures = []
     for name in pair:
         inside = np.flatnonzero(group == name)

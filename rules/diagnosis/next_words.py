@@ -39,7 +39,7 @@ OTHERWISE = {
 """What a reading is for that tells no two causes apart by itself."""
 BESIDE_WORDS = {
     FINER: "; the meter at hand is too coarse for it",
-    DEAD_TEST: "; live, no current that may flow is enough",
+    DEAD_TEST: "; live, no current that may flow is enough: with a four-wire micro-ohmmeter, for others show nothing below about 10 mΩ",
     LESS: "; a second round at less current, at which a semiconductor loses as much",
     MORE: "; at more current than today",
     ADDED: "; with a load of your own",

@@ -8,8 +8,8 @@ from typing import NamedTuple
 import numpy as np
 
 from rules.assessment import NextReading
-from rules.diagnosis.candidates import AGAIN, JOINT, LEG, POINT, SINGLE, Posed
-from rules.diagnosis.choice import Batch, Choice, doubtful_reading
+from rules.diagnosis.candidates import AGAIN, LEG, POINT, SINGLE, Posed
+from rules.diagnosis.choice import SINGLES, Batch, Choice, doubtful_reading, touched
 from rules.diagnosis.hypotheses import BAD_CONNECTION
 from rules.diagnosis.information import LEAST, entropy
 from rules.diagnosis.next_cautions import caution_words
@@ -20,7 +20,6 @@ from rules.record import Figure
 
 EVENLY = (0.3, 0.7)
 """Between these shares of what is suspected a reading halves it."""
-SINGLES = (JOINT, LEG, POINT)
 WHOLE = 0.99
 """A branch with this share of the most current carries all of it."""
 SUSPECTS = 3
@@ -116,27 +115,13 @@ def _round_places(posed: Posed) -> tuple[str, str, str]:
     return ("voltage", points[0], points[-1]) if len(points) > 1 else (said[0].quantity, said[0].at, said[0].to)
 
 
-def _touched(batch: Batch, choice: Choice) -> list[bool]:
-    """Of each group: whether it lies in what a single reading is taken across."""
-    shape, row = batch.shape, choice.row
-    found = []
-    for group in batch.atoms.groups:
-        if choice.way.kind not in SINGLES or group.place < 0:
-            found.append(False)
-        elif group.cause == BAD_CONNECTION:
-            found.append(bool(shape.coefficient[row, shape.place_element[group.place]]))
-        else:
-            found.append(bool(shape.offset_rows[group.place, row]))
-    return found
-
-
 def _place(batch: Batch, number: int, choice: Choice, group: int) -> Said:
     """A group beside a reading."""
     cause, place = batch.atoms.groups[group]
     if place < 0:
         return Said(cause)
     branch = batch.shape.places[place].branch if cause == BAD_CONNECTION else batch.shape.offset_branch(place)
-    return Said(cause, batch.posed[number].imagined.names[branch], _touched(batch, choice)[group])
+    return Said(cause, batch.posed[number].imagined.names[branch], touched(batch, choice.way, choice.row)[group])
 
 
 def _halves(batch: Batch, number: int, choice: Choice) -> bool:
@@ -144,7 +129,7 @@ def _halves(batch: Batch, number: int, choice: Choice) -> bool:
     shares = batch.atoms.shares[number]
     bad = np.array([group.cause == BAD_CONNECTION for group in batch.atoms.groups])
     whole = float(shares[bad].sum())
-    inside = np.array(_touched(batch, choice)) & bad
+    inside = np.array(touched(batch, choice.way, choice.row)) & bad
     suspects = float(np.exp(entropy(shares[bad] / max(whole, LEAST))))  # as many as equal ones would be
     evenly = EVENLY[0] * whole <= float(shares[inside].sum()) <= EVENLY[1] * whole
     return whole > 0.5 and suspects > SUSPECTS and evenly and choice.way.kind in (LEG, POINT)
