@@ -43,22 +43,29 @@ def reversed_points(this: Round, limits: Limits) -> list[tuple[str, Figure]]:
     return found
 
 
-def dead_points(this: Round, nominal_v: float, limits: Limits) -> list[tuple[str, Figure]]:
+def dead_points(this: Round, tree: Tree, nominal_v: float, limits: Limits) -> list[tuple[str, Figure]]:
     """
-    Points whose voltage is a small part of nominal and not below zero, in a round in which no current was read to flow:
-    where current flows, such a voltage is a slip.
+    Points whose voltage is a small part of nominal and not below zero, and which no current was read to pass.
+
+    Where current passes, or a point behind has its voltage, such a voltage is a slip, unless every point of the round
+    has none: then the source is short-circuited or folds back.
     """
-    if any(_flows(terms, limits) for terms in this.amps.values()):
-        return []
     reversed_ = {point for point, _ in reversed_points(this, limits)}
-    found = []
-    for point, terms in this.volts.items():
-        value, u = total(terms)
-        share = value / nominal_v if nominal_v else 1.0
-        limit = limits["readings.no_voltage_share"]
-        if point not in reversed_ and share < limit and not math.isclose(share, limit):
-            found.append((point, Figure(value, "V", u)))
-    return found
+    read = {point: total(terms) for point, terms in this.volts.items() if point not in reversed_}
+    limit = limits["readings.no_voltage_share"] * nominal_v
+    low = {point for point, (value, _) in read.items() if value < limit and not math.isclose(value, limit)}
+    none_lives = len(low) == len(this.volts) and len(low) > 1
+    living = set(read) - low
+    return [
+        (point, Figure(read[point][0], "V", read[point][1]))
+        for point in read
+        if point in low and (none_lives or not (_passed(this, tree, point, limits) or _feeds(tree, point, living)))
+    ]
+
+
+def flowing(this: Round, limits: Limits) -> bool:
+    """Whether any current of a round was read to flow."""
+    return any(_flows(terms, limits) for terms in this.amps.values())
 
 
 def rises(this: Round, tree: Tree, limits: Limits) -> list[Rise]:
@@ -94,7 +101,7 @@ def impossible(this: Round, tree: Tree, nominal_v: float | None, limits: Limits)
     """Why no drop can be taken from a round; empty where nothing stands against it."""
     if reversed_points(this, limits):
         return f"a voltage of round {this.name} reads below zero"
-    if nominal_v is not None and dead_points(this, nominal_v, limits):
+    if nominal_v is not None and not flowing(this, limits) and dead_points(this, tree, nominal_v, limits):
         return f"a point of round {this.name} has no voltage"
     if rises(this, tree, limits):
         return f"a voltage of round {this.name} rises towards the load"
@@ -106,6 +113,36 @@ def impossible(this: Round, tree: Tree, nominal_v: float | None, limits: Limits)
 def _flows(terms: Sequence[Weighted], limits: Limits) -> bool:
     value, u = total(terms)
     return probability_above(abs(value), 0.0, u) >= limits["decision.beyond_doubt"]
+
+
+def _passed(this: Round, tree: Tree, point: str, limits: Limits) -> bool:
+    """Whether current was read to pass a point: in the branch that feeds it, or in one behind it."""
+    if any(_flows(terms, limits) and _feeds(tree, point, {end}) for end, terms in this.amps.items() if end != point):
+        return True
+    here = point
+    for _ in range(len(tree.ends) + 2):
+        if here in this.amps:
+            return _flows(this.amps[here], limits)
+        run = tree.ends.get(here)
+        if run is None or run.from_point in tree.taps:
+            return False  # what flows further up may leave before it
+        here = run.from_point
+    return False
+
+
+def _feeds(tree: Tree, point: str, ends: set[str]) -> bool:
+    """Whether one of some points lies behind a point."""
+    for end in ends:
+        here = end
+        for _ in range(len(tree.ends) + 2):
+            run = tree.ends.get(here)
+            before = run.from_point if run is not None else "bus" if here == "way" else ""
+            if not before:
+                break
+            if before == point:
+                return True
+            here = before
+    return False
 
 
 def _backward(this: Round, tree: Tree, limit: float) -> tuple[str, Figure] | None:

@@ -6,12 +6,19 @@ from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
+import numpy as np
+
 from rules.calc.doubt import Weighted, probability_above, total
 from rules.context import Context
 from rules.limits import Limits
 from rules.meters import worth
 from rules.record import Board, Figure, Reading, Source
 from rules.rounds import Round, judged
+
+REGULATED = ("rectifier", "power supply", "converter")
+"""Kinds of source that hold their working voltage; a battery's falls while it discharges."""
+HEALTHY_AT_MOST = 2.0
+"""Times its typical resistance that a healthy device may have; our own default."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,16 +61,52 @@ def _of_latest_visit(context: Context, found: list[AtTerminals]) -> list[AtTermi
 
 
 def surely_below(read: Sequence[AtTerminals], limit_v: float, limits: Limits) -> AtTerminals | None:
-    """The reading that lies most surely below a voltage; ``None`` where none does beyond doubt. A dead one is not a sag."""
+    """
+    The reading that lies most surely below a voltage; ``None`` where none does beyond doubt.
+
+    A dead one is no sag, unless current flows: then the source folds back, or is short-circuited.
+    """
 
     def sure(one: AtTerminals) -> float:
         return probability_above(limit_v, one.voltage.value, one.voltage.u or 0.0)
 
-    living = [one for one in read if one.voltage.value > limits["readings.no_voltage_share"] * limit_v]
+    dead_v = limits["readings.no_voltage_share"] * limit_v
+    living = [one for one in read if one.voltage.value > dead_v or _flows(one.current, limits)]
     if not living:
         return None
     worst = max(living, key=lambda one: (sure(one), -one.voltage.value))
     return worst if sure(worst) >= limits["decision.beyond_doubt"] else None
+
+
+def _flows(current: Figure | None, limits: Limits) -> bool:
+    if current is None:
+        return False
+    return probability_above(abs(current.value), 0.0, current.u or 0.0) >= limits["decision.beyond_doubt"]
+
+
+def low_behind_device(context: Context, node: int) -> AtTerminals | None:
+    """
+    The ``way`` of a circuit that lies below the lowest of its source, beyond what a healthy device loses.
+
+    Whether it is the source that sags or the device that loses it is open. Only where the terminals themselves were
+    not read.
+    """
+    if context.network.gap_lowest[node] or at_terminals(context, node):
+        return None
+    read = _of_latest_visit(context, list(_behind_devices(context, node)))
+    return surely_below(read, float(context.network.held_lowest_v[node]), context.limits)
+
+
+def low_source_of(context: Context, circuit_id: str) -> AtTerminals | None:
+    """Where a circuit's source was read below its lowest, at its terminals or behind a device; ``None`` where nowhere."""
+    network = context.network
+    if circuit_id not in network.nodes_of:
+        return None
+    node = list(network.way_up(network.nodes_of[circuit_id]["bus"]))[-1]
+    if network.gap_lowest[node]:
+        return None
+    lowest = float(network.held_lowest_v[node])
+    return surely_below(at_terminals(context, node), lowest, context.limits) or low_behind_device(context, node)
 
 
 def below_its_lowest(context: Context, node: int) -> AtTerminals | None:
@@ -72,6 +115,23 @@ def below_its_lowest(context: Context, node: int) -> AtTerminals | None:
         return None
     read = _of_latest_visit(context, list(_busbars(context, node)))
     return surely_below(read, float(context.network.held_lowest_v[node]), context.limits)
+
+
+def lacking_v(context: Context, node: int, circuit_id: str) -> float:
+    """
+    What a source lacked at its terminals where it was read least, on a busbar or at the ``bus`` of one circuit. [V]
+
+    Of its working voltage where it is regulated, or of the most that was read; of a battery, which discharges, of its lowest.
+    0 where nothing was read.
+    """
+    network = context.network
+    own = _of_circuit(context, circuit_id) if network.nodes_of[circuit_id]["bus"] == node else ()
+    volts = [one.voltage.value for one in _of_latest_visit(context, [*_busbars(context, node), *own])]
+    if not volts:
+        return 0.0
+    if any(source.kind in REGULATED for source in network.sources_at(node)):
+        return float(np.nanmax([network.held_v[node], *volts])) - min(volts)
+    return 0.0 if network.gap_lowest[node] else max(float(network.held_lowest_v[node]) - min(volts), 0.0)
 
 
 def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
@@ -92,15 +152,30 @@ def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
 
 def _circuits(context: Context, node: int) -> Iterator[AtTerminals]:
     for circuit_id in context.network.hanging.circuits_at.get(node, ()):
+        yield from _of_circuit(context, circuit_id)
+
+
+def _of_circuit(context: Context, circuit_id: str) -> Iterator[AtTerminals]:
+    circuit, measured = context.index.circuits[circuit_id], context.measured.get(circuit_id)
+    for this in measured.rounds if measured is not None else ():
+        if "bus" in this.volts and measured is not None:
+            first = _first_current(this, tuple(measured.tree.ends))
+            yield AtTerminals(f"bus of {circuit.tag}", measured.visit, this.name, this.volts["bus"], first, whole=False)
+
+
+def _behind_devices(context: Context, node: int) -> Iterator[AtTerminals]:
+    """The ``way`` of each circuit with what its device may lose added: an upper bound of the terminals."""
+    for circuit_id in context.network.hanging.circuits_at.get(node, ()):
         circuit, measured = context.index.circuits[circuit_id], context.measured.get(circuit_id)
-        if measured is None:
+        if measured is None or measured.tree.device_ohm is None:
             continue
+        most_ohm = HEALTHY_AT_MOST * measured.tree.device_ohm
         for this in measured.rounds:
-            if "bus" in this.volts:
-                first = _first_current(this, tuple(measured.tree.ends))
-                yield AtTerminals(
-                    f"bus of {circuit.tag}", measured.visit, this.name, this.volts["bus"], first, whole=False
-                )
+            amps = _first_current(this, tuple(measured.tree.ends))
+            if "way" in this.volts and amps:
+                lost = (Weighted(most_ohm * term.weight, term.shown) for term in amps)
+                terms = (*this.volts["way"], *lost)
+                yield AtTerminals(f"way of {circuit.tag}", measured.visit, this.name, terms, amps, whole=False)
 
 
 def _first_current(this: Round, ends: tuple[str, ...]) -> tuple[Weighted, ...]:

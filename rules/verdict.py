@@ -18,6 +18,7 @@ from rules.diagnosis.hypotheses import (
 )
 from rules.limits import Limits
 from rules.record import Figure
+from rules.terminals import low_source_of
 from rules.units import show
 
 FAMILIES = ((BAD_CONNECTION,), (SEMICONDUCTOR,), (SMALLER, OTHER_METAL, LONGER))
@@ -121,6 +122,9 @@ def unsound(case: CircuitCase) -> str:
     """What stands against calling a circuit sound although its readings agree with the record; empty where nothing does."""
     if case.diagnosis is None or _as_recorded(case.diagnosis.causes) < case.limits["decision.sound_at"]:
         return "the readings do not support the record"
+    low = low_source_of(case.context, case.circuit.id)
+    if low is not None:
+        return f"its source was read below its lowest: {show(low.voltage.value, 'V', low.voltage.u)} by the {low.place}"
     share, limit_w = case.limits["decision.sound_heat_share"], case.limits["heat.limit_w"]
     for place in case.diagnosis.causes:
         if place.heat is not None and place.heat >= share:

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, Severity
 from rules.case import CircuitCase
 from rules.errors import MissingData
-from rules.impossible import dead_points
+from rules.impossible import dead_points, flowing
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
@@ -24,13 +24,15 @@ from rules.units import show
 )
 def no_voltage(case: CircuitCase) -> Iterator[Finding]:
     """
-    The voltage between the legs at a point is a small part of nominal.
+    The voltage between the legs at a point is a small part of nominal, and no current was read to pass the point; or
+    every point of a round has none while current flows, as into a short circuit.
 
     Immediate where a life-safety or trip-or-close load hangs on it.
 
     **Finds**: way 24.03 V, p1 0.02 V: the circuit is open or switched off, and no drop can be taken from the round.
 
-    **Leaves alone**: 19.6 V of 24 V, which is a drop. The profile holds the share of nominal below which it is none.
+    **Leaves alone**: 19.6 V of 24 V, which is a drop; 0.24 V at a point that current passes, which is a slip.
+    The profile holds the share of nominal below which it is none.
     """
     if not case.rounds:
         return
@@ -38,11 +40,18 @@ def no_voltage(case: CircuitCase) -> Iterator[Finding]:
     if nominal is None:
         raise MissingData("the nominal voltage is not known")
     for this in case.rounds:
-        for point, volts in dead_points(this, nominal, case.limits):
+        found = dead_points(this, case.tree, nominal, case.limits)
+        flows = len(found) == len(this.volts) and flowing(this, case.limits)
+        behind = ", ".join(point for point, _ in found[1:])
+        for point, volts in found[:1] if flows else found:
+            why = "open or switched off"
+            if flows:
+                why = f"as does what was read behind it ({behind}), while current flows: short-circuited, or its source folds back"
             yield no_voltage.finding(
                 case,
                 f"{point}, round {this.name}",
-                f"{point} reads {show(volts.value, 'V', volts.u)} where {show(nominal, 'V')} belongs: open or switched off",
+                f"{point} reads {show(volts.value, 'V', volts.u)} where {show(nominal, 'V')} belongs"
+                f"{', ' if flows else ': '}{why}",
                 numbers={"voltage": volts, "nominal": Figure(nominal, "V")},
                 severity=Severity.IMMEDIATE if case.is_vital(point) else Severity.SOON,
             )

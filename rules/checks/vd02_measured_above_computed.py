@@ -111,6 +111,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             severity=_of_doubtful(case),
             cause=slip.cause,
             source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
+            without=("bad_connection",),
         )
         return
     heat = _heat(case, claim)
@@ -134,6 +135,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         remedy=_remedy(claim),
         cause=claim.cause if claim else None,
         source=citation,
+        without=() if claim is not None and claim.cause == BAD_CONNECTION else ("bad_connection",),
         consequences=tuple(_consequences(case, claim, heat)),
     )
 
