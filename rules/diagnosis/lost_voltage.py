@@ -26,7 +26,7 @@ def follow_voltage(case: CircuitCase) -> NextReading | None:
     if case.nominal_v is None:
         return None
     for this in reversed(case.rounds):
-        dead = {point for point, _ in dead_points(this, case.nominal_v, case.limits)}
+        dead = {point for point, _ in dead_points(this, case.tree, case.nominal_v, case.limits)}
         first = next((point for point in ("bus", "way", *case.tree.ends) if point in dead), None)
         if first is not None:
             return _between(case, first, this.volts.keys() - dead, this.name)
