@@ -334,10 +334,13 @@ def next_reading_words(reading: NextReading) -> str:
     parts = [_asked_words(reading)]
     if reading.leg and reading.quantity != "voltage":
         parts.append(leg_words(reading.leg))
-    if reading.current_at_least is not None:
-        parts.append(f"at {figure_words(reading.current_at_least)} or more")
-    if reading.current_at_most is not None:
-        parts.append(f"at most {figure_words(reading.current_at_most)}")
+    least, most = reading.current_at_least, reading.current_at_most
+    if least is not None and least == most:
+        parts.append(f"at {figure_words(least)}")
+    elif least is not None:
+        parts.append(f"at {figure_words(least)} or more")
+    if most is not None and least != most:
+        parts.append(f"at most {figure_words(most)}")
     return ", ".join(parts)
 
 
