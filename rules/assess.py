@@ -166,7 +166,8 @@ def assess_circuit(
 def _followed(judged: Sequence[tuple[CircuitCase, CircuitResult]]) -> list[CircuitResult]:
     """Results with what to read next, where a circuit is not settled."""
     open_ = [number for number, (_, result) in enumerate(judged) if result.status is not Status.SOUND]
-    found = dict(zip(open_, next_readings([judged[number][0] for number in open_]), strict=True))
+    asked = next_readings([judged[n][0] for n in open_], [judged[n][1].findings for n in open_])
+    found = dict(zip(open_, asked, strict=True))
     return [replace(result, next_reading=found.get(number)) for number, (_, result) in enumerate(judged)]
 
 

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from rules.assessment import Drop, Place
 from rules.case import CircuitCase
+from rules.diagnosis.doubtful import RATIOS
 from rules.diagnosis.hypotheses import (
     AS_RECORDED,
     BAD_CONNECTION,
@@ -103,6 +104,11 @@ def claimed(causes: tuple[Place, ...], limits: Limits) -> Claim | None:
 def doubtful(causes: tuple[Place, ...]) -> Place | None:
     """The row of a doubtful reading or record where that is more probable than not."""
     return next((place for place in causes if place.cause == DOUBTFUL and place.probability > 0.5), None)
+
+
+def is_by_a_factor(slip: Place) -> bool:
+    """Whether a doubtful reading is off by a factor, its sign left out."""
+    return any(f"({words})" in slip.what for ratio, words in RATIOS.items() if ratio > 0)
 
 
 def unsettled(case: CircuitCase) -> str:

@@ -64,9 +64,7 @@ MOST_LISTED = 12
 """Consequences or numbers of one finding that a page lists."""
 LEAST_SURE = 0.999
 """Probability above which a finding says no more than that it is above it."""
-CAUSES_NOT_JUDGED = (
-    "Causes are not yet judged: a drop that agrees within its doubt is “measure”, and no circuit is called sound."
-)
+CAUSES_NOT_JUDGED = "No reading here lets a cause be weighed: a drop that agrees within its doubt is “measure”, and no circuit is called sound."
 
 
 def causes_are_judged(circuits: tuple[CircuitResult, ...]) -> bool:
@@ -359,10 +357,13 @@ def next_reading_words(reading: NextReading) -> str:
     parts = [_asked_words(reading)]
     if reading.leg and reading.quantity != "voltage":
         parts.append(leg_words(reading.leg))
-    if reading.current_at_least is not None:
-        parts.append(f"at {figure_words(reading.current_at_least)} or more")
-    if reading.current_at_most is not None:
-        parts.append(f"at most {figure_words(reading.current_at_most)}")
+    least, most = reading.current_at_least, reading.current_at_most
+    if least is not None and least == most:
+        parts.append(f"at {figure_words(least)}")
+    elif least is not None:
+        parts.append(f"at {figure_words(least)} or more")
+    if most is not None and least != most:
+        parts.append(f"at most {figure_words(most)}")
     return ", ".join(parts)
 
 

@@ -6,6 +6,7 @@ from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
 from rules.margins import Margin, dip_u, margins_of
+from rules.places import joined
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, rule
 from rules.units import show, show_against
@@ -105,4 +106,4 @@ def _consequences(case: CircuitCase, point: LoadPoint, source_ohm: float | None)
 def _where(case: CircuitCase, point: LoadPoint) -> str:
     """The load's point; with the load's tag where others are there too, so that each finding has an id of its own."""
     alone = sum(other.load.point == point.load.point for other in case.loads) == 1
-    return point.load.point if alone else f"{point.load.point}, {point.load.tag}"
+    return joined(point.load.point, "" if alone else point.load.tag)

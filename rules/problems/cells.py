@@ -13,11 +13,13 @@ from rules.columns import NEAREST_ZERO, Column, ColumnKind, within
 from rules.problems.problem import Problem
 from rules.record import TABLES, UNIT_OF_QUANTITY, Row, Run, Site, columns
 from rules.tables.conductors import is_known, neighbours
-from rules.text import MOST_CHARACTERS, either, forbidden_character, nearest, quoted
+from rules.text import MOST_CHARACTERS, either, forbidden_character, nearest_choice, quoted
 
 Complaint: TypeAlias = tuple[str, str] | None
 """What is wrong, and what is accepted; ``None`` where nothing is wrong."""
 
+FIRST_YEAR, LAST_YEAR = 1900, 2200
+"""Of dates and times in a record."""
 _DATE_PART = re.compile(r"[0-9W-]+(?:[T ]|$)")
 """Python itself takes any character between date and time."""
 
@@ -173,7 +175,7 @@ def _notes(value: str, column: Column) -> Complaint:
 def _choice(value: str, column: Column) -> Complaint:
     if value in column.choices:
         return None
-    near = nearest(value[:100], column.choices)
+    near = nearest_choice(value[:100], column.choices)
     hint = "" if near is None else f", did you mean {quoted(near)}?"
     return f"{quoted(value)} is no {column.name}", accepted(column) + hint
 
@@ -190,11 +192,19 @@ def _size(value: str, column: Column) -> Complaint:
 
 
 def _time(value: str, column: Column) -> Complaint:
-    return None if is_time(value) else (f"{quoted(value)} is not a time", accepted(column))
+    return (f"{quoted(value)} is not a time", accepted(column)) if not is_time(value) else _year(value)
 
 
 def _date(value: str, column: Column) -> Complaint:
-    return None if is_date(value) else (f"{quoted(value)} is not a date", accepted(column))
+    return (f"{quoted(value)} is not a date", accepted(column)) if not is_date(value) else _year(value)
+
+
+def _year(value: str) -> Complaint:
+    """Other years are a slip of the hand, and near the ends of the calendar a time zone leaves it."""
+    year = int(value[:4])
+    if FIRST_YEAR <= year <= LAST_YEAR:
+        return None
+    return f"{quoted(value)} is of the year {year}", f"a year from {FIRST_YEAR} to {LAST_YEAR}"
 
 
 def _anything(value: Any, column: Column) -> Complaint:
