@@ -195,4 +195,6 @@ def _names_nothing(text: str, tables: Sequence[str], index: Index) -> str:
     known = [row.tag for table in tables for row in index.site.table(table)]  # type: ignore[attr-defined]
     near = nearest(text.removeprefix(TO_BOARD).strip(), known)
     hint = f", did you mean {quoted(near)}?" if near else ""
+    if not known and "sources" in tables:
+        hint = ": add the source first (Esc, a, source)"
     return f"{quoted(text)} names no {either([table.removesuffix('s') for table in tables])} that is there{hint}"
