@@ -98,7 +98,7 @@ def only(assessment: Assessment, circuit: str) -> Assessment:
     return replace(
         assessment,
         circuits=results,
-        findings=tuple(finding for finding in assessment.findings if finding.circuit == circuit),
+        findings=tuple(finding for result in results for finding in result.findings),
         # what is about no place at all, such as a rule that is switched off, is about this circuit too
         not_judged=tuple(
             gap for gap in assessment.not_judged if gap.circuit == circuit or (gap.circuit is None and not gap.where)

@@ -21,6 +21,7 @@ from rules.context import Context
 from rules.diagnosis.learning import diagnose_told, learn
 from rules.diagnosis.next_reading import next_readings
 from rules.explain import with_facts
+from rules.fold import folded
 from rules.heat import similar_joints
 from rules.index import Index
 from rules.joints import heats_of
@@ -76,15 +77,24 @@ def assess_prepared(
         results += judged
         if told is not None:
             told(judged)
+    told_of = {finding.id: finding for result in results for finding in result.findings}
+    judged_tags = {result.circuit for result in results}
+    first = {finding.id for finding in findings}
+    # what stands under another finding of its circuit is told there
+    findings = [
+        told_of.get(finding.id, finding)
+        for finding in findings
+        if finding.circuit not in judged_tags or finding.id in told_of
+    ]
     for result in results:
-        findings += [finding for finding in result.findings if finding not in of_circuit.get(result.circuit, ())]
+        findings += [finding for finding in result.findings if finding.id not in first]
         gaps += result.not_judged
     return Assessment(
         program=version("ohmwalk"),
         site=site.name,
         limits=limits.name,
         circuits=tuple(results),
-        findings=tuple(findings),
+        findings=tuple(folded(findings)),
         not_judged=tuple(gaps),
         cautions=tuple(caution.text for caution in cautions_of(site)),
         rule_changes=changes_of(limits),
@@ -166,8 +176,8 @@ def _judged(
     """A circuit's case and what is said of it, but for the next reading."""
     case = case_of(context, circuit, readings)
     found, gaps = judge(case, "circuit")
-    findings = sorted([*more, *found], key=lambda finding: finding.severity.rank)
-    status, why = _status(case, findings)
+    status, why = _status(case, sorted([*more, *found], key=lambda finding: finding.severity.rank))
+    findings = sorted(folded([*more, *found]), key=lambda finding: finding.severity.rank)
     known = [load for load in case.loads if not load.gap]
     worst = max(known, key=lambda load: load.drop_v, default=None)
     return case, CircuitResult(

@@ -86,6 +86,14 @@ class Finding:
     caution: str
     source: str
     consequences: tuple[str, ...] = ()
+    by_profile: bool = False
+    """Whether the limits profile sets its severity, which nothing graver that it explains then raises: that stands beside it."""
+    under: tuple[str, ...] = ()
+    """Ids of findings that explain it, or ``RULE/place`` of any of that rule there: it goes under the first that stands."""
+    as_consequence: str = ""
+    """What it says there; empty where that is its ``why``."""
+    holds: tuple[Finding, ...] = ()
+    """Those that went under it, as they would stand on their own."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -306,6 +314,7 @@ class CircuitResult:
     """Capacity and temperature in service of each run."""
     next_reading: NextReading | None = None
     findings: tuple[Finding, ...] = ()
+    """All that are about it, those too that the site's list has under a finding of its source."""
     not_judged: tuple[NotJudged, ...] = ()
 
 

@@ -93,10 +93,10 @@ class CircuitCase:
 
     def is_vital(self, point: str) -> bool:
         """Whether a life-safety or trip-or-close load hangs on a point or behind it."""
-        behind = {end for end in self.tree.ends if point in ("bus", "way") or self._passes(end, point)} | {point}
+        behind = {end for end in self.tree.ends if point in ("bus", "way") or self.leads_over(end, point)} | {point}
         return any(each.load.function_or_default != "ordinary" and each.load.point in behind for each in self.loads)
 
-    def _passes(self, end: str, point: str) -> bool:
+    def leads_over(self, end: str, point: str) -> bool:
         """Whether the way from the source to ``end`` leads over ``point``."""
         for _ in self.tree.ends:
             run = self.tree.ends.get(end)

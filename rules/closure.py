@@ -14,6 +14,9 @@ from rules.rounds import Round, Tree
 from rules.units import show
 
 Terms = tuple[Weighted, ...]
+TWO = "the two voltages"
+BY_WAY = "by way of "
+"""How two ways of knowing a drop are said."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,9 +85,9 @@ def _drops(this: Round) -> dict[tuple[str, str], list[tuple[str, Terms]]]:
             both[pair] = known
     for (start, end), known in both.items():
         if start in this.volts and end in this.volts:
-            known.append(("the two voltages", this.volts[start] + _negative(this.volts[end])))
+            known.append((TWO, this.volts[start] + _negative(this.volts[end])))
         known += [
-            (f"by way of {middle}", both[start, middle][0][1] + both[middle, end][0][1])
+            (f"{BY_WAY}{middle}", both[start, middle][0][1] + both[middle, end][0][1])
             for first, middle in both
             if first == start and (middle, end) in both and middle != end
         ]

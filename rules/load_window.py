@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from rules.case import CircuitCase
+from rules.limits import Limits
 from rules.record import Load
 
 
@@ -22,20 +22,24 @@ class Bound:
     def is_own(self) -> bool:
         return not self.key
 
+    @property
+    def whose_of_several(self) -> str:
+        return "their" if self.is_own else self.whose
 
-def lowest_of(case: CircuitCase, load: Load) -> Bound | None:
+
+def lowest_of(load: Load, nominal_v: float | None, limits: Limits) -> Bound | None:
     """The lowest voltage of a load; ``None`` where neither it nor the profile states one."""
-    return _bound(case, load.lowest_voltage_v, "lowest_percent", case.limits["load_window.lowest_percent"])
+    return _bound(load.lowest_voltage_v, nominal_v, "lowest_percent", limits["load_window.lowest_percent"])
 
 
-def highest_of(case: CircuitCase, load: Load) -> Bound | None:
+def highest_of(load: Load, nominal_v: float | None, limits: Limits) -> Bound | None:
     """The highest voltage of a load; ``None`` where neither it nor the profile states one."""
-    return _bound(case, load.highest_voltage_v, "highest_percent", case.limits["load_window.highest_percent"])
+    return _bound(load.highest_voltage_v, nominal_v, "highest_percent", limits["load_window.highest_percent"])
 
 
-def source_of(case: CircuitCase, bound: Bound) -> str | None:
+def source_of(limits: Limits, bound: Bound) -> str | None:
     """Where the profile's bound comes from; ``None`` of a load's own."""
-    return None if bound.is_own else case.limits.citation("load_window", bound.key)
+    return None if bound.is_own else limits.citation("load_window", bound.key)
 
 
 def unused(bound: Bound) -> tuple[str, ...]:
@@ -43,9 +47,9 @@ def unused(bound: Bound) -> tuple[str, ...]:
     return ("load_window",) if bound.is_own else ()
 
 
-def _bound(case: CircuitCase, own_v: float | None, key: str, percent: float) -> Bound | None:
+def _bound(own_v: float | None, nominal_v: float | None, key: str, percent: float) -> Bound | None:
     if own_v is not None:
         return Bound(own_v, "its", "")
-    if percent == 0 or case.nominal_v is None:
+    if percent == 0 or nominal_v is None:
         return None
-    return Bound(percent / 100 * case.nominal_v, "the profile's", key)
+    return Bound(percent / 100 * nominal_v, "the profile's", key)

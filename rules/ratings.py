@@ -18,8 +18,15 @@ class Rating:
 
     category: str
     """``CAT III``; empty where a voltage alone is known."""
-    voltage_v: float | None
-    """[V]"""
+    printed_v: float | None
+    """Beside the category. [V]"""
+    rated_v: float | None = None
+    """What is recorded of the meter as a whole, leads and range included. [V]"""
+
+    @property
+    def voltage_v(self) -> float | None:
+        """The lower of both. [V]"""
+        return min((volts for volts in (self.printed_v, self.rated_v) if volts is not None), default=None)
 
     @property
     def rank(self) -> int:
@@ -44,21 +51,16 @@ def ratings_of(row: Instrument) -> tuple[Rating, ...]:
     The recorded voltage holds for every category that is printed without one, and bounds the others.
 
     >>> [str(each) for each in ratings_of(Instrument(id="m", category="CAT III 600 V, CAT IV 300 V"))]
-    ["Rating(category='CAT III', voltage_v=600.0)", "Rating(category='CAT IV', voltage_v=300.0)"]
+    ["Rating(category='CAT III', printed_v=600.0, rated_v=None)", "Rating(category='CAT IV', printed_v=300.0, rated_v=None)"]
     >>> ratings_of(Instrument(id="m", rated_voltage_v=600.0))
-    (Rating(category='', voltage_v=600.0),)
+    (Rating(category='', printed_v=None, rated_v=600.0),)
     """
     most = row.rated_voltage_v
     printed = [
-        Rating(f"CAT {match[1].upper()}", _least(float(match[2]) if match[2] else None, most))
+        Rating(f"CAT {match[1].upper()}", float(match[2]) if match[2] else None, most)
         for match in _PRINTED.finditer(row.category)
     ]
-    return tuple(printed) or ((Rating("", most),) if most is not None else ())
-
-
-def _least(one: float | None, other: float | None) -> float | None:
-    known = [value for value in (one, other) if value is not None]
-    return min(known) if known else None
+    return tuple(printed) or ((Rating("", None, most),) if most is not None else ())
 
 
 def highest_v(place: Circuit | Board | Source, index: Index) -> float | None:
@@ -94,14 +96,18 @@ def asked_of(place: Circuit | Board | Source, index: Index) -> tuple[Board | Sou
 
 def words(ratings: Sequence[Rating]) -> str:
     """
-    Ratings as they are said.
+    Ratings as they are said: what is printed, then the meter's own voltage where that is another.
 
-    >>> words([Rating("CAT III", 600.0), Rating("CAT IV", None)]), words([Rating("", 600.0)])
-    ('CAT III 600 V, CAT IV', '600 V')
+    >>> words([Rating("CAT III", 600.0), Rating("CAT IV", None)]), words([Rating("", None, 600.0)])
+    ('CAT III 600 V, CAT IV', 'rated 600 V')
+    >>> words([Rating("CAT II", 150.0, 120.0)]), words([Rating("CAT II", 150.0, 150.0)])
+    ('CAT II 150 V, rated 120 V', 'CAT II 150 V')
     """
-    return ", ".join(
+    printed = [
         " ".join(
-            part for part in (each.category, f"{each.voltage_v:g} V" if each.voltage_v is not None else "") if part
+            part for part in (each.category, f"{each.printed_v:g} V" if each.printed_v is not None else "") if part
         )
         for each in ratings
-    )
+    ]
+    rated = [f"rated {each.rated_v:g} V" for each in ratings if each.rated_v not in (None, each.printed_v)]
+    return ", ".join(dict.fromkeys(part for part in (*printed, *rated) if part))

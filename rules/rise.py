@@ -20,6 +20,8 @@ from rules.rounds import Round, current_at
 from rules.units import show
 
 PLACE = re.compile(r"device|run (\d+) (start|end)")
+INSULATION_C = {"PVC": 70.0, "XLPE": 90.0, "EPR": 90.0}
+"""Conductor temperature that insulation bears for good: IEC 60364-5-52, Table 52.1, from memory. [degC]"""
 ALIKE = 0.1
 """Relative: two terminations whose currents differ by no more are similar. Our own default."""
 
@@ -85,12 +87,23 @@ def _of_round(case: CircuitCase, this: Round) -> Iterator[Rise]:
             for other, value in places.items()
             if other != place and (other == "device") == (place == "device") and _are_alike(amps[place], amps[other])
         }
+        against = "device_ambient" if place == "device" else "ambient"
         if similar:
             coolest = min(similar, key=lambda other: similar[other].value)
             words = f"{coolest}, the coolest similar one"
-            yield _rise(case, this, place, temperature, similar[coolest], words, amps[place], "similar")
+            above = _rise(case, this, place, temperature, similar[coolest], words, amps[place], "similar")
+            yield above
+            if above.severity is None and _conductor_bears(case, place, temperature):
+                continue  # alike hot: the conductor's own heat, no joint's
         if ambient is not None:
-            yield _rise(case, this, place, temperature, *ambient, amps[place], "ambient")
+            yield _rise(case, this, place, temperature, *ambient, amps[place], against)
+
+
+def _conductor_bears(case: CircuitCase, place: str, read: Figure) -> bool:
+    """Whether a temperature is not beyond doubt above what the insulation of the run there lives with."""
+    run = case.tree.ends.get(_branch(case, place))
+    most = INSULATION_C.get(run.insulation, INSULATION_C["PVC"]) if run is not None else INSULATION_C["PVC"]
+    return against_limit(read.value, most, read.u or 0.0, case.limits) is not Verdict.FAILS
 
 
 def _rise(
@@ -115,7 +128,9 @@ def _rise(
     if against_limit(scaled.value, soon_k, scaled.u or 0.0, limits) is Verdict.FAILS:
         severity = Severity.SOON
     told = how.format(show(scaled.value, "K", scaled.u))
-    return Rise(place, this.name, read, rise, above, scaled, told, full, severity, watch is Verdict.OPEN)
+    return Rise(
+        place, this.name, read, rise, above, scaled, told, full, severity, watch is Verdict.OPEN and rise.value > 0
+    )
 
 
 def _scale(case: CircuitCase, place: str, amps: Figure | None) -> tuple[float, float, str, bool]:
@@ -169,9 +184,7 @@ def _ambient(case: CircuitCase, rows: list[Reading]) -> tuple[Figure, str] | Non
 
 
 def _mean(case: CircuitCase, rows: list[Reading]) -> Figure:
+    """Of one place, with the doubt of the probe's contact, which another reading at the same place does not lessen."""
     shown = [worth(row, case.context.index, case.limits).shown for row in rows]
-    return Figure(*_with_unit(total([Weighted(1 / len(shown), one) for one in shown])))
-
-
-def _with_unit(found: tuple[float, float]) -> tuple[float, str, float]:
-    return found[0], "degC", found[1]
+    value, u = total([Weighted(1 / len(shown), one) for one in shown])
+    return Figure(value, "degC", math.hypot(u, case.limits["temperature_doubt.probe"]))

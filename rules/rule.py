@@ -1,4 +1,12 @@
-"""The machinery of rules: one rule, one file in ``rules/checks/``, found by walking that folder."""
+"""
+The machinery of rules: one rule, one file in ``rules/checks/``, found by walking that folder.
+
+A cause and what follows from it are one finding. A rule says of what it may be a consequence, ``@rule(under=("VD01",))``; its
+finding names those that would explain it where they stand, ``finding(…, under=(named("VD01", case, "p1"),))``. After all
+rules have spoken, ``rules.fold`` puts it under the first of these that was found: its ``why`` (or ``as_consequence``) becomes a
+consequence there, its numbers, caution and source are kept, and the whole has the gravest severity. Where the cause was not found, or
+its rule is switched off or lowered by the profile to less than it, it stands on its own; no rule asks whether another one speaks.
+"""
 
 from __future__ import annotations
 
@@ -66,6 +74,8 @@ class Rule:
     """Groups of the limits profile that it decides by."""
     also_about: tuple[About, ...] = ()
     """Other kinds of thing that it judges in the same way."""
+    under: tuple[str, ...] = ()
+    """Rules whose findings may explain one of its own, which then goes under theirs."""
 
     @property
     def text(self) -> str:
@@ -86,16 +96,21 @@ class Rule:
         consequences: tuple[str, ...] = (),
         as_circuit: str | None = None,
         without: tuple[str, ...] = (),
+        under: tuple[str, ...] = (),
+        as_consequence: str = "",
     ) -> Finding:
         """
         A finding of this rule; its ``id`` is built from rule, place and ``where``.
 
-        ``as_circuit`` is for rules about the site that report on a circuit; ``without`` are groups of its ``limits`` that
-        had no part in this finding. Values that the site's profile changes are named beside the source.
+        ``as_circuit`` is for rules about the site that report on a circuit; ``without`` are groups of its ``limits``, or
+        keys of them (``drop.allowed_percent``), that had no part in this finding. Values that the site's profile changes
+        are named beside the source. ``under`` names the findings that explain this one, the first that stands;
+        ``as_consequence`` is what it says there instead of ``why``.
         """
+        strange = [name for name in under if name.partition("/")[0] not in self.under]
+        assert not strange, f"{self.id} does not say that it may stand under {strange}"
         circuit = case.tag if isinstance(case, CircuitCase) else as_circuit
         board = case.tag if isinstance(case, BoardCase) else None
-        place = circuit if circuit is not None else f"board {board}" if board is not None else "site"
         limits = case.context.limits
         severity = severity or self.severity
         sources = [source or str(self.source)]
@@ -107,7 +122,7 @@ class Rule:
             )
             severity = setting.severity
         return Finding(
-            id="/".join(_unslashed(part) for part in (self.id, place, where) if part),
+            id=named(self.id, as_circuit if as_circuit is not None else case, where),
             rule=self.id,
             circuit=circuit,
             board=board,
@@ -121,6 +136,9 @@ class Rule:
             caution=self.caution,
             source="; ".join(sources),
             consequences=consequences,
+            by_profile=setting is not None and setting.severity is not None,
+            under=under,
+            as_consequence=as_consequence,
         )
 
     def _changed_limits(self, limits: Limits, without: tuple[str, ...]) -> list[str]:
@@ -128,8 +146,8 @@ class Rule:
         changed = [
             str(stated)
             for name in self.limits
-            if name not in without
-            for stated in limits.groups[name].by_source()
+            if (keys := limits.groups[name].deciding(without))
+            for stated in limits.groups[name].by_source(keys)
             if stated.origin != ROOT
         ]
         return list(dict.fromkeys(changed))
@@ -137,6 +155,24 @@ class Rule:
     def gap(self, case: Case, where: str, why: str) -> NotJudged:
         """What this rule could not judge at one place; the rest of the case goes on."""
         return NotJudged(self.id, case.tag if isinstance(case, CircuitCase) else None, where, why)
+
+
+def named(rule_id: str, place: Case | Source | Board | str, where: str = "") -> str:
+    """
+    The id of a rule's finding at a place; without ``where`` it stands for any that the rule finds there.
+
+    ``place`` is a case, a board or source, or the tag of a circuit.
+
+    >>> named("VD01", "B1/7", "p1"), named("SR01", Source(id="s", tag="BAT"), "terminals")
+    ('VD01/B1%2F7/p1', 'SR01/board BAT/terminals')
+    """
+    if isinstance(place, SiteCase):
+        tag = "site"
+    elif isinstance(place, BoardCase | Board | Source):
+        tag = f"board {place.tag}"
+    else:
+        tag = place if isinstance(place, str) else place.tag
+    return "/".join(_unslashed(part) for part in (rule_id, tag, where) if part)
 
 
 def _unslashed(part: str) -> str:
@@ -156,11 +192,12 @@ def rule(
     also: tuple[Citation, ...] = (),
     limits: tuple[str, ...] = (),
     also_about: tuple[About, ...] = (),
+    under: tuple[str, ...] = (),
 ) -> Callable[[Callable[[Any], Iterator[Finding | NotJudged]]], Rule]:
     """Make a rule of a function that yields findings, and what it could not judge, about one case."""
 
     def made(check: Callable[[Any], Iterator[Finding | NotJudged]]) -> Rule:
-        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits, also_about)
+        return Rule(id, title, about, severity, remedy, caution, source, check, also, limits, also_about, under)
 
     return made
 

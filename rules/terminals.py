@@ -6,6 +6,8 @@ from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
+import numpy as np
+
 from rules.calc.doubt import Weighted, probability_above, total
 from rules.context import Context
 from rules.limits import Limits
@@ -13,6 +15,8 @@ from rules.meters import worth
 from rules.record import Board, Figure, Reading, Source
 from rules.rounds import Round, judged
 
+REGULATED = ("rectifier", "power supply", "converter")
+"""Kinds of source that hold their working voltage; a battery's falls while it discharges."""
 HEALTHY_AT_MOST = 2.0
 """Times its typical resistance that a healthy device may have; our own default."""
 
@@ -115,6 +119,23 @@ def below_its_lowest(context: Context, node: int) -> AtTerminals | None:
     return surely_below(read, float(context.network.held_lowest_v[node]), context.limits)
 
 
+def lacking_v(context: Context, node: int, circuit_id: str) -> float:
+    """
+    What a source lacked at its terminals where it was read least, on a busbar or at the ``bus`` of one circuit. [V]
+
+    Of its working voltage where it is regulated, or of the most that was read; of a battery, which discharges, of its lowest.
+    0 where nothing was read.
+    """
+    network = context.network
+    own = _of_circuit(context, circuit_id) if network.nodes_of[circuit_id]["bus"] == node else ()
+    volts = [one.voltage.value for one in _of_latest_visit(context, [*_busbars(context, node), *own])]
+    if not volts:
+        return 0.0
+    if any(source.kind in REGULATED for source in network.sources_at(node)):
+        return float(np.nanmax([network.held_v[node], *volts])) - min(volts)
+    return 0.0 if network.gap_lowest[node] else max(float(network.held_lowest_v[node]) - min(volts), 0.0)
+
+
 def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
     index = context.index
     for table, row_id in context.network.hanging.rows_at.get(node, ()):
@@ -133,15 +154,15 @@ def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
 
 def _circuits(context: Context, node: int) -> Iterator[AtTerminals]:
     for circuit_id in context.network.hanging.circuits_at.get(node, ()):
-        circuit, measured = context.index.circuits[circuit_id], context.measured.get(circuit_id)
-        if measured is None:
-            continue
-        for this in measured.rounds:
-            if "bus" in this.volts:
-                first = _first_current(this, tuple(measured.tree.ends))
-                yield AtTerminals(
-                    f"bus of {circuit.tag}", measured.visit, this.name, this.volts["bus"], first, whole=False
-                )
+        yield from _of_circuit(context, circuit_id)
+
+
+def _of_circuit(context: Context, circuit_id: str) -> Iterator[AtTerminals]:
+    circuit, measured = context.index.circuits[circuit_id], context.measured.get(circuit_id)
+    for this in measured.rounds if measured is not None else ():
+        if "bus" in this.volts and measured is not None:
+            first = _first_current(this, tuple(measured.tree.ends))
+            yield AtTerminals(f"bus of {circuit.tag}", measured.visit, this.name, this.volts["bus"], first, whole=False)
 
 
 def _behind_devices(context: Context, node: int) -> Iterator[AtTerminals]:

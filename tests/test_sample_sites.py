@@ -16,6 +16,7 @@ import pytest
 
 from audit.intake.folder import read_folder
 from audit.opening import judge_site
+from audit.report.sections import evidence_words
 from rules import limits
 from rules.assess import prepare
 from rules.assessment import Assessment, Status
@@ -23,9 +24,11 @@ from rules.consistency import problems
 from rules.index import Index
 from rules.meters import instrument_row
 from rules.record import TABLES, Site
+from rules.verdict import probability_words
 from sample_sites.catalogue import EXPECTED, SAMPLE_SITES, SampleSite, UnknownSampleSite, sample_site
 
 every_site = pytest.mark.parametrize("sample", SAMPLE_SITES, ids=lambda sample: sample.name)
+Told = tuple[str, str | None, str, str, tuple[str, ...]]
 INVENTED = "Invented building for demonstration; no real place, person or product"
 
 
@@ -45,9 +48,12 @@ def stated(sample: SampleSite) -> dict[str, Any]:
     return tomllib.loads(sample.folder.joinpath(EXPECTED).read_text(encoding="utf-8"))
 
 
-def key(row: dict[str, Any]) -> tuple[str, str | None, str, str]:
-    """What tells a stated finding: its rule, the circuit, board or source (none for the site), where, and how soon."""
-    return row["rule"], place(row), row["where"], row["severity"]
+def key(row: dict[str, Any]) -> Told:
+    """
+    What tells a stated finding: its rule, the circuit, board or source (none for the site), where, how soon, and the rules
+    of the findings that went under it.
+    """
+    return row["rule"], place(row), row["where"], row["severity"], tuple(sorted(row.get("holds", ())))
 
 
 def place(row: dict[str, Any]) -> str | None:
@@ -55,9 +61,12 @@ def place(row: dict[str, Any]) -> str | None:
     return row.get("circuit") or row.get("board")
 
 
-def found(assessment: Assessment) -> Counter[tuple[str, str | None, str, str]]:
+def found(assessment: Assessment) -> Counter[Told]:
     """The findings of a check, as they are stated."""
-    return Counter((f.rule, f.circuit or f.board, f.where, str(f.severity)) for f in assessment.findings)
+    return Counter(
+        (f.rule, f.circuit or f.board, f.where, str(f.severity), tuple(sorted(held.rule for held in f.holds)))
+        for f in assessment.findings
+    )
 
 
 @every_site
@@ -84,6 +93,19 @@ def test_every_seeded_fault_is_found_and_every_finding_is_of_a_seeded_fault(samp
     findings = [*content["finding"], *content.get("earlier", [])]
     assert {(row["rule"], place(row), row.get("visit", "")) for row in findings} == seeded
     assert all(bool(fault.get("found_by")) != bool(fault.get("not_found")) for fault in content["seeded"])
+
+
+@every_site
+def test_a_finding_and_its_line_of_claims_state_one_probability(sample: SampleSite) -> None:
+    assessment = assessment_of(sample)
+    words = evidence_words(assessment)
+    stated = [
+        (f, f.numbers["probability"].value) for f in assessment.findings if f.cause and "probability" in f.numbers
+    ]
+    assert stated
+    for finding, probability in stated:
+        assert words(finding) == f"{finding.cause}, probability {probability_words(probability)}"
+        assert probability_words(probability) in finding.why
 
 
 @every_site

@@ -13,7 +13,7 @@ import io
 
 from audit.report.blocks import Content
 from audit.report.phrases import finding_place, number_words, status_words
-from audit.report.sections import by_severity, decisions_of, rules_set_aside
+from audit.report.sections import by_severity, decided_words, decisions_of, rules_set_aside
 from rules.text import clean
 
 BYTE_ORDER_MARK = "\ufeff"
@@ -61,7 +61,7 @@ def csv_report(content: Content) -> str:
             finding.remedy,
             finding.caution,
             finding.source,
-            decided.get(finding.id, ""),
+            decided_words(finding, decided),
             set_aside,
         )
         writer.writerow([safe_cell(cell) for cell in cells])

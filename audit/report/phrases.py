@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from audit.report.bar import Bar, drop_bar
@@ -59,6 +60,8 @@ def limits_defer(limits: str) -> str:
 
 PROBABILITY = "probability"
 """Name of the number of a finding that says how sure its cause is."""
+MOST_LISTED = 12
+"""Consequences or numbers of one finding that a page lists."""
 LEAST_SURE = 0.999
 """Probability above which a finding says no more than that it is above it."""
 CAUSES_NOT_JUDGED = (
@@ -90,6 +93,17 @@ def number_words(finding: Finding) -> tuple[str, ...]:
         for name, figure in finding.numbers.items()
         if math.isfinite(figure.value)
     )
+
+
+def some_of(texts: Sequence[str]) -> str:
+    """
+    Texts in one line, the first twelve of very many; the JSON and the table have them all.
+
+    >>> some_of(["a", "b"]), some_of([str(n) for n in range(14)])
+    ('a; b', '0; 1; 2; 3; 4; 5; 6; 7; 8; 9; 10; 11; and 2 more')
+    """
+    more = [f"and {len(texts) - MOST_LISTED} more"] if len(texts) > MOST_LISTED + 1 else []
+    return "; ".join([*texts[: MOST_LISTED if more else None], *more])
 
 
 def certainty_words(probability: float) -> str:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from itertools import groupby
 
 from audit.report.blocks import Blanks, Block, Bullets, Cell, Column, Facts, FindingCard, Paragraph, Section, Table
@@ -21,6 +21,7 @@ from audit.report.phrases import (
     number_words,
     place_words,
     share_words,
+    some_of,
     status_words,
     time_words,
 )
@@ -167,7 +168,7 @@ def walk(index: Index, assessment: Assessment) -> Section:
 
 
 def evidence_words(assessment: Assessment) -> Callable[[Finding], str]:
-    """How sure a finding's cause is, apart from how soon it asks for action; empty where not judged."""
+    """How sure a finding's cause is, apart from how soon it asks for action: as the finding says itself, else as the causes do."""
     causes: dict[tuple[str, str, str], float] = defaultdict(float)
     for result in assessment.circuits:
         for place in result.causes:
@@ -177,8 +178,10 @@ def evidence_words(assessment: Assessment) -> Callable[[Finding], str]:
     def words(finding: Finding) -> str:
         if finding.cause is None or finding.circuit is None:
             return ""
+        stated = finding.numbers.get("probability")
         of_cause = causes.get((finding.circuit, finding.cause, ""))
-        probability = causes.get((finding.circuit, finding.cause, finding.where), of_cause)
+        of_place = causes.get((finding.circuit, finding.cause, finding.where), of_cause)
+        probability = of_place if stated is None else stated.value
         return (
             finding.cause if probability is None else f"{finding.cause}, probability {probability_words(probability)}"
         )
@@ -197,6 +200,12 @@ def decisions_of(site: Site) -> dict[str, str]:
     }
 
 
+def decided_words(finding: Finding, decided: Mapping[str, str], open_: str = "") -> str:
+    """The decision on a finding (``open_`` where there is none), and those on what went under it, each with its id."""
+    of_others = [f"{held.id}: {decided[held.id]}" for held in finding.holds if held.id in decided]
+    return "; ".join(part for part in (decided.get(finding.id, open_), *of_others) if part)
+
+
 def finding_cards(site: Site, assessment: Assessment, findings: Iterable[Finding], full: bool) -> tuple[Block, ...]:
     """
     Findings as cards.
@@ -210,12 +219,12 @@ def finding_cards(site: Site, assessment: Assessment, findings: Iterable[Finding
             ("Place", finding_place(finding)),
             ("Why", finding.why),
             ("Claims", evidence(finding)),
-            ("Numbers", "; ".join(number_words(finding)) if full else ""),
-            ("If left", "; ".join(finding.consequences)),
+            ("Numbers", some_of(number_words(finding)) if full else ""),
+            ("If left", some_of(finding.consequences)),
             ("Do", finding.remedy),
             ("Caution", finding.caution),
             ("Source", finding.source if full else ""),
-            ("Decided", decided.get(finding.id, "")),
+            ("Decided", decided_words(finding, decided)),
         ]
         cards.append(FindingCard(finding.id, finding.severity, finding.title, tuple((k, v) for k, v in rows if v)))
     return tuple(cards)

@@ -6,7 +6,16 @@ from collections import defaultdict
 
 from audit.report.blocks import Block, Bullets, Cell, Column, Facts, Paragraph, Section, Table
 from audit.report.phrases import STATUS_MEANING, drop_words, finding_place, place_words, status_words
-from audit.report.sections import by_severity, decisions_of, head, of_circuits, sign_off, statements, tested_facts
+from audit.report.sections import (
+    by_severity,
+    decided_words,
+    decisions_of,
+    head,
+    of_circuits,
+    sign_off,
+    statements,
+    tested_facts,
+)
 from rules.assessment import Assessment, CircuitResult, Severity
 from rules.index import Index
 from rules.record import Site
@@ -87,7 +96,7 @@ def _actions(site: Site, assessment: Assessment) -> tuple[Block, ...]:
     places: dict[tuple[str, str, str, str], list[str]] = {}
     for finding in by_severity(assessment.findings):
         if finding.severity in (Severity.IMMEDIATE, Severity.SOON):
-            standing = decided.get(finding.id, "open")
+            standing = decided_words(finding, decided, "open")
             action = (str(finding.severity), finding.title, finding.remedy, standing)
             places.setdefault(action, []).append(finding_place(finding))
     rows: list[tuple[Cell, ...]] = [

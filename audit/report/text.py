@@ -29,6 +29,7 @@ from audit.report.phrases import (
     limits_defer,
     next_reading_words,
     number_words,
+    some_of,
     status_words,
 )
 from audit.report.records import board_title, location_of
@@ -244,8 +245,8 @@ def _findings(page: Page, assessment: Assessment) -> None:
 def _finding_rows(finding: Finding, evidence: str) -> Iterator[tuple[str, str]]:
     yield "why", finding.why
     yield "claims", evidence
-    yield "numbers", "; ".join(number_words(finding))
-    yield "if left", "; ".join(finding.consequences)
+    yield "numbers", some_of(number_words(finding))
+    yield "if left", some_of(finding.consequences)
     yield "do", finding.remedy
     yield "caution", finding.caution
     yield "source", finding.source

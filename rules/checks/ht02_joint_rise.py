@@ -41,11 +41,14 @@ def joint_rise(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     coolest similar one of the same round and current, or above the ambient, and its rise is scaled to full load by the
     square of the current: practice, since a rise follows the current to the power of 1.5 to 2. Over similar ones it is for
     watch from 4 K and soon from 15 K on; over the ambient from 21 K and 40 K on. Below 40 % of full load nothing is scaled:
-    the rise as read stands.
+    the rise as read stands. Every reading has the doubt of the probe's contact beside the meter's. Over the ambient, a device
+    counts from 60 K and 80 K on, since its terminals may warm by 60 K; two ends of a run that are alike hot have the conductor's
+    own heat and count only above what its insulation bears.
 
     **Finds**: 62 °C at one end of a run and 38 °C at the other, at half load: 24 K, 96 K at full load.
 
-    **Leaves alone**: 40 °C and 38 °C at full load; a joint that VD02 or HT01 reports, with its temperature there.
+    **Leaves alone**: 40 °C and 38 °C at full load; a breaker with 70 °C at 25 °C of ambient; a joint
+    that VD02 or HT01 reports, with its temperature there.
     """
     hot = {found.joint.place for found in hot_joints(case) if isinstance(found, Hot)}
     for place, rise in rises_of(case).items():
@@ -59,7 +62,7 @@ def joint_rise(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 numbers={"temperature": rise.read, "rise": rise.rise, "rise at full load": rise.scaled},
                 severity=rise.severity,
             )
-        elif rise.open:
+        elif rise.open and rise.full:
             scaled = show(rise.scaled.value, "K", rise.scaled.u)
             yield joint_rise.gap(case, place, f"not settled: {scaled} above {rise.above} at full load")
         elif not rise.full and rise.rise.value > 0:

@@ -77,14 +77,19 @@ def _ratings(meter: str, index: Index) -> tuple[Rating, ...]:
 def _judged(ratings: tuple[Rating, ...], asked: str, highest: float | None) -> tuple[str, dict[str, Figure]] | None:
     """What stands against a meter, empty where nothing does; ``None`` where too little is recorded to say."""
     enough = [each for each in ratings if each.rank >= rank(asked)]
-    if asked and not enough:
-        known = [each for each in ratings if each.category]
-        return (f"is {words(known)} where {asked} is asked for", {}) if known else None
-    volts = max((each.voltage_v for each in enough if each.voltage_v is not None), default=None)
-    if volts is None or highest is None:
-        return None if not enough or volts is None else ("", {})
-    if volts >= highest:
-        return "", {}
+    known = [each for each in ratings if each.category]
+    category_fails = bool(asked and known and not enough)
+    if not enough and not category_fails:
+        return None
+    volts = max((each.voltage_v for each in enough or known if each.voltage_v is not None), default=None)
+    if volts is None or highest is None or volts >= highest:
+        if category_fails:
+            return f"is {words(known)}, where {asked} is asked for", {}
+        return None if volts is None else ("", {})
     rated, reached = show_against(volts, highest, "V")
     numbers = {"rated": Figure(volts, "V"), "highest": Figure(highest, "V")}
+    if category_fails:
+        return f"is {words(known)}, where {asked} is asked for and the voltage reaches {reached}", numbers
+    if known and all(each.printed_v != volts for each in enough):
+        return f"is {words(known)}, where the voltage reaches {reached}", numbers
     return f"is rated {rated}{f' in {asked}' if asked else ''} where the voltage reaches {reached}", numbers

@@ -1,6 +1,7 @@
 """LV01: a load gets less than its lowest voltage."""
 
 from collections.abc import Iterator
+from dataclasses import replace
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above
@@ -10,9 +11,13 @@ from rules.impossible import dead_points
 from rules.load_window import Bound, lowest_of, source_of, unused
 from rules.margins import margins_of
 from rules.record import Figure
-from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
-from rules.terminals import below_its_lowest
+from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, named, rule
+from rules.terminals import below_its_lowest, lacking_v
 from rules.units import show, show_against
+
+SOURCE_FIRST = "See to its source first; then read the load again, and find what the path loses if it is still too low."
+MOST_NAMED = 3
+"""Further loads that a finding by the profile names."""
 
 
 @rule(
@@ -25,6 +30,7 @@ from rules.units import show, show_against
     "safety first, with the duty holder's permission. Computed with healthy joints: what readings show may be worse.",
     source=Citation("the load maker's lowest voltage", status="common practice, no source"),
     limits=("decision", "load_window", "readings", "temperature", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    under=("VD01", "VD03", "SR01"),
 )
 def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
@@ -33,24 +39,45 @@ def load_below_lowest(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     **Finds**: 48 V battery down to 43.2 V, 0.20 Ω of path, a 600 W constant-power load with a lowest of 40.5 V: 40.2 V.
     Severity is immediate where a life-safety or trip-or-close load was read below its lowest. A load that records none is
     held against the lowest of its trade's profile, where that states one: for watch, or soon where such a load was read
-    below it.
+    below it, one finding for a circuit's loads. By the record it is a consequence where its path loses more than is allowed (VD01, VD03);
+    as read, where it would have enough if its source had what it should (SR01). A life-safety or trip-or-close load is always
+    a finding of its own.
 
     **Leaves alone**: the same load of 500 W: 40.7 V. A voltage within its doubt of the limit is not judged, nor a load
     that cannot be supplied at all (NW01).
     """
-    bounds = [(point, lowest_of(case, point.load)) for point in case.loads]
+    bounds = [(point, lowest_of(point.load, case.nominal_v, case.limits)) for point in case.loads]
     unknown = [point.load.tag for point, bound in bounds if bound is None]
     if unknown:
         more = f" and of {len(unknown) - 1} more" if len(unknown) > 1 else ""
         yield load_below_lowest.gap(case, "", f"the lowest voltage of “{unknown[0]}”{more} is not known")
+    of_trade: dict[tuple[object, ...], list[tuple[str, Finding]]] = {}
     for point, bound in bounds:
-        if bound is not None:
-            yield from _judge(case, point, bound)
+        for said in _judge(case, point, bound) if bound is not None else ():
+            if isinstance(said, Finding) and bound is not None and not bound.is_own:
+                kind = said.severity, said.under, "source" in said.numbers
+                of_trade.setdefault(kind, []).append((point.load.tag, said))
+            else:
+                yield said
+    for alike in of_trade.values():
+        yield _together(alike)
+
+
+def _together(alike: list[tuple[str, Finding]]) -> Finding:
+    """One finding for loads of a circuit that are below what the profile states of their trade: at the lowest of them."""
+    first = min((finding for _, finding in alike), key=lambda finding: finding.numbers["voltage"].value)
+    others = [(tag, finding.numbers["voltage"]) for tag, finding in alike if finding is not first]
+    if not others:
+        return first
+    told = [f"{tag} with {show(volts.value, 'V', volts.u)}" for tag, volts in others[:MOST_NAMED]]
+    more = f" and {len(others) - MOST_NAMED} more" if len(others) > MOST_NAMED else ""
+    also = f"; below it too: {', '.join(told)}{more}"
+    return replace(first, why=first.why + also, as_consequence=(first.as_consequence or first.why) + also)
 
 
 def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Finding | NotJudged]:
     name, lowest = point.load.tag, bound.volts
-    source, without_groups = source_of(case, bound), unused(bound)
+    source, without_groups = source_of(case.limits, bound), unused(bound)
     without = {
         (this.name, dead)
         for this in case.rounds
@@ -70,17 +97,21 @@ def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Findin
         round_, volts = max(read, key=below)
         if against_limit(volts.value, lowest, volts.u or 0.0, case.limits, above_is_bad=False) is Verdict.FAILS:
             shown, limit = show_against(volts.value, lowest, "V")
-            vital = point.load.function_or_default != "ordinary"
+            vital = _is_vital(point)
+            why = f"{name} was read at {shown} in round {round_}, below {bound.whose} lowest {limit}"
+            of_source, by_source = _source_words(case), tuple(_by_its_source(case, point, volts, lowest))
             yield load_below_lowest.finding(
                 case,
                 _where(case, point),
-                f"{name} was read at {shown} in round {round_}, below {bound.whose} lowest {limit}"
-                f"{_source_words(case)}",
+                f"{why}{of_source}",
                 numbers={"voltage": volts, "lowest": Figure(lowest, "V")},
                 severity=_severity(bound, read=True, vital=vital),
                 source=source,
                 without=without_groups,
                 consequences=tuple(_dip(case, point)),
+                remedy=SOURCE_FIRST if of_source and by_source else None,
+                under=by_source,
+                as_consequence=why,
             )
             return
     volts = Figure(point.lowest_v, "V", point.lowest_u)
@@ -101,6 +132,7 @@ def _judge(case: CircuitCase, point: LoadPoint, bound: Bound) -> Iterator[Findin
             source=source,
             without=without_groups,
             consequences=tuple(_dip(case, point)),
+            under=tuple(_by_its_path(case, point)),
         )
     elif point.lowest_gap:
         yield load_below_lowest.gap(case, point.load.point, point.lowest_gap)
@@ -116,6 +148,32 @@ def _source_words(case: CircuitCase) -> str:
     if low is None:
         return ""
     return f"; its source has {show(low.voltage.value, 'V', low.voltage.u)} at the {low.place}, below its own lowest (SR01)"
+
+
+def _by_its_source(case: CircuitCase, point: LoadPoint, volts: Figure, lowest: float) -> Iterator[str]:
+    """A source by whose fault it is: the load would have enough if it had what it should, whatever the path loses."""
+    network, nodes = case.context.network, case.context.network.nodes_of.get(case.circuit.id)
+    if nodes is None or _is_vital(point):
+        return
+    node = _source(case)
+    lacked_v = lacking_v(case.context, node, case.circuit.id)
+    if volts.value + lacked_v >= lowest:
+        yield named("SR01", network.sources_at(node)[0], "terminals")
+
+
+def _by_its_path(case: CircuitCase, point: LoadPoint) -> Iterator[str]:
+    """A path that loses more than is allowed to this load, by the record too: behind its board, or from the source on."""
+    if _is_vital(point):
+        return
+    allowed_v = case.allowed_drop_percent / 100 * (case.nominal_v or 0.0)
+    if against_limit(point.drop_v, allowed_v, point.drop_u, case.limits) is Verdict.FAILS:
+        yield named("VD01", case)
+    yield named("VD03", case, point.load.point)
+
+
+def _is_vital(point: LoadPoint) -> bool:
+    """What people's safety hangs on stays a finding of its own."""
+    return point.load.function_or_default != "ordinary"
 
 
 def _severity(bound: Bound, *, read: bool, vital: bool) -> Severity:

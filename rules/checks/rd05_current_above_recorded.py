@@ -5,6 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
+from rules.explained import most_explained_a
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
@@ -27,7 +28,9 @@ def current_above_recorded(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
     **Finds**: 2.38 A behind which 0.8 A of loads are recorded.
 
-    **Leaves alone**: 8.3 A where 8 A are recorded, which the profile's margin covers; less than recorded, since loads may be off.
+    **Leaves alone**: 8.3 A where 8 A are recorded, which the profile's margin covers; less than recorded, since loads may be off;
+    what the record explains: all loads on where they are not taken as on together, a constant power at the low voltage that was
+    read, a recorded peak.
     A current behind which a load has no figure is not judged.
     """
     margin = 1 + case.limits["readings.load_margin"]
@@ -43,10 +46,14 @@ def current_above_recorded(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             value, u = total(terms)
             if probability_above(value, margin * design, u) < case.limits["decision.beyond_doubt"]:
                 continue
+            most = most_explained_a(case, point, this)
+            if most is not None and probability_above(value, margin * most, u) < case.limits["decision.beyond_doubt"]:
+                continue
             yield current_above_recorded.finding(
                 case,
                 f"{where}, round {this.name}",
-                f"{show(value, 'A', u)} was read where the loads are recorded to draw {show(design, 'A')}",
+                f"{show(value, 'A', u)} was read where the loads are recorded to draw {show(design, 'A')}"
+                + (f", and {show(most, 'A', digits=3)} at most" if most is not None and most > 1.001 * design else ""),
                 numbers={"current": Figure(value, "A", u), "recorded": Figure(design, "A")},
                 source=case.limits.citation("readings"),
             )

@@ -7,12 +7,13 @@ from rules.calc.doubt import Weighted, probability_above, total
 from rules.limits import Limits
 from rules.record import Figure, Source
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
-from rules.terminals import AtTerminals, at_terminals, low_behind_device, surely_below
+from rules.terminals import REGULATED, AtTerminals, at_terminals, low_behind_device, surely_below
 from rules.units import show
 
-REGULATED = ("rectifier", "power supply", "converter")
-MOST_NAMED = 3
-"""Loads that a consequence names."""
+STAY = (
+    "drops of its circuits are judged by their own currents and stay; what arrives at their ends is the source's doing"
+)
+"""The consequence that each of its findings has."""
 
 
 @rule(
@@ -33,7 +34,8 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
     doubt below the lowest that is recorded of it: soon. Or a rectifier, power supply or converter is more than 2 % below
     its working voltage, or falls by more than 2 % of it between two rounds of one circuit while the current rises: watch.
     Where the terminals were not read, the ``way`` of a circuit with twice what its device loses bounds them from above.
-    Drops of its circuits are judged by their own currents and stay; what their loads have is the source's doing.
+    Drops of its circuits are judged by their own currents and stay; loads behind it that were read below their lowest, and
+    would not be if it had what it should, are told here (LV01).
 
     **Finds**: a power supply of 24 V with 22.10 V at its terminals at 9.8 A, of 10 A rating: it folds back. 24.1 V at 2 A
     and 22.9 V at 8 A at the bus of one circuit.
@@ -111,7 +113,7 @@ def _found(case: BoardCase, node: int, worst: AtTerminals, against: str, limit: 
         numbers={"voltage": worst.voltage, "limit": limit} | ({"current": current} if current is not None else {}),
         severity=severity,
         source=f"{supply_sags.source}; {case.context.limits.citation('supply')}",
-        consequences=tuple(_consequences(case, node)),
+        consequences=(STAY,),
     )
 
 
@@ -128,7 +130,7 @@ def _fallen(case: BoardCase, node: int, light: AtTerminals, heavy: AtTerminals, 
         f"{show(high.value, 'A', high.u)}: as {show(source_ohm, 'ohm', digits=2)} in the source would, if nothing else changed",
         numbers={"fall": fall, "current": high, "lighter current": low},
         source=f"{supply_sags.source}; {case.context.limits.citation('supply')}",
-        consequences=tuple(_consequences(case, node)),
+        consequences=(STAY,),
     )
 
 
@@ -141,25 +143,3 @@ def _overloaded(case: BoardCase, node: int, worst: AtTerminals) -> str:
         return ""
     near = current.value >= (1 - case.context.limits["supply.rating_margin"]) * sum(known)
     return f": it is loaded to its rating of {show(sum(known), 'A')}, and folds back" if near else ""
-
-
-def _consequences(case: BoardCase, node: int) -> Iterator[str]:
-    yield "drops of its circuits are judged by their own currents and stay; what arrives at their ends is the source's doing"
-    low = [
-        f"{load.tag} on {case.context.index.circuits[circuit_id].tag}"
-        for circuit_id in case.context.network.hanging.circuits_below.get(node, ())
-        for load in case.context.index.loads_of(circuit_id)
-        if load.lowest_voltage_v is not None and _read_below(case, circuit_id, load.point, load.lowest_voltage_v)
-    ]
-    if low:
-        more = f" and {len(low) - MOST_NAMED} more" if len(low) > MOST_NAMED else ""
-        yield f"read below their lowest behind it: {', '.join(low[:MOST_NAMED])}{more}"
-
-
-def _read_below(case: BoardCase, circuit_id: str, point: str, lowest: float) -> bool:
-    measured = case.context.measured.get(circuit_id)
-    if measured is None:
-        return False
-    read = [total(this.volts[point]) for this in measured.rounds if point in this.volts]
-    sure = case.context.limits["decision.fails_at"]
-    return any(volts > 0 and probability_above(lowest, volts, u) >= sure for volts, u in read)

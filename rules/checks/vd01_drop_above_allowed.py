@@ -68,6 +68,10 @@ def drop_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             if enough
             else None,
             source="the circuit's own allowed drop" if own else case.limits.citation("drop", "allowed_percent"),
+            without=(
+                *(("drop.allowed_percent",) if own else ()),
+                *(() if past_total and not worst.total_gap else ("drop.allowed_total_percent",)),
+            ),
             consequences=(
                 f"from the source it loses {show(worst.total_drop_v, 'V', worst.total_drop_u)}, more than the "
                 f"{total_percent:g} % allowed in all",

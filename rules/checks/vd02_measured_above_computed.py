@@ -119,6 +119,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             cause=slip.cause,
             source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
             consequences=tuple(_if_so(lost)),
+            without=("bad_connection",) if lost is None else (),
         )
         return
     heat = _heat(case, claim)
@@ -142,6 +143,7 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         remedy=_remedy(claim),
         cause=claim.cause if claim else None,
         source=citation,
+        without=() if claim is not None and claim.cause == BAD_CONNECTION else ("bad_connection",),
         consequences=tuple(_consequences(case, claim, heat)),
     )
 

@@ -70,6 +70,7 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             if enough
             else None,
             source=case.limits.citation("drop", "allowed_total_percent"),
+            without=("drop.allowed_percent",),
         )
     elif worst.total_gap:
         yield total_above_allowed.gap(case, worst.load.point, worst.total_gap)

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, Severity
 from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
-from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
+from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, named, rule
 from rules.units import show
 from rules.verdict import beyond_common, cause_words, common_words, doubtful
 
@@ -20,6 +20,7 @@ from rules.verdict import beyond_common, cause_words, common_words, doubtful
     "circuit live, or carry its current, when its device is open.",
     source=Citation("JCGM 100", "2008", "5.2: doubt of a difference of correlated readings", "from-memory"),
     limits=("decision", *DOUBTS_OF_COMPUTED, *DOUBTS_OF_READINGS),
+    under=("RD07",),
 )
 def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
     """
@@ -29,7 +30,7 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
     **Finds**: 0.88 ± 0.02 V measured against 1.76 ± 0.04 V computed at 8 A: half, as when both ways of a cable are entered.
 
     **Leaves alone**: 1.70 ± 0.02 V against the same, which is within its doubt. A smaller loss than computed is no fault of
-    the circuit, but whatever rests on that record is wrong.
+    the circuit, but whatever rests on that record is wrong. Where RD07 finds a length mistyped it is a consequence of that.
     """
     drop = case.drop
     if drop is None:
@@ -38,13 +39,16 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
     if probability_above(-drop.sense * beyond.value, 0.0, beyond.u or 0.0) < case.limits["decision.beyond_doubt"]:
         return
     slip = doubtful(case.diagnosis.causes) if case.diagnosis is not None else None
-    yield measured_below_computed.finding(
-        case,
-        f"{drop.start} to {drop.end}",
+    less = (
         f"{show(drop.measured.value, 'V', drop.measured.u)} measured against "
         f"{show(drop.computed.value, 'V', drop.computed.u)} computed from {drop.start} to {drop.end} at "
         f"{show(drop.current.value, 'A', drop.current.u)} in round {drop.round}: "
         f"{show(-drop.too_much.value, 'V', drop.excess.u)} too little"
+    )
+    yield measured_below_computed.finding(
+        case,
+        f"{drop.start} to {drop.end}",
+        less
         + (f"; probably {cause_words(slip)}" if slip else "")
         + (f"; {common_words(case.common)}" if case.common is not None else ""),
         numbers={
@@ -55,4 +59,6 @@ def measured_below_computed(case: CircuitCase) -> Iterator[Finding]:
         },
         cause=slip.cause if slip else None,
         source=f"{measured_below_computed.source}; {case.limits.citation('decision')}",
+        under=(named("RD07", case),),
+        as_consequence=less,
     )

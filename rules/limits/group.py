@@ -29,6 +29,10 @@ class Stated:
         return f"{self.where_from}; limits profile {self.origin}"
 
 
+OF_SOUND_CIRCUITS = ("decision.sound_at", "decision.sound_heat_share")
+"""What a circuit is called sound by: it decides no finding."""
+
+
 @dataclass(frozen=True, slots=True)
 class LimitGroup:
     """Some numbers of one subject, in one unit."""
@@ -43,6 +47,12 @@ class LimitGroup:
     """The words that each key of ``words`` may hold."""
     stated: Mapping[str, Stated] = field(default_factory=dict)
     """Where the value of each key comes from."""
+
+    def deciding(self, without: Iterable[str] = ()) -> tuple[str, ...]:
+        """The keys that may decide a finding, less those that are named, ``group.key``, or all where the group is."""
+        left_out = {*without, *OF_SOUND_CIRCUITS}
+        keys = (*self.values, *self.words)
+        return () if self.name in left_out else tuple(key for key in keys if f"{self.name}.{key}" not in left_out)
 
     def by_source(self, keys: Iterable[str] = ()) -> dict[Stated, list[str]]:
         """The keys of each source, of all or of those named."""
@@ -103,8 +113,9 @@ class Limits:
         return self.groups[group].values
 
     def citation(self, group: str, *keys: str) -> str:
-        """Where the values of a group come from, or those of some of its keys, for a finding."""
-        return "; ".join(str(stated) for stated in self.groups[group].by_source(keys))
+        """Where the values of a group come from that decide a finding, or those of some of its keys."""
+        of = self.groups[group]
+        return "; ".join(str(stated) for stated in of.by_source(keys or of.deciding()))
 
     @property
     def prior(self) -> Mapping[str, float]:

@@ -12,6 +12,7 @@ import pytest
 from audit.intake.folder import site_of
 from rules import limits
 from rules.assess import assess
+from rules.fold import said
 from rules.record import Site
 from rules.rule import Rule, catalogue
 from tests.rules.limits_read import groups_read
@@ -66,11 +67,15 @@ def test_case(
     assert kind != LIMIT or "the limit is" in case["worked"], "what the limit is"
     site = build(tables, settings, own, case.get("check", True))
     assessment = assess(site, limits.of(site))
-    found = [finding for finding in assessment.findings if finding.rule == rule]
+    found = [finding for finding in said(assessment.findings) if finding.rule == rule]
     assert [f"{finding.where}: {finding.why}" for finding in found] == case.get("finds", [])
     assert [str(finding.severity) for finding in found] == case.get("severity", [str(f.severity) for f in found])
     open_ = [gap for gap in assessment.not_judged if gap.rule == rule]
     assert [": ".join(part for part in (gap.where, gap.why) if part) for gap in open_] == case.get("not_judged", [])
+    if "stands_under" in case:
+        assert [[above.id for above in assessment.findings if each in above.holds] for each in found] == [
+            [name] if name else [] for name in case["stands_under"]
+        ]
     if "consequences" in case:
         assert [text for finding in found for text in finding.consequences] == case["consequences"]
     assert len({finding.id for finding in assessment.findings}) == len(assessment.findings)

@@ -273,3 +273,27 @@ def test_what_a_profile_changes_shows_in_the_findings_that_it_changes(name: str)
 
 def test_a_profile_knows_every_rule_by_its_file() -> None:
     assert rule_ids() == tuple(rule.id for rule in catalogue())
+
+
+def test_a_finding_cites_only_the_values_that_decided_it() -> None:
+    """A telecom plant sets when a circuit is sound and from where a bad connection is sought: no part of a polarity."""
+    tables = {
+        "sources": [{"source": "S", "kind": "battery", "nominal": "48"}],
+        "circuits": [{"circuit": "C1", "fed_from": "S", "device": "none"}],
+        "runs": [{"circuit": "C1", "run": "1", "from": "way", "to": "p1", "length": "20", "size": "6 mm2"}],
+        "loads": [{"circuit": "C1", "point": "p1", "load": "lamp", "current": "5"}],
+        "readings": [
+            {"visit": "v", "circuit": "C1", "round": "1", "at": "way", "quantity": "current", "value": "5 A"},
+            {"visit": "v", "circuit": "C1", "round": "1", "at": "way", "quantity": "voltage", "value": "50 V"},
+            {"visit": "v", "circuit": "C1", "round": "1", "at": "p1", "quantity": "voltage", "value": "-49 V"},
+        ],
+    }
+    site = replace(site_of(tables, {"name": "x", "nominal": "48 V"}), limits="telecom-48")
+    (reversed_,) = [finding for finding in assess(site, limits.of(site)).findings if finding.rule == "RD01"]
+    assert "telecom-48" not in reversed_.source
+    decision = limits.of(site).groups["decision"]
+    assert decision.stated["sound_at"].origin == "telecom-48"
+    assert "sound_at" not in decision.deciding()
+    assert decision.deciding(("decision",)) == ()
+    assert "fails_at" not in decision.deciding(("decision.fails_at",))
+    assert "sound" not in limits.of(site).citation("decision")

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 
-from audit.report.phrases import finding_place, number_words
+from audit.report.phrases import finding_place, number_words, some_of
 from audit.tui.drawing.pieces import Line, Piece, cut, piece, wrapped
 from rules.assessment import Finding, NotJudged, Severity
 
@@ -30,10 +30,10 @@ def detail_lines(finding: Finding, width: int) -> list[Line]:
     """What stands beneath a finding's title."""
     said = (
         ("why", finding.why, ""),
-        ("if left", "; ".join(finding.consequences), ""),
+        ("if left", some_of(finding.consequences), ""),
         ("do", finding.remedy, "strong"),
         ("caution", finding.caution, "caution"),
-        ("numbers", "; ".join(number_words(finding)), "quiet"),
+        ("numbers", some_of(number_words(finding)), "quiet"),
         ("source", finding.source, "quiet"),
     )
     lines: list[Line] = []
