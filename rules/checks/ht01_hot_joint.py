@@ -7,7 +7,7 @@ from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
 from rules.decision import Verdict
 from rules.device_heat import device_heats
-from rules.heat import Hot, healthy_ohm, hot_joints
+from rules.heat import TURNED, Hot, healthy_ohm, hot_joints
 from rules.record import Figure
 from rules.rise import rises_of
 from rules.rule import DOUBTS_OF_READINGS, rule
@@ -43,6 +43,9 @@ def heat_in_a_joint(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     It stands by the reading alone, also where the diagnosis takes the reading for a slip or holds such a resistance for
     out of its range. A joint that VD02 claims is told there, with its heat.
 
+    A reading of the wrong sign counts by its magnitude. One without a current is found where no current up to the device's
+    rating lets a healthy termination lose so much.
+
     **Finds**: 0.15 V at 300 A across a lug of 120 mm²: 0.5 mΩ, 45 W, though it is 0.3 % of 48 V.
 
     **Leaves alone**: 13 mV at 300 A there, 3.9 W: a healthy lug of that size has 0.04 mΩ, and up to 0.17 mΩ. 0.50 V at
@@ -63,9 +66,16 @@ def heat_in_a_joint(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 f"{show(joint.current.value, 'A', joint.current.u)} in round {joint.round}: "
                 f"{show(joint.now.value, 'W', joint.now.u)}"
             )
+        elif joint.volts is not None:
+            read = f"{show(joint.volts.value, 'V', joint.volts.u)} across {joint.place}"
         else:
             read = f"{show(joint.ohm.value, 'ohm', joint.ohm.u)} across {joint.place}, read dead"
-        if joint.full_a is not None and joint.full is not None:
+        if hot.doubt == TURNED:
+            read += f", {hot.doubt}"
+        if joint.volts is not None and joint.current is None:
+            numbers["voltage"] = joint.volts
+            read += f" ({hot.doubt}); at design current {show(hot.heat.value, 'W', hot.heat.u)}"
+        elif joint.full_a is not None and joint.full is not None:
             numbers["largest current"] = Figure(joint.full_a, "A")
             read += f"; at {show(joint.full_a, 'A', digits=3)} {show(joint.full.value, 'W', joint.full.u)}"
         assert joint.run is not None
