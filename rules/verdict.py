@@ -25,6 +25,8 @@ from rules.units import show
 FAMILIES = ((BAD_CONNECTION,), (SEMICONDUCTOR,), (SMALLER, OTHER_METAL, LONGER))
 """Causes that readings often cannot tell from each other: a ratio of 1.6 is a size, a metal or a length."""
 
+CONDUCTORS = FAMILIES[-1]
+"""Of these a claim is that the conductors are not as recorded."""
 TOLD = 0.01
 """Probability from which a cause is mentioned."""
 NOT_RULED_OUT = 0.05
@@ -120,6 +122,11 @@ def unsettled(case: CircuitCase) -> str:
     causes = case.diagnosis.causes
     if claimed(causes, case.limits) is not None or _as_recorded(causes) >= case.limits["decision.sound_at"]:
         return ""
+    if (slip := doubtful(causes)) is not None:
+        what = (
+            f"{slip.what} ({probability_words(slip.probability)})" if slip.what else probability_words(slip.probability)
+        )
+        return f"a reading or the record is wrong: {what}"
     said = [cause_words(place) for place in causes[:MOST_SAID] if place.probability >= TOLD]
     return f"not settled: {', '.join(said)}"
 

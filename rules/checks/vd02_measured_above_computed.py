@@ -8,7 +8,7 @@ from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase, LoadPoint
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHER_METAL, SEMICONDUCTOR, SMALLER
 from rules.heat import DEVICE, accounted_v, joints_read
-from rules.joints import heat_at, most_read_a
+from rules.joints import heat_at, most_read_a, semiconductor_v
 from rules.limits import Limits
 from rules.record import Figure
 from rules.rise import rises_of
@@ -249,11 +249,12 @@ def _claim_words(case: CircuitCase, claim: Claim) -> str:
     against = "".join(f", else {cause_words(row)}" for row in claim.against)
     if claim.cause in (SMALLER, OTHER_METAL, LONGER):
         rows = sorted([*claim.places, *claim.others], key=lambda place: -place.probability)
+        in_all = probability_words(sum(row.probability for row in rows))
         words = ", ".join(cause_words(row) for row in rows) + against
         lost = most_unaccounted(case)
         if lost is not None and lost.alone and lost.ohm.value > lost.edge_ohm:
             words += f", else {lost.joint_words}"
-        return f"the conductors are probably not as recorded: {words}"
+        return f"the conductors are probably not as recorded ({in_all}): {words}"
     said = f"probably a {claim.cause} in {claim.where} ({probability_words(claim.probability)})"
     if claim.cause == SEMICONDUCTOR:
         return f"{said}{_offset_words(case, claim)}{against}"
@@ -263,11 +264,8 @@ def _claim_words(case: CircuitCase, claim: Claim) -> str:
 
 def _offset_words(case: CircuitCase, claim: Claim) -> str:
     """What a semiconductor loses whatever the current; empty where it is not known."""
-    branch = case.tree.ends.get(claim.place.point)
-    learned = case.diagnosis.of_branch(branch.id if branch else "") if case.diagnosis is not None else None
-    # a mean over all causes: of this one alone it is what is left when the others give none
-    volts = learned.offset_v / claim.probability if learned is not None else 0.0
-    return f": about {show(volts, 'V', digits=2)} whatever the current" if volts > 0 else ""
+    lost = semiconductor_v(case, claim.place)
+    return f": about {show(lost.value, 'V', digits=2)} whatever the current" if lost is not None else ""
 
 
 def _ohm_words(joint: Place) -> str:
