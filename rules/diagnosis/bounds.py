@@ -10,20 +10,40 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Iterator, Mapping
+from typing import NamedTuple
 
 from rules.capacity import capacity_of
 from rules.case import CircuitCase
 from rules.diagnosis.rows import DEVICE
 from rules.errors import RulesError
 from rules.record import Board, Circuit, Run, Source
+from rules.units import show
 
 DIGITS = 2
 """Digits of a current that is asked for."""
+SUPERVISED = 1.2
+"""Up to so many times the recorded current of a trip-or-close load a clamp's reading is taken for its supervision."""
+OPERATES = "can operate the switch"
+"""What more than the supervision current does."""
+
+
+class Bound(NamedTuple):
+    """By how much the currents of a round may be multiplied, and what bounds them."""
+
+    level: float = math.inf
+    why: str = ""
+    """What more would do: ``passes the rating of C-04``; empty where no bound is known."""
 
 
 def largest_level(case: CircuitCase, amps: Mapping[str, float]) -> float:
+    """By how much the currents of a round may be multiplied: ``largest_bound`` without its reason."""
+    return largest_bound(case, amps).level
+
+
+def largest_bound(case: CircuitCase, amps: Mapping[str, float]) -> Bound:
     """
-    By how much the currents of a round may be multiplied: the smallest over the ratings; infinite where none is known.
+    By how much the currents of a round may be multiplied: the smallest over the ratings and, where a load trips or closes
+    a switch, over what flows while it is supervised; infinite where none is known.
 
     Parameters
     ----------
@@ -34,27 +54,35 @@ def largest_level(case: CircuitCase, amps: Mapping[str, float]) -> float:
     --------
     A device of 10 A that carries 4 A allows 2.5 times as much.
     """
-    levels = [limit_a / abs(a) for limit_a, a in _limits(case, amps) if a]
-    return min(levels, default=math.inf)
+    bounds = [Bound(limit_a / abs(a), why) for limit_a, a, why in _limits(case, amps) if a]
+    return min(bounds, key=lambda bound: bound.level, default=Bound())
 
 
-def _limits(case: CircuitCase, amps: Mapping[str, float]) -> Iterator[tuple[float, float]]:
-    """Each rating with the current that it bounds."""
+def _limits(case: CircuitCase, amps: Mapping[str, float]) -> Iterator[tuple[float, float, str]]:
+    """Each rating with the current that it bounds, and what more would do."""
     whole = abs(amps.get(DEVICE, 0.0)) or sum(
         abs(amps.get(run.name, 0.0)) for run in case.tree.runs if run.from_point == "way"
     )
-    for rating in ratings(case):
-        yield rating, whole
+    for row in _upwards(case):
+        if row.rated_current_a:
+            yield row.rated_current_a, whole, f"passes the rating of {row.tag}"
     for run in case.tree.runs:
         capacity = capacity_a(case, run)
         if capacity is not None and run.name in amps:
-            yield capacity, amps[run.name]
+            yield capacity, amps[run.name], f"passes the capacity of {run.name}"
+    if not operates_a_switch(case):
+        return
+    for point, run in case.tree.ends.items():
+        ampere = abs(amps.get(run.name, 0.0))
+        supervised = case.tree.design_current_a.get(point)
+        if ampere and supervised:
+            # what the clamp showed while the coil was supervised may flow again
+            yield max(supervised, ampere if ampere <= SUPERVISED * supervised else 0.0), ampere, OPERATES
 
 
-def ratings(case: CircuitCase) -> list[float]:
-    """Ratings of the devices and sources between a circuit and what feeds it. [A]"""
-    rated = [row.rated_current_a for row in _upwards(case)]
-    return [ampere for ampere in rated if ampere]
+def operates_a_switch(case: CircuitCase) -> bool:
+    """Whether a load of the circuit trips or closes a switch: more current than it is supervised with can operate it."""
+    return any(each.load.function_or_default == "trip or close" for each in case.loads)
 
 
 def _upwards(case: CircuitCase) -> Iterator[Circuit | Source]:
@@ -84,7 +112,7 @@ def capacity_a(case: CircuitCase, run: Run) -> float | None:
         return None
 
 
-def heat_level(suspects: Iterable[tuple[float, float]], watts: float) -> float:
+def heat_bound(suspects: Iterable[tuple[float, float]], watts: float) -> Bound:
     """
     By how much currents may be multiplied until a suspected extra resistance gives so much heat.
 
@@ -95,11 +123,14 @@ def heat_level(suspects: Iterable[tuple[float, float]], watts: float) -> float:
 
     Examples
     --------
-    >>> heat_level([(0.05, 5.0), (0.2, 1.0)], 5.0)
-    2.0
+    >>> heat_bound([(0.05, 5.0), (0.2, 1.0)], 5.0)
+    Bound(level=2.0, why='turns more than 5 W into heat in a joint of 50 mΩ')
     """
-    levels = [math.sqrt(watts / ohm) / abs(a) for ohm, a in suspects if ohm > 0 and a]
-    return min(levels, default=math.inf)
+    bounds = [(math.sqrt(watts / ohm) / abs(a), ohm) for ohm, a in suspects if ohm > 0 and a]
+    if not bounds:
+        return Bound()
+    level, ohm = min(bounds)
+    return Bound(level, f"turns more than {show(watts, 'W')} into heat in a joint of {show(ohm, 'ohm', digits=2)}")
 
 
 def rounded_up(ampere: float) -> float:

@@ -17,6 +17,7 @@ from rules.calc.doubt import Shown, Weighted
 from rules.case import CircuitCase
 from rules.columns import METER_QUANTITY
 from rules.context import Measured
+from rules.diagnosis.named import Named
 from rules.diagnosis.problem import ENDS, LEGS, Observation, Problem
 from rules.diagnosis.rows import DEVICE
 from rules.errors import MissingData
@@ -58,6 +59,15 @@ class Posed:
     case: CircuitCase
     read: Problem
     imagined: Problem
+    named: Sequence[Named] = ()
+    """Places that findings name to be read: they come first."""
+
+    def named_at(self, row: int) -> int | None:
+        """Which of the named places an imagined reading is taken across; ``None`` for none."""
+        said = self.observation(row)
+        if said.quantity != "joint":
+            return None
+        return next((n for n, name in enumerate(self.named) if name.at == said.at and said.leg in name.legs), None)
 
     @property
     def amps(self) -> dict[int, float]:
@@ -107,7 +117,7 @@ def kind_of(said: Observation) -> str:
     return LEG if said.leg in LEGS else POINT
 
 
-def posed(case: CircuitCase, meters: Meters) -> Posed | None:
+def posed(case: CircuitCase, meters: Meters, named: Sequence[Named] = ()) -> Posed | None:
     """
     A circuit's problem with the imagined readings.
 
@@ -121,20 +131,20 @@ def posed(case: CircuitCase, meters: Meters) -> Posed | None:
     read = posed_by(case.context, measured)
     if read is None:
         return None
-    rounds = imagined_rounds(case, read, meters)
+    rounds = imagined_rounds(case, read, meters, named)
     if not rounds:
         return None
     imagined = posed_by(case.context, replace(measured, rounds=(*case.rounds, *rounds)))
-    return None if imagined is None else Posed(case, read, imagined)
+    return None if imagined is None else Posed(case, read, imagined, named)
 
 
-def imagined_rounds(case: CircuitCase, read: Problem, meters: Meters) -> tuple[Round, ...]:
+def imagined_rounds(case: CircuitCase, read: Problem, meters: Meters, named: Sequence[Named] = ()) -> tuple[Round, ...]:
     """The round of single readings and the round that is read once more; none where no current is known."""
     fullest = fullest_round(case)
     currents = _currents(case, fullest, meters)
     if not currents:
         return ()
-    return _single(case, read, fullest, currents, meters), _again(case, fullest, currents)
+    return _single(case, read, fullest, currents, meters, named), _again(case, fullest, currents)
 
 
 def fullest_round(case: CircuitCase) -> Round | None:
@@ -188,7 +198,12 @@ def _currents(case: CircuitCase, fullest: Round | None, meters: Meters) -> dict[
 
 
 def _single(
-    case: CircuitCase, read: Problem, fullest: Round | None, currents: Mapping[str, Shown], meters: Meters
+    case: CircuitCase,
+    read: Problem,
+    fullest: Round | None,
+    currents: Mapping[str, Shown],
+    meters: Meters,
+    named: Sequence[Named],
 ) -> Round:
     """The round of single readings."""
     meter = voltmeter_of(case, meters)
@@ -204,7 +219,7 @@ def _single(
         legs = read.signature.branches[0].partition(" ")[2]
         for leg in LEGS if legs == "both" else (legs,):
             add("joint", DEVICE, "", leg, across)
-    suspected = _suspected(case, read)
+    suspected = _suspected(case, read) | {" ".join(name.at.split()[:2]) for name in named}
     for run in case.tree.runs:
         for end in ENDS if run.name in suspected else ():
             for leg in LEGS:

@@ -16,17 +16,21 @@ import numpy as np
 
 from rules.diagnosis.atoms import OF_LENGTH, Atoms, atoms_of
 from rules.diagnosis.block import stacked
-from rules.diagnosis.bounds import heat_level, largest_level, rounded_down, rounded_up
-from rules.diagnosis.candidates import SINGLE, Posed
+from rules.diagnosis.bounds import Bound, heat_bound, rounded_down, rounded_up
+from rules.diagnosis.candidates import JOINT, LEG, POINT, SINGLE, Posed
 from rules.diagnosis.contrast import conclusive_level, groups_apart
 from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, REVERSED, SEVERAL, SWAPPED
+from rules.diagnosis.excess_bound import most_level
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, LONGER, OTHER_METAL, SMALLER
 from rules.diagnosis.judge import Judged, judge_block
 from rules.diagnosis.options import (
+    ADDED,
     AS_IT_IS,
     DEAD_TEST,
+    FINER,
     LENGTH,
     LOOK,
+    MORE,
     ROUND,
     TEMPERATURE,
     Options,
@@ -36,13 +40,18 @@ from rules.diagnosis.options import (
     tried_of,
 )
 from rules.diagnosis.outlook import Outlook, outlook_of
-from rules.diagnosis.shape import Floats, Shape, shape_of
+from rules.diagnosis.problem import Observation
+from rules.diagnosis.shape import Floats, Integers, Shape, shape_of
+from rules.errors import MissingData
 from rules.limits import Limits
 
 COVERED = 0.975
 """Upper bound of a suspected extra resistance: that of the central 95 %."""
 AS_TELLING = 0.3
 """Share of the largest fall below which an option does not stand in for one that is not conclusive."""
+SINGLES = (JOINT, LEG, POINT)
+LIVE_WAYS = (AS_IT_IS, MORE, ADDED, FINER)
+"""How millivolts are read across what a finding names."""
 OF_READINGS = (ONE_READING, CURRENT_READING, SWAPPED, REVERSED, SEVERAL)
 """Slips that the same readings once more tell."""
 CONDUCTORS = (SMALLER, OTHER_METAL, LONGER)
@@ -62,8 +71,8 @@ class Batch:
     options: Options
     high_ohm: Floats
     """(b, places of what was read): upper bound of the extra resistance in each. [ohm]"""
-    most_level: Floats
-    """(b,): by how much the currents of the round with the most current may be multiplied."""
+    most: Sequence[Bound]
+    """By how much the currents of the round with the most current may be multiplied."""
 
 
 def looked_at(posed: Sequence[Posed], limits: Limits) -> Batch:
@@ -75,20 +84,9 @@ def looked_at(posed: Sequence[Posed], limits: Limits) -> Batch:
     tried = tried_of(posed, block, atoms)
     outlook = outlook_of(judged, block, atoms, posed, tried.candidate)
     high = np.exp(judged.density.cumulative().quantiles(COVERED)[0][:, : len(judged.block.shape.places)])
-    most = np.array([_most_level(each, judged, number, high[number], limits) for number, each in enumerate(posed)])
-    options = options_of(posed, tried, atoms, outlook, most, limits)
+    most = [most_level(each, judged, number, high[number], limits) for number, each in enumerate(posed)]
+    options = options_of(posed, tried, atoms, outlook, np.array([bound.level for bound in most]), limits)
     return Batch(posed, limits, shape, judged, atoms, outlook, options, high, most)
-
-
-def _most_level(posed: Posed, judged: Judged, number: int, high_ohm: Floats, limits: Limits) -> float:
-    """The smallest over the ratings and the heat in what is suspected."""
-    amps, names = posed.amps, posed.imagined.names
-    of_record = largest_level(posed.case, {names[branch]: ampere for branch, ampere in amps.items()})
-    places = judged.block.shape.places
-    share = judged.posterior[number, judged.of_cause(BAD_CONNECTION)]
-    least = min(limits["next_reading.suspected_at"], float(share.max(initial=0.0)))
-    suspects = [(float(high_ohm[n]), amps.get(places[n].branch, 0.0)) for n in np.flatnonzero(share >= least)]
-    return min(of_record, heat_level(suspects, limits["heat.load_test_w"]))
 
 
 @dataclass(frozen=True, slots=True)
@@ -107,6 +105,12 @@ class Choice:
     """What is reached where it is taken in this way."""
     most_a: float = math.inf
     """That may flow for it; infinite where no bound is known."""
+    most_why: str = ""
+    """What more would do."""
+    branch: int = -1
+    """Whose current is meant; -1 where none is asked for."""
+    named: int = -1
+    """Which of the places that findings name; -1 where it is not for one of them."""
     slip: int | None = None
     """Hypothesis of a doubtful reading or record that is more probable than all else."""
 
@@ -123,6 +127,9 @@ class Choice:
 
 def chosen(batch: Batch, number: int) -> Choice | None:
     """What to do next on one circuit of a batch; ``None`` where nothing is left to settle, or nothing can be done."""
+    named = _named(batch, number)
+    if named is not None:
+        return named
     if _is_settled(batch, number):
         return None
     # equal ones keep their order, whatever else goes through the arrays with them
@@ -131,7 +138,7 @@ def chosen(batch: Batch, number: int) -> Choice | None:
     slip = _slip(batch, number)
     forced = [option for option in order if _answers(batch, slip, options.ways[option])]
     if forced:
-        return replace(_choice(batch, number, forced[0]), slip=slip)
+        return _again_there(batch, number, replace(_choice(batch, number, forced[0]), slip=slip))
     # the record has no place for a size that proved right: a look comes where it will change the record, or comes last
     look = Choice(-1, Way(LOOK, AS_IT_IS, minutes_of(LOOK, AS_IT_IS, batch.limits)), -1, None)
     if batch.atoms.wrong_conductor[number] >= batch.limits["next_reading.look_at"]:
@@ -149,6 +156,26 @@ def chosen(batch: Batch, number: int) -> Choice | None:
     if options.fall[number, option] >= batch.limits["next_reading.least_fall"] or not _conductors_lead(batch, number):
         return tried
     return look
+
+
+def _named(batch: Batch, number: int) -> Choice | None:
+    """Across the first place that a finding names, the one of its legs that tells most; ``None`` where none is named."""
+    posed, options = batch.posed[number], batch.options
+    if not posed.named:
+        return None
+    rows, single = posed.rows_of(SINGLE), batch.outlook.candidate[number]
+    found = []
+    for option, way in enumerate(options.ways):
+        if way.kind == JOINT and way.how in LIVE_WAYS and options.can_be_done[number, option]:
+            place = posed.named_at(rows[int(single[options.column[number, option]])])
+            if place is not None:
+                found.append((place, -float(options.score[number, option].round(9)), option))
+    if not found:
+        return None
+    first = min(place for place, *_ in found)
+    choices = [_choice(batch, number, option) for place, _, option in sorted(found) if place == first]
+    best = next((choice for choice in choices if choice.is_conclusive), choices[0])
+    return replace(best, named=first)
 
 
 def _conductors_lead(batch: Batch, number: int) -> bool:
@@ -174,15 +201,17 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
     options, outlook, atoms = batch.options, batch.outlook, batch.atoms
     way, level, column = options.ways[option], float(options.level[number, option]), int(options.column[number, option])
     posed, amps = batch.posed[number], batch.posed[number].amps
-    weight, group = atoms.weight[number], atoms.group[number]
+    at = posed.rows_of(SINGLE)[int(outlook.candidate[number, column])] if way.kind in SINGLES else -1
+    weight, group = atoms.weight[number], _alike(batch, number, way, at)[atoms.group[number]]
     if way.kind == ROUND:
         mean = outlook.again_steady[number] + level * outlook.again_mean[number]
         covariance = outlook.again_fixed[number] + level**2 * outlook.again_covariance[number]
         pair = groups_apart(weight, group, mean, covariance)
-        ampere = max(abs(a) for a in amps.values())
-        most_a = rounded_down(batch.most_level[number] * ampere) if ampere else math.inf
-        asked_a = min(rounded_down(level * ampere), most_a)
-        return Choice(option, way, -1, pair, asked_a, most_a=most_a)
+        branch = max(amps, key=lambda each: abs(amps[each]))
+        most = batch.most[number]
+        most_a = rounded_down(most.level * abs(amps[branch]))
+        asked_a = min(rounded_down(level * abs(amps[branch])), most_a)
+        return Choice(option, way, -1, pair, asked_a, most_a=most_a, most_why=most.why, branch=branch)
     candidate = int(outlook.candidate[number, column])
     counts = options.counts[number, option] + outlook.clamp[number, column]
     mean = outlook.steady[number, column] + level * outlook.mean[number, column]
@@ -192,17 +221,84 @@ def _choice(batch: Batch, number: int, option: int) -> Choice:
         return Choice(option, way, candidate, pair)
     if way.kind == LENGTH:
         return Choice(option, way, candidate, _lengths_apart(batch, number))
-    at = posed.rows_of(SINGLE)[candidate]
-    needed = _conclusive(batch, number, column, counts, pair)
+    needed = _conclusive(batch, number, column, counts, group, pair)
     if way.how == DEAD_TEST:
         return Choice(option, way, at, pair, 0.0 if needed <= level else math.inf)
-    ampere = abs(amps[posed.imagined.signature.rows[at].path[0][0]])
+    path = posed.imagined.signature.rows[at].path
+    branch = path[-1 if way.kind == POINT else 0][0]
+    ampere = abs(amps[branch])
     # what a semiconductor loses shows at any current, but a reading needs one
     needed = needed or batch.limits["next_reading.lower_share"] * level
-    most = min(batch.most_level[number], _heat_there(batch, number, at, amps))
+    most = min(batch.most[number], _heat_there(batch, number, at, amps), key=lambda bound: bound.level)
     # an asked-for current has two digits; the load of the day is still reached if it rounds up to a little more
     reached_a = rounded_up(level * ampere)
-    return Choice(option, way, at, pair, rounded_up(needed * ampere), reached_a, rounded_down(most * ampere))
+    most_a = rounded_down(most.level * ampere)
+    return Choice(
+        option, way, at, pair, rounded_up(needed * ampere), reached_a, most_a, most_why=most.why, branch=branch
+    )
+
+
+def _again_there(batch: Batch, number: int, choice: Choice) -> Choice:
+    """A round that is read again for one doubtful reading: with the current of the branch that is read."""
+    posed, said = batch.posed[number], doubtful_reading(batch, number, choice)
+    amps, most = posed.amps, batch.most[number]
+    if said is None or choice.way.kind != ROUND:
+        return choice
+    place = said.at
+    if said.to:
+        try:
+            place = posed.case.tree.path(said.at, said.to)[0]
+        except (MissingData, IndexError):
+            place = said.to
+    arriving = zip(posed.imagined.names, posed.imagined.ends, strict=True)
+    found = [
+        n
+        for n, (name, end) in enumerate(arriving)
+        if n in amps and (place == end or f"{place} ".startswith(f"{name} "))
+    ]
+    branch = found[0] if found else choice.branch
+    ampere, level = abs(amps[branch]), float(batch.options.level[number, choice.option])
+    most_a = rounded_down(most.level * ampere)
+    return replace(choice, asked_a=min(rounded_down(level * ampere), most_a), most_a=most_a, branch=branch)
+
+
+def doubtful_reading(batch: Batch, number: int, choice: Choice) -> Observation | None:
+    """The reading that a slip speaks of; ``None`` where it speaks of none, or of all."""
+    if choice.slip is None:
+        return None
+    name, read = batch.judged.hypotheses.names[choice.slip], batch.posed[number].read
+    if name.what == CURRENT_READING:
+        return read.current_readings[name.which[0]]
+    return read.observations[name.which[0]] if name.what in (ONE_READING, SWAPPED) else None
+
+
+def touched(batch: Batch, way: Way, row: int) -> list[bool]:
+    """Of each group: whether it lies in what a single reading is taken across."""
+    shape = batch.shape
+    found = []
+    for group in batch.atoms.groups:
+        if way.kind not in SINGLES or group.place < 0:
+            found.append(False)
+        elif group.cause == BAD_CONNECTION:
+            found.append(bool(shape.coefficient[row, shape.place_element[group.place]]))
+        else:
+            found.append(bool(shape.offset_rows[group.place, row]))
+    return found
+
+
+def _alike(batch: Batch, number: int, way: Way, row: int) -> Integers:
+    """Of each group the most probable of those that a reading's words name alike: one cause, in one run, read across or not."""
+    shape, groups, shares = batch.shape, batch.atoms.groups, batch.atoms.shares[number]
+    classes: dict[tuple[str, int, bool], int] = {}
+    names = []
+    for (cause, place), inside in zip(groups, touched(batch, way, row), strict=True):
+        branch = -1
+        if place >= 0:
+            branch = shape.places[place].branch if cause == BAD_CONNECTION else shape.offset_branch(place)
+        names.append((cause, branch, inside))
+    for group in np.argsort(-shares, kind="stable").tolist():
+        classes.setdefault(names[group], group)
+    return np.array([classes[name] for name in names], dtype=np.int64)
 
 
 def _lengths_apart(batch: Batch, number: int) -> tuple[int, int] | None:
@@ -216,11 +312,13 @@ def _lengths_apart(batch: Batch, number: int) -> tuple[int, int] | None:
     )
 
 
-def _conclusive(batch: Batch, number: int, column: int, counts: Floats, pair: tuple[int, int] | None) -> float:
+def _conclusive(
+    batch: Batch, number: int, column: int, counts: Floats, group: Integers, pair: tuple[int, int] | None
+) -> float:
     """Level of current at which a single reading puts two groups far enough apart."""
     if pair is None:
         return math.inf
-    outlook, weight, group = batch.outlook, batch.atoms.weight[number], batch.atoms.group[number]
+    outlook, weight = batch.outlook, batch.atoms.weight[number]
     figures = []
     for name in pair:
         inside = np.flatnonzero(group == name)
@@ -235,7 +333,7 @@ def _conclusive(batch: Batch, number: int, column: int, counts: Floats, pair: tu
     return conclusive_level(mean - mean_2, steady - steady_2, (variance + variance_2) / 2, (fixed + fixed_2) / 2, apart)
 
 
-def _heat_there(batch: Batch, number: int, row: int, amps: dict[int, float]) -> float:
+def _heat_there(batch: Batch, number: int, row: int, amps: dict[int, float]) -> Bound:
     """Level of current at which what may be wrong in the joint that is read across gives the profile's heat."""
     path, part = batch.shape.signature.rows[row].path, batch.shape.signature.rows[row].part
     suspects = [
@@ -243,7 +341,7 @@ def _heat_there(batch: Batch, number: int, row: int, amps: dict[int, float]) -> 
         for n, place in enumerate(batch.judged.block.shape.places)
         if len(path) == 1 and place.branch == path[0][0] and (part in place.members or len(place.members) == 1)
     ]
-    return heat_level(suspects, batch.limits["heat.load_test_w"])
+    return heat_bound(suspects, batch.limits["heat.load_test_w"])
 
 
 def _slip(batch: Batch, number: int) -> int | None:

@@ -12,9 +12,11 @@ from rules.assessment import NextReading
 from rules.calc.doubt import each_u
 from rules.case import CircuitCase
 from rules.checks.rc01_record_incomplete import gaps_of
-from rules.diagnosis.bounds import largest_level, rounded_down, rounded_up
-from rules.diagnosis.candidates import POINT, Meters, shown_by, voltmeter_of
+from rules.diagnosis.bounds import Bound, largest_bound, rounded_down, rounded_up
+from rules.diagnosis.candidates import JOINT, POINT, Meters, shown_by, voltmeter_of
+from rules.diagnosis.named import Named
 from rules.diagnosis.next_cautions import caution_words
+from rules.diagnosis.next_words import bound_words
 from rules.diagnosis.options import AS_IT_IS, FINER, LENGTH, LOOK, ROUND, Way, minutes_of
 from rules.diagnosis.rows import extra_scale
 from rules.record import Figure, Run
@@ -67,11 +69,10 @@ def first_round(case: CircuitCase, meters: Meters) -> NextReading | None:
     limits = case.limits
     path = case.tree.path("way", end)
     last = case.tree.ends[path[-1]]
-    middling = math.sqrt(limits["bad_connection.low_ohm"] * limits["bad_connection.high_ohm"]) * extra_scale(last.size)
-    design_a = case.largest_current_a.get(path[-1], 0.0)
-    suspected = min(middling, limits["heat.limit_w"] / design_a**2) if design_a else middling
+    suspected = _suspected(case, last, path[-1])
     counts_v = shown_by(case, "voltage", case.nominal_v or 0.0, voltmeter_of(case, meters)).each_u
-    most = _most_current(case, case.tree.ends[path[0]])
+    bound = _most_current(case, case.tree.ends[path[0]])
+    most = bound.level
     needed, how = _needed(case, suspected, counts_v), AS_IT_IS
     if needed > most:
         finer_v = each_u(limits["finer_meter.voltage_counts"], limits["finer_meter.voltage_resolution"])
@@ -79,8 +80,12 @@ def first_round(case: CircuitCase, meters: Meters) -> NextReading | None:
     way = Way(ROUND, how, minutes_of(ROUND, how, limits))
     start = "bus" if case.tree.device_ohm else "way"
     told = f"a bad connection of {show(suspected, 'ohm', digits=2)} stands out at {show(needed, 'A')}"
-    untested = f"not tested: {case.circuit.not_tested}" if case.circuit.not_tested else "nothing was read"
-    reason = case.drop_gap if case.visit else untested
+    why = [
+        _reason(case),
+        *(["with the current, in one round"] if how == FINER else []),
+        told,
+        *bound_words(case, most, bound.why, case.largest_current_a.get(path[0], 0.0)),
+    ]
     return NextReading(
         what=FINER if how == FINER else "round",
         quantity="voltage",
@@ -88,11 +93,49 @@ def first_round(case: CircuitCase, meters: Meters) -> NextReading | None:
         to=end,
         leg="both",
         current_at_least=Figure(needed, "A"),
-        why=f"{reason}: voltages at {start} and {end} with the current, in one round; {told}",
+        why="; ".join(why),
         caution=caution_words(case, way),
         current_at_most=None if math.isinf(most) else Figure(most, "A"),
         minutes=way.minutes,
     )
+
+
+def named_reading(case: CircuitCase, meters: Meters, named: Named) -> NextReading:
+    """Millivolts across a place that a finding names, where no reading poses a problem to the diagnosis."""
+    run = next((run for run in case.runs if named.at.startswith(f"{run.name} ")), case.runs[0])
+    end = next(point for point, arriving in case.tree.ends.items() if arriving.id == run.id)
+    suspected, design_a = _suspected(case, run, end), case.largest_current_a.get(end, 0.0)
+    bound = _most_current(case, run)
+    counts_v = shown_by(case, "joint", suspected * design_a, voltmeter_of(case, meters)).each_u
+    needed = min(rounded_up(case.limits["next_reading.apart"] * counts_v / suspected), bound.level)
+    way = Way(JOINT, AS_IT_IS, minutes_of(JOINT, AS_IT_IS, case.limits))
+    return NextReading(
+        what="reading",
+        quantity="joint",
+        at=named.at,
+        leg=named.legs[0],
+        current_at_least=Figure(needed, "A"),
+        why="; ".join([named.why, *bound_words(case, bound.level, bound.why, design_a)]),
+        caution=caution_words(case, way),
+        current_at_most=None if math.isinf(bound.level) else Figure(bound.level, "A"),
+        minutes=way.minutes,
+    )
+
+
+def _suspected(case: CircuitCase, run: Run, point: str) -> float:
+    """A middling bad connection in a run, or one that gives the profile's heat. [ohm]"""
+    limits, design_a = case.limits, case.largest_current_a.get(point, 0.0)
+    middling = math.sqrt(limits["bad_connection.low_ohm"] * limits["bad_connection.high_ohm"]) * extra_scale(run.size)
+    return min(middling, limits["heat.limit_w"] / design_a**2) if design_a else middling
+
+
+def _reason(case: CircuitCase) -> str:
+    """Why there is nothing to go by."""
+    if case.visit:
+        return case.drop_gap
+    if case.circuit.not_tested:
+        return f"ask the duty holder first, for it was not tested: {case.circuit.not_tested}"
+    return "nothing was read"
 
 
 def _far_end(case: CircuitCase) -> str:
@@ -108,10 +151,11 @@ def _needed(case: CircuitCase, ohm: float, counts_v: float) -> float:
     return rounded_up(case.limits["next_reading.apart"] * math.sqrt(2) * counts_v / ohm)
 
 
-def _most_current(case: CircuitCase, first: Run) -> float:
+def _most_current(case: CircuitCase, first: Run) -> Bound:
     """The most current that may flow in a circuit's first run, all others in proportion to their design currents. [A]"""
     design = {run.name: case.tree.design_current_a.get(point) for point, run in case.tree.ends.items()}
     known = {name: ampere for name, ampere in design.items() if ampere}
     if first.name not in known:  # as if one ampere ran through the first run alone
         known = {first.name: 1.0}
-    return rounded_down(largest_level(case, known) * abs(known[first.name]))
+    bound = largest_bound(case, known)
+    return Bound(rounded_down(bound.level * abs(known[first.name])), bound.why)

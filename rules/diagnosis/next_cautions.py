@@ -34,6 +34,12 @@ LOOK_ONLY = Caution(
     "Opening an enclosure to look at a cable exposes live parts: cover or isolate, and prove dead before touching.",
     Citation("ohmwalk", status="our own rule"),
 )
+GAP = Caution(
+    "next gap",
+    "No voltage on a meter does not prove a circuit dead: across an open joint or fuse stands the full system voltage, and whoever "
+    "switched it off may switch it on.",
+    METER.source,
+)
 PERMISSION = Caution(
     "next permission",
     "The circuit serves life safety, or trips or closes a switch: no load test without the duty holder's permission.",

@@ -11,13 +11,15 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Sequence
 
-from rules.assessment import NextReading
+from rules.assessment import Finding, NextReading
 from rules.case import CircuitCase
 from rules.diagnosis.atoms import ATOMS, FEWEST_SIZES
 from rules.diagnosis.candidates import AGAIN, Meters, Posed, posed
 from rules.diagnosis.choice import chosen, looked_at
-from rules.diagnosis.first_reading import first_round, missing_record
+from rules.diagnosis.first_reading import first_round, missing_record, named_reading
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, DOUBTFUL, SEMICONDUCTOR
+from rules.diagnosis.lost_voltage import follow_voltage
+from rules.diagnosis.named import named_places
 from rules.diagnosis.options import TRIED
 from rules.diagnosis.problem import Signature
 from rules.diagnosis.spoken import spoken
@@ -26,7 +28,7 @@ ROOM = 2_500_000
 """Numbers in the largest array of a batch: memory grows with this, not with the site."""
 
 
-def next_readings(cases: Sequence[CircuitCase]) -> list[NextReading | None]:
+def next_readings(cases: Sequence[CircuitCase], findings: Sequence[Sequence[Finding]] = ()) -> list[NextReading | None]:
     """
     What to read next on each of some circuits.
 
@@ -34,6 +36,8 @@ def next_readings(cases: Sequence[CircuitCase]) -> list[NextReading | None]:
     ----------
     cases : sequence of CircuitCase
         Of one site; those that are not settled, since each costs some milliseconds.
+    findings : sequence of sequences, optional
+        What is found on each: places that they name to be read come first.
 
     Returns
     -------
@@ -46,11 +50,14 @@ def next_readings(cases: Sequence[CircuitCase]) -> list[NextReading | None]:
     meters = Meters.of(cases[0].context.site) if cases else Meters()
     for number, case in enumerate(cases):
         found[number] = missing_record(case)
-        if found[number] is None and not _is_settled(case):
-            this = posed(case, meters)
-            if this is None:
+        named = named_places(case, findings[number]) if findings else ()
+        if found[number] is None and (named or not _is_settled(case)):
+            this = posed(case, meters, named)
+            if this is None and named:
+                found[number] = named_reading(case, meters, named[0])
+            elif this is None:
                 # a drop that was compared is not read again for causes that cannot be weighed, as over a shared return
-                found[number] = first_round(case, meters) if case.drop is None else None
+                found[number] = follow_voltage(case) or first_round(case, meters) if case.drop is None else None
             else:
                 looked[number] = this
                 alike[this.read.signature, this.imagined.signature].append(number)

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from rules.case import CircuitCase
+from rules.diagnosis.bounds import OPERATES, operates_a_switch, rounded_down
 from rules.diagnosis.candidates import JOINT, LEG, POINT
 from rules.diagnosis.hypotheses import (
     AS_RECORDED,
@@ -17,6 +20,7 @@ from rules.diagnosis.hypotheses import (
 )
 from rules.diagnosis.options import ADDED, DEAD_TEST, FINER, LENGTH, LESS, MORE, TEMPERATURE, Way
 from rules.diagnosis.problem import Observation
+from rules.units import show
 
 CAUSE_WORDS = {
     AS_RECORDED: "a circuit as recorded",
@@ -35,7 +39,7 @@ OTHERWISE = {
 """What a reading is for that tells no two causes apart by itself."""
 BESIDE_WORDS = {
     FINER: "; the meter at hand is too coarse for it",
-    DEAD_TEST: "; live, no current that may flow is enough",
+    DEAD_TEST: "; live, no current that may flow is enough: with a four-wire micro-ohmmeter, for others show nothing below about 10 mΩ",
     LESS: "; a second round at less current, at which a semiconductor loses as much",
     MORE: "; at more current than today",
     ADDED: "; with a load of your own",
@@ -84,6 +88,29 @@ def why_words(way: Way, at: Observation | None, pair: Sequence[Said], halves: bo
     if halves:
         told = f"measure the middle first: {told}" if way.kind == POINT else f"{told}, and halves the suspected joints"
     return told + BESIDE_WORDS.get(way.how, "")
+
+
+def bound_words(case: CircuitCase, most_a: float, why: str, flows_a: float) -> list[str]:
+    """
+    What bounds a current that is asked for, each as a sentence part; empty where nothing does.
+
+    Parameters
+    ----------
+    most_a : float
+        That may flow; infinite where no bound is known. [A]
+    why : str
+        What more would do.
+    flows_a : float
+        What flows by itself: read, or at design. [A]
+    """
+    words = [f"at the supervision current only; more {OPERATES}"] if operates_a_switch(case) else []
+    if math.isinf(most_a):
+        return words
+    if why != OPERATES:
+        words.append(f"more than {show(most_a, 'A')} {why}")
+    if rounded_down(flows_a) > most_a:
+        words.append("with load taken off")
+    return words
 
 
 def _words(said: Said, way: Way, at: Observation | None, first: Said) -> str:

@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 from rules.calc.doubt import each_u
 from rules.diagnosis.atoms import Atoms
 from rules.diagnosis.block import Block
+from rules.diagnosis.bounds import operates_a_switch
 from rules.diagnosis.candidates import JOINT, LEG, POINT, SINGLE, Posed, kind_of
 from rules.diagnosis.hypotheses import BAD_CONNECTION, SEMICONDUCTOR
 from rules.diagnosis.information import entropy, fall_by_one, fall_by_several
@@ -182,6 +183,8 @@ def _levels(posed: Sequence[Posed], most_level: Floats, limits: Limits) -> dict[
     """(b,) by how a reading is taken: level of current, not a number where it is not worth setting."""
     design = np.array([each.design_level for each in posed])
     most = np.minimum(most_level, MOST_LEVEL)
+    # a coil is read with what supervises it: there is no other current to set
+    most[[operates_a_switch(each.case) for each in posed]] = 1.0
     recorded = np.minimum(most, design)
     return {
         AS_IT_IS: np.minimum(most_level, 1.0),
@@ -210,6 +213,10 @@ def _promise(posed: Sequence[Posed], block: Block, atoms: Atoms, kinds: Sequence
     joints = np.array([kind == JOINT for kind in kinds[: len(rows)]], dtype=bool)
     ohm = block.conductor @ shape.run_of.T
     lengths = np.where(block.length_u > limits["length_doubt.tape"], ohm * block.length_u, -1.0)
+    for number, each in enumerate(posed):
+        for place, row in enumerate(rows) if each.named else ():
+            if each.named_at(row) is not None:
+                share[number, place] += 1.0  # it is looked at in any case
     warm = np.array([-1.0 if each.probed is None else 1.0 for each in posed])
     return np.concatenate([np.where(joints, share, share * (1 - share)), lengths, warm[:, None]], axis=1)
 

@@ -290,13 +290,13 @@ class _Gather:
     def _kind(self, place: int) -> str:
         if self.names[place] != DEVICE:
             return "run"
-        return f"{DEVICE} {_device_legs(self.tree, self.return_leg)}"
+        return f"{DEVICE} {device_leg(self.tree, self.return_leg)}"
 
     def _branch(self, place: int, hot_ohm: Mapping[str, float]) -> Branch:
         hot = hot_ohm.get(self.arriving[place], 0.0)
         if self.names[place] == DEVICE:
             whole = self.tree.device_ohm or 0.0
-            share = {"both": 0.5, "positive": 1.0, "negative": 0.0}[_device_legs(self.tree, self.return_leg)]
+            share = {"both": 0.5, "positive": 1.0, "negative": 0.0}[device_leg(self.tree, self.return_leg)]
             first = self.tree.runs[0].size if self.tree.runs else ""
             return Branch(whole * share, whole * (1 - share), extra_scale=extra_scale(first), hot_ohm=hot)
         run = self._run(place)
@@ -350,7 +350,7 @@ def _less(start: Node, end: Node) -> Node:
     return (*start, *((number, -sign) for number, sign in end))
 
 
-def _device_legs(tree: Tree, return_leg: str) -> str:
+def device_leg(tree: Tree, return_leg: str) -> str:
     """The leg in which the device lies; ``both`` where it opens both."""
     if (tree.circuit.device_poles or 1) >= 2:
         return "both"

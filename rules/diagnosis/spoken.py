@@ -8,21 +8,20 @@ from typing import NamedTuple
 import numpy as np
 
 from rules.assessment import NextReading
-from rules.diagnosis.candidates import AGAIN, JOINT, LEG, POINT, SINGLE, Posed
-from rules.diagnosis.choice import Batch, Choice
-from rules.diagnosis.doubtful import CURRENT_READING, ONE_READING, SWAPPED
+from rules.diagnosis.candidates import AGAIN, LEG, POINT, SINGLE, Posed
+from rules.diagnosis.choice import SINGLES, Batch, Choice, doubtful_reading, touched
 from rules.diagnosis.hypotheses import BAD_CONNECTION
 from rules.diagnosis.information import LEAST, entropy
 from rules.diagnosis.next_cautions import caution_words
-from rules.diagnosis.next_words import Said, why_words
+from rules.diagnosis.next_words import BESIDE_WORDS, Said, bound_words, why_words
 from rules.diagnosis.options import DEAD_TEST, FINER, LENGTH, LOOK, ROUND, TEMPERATURE
-from rules.diagnosis.problem import Observation
 from rules.diagnosis.rows import DEVICE
 from rules.record import Figure
 
 EVENLY = (0.3, 0.7)
 """Between these shares of what is suspected a reading halves it."""
-SINGLES = (JOINT, LEG, POINT)
+WHOLE = 0.99
+"""A branch with this share of the most current carries all of it."""
 SUSPECTS = 3
 """So many suspected places are not halved, but looked at."""
 
@@ -50,7 +49,9 @@ def spoken(batch: Batch, number: int, choice: Choice) -> NextReading:
     else:
         at = batch.posed[number].observation(choice.row) if choice.way.kind in SINGLES else None
         pair = [_place(batch, number, choice, group) for group in choice.pair or ()]
-        why = why_words(choice.way, at, pair, _halves(batch, number, choice), _doubtful_reading(batch, number, choice))
+        why = why_words(choice.way, at, pair, _halves(batch, number, choice), doubtful_reading(batch, number, choice))
+    if choice.named >= 0:
+        why = batch.posed[number].named[choice.named].why + BESIDE_WORDS.get(choice.way.how, "")
     current_a = choice.current_a
     bounded = bool(current_a) and math.isfinite(choice.most_a)
     return NextReading(
@@ -60,13 +61,25 @@ def spoken(batch: Batch, number: int, choice: Choice) -> NextReading:
         to=asked.to,
         leg=asked.leg,
         current_at_least=Figure(current_a, "A") if current_a else None,
-        why="; ".join(part for part in (why, asked.besides) if part),
+        why="; ".join(part for part in (why, asked.besides, *_current_words(batch.posed[number], choice)) if part),
         caution=caution_words(batch.posed[number].case, choice.way),
         current_at_most=Figure(choice.most_a, "A") if bounded else None,
         minutes=choice.way.minutes,
         # the last digits depend on what else was computed in the same batch
         fall_nats=round(float(batch.options.fall[number, choice.option]), 9) if choice.option >= 0 else None,
     )
+
+
+def _current_words(posed: Posed, choice: Choice) -> list[str]:
+    """Which current is meant, where branches differ, and what bounds it."""
+    if not choice.current_a:
+        return []
+    amps, end = posed.amps, posed.imagined.ends[choice.branch]
+    here = abs(amps[choice.branch])
+    parted = here < WHOLE * max(map(abs, amps.values())) or sum(run.from_point == "way" for run in posed.case.runs) > 1
+    words = [f"the current is that in {posed.imagined.names[choice.branch]}"] if parted else []
+    flows_a = max(here, posed.case.tree.design_current_a.get(end) or 0.0)
+    return words + bound_words(posed.case, choice.most_a, choice.most_why, flows_a)
 
 
 def _asked(batch: Batch, number: int, choice: Choice) -> _Asked:
@@ -79,7 +92,7 @@ def _asked(batch: Batch, number: int, choice: Choice) -> _Asked:
             return _Asked(what, "voltage", said.to, besides=besides)
         return _Asked(what, "resistance" if way.how == DEAD_TEST else said.quantity, said.at, said.to, said.leg)
     if way.kind == ROUND:
-        doubtful = _doubtful_reading(batch, number, choice)
+        doubtful = doubtful_reading(batch, number, choice)
         if doubtful is None:
             return _Asked("round", *_round_places(posed))
         besides = "read it again with the points beside it, as a round of its own"
@@ -102,37 +115,13 @@ def _round_places(posed: Posed) -> tuple[str, str, str]:
     return ("voltage", points[0], points[-1]) if len(points) > 1 else (said[0].quantity, said[0].at, said[0].to)
 
 
-def _doubtful_reading(batch: Batch, number: int, choice: Choice) -> Observation | None:
-    """The reading that a slip speaks of; ``None`` where it speaks of none, or of all."""
-    if choice.slip is None:
-        return None
-    name, read = batch.judged.hypotheses.names[choice.slip], batch.posed[number].read
-    if name.what == CURRENT_READING:
-        return read.current_readings[name.which[0]]
-    return read.observations[name.which[0]] if name.what in (ONE_READING, SWAPPED) else None
-
-
-def _touched(batch: Batch, choice: Choice) -> list[bool]:
-    """Of each group: whether it lies in what a single reading is taken across."""
-    shape, row = batch.shape, choice.row
-    found = []
-    for group in batch.atoms.groups:
-        if choice.way.kind not in SINGLES or group.place < 0:
-            found.append(False)
-        elif group.cause == BAD_CONNECTION:
-            found.append(bool(shape.coefficient[row, shape.place_element[group.place]]))
-        else:
-            found.append(bool(shape.offset_rows[group.place, row]))
-    return found
-
-
 def _place(batch: Batch, number: int, choice: Choice, group: int) -> Said:
     """A group beside a reading."""
     cause, place = batch.atoms.groups[group]
     if place < 0:
         return Said(cause)
     branch = batch.shape.places[place].branch if cause == BAD_CONNECTION else batch.shape.offset_branch(place)
-    return Said(cause, batch.posed[number].imagined.names[branch], _touched(batch, choice)[group])
+    return Said(cause, batch.posed[number].imagined.names[branch], touched(batch, choice.way, choice.row)[group])
 
 
 def _halves(batch: Batch, number: int, choice: Choice) -> bool:
@@ -140,7 +129,7 @@ def _halves(batch: Batch, number: int, choice: Choice) -> bool:
     shares = batch.atoms.shares[number]
     bad = np.array([group.cause == BAD_CONNECTION for group in batch.atoms.groups])
     whole = float(shares[bad].sum())
-    inside = np.array(_touched(batch, choice)) & bad
+    inside = np.array(touched(batch, choice.way, choice.row)) & bad
     suspects = float(np.exp(entropy(shares[bad] / max(whole, LEAST))))  # as many as equal ones would be
     evenly = EVENLY[0] * whole <= float(shares[inside].sum()) <= EVENLY[1] * whole
     return whole > 0.5 and suspects > SUSPECTS and evenly and choice.way.kind in (LEG, POINT)

@@ -66,14 +66,17 @@ def reading_problems(index: Index, suggestions: Suggestions) -> Iterator[Problem
 
 
 def places_of(index: Index, circuit_id: str) -> Places:
-    """Where a meter can be put on a circuit, by kind of place."""
+    """Where a meter can be put on a circuit, by kind of place; ``pole`` has the legs in which the device has one."""
     names = [run.name for run in index.runs_of(circuit_id)]
-    has_device = index.circuits[circuit_id].device != "none"
+    circuit = index.circuits[circuit_id]
+    has_device = circuit.device != "none"
+    one_pole = circuit.device_leg in ("positive", "negative") and (circuit.device_poles or 1) < 2
     return {
         "point": ("bus", *index.points_of(circuit_id)),
         "run": tuple(names),
         "end": tuple(f"{name} {end}" for name in names for end in ("start", "end")),
         "device": ("device",) if has_device else (),
+        "pole": (circuit.device_leg,) if one_pole else ("positive", "negative"),
         "way": ("way",),
         "ambient": ("ambient",),
     }
@@ -94,7 +97,7 @@ def _on_circuit(reading: Reading, places: Places, index: Index, suggestions: Sug
     is_joint = reading.at in places["end"] or reading.at == "device"
     needs_to = reading.quantity == "drop" or (reading.quantity == "resistance" and not is_joint)
     yield from _to(reading, needs_to, places, suggestions)
-    yield from _leg(reading, is_joint)
+    yield from _leg(reading, is_joint, places["pole"])
 
 
 def _to(reading: Reading, needed: bool, places: Places, suggestions: Suggestions) -> Iterator[Problem]:
@@ -113,12 +116,14 @@ def _to(reading: Reading, needed: bool, places: Places, suggestions: Suggestions
         yield problem(f"{quoted(reading.at)} and {quoted(reading.to)} are one point", "another point")
 
 
-def _leg(reading: Reading, is_joint: bool) -> Iterator[Problem]:
+def _leg(reading: Reading, is_joint: bool, poles: tuple[str, ...]) -> Iterator[Problem]:
     problem = partial(Problem, "readings", reading.id, "leg")
     quantity, leg = reading.quantity, reading.leg
     one_leg = quantity == "resistance" or (quantity == "joint" and is_joint)
     if one_leg and reading.at != "device" and leg in ("", "both"):
         yield problem(f"{quantity} at {quoted(reading.at)} is on one leg, which must be named", _NAMED_LEG)
+    elif one_leg and leg in ("positive", "negative") and leg not in poles and reading.at == "device":
+        yield problem(f"the device has no pole in the {leg} leg", either(poles))
     elif quantity == "current" and leg == "both":
         yield problem("the clamp is around one conductor for a current", f"{_NAMED_LEG}, or an empty cell")
     elif quantity == "residual" and leg in ("positive", "negative"):
@@ -152,7 +157,7 @@ def _on_busbar(reading: Reading, index: Index, suggestions: Suggestions) -> Iter
         )
     if reading.to:
         yield problem("to", f"{reading.quantity} on a busbar goes to no other place", "an empty cell")
-    yield from _leg(reading, is_joint=False)
+    yield from _leg(reading, is_joint=False, poles=())
 
 
 def _replacements(index: Index, suggestions: Suggestions) -> Iterator[Problem]:

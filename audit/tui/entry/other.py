@@ -45,7 +45,7 @@ def goes_to(index: Index, place: Place, quantity: str, at: str) -> tuple[str, ..
     return tuple(sorted(others, key=lambda point: (points.index(point) < behind, points.index(point))))
 
 
-def legs_for(quantity: str, at: str) -> tuple[str, ...]:
+def legs_for(index: Index, place: Place, quantity: str, at: str) -> tuple[str, ...]:
     """The legs that a reading may be of, the usual one first; empty where a leg says nothing."""
     if quantity == "temperature":
         return ()
@@ -55,10 +55,10 @@ def legs_for(quantity: str, at: str) -> tuple[str, ...]:
         return ("both",)
     if quantity == "voltage":
         return ("both", *LEGS[:2])
-    is_joint = at.startswith("run ") and at.endswith((" start", " end"))
-    if is_joint or quantity == "resistance":
-        return LEGS[:2] if at != "device" else LEGS
-    return ("both", *LEGS[:2]) if quantity == "drop" else LEGS
+    if at == "device":
+        poles = places_of(index, place.circuit_id)["pole"]
+        return poles if len(poles) < 2 else LEGS
+    return ("both", *LEGS[:2]) if quantity == "drop" else LEGS[:2]
 
 
 def correctable(index: Index, place: Place) -> list[Reading]:

@@ -114,7 +114,7 @@ async def _where(screen: SurveyScreen, index: Index, where: Where, wanted: NextR
     to = await one_of(f"{quantity} from {at} to", ends, wanted.to)
     if to is None:
         return None
-    leg = await one_of(f"{quantity} at {at}: which leg?", legs_for(quantity, at), wanted.leg)
+    leg = await one_of(f"{quantity} at {at}: which leg?", legs_for(index, place, quantity, at), wanted.leg)
     if leg is None:
         return None
     loads = await one_of(f"{quantity} at {at}: the loads are", LOADS if quantity in OF_A_CLAMP else LOADS[:1], "on")

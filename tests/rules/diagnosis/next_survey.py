@@ -241,8 +241,9 @@ def share_for(circuit: Circuit, asked: NextReading) -> float:
         return 1.0
     # a reading's current is that of the first run that it is taken across
     first = int(asked.at.split()[1]) - 1 if asked.at.startswith("run") else circuit.points.index(asked.at)
-    of_point = asked.quantity == "voltage" and asked.what != "round"
-    ampere = circuit.amps[0 if of_point else min(first, circuit.runs - 1)]
+    if asked.quantity == "voltage" and asked.what != "round":
+        first = max(first - 1, 0)  # that of the run that arrives at the point
+    ampere = circuit.amps[min(first, circuit.runs - 1)]
     if asked.what == "round":
         return least.value / ampere
     share = max(1.0, least.value / ampere)
