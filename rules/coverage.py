@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from rules.context import Context, Measured
 from rules.diagnosis.hypotheses import BAD_CONNECTION
+from rules.errors import MissingData
 from rules.heat import hot_as_read
 from rules.record import Run
 from rules.rounds import Round, Tree
@@ -60,7 +61,19 @@ def joints_of(run: Run) -> int:
 
 def _runs_read(side: Measured) -> set[str]:
     """Ids of the runs that lie between two points read in one round under load."""
-    return {id_ for this in side.rounds if this.amps for id_ in _between(this, side.tree)}
+    return {id_ for this in side.rounds if this.amps for id_ in _between(this, side.tree) if _says(id_, this, side.tree)}
+
+
+def _says(run_id: str, this: Round, tree: Tree) -> bool:
+    """Whether a run has a figure to judge a reading by, and the currents of all that share its return were read."""
+    if tree.figures[run_id].gap:
+        return False
+    if run_id in tree.shared:
+        try:
+            tree.shared[run_id].others(this.name)
+        except MissingData:
+            return False
+    return True
 
 
 def _between(this: Round, tree: Tree) -> set[str]:
