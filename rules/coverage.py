@@ -61,7 +61,9 @@ def joints_of(run: Run) -> int:
 
 def _runs_read(side: Measured) -> set[str]:
     """Ids of the runs that lie between two points read in one round under load."""
-    return {id_ for this in side.rounds if this.amps for id_ in _between(this, side.tree) if _says(id_, this, side.tree)}
+    return {
+        id_ for this in side.rounds if this.amps for id_ in _between(this, side.tree) if _says(id_, this, side.tree)
+    }
 
 
 def _says(run_id: str, this: Round, tree: Tree) -> bool:
