@@ -86,7 +86,11 @@ def why_words(way: Way, at: Observation | None, pair: Sequence[Said], halves: bo
     told = " from ".join(_words(said, way, at, ordered[0]) for said in ordered)
     told = f"tells {told}" if told else OTHERWISE.get(way.kind, "tells most for its effort")
     if halves:
-        told = f"measure the middle first: {told}" if way.kind == POINT else f"{told}, and halves the suspected joints"
+        told = (
+            f"measure the middle first: {told}"
+            if way.kind == POINT
+            else f"{told}, and halves the suspected joints, quicker than one end after another"
+        )
     return told + BESIDE_WORDS.get(way.how, "")
 
 
