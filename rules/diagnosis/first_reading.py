@@ -116,7 +116,7 @@ def named_reading(case: CircuitCase, meters: Meters, named: Named) -> NextReadin
         leg=named.legs[0],
         current_at_least=Figure(needed, "A"),
         why="; ".join([named.why, *bound_words(case, bound.level, bound.why, design_a)]),
-        caution=caution_words(case, way),
+        caution=f"{caution_words(case, way)} {named.caution}",
         current_at_most=None if math.isinf(bound.level) else Figure(bound.level, "A"),
         minutes=way.minutes,
     )

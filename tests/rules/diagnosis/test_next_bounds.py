@@ -124,6 +124,7 @@ def test_a_hot_end_is_read_across_first(chains: ModuleType, volts_read: bool) ->
     assert asked.current_at_most is not None
     assert asked.current_at_most.value <= 16
     assert "Live work" in asked.caution
+    assert "Do not tighten a hot joint live." in asked.caution
     healthy: list[dict[str, object]] = [
         {
             "circuit": "C1",
