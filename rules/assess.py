@@ -26,7 +26,7 @@ from rules.heat import similar_joints
 from rules.index import Index
 from rules.joints import heats_of
 from rules.limits import Limits
-from rules.margins import margins_of
+from rules.margins import lowest_dip, margins_of
 from rules.measured import measured_of, posed_by, ties_by, unused_readings
 from rules.network import network_of
 from rules.record import Circuit, Figure, Reading, Site
@@ -233,7 +233,8 @@ def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
     rows = []
     for margin, point in zip(margins_of(case), case.loads, strict=True):
         load = margin.load
-        worst, lowest = case.worst.get(load.point), load.lowest_voltage_v
+        worst, lowest, dip = case.worst.get(load.point), load.lowest_voltage_v, lowest_dip(margin, point)
+        held_v = point.design_v + point.total_drop_v
         rows.append(
             LoadMargin(
                 load=load.tag,
@@ -245,7 +246,11 @@ def _margins(case: CircuitCase) -> tuple[LoadMargin, ...]:
                 lowest=volts(lowest),
                 margin=None if worst is None or lowest is None else Figure(worst.value - lowest, "V", worst.u),
                 below_highest=volts(margin.below_highest_v),
+                source_working=None if math.isnan(held_v) else volts(held_v),
                 dip=volts(margin.peak.design_v) if margin.peak is not None else None,
+                peak=None if margin.peak is None else Figure(margin.peak.current_a, "A"),
+                dip_worst=dip,
+                dip_margin=None if dip is None or lowest is None else Figure(dip.value - lowest, "V", dip.u),
             )
         )
     return tuple(rows)

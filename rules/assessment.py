@@ -138,6 +138,8 @@ class Doubt:
     """[V]"""
     group: str = ""
     """Group of the limits profile that states it; empty where it is a meter's own figure."""
+    by_instruments: bool = False
+    """Beside that group the record of instruments has part in it: one meter is recorded and another is not."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -202,7 +204,7 @@ class Place(NamedTuple):
 
 @dataclass(frozen=True, slots=True)
 class JointHeat:
-    """Heat in a bad connection that is suspected at one place; what is not known is ``None``."""
+    """Heat in a bad connection or a semiconductor suspected at one place; what is not known is ``None``."""
 
     where: str
     """As in ``Place``."""
@@ -214,6 +216,8 @@ class JointHeat:
     """At design and the voltage that makes it largest. [A]"""
     design: Figure | None
     """Heat at that current. [W]"""
+    cause: str = "bad connection"
+    """As in ``Place``: a bad connection grows with the square of the current, a semiconductor with the current."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -278,6 +282,8 @@ class LoadMargin:
     """The same with everything as recorded: without a fault."""
     source_lowest: Figure | None = None
     """At the source's terminals, at its lowest."""
+    source_working: Figure | None = None
+    """At the source's terminals, at its working voltage: the source of ``design`` and ``dip``."""
     lowest: Figure | None = None
     """The load's own."""
     margin: Figure | None = None
@@ -286,6 +292,12 @@ class LoadMargin:
     """From the source's highest up to the load's own."""
     dip: Figure | None = None
     """At the load's peak current, from the design voltage."""
+    peak: Figure | None = None
+    """The load's peak current; ``None`` where none is recorded."""
+    dip_worst: Figure | None = None
+    """At its peak with the source at its lowest, hot conductors, everything as recorded."""
+    dip_margin: Figure | None = None
+    """From ``dip_worst`` down to ``lowest``."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -306,7 +318,7 @@ class CircuitResult:
     """Largest computed drop from the feeding board to a load at design current. [V]"""
     causes: tuple[Place, ...] = ()
     joints: tuple[JointHeat, ...] = ()
-    """Heat where a connection may be bad, each place once."""
+    """Heat where a connection may be bad or a semiconductor may be, each place once for each."""
     points: tuple[PointVoltage, ...] = ()
     margins: tuple[LoadMargin, ...] = ()
     """One for each load, in the order of their rows."""
@@ -316,6 +328,10 @@ class CircuitResult:
     findings: tuple[Finding, ...] = ()
     """All that are about it, those too that the site's list has under a finding of its source."""
     not_judged: tuple[NotJudged, ...] = ()
+
+    def heat_of(self, place: Place) -> JointHeat | None:
+        """Heat in what a row of causes supposes; ``None`` where none follows."""
+        return next((heat for heat in self.joints if (heat.cause, heat.where) == (place.cause, place.where)), None)
 
 
 @dataclass(frozen=True, slots=True)

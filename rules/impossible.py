@@ -161,14 +161,14 @@ def _falls(this: Round, tree: Tree, limits: Limits) -> Iterator[tuple[str, str, 
     reversed_ = {point for point, _ in reversed_points(this, limits)}
     read = [point for point in this.volts if point not in reversed_]
     for end in read:
-        start = _before(tree, end, read)
+        start = read_before(tree, end, read)
         if start:
             terms = [*this.volts[start], *(Weighted(-t.weight, t.shown) for t in this.volts[end])]
             value, u = total(terms)
             yield start, end, Figure(value, "V", u)
 
 
-def _before(tree: Tree, point: str, read: list[str]) -> str:
+def read_before(tree: Tree, point: str, read: list[str]) -> str:
     """The nearest read point towards the source."""
     here = point
     for _ in range(len(tree.runs) + 2):

@@ -7,6 +7,7 @@ one with what readings support is given.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 
@@ -16,7 +17,7 @@ from rules.case import CircuitCase, LoadPoint
 from rules.held import highest_v
 from rules.loads import drawn
 from rules.network import Network
-from rules.record import Load, Source
+from rules.record import Figure, Load, Source
 
 
 @dataclass(frozen=True, slots=True)
@@ -181,6 +182,22 @@ def _peak(case: CircuitCase, node: int, load: Load, design_v: float | None, wors
         lowest_v=None if worst_v is None else at_peak(worst_v, network.path_ohm(node, lowest=True)),
         source_ohm=source_ohm,
     )
+
+
+def dip_u(steady_v: float, peak_v: float, drop_v: float, drop_u: float) -> float:
+    """Of the voltage at the peak: what the peak adds is in doubt as the steady drop is, by the same resistances. [V]"""
+    relative = drop_u / drop_v if drop_v > 0 else 0.0
+    u = drop_u + relative * max(steady_v - peak_v, 0.0)
+    return u if math.isfinite(u) else 0.0
+
+
+def lowest_dip(margin: Margin, point: LoadPoint) -> Figure | None:
+    """What a load has at its peak with the source at its lowest; ``None`` where no peak is recorded or it is not known."""
+    peak, steady_v = margin.peak, margin.worst_v
+    if peak is None or peak.lowest_v is None or steady_v is None:
+        return None
+    drop_v = point.source_lowest_v - point.lowest_v
+    return Figure(peak.lowest_v, "V", dip_u(steady_v, peak.lowest_v, drop_v, point.lowest_u))
 
 
 def _source_ohm(sources: tuple[Source, ...]) -> float | None:

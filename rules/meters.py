@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 
-from rules.calc.doubt import Shown, each_u, gain_u
+from rules.calc.doubt import Shown, Weighted, each_u, gain_u
 from rules.columns import METER_QUANTITY
 from rules.index import Index
 from rules.limits import Limits
 from rules.record import Instrument, Reading
+
+SHOWN_DIGITS = 9
+"""Digits in which what a display showed is told: all that it has."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,4 +56,21 @@ def worth(reading: Reading, index: Index, limits: Limits, wander: float = 0.0) -
     # a reading without an instrument shares its gain with no other
     key = f"{reading.instrument}\x1f{quantity}\x1f{row.id}\x1f{reading.visit_or_default}" if row else reading.id
     zero = row.zero or 0.0 if row else 0.0
-    return Worth(Shown(reading.value - zero, key, gain, each, wander), known)
+    return Worth(Shown(reading.value - zero, key, gain, each, wander, zero, not known), known)
+
+
+def less_zero_words(terms: Iterable[Weighted], unit: str) -> str:
+    """
+    What the meter showed where its zero was taken off, to stand after what was read; empty where none was.
+
+    >>> less_zero_words([Weighted(1.0, Shown(18.41, "K", 0.006, 0.01, zero=0.03))], "A")
+    ' (18.44 A shown, less its zero 0.03 A)'
+    >>> less_zero_words([Weighted(1.0, Shown(18.41, "K", 0.006, 0.01))], "A")
+    ''
+    """
+    told = list(terms)
+    zero = sum(term.weight * term.shown.zero for term in told)
+    if not zero:
+        return ""
+    value = sum(term.weight * (term.shown.value + term.shown.zero) for term in told)
+    return f" ({value:.{SHOWN_DIGITS}g} {unit} shown, less its zero {zero:.{SHOWN_DIGITS}g} {unit})"

@@ -207,6 +207,14 @@ class Network:
         """The sources that hold a node without a parent."""
         return self._wiring.sources.get(held, ())
 
+    def led_by(self, source: Source) -> list[int]:
+        """The held nodes at which a source stands first: its own, and those of the sets in parallel that it leads."""
+        return [node for node, sources in self._wiring.sources.items() if sources[:1] == (source,)]
+
+    def in_parallel(self, source: Source) -> bool:
+        """Whether a source holds some busbar together with others."""
+        return any(len(sources) > 1 and source in sources for sources in self._wiring.sources.values())
+
     def worst(self, extra_ohm: Floats, offset_v: Floats, conductor_factor: Floats) -> Solved:
         """
         The lowest state with what readings support.

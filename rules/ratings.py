@@ -8,8 +8,13 @@ from dataclasses import dataclass
 
 from rules.index import Index
 from rules.record import CATEGORIES, Board, Circuit, Instrument, Source
+from rules.rounds import judged
 
-_PRINTED = re.compile(r"\bCAT\s*(IV|III|II|I)\b(?:\s*[:/,]?\s*(\d+(?:\.\d+)?)\s*V)?", re.IGNORECASE)
+_PRINTED = re.compile(
+    r"\bCAT\.?\s*(?P<category>IV|III|II|I)\b|(?P<volts>\d{1,3}(?:[ ,]\d{3})+|\d+(?:\.\d+)?)\s*(?P<kilo>k?)V\b",
+    re.IGNORECASE,
+)
+"""A category, or a voltage: meters are printed with either before the other."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,25 +57,49 @@ def ratings_of(row: Instrument) -> tuple[Rating, ...]:
 
     >>> [str(each) for each in ratings_of(Instrument(id="m", category="CAT III 600 V, CAT IV 300 V"))]
     ["Rating(category='CAT III', printed_v=600.0, rated_v=None)", "Rating(category='CAT IV', printed_v=300.0, rated_v=None)"]
+    >>> words(ratings_of(Instrument(id="m", category="1000 V CAT III / 600 V CAT IV")))
+    'CAT III 1000 V, CAT IV 600 V'
     >>> ratings_of(Instrument(id="m", rated_voltage_v=600.0))
     (Rating(category='', printed_v=None, rated_v=600.0),)
     """
     most = row.rated_voltage_v
-    printed = [
-        Rating(f"CAT {match[1].upper()}", float(match[2]) if match[2] else None, most)
-        for match in _PRINTED.finditer(row.category)
-    ]
+    printed = [Rating(category, volts, most) for category, volts in _printed(row.category)]
     return tuple(printed) or ((Rating("", None, most),) if most is not None else ())
 
 
+def _printed(text: str) -> list[tuple[str, float | None]]:
+    """
+    Each category in a text with its voltage: the one before it that no other category took, else the one behind it.
+
+    >>> _printed("CAT III 600 V, CAT IV 300 V"), _printed("600 V CAT III")
+    ([('CAT III', 600.0), ('CAT IV', 300.0)], [('CAT III', 600.0)])
+    >>> _printed("CAT III / CAT IV 600V"), _printed("CAT III 1,000 V / 0.6 kV CAT IV")
+    ([('CAT III', None), ('CAT IV', 600.0)], [('CAT III', 1000.0), ('CAT IV', 600.0)])
+    """
+    found: list[tuple[str, float | None]] = []
+    before: float | None = None
+    wants = False
+    for match in _PRINTED.finditer(text):
+        if match["category"]:
+            found.append((f"CAT {match['category'].upper()}", before))
+            wants, before = before is None, None
+            continue
+        volts = float(re.sub("[ ,]", "", match["volts"])) * (1000 if match["kilo"] else 1)
+        if wants:
+            found[-1] = found[-1][0], volts
+        before, wants = None if wants else volts, False
+    return found
+
+
 def highest_v(place: Circuit | Board | Source, index: Index) -> float | None:
-    """The highest voltage of the sources that feed a place: recorded, else working, else nominal. [V]"""
+    """The highest voltage of the sources that feed a place: recorded, else working, else nominal; or as read there. [V]"""
     known = [
         volts
         for source in sources_of(place, index)
         if (volts := source.highest_voltage_v or source.working_or_nominal_v) is not None
     ]
-    return max(known, default=None)
+    read = [abs(row.value) for row in judged(index.readings_of(place.id), index) if row.quantity == "voltage"]
+    return max([*known, *read], default=None)
 
 
 def sources_of(place: Circuit | Board | Source, index: Index) -> tuple[Source, ...]:

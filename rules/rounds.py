@@ -121,9 +121,9 @@ def _moment(taken_at: str) -> str:
     """A time as text that sorts by time: with an offset it is taken to UTC."""
     try:
         read = datetime.fromisoformat(taken_at)
-    except ValueError:
+        return (read.astimezone(UTC).replace(tzinfo=None) if read.tzinfo else read).isoformat(timespec="microseconds")
+    except (ValueError, OverflowError):
         return taken_at
-    return (read.astimezone(UTC).replace(tzinfo=None) if read.tzinfo else read).isoformat(timespec="microseconds")
 
 
 def rounds_of(readings: Sequence[Reading], tree: Tree, index: Index, limits: Limits) -> tuple[Round, ...]:

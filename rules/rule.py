@@ -165,19 +165,28 @@ def named(rule_id: str, place: Case | Source | Board | str, where: str = "") -> 
 
     >>> named("VD01", "B1/7", "p1"), named("SR01", Source(id="s", tag="BAT"), "terminals")
     ('VD01/B1%2F7/p1', 'SR01/board BAT/terminals')
+    >>> named("VD01", "board BAT"), named("VD01", "site")
+    ('VD01/%62oard BAT', 'VD01/%73ite')
     """
     if isinstance(place, SiteCase):
-        tag = "site"
+        at = "site"
     elif isinstance(place, BoardCase | Board | Source):
-        tag = f"board {place.tag}"
+        at = _unslashed(f"board {place.tag}")
     else:
-        tag = place if isinstance(place, str) else place.tag
-    return "/".join(_unslashed(part) for part in (rule_id, tag, where) if part)
+        at = _of_circuit(place if isinstance(place, str) else place.tag)
+    return "/".join(part for part in (rule_id, at, _unslashed(where)) if part)
 
 
 def _unslashed(part: str) -> str:
     """A part of an id: a slash within it is written so that two places never make one id."""
     return part.replace("%", "%25").replace("/", "%2F")
+
+
+def _of_circuit(tag: str) -> str:
+    """A circuit in an id; one that is called like a board or the site differs by its first letter's code."""
+    if tag == "site" or tag.startswith("board "):
+        return f"%{ord(tag[0]):X}{_unslashed(tag[1:])}"
+    return _unslashed(tag)
 
 
 def rule(

@@ -136,7 +136,11 @@ def lacking_v(context: Context, node: int, circuit_id: str) -> float:
 
 def _busbars(context: Context, node: int) -> Iterator[AtTerminals]:
     index = context.index
-    for table, row_id in context.network.hanging.rows_at.get(node, ()):
+    rows = list(context.network.hanging.rows_at.get(node, ()))
+    sources = context.network.sources_at(node)
+    if len(sources) > 1:  # what was read at one of them was read on the busbar that they hold together
+        rows = [("sources", source.id) for source in sources] + rows
+    for table, row_id in rows:
         row: Source | Board = index.sources[row_id] if table == "sources" else index.boards[row_id]
         rounds: dict[tuple[str, str], list[Reading]] = defaultdict(list)
         for reading in judged(index.readings_of(row.id), index):

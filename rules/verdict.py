@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 from rules.assessment import Drop, Place
 from rules.case import CircuitCase
+from rules.diagnosis.doubtful import RATIOS
 from rules.diagnosis.hypotheses import (
     AS_RECORDED,
     BAD_CONNECTION,
@@ -24,6 +25,8 @@ from rules.units import show
 FAMILIES = ((BAD_CONNECTION,), (SEMICONDUCTOR,), (SMALLER, OTHER_METAL, LONGER))
 """Causes that readings often cannot tell from each other: a ratio of 1.6 is a size, a metal or a length."""
 
+CONDUCTORS = FAMILIES[-1]
+"""Of these a claim is that the conductors are not as recorded."""
 TOLD = 0.01
 """Probability from which a cause is mentioned."""
 NOT_RULED_OUT = 0.05
@@ -103,6 +106,11 @@ def doubtful(causes: tuple[Place, ...]) -> Place | None:
     return next((place for place in causes if place.cause == DOUBTFUL and place.probability > 0.5), None)
 
 
+def is_by_a_factor(slip: Place) -> bool:
+    """Whether a doubtful reading is off by a factor, its sign left out."""
+    return any(f"({words})" in slip.what for ratio, words in RATIOS.items() if ratio > 0)
+
+
 def unsettled(case: CircuitCase) -> str:
     """Why the readings do not settle a circuit; empty where they do, by a fault that they claim or by none."""
     if not case.visit:
@@ -114,6 +122,11 @@ def unsettled(case: CircuitCase) -> str:
     causes = case.diagnosis.causes
     if claimed(causes, case.limits) is not None or _as_recorded(causes) >= case.limits["decision.sound_at"]:
         return ""
+    if (slip := doubtful(causes)) is not None:
+        what = (
+            f"{slip.what} ({probability_words(slip.probability)})" if slip.what else probability_words(slip.probability)
+        )
+        return f"a reading or the record is wrong: {what}"
     said = [cause_words(place) for place in causes[:MOST_SAID] if place.probability >= TOLD]
     return f"not settled: {', '.join(said)}"
 

@@ -95,7 +95,7 @@ def _drop(drop: Drop | None) -> Json | None:
 
 
 def _cause(place: Place, result: CircuitResult) -> Json:
-    heat = next((joint for joint in result.joints if joint.where == place.where), None)
+    heat = result.heat_of(place)
     extra = {"value": place.best_ohm, "low": place.low_ohm, "high": place.high_ohm}
     known = {name: value for name, value in extra.items() if value is not None and math.isfinite(value)}
     return _without_none(

@@ -11,6 +11,8 @@ from audit.report.phrases import (
     figure_words,
     heat_words,
     next_reading_words,
+    peak_words,
+    source_words,
     status_words,
     with_and_without,
 )
@@ -59,7 +61,7 @@ def _verdict(result: CircuitResult) -> tuple[tuple[str, str], ...]:
         rows.append(("Judged on", f"visit {result.visit}"))
     for place in result.causes:
         rows.append(_cause(place))
-        heat = next((joint for joint in result.joints if joint.where == place.where), None)
+        heat = result.heat_of(place)
         rows += [
             ("heat", heat_words(heat) if heat is not None else ""),
             ("for", "; ".join(place.speaks_for)),
@@ -159,20 +161,18 @@ def _margins(result: CircuitResult) -> Table | None:
     def words(figure: Figure | None) -> str:
         return "not known" if figure is None else figure_words(figure)
 
-    rows: list[tuple[Cell, ...]] = [
-        (
-            f"{each.load}, {each.point}",
-            words(each.worst),
-            words(each.lowest),
-            words(each.margin),
-            words(each.below_highest),
-            "" if each.dip is None else figure_words(each.dip),
-        )
-        for each in result.margins
-    ]
+    rows: list[tuple[Cell, ...]] = []
+    for each in result.margins:
+        kept = (words(each.lowest), words(each.margin), words(each.below_highest))
+        rows.append((f"{each.load}, {each.point}", words(each.design), words(each.worst), *kept))
+        if each.peak is not None:
+            dips = (words(each.dip), words(each.dip_worst), words(each.lowest), words(each.dip_margin), "")
+            rows.append((f"{each.load}, {peak_words(each)}", *dips))
+    if said := source_words(result.margins):
+        rows.append((said,))
     columns = (
-        Column("Margin of each load", share=4), Column("At worst", "right"), Column("Its lowest", "right"),
-        Column("Margin", "right"), Column("Below its highest", "right"), Column("At its peak", "right"),
+        Column("Margin of each load", share=4), Column("At design", "right"), Column("At worst", "right"),
+        Column("Its lowest", "right"), Column("Margin", "right"), Column("Below its highest", "right"),
     )  # fmt: skip
     return Table(columns, tuple(rows))
 

@@ -203,6 +203,30 @@ def with_and_without(margin: LoadMargin) -> str:
     )
 
 
+def peak_words(margin: LoadMargin) -> str:
+    """
+    Which state of a load the peak is.
+
+    >>> peak_words(LoadMargin("coil", "p1", peak=Figure(10.0, "A")))
+    'at peak, 10 A'
+    """
+    return "" if margin.peak is None else f"at peak, {figure_words(margin.peak)}"
+
+
+def source_words(margins: tuple[LoadMargin, ...]) -> str:
+    """
+    What the source has at design and at worst; empty where it is not known.
+
+    >>> source_words((LoadMargin("coil", "p1", source_working=Figure(118.0, "V"), source_lowest=Figure(99.0, "V")),))
+    'at design: the source at 118 V; at worst: the source at its lowest, 99 V, hot conductors'
+    """
+    design = dict.fromkeys(figure_words(each.source_working) for each in margins if each.source_working is not None)
+    lowest = dict.fromkeys(figure_words(each.source_lowest) for each in margins if each.source_lowest is not None)
+    said = [f"at design: the source at {' or '.join(design)}"] if design else []
+    said += [f"at worst: the source at its lowest, {' or '.join(lowest)}, hot conductors"] if lowest else []
+    return "; ".join(said)
+
+
 def fault_is_likely(result: CircuitResult) -> bool:
     """Whether a fault is more probable than none."""
     return sum(place.probability for place in result.causes if place.cause not in NO_FAULT) > 0.5
@@ -245,6 +269,7 @@ def doubt_rows(drop: Drop) -> tuple[DoubtRow, ...]:
         words = f"{100 * share:.0f} %" if share >= LEAST_SHARE else f"< {100 * LEAST_SHARE:.0f} %"
         bar = drop_bar(share, None, None, 1.0, f"{doubt.name}: {words}")
         stated = f"profile, {doubt.group}" if doubt.group else "record of instruments"
+        stated += " and record of instruments" if doubt.group and doubt.by_instruments else ""
         rows.append(DoubtRow(doubt.name, show(doubt.u_v, "V", digits=2), share, words, bar, stated))
     return tuple(rows)
 

@@ -31,7 +31,7 @@ from rules.assessment import Assessment, CircuitResult, Finding, NotJudged, Seve
 from rules.index import Index
 from rules.record import Decision, Feed, Site
 from rules.units import show
-from rules.verdict import probability_words
+from rules.verdict import CONDUCTORS, TOLD, probability_words
 
 BAR_LEGEND = (
     "Bar: solid is the measured drop, its pointed or grey end the doubt (u), the tick the computed drop, "
@@ -178,6 +178,9 @@ def evidence_words(assessment: Assessment) -> Callable[[Finding], str]:
     def words(finding: Finding) -> str:
         if finding.cause is None or finding.circuit is None:
             return ""
+        if finding.cause in CONDUCTORS:
+            each = {cause: causes.get((finding.circuit, cause, ""), 0.0) for cause in CONDUCTORS}
+            return conductors_words(each) if any(each.values()) else finding.cause
         stated = finding.numbers.get("probability")
         of_cause = causes.get((finding.circuit, finding.cause, ""))
         of_place = causes.get((finding.circuit, finding.cause, finding.where), of_cause)
@@ -187,6 +190,18 @@ def evidence_words(assessment: Assessment) -> Callable[[Finding], str]:
         )
 
     return words
+
+
+def conductors_words(probabilities: Mapping[str, float]) -> str:
+    """
+    The claim that conductors are not as recorded, and what they may be instead.
+
+    >>> conductors_words({"smaller conductor": 0.34, "other metal": 0.001, "longer route": 0.33})
+    'conductors not as recorded, probability 0.67: smaller conductor 0.34, longer route 0.33'
+    """
+    told = {cause: p for cause, p in sorted(probabilities.items(), key=lambda item: -item[1]) if p >= TOLD}
+    each = ", ".join(f"{cause} {probability_words(p)}" for cause, p in told.items())
+    return f"conductors not as recorded, probability {probability_words(sum(told.values()))}: {each}"
 
 
 def decisions_of(site: Site) -> dict[str, str]:

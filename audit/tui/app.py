@@ -18,7 +18,7 @@ from textual.screen import Screen
 from audit.tui.edits import Edit
 from audit.tui.entry.habits import Habits
 from audit.tui.judge import Judge
-from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Outlined, Refused, Saved, Troubled, Undone
+from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Outlined, Refused, Saved, Troubled, Undone, Unjudged
 from audit.tui.screens import reporting
 from audit.tui.screens.ask import Ask
 from audit.tui.screens.base import OurScreen
@@ -127,6 +127,12 @@ class OhmwalkApp(App[None]):
         if self.survey is not None and message.site is self.survey.site:
             results = {result.circuit_id: result for result in message.assessment.circuits}
             self.survey = replace(self.survey, context=message.context, results=results, assessment=message.assessment)
+
+    @on(Unjudged)
+    def take_why_it_cannot_be_judged(self, message: Unjudged) -> None:
+        """No verdict of an earlier record is left standing."""
+        if self.survey is not None and message.site is self.survey.site:
+            self.survey = replace(self.survey, context=None, results={}, assessment=None, cannot_judge=message.line)
 
     @property
     def is_reading(self) -> bool:

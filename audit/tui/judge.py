@@ -13,7 +13,7 @@ from dataclasses import dataclass
 
 from textual.message import Message
 
-from audit.tui.messages import Assessed, Crashed, Judged, Troubled
+from audit.tui.messages import Assessed, Crashed, Judged, Unjudged
 from rules.assessment import CircuitResult
 from rules.errors import RulesError
 from rules.record import Site
@@ -100,4 +100,4 @@ class Judge(threading.Thread):
         except _Outdated:
             return
         except RulesError as error:
-            self._post(Troubled(str(error).replace("\n", "; ")))
+            self._post(Unjudged(request.site, str(error).replace("\n", "; ")))

@@ -90,6 +90,14 @@ class Assessed(Message):
 
 
 @dataclass
+class Unjudged(Message):
+    """A record cannot be judged: its limits profile is not known, or is wrong."""
+
+    site: Site
+    line: str
+
+
+@dataclass
 class Crashed(Message):
     """A thread met a fault of the program."""
 

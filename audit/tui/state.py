@@ -35,11 +35,15 @@ class Survey:
     """By circuit id; what is not judged yet is missing, or as it was before the last save."""
     assessment: Assessment | None = None
     """Of this very record; ``None`` until all of it is judged."""
+    cannot_judge: str = ""
+    """Why this very record cannot be judged; then nothing was."""
 
     def of(self, site: Site, index: Index, visit: str, read: Mapping[str, frozenset[str]]) -> Survey:
         """Another state of the same site: what was judged stands until it is judged anew."""
         results = {id_: result for id_, result in self.results.items() if id_ in index.circuits}
-        return replace(self, site=site, index=index, visit=visit, read=read, results=results, assessment=None)
+        return replace(
+            self, site=site, index=index, visit=visit, read=read, results=results, assessment=None, cannot_judge=""
+        )
 
     @property
     def is_judged(self) -> bool:

@@ -32,6 +32,10 @@ class Shown:
     """Standard uncertainty of counts and display, each reading anew, in the value's unit."""
     wander_u: float = 0.0
     """Standard deviation of what was read itself, each reading anew, in the value's unit."""
+    zero: float = 0.0
+    """What was taken off as the meter's zero, in the value's unit."""
+    is_poor: bool = False
+    """What is doubtful about it is the profile's, at least in part: the meter or its figures are not recorded."""
 
     @property
     def own_variance(self) -> float:

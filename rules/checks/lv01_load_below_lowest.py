@@ -10,6 +10,7 @@ from rules.decision import Verdict, against_limit
 from rules.impossible import dead_points
 from rules.load_window import Bound, lowest_of, source_of, unused
 from rules.margins import margins_of
+from rules.places import joined
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, named, rule
 from rules.terminals import below_its_lowest, lacking_v
@@ -195,7 +196,7 @@ def _dip(case: CircuitCase, point: LoadPoint) -> Iterator[str]:
 def _where(case: CircuitCase, point: LoadPoint) -> str:
     """The load's point; with the load's tag where others are there too, so that each finding has an id of its own."""
     alone = sum(other.load.point == point.load.point for other in case.loads) == 1
-    return point.load.point if alone else f"{point.load.point}, {point.load.tag}"
+    return joined(point.load.point, "" if alone else point.load.tag)
 
 
 def _source(case: CircuitCase) -> int:

@@ -12,6 +12,7 @@ from rules.decision import Verdict, against_limit
 from rules.doubts import drop_u
 from rules.load_window import Bound, highest_of, source_of, unused
 from rules.nominal import nominal_v
+from rules.places import joined
 from rules.record import Figure, Source
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, BoardCase, named, rule
 from rules.units import show, show_against
@@ -236,4 +237,4 @@ def _at_highest(context: Context, circuit_id: str, point: str) -> _AtHighest | s
 def _where(case: CircuitCase, point: LoadPoint) -> str:
     """The load's point; with the load's tag where others are there too, so that each finding has an id of its own."""
     alone = sum(other.load.point == point.load.point for other in case.loads) == 1
-    return point.load.point if alone else f"{point.load.point}, {point.load.tag}"
+    return joined(point.load.point, "" if alone else point.load.tag)

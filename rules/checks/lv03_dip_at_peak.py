@@ -1,12 +1,12 @@
 """LV03: a load falls below its lowest voltage while it draws its peak current."""
 
-import math
 from collections.abc import Iterator
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase, LoadPoint
 from rules.decision import Verdict, against_limit
-from rules.margins import Margin, margins_of
+from rules.margins import Margin, dip_u, margins_of
+from rules.places import joined
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_COMPUTED, rule
 from rules.units import show, show_against
@@ -62,7 +62,7 @@ def _judge(case: CircuitCase, point: LoadPoint, margin: Margin, lowest: float) -
         states.append((peak.lowest_v, margin.worst_v, drop_v, point.lowest_u, words))
     open_ = ""
     for number, (volts, steady, drop_v, drop_u, when) in enumerate(states):
-        u = _dip_u(steady or 0.0, volts, drop_v, drop_u)
+        u = dip_u(steady or 0.0, volts, drop_v, drop_u)
         if steady is None or steady < lowest:
             return  # LV01 says so, of this state and of all lower ones
         verdict = against_limit(volts, lowest, u, case.limits, above_is_bad=False)
@@ -93,13 +93,6 @@ def _judge(case: CircuitCase, point: LoadPoint, margin: Margin, lowest: float) -
         yield dip_at_peak.gap(case, load.point, open_)
 
 
-def _dip_u(steady_v: float, peak_v: float, drop_v: float, drop_u: float) -> float:
-    """Of the voltage at the peak: what the peak adds is in doubt as the steady drop is, by the same resistances. [V]"""
-    relative = drop_u / drop_v if drop_v > 0 else 0.0
-    u = drop_u + relative * max(steady_v - peak_v, 0.0)
-    return u if math.isfinite(u) else 0.0
-
-
 def _consequences(case: CircuitCase, point: LoadPoint, source_ohm: float | None) -> Iterator[str]:
     others = [load.load.tag for load in case.loads if load is not point]
     if others:
@@ -113,4 +106,4 @@ def _consequences(case: CircuitCase, point: LoadPoint, source_ohm: float | None)
 def _where(case: CircuitCase, point: LoadPoint) -> str:
     """The load's point; with the load's tag where others are there too, so that each finding has an id of its own."""
     alone = sum(other.load.point == point.load.point for other in case.loads) == 1
-    return point.load.point if alone else f"{point.load.point}, {point.load.tag}"
+    return joined(point.load.point, "" if alone else point.load.tag)

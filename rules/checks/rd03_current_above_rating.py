@@ -7,6 +7,7 @@ from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
 from rules.decision import Verdict, against_limit
 from rules.errors import MissingData
+from rules.meters import less_zero_words
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show, show_against
@@ -32,7 +33,7 @@ def current_above_rating(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     **Leaves alone**: 9.8 A by the same clamp. 10.1 A, whose doubt reaches over the rating, is not judged.
     """
     read = [
-        (this, point, Figure(value, "A", u))
+        (this, point, Figure(value, "A", u), less_zero_words(terms, "A"))
         for this in case.rounds
         for point, terms in this.amps.items()
         for value, u in [total(terms)]
@@ -49,7 +50,7 @@ def current_above_rating(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         return probability_above(abs(amps.value), rating, amps.u or 0.0)
 
     # the reading that says most, not the largest: a poor meter's may be larger and say nothing
-    this, point, amps = max(read, key=lambda item: (past(item[2]), abs(item[2].value)))
+    this, point, amps, shown = max(read, key=lambda item: (past(item[2]), abs(item[2].value)))
     verdict = against_limit(abs(amps.value), rating, amps.u or 0.0, case.limits)
     if verdict is Verdict.CONFORMS:
         return
@@ -57,12 +58,12 @@ def current_above_rating(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     run = case.tree.ends.get(point)
     where = f"{run.name if run else point}, round {this.name}"
     if verdict is Verdict.OPEN:
-        why = f"not settled: {show(abs(amps.value), 'A', amps.u)} was read against the device's {limit}"
+        why = f"not settled: {show(abs(amps.value), 'A', amps.u)} was read{shown} against the device's {limit}"
         yield current_above_rating.gap(case, where, why)
         return
     yield current_above_rating.finding(
         case,
         where,
-        f"{show(abs(amps.value), 'A', amps.u)} was read, above the device's {limit}",
+        f"{show(abs(amps.value), 'A', amps.u)} was read{shown}, above the device's {limit}",
         numbers={"current": amps, "rating": Figure(rating, "A")},
     )

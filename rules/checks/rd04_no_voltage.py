@@ -6,6 +6,7 @@ from rules.assessment import Citation, Finding, Severity
 from rules.case import CircuitCase
 from rules.errors import MissingData
 from rules.impossible import dead_points, flowing
+from rules.places import joined
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
@@ -49,7 +50,7 @@ def no_voltage(case: CircuitCase) -> Iterator[Finding]:
                 why = f"as does what was read behind it ({behind}), while current flows: short-circuited, or its source folds back"
             yield no_voltage.finding(
                 case,
-                f"{point}, round {this.name}",
+                joined(point, f"round {this.name}"),
                 f"{point} reads {show(volts.value, 'V', volts.u)} where {show(nominal, 'V')} belongs"
                 f"{', ' if flows else ': '}{why}",
                 numbers={"voltage": volts, "nominal": Figure(nominal, "V")},

@@ -6,6 +6,7 @@ from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase
 from rules.explained import most_explained_a
+from rules.meters import less_zero_words
 from rules.record import Figure
 from rules.rule import DOUBTS_OF_READINGS, rule
 from rules.units import show
@@ -52,7 +53,7 @@ def current_above_recorded(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             yield current_above_recorded.finding(
                 case,
                 f"{where}, round {this.name}",
-                f"{show(value, 'A', u)} was read where the loads are recorded to draw {show(design, 'A')}"
+                f"{show(value, 'A', u)} was read{less_zero_words(terms, 'A')} where the loads are recorded to draw {show(design, 'A')}"
                 + (f", and {show(most, 'A', digits=3)} at most" if most is not None and most > 1.001 * design else ""),
                 numbers={"current": Figure(value, "A", u), "recorded": Figure(design, "A")},
                 source=case.limits.citation("readings"),

@@ -8,14 +8,13 @@ from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
 from rules.compared import compare
 from rules.diagnosis.conductor_causes import FEET_IN_A_METRE
-from rules.diagnosis.doubtful import RATIOS
 from rules.diagnosis.hypotheses import AS_RECORDED, DOUBTFUL
 from rules.diagnosis.words import RECORD_WORDS
 from rules.errors import MissingData
 from rules.record import Figure, Run
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.units import show
-from rules.verdict import beyond_common, claimed, doubtful, probability_words
+from rules.verdict import beyond_common, claimed, doubtful, is_by_a_factor, probability_words
 
 LENGTHS = {
     2.0: "that of the loop entered as one way",
@@ -59,7 +58,7 @@ def typing_slip(case: CircuitCase) -> Iterator[Finding]:
         return
     slip = doubtful(causes)
     told = case.drop is not None and _is_told(case, case.drop)
-    if slip is not None and not told and _is_by_a_factor(slip):
+    if slip is not None and not told and is_by_a_factor(slip):
         yield typing_slip.finding(
             case,
             slip.what.partition(": ")[0],
@@ -106,7 +105,7 @@ def _lengths(case: CircuitCase, slip: Place | None) -> Iterator[Finding]:
         f"{show(drop.computed.value, 'V', drop.computed.u)} computed"
         for (run, length, drop), fit in zip(odd, fits, strict=True)
     ]
-    other = f"; or {slip.what}" if slip is not None and _is_by_a_factor(slip) else ""
+    other = f"; or {slip.what}" if slip is not None and is_by_a_factor(slip) else ""
     yield typing_slip.finding(
         case,
         " and ".join(run.name for run, *_ in odd),
@@ -115,11 +114,6 @@ def _lengths(case: CircuitCase, slip: Place | None) -> Iterator[Finding]:
         | {"computed": odd[0][2].computed},
         cause=DOUBTFUL,
     )
-
-
-def _is_by_a_factor(slip: Place) -> bool:
-    """Whether a doubtful reading is off by a factor, its sign left out."""
-    return any(f"({words})" in slip.what for ratio, words in RATIOS.items() if ratio > 0)
 
 
 def _of_run(case: CircuitCase, run: Run, end: str) -> Drop | None:

@@ -2,16 +2,18 @@
 
 from collections.abc import Iterator, Mapping
 
-from rules.assessment import Citation, Finding, Severity
+from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import Weighted
 from rules.closure import Terms, added_up
 from rules.context import Context
 from rules.errors import MissingData
 from rules.meters import worth
-from rules.record import Board, Circuit
+from rules.moments import seconds_between
+from rules.record import Board, Circuit, Reading
 from rules.rounds import Round, current_at, judged
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
 from rules.taken import some
+from rules.units import show_against
 
 
 @rule(
@@ -24,7 +26,7 @@ from rules.taken import some
     source=Citation("Kirchhoff's first law; JCGM 100, 5.2 for the doubt of the sum", status="textbook, no edition"),
     limits=("decision", "closure", "load_share", *DOUBTS_OF_READINGS),
 )
-def feeder_against_circuits(case: BoardCase) -> Iterator[Finding]:
+def feeder_against_circuits(case: BoardCase) -> Iterator[Finding | NotJudged]:
     """
     The current into a board differs from the sum of its circuits' currents. Those of rounds of one name and visit are
     compared, into the board read on its busbar, else in the circuits that feed it; the difference lies beyond doubt and the
@@ -33,7 +35,8 @@ def feeder_against_circuits(case: BoardCase) -> Iterator[Finding]:
 
     **Finds**: 12.0 A into a board whose two circuits draw 5.0 A and 4.0 A.
 
-    **Leaves alone**: 12.0 A into a board of three circuits of which two were read, 5.0 A and 4.0 A.
+    **Leaves alone**: 12.0 A into a board of three circuits of which two were read, 5.0 A and 4.0 A;
+    currents read further apart than a round may last, where they say when, which are not judged.
     """
     context = case.context
     board = case.row
@@ -56,7 +59,15 @@ def feeder_against_circuits(case: BoardCase) -> Iterator[Finding]:
             whole,
             context.limits,
         )
-        if unclosed is not None:
+        if unclosed is None:
+            continue
+        seconds = seconds_between(_currents(board, circuits, visit, name, context))
+        most = context.limits["closure.round_minutes"]
+        if seconds is not None and seconds > most * 60:
+            apart, limit = show_against(seconds / 60, most, "min")
+            why = f"its currents were read over {apart}, more than {limit}: not one load state"
+            yield feeder_against_circuits.gap(case, f"{board.tag}, round {name}", why)
+        else:
             yield feeder_against_circuits.finding(
                 case,
                 f"round {name}",
@@ -64,6 +75,18 @@ def feeder_against_circuits(case: BoardCase) -> Iterator[Finding]:
                 numbers={"arriving": unclosed.first_sum, "leaving": unclosed.second_sum, "gap": unclosed.gap},
                 source=f"{feeder_against_circuits.source}; {context.limits.citation('closure')}",
             )
+
+
+def _currents(
+    board: Board, circuits: tuple[Circuit, ...], visit: str, name: str, context: Context
+) -> Iterator[Reading]:
+    """The currents that were read in a round on a board, on what feeds it and on its circuits."""
+    index = context.index
+    feeds = [index.circuits[feed.id] for feed in board.fed_by if feed.table == "circuits" and feed.id in index.circuits]
+    for place in (board, *feeds, *circuits):
+        for row in judged(index.readings_of(place.id), index):
+            if row.quantity == "current" and not row.is_unloaded and (row.visit_or_default, row.round) == (visit, name):
+                yield row
 
 
 def _rounds(circuits: tuple[Circuit, ...], context: Context) -> dict[tuple[str, str], dict[str, Terms]]:

@@ -6,6 +6,7 @@ from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase
 from rules.closure import poles_of
 from rules.meters import worth
+from rules.places import joined
 from rules.ratings import sources_of
 from rules.record import Reading
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
@@ -52,7 +53,7 @@ def poles_against_voltage(case: CircuitCase | BoardCase) -> Iterator[Finding | N
         for unclosed in poles_of(rows, shown, context.limits):
             yield poles_against_voltage.finding(
                 case,
-                f"{unclosed.where}, round {name}",
+                joined(unclosed.where, f"round {name}"),
                 unclosed.words,
                 numbers={"poles": unclosed.first_sum, "between": unclosed.second_sum, "gap": unclosed.gap},
             )

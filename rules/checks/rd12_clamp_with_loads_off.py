@@ -7,6 +7,7 @@ from rules.calc.agreement import probability_apart
 from rules.calc.doubt import Weighted, total
 from rules.case import CircuitCase
 from rules.meters import worth
+from rules.places import joined
 from rules.record import Figure, Reading
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
 from rules.taken import taken_on
@@ -50,7 +51,7 @@ def clamp_with_loads_off(case: CircuitCase | BoardCase) -> Iterator[Finding]:
         where = (f"{quantity} at {at}{f' {leg}' if leg else ''}", f"round {name}", meter)
         yield clamp_with_loads_off.finding(
             case,
-            ", ".join(part for part in where if part),
+            joined(*where),
             f"{by} showed {show(value, 'A', u)} at {at} with the loads off"
             + (f", the recorded zero of {show(off, 'A')} taken off" if off else ""),
             numbers={"current": Figure(value, "A", u)},

@@ -7,6 +7,7 @@ from rules.calc.agreement import probability_apart
 from rules.calc.doubt import Weighted, total
 from rules.case import CircuitCase
 from rules.meters import worth
+from rules.places import joined
 from rules.record import Figure, Reading
 from rules.rule import DOUBTS_OF_READINGS, BoardCase, rule
 from rules.taken import taken_on
@@ -53,7 +54,7 @@ def residual_current(case: CircuitCase | BoardCase) -> Iterator[Finding | NotJud
             continue
         yield residual_current.finding(
             case,
-            f"{at}, round {name}",
+            joined(at, f"round {name}"),
             f"{show(value, 'A', u)} more flows in one conductor than in the other at {at}",
             numbers={"residual": Figure(value, "A", u)},
         )

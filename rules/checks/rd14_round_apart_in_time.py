@@ -1,10 +1,10 @@
 """RD14: readings of one round lie far apart in time."""
 
 from collections.abc import Iterable, Iterator
-from datetime import UTC, datetime
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase
+from rules.moments import seconds_between
 from rules.record import Figure, Reading
 from rules.rule import BoardCase, SiteCase, rule
 from rules.taken import some, taken, taken_on
@@ -28,14 +28,15 @@ def round_apart_in_time(case: CircuitCase | BoardCase | SiteCase) -> Iterator[Fi
 
     **Finds**: a voltage at 08:16 and one at 09:30 in one round: 74 minutes.
 
-    **Leaves alone**: 08:16 and 08:31; readings of different rounds; a dead test, and what was read with the loads off.
+    **Leaves alone**: 08:16 and 08:31; readings of different rounds; a date without a time; a time with a zone beside one
+    without; a dead test, and what was read with the loads off.
     """
     context = case.context
     if isinstance(case, SiteCase):
         untimed = [
             place.place.tag
             for place in taken(context)
-            if any(len(rows) > 1 and len(_times(rows)) < 2 for rows in _rounds(place.readings).values())
+            if any(len(rows) > 1 and seconds_between(rows) is None for rows in _rounds(place.readings).values())
         ]
         if untimed:
             why = f"fewer than two readings of a round say when they were taken: {some(untimed)}"
@@ -43,11 +44,8 @@ def round_apart_in_time(case: CircuitCase | BoardCase | SiteCase) -> Iterator[Fi
         return
     most = context.limits["closure.round_minutes"]
     for name, rows in _rounds(taken_on(case)).items():
-        times = _times(rows)
-        if len(times) < 2:
-            continue
-        seconds = (times[-1] - times[0]).total_seconds()
-        if seconds <= most * 60:
+        seconds = seconds_between(rows)
+        if seconds is None or seconds <= most * 60:
             continue
         lasted, limit = show_against(seconds / 60, most, "min")
         yield round_apart_in_time.finding(
@@ -66,17 +64,3 @@ def _rounds(readings: Iterable[Reading]) -> dict[str, list[Reading]]:
         if row.quantity != "resistance" and not row.is_unloaded:
             rounds.setdefault(row.round, []).append(row)
     return rounds
-
-
-def _times(rows: Iterable[Reading]) -> list[datetime]:
-    """When they were taken, as far as they say, in order."""
-    return sorted(moment for row in rows if (moment := _moment(row.taken_at)) is not None)
-
-
-def _moment(taken_at: str) -> datetime | None:
-    """A time, with an offset taken to UTC."""
-    try:
-        read = datetime.fromisoformat(taken_at)
-    except ValueError:
-        return None
-    return read.astimezone(UTC).replace(tzinfo=None) if read.tzinfo else read

@@ -41,42 +41,64 @@ def supply_sags(case: BoardCase) -> Iterator[Finding | NotJudged]:
     and 22.9 V at 8 A at the bus of one circuit.
 
     **Leaves alone**: 23.9 V of 24.3 V, which is 1.6 %; a battery between its working voltage and its lowest, which
-    discharges; sources in parallel are told once, at the first of them.
+    discharges. Sources in parallel are judged as the busbar that they hold, and told once, at the first of them.
     """
     source, context = case.row, case.context
     if not isinstance(source, Source):
         return
-    node = context.network.node_of.get(("sources", source.id))
-    if node is None or context.network.sources_at(node)[:1] != (source,):
-        return
+    network = context.network
+    shared = network.in_parallel(source)
+    nodes = [
+        node
+        for node in network.led_by(source)
+        # of a source in parallel the busbar is judged; by itself only what hangs on it alone
+        if len(network.sources_at(node)) > 1 or not shared or network.hanging.circuits_at.get(node)
+    ]
+    for node in nodes:
+        tags = _tags(network.sources_at(node))
+        yield from _of_busbar(case, node, "terminals" if len(nodes) == 1 else f"terminals of {tags}")
+
+
+def _tags(sources: Sequence[Source]) -> str:
+    return " + ".join(source.tag for source in sources)
+
+
+def _of_busbar(case: BoardCase, node: int, where: str) -> Iterator[Finding | NotJudged]:
+    """What one source holds, or several in parallel."""
+    context = case.context
+    sources, limits = context.network.sources_at(node), context.limits
+    tags = _tags(sources)
+    its, theirs = ("its ", "") if len(sources) == 1 else ("the ", f" of {tags} in parallel")
     read = at_terminals(context, node)
     if (worst := low_behind_device(context, node)) is not None:
         limit = float(context.network.held_lowest_v[node])
-        words = f"what its device may lose added, below its lowest {show(limit, 'V')}: it sags, or the device loses it"
-        yield _found(case, node, worst, words, Figure(limit, "V"), Severity.SOON)
+        words = f"what its device may lose added, below {its}lowest {show(limit, 'V')}{theirs}: it sags, or the device loses it"
+        yield _found(case, node, where, worst, words, Figure(limit, "V"), Severity.SOON)
         return
     if not read:
         below = context.network.hanging.circuits_below.get(node, ())
         if any(context.measured[id_].readings for id_ in below if id_ in context.measured):
-            yield supply_sags.gap(case, "terminals", f"the terminals of {source.tag} were not read")
+            yield supply_sags.gap(case, where, f"the terminals of {tags} were not read")
         return
-    sources, limits = context.network.sources_at(node), context.limits
     lowest = float(context.network.held_lowest_v[node]) if not context.network.gap_lowest[node] else None
     if lowest is not None and (worst := surely_below(read, lowest, limits)) is not None:
-        yield _found(case, node, worst, f"below its lowest {show(lowest, 'V')}", Figure(lowest, "V"), Severity.SOON)
+        words = f"below {its}lowest {show(lowest, 'V')}{theirs}"
+        yield _found(case, node, where, worst, words, Figure(lowest, "V"), Severity.SOON)
         return
     regulated = [one for one in sources if one.kind in REGULATED]
     if not regulated:
         return
     if all(one.working_voltage_v is None for one in sources):
-        yield supply_sags.gap(case, "terminals", f"the working voltage of {source.tag} is not recorded")
+        yield supply_sags.gap(case, where, f"the working voltage of {tags} is not recorded")
         return
     working, share = float(context.network.held_v[node]), limits["supply.regulation_share"]
     if (worst := surely_below(read, (1 - share) * working, limits)) is not None:
-        words = f"{show(1 - worst.voltage.value / working, '1', digits=2)} below its working {show(working, 'V')}"
-        yield _found(case, node, worst, words, Figure(working, "V"), Severity.WATCH)
+        words = (
+            f"{show(1 - worst.voltage.value / working, '1', digits=2)} below {its}working {show(working, 'V')}{theirs}"
+        )
+        yield _found(case, node, where, worst, words, Figure(working, "V"), Severity.WATCH)
     elif (pair := _falls(read, share * working, limits)) is not None:
-        yield _fallen(case, node, *pair)
+        yield _fallen(case, node, where, *pair)
 
 
 def _falls(
@@ -102,12 +124,14 @@ def _less(terms: Sequence[Weighted]) -> list[Weighted]:
     return [Weighted(-term.weight, term.shown) for term in terms]
 
 
-def _found(case: BoardCase, node: int, worst: AtTerminals, against: str, limit: Figure, severity: Severity) -> Finding:
+def _found(
+    case: BoardCase, node: int, where: str, worst: AtTerminals, against: str, limit: Figure, severity: Severity
+) -> Finding:
     current = worst.current
     at = f" at {show(current.value, 'A', current.u)}" if current is not None and worst.whole else ""
     return supply_sags.finding(
         case,
-        "terminals",
+        where,
         f"{show(worst.voltage.value, 'V', worst.voltage.u)} at the {worst.place} in round {worst.round}{at}, {against}"
         f"{_overloaded(case, node, worst)}",
         numbers={"voltage": worst.voltage, "limit": limit} | ({"current": current} if current is not None else {}),
@@ -117,14 +141,14 @@ def _found(case: BoardCase, node: int, worst: AtTerminals, against: str, limit: 
     )
 
 
-def _fallen(case: BoardCase, node: int, light: AtTerminals, heavy: AtTerminals, fall: Figure) -> Finding:
+def _fallen(case: BoardCase, node: int, where: str, light: AtTerminals, heavy: AtTerminals, fall: Figure) -> Finding:
     low, high = light.current, heavy.current
     assert low is not None
     assert high is not None
     source_ohm = fall.value / (high.value - low.value)
     return supply_sags.finding(
         case,
-        "terminals",
+        where,
         f"the {light.place} falls by {show(fall.value, 'V', fall.u)}, from {show(light.voltage.value, 'V')} in round {light.round} to "
         f"{show(heavy.voltage.value, 'V')} in round {heavy.round}, while the current rises from {show(low.value, 'A', low.u)} to "
         f"{show(high.value, 'A', high.u)}: as {show(source_ohm, 'ohm', digits=2)} in the source would, if nothing else changed",

@@ -7,14 +7,14 @@ from rules.assessment import Citation, Drop, Finding, NotJudged, Place, Severity
 from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase, LoadPoint
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHER_METAL, SEMICONDUCTOR, SMALLER
-from rules.errors import MissingData
 from rules.heat import DEVICE, accounted_v, joints_read
-from rules.joints import heat_at, most_read_a
+from rules.joints import heat_at, most_read_a, semiconductor_v
 from rules.limits import Limits
 from rules.record import Figure
 from rules.rise import rises_of
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.thinner import of_conductors
+from rules.unaccounted import Lost, most_unaccounted
 from rules.units import show
 from rules.verdict import (
     MOST_SAID,
@@ -25,6 +25,7 @@ from rules.verdict import (
     claimed,
     common_words,
     doubtful,
+    is_by_a_factor,
     probability_words,
 )
 
@@ -45,6 +46,7 @@ OF_A_DEVICE = (
     "Read millivolts across each pole of the device once more at the same current; isolate, look at its terminals and work it some times; "
     "where it stays high, have it exchanged."
 )
+READ_AGAIN = "Read it again, and compare length, size and points with the record, before anything else is done."
 ENDS_KNOWN = "Isolate, cut back and remake the termination at {}; then read it again at the same current."
 
 
@@ -77,7 +79,9 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     joint, a semiconductor, or the conductors, of which size, metal and length are often not to be told apart. A
     bad connection has its severity from the heat in it at design current, any other cause from the excess times
     the current read: soon from the profile's 2 W, immediate from 10 W on, which can burn. An excess that a slip
-    explains better than a fault is to be read again: soon where it would be such heat, else watch.
+    explains better than a fault is to be read again, with the severity of the heat that it would be if the reading is
+    true, wherever it was read; soon at most where a decimal place would mend it. That no bad connection so large is
+    looked for does not make it a slip.
 
     **Finds**: 2.45 ± 0.02 V measured against 1.92 ± 0.05 V computed at 8 A: 4.2 W too much, so it is for soon.
     A joint of 40 mΩ, read across itself, that the drop of a cable of guessed length would hide.
@@ -93,25 +97,29 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         )
     causes = case.diagnosis.causes if case.diagnosis is not None else ()
     claim = claimed(causes, case.limits)
-    if case.drop is None and claim is None:
-        if case.visit:
-            raise MissingData(case.drop_gap)
-        return
+    slip = doubtful(causes) if claim is None else None
+    lost = most_unaccounted(case) if slip is not None and not is_by_a_factor(slip) else None
+    if case.drop is None and claim is None and case.visit:
+        yield measured_above_computed.gap(case, "", case.drop_gap)
     if claim is None and not _beyond_doubt(case):
+        if slip is not None and lost is not None:
+            yield _elsewhere(case, slip, lost)
         return  # also where a joint that HT01 finds by its reading alone accounts for it
     drop = case.drop
     along = f"{drop.start} to {drop.end}" if drop else "all runs"
-    if claim is None and (slip := doubtful(causes)) is not None:
+    if slip is not None:
+        if_so = {"heat if so": lost.heat} if lost is not None else {}
         yield measured_above_computed.finding(
             case,
             along,
-            "; ".join([*_drop_words(drop), f"probably {cause_words(slip)}", *_remarks(case)]),
-            numbers=_numbers(drop, None),
-            remedy="Read it again, and compare length, size and points with the record, before anything else is done.",
-            severity=_of_doubtful(case),
+            "; ".join([*_drop_words(drop), _slip_words(slip, lost), *_remarks(case)]),
+            numbers=_numbers(drop, None) | if_so,
+            remedy=READ_AGAIN,
+            severity=_of_doubtful(case, lost),
             cause=slip.cause,
             source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
             without=("bad_connection",),
+            consequences=tuple(_if_so(lost)),
         )
         return
     heat = _heat(case, claim)
@@ -177,8 +185,38 @@ def _most_a(case: CircuitCase, point: str, read_a: float) -> float:
     return max([case.largest_current_a.get(point, read_a), *read])
 
 
-def _of_doubtful(case: CircuitCase) -> Severity:
-    """That a slip explains it best does not make the heat less urgent, should it be there: it is to be read again soon."""
+def _elsewhere(case: CircuitCase, slip: Place, lost: Lost) -> Finding:
+    """A reading in doubt away from the path of the drop, by what it would be if it is true."""
+    return measured_above_computed.finding(
+        case,
+        lost.place,
+        f"{lost.words}; {_slip_words(slip, lost)}",
+        numbers={"extra resistance": lost.ohm, "current": lost.current, "heat if so": lost.heat},
+        remedy=READ_AGAIN,
+        severity=_of_doubtful(case, lost),
+        cause=slip.cause,
+        source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
+        consequences=tuple(_if_so(lost)),
+    )
+
+
+def _slip_words(slip: Place, lost: Lost | None) -> str:
+    """A slip as probable as it is found; beside it a bad connection that explains the readings as well."""
+    if lost is None or not lost.is_as_a_joint:
+        return f"probably {cause_words(slip)}"
+    return f"{lost.joint_words}, or a slip ({slip.what})" if slip.what else f"{lost.joint_words}, or a slip"
+
+
+def _if_so(lost: Lost | None) -> Iterator[str]:
+    if lost is not None:
+        at = show(lost.current.value, "A", lost.current.u)
+        yield f"if the reading is true, {show(lost.heat.value, 'W', lost.heat.u)} turn into heat in {lost.place} at {at}"
+
+
+def _of_doubtful(case: CircuitCase, lost: Lost | None) -> Severity:
+    """That a slip explains it best makes the heat no less urgent, should it be there; a factor that is often mistyped does."""
+    if lost is not None:
+        return _severity(lost.heat, case.limits)
     heat = _heat(case, None)
     return Severity.SOON if heat is not None and heat.value >= case.limits["heat.soon_w"] else Severity.WATCH
 
@@ -211,7 +249,12 @@ def _claim_words(case: CircuitCase, claim: Claim) -> str:
     against = "".join(f", else {cause_words(row)}" for row in claim.against)
     if claim.cause in (SMALLER, OTHER_METAL, LONGER):
         rows = sorted([*claim.places, *claim.others], key=lambda place: -place.probability)
-        return "the conductors are probably not as recorded: " + ", ".join(cause_words(row) for row in rows) + against
+        in_all = probability_words(sum(row.probability for row in rows))
+        words = ", ".join(cause_words(row) for row in rows) + against
+        lost = most_unaccounted(case)
+        if lost is not None and lost.alone and lost.ohm.value > lost.edge_ohm:
+            words += f", else {lost.joint_words}"
+        return f"the conductors are probably not as recorded ({in_all}): {words}"
     said = f"probably a {claim.cause} in {claim.where} ({probability_words(claim.probability)})"
     if claim.cause == SEMICONDUCTOR:
         return f"{said}{_offset_words(case, claim)}{against}"
@@ -221,11 +264,8 @@ def _claim_words(case: CircuitCase, claim: Claim) -> str:
 
 def _offset_words(case: CircuitCase, claim: Claim) -> str:
     """What a semiconductor loses whatever the current; empty where it is not known."""
-    branch = case.tree.ends.get(claim.place.point)
-    learned = case.diagnosis.of_branch(branch.id if branch else "") if case.diagnosis is not None else None
-    # a mean over all causes: of this one alone it is what is left when the others give none
-    volts = learned.offset_v / claim.probability if learned is not None else 0.0
-    return f": about {show(volts, 'V', digits=2)} whatever the current" if volts > 0 else ""
+    lost = semiconductor_v(case, claim.place)
+    return f": about {show(lost.value, 'V', digits=2)} whatever the current" if lost is not None else ""
 
 
 def _ohm_words(joint: Place) -> str:

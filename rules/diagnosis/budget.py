@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from collections import defaultdict
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 from rules.assessment import Doubt
@@ -27,6 +27,8 @@ RECORD_GROUPS = {
     "source wander": "source",
 }
 """Which group of the limits profile states each doubt; the meters' own come from the record of instruments."""
+POOR_METER = "poor_meter"
+"""Group of the profile that speaks for a meter that is not recorded."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,6 +63,12 @@ class Difference:
     excess: Figure
     budget: tuple[Doubt, ...]
     """Largest first; their squares add to that of the excess's ``u``."""
+
+
+def _stated_by(terms: Iterable[Weighted]) -> tuple[str, bool]:
+    """Group of the profile that states the doubt of readings' meters, empty where none does, and whether instruments do too."""
+    poor = {term.shown.is_poor for term in terms}
+    return (POOR_METER, False in poor) if True in poor else ("", False)
 
 
 def difference(measured: Sequence[Weighted], path: Sequence[Carried], limits: Limits) -> Difference:
@@ -118,7 +126,13 @@ def difference(measured: Sequence[Weighted], path: Sequence[Carried], limits: Li
         "current counts": currents.counts_variance + currents.wander_variance,
     }
     all_ = record | readings
-    budget = [Doubt(name, math.sqrt(v), RECORD_GROUPS.get(name, "")) for name, v in all_.items() if v > 0]
+    meters = {name: _stated_by(terms if name.startswith("current") else measured) for name in readings}
+    meters["source wander"] = ("source", False)
+    budget = [
+        Doubt(name, math.sqrt(v), *meters.get(name, (RECORD_GROUPS.get(name, ""), False)))
+        for name, v in all_.items()
+        if v > 0
+    ]
     return Difference(
         measured=Figure(volts.value, "V", math.sqrt(volts.variance)),
         computed=Figure(value, "V", math.sqrt(sum(record.values()) + currents.variance)),

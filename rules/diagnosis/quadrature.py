@@ -30,7 +30,7 @@ ENOUGH = 5
 """Kept nodes with which the search has found the density: it then spans at most 14 standard deviations."""
 KEPT = 16.0
 """Natural logarithms below the best within which a node is kept, with one neighbour on each side."""
-NODES = 28
+NODES = 32
 """Gauss-Legendre nodes of the sum."""
 FINE = 64
 """Steps in which the cumulative density is laid out."""

@@ -18,6 +18,8 @@ from rules.text import MOST_CHARACTERS, either, forbidden_character, nearest, qu
 Complaint: TypeAlias = tuple[str, str] | None
 """What is wrong, and what is accepted; ``None`` where nothing is wrong."""
 
+FIRST_YEAR, LAST_YEAR = 1900, 2200
+"""Of dates and times in a record."""
 _DATE_PART = re.compile(r"[0-9W-]+(?:[T ]|$)")
 """Python itself takes any character between date and time."""
 
@@ -190,11 +192,19 @@ def _size(value: str, column: Column) -> Complaint:
 
 
 def _time(value: str, column: Column) -> Complaint:
-    return None if is_time(value) else (f"{quoted(value)} is not a time", accepted(column))
+    return (f"{quoted(value)} is not a time", accepted(column)) if not is_time(value) else _year(value)
 
 
 def _date(value: str, column: Column) -> Complaint:
-    return None if is_date(value) else (f"{quoted(value)} is not a date", accepted(column))
+    return (f"{quoted(value)} is not a date", accepted(column)) if not is_date(value) else _year(value)
+
+
+def _year(value: str) -> Complaint:
+    """Other years are a slip of the hand, and near the ends of the calendar a time zone leaves it."""
+    year = int(value[:4])
+    if FIRST_YEAR <= year <= LAST_YEAR:
+        return None
+    return f"{quoted(value)} is of the year {year}", f"a year from {FIRST_YEAR} to {LAST_YEAR}"
 
 
 def _anything(value: Any, column: Column) -> Complaint:

@@ -8,17 +8,19 @@ independent variable for each doubt.
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import Any
 
 import pytest
 import uncertainties
 
 from audit.intake.folder import site_of
+from audit.report.phrases import doubt_rows
 from rules import limits
 from rules.assess import assess
 from rules.calc.doubt import each_u, gain_u
 from rules.diagnosis.budget import RECORD_GROUPS
-from rules.record import Site
+from rules.record import Reading, Site
 
 OHM_PER_M, ALPHA, CELSIUS = 1.83e-3, 0.00393, 35.0
 """10 mm² copper, class 2: IEC 60228:2004. [ohm/m, 1/K, degC]"""
@@ -120,3 +122,21 @@ def test_every_part_names_the_group_of_the_profile_that_states_it() -> None:
     for doubt in result.drop.budget:
         assert doubt.group == RECORD_GROUPS.get(doubt.name, "")
         assert not doubt.group or in_force.citation(doubt.group)
+
+
+def test_the_budget_says_who_states_the_doubt_of_a_meter_that_is_not_recorded() -> None:
+    """M1 and K1 are recorded; M0 is not: the profile's poor meter speaks for it, alone or beside M1."""
+    by_record, by_none = site(), site()
+    poor = tuple(replace(row, instrument="") if row.quantity == "voltage" else row for row in by_none.readings)
+    mixed = tuple(replace(row, instrument="") if row.at == "bus" else row for row in by_none.readings)
+
+    def stated(readings: tuple[Reading, ...]) -> dict[str, str]:
+        this = replace(by_record, readings=readings)
+        (circuit,) = assess(this, limits.of(this)).circuits
+        assert circuit.drop is not None
+        return {row.name: row.stated for row in doubt_rows(circuit.drop)}
+
+    assert stated(by_record.readings)["meter counts"] == "record of instruments"
+    assert stated(poor)["meter counts"] == "profile, poor_meter"
+    assert stated(poor)["current gain"] == "record of instruments"
+    assert stated(mixed)["meter counts"] == "profile, poor_meter and record of instruments"

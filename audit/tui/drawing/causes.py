@@ -26,13 +26,13 @@ def cause_lines(result: CircuitResult, width: int) -> list[Line]:
     cells = min(_NAME_CELLS, max(cell_len(_name(place)) for place in shown))
     said: set[str] = set()
     lines: list[Line] = [()]
-    heats = {joint.where: joint for joint in result.joints}
     for place in shown:
-        told = place.where in heats and place.probability >= LEAST_EXPLAINED
-        lines.append(_cause_line(place, cells, width, "" if told else extra_words(place)))
-        if told:
-            words = f"{extra_words(place)}: {heat_words(heats[place.where])}"
-            lines += wrapped(words, width - 1, _FACT_INDENT, "", "     extra")
+        heat, extra = result.heat_of(place), extra_words(place)
+        told = heat is not None and place.probability >= LEAST_EXPLAINED
+        lines.append(_cause_line(place, cells, width, "" if told else extra))
+        if told and heat is not None:
+            words = f"{extra}: {heat_words(heat)}" if extra else heat_words(heat)
+            lines += wrapped(words, width - 1, _FACT_INDENT, "", "     extra" if extra else "     heat")
         lines += _fact_lines(place, said, width)
     return lines
 

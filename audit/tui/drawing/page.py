@@ -106,10 +106,11 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
         Cells in sight: the profile takes its share of them.
     """
     circuit, result = view.circuit, view.result
-    lines = [head_line(circuit, result, width, is_typing=view.is_typing), ()]
+    waits = "" if survey.cannot_judge else "judging … "
+    lines = [head_line(circuit, result, width, is_typing=view.is_typing, waits=waits), ()]
     lines += circuit_sketch(survey, view, width)
     if result is None:
-        return [cut(one, width) for one in (*lines, (), (Piece("   judging …", "quiet"),))]
+        return [cut(one, width) for one in (*lines, (), _waiting(survey))]
     lines += _verdict(result, width)
     lines += cause_lines(result, width)
     plotted = profile_lines(
@@ -130,14 +131,23 @@ def page_lines(survey: Survey, view: CircuitView, width: int, height: int) -> li
     return [cut(one, width) for one in (*lines, ())]
 
 
-def head_line(circuit: Circuit, result: CircuitResult | None, width: int, *, is_typing: bool = False) -> Line:
+def head_line(
+    circuit: Circuit, result: CircuitResult | None, width: int, *, is_typing: bool = False, waits: str = "judging … "
+) -> Line:
     """Tag and description, and the status at the right; while a value is typed, that it would have."""
-    status: Line = (piece("judging … ", "quiet"),)
+    status: Line = (piece(waits, "quiet"),)
     if result is not None:
         status = (piece(f"{status_words(result.status)} ", str(result.status)),)
     if is_typing:
         status = (piece("as typed  ", "quiet"), *status)
     return apart((piece(" "), piece(circuit.tag, "strong"), piece(f"  {circuit.description}")), status, width)
+
+
+def _waiting(survey: Survey) -> Line:
+    """Where a verdict would stand: that it is being worked out, or why there is none."""
+    if survey.cannot_judge:
+        return (piece(f"   not judged: {survey.cannot_judge}", "wrong"),)
+    return (Piece("   judging …", "quiet"),)
 
 
 def _section(name: str, lines: list[Line]) -> list[Line]:

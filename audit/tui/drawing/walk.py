@@ -145,13 +145,20 @@ def head_line(survey: Survey, width: int, *, read_only: bool) -> Line:
     for status in (Status.ACT, Status.WATCH):
         count = survey.count_of(status)
         said += [piece("   "), piece(f"{count} {status}", str(status))] if count else []
-    if survey.assessment is None and circuits:
+    if survey.cannot_judge:
+        said += [piece("   "), piece("not judged", "wrong")]
+    elif survey.assessment is None and circuits:
         said += [piece("   "), piece("reading …" if survey.is_outline else "judging …", "quiet")]
     left = [piece(" "), piece(survey.site.name, "strong"), piece("   ")]
     left.append(piece(survey.visit or ("" if survey.is_outline else "not visited yet"), "quiet"))
     if read_only:
         left += [piece("   "), piece("read only", "act")]
     return apart(tuple(left), (*said, piece(" ")), width)
+
+
+def cannot_judge_lines(survey: Survey, width: int) -> list[Line]:
+    """Why nothing is judged, in one line; nothing where it is."""
+    return [cut((piece(f" {survey.cannot_judge}", "wrong"),), width)] if survey.cannot_judge else []
 
 
 def _board_sign(stop: Stop, survey: Survey) -> str:

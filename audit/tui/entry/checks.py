@@ -12,6 +12,7 @@ from typing import Any
 
 from audit.tui.entry.fields import SITE, Field
 from rules.consistency import problems
+from rules.errors import RulesError
 from rules.index import Index
 from rules.record import Board, Circuit, Feed, Load, Row, Run, Site, Source
 
@@ -29,7 +30,21 @@ def complaint_about(field: Field, row: Row | Site, new: dict[str, Any], index: I
     new : dict
         The new values by field.
     """
-    return next(iter(_problems(field, replace(row, **new), index)), "")
+    changed = replace(row, **new)
+    return next(iter(_problems(field, changed, index)), "") or _of_limits(field, changed)
+
+
+def _of_limits(field: Field, row: Row | Site) -> str:
+    """Why a site cannot be judged by the profile that it would name; empty where it can."""
+    if field.name != "limits" or not isinstance(row, Site):
+        return ""
+    from rules import limits  # who judges has it loaded; the first screen does not wait for it
+
+    try:
+        limits.of(row)
+    except RulesError as error:
+        return str(error).replace("\n", "; ")
+    return ""
 
 
 def _problems(field: Field, row: Row | Site, index: Index) -> list[str]:

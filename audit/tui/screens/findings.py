@@ -10,6 +10,7 @@ from textual.binding import Binding, BindingType
 
 from audit.tui.drawing.findings import SEVERITY_ROLES
 from audit.tui.drawing.pieces import Line, apart, piece
+from audit.tui.drawing.walk import cannot_judge_lines
 from audit.tui.screens.base import OurScreen
 from audit.tui.screens.rule import RULE_KEY, open_rule
 from audit.tui.state import Survey
@@ -44,6 +45,9 @@ class FindingsScreen(OurScreen[str]):
     def _take(self, survey: Survey | None) -> None:
         assessment = survey.assessment if survey is not None else None
         title = self.query_one("#title", FewLines)
+        if survey is not None and survey.cannot_judge:
+            title.say(lambda width: [(piece(" findings", "strong"),), *cannot_judge_lines(survey, width)])
+            return
         if survey is None or assessment is None:
             title.say(lambda width: [(piece(" findings", "strong"), piece("   judging …", "quiet"))])
             return

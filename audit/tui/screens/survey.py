@@ -13,7 +13,7 @@ from textual.reactive import reactive
 
 from audit.tui.drawing.next_act import NextAct, next_act
 from audit.tui.drawing.pieces import Line, cut, piece
-from audit.tui.drawing.walk import head_line
+from audit.tui.drawing.walk import cannot_judge_lines, head_line
 from audit.tui.entry.slots import Place
 from audit.tui.screens import changing, measuring, other_reading
 from audit.tui.screens.base import OurScreen
@@ -114,7 +114,9 @@ class SurveyScreen(OurScreen[None]):
             self.query_one("#head", FewLines).say(None)
 
     def _show_walk(self, survey: Survey) -> None:
-        self.query_one("#head", FewLines).say(lambda width: [head_line(survey, width, read_only=survey.read_only)])
+        self.query_one("#head", FewLines).say(
+            lambda width: [head_line(survey, width, read_only=survey.read_only), *cannot_judge_lines(survey, width)]
+        )
         self.walk.survey = survey
 
     def watch_survey(self, survey: Survey | None) -> None:

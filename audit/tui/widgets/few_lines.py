@@ -11,6 +11,8 @@ from audit.tui.widgets.lines_view import LinesView
 
 MOST = 2
 """Lines that a remark may take; the rest is cut."""
+MOST_WRONG = 6
+"""Lines that a complaint may take: the names that it lists are to be read whole."""
 
 
 class FewLines(LinesView, can_focus=False):
@@ -36,7 +38,7 @@ class FewLines(LinesView, can_focus=False):
         self._drawn()
 
     def say_words(self, words: str, role: str = "quiet") -> None:
-        """Show a remark in at most two lines; empty for none."""
+        """Show a remark in few lines; empty for none."""
         self.say((lambda width: remark(words, role, width)) if words else None)
 
     def on_resize(self) -> None:
@@ -52,9 +54,10 @@ class FewLines(LinesView, can_focus=False):
 
 
 def remark(words: str, role: str, width: int, lead: str = " ") -> list[Line]:
-    """A remark in at most two lines."""
+    """A remark in at most two lines; a complaint in more."""
+    most = MOST_WRONG if role == "wrong" else MOST
     lines = wrapped(words, width - 1, len(lead), role, lead)
-    if len(lines) > MOST:
-        *kept, last = lines[:MOST]
+    if len(lines) > most:
+        *kept, last = lines[:most]
         lines = [*kept, (*last[:-1], Piece(last[-1].text[: width - len(lead) - 2] + "…", role))]
     return lines

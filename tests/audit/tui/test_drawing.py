@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import replace
+from functools import partial
 from pathlib import Path
 
 import pytest
@@ -31,6 +32,7 @@ from audit.tui.state import Survey, latest_visit, read_by_visit
 from rules.assess import assess, prepare
 from rules.assessment import Doubt, Drop, JointHeat, LoadMargin, NextReading, Place, Status
 from rules.index import Index
+from rules.joints import heat_at, heat_of_lost
 from rules.limits import of
 from rules.record import Circuit, Figure, Load, Run, Site, Source
 from sample_sites.catalogue import SAMPLE_SITES
@@ -320,6 +322,26 @@ def test_a_bad_connection_says_its_resistance_and_its_heat_now_and_at_design() -
     )
 
 
+def test_a_semiconductor_makes_heat_by_the_current_and_has_no_resistance() -> None:
+    """0.31 V × 17.1 A = 5.3 W and 0.31 V × 22.3 A = 6.9 W; a resistance would make 5.3 W × (22.3 / 17.1)² = 9.0 W."""
+    survey = survey_of(HUT)
+    diode = Place("series semiconductor", "device", 0.37)
+    joint = Place("bad connection", "device", 0.63, 0.0142, 0.0182, 0.0223)
+    read_a, design_a = 17.1, 22.3
+    heats = tuple(
+        JointHeat("device", Figure(read_a, "A"), heat(read_a), Figure(design_a, "A"), heat(design_a), cause)
+        for cause, heat in (
+            (joint.cause, partial(heat_at, joint)),
+            (diode.cause, partial(heat_of_lost, Figure(0.31, "V", 0.035))),
+        )
+    )
+    result = replace(survey.results["c1"], causes=(joint, diode), joints=heats)
+    assert [" ".join(text.split()) for text in texts(cause_lines(result, 120))[2::2]] == [
+        "extra 18.2 mΩ (14.2 mΩ to 22.3 mΩ): 5.3 ± 0.6 W in it at 17.1 A as read, 9.1 ± 1.0 W at design 22.3 A",
+        "heat 5.3 ± 0.6 W in it at 17.1 A as read, 6.9 ± 0.8 W at design 22.3 A",
+    ]
+
+
 def test_a_load_gets_with_and_without_the_fault_what_the_lowest_source_leaves() -> None:
     survey = survey_of(HUT)
     volts = [Figure(v, "V", u) for v, u in ((38.1, 0.2), (39.7, 0.1))]
@@ -328,7 +350,36 @@ def test_a_load_gets_with_and_without_the_fault_what_the_lowest_source_leaves() 
     said = "fan, source at its lowest 40.5 V: 38.1 ± 0.2 V, 2.4 ± 0.2 V lost; without the fault 39.70 ± 0.10 V"
     assert said in " ".join(" ".join(texts(margin_lines(faulty, 80))).split())
     sound = replace(faulty, causes=(Place("as recorded", "", 0.97),))
-    assert len(margin_lines(sound, 80)) == 2
+    assert texts(margin_lines(sound, 80))[2:] == ["   at worst: the source at its lowest, 40.5 V, hot conductors"]
+
+
+def test_a_load_with_a_peak_has_its_voltage_and_margin_at_the_peak_in_whole_numbers() -> None:
+    """85.0 V − 93.5 V = −8.5 V at the peak, though 98.424 V − 93.5 V = 4.924 V are left without it."""
+    coil = LoadMargin(
+        "closing coil Q2",
+        "kiosk",
+        design=Figure(117.41, "V"),
+        worst=Figure(98.424, "V", 0.015),
+        source_lowest=Figure(99.0, "V"),
+        source_working=Figure(118.0, "V"),
+        lowest=Figure(93.5, "V"),
+        margin=Figure(4.924, "V", 0.015),
+        dip=Figure(104.0, "V"),
+        peak=Figure(10.0, "A"),
+        dip_worst=Figure(85.0, "V", 0.4),
+        dip_margin=Figure(-8.5, "V", 0.4),
+    )
+    result = replace(survey_of(HUT).results["c1"], margins=(coil,), causes=())
+    lines = margin_lines(result, 80)
+    assert [" ".join(text.split()) for text in texts(lines)] == [
+        "at design at worst its lowest margin",
+        "closing coil Q2, … 117.4 V 98.424 ± 0.015 V 93.5 V 4.924 ± 0.015 V",
+        "at peak, 10 A 104 V 85.0 ± 0.4 V 93.5 V -8.5 ± 0.4 V",
+        "at design: the source at 118 V; at worst: the source at its lowest, 99 V,",
+        "hot conductors",
+    ]
+    assert all(len(text) <= 80 for text in texts(lines))
+    assert lines[2][-1].role == "act"
 
 
 def test_the_doubt_budget_is_bars_with_numbers_and_who_states_them() -> None:

@@ -13,6 +13,7 @@ from audit.tui.screens.survey import SurveyScreen
 from audit.tui.widgets.field_line import FieldLine
 from db import connection
 from db.store import SiteStore
+from rules import limits
 from rules.record import Feed, Visit
 from tests.audit.tui.walker import Walk, cautions_read, walking
 
@@ -186,6 +187,37 @@ async def test_settings_sources_meters_and_visits_are_under_s(hut: Path) -> None
         assert walk.record.visits[-1] == Visit(
             id=walk.record.visits[-1].id, tag="2026-03 as left", kind="as left", date="2026-03-12", by="Ada"
         )
+
+
+async def test_an_unknown_limits_profile_is_refused_at_entry_with_the_names_there_are(hut: Path) -> None:
+    async with walking(hut) as walk:
+        await walk.keys("s", "enter")
+        await walk.enter("", "", "telcom-48")
+        said = " ".join(walk.screen.split())
+        assert "did you mean 'telecom-48'?" in said
+        assert all(name in said for name in limits.names())
+        assert walk.record.limits == "general"
+        await walk.keys("escape", "escape")
+
+
+async def test_a_file_with_an_unknown_profile_says_so_and_shows_no_verdict_of_before(hut: Path) -> None:
+    async with walking(hut) as walk:
+        await walk.shows("measure")
+        with SiteStore(hut, laptop="elsewhere") as store, store.save("Bob", "limits") as save:
+            save.settings(limits="telcom-48")
+        await walk.shows("there is no limits profile")
+        assert "not judged" in walk.screen.splitlines()[0]
+        assert "judging" not in walk.screen
+        assert "? measure" not in walk.screen
+        await walk.keys("f")
+        await walk.shows("there is no limits profile")
+        assert "judging" not in walk.screen
+        await walk.keys("escape")
+        with SiteStore(hut, laptop="elsewhere") as store, store.save("Bob", "limits") as save:
+            save.settings(limits="general")
+        await walk.judged()
+        await walk.shows("? measure")
+        assert "no limits profile" not in walk.screen
 
 
 async def test_removal_is_asked_and_refused_with_what_refers(hut: Path) -> None:
