@@ -6,6 +6,8 @@ from dataclasses import dataclass
 
 from rules.context import Context, Measured
 from rules.diagnosis.hypotheses import BAD_CONNECTION
+from rules.errors import MissingData
+from rules.heat import hot_as_read
 from rules.record import Run
 from rules.rounds import Round, Tree
 from rules.verdict import claimed
@@ -26,9 +28,9 @@ class Coverage:
     joints: int
     """Terminations of all runs."""
     joints_read: int
-    """Of the runs that lie between readings under load."""
+    """Of the runs that lie between readings under load, where these say anything to the diagnosis."""
     bad: int
-    """Places among these in which a bad connection is claimed."""
+    """Places among these in which a bad connection is claimed, or that were read hot."""
 
 
 def coverage_of(context: Context) -> Coverage:
@@ -36,15 +38,19 @@ def coverage_of(context: Context) -> Coverage:
     joints = joints_read = bad = read_circuits = 0
     for circuit in context.site.circuits:
         side = context.measured.get(circuit.id)
-        read = _runs_read(side) if side is not None else set()
+        read = _runs_read(side) if side is not None and circuit.id in context.diagnoses else set()
         for run in context.index.runs_of(circuit.id):
             joints += joints_of(run)
             joints_read += joints_of(run) if run.id in read else 0
         read_circuits += bool(read)
         diagnosis = context.diagnoses.get(circuit.id)
+        claimed_at: set[str] = set()
         claim = claimed(diagnosis.causes, context.limits) if diagnosis is not None else None
         if claim is not None and claim.cause == BAD_CONNECTION and read:
             bad += len(claim.place.joints) or 1
+            claimed_at = {joint.where for joint in claim.place.joints}
+        if side is not None:
+            bad += len([hot for hot in hot_as_read(context, circuit.id, read) if hot not in claimed_at])
     return Coverage(len(context.site.circuits), read_circuits, joints, joints_read, min(bad, joints_read))
 
 
@@ -55,7 +61,21 @@ def joints_of(run: Run) -> int:
 
 def _runs_read(side: Measured) -> set[str]:
     """Ids of the runs that lie between two points read in one round under load."""
-    return {id_ for this in side.rounds if this.amps for id_ in _between(this, side.tree)}
+    return {
+        id_ for this in side.rounds if this.amps for id_ in _between(this, side.tree) if _says(id_, this, side.tree)
+    }
+
+
+def _says(run_id: str, this: Round, tree: Tree) -> bool:
+    """Whether a run has a figure to judge a reading by, and the currents of all that share its return were read."""
+    if tree.figures[run_id].gap:
+        return False
+    if run_id in tree.shared:
+        try:
+            tree.shared[run_id].others(this.name)
+        except MissingData:
+            return False
+    return True
 
 
 def _between(this: Round, tree: Tree) -> set[str]:
@@ -74,4 +94,6 @@ def _between(this: Round, tree: Tree) -> set[str]:
             before.add(end)
             if end in behind:
                 found.add(run.id)
+        if end == run.name and end in this.amps and {run.from_point, run.to_point} <= read:
+            found.add(run.id)  # it closes a mesh, with both its ends and its own current read
     return found

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 import re
 from collections import defaultdict
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence, Set
 from dataclasses import dataclass, replace
 from typing import TypeAlias
 
@@ -102,9 +102,30 @@ def similar_joints(context: Context) -> dict[Kind, list[SimilarJoint]]:
     return dict(found)
 
 
+def hot_as_read(context: Context, circuit_id: str, runs: Set[str]) -> list[str]:
+    """Terminations in some runs that turned more into heat than the profile's limit while they were read, beyond doubt."""
+    measured, limits = context.measured[circuit_id], context.limits
+    if not any(row.quantity == "joint" for row in measured.readings):
+        return []
+    found = []
+    least_w = min(limits["heat.limit_w"], limits["heat.soon_w"])
+    for joint in _Reader(measured.rounds, measured.tree, context.index, limits, {}).joints():
+        if joint.run is None or joint.run.id not in runs or joint.gap or joint.now is None:
+            continue
+        _, most = _healthy_ohm(limits, joint.run)
+        by_heat = against_limit(joint.now.value, least_w, joint.now.u or 0.0, limits)
+        by_ohm = against_limit(joint.ohm.value, most, joint.ohm.u or 0.0, limits)
+        if by_heat is Verdict.FAILS and by_ohm is Verdict.FAILS:
+            found.append(joint.place)
+    return found
+
+
 def healthy_ohm(case: CircuitCase, run: Run) -> tuple[float, float]:
     """Of a termination of a run: the mean of the healthy ones, and the most that one of them has. [ohm]"""
-    limits = case.limits
+    return _healthy_ohm(case.limits, run)
+
+
+def _healthy_ohm(limits: Limits, run: Run) -> tuple[float, float]:
     scale = math.sqrt(REFERENCE_AREA_MM2 / area_mm2(run.size)) if is_known(run.size) else 1.0
     median, gsd = limits["termination.median_ohm"] * scale, limits["termination.geometric_sd"]
     return median * math.exp(math.log(gsd) ** 2 / 2), median * gsd**HEALTHY_SPREADS

@@ -17,11 +17,10 @@ from rules.heat import full_a
 from rules.meters import worth
 from rules.record import Figure, Reading
 from rules.rounds import Round, current_at
+from rules.tables.ampacity import limit_c
 from rules.units import show
 
 PLACE = re.compile(r"device|run (\d+) (start|end)")
-INSULATION_C = {"PVC": 70.0, "XLPE": 90.0, "EPR": 90.0}
-"""Conductor temperature that insulation bears for good: IEC 60364-5-52, Table 52.1, from memory. [degC]"""
 ALIKE = 0.1
 """Relative: two terminations whose currents differ by no more are similar. Our own default."""
 
@@ -108,7 +107,8 @@ def _of_round(case: CircuitCase, this: Round) -> Iterator[Rise]:
 def _conductor_bears(case: CircuitCase, place: str, read: Figure) -> bool:
     """Whether a temperature is not beyond doubt above what the insulation of the run there lives with."""
     run = case.tree.ends.get(_branch(case, place))
-    most = INSULATION_C.get(run.insulation, INSULATION_C["PVC"]) if run is not None else INSULATION_C["PVC"]
+    known = run is not None and run.insulation not in ("", "unknown")
+    most = limit_c(run.insulation if known and run is not None else case.limits.word("capacity.assumed_insulation"))
     return against_limit(read.value, most, read.u or 0.0, case.limits) is not Verdict.FAILS
 
 

@@ -9,6 +9,7 @@ from rules.calc.doubt import Weighted, probability_above, total
 from rules.case import CircuitCase
 from rules.errors import MissingData, RulesError
 from rules.loading import Bounds, as_run, bounds_of
+from rules.protection import sources_give_a
 from rules.record import Figure, Run
 from rules.rounds import Round, current_at
 from rules.routes import together
@@ -43,7 +44,8 @@ def shared_return(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     **Finds**: six circuits of 4 A on one return of 1.5 mm², PVC, method C: 24 A, where it may carry 19.5 A. A return of
     2.5 mm² and 40 m that loses 3.3 V while the circuit's own 2 A explain 0.6 V.
 
-    **Leaves alone**: three dampers of 0.8 A behind devices of 4 A on a return of 2.5 mm², all read while on.
+    **Leaves alone**: a return that may carry all that its sources can give for good;
+    three dampers of 0.8 A behind devices of 4 A on a return of 2.5 mm², all read while on.
     """
     for run in case.runs:
         of = case.context.figures.returns.get(run.return_conductor.removeprefix(SHARED))
@@ -77,6 +79,8 @@ def _of_return(case: CircuitCase, of: SharedReturn) -> Iterator[Finding | NotJud
         yield _capacity(case, where, f"{shown} of {tags} together flow in it", bounds, numbers, Severity.SOON)
     elif carried > bounds.least_a:
         yield shared_return.gap(case, where, f"{show(carried, 'A', digits=3)} against {bounds.words}")
+    elif sources_give_a(case) <= bounds.least_a:
+        return
     elif len(known) < len(rated):
         yield shared_return.gap(case, where, "the rating of a device before it is not recorded")
     elif sum(known) > bounds.most_a:

@@ -22,13 +22,14 @@ from rules.units import show
         "C. J. Clopper, E. S. Pearson, Biometrika 26, 404", "1934", "for a finite number: hypergeometric", "computed"
     ),
     also=(Citation("J. A. Hanley, A. Lippman-Hand, JAMA 249, 1743", "1983", "rule of three", "from-memory"),),
-    limits=("decision", "sampling"),
+    limits=("decision", "sampling", "heat", "termination"),
 )
 def share_tested(case: SiteCase) -> Iterator[Finding | NotJudged]:
     """
-    Of all terminations of the site's runs, four a run, some lie in runs between two points that were read under load. With
-    so many read and so many bad connections found among them, up to so many of the others may be bad, at the profile's
-    confidence: exact, for a part drawn at random. Without a bad one it is near 3 / read of all.
+    Of all terminations of the site's runs, four a run, some lie in runs between two points that were read under load, where
+    the readings say anything. With so many read and so many bad connections found among them, claimed by the diagnosis or
+    read hot, up to so many of the others may be bad, at the profile's confidence: exact, for a part drawn at random. Without a
+    bad one it is near 3 / read of all.
 
     **Finds**: 30 of 100 terminations read, none found bad: up to 8 of the other 70.
 
@@ -63,5 +64,5 @@ def share_tested(case: SiteCase) -> Iterator[Finding | NotJudged]:
 
 def _found_words(bad: int) -> str:
     if not bad:
-        return "no bad connection is claimed among them"
-    return f"{bad} bad connection{'s are' if bad > 1 else ' is'} claimed among them"
+        return "no bad connection was found among them"
+    return f"{bad} bad connection{'s were' if bad > 1 else ' was'} found among them"

@@ -41,6 +41,10 @@ def impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -
         ("longer_route", "low_factor", "high_factor"),
         ("slip", "parallel_low", "parallel_high"),
         ("decision", "passes_at", "fails_at"),
+        ("heat", "soon_w", "immediate_w"),
+        ("joint_rise", "similar_watch_k", "similar_soon_k"),
+        ("joint_rise", "ambient_watch_k", "ambient_soon_k"),
+        ("joint_rise", "device_ambient_watch_k", "device_ambient_soon_k"),
     ):
         values = groups[group_name].values if group_name in groups else {}
         if low in values and high in values and values[low] >= values[high]:
@@ -48,5 +52,9 @@ def impossible(name: str, groups: Mapping[str, LimitGroup], faults: list[str]) -
     window = groups["load_window"].values if "load_window" in groups else {}
     if window and 0 < window["highest_percent"] <= window["lowest_percent"]:
         faults.append(f"{name}: load_window.lowest_percent is not below load_window.highest_percent")
+    if "sampling" in groups and groups["sampling"].values["confidence"] >= 1:
+        faults.append(f"{name}: sampling.confidence is {groups['sampling'].values['confidence']:g}; a share below 1")
+    if "prior" in groups and groups["prior"].values["as_recorded"] <= 0:
+        faults.append(f"{name}: prior.as_recorded is 0; above 0, or nothing can be as recorded")
     if "prior" in groups and not sum(groups["prior"].values.values()) > 0:
         faults.append(f"{name}: the shares of [prior] sum to nothing")

@@ -99,6 +99,8 @@ def _prior_problems(site: Site) -> Iterator[Problem]:
         yield _problem("prior", "does not name as_recorded", "the share of as_recorded beside the others")
     if all(share == 0 for _, share in site.prior):
         yield _problem("prior", "gives every cause the share 0", "at least one share above 0")
+    elif any(cause == CAUSES[0] and share == 0 for cause, share in site.prior):
+        yield _problem("prior", "gives as_recorded the share 0", "a share of as_recorded above 0")
 
 
 def _source_problems(site: Site) -> Iterator[Problem]:

@@ -30,7 +30,7 @@ _METALS = {"copper": "copper", "tinned copper": "copper", "aluminium": "aluminiu
 _NEC_METALS = _METALS | {"copper-clad aluminium": "aluminium"}
 
 _IEC_GROUPS = {
-    ("copper", "PVC"): ("iec_pvc_copper", "iec_pvc_copper_e"),
+    ("copper", "PVC"): ("iec_pvc_copper", "iec_pvc_copper_e", "pvc_copper_below_1_5"),
     ("copper", "XLPE"): ("iec_xlpe_copper",),
     ("aluminium", "PVC"): ("iec_pvc_aluminium", "iec_pvc_aluminium_more"),
     ("aluminium", "XLPE"): ("iec_xlpe_aluminium",),

@@ -109,6 +109,12 @@ def test_what_was_read_is_shown_as_verified_and_what_was_not_as_from_memory(name
         assert group(other).status == "from-memory"
 
 
+def test_sizes_that_the_standard_does_not_print_cite_what_they_were_read_in() -> None:
+    """IEC 60364-5-52 Table B.52.2 begins at 1.5 mm²; ABNT NBR 5410:2004 Table 36 holds 0.5 to 1 mm² too."""
+    for size, document in (("1 mm2", "ABNT NBR 5410"), ("0.5 mm2", "ABNT NBR 5410"), ("1.5 mm2", "IEC 60364-5-52")):
+        assert iec_ampacity(size, "copper", "PVC", "C").group.source.startswith(document)
+
+
 # Corrections
 
 

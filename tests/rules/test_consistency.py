@@ -225,6 +225,10 @@ def test_a_replaced_reading_without_a_tag_is_found() -> None:
             ],
         ),
         (
+            (("as recorded", 0.0), ("bad connection", 1.0)),
+            ["gives as_recorded the share 0; accepted: a share of as_recorded above 0"],
+        ),
+        (
             (("as recorded", 1.0), ("bad conection", 1.0)),
             [
                 "'bad_conection' is no cause; accepted: as_recorded, bad_connection, smaller_conductor, other_metal, "

@@ -106,6 +106,10 @@ def test_a_rule_may_be_lowered_or_switched_off_with_a_reason() -> None:
         ('[temperature]\nsource="s"\nhot_c = 900', "temperature.hot_c is 900; a temperature from -90 to 400 degC"),
         ('[decision]\nsource="s"\nsound_at = 1.5', "decision.sound_at is 1.5; a share from 0 to 1"),
         ('[decision]\nsource="s"\npasses_at = 0.99', "decision.passes_at is not below decision.fails_at"),
+        ('[heat]\nsource="s"\nsoon_w = 20', "heat.soon_w is not below heat.immediate_w"),
+        ('[joint_rise]\nsource="s"\nsimilar_watch_k = 20', "joint_rise.similar_watch_k is not below joint_rise.similar_soon_k"),
+        ('[sampling]\nsource="s"\nconfidence = 1', "sampling.confidence is 1; a share below 1"),
+        ('[prior]\nsource="s"\nas_recorded = 0', "prior.as_recorded is 0; above 0, or nothing can be as recorded"),
         (
             '[load_window]\nsource="s"\nlowest_percent = 90\nhighest_percent = 85',
             "load_window.lowest_percent is not below load_window.highest_percent",
