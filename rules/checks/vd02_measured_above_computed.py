@@ -7,11 +7,14 @@ from rules.assessment import Citation, Drop, Finding, NotJudged, Place, Severity
 from rules.calc.doubt import probability_above, total
 from rules.case import CircuitCase, LoadPoint
 from rules.diagnosis.hypotheses import AS_RECORDED, BAD_CONNECTION, LONGER, OTHER_METAL, SEMICONDUCTOR, SMALLER
+from rules.errors import MissingData
 from rules.heat import DEVICE, accounted_v, joints_read
 from rules.joints import heat_at, most_read_a, semiconductor_v
 from rules.limits import Limits
 from rules.record import Figure
 from rules.rise import rises_of
+from rules.rounds import current_at
+from rules.routes import together
 from rules.rule import DOUBTS_OF_COMPUTED, DOUBTS_OF_READINGS, rule
 from rules.thinner import of_conductors
 from rules.unaccounted import Lost, most_unaccounted
@@ -175,9 +178,27 @@ def _heat(case: CircuitCase, claim: Claim | None) -> Figure | None:
         )
     if drop is None:
         return None
-    value = drop.too_much.value * abs(drop.current.value)
-    u = math.hypot((drop.excess.u or 0.0) * drop.current.value, drop.excess.value * (drop.current.u or 0.0))
+    amps = _in_shared_return(case, drop) or drop.current
+    value = drop.too_much.value * abs(amps.value)
+    u = math.hypot((drop.excess.u or 0.0) * amps.value, drop.excess.value * (amps.u or 0.0))
     return Figure(value, "W", u)
+
+
+def _in_shared_return(case: CircuitCase, drop: Drop) -> Figure | None:
+    """The current in a shared return on the path, with that of other circuits, where it is more than the circuit's own. [A]"""
+    this = next(r for r in case.rounds if r.name == drop.round)
+    found: list[Figure] = []
+    try:
+        for point in case.tree.path(drop.start, drop.end):
+            run = case.tree.ends.get(point)
+            if run is not None and (shared := case.tree.shared.get(run.id)) is not None:
+                own = current_at(point, this, case.tree, case.limits)
+                value, u = total(together([own, *shared.others(this.name)]).terms)
+                found.append(Figure(abs(value), "A", u))
+    except MissingData:
+        return None
+    most = max(found, key=lambda amps: amps.value, default=None)
+    return most if most is not None and most.value > abs(drop.current.value) else None
 
 
 def _most_a(case: CircuitCase, point: str, read_a: float) -> float:
@@ -326,7 +347,14 @@ def _consequences(case: CircuitCase, claim: Claim | None, heat: Figure | None) -
         yield f"at design current {show(heat.value, 'W', heat.u)} turn into heat in one place{as_read}"
         yield from told
     elif heat is not None:
-        yield f"at this current {show(heat.value, 'W', heat.u)} turn into heat that the record does not explain"
+        amps = _in_shared_return(case, case.drop) if case.drop is not None else None
+        if amps is None:
+            yield f"at this current {show(heat.value, 'W', heat.u)} turn into heat that the record does not explain"
+        else:
+            yield (
+                f"{show(heat.value, 'W', heat.u)} turn into heat that the record does not explain where it is lost in the shared "
+                f"return, which carries {show(amps.value, 'A', amps.u)}"
+            )
     if claim is not None:
         yield from of_conductors(
             case, [row for row in (*claim.places, *claim.others) if row.probability >= NOT_RULED_OUT]
