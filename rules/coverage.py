@@ -24,7 +24,9 @@ class Coverage:
 
     circuits: int
     circuits_read: int
-    """With at least one run that lies between readings."""
+    """On which something was read, as every list counts them."""
+    circuits_between: int
+    """Of these, with at least one run that lies between readings under load."""
     joints: int
     """Terminations of all runs."""
     joints_read: int
@@ -35,14 +37,15 @@ class Coverage:
 
 def coverage_of(context: Context) -> Coverage:
     """Count the terminations of all runs, those between readings, and the bad ones that were found."""
-    joints = joints_read = bad = read_circuits = 0
+    joints = joints_read = bad = circuits_read = between = 0
     for circuit in context.site.circuits:
         side = context.measured.get(circuit.id)
         read = _runs_read(side) if side is not None and circuit.id in context.diagnoses else set()
         for run in context.index.runs_of(circuit.id):
             joints += joints_of(run)
             joints_read += joints_of(run) if run.id in read else 0
-        read_circuits += bool(read)
+        circuits_read += side is not None and bool(side.visit)
+        between += bool(read)
         diagnosis = context.diagnoses.get(circuit.id)
         claimed_at: set[str] = set()
         claim = claimed(diagnosis.causes, context.limits) if diagnosis is not None else None
@@ -51,7 +54,7 @@ def coverage_of(context: Context) -> Coverage:
             claimed_at = {joint.where for joint in claim.place.joints}
         if side is not None:
             bad += len([hot for hot in hot_as_read(context, circuit.id, read) if hot not in claimed_at])
-    return Coverage(len(context.site.circuits), read_circuits, joints, joints_read, min(bad, joints_read))
+    return Coverage(len(context.site.circuits), circuits_read, between, joints, joints_read, min(bad, joints_read))
 
 
 def joints_of(run: Run) -> int:

@@ -6,11 +6,11 @@ import math
 import re
 from collections import defaultdict
 from collections.abc import Iterator, Mapping, Sequence, Set
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TypeAlias
 
 from rules.calc.conductor import REFERENCE_AREA_MM2
-from rules.calc.doubt import Weighted, total
+from rules.calc.doubt import Weighted, probability_above, total
 from rules.calc.joint_heat import joint_heat_w
 from rules.case import CircuitCase
 from rules.context import Context, SimilarJoint
@@ -27,6 +27,7 @@ from rules.units import show
 from rules.verdict import claimed
 
 DEVICE = "device"
+TURNED = "of the wrong sign: leads swapped, or the current runs the other way"
 NUMBER = re.compile(r"run (\d+) ")
 HEALTHY_SPREADS = 2
 """Geometric standard deviations above the median up to which a termination counts as a healthy one: 97.7 of 100."""
@@ -163,7 +164,9 @@ class Hot:
     heat: Figure
     """The larger of now and at full load. [W]"""
     above_healthy_v: float
-    """Voltage across it beyond that of a healthy one, in its round. [V]"""
+    """Voltage across it beyond that of a healthy one, in its round; 0 where sign or current are in doubt. [V]"""
+    doubt: str = ""
+    """What is in doubt about the reading, though not that it is hot: its sign, or the current."""
 
 
 def hot_joints(case: CircuitCase) -> Iterator[Hot | tuple[str, str]]:
@@ -171,27 +174,56 @@ def hot_joints(case: CircuitCase) -> Iterator[Hot | tuple[str, str]]:
     limits = case.limits
     least_w = min(limits["heat.limit_w"], limits["heat.soon_w"])
     for joint in joints_read(case):
-        if joint.run is None or claims(case, joint.place):
+        run = joint.run
+        if run is None or claims(case, joint.place):
             continue
         if joint.gap:
-            yield joint.place, joint.gap
+            yield _without_current(case, joint, least_w) or (joint.place, joint.gap)
             continue
+        turned = probability_above(-joint.ohm.value, 0.0, joint.ohm.u or 0.0) >= limits["decision.beyond_doubt"]
+        if turned:
+            volts = joint.volts and Figure(abs(joint.volts.value), "V", joint.volts.u)
+            joint = replace(joint, volts=volts, ohm=Figure(abs(joint.ohm.value), "ohm", joint.ohm.u))
         known = [heat for heat in (joint.now, joint.full) if heat is not None]
         if not known:
             yield joint.place, "the current at design is not known, nor was one read"
             continue
         heat = max(known, key=lambda one: one.value)
-        mean, most = healthy_ohm(case, joint.run)
+        mean, most = healthy_ohm(case, run)
         by_heat = against_limit(heat.value, least_w, heat.u or 0.0, limits)
         by_ohm = against_limit(joint.ohm.value, most, joint.ohm.u or 0.0, limits)
         if by_heat is Verdict.FAILS and by_ohm is Verdict.FAILS:
             lost = 0.0
             if joint.volts is not None and joint.current is not None:
                 lost = joint.volts.value - mean * joint.current.value
-            yield Hot(joint, heat, lost)
+            yield Hot(joint, heat, 0.0, TURNED) if turned else Hot(joint, heat, lost)
         elif Verdict.CONFORMS not in (by_heat, by_ohm):
             against = f"{show(heat.value, 'W', heat.u)} against {show(least_w, 'W')}"
             yield joint.place, f"not settled: {against}"
+
+
+def _without_current(case: CircuitCase, joint: Joint, least_w: float) -> Hot | None:
+    """A joint that was read without a current, but loses more than a healthy one at any current that may flow there."""
+    if joint.volts is None or joint.run is None:
+        return None
+    most_a = max(case.circuit.rated_current_a or 0.0, joint.full_a or 0.0)
+    flowing_a = joint.full_a or most_a
+    volts = Figure(abs(joint.volts.value), "V", joint.volts.u)
+    u = volts.u or 0.0
+    _, most = healthy_ohm(case, joint.run)
+    heat = Figure(volts.value * flowing_a, "W", u * flowing_a)
+    above = against_limit(volts.value, most * most_a, u, case.limits)
+    if not most_a or above is not Verdict.FAILS:
+        return None
+    if against_limit(heat.value, least_w, heat.u or 0.0, case.limits) is not Verdict.FAILS:
+        return None
+    ohm = Figure(volts.value / most_a, "ohm", u / most_a)
+    return Hot(
+        replace(joint, volts=volts, ohm=ohm, gap=""),
+        heat,
+        0.0,
+        f"{joint.gap}; the resistance is the least, as at {show(most_a, 'A')}",
+    )
 
 
 def accounted_v(case: CircuitCase) -> float:
@@ -233,28 +265,32 @@ class _Reader:
 
     def _live(self, place: str, rounds: list[tuple[Round, list[Reading]]]) -> Joint:
         branch, run = self._branch(place)
-        reason = "no current flowed"
+        reason, unclamped = "no current flowed", None
         found: list[tuple[float, float, Figure, str]] = []
         for this, rows in rounds:
             try:
                 current = current_at(branch, this, self.tree, self.limits)
             except MissingData as error:
                 reason = str(error)
+                unclamped = Figure(*self._mean(rows, this))
                 continue
             amps, reading_u = total(current.terms)
             amps_u = math.hypot(reading_u, *(share for _, share in current.shares))
-            volts, volts_u = total([Weighted(1 / len(rows), this.shown[row.id]) for row in rows])
             if amps:
-                found.append((amps, amps_u, Figure(volts, "V", volts_u), this.name))
+                found.append((amps, amps_u, Figure(*self._mean(rows, this)), this.name))
         most = largest_a(branch, self.rounds, self.largest_current_a)
         if not found:
-            return Joint(place, run, "", None, None, Figure(math.nan, "ohm"), most, reason)
+            return Joint(place, run, "", unclamped, None, Figure(math.nan, "ohm"), most, reason)
         amps, amps_u, shown, name = max(found, key=lambda item: abs(item[0]))
         # what is lost in the sense of a current towards the source reads below zero
         lost = Figure(math.copysign(shown.value, shown.value * amps), "V", shown.u)
         ohm = lost.value / abs(amps)
         u = math.hypot(lost.u or 0.0, ohm * amps_u) / abs(amps)
         return Joint(place, run, name, lost, Figure(abs(amps), "A", amps_u), Figure(ohm, "ohm", u), most)
+
+    def _mean(self, rows: list[Reading], this: Round) -> tuple[float, str, float]:
+        value, u = total([Weighted(1 / len(rows), this.shown[row.id]) for row in rows])
+        return value, "V", u
 
     def _dead(self, place: str, rows: list[Reading]) -> Joint:
         branch, run = self._branch(place)

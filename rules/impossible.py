@@ -11,6 +11,9 @@ from rules.limits import Limits
 from rules.record import Figure
 from rules.rounds import Round, Tree
 
+REVERSED_SHARE = 0.25
+"""Of nominal, by which a pole is past earth on the wrong side: more than a drop in an earthed return. Our own default."""
+
 
 @dataclass(frozen=True, slots=True)
 class Rise:
@@ -40,6 +43,24 @@ def reversed_points(this: Round, limits: Limits) -> list[tuple[str, Figure]]:
         value, u = total(terms)
         if probability_above(-value, 0.0, u) >= limits["decision.beyond_doubt"]:
             found.append((point, Figure(value, "V", u)))
+    return found
+
+
+def reversed_poles(this: Round, earthing: str, nominal_v: float, limits: Limits) -> list[tuple[str, str, Figure]]:
+    """
+    Single poles to earth of an earthed system that have the other pole's sign: point, leg and voltage.
+
+    Points that were read between the legs, or at both poles, are left to ``reversed_points``.
+    """
+    if earthing not in ("negative earthed", "positive earthed", "mid earthed"):
+        return []
+    found = []
+    for row in this.readings:
+        if row.quantity == "voltage" and row.leg in ("positive", "negative") and row.at not in this.volts:
+            value, u = total([Weighted(1.0, this.shown[row.id])])
+            wrong = -value if row.leg == "positive" else value
+            if probability_above(wrong, REVERSED_SHARE * nominal_v, u) >= limits["decision.beyond_doubt"]:
+                found.append((row.at, row.leg, Figure(value, "V", u)))
     return found
 
 

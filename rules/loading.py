@@ -34,11 +34,17 @@ class Bounds:
         return self.capacity.ampacity_a
 
     @property
+    def is_of_terminals(self) -> bool:
+        """Whether it is the temperature of its terminals that caps it, not the conductor in its place."""
+        return self.capacity.ampacity_a < self.capacity.corrected_a * (1 - 1e-9)
+
+    @property
     def words(self) -> str:
         """``18.5 A (PVC, method B1)``, with what was taken and the most that it could be."""
         taken = [text for text in self.capacity.assumed if text not in self.capacity.column]
         guessed = f"; not recorded, so taken: {', '.join(taken)}" if taken else ""
         least = f"{show(self.least_a, 'A', digits=3)} ({self.capacity.column}{guessed})"
+        least += f", as its terminals of {self.capacity.terminal_c:g} °C allow" if self.is_of_terminals else ""
         if self.most_a in (self.least_a, float("inf")):
             return least
         return f"{least}, at the most favourable {show(self.most_a, 'A', digits=3)}"
@@ -52,7 +58,9 @@ class Bounds:
             "as tabulated": Figure(capacity.tabulated_a * capacity.parallel, "A"),
             "ambient factor": Figure(capacity.ambient_factor, "1"),
             "grouping factor": Figure(capacity.grouping_factor, "1"),
-        }
+        } | (
+            {"corrected, before its terminals": Figure(self.capacity.corrected_a, "A")} if self.is_of_terminals else {}
+        )
 
     @property
     def source(self) -> str:

@@ -90,8 +90,8 @@ def _is_used(reading: Reading, rounds: Sequence[Round]) -> bool:
         return reading.at in this.volts
     if reading.quantity == "drop":
         return (reading.at, reading.to) in this.direct
-    # a temperature enters the computed drop, or HT02; a joint HT01 or HT03, which say what they miss
-    return reading.quantity in ("current", "temperature", "joint")
+    # a temperature enters the computed drop, or HT02; a joint HT01 or HT03, a residual RD13, which say what they miss
+    return reading.quantity in ("current", "temperature", "joint", "residual")
 
 
 def _name(reading: Reading) -> str:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from rules.assessment import Severity
 from rules.calc.doubt import Weighted, total
@@ -25,6 +25,8 @@ LEAST_INSULATION = "PVC"
 """What counts where no insulation is recorded: the one that bears least."""
 ALIKE = 0.1
 """Relative: two terminations whose currents differ by no more are similar. Our own default."""
+
+BEYOND = "; hotter than its insulation bears"
 
 
 @dataclass(frozen=True, slots=True)
@@ -98,6 +100,10 @@ def _of_round(case: CircuitCase, this: Round) -> Iterator[Rise]:
                 continue  # alike hot: the conductor's own heat, no joint's
         if ambient is not None:
             yield _rise(case, this, place, temperature, *ambient, amps[place], against)
+        elif not similar:
+            alone = _rise(case, this, place, temperature, *_assumed(case), amps[place], against)
+            bears = place == "device" or _conductor_bears(case, place, temperature)
+            yield alone if bears else replace(alone, severity=Severity.SOON, how=f"{alone.how}{BEYOND}")
 
 
 def _conductor_bears(case: CircuitCase, place: str, read: Figure) -> bool:
@@ -183,6 +189,13 @@ def _ambient(case: CircuitCase, rows: list[Reading]) -> tuple[Figure, str] | Non
     return Figure(
         recorded, "degC", case.limits["temperature_doubt.air"]
     ), f"the site's ambient of {show(recorded, 'degC')}"
+
+
+def _assumed(case: CircuitCase) -> tuple[Figure, str]:
+    """The profile's ambient, for a reading with nothing beside it."""
+    assumed_c = case.limits["ambient.assumed_c"]
+    doubt = case.limits["temperature_doubt.assumed"]
+    return Figure(assumed_c, "degC", doubt), f"an assumed ambient of {show(assumed_c, 'degC')}"
 
 
 def _mean(case: CircuitCase, rows: list[Reading]) -> Figure:

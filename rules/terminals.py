@@ -64,14 +64,16 @@ def surely_below(read: Sequence[AtTerminals], limit_v: float, limits: Limits) ->
     """
     The reading that lies most surely below a voltage; ``None`` where none does beyond doubt.
 
-    A dead one is no sag, unless current flows: then the source folds back, or is short-circuited.
+    A dead one is no sag, unless current flows: then the source folds back, or is short-circuited. One below zero is RD01.
     """
 
     def sure(one: AtTerminals) -> float:
         return probability_above(limit_v, one.voltage.value, one.voltage.u or 0.0)
 
     dead_v = limits["readings.no_voltage_share"] * limit_v
-    living = [one for one in read if one.voltage.value > dead_v or _flows(one.current, limits)]
+    living = [
+        one for one in read if one.voltage.value > dead_v or (one.voltage.value > 0 and _flows(one.current, limits))
+    ]
     if not living:
         return None
     worst = max(living, key=lambda one: (sure(one), -one.voltage.value))

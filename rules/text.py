@@ -113,6 +113,21 @@ def nearest(word: str, known: Collection[str]) -> str | None:
     return matches[0] if matches else None
 
 
+def nearest_choice(word: str, choices: Collection[str]) -> str | None:
+    """
+    The choice that a misspelt word was most probably meant to be; none where a numeral is all that tells choices apart.
+
+    >>> nearest_choice("brekaer B", ["breaker B", "fuse gG"]), nearest_choice("CAT 3", ["CAT II", "CAT III", "CAT IV"])
+    ('breaker B', None)
+    >>> nearest_choice("cat iii", ["CAT II", "CAT III", "CAT IV"])
+    'CAT III'
+    """
+    near = nearest(word, choices)
+    last = [choice.split()[-1] for choice in choices]
+    by_numeral = len(last) > 1 and all(set(numeral) <= set("IVX") for numeral in last)
+    return near if near is None or not by_numeral or near.casefold() == word.casefold() else None
+
+
 class Suggestions:
     """
     Nearest known words for one pass over a record.

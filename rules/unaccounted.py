@@ -138,7 +138,7 @@ def _of_one_leg(case: CircuitCase, this: Round) -> Iterator[Lost]:
         if not amps:
             continue
         u = math.hypot(volts_u, volts * amps_u / amps) / abs(amps)
-        ohm = Figure(volts / amps - loop_ohm, "ohm", u)
+        ohm = Figure(abs(volts / amps) - loop_ohm, "ohm", u)  # of the wrong sign: the leads were swapped
         words = (
             f"{show(volts, 'V', volts_u)} from {row.at} to {row.to} in the {row.leg} leg at {show(amps, 'A', amps_u)} in round "
             f"{this.name}, where both legs are computed to lose {show(loop_ohm * abs(amps), 'V', digits=2)}"

@@ -64,9 +64,7 @@ MOST_LISTED = 12
 """Consequences or numbers of one finding that a page lists."""
 LEAST_SURE = 0.999
 """Probability above which a finding says no more than that it is above it."""
-CAUSES_NOT_JUDGED = (
-    "Causes are not yet judged: a drop that agrees within its doubt is “measure”, and no circuit is called sound."
-)
+CAUSES_NOT_JUDGED = "No reading here lets a cause be weighed: a drop that agrees within its doubt is “measure”, and no circuit is sound."
 
 
 def causes_are_judged(circuits: tuple[CircuitResult, ...]) -> bool:

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections import defaultdict
+from collections.abc import Mapping, Sequence
+from typing import TypeAlias
 
 from audit.report.blocks import Block, Bullets, Cell, Column, Facts, Paragraph, Section, Table
 from audit.report.phrases import STATUS_MEANING, drop_words, finding_place, place_words, status_words
@@ -16,9 +18,12 @@ from audit.report.sections import (
     statements,
     tested_facts,
 )
-from rules.assessment import Assessment, CircuitResult, Severity
+from rules.assessment import Assessment, CircuitResult, Finding, Severity
 from rules.index import Index
 from rules.record import Site
+
+_Action: TypeAlias = tuple[str, str, str, str]
+"""How soon, what was found, what to do, and how it stands."""
 
 MOST_WORST = 5
 """Circuits on the page."""
@@ -78,7 +83,7 @@ def _worst(index: Index, assessment: Assessment) -> tuple[Block, ...]:
         Column("Circuit", share=2), Column("Description", share=5), Column("Drop", share=4),
         Column("Measured", share=3), Column("Status", share=2), Column("Found", share=10),
     )  # fmt: skip
-    return (Table(columns, tuple(rows)), *_more(len(ranked) - MOST_WORST))
+    return (Table(columns, tuple(rows)), *_more(len(ranked) - MOST_WORST, "circuit"))
 
 
 def _used(result: CircuitResult) -> float:
@@ -93,15 +98,17 @@ def _used(result: CircuitResult) -> float:
 def _actions(site: Site, assessment: Assessment) -> tuple[Block, ...]:
     """What asks for action at once or soon; equal actions of equal standing in one row."""
     decided = decisions_of(site)
-    places: dict[tuple[str, str, str, str], list[str]] = {}
+    places: dict[_Action, list[Finding]] = {}
     for finding in by_severity(assessment.findings):
         if finding.severity in (Severity.IMMEDIATE, Severity.SOON):
             standing = decided_words(finding, decided, "open")
             action = (str(finding.severity), finding.title, finding.remedy, standing)
-            places.setdefault(action, []).append(finding_place(finding))
+            places.setdefault(action, []).append(finding)
+    shown = _of_distinct_places(places)[:MOST_ACTIONS]
     rows: list[tuple[Cell, ...]] = [
-        (severity, title, _some(where), remedy, standing)
-        for (severity, title, remedy, standing), where in list(places.items())[:MOST_ACTIONS]
+        (severity, title, _some([finding_place(finding) for finding in places[action]]), remedy, standing)
+        for action in shown
+        for severity, title, remedy, standing in [action]
     ]
     if not rows:
         return (Paragraph("No finding asks for action at once or soon."),)
@@ -109,12 +116,31 @@ def _actions(site: Site, assessment: Assessment) -> tuple[Block, ...]:
         Column("How soon", share=3), Column("Found", share=7), Column("Where", share=8), Column("Do", share=13),
         Column("Decided", share=3),
     )  # fmt: skip
-    return (Table(columns, tuple(rows)), *_more(len(places) - MOST_ACTIONS))
+    left_out = sum(len(findings) for action, findings in places.items() if action not in shown)
+    return (Table(columns, tuple(rows)), *_more(left_out, "finding"))
 
 
-def _more(left_out: int) -> tuple[Block, ...]:
-    """That the page does not hold all of them."""
-    return (Paragraph(f"and {left_out} more, in the inspector's report", "small"),) if left_out > 0 else ()
+def _of_distinct_places(places: Mapping[_Action, Sequence[Finding]]) -> list[_Action]:
+    """
+    Actions in the order in which a page takes them: of equal severity those of circuits that are not on it yet first.
+
+    A circuit of many findings does not keep the others off the page; the most severe stay first.
+    """
+    on_it: set[str | None] = set()
+    first: list[_Action] = []
+    later: list[_Action] = []
+    for action, findings in places.items():
+        owners = {finding.circuit or finding.board for finding in findings}
+        (later if owners <= on_it else first).append(action)
+        on_it |= owners
+    rank = {str(severity): severity.rank for severity in Severity}
+    return sorted([*first, *later], key=lambda action: rank[action[0]])
+
+
+def _more(left_out: int, noun: str) -> tuple[Block, ...]:
+    """How many the page does not hold."""
+    more = f"and {left_out} more {noun}{'s' if left_out > 1 else ''}, in the inspector's report"
+    return (Paragraph(more, "small"),) if left_out > 0 else ()
 
 
 def _gap_line(assessment: Assessment) -> tuple[str, ...]:

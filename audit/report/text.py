@@ -282,7 +282,8 @@ def _next_readings(page: Page, circuits: Iterable[CircuitResult]) -> None:
         for tag, reading in readings:
             page.line(f"{tag}  {next_reading_words(reading)}", indent=2)
             page.line(reading.why, indent=4)
-        page.pairs([("caution", caution)], indent=2)
+        whose = ", ".join(dict.fromkeys(tag for tag, _ in readings))
+        page.pairs([("caution", f"{whose}: {caution}" if caution else "")], indent=2)
 
 
 def _changed_severities(page: Page, assessment: Assessment) -> None:

@@ -1,6 +1,7 @@
 """CP02: the protective device lets more through for good than the conductors behind it may carry."""
 
 from collections.abc import Iterator
+from dataclasses import replace
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.case import CircuitCase
@@ -36,6 +37,8 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
 
     **Finds**: a 20 A breaker before 1.5 mm² copper, PVC, method C, 30 °C: 19.5 A. A 20 A fuse before 14 AWG copper.
 
+    Copper-clad aluminium is held against copper of its size, which carries more.
+
     **Leaves alone**: a 16 A breaker before the same; a 60 A fuse before 6 AWG of 55 A; a circuit whose sources cannot
     give more than the capacity; a run that is loaded above its capacity, where CP01 tells of the device too. Where the
     rating lies between the capacity with what is not recorded at its lowest and at its most favourable it is not judged.
@@ -58,7 +61,11 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
         try:
             bounds = bounds_of(run, case)
         except RulesError as error:
-            gaps.append((run.name, str(error)))
+            at_most = _as_copper(case, run)
+            if at_most is None:
+                gaps.append((run.name, str(error)))
+            else:
+                found.append(at_most)
             continue
         least_a, rule_words = largest_device_a(run, bounds, bounds.least_a)
         most_a, _ = largest_device_a(run, bounds, bounds.most_a)
@@ -85,3 +92,19 @@ def device_above_capacity(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             | bounds.numbers,
             source=f"{device_above_capacity.source}; {bounds.source}",
         )
+
+
+def _as_copper(case: CircuitCase, run: Run) -> tuple[float, Run, Bounds, str] | None:
+    """Copper-clad aluminium, which no table has, carries less than copper: ``None`` where the device suits even that."""
+    rated = case.circuit.rated_current_a
+    if run.material_or_default != "copper-clad aluminium" or rated is None:
+        return None
+    copper = replace(run, material="copper", return_material="")
+    try:
+        bounds = bounds_of(copper, case)
+    except RulesError:
+        return None
+    most_a, words = largest_device_a(copper, bounds, bounds.most_a)
+    if rated <= most_a or sources_give_a(case) <= bounds.most_a:
+        return None
+    return most_a, run, bounds, f", were it copper; copper-clad aluminium less{words}"

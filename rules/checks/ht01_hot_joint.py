@@ -5,7 +5,9 @@ from collections.abc import Iterator
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.doubt import probability_above
 from rules.case import CircuitCase
-from rules.heat import Hot, healthy_ohm, hot_joints
+from rules.decision import Verdict
+from rules.device_heat import device_heats
+from rules.heat import TURNED, Hot, healthy_ohm, hot_joints
 from rules.record import Figure
 from rules.rise import rises_of
 from rules.rule import DOUBTS_OF_READINGS, rule
@@ -26,8 +28,11 @@ from rules.units import show
         "glowing joints of 5 W at 0.8 A and 35 W at 15 A; the classes are our own",
         "from-memory",
     ),
-    also=(Citation("JCGM 106", "2012", "8.3", "from-memory"),),
-    limits=("heat", "termination", "decision", "load_share", *DOUBTS_OF_READINGS),
+    also=(
+        Citation("JCGM 106", "2012", "8.3", "from-memory"),
+        Citation("IEC 60898-1", "2015", "largest power loss of a pole", "from-memory"),
+    ),
+    limits=("heat", "joint_compare", "termination", "decision", "load_share", *DOUBTS_OF_READINGS),
 )
 def heat_in_a_joint(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     """
@@ -38,11 +43,16 @@ def heat_in_a_joint(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     It stands by the reading alone, also where the diagnosis takes the reading for a slip or holds such a resistance for
     out of its range. A joint that VD02 claims is told there, with its heat.
 
+    A reading of the wrong sign counts by its magnitude. One without a current is found where no current up to the device's
+    rating lets a healthy termination lose so much.
+
     **Finds**: 0.15 V at 300 A across a lug of 120 mm²: 0.5 mΩ, 45 W, though it is 0.3 % of 48 V.
 
     **Leaves alone**: 13 mV at 300 A there, 3.9 W: a healthy lug of that size has 0.04 mΩ, and up to 0.17 mΩ. 0.50 V at
-    3 A: 1.5 W. A pole of a device has its own rule, HT03.
+    3 A: 1.5 W. A pole of a device has its own rule, HT03, but where no figure of the device is known: then its watts are
+    held against the largest loss that a breaker for such a current may have.
     """
+    yield from _devices(case)
     for hot in hot_joints(case):
         if not isinstance(hot, Hot):
             yield heat_in_a_joint.gap(case, *hot)
@@ -56,9 +66,16 @@ def heat_in_a_joint(case: CircuitCase) -> Iterator[Finding | NotJudged]:
                 f"{show(joint.current.value, 'A', joint.current.u)} in round {joint.round}: "
                 f"{show(joint.now.value, 'W', joint.now.u)}"
             )
+        elif joint.volts is not None:
+            read = f"{show(joint.volts.value, 'V', joint.volts.u)} across {joint.place}"
         else:
             read = f"{show(joint.ohm.value, 'ohm', joint.ohm.u)} across {joint.place}, read dead"
-        if joint.full_a is not None and joint.full is not None:
+        if hot.doubt == TURNED:
+            read += f", {hot.doubt}"
+        if joint.volts is not None and joint.current is None:
+            numbers["voltage"] = joint.volts
+            read += f" ({hot.doubt}); at design current {show(hot.heat.value, 'W', hot.heat.u)}"
+        elif joint.full_a is not None and joint.full is not None:
             numbers["largest current"] = Figure(joint.full_a, "A")
             read += f"; at {show(joint.full_a, 'A', digits=3)} {show(joint.full.value, 'W', joint.full.u)}"
         assert joint.run is not None
@@ -72,6 +89,36 @@ def heat_in_a_joint(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             source=f"{heat_in_a_joint.source}; {case.limits.citation('heat')}",
             consequences=tuple(_consequences(case, hot)),
         )
+
+
+def _devices(case: CircuitCase) -> Iterator[Finding | NotJudged]:
+    """The hottest reading of a device without a figure; a gap where none is settled."""
+    found = list(device_heats(case))
+    hot = [one for one in found if one.verdict is Verdict.FAILS]
+    if not hot:
+        yield from (
+            heat_in_a_joint.gap(
+                case,
+                one.place,
+                f"not settled: {show(one.heat.value, 'W', one.heat.u)} against {show(one.most_w, 'W', digits=3)}",
+            )
+            for one in found
+            if one.verdict is Verdict.OPEN
+        )
+        return
+    most = max(hot, key=lambda one: one.heat.value)
+    whose = "the profile allows" if most.most_w <= case.limits["heat.soon_w"] else "a device for it may lose at most"
+    yield heat_in_a_joint.finding(
+        case,
+        most.place,
+        f"{most.words}: {show(most.heat.value, 'W', most.heat.u)} at {show(most.current_a, 'A', digits=3)}, "
+        f"where {whose} {show(most.most_w, 'W', digits=3)}",
+        numbers={"heat": most.heat, "resistance": most.ohm, "most of a device": Figure(most.most_w, "W")},
+        severity=_severity(most.heat, case),
+        remedy="Read across each pole of the device once more at the same current, and its rating; isolate, look at its terminals and work "
+        "it some times; where it stays high, have it exchanged.",
+        source=f"{heat_in_a_joint.source}; {case.limits.citation('heat')}",
+    )
 
 
 def _severity(heat: Figure, case: CircuitCase) -> Severity:

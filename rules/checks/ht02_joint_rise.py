@@ -28,6 +28,7 @@ from rules.units import show
     limits=(
         "joint_rise",
         "joint_scaling",
+        "ambient",
         "decision",
         "temperature_doubt",
         "load_share",
@@ -44,7 +45,8 @@ def joint_rise(case: CircuitCase) -> Iterator[Finding | NotJudged]:
     watch from 4 K and soon from 15 K on; over the ambient from 21 K and 40 K on. Below 40 % of full load nothing is scaled:
     the rise as read stands. Every reading has the doubt of the probe's contact beside the meter's. Over the ambient, a device
     counts from 60 K and 80 K on, since its terminals may warm by 60 K; two ends of a run that are alike hot have the conductor's
-    own heat and count only above what its insulation bears.
+    own heat and count only above what its insulation bears. A temperature with nothing beside it is held against the
+    profile's ambient, with its doubt, and is for soon where it is above what the insulation bears.
 
     **Finds**: 62 °C at one end of a run and 38 °C at the other, at half load: 24 K, 96 K at full load.
 

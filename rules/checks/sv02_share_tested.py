@@ -4,7 +4,7 @@ from collections.abc import Iterator
 
 from rules.assessment import Citation, Finding, NotJudged, Severity
 from rules.calc.sampling import most_bad
-from rules.coverage import coverage_of
+from rules.coverage import Coverage, coverage_of
 from rules.record import Figure
 from rules.rule import SiteCase, rule
 from rules.units import show
@@ -50,8 +50,9 @@ def share_tested(case: SiteCase) -> Iterator[Finding | NotJudged]:
     yield share_tested.finding(
         case,
         "site",
-        f"{read} of {total} terminations, {show(share, '1', digits=2)}, lie in runs that were read ({found.circuits_read} of "
-        f"{found.circuits} circuits); {_found_words(bad)}; of the other {left} up to {more} may be bad, at {show(confidence, '1')} "
+        f"{read} of {total} terminations, {show(share, '1', digits=2)}, lie in runs between two points that were read under load; "
+        f"{_circuits_words(found)}; "
+        f"{_found_words(bad)}; of the other {left} up to {more} may be bad, at {show(confidence, '1')} "
         "confidence and if those read were drawn at random",
         numbers={
             "share_read": Figure(share, "1"),
@@ -60,6 +61,12 @@ def share_tested(case: SiteCase) -> Iterator[Finding | NotJudged]:
         },
         source=f"{share_tested.source}; {case.context.limits.citation('sampling')}",
     )
+
+
+def _circuits_words(found: Coverage) -> str:
+    """Circuits on which something was read, and on how many of them such runs are."""
+    read = f"{found.circuits_read} of {found.circuits} circuits were read"
+    return read if found.circuits_between == found.circuits_read else f"{read}, {found.circuits_between} of them so"
 
 
 def _found_words(bad: int) -> str:

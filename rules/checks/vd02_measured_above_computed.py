@@ -118,8 +118,8 @@ def measured_above_computed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             severity=_of_doubtful(case, lost),
             cause=slip.cause,
             source=f"{measured_above_computed.source}; {case.limits.citation('decision')}",
-            without=("bad_connection",),
             consequences=tuple(_if_so(lost)),
+            without=("bad_connection",) if lost is None else (),
         )
         return
     heat = _heat(case, claim)

@@ -57,7 +57,7 @@ def total_above_allowed(case: CircuitCase) -> Iterator[Finding | NotJudged]:
             case,
             worst.load.point,
             f"{'at least ' if worst.total_gap else ''}{drop} ({share}) from the source to {worst.load.tag}, "
-            f"of which {show(worst.drop_v, 'V')} behind the board; allowed {limit}",
+            f"of which {show(worst.drop_v, 'V', worst.drop_u)} behind the board; allowed {limit}",
             numbers={
                 "drop": Figure(worst.total_drop_v, "V", worst.total_drop_u),
                 "share": Figure(worst.total_drop_v / nominal, "1", worst.total_drop_u / nominal),

@@ -75,7 +75,9 @@ def _limits(case: CircuitCase, amps: Mapping[str, float]) -> Iterator[tuple[floa
     for point, run in case.tree.ends.items():
         ampere = abs(amps.get(run.name, 0.0))
         supervised = case.tree.design_current_a.get(point)
-        if ampere and supervised:
+        if ampere and not supervised:  # nothing supervises it by the record: no more than what was read
+            yield ampere, ampere, OPERATES
+        elif ampere and supervised:
             # what the clamp showed while the coil was supervised may flow again
             yield max(supervised, ampere if ampere <= SUPERVISED * supervised else 0.0), ampere, OPERATES
 

@@ -12,12 +12,12 @@ from rules.assessment import NextReading
 from rules.calc.doubt import each_u
 from rules.case import CircuitCase
 from rules.checks.rc01_record_incomplete import gaps_of
-from rules.diagnosis.bounds import Bound, largest_bound, rounded_down, rounded_up
+from rules.diagnosis.bounds import OPERATES, Bound, largest_bound, operates_a_switch, rounded_down, rounded_up
 from rules.diagnosis.candidates import JOINT, POINT, Meters, shown_by, voltmeter_of
 from rules.diagnosis.named import Named
 from rules.diagnosis.next_cautions import caution_words
-from rules.diagnosis.next_words import bound_words
-from rules.diagnosis.options import AS_IT_IS, FINER, LENGTH, LOOK, ROUND, Way, minutes_of
+from rules.diagnosis.next_words import DEAD_METER, bound_words
+from rules.diagnosis.options import AS_IT_IS, DEAD_TEST, FINER, LENGTH, LOOK, ROUND, Way, minutes_of
 from rules.diagnosis.rows import extra_scale
 from rules.record import Figure, Run
 from rules.units import show
@@ -76,7 +76,9 @@ def first_round(case: CircuitCase, meters: Meters) -> NextReading | None:
     needed, how = _needed(case, suspected, counts_v), AS_IT_IS
     if needed > most:
         finer_v = each_u(limits["finer_meter.voltage_counts"], limits["finer_meter.voltage_resolution"])
-        needed, how = min(_needed(case, suspected, min(finer_v, counts_v)), most), FINER
+        needed, how = _needed(case, suspected, min(finer_v, counts_v)), FINER
+    if needed > most:
+        return _dead_test(case, end, suspected, needed, bound)
     way = Way(ROUND, how, minutes_of(ROUND, how, limits))
     start = "bus" if case.tree.device_ohm else "way"
     told = f"a bad connection of {show(suspected, 'ohm', digits=2)} stands out at {show(needed, 'A')}"
@@ -100,6 +102,22 @@ def first_round(case: CircuitCase, meters: Meters) -> NextReading | None:
     )
 
 
+def _dead_test(case: CircuitCase, end: str, suspected: float, needed: float, bound: Bound) -> NextReading:
+    """One leg by its resistance, where no current that may flow is enough."""
+    way = Way(JOINT, DEAD_TEST, minutes_of(JOINT, DEAD_TEST, case.limits))
+    live = f"live, a bad connection of {show(suspected, 'ohm', digits=2)} stands out at {show(needed, 'A')}"
+    return NextReading(
+        what=DEAD_TEST,
+        quantity="resistance",
+        at="way",
+        to=end,
+        leg="positive",
+        why=f"{_reason(case)}; {live}, and more than {show(bound.level, 'A')} {bound.why}: {DEAD_METER}",
+        caution=caution_words(case, way),
+        minutes=way.minutes,
+    )
+
+
 def named_reading(case: CircuitCase, meters: Meters, named: Named) -> NextReading:
     """Millivolts across a place that a finding names, where no reading poses a problem to the diagnosis."""
     run = next((run for run in case.runs if named.at.startswith(f"{run.name} ")), case.runs[0])
@@ -114,10 +132,10 @@ def named_reading(case: CircuitCase, meters: Meters, named: Named) -> NextReadin
         quantity="joint",
         at=named.at,
         leg=named.legs[0],
-        current_at_least=Figure(needed, "A"),
+        current_at_least=Figure(needed, "A") if needed else None,
         why="; ".join([named.why, *bound_words(case, bound.level, bound.why, design_a)]),
-        caution=caution_words(case, way),
-        current_at_most=None if math.isinf(bound.level) else Figure(bound.level, "A"),
+        caution=f"{caution_words(case, way)} {named.caution}",
+        current_at_most=Figure(bound.level, "A") if bound.level and math.isfinite(bound.level) else None,
         minutes=way.minutes,
     )
 
@@ -155,6 +173,8 @@ def _most_current(case: CircuitCase, first: Run) -> Bound:
     """The most current that may flow in a circuit's first run, all others in proportion to their design currents. [A]"""
     design = {run.name: case.tree.design_current_a.get(point) for point, run in case.tree.ends.items()}
     known = {name: ampere for name, ampere in design.items() if ampere}
+    if first.name not in known and operates_a_switch(case):
+        return Bound(0.0, OPERATES)
     if first.name not in known:  # as if one ampere ran through the first run alone
         known = {first.name: 1.0}
     bound = largest_bound(case, known)

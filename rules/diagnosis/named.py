@@ -28,6 +28,8 @@ class Named:
     at: str
     legs: tuple[str, ...]
     why: str
+    caution: str
+    """The finding's own."""
 
 
 def named_places(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Named, ...]:
@@ -38,15 +40,17 @@ def named_places(case: CircuitCase, findings: Sequence[Finding]) -> tuple[Named,
             continue
         rule, why = finding.rule, f"{finding.rule}, {finding.title[0].lower()}{finding.title[1:]}"
         if rule == HOT:
-            found += _unread(case, finding.where, LEGS, 1, f"{why}: it is read across before anything else")
+            found += _unread(finding, case, finding.where, LEGS, 1, f"{why}: it is read across before anything else")
         elif rule in ONCE_MORE:
             at, leg = _parted(finding.where)
-            found += _unread(case, at, (leg,) if leg else LEGS, 2, f"{why}: it is read once more at the same current")
+            found += _unread(
+                finding, case, at, (leg,) if leg else LEGS, 2, f"{why}: it is read once more at the same current"
+            )
         elif rule == LEGS_UNEQUAL:
             path, leg = _parted(finding.where)
             for at in _middle_first(_terminations(case, path)):
                 found += _unread(
-                    case, at, (leg,), 1, f"{why}: each termination of the leg is read, the middle ones first"
+                    finding, case, at, (leg,), 1, f"{why}: each termination of the leg is read, the middle ones first"
                 )
     return tuple(found)
 
@@ -57,7 +61,7 @@ def _parted(where: str) -> tuple[str, str]:
     return (place, leg) if leg in LEGS else (where.removesuffix(" both"), "")
 
 
-def _unread(case: CircuitCase, at: str, legs: Sequence[str], times: int, why: str) -> Iterator[Named]:
+def _unread(finding: Finding, case: CircuitCase, at: str, legs: Sequence[str], times: int, why: str) -> Iterator[Named]:
     """The place with those of its legs that were read across fewer times than asked for; nothing where there are none."""
     read = [row.leg for row in case.readings if row.quantity in ("joint", "resistance") and row.at == at and not row.to]
     lies_in = device_leg(case.tree, case.return_leg) if at == DEVICE else "both"
@@ -65,7 +69,7 @@ def _unread(case: CircuitCase, at: str, legs: Sequence[str], times: int, why: st
         leg for leg in legs if lies_in in (leg, "both") and sum(own in (leg, "", "both") for own in read) < times
     )
     if open_:
-        yield Named(at, open_, why)
+        yield Named(at, open_, why, finding.caution)
 
 
 def _terminations(case: CircuitCase, path: str) -> list[str]:

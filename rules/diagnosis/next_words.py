@@ -37,9 +37,11 @@ OTHERWISE = {
     TEMPERATURE: "the doubt of the temperature hides the rest",
 }
 """What a reading is for that tells no two causes apart by itself."""
+DEAD_METER = "with a four-wire micro-ohmmeter, for others show nothing below about 10 mΩ"
+"""What a joint is read with when dead."""
 BESIDE_WORDS = {
     FINER: "; the meter at hand is too coarse for it",
-    DEAD_TEST: "; live, no current that may flow is enough: with a four-wire micro-ohmmeter, for others show nothing below about 10 mΩ",
+    DEAD_TEST: f"; live, no current that may flow is enough: {DEAD_METER}",
     LESS: "; a second round at less current, at which a semiconductor loses as much",
     MORE: "; at more current than today",
     ADDED: "; with a load of your own",
@@ -86,7 +88,11 @@ def why_words(way: Way, at: Observation | None, pair: Sequence[Said], halves: bo
     told = " from ".join(_words(said, way, at, ordered[0]) for said in ordered)
     told = f"tells {told}" if told else OTHERWISE.get(way.kind, "tells most for its effort")
     if halves:
-        told = f"measure the middle first: {told}" if way.kind == POINT else f"{told}, and halves the suspected joints"
+        told = (
+            f"measure the middle first: {told}"
+            if way.kind == POINT
+            else f"{told}, and halves the suspected joints, quicker than one end after another"
+        )
     return told + BESIDE_WORDS.get(way.how, "")
 
 

@@ -50,7 +50,9 @@ def spoken(batch: Batch, number: int, choice: Choice) -> NextReading:
         at = batch.posed[number].observation(choice.row) if choice.way.kind in SINGLES else None
         pair = [_place(batch, number, choice, group) for group in choice.pair or ()]
         why = why_words(choice.way, at, pair, _halves(batch, number, choice), doubtful_reading(batch, number, choice))
+    caution = caution_words(batch.posed[number].case, choice.way)
     if choice.named >= 0:
+        caution = f"{caution} {batch.posed[number].named[choice.named].caution}"
         why = batch.posed[number].named[choice.named].why + BESIDE_WORDS.get(choice.way.how, "")
     current_a = choice.current_a
     bounded = bool(current_a) and math.isfinite(choice.most_a)
@@ -62,7 +64,7 @@ def spoken(batch: Batch, number: int, choice: Choice) -> NextReading:
         leg=asked.leg,
         current_at_least=Figure(current_a, "A") if current_a else None,
         why="; ".join(part for part in (why, asked.besides, *_current_words(batch.posed[number], choice)) if part),
-        caution=caution_words(batch.posed[number].case, choice.way),
+        caution=caution,
         current_at_most=Figure(choice.most_a, "A") if bounded else None,
         minutes=choice.way.minutes,
         # the last digits depend on what else was computed in the same batch

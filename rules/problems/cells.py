@@ -13,7 +13,7 @@ from rules.columns import NEAREST_ZERO, Column, ColumnKind, within
 from rules.problems.problem import Problem
 from rules.record import TABLES, UNIT_OF_QUANTITY, Row, Run, Site, columns
 from rules.tables.conductors import is_known, neighbours
-from rules.text import MOST_CHARACTERS, either, forbidden_character, nearest, quoted
+from rules.text import MOST_CHARACTERS, either, forbidden_character, nearest_choice, quoted
 
 Complaint: TypeAlias = tuple[str, str] | None
 """What is wrong, and what is accepted; ``None`` where nothing is wrong."""
@@ -175,7 +175,7 @@ def _notes(value: str, column: Column) -> Complaint:
 def _choice(value: str, column: Column) -> Complaint:
     if value in column.choices:
         return None
-    near = nearest(value[:100], column.choices)
+    near = nearest_choice(value[:100], column.choices)
     hint = "" if near is None else f", did you mean {quoted(near)}?"
     return f"{quoted(value)} is no {column.name}", accepted(column) + hint
 

@@ -11,6 +11,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Literal
 
+from rich.cells import cell_len
+
 from audit.report.bar import text_bar
 from audit.report.phrases import drop_words, status_words
 from audit.report.records import board_title
@@ -34,6 +36,8 @@ _LEFT_OF_TAG, _BESIDE_TAG = 5, 3
 _PERCENT_CELLS = 13
 _STATUS_CELLS = 12
 _LONGEST_TAG = 16
+_LEAST_NAME = 8
+"""Of the site's name in the head."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -149,11 +153,13 @@ def head_line(survey: Survey, width: int, *, read_only: bool) -> Line:
         said += [piece("   "), piece("not judged", "wrong")]
     elif survey.assessment is None and circuits:
         said += [piece("   "), piece("reading …" if survey.is_outline else "judging …", "quiet")]
-    left = [piece(" "), piece(survey.site.name, "strong"), piece("   ")]
-    left.append(piece(survey.visit or ("" if survey.is_outline else "not visited yet"), "quiet"))
+    visit = [piece("   "), piece(survey.visit or ("" if survey.is_outline else "not visited yet"), "quiet")]
     if read_only:
-        left += [piece("   "), piece("read only", "act")]
-    return apart(tuple(left), (*said, piece(" ")), width)
+        visit += [piece("   "), piece("read only", "act")]
+    # the site's name gives way: the visit says what was counted
+    room = width - width_of((*said, *visit)) - 3  # for the edges and what parts them
+    name = survey.site.name if cell_len(survey.site.name) <= room else fit(survey.site.name, max(_LEAST_NAME, room))
+    return apart((piece(" "), piece(name, "strong"), *visit), (*said, piece(" ")), width)
 
 
 def cannot_judge_lines(survey: Survey, width: int) -> list[Line]:

@@ -15,7 +15,7 @@ from rules.problems.cells import accepted
 from rules.problems.settings import SETTINGS
 from rules.record import TABLES, Instrument, Row, Run, Site, Typed, columns, is_missing
 from rules.references import TO_BOARD, feed_text, feeds_text, read_end, read_feed, read_feeds, tags_of
-from rules.text import either, nearest, quoted
+from rules.text import either, nearest, nearest_choice, quoted
 from rules.units import plain
 
 SITE = "site"
@@ -151,7 +151,7 @@ def read_field(text: str, field: Field, row: Row | Site, index: Index) -> FieldV
     if column.kind in ("reference", "feeds") or field.name == "to_point":
         return FieldValue(_reference(text, field, index))
     if column.kind == "choice" and text not in column.choices:
-        near = nearest(text, column.choices)
+        near = nearest_choice(text, column.choices)
         hint = f", did you mean {quoted(near)}?" if near else ""
         raise FieldRefused(f"{quoted(text)} is none of {either(column.choices)}{hint}")
     unit = unit_of(field, row)
@@ -195,4 +195,6 @@ def _names_nothing(text: str, tables: Sequence[str], index: Index) -> str:
     known = [row.tag for table in tables for row in index.site.table(table)]  # type: ignore[attr-defined]
     near = nearest(text.removeprefix(TO_BOARD).strip(), known)
     hint = f", did you mean {quoted(near)}?" if near else ""
+    if not known and "sources" in tables:
+        hint = ": add the source first (Esc, a, source)"
     return f"{quoted(text)} names no {either([table.removesuffix('s') for table in tables])} that is there{hint}"

@@ -57,8 +57,8 @@ class PickList(LinesView, inherit_bindings=False):
 
     @property
     def item_count(self) -> int:
-        """How many items there are."""
-        raise NotImplementedError
+        """How many items there are; a bare list has none."""
+        return 0
 
     def is_choosable(self, item: int) -> bool:
         """Whether the cursor may stand on an item; on a heading it may not."""
@@ -66,7 +66,7 @@ class PickList(LinesView, inherit_bindings=False):
 
     def item_line(self, item: int, *, chosen: bool) -> Line:
         """The line of an item."""
-        raise NotImplementedError
+        return ()
 
     def more_lines(self, item: int) -> list[Line]:
         """What stands beneath an item while it is chosen."""

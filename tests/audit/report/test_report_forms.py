@@ -14,7 +14,7 @@ import pytest
 from markdown_it import MarkdownIt
 
 from audit.report.bar import Bar
-from audit.report.blocks import Blanks, Content, FindingCard, Line, Table
+from audit.report.blocks import Blanks, Content, FindingCard, Line, Paragraph, Table
 from audit.report.content import AUDIENCES, content_of
 from audit.report.csv import BYTE_ORDER_MARK, COLUMNS, csv_report
 from audit.report.html import html_report
@@ -29,7 +29,7 @@ from audit.report.phrases import (
     limits_defer,
     number_words,
 )
-from rules.assessment import Assessment
+from rules.assessment import Assessment, Finding, Severity
 from rules.record import Site
 
 NOT_SHOWN = {"tone", "align", "share", "level", "new_page", "side_by_side", "through_device"}
@@ -267,3 +267,24 @@ def test_an_empty_site_has_a_report(audience: str) -> None:
     assert "hut" in html_words(content)
     assert markdown_report(content).startswith("# D.c. distribution audit: hut\n")
     assert csv_report(content).count("\r\n") == 1
+
+
+def test_open_actions_are_the_most_severe_first_then_those_of_other_circuits_and_the_rest_is_counted(
+    site: Site, assessment: Assessment
+) -> None:
+    """Eight soon findings of one circuit and one of another: the other is on the page; 8 + 1 + 1 − 6 = 4 are left out."""
+    like = next(finding for finding in assessment.findings if finding.circuit is not None)
+    tags = [circuit.circuit for circuit in assessment.circuits][:2]
+
+    def finding(number: int, circuit: str, severity: Severity) -> Finding:
+        return replace(like, id=f"X/{number}", circuit=circuit, title=f"found {number}", severity=severity)
+
+    soon = [finding(number, tags[0], Severity.SOON) for number in range(8)]
+    found = (*soon, finding(8, tags[1], Severity.SOON), finding(9, tags[0], Severity.IMMEDIATE))
+    content = content_of(site, replace(assessment, findings=found), "supervisor")
+    (section,) = [section for section in content.sections if section.title.startswith("Open")]
+    table, rest = section.blocks
+    assert isinstance(table, Table)
+    assert isinstance(rest, Paragraph)
+    assert [row[1] for row in table.rows] == ["found 9", "found 8", "found 0", "found 1", "found 2", "found 3"]
+    assert rest.text == "and 4 more findings, in the inspector's report"

@@ -235,3 +235,12 @@ def test_rows_are_found_by_id_and_the_site_is_a_row_of_its_own() -> None:
     assert isinstance(row_of(HUT, "loads", "l2"), Load)
     assert isinstance(row_of(HUT, "runs", "r3"), Run)
     assert row_of(HUT, "runs", "gone") is None
+
+
+def test_where_nothing_is_there_to_feed_a_circuit_the_refusal_says_what_to_add_first() -> None:
+    circuit = Circuit(id="c", tag="C1")
+    field = next(field for field in fields_of("circuits") if field.name == "fed_from")
+    with pytest.raises(
+        FieldRefused, match=r"names no board or source that is there: add the source first \(Esc, a, source\)"
+    ):
+        read_field("PSU-1", field, circuit, Index(Site(name="x", circuits=(circuit,))))

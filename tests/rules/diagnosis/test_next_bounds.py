@@ -47,6 +47,17 @@ def test_a_coil_is_read_at_its_supervision_current(chains: ModuleType, read: boo
     assert SWITCH not in ordinary.why
 
 
+def test_a_coil_that_nothing_supervises_is_tested_dead(chains: ModuleType) -> None:
+    """At rest it draws nothing: no current may be asked for, and none that is read is enough."""
+    site = chains.chain([60.0], tables=loads("trip or close", 0.0), device="breaker C", device_rating="10")
+    asked = asked_of(site)
+    assert (asked.what, asked.quantity, asked.at, asked.to) == ("dead test", "resistance", "way", "p1")
+    assert asked.leg == "positive"
+    assert asked.current_at_least is None
+    assert "and more than 0 A can operate the switch: with a four-wire micro-ohmmeter" in asked.why
+    assert "prove dead" in asked.caution
+
+
 def test_a_resistance_that_was_read_bounds_the_current(chains: ModuleType) -> None:
     """8.2 V too much at 2 A, 4.1 ohm, beyond every prior: 5 W is reached at √(5 / 4.1) = 1.10 A, not at the 2 A of the day."""
     volts = chains.drops([20.0], 2.0, extra=[4.1])
@@ -124,6 +135,7 @@ def test_a_hot_end_is_read_across_first(chains: ModuleType, volts_read: bool) ->
     assert asked.current_at_most is not None
     assert asked.current_at_most.value <= 16
     assert "Live work" in asked.caution
+    assert "Do not tighten a hot joint live." in asked.caution
     healthy: list[dict[str, object]] = [
         {
             "circuit": "C1",
