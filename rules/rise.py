@@ -21,6 +21,8 @@ from rules.tables.ampacity import limit_c
 from rules.units import show
 
 PLACE = re.compile(r"device|run (\d+) (start|end)")
+LEAST_INSULATION = "PVC"
+"""What counts where no insulation is recorded: the one that bears least."""
 ALIKE = 0.1
 """Relative: two terminations whose currents differ by no more are similar. Our own default."""
 
@@ -107,8 +109,8 @@ def _of_round(case: CircuitCase, this: Round) -> Iterator[Rise]:
 def _conductor_bears(case: CircuitCase, place: str, read: Figure) -> bool:
     """Whether a temperature is not beyond doubt above what the insulation of the run there lives with."""
     run = case.tree.ends.get(_branch(case, place))
-    known = run is not None and run.insulation not in ("", "unknown")
-    most = limit_c(run.insulation if known and run is not None else case.limits.word("capacity.assumed_insulation"))
+    insulation = run.insulation if run is not None and run.insulation not in ("", "unknown") else LEAST_INSULATION
+    most = limit_c(insulation)
     return against_limit(read.value, most, read.u or 0.0, case.limits) is not Verdict.FAILS
 
 

@@ -22,6 +22,7 @@ from rules.units import show
     source=Citation("ANSI/NETA MTS", "", "Table 100.18, seen second-hand", "verified"),
     also=(
         Citation("rise of a joint by the square of its current", status="common practice, no source"),
+        Citation("IEC 60898-1", "2015", "rise of 60 K at a breaker's terminals", "from-memory"),
         Citation("NFPA 70B", "", "7.4.5: at 40 % of normal load or more, seen second-hand", "from-memory"),
     ),
     limits=(

@@ -49,7 +49,7 @@ class Block:
     others: Floats
     """(b, e of terminations and poles): healthy. [ohm]"""
     others_u: Floats
-    """(b, e of terminations and poles): standard uncertainty, each on its own but for the poles. [ohm]"""
+    """(b, e of terminations and poles): standard uncertainty, each on its own. [ohm]"""
     length_u: Floats
     """(b, branches)"""
     alternatives: Floats
@@ -201,13 +201,9 @@ def _of_branches(problems: Sequence[Problem]) -> list[Floats]:
 
 
 def _others_covariance(shape: Shape, carried: Floats, others_u: Floats) -> Floats:
-    """(b, n, n): from terminations, each on its own, and the device, whose poles err alike."""
+    """(b, n, n): from terminations and the device's poles, each on its own: healthy poles of one breaker differ."""
     apart = carried[:, 0, :, shape.conductors.stop :] * others_u[:, None]
-    poles = shape.poles.start - shape.conductors.stop
-    device = apart[:, :, poles:].sum(axis=2)
-    found: Floats = (
-        apart[:, :, :poles] @ np.swapaxes(apart[:, :, :poles], 1, 2) + device[:, :, None] * device[:, None, :]
-    )
+    found: Floats = apart @ np.swapaxes(apart, 1, 2)
     return found
 
 
