@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import errno
 import os
+from datetime import datetime
 from pathlib import Path
 from tempfile import TemporaryDirectory
 from typing import Any
@@ -17,6 +18,7 @@ from audit.intake.folder import read_folder, site_of
 from audit.unload import folder_files, unload
 from rules.columns import NEAREST_ZERO, Column, within
 from rules.consistency import problems
+from rules.problems.cells import FIRST_YEAR, LAST_YEAR
 from rules.problems.runs import is_reserved
 from rules.problems.settings import CAUSES, SETTINGS, SHARE
 from rules.record import TABLES, UNIT_OF_QUANTITY, Feed, Site, columns
@@ -43,6 +45,7 @@ notes = st.one_of(
     st.sampled_from(NASTY),
     st.text(st.one_of(st.sampled_from("\n\t \"',"), st.characters(exclude_categories=("Cc", "Cs")))),
 ).filter(lambda text: forbidden_character(text, lines=True) is None)
+DAYS = datetime(FIRST_YEAR, 1, 1), datetime(LAST_YEAR, 12, 31)
 points = words.filter(lambda text: not is_reserved(text))
 
 
@@ -93,8 +96,8 @@ def cells(draw: st.DrawFn, /, table: str, **fixed: Any) -> dict[str, Any]:
                     "choice": st.sampled_from(column.choices or ("",)),
                     "notes": notes,
                     "size": st.sampled_from(("2.5 mm2", "12 AWG", "4/0 AWG", "250 kcmil", "")),
-                    "date": st.dates().map(str),
-                    "time": st.datetimes().map(lambda when: when.isoformat()),
+                    "date": st.dates(DAYS[0].date(), DAYS[1].date()).map(str),
+                    "time": st.datetimes(*DAYS).map(lambda when: when.isoformat()),
                     "return": st.sampled_from(("own", "structure", "")),
                 }.get(column.kind, words)
             )

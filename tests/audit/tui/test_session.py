@@ -19,7 +19,7 @@ from audit.tui import judge as judging
 from audit.tui.drawing.walk import walk_stops
 from audit.tui.edits import Add, Change, ChangeSettings, Edit, Remove
 from audit.tui.judge import Judge
-from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Outlined, Refused, Saved, Troubled, Undone
+from audit.tui.messages import Assessed, Crashed, Judged, Loaded, Outlined, Refused, Saved, Troubled, Undone, Unjudged
 from audit.tui.run import run_survey
 from audit.tui.session import Session
 from audit.tui.settings import PassingSettings
@@ -355,7 +355,7 @@ def test_limits_that_are_not_there_are_told() -> None:
     with judge() as (thread, told):
         thread.judge(replace(HUT, limits="none such"), ())
         trouble = told.next()
-        assert isinstance(trouble, Troubled)
+        assert isinstance(trouble, Unjudged)
         assert "none such" in trouble.line
         assert "\n" not in trouble.line
         thread.judge(HUT, ())

@@ -89,7 +89,7 @@ def test_a_circuit_is_added_and_read_and_nothing_accepted_is_lost_when_the_termi
     terminal.open(plant)
     opened = terminal.shows("▸ F1").split("\n")
     assert len(opened) == 25  # 24 lines and what follows the last newline
-    assert opened[0].startswith(" Beispielhausen exchange (invented)")
+    assert opened[0].startswith(" Beispielhausen exchange (inv")  # the visit's name goes before the site's last letters
 
     # To a terminal, Escape with a letter right behind it is another key: so each burst ends before it.
     terminal.keys("a", "c", "Enter", "=T-01", "Enter", "=Test lamp", "Enter")
